@@ -1,0 +1,1 @@
+"""The words every room speaks: signals, their evaluation, rendering, errors, units, data words."""
