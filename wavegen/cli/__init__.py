@@ -1,0 +1,1 @@
+"""Arguments in, exit status out: one file a verb."""

@@ -1,0 +1,1 @@
+"""Signal processing that has never heard of a recipe."""

@@ -1,0 +1,1 @@
+"""Laws of the envelope: what mathematics says of a signal's power distribution."""

@@ -1,0 +1,11 @@
+"""Meters: one file each, one line here."""
+
+from wavegen.core.registry import Registry
+
+METERS = Registry(
+    "meter",
+    {
+        "power": "wavegen.meters.power:PowerMeter",
+        "mean": "wavegen.meters.mean:MeanMeter",
+    },
+)

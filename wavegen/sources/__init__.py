@@ -1,0 +1,14 @@
+"""Sources of signals: one family a file, one line here."""
+
+from wavegen.core.registry import Registry
+
+SOURCES = Registry(
+    "source",
+    {
+        "single_carrier": "wavegen.sources.single_carrier:SingleCarrier",
+        "ofdm": "wavegen.sources.ofdm:Ofdm",
+        "tones": "wavegen.sources.tones:Tones",
+        "noise": "wavegen.sources.noise:Noise",
+        "carrier": "wavegen.sources.carrier:Carrier",
+    },
+)

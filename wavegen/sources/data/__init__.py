@@ -1,0 +1,5 @@
+"""Where symbols come from: one file each, one line here."""
+
+from wavegen.core.registry import Registry
+
+DATA = Registry("data", {"random": "wavegen.sources.data.random:Random"})

@@ -1,0 +1,110 @@
+"""A constellation: symbol numbers to points of unit mean power."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from functools import cached_property
+from typing import Self
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen.core.registry import nearest
+from wavegen.core.units import QuantityError
+from wavegen.sources.mapping import MAPPINGS
+
+LARGEST = 1 << 16
+
+
+@dataclass(frozen=True, eq=False)
+class Constellation:
+    """Points by symbol number, scaled to unit mean power.
+
+    Parameters
+    ----------
+    name : str
+        Name in recipes, or ``points``.
+    points : complex128 array, shape (order,)
+        Entry ``i`` is the point of the symbol whose bits, first bit most significant, read
+        ``i``. Unit mean power.
+
+    """
+
+    name: str
+    points: NDArray[np.complex128]
+
+    @property
+    def n_bits(self) -> int:
+        """Bits a symbol: the logarithm to base 2 of the order."""
+        return int(self.points.size - 1).bit_length()
+
+    @cached_property
+    def wide(self) -> NDArray[np.complex64]:
+        """Points for every byte (up to 8 bits a symbol) or 16-bit word: the table repeats."""
+        size = 256 if self.n_bits <= 8 else 65536
+        return np.tile(self.points, size // self.points.size).astype(np.complex64)
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read a name such as ``64qam``, or a list of points ``[[re, im], ...]``.
+
+        Parameters
+        ----------
+        value : object
+            Text or list as YAML gives it.
+
+        Returns
+        -------
+        Constellation
+
+        Raises
+        ------
+        QuantityError
+            Unknown name, or points that make no constellation.
+        """
+        if isinstance(value, str):
+            if value not in MAPPINGS:
+                guess = nearest(value, MAPPINGS)
+                raise QuantityError(
+                    problem=f"unknown constellation {value!r}",
+                    allowed=", ".join(MAPPINGS) + ", or a list of points",
+                    remedy=f"Did you mean {guess}?" if guess else "Choose one of these.",
+                )
+            made: Self = MAPPINGS.load(value)()
+            return made
+        return cls.of_points(value)
+
+    @classmethod
+    def of_points(cls, value: object) -> Self:
+        """Make a constellation from points on any scale.
+
+        Parameters
+        ----------
+        value : object
+            ``[[re, im], ...]``: 2, 4, 8 ... 65536 pairs of finite numbers, not all zero.
+
+        Returns
+        -------
+        Constellation
+
+        Raises
+        ------
+        QuantityError
+            Not such a list.
+        """
+        try:
+            pairs = np.array(value, dtype=np.float64)
+        except (TypeError, ValueError):
+            pairs = np.empty(0)
+        count = pairs.shape[0] if pairs.ndim == 2 else 0
+        is_sound = pairs.ndim == 2 and pairs.shape[1] == 2 and bool(np.isfinite(pairs).all())
+        if not is_sound or not 2 <= count <= LARGEST or count & (count - 1) or not pairs.any():
+            raise QuantityError(
+                problem="the points make no constellation",
+                allowed="2, 4, 8 ... 65536 pairs [re, im] of finite numbers, not all zero",
+                remedy="Write it like [[1, 1], [-1, 1], [-1, -1], [1, -1]].",
+            )
+        points = pairs[:, 0] + 1j * pairs[:, 1]
+        points = points / np.sqrt(np.mean(np.abs(points / np.abs(points).max()) ** 2))
+        points = points / np.sqrt(np.mean(np.abs(points) ** 2))
+        return cls("points", points)

@@ -1,0 +1,1 @@
+"""Level, frequency, time and band."""

@@ -1,0 +1,1 @@
+"""Several signals to one."""

@@ -1,0 +1,1 @@
+"""Crest-factor reduction."""
