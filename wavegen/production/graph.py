@@ -1,0 +1,185 @@
+"""From checked settings to a graph of signals: cycles, names, shared data, chains of stages."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, field, fields, is_dataclass
+from fractions import Fraction
+from typing import Any
+
+from wavegen.core.errors import RecipeError
+from wavegen.core.registry import nearest
+from wavegen.core.signal import Signal
+from wavegen.core.site import Cycle, Site, common_cycle
+
+
+@dataclass(frozen=True, slots=True)
+class BuiltPart:
+    """One part of a sum, at the level that its source and stages give it.
+
+    Parameters
+    ----------
+    path : str
+        Path in the recipe: ``signal.parts[0]``.
+    name : str
+        The part's own name, else its path.
+    signal : Signal
+        The part after its stages, before the sum shifts and weighs it.
+    """
+
+    path: str
+    name: str
+    signal: Signal
+
+
+@dataclass(frozen=True, slots=True)
+class Built:
+    """A recipe's graph.
+
+    Parameters
+    ----------
+    signal : Signal
+        What is rendered.
+    parts : list of BuiltPart
+        Every part of every sum, in the order of the recipe.
+    """
+
+    signal: Signal
+    parts: list[BuiltPart] = field(default_factory=list)
+
+
+def is_combiner(settings: Any) -> bool:
+    """Return whether settings combine several signals."""
+    return hasattr(settings, "combine")
+
+
+def shortest_cycle(settings: Any, sample_rate_hz: Fraction, path: str) -> Cycle:
+    """Return the shortest loop of a source, or of all parts of a sum together.
+
+    Parameters
+    ----------
+    settings : source or combiner settings
+    sample_rate_hz : Fraction
+        Hz.
+    path : str
+        Path in the recipe.
+
+    Returns
+    -------
+    Cycle
+        ``n_symbols`` is 0 unless all parts have symbols of one length.
+
+    Raises
+    ------
+    RecipeError
+        As raised by a source.
+    """
+    if not is_combiner(settings):
+        cycle: Cycle = settings.cycle(sample_rate_hz, path)
+        return cycle
+    cycles = [
+        shortest_cycle(part.signal, sample_rate_hz, f"{path}.parts[{number}].signal")
+        for number, part in enumerate(settings.parts)
+    ]
+    n_samples = common_cycle([cycle.n_samples for cycle in cycles])
+    rates = {Fraction(cycle.n_symbols, cycle.n_samples) for cycle in cycles}
+    n_symbols = n_samples * rates.pop() if len(rates) == 1 else Fraction(0)
+    return Cycle(n_samples=n_samples, n_symbols=int(n_symbols))
+
+
+def build(signal: Any, stages: tuple[Any, ...], site: Site) -> Built:
+    """Build the graph of a recipe.
+
+    Parameters
+    ----------
+    signal : source or combiner settings
+    stages : tuple of stage settings
+        Applied in order after the signal.
+    site : Site
+        At path ``signal``.
+
+    Returns
+    -------
+    Built
+
+    Raises
+    ------
+    RecipeError
+        Two parts of one name, data shared with no part, or as raised by a member.
+    """
+    check_names(signal, site.path)
+    parts: list[BuiltPart] = []
+    built = _build_signal(signal, site, parts)
+    for number, stage in enumerate(stages):
+        built = stage.build(site.at(f"stages[{number}]"), built)
+    return Built(built, parts)
+
+
+def _build_signal(settings: Any, site: Site, parts: list[BuiltPart]) -> Signal:
+    if not is_combiner(settings):
+        signal: Signal = settings.build(site)
+        return signal
+    made: list[Signal] = []
+    for number, part in enumerate(settings.parts):
+        path = f"{site.path}.parts[{number}]"
+        name = part.name or path
+        place = len(parts)
+        one = _build_signal(part.signal, site.at(f"{path}.signal", name), parts)
+        for index, stage in enumerate(part.stages):
+            one = stage.build(site.at(f"{path}.stages[{index}]", name), one)
+        parts.insert(place, BuiltPart(path, name, one))
+        made.append(one)
+    combined: Signal = settings.combine(site, made)
+    return combined
+
+
+def _named_parts(settings: Any, path: str) -> Iterator[tuple[str, str]]:
+    if not is_combiner(settings):
+        return
+    for number, part in enumerate(settings.parts):
+        where = f"{path}.parts[{number}]"
+        if part.name:
+            yield part.name, f"{where}.name"
+        yield from _named_parts(part.signal, f"{where}.signal")
+
+
+def _shares(value: Any, path: str) -> Iterator[tuple[str, str]]:
+    if isinstance(value, tuple):
+        for number, item in enumerate(value):
+            yield from _shares(item, f"{path}[{number}]")
+    elif is_dataclass(value):
+        for item in fields(value):
+            inner = getattr(value, item.name)
+            if item.name == "share" and isinstance(inner, str):
+                yield inner, f"{path}.share"
+            else:
+                yield from _shares(inner, f"{path}.{item.name}")
+
+
+def check_names(signal: Any, path: str) -> None:
+    """Refuse two parts of one name, and data shared with a part that is not there.
+
+    Raises
+    ------
+    RecipeError
+        At the second use of the name, or at ``share``.
+    """
+    names: dict[str, str] = {}
+    for name, where in _named_parts(signal, path):
+        if name in names:
+            raise RecipeError(
+                where=where,
+                problem=f"the name {name!r} is taken by {names[name]}",
+                allowed="one part a name (a part draws its data by its name)",
+                remedy="Rename one of them; to use the same data, write data: {share: ...}.",
+            )
+        names[name] = where
+    for name, where in _shares(signal, path):
+        if name not in names:
+            guess = nearest(name, list(names))
+            raise RecipeError(
+                where=where,
+                problem=f"no part is named {name!r}",
+                allowed=", ".join(names) or "the name of a part (no part of this recipe has one)",
+                remedy=f"Did you mean {guess}?" if guess else "Give the part to share a name.",
+            )

@@ -1,0 +1,133 @@
+"""How long the loop is: whole cycles of everything in it, near what was asked."""
+
+from __future__ import annotations
+
+import math
+from fractions import Fraction
+
+from wavegen.core.errors import RecipeError
+from wavegen.core.site import Cycle, Note
+from wavegen.core.units import format_s
+from wavegen.recipe.settings import Duration, Extent
+
+MOST_SAMPLES = 4_000_000_000
+"""Index arithmetic is exact to here; a complex 16-bit file of this length has 16 GB."""
+LARGEST_STRETCH = 2
+"""A loop may be this many times longer than asked; beyond, the recipe must say so itself."""
+
+
+def loop_length(duration: Duration, cycle: Cycle, sample_rate_hz: Fraction) -> tuple[int, list[Note]]:
+    """Return the loop's length in samples and what was rounded.
+
+    Parameters
+    ----------
+    duration : Duration
+        What was asked: a value, or one with a multiple, a least and a most.
+    cycle : Cycle
+        Shortest loop of the signal.
+    sample_rate_hz : Fraction
+        Hz.
+
+    Returns
+    -------
+    n_samples : int
+        A whole multiple of the cycle and of ``duration.multiple``.
+    notes : list of Note
+        One if the length is not the one asked for.
+
+    Raises
+    ------
+    RecipeError
+        Symbols asked of a signal without them, or no whole loop within the limits; the
+        sentence says which would fit.
+    """
+    asked = in_samples(duration.at, cycle, sample_rate_hz, "duration")
+    unit = 1
+    if duration.multiple is not None:
+        multiple = in_samples(duration.multiple, cycle, sample_rate_hz, "duration.multiple")
+        if multiple.denominator != 1 or multiple < 1:
+            raise RecipeError(
+                where="duration.multiple",
+                problem=f"{duration.multiple} is {float(multiple):.6g} samples",
+                allowed="a whole number of samples, at least 1",
+                remedy="Give the generator's granularity in samples.",
+            )
+        unit = int(multiple)
+    quantum = math.lcm(cycle.n_samples, unit)
+    low = 1
+    high = MOST_SAMPLES // quantum
+    if duration.least is not None:
+        least = in_samples(duration.least, cycle, sample_rate_hz, "duration.least")
+        low = max(1, math.ceil(least / quantum))
+    if duration.most is not None:
+        most = in_samples(duration.most, cycle, sample_rate_hz, "duration.most")
+        high = min(high, math.floor(most / quantum))
+    if low > high:
+        raise _nothing_fits(duration, quantum, low, sample_rate_hz)
+    count = min(max(math.floor(asked / quantum + Fraction(1, 2)), low), high)
+    n_samples = count * quantum
+    if n_samples > LARGEST_STRETCH * asked and duration.least is None:
+        raise RecipeError(
+            where="duration",
+            problem=f"{duration.at} is shorter than the shortest loop, {_both(quantum, sample_rate_hz)}",
+            allowed=f"at least {_both(quantum, sample_rate_hz)}",
+            remedy="Ask for a whole number of these loops.",
+        )
+    if n_samples == asked:
+        return n_samples, []
+    note = Note(
+        kind="rounded",
+        where="duration",
+        text=f"the loop is a whole number of {quantum}-sample cycles",
+        asked=str(duration.at),
+        given=_both(n_samples, sample_rate_hz),
+    )
+    return n_samples, [note]
+
+
+def in_samples(extent: Extent, cycle: Cycle, sample_rate_hz: Fraction, where: str) -> Fraction:
+    """Return an extent in samples, exactly.
+
+    Raises
+    ------
+    RecipeError
+        Symbols of a signal that has none, or nothing at all.
+    """
+    if extent.unit == "seconds":
+        samples = extent.value * sample_rate_hz
+    elif extent.unit == "samples":
+        samples = extent.value
+    elif cycle.n_symbols:
+        samples = extent.value * cycle.n_samples / cycle.n_symbols
+    else:
+        raise RecipeError(
+            where=where,
+            problem=f"{extent} of a signal without symbols of one length",
+            allowed="a time or a number of samples",
+            remedy="Write it like 10 ms or 12288 samples.",
+        )
+    if samples <= 0:
+        raise RecipeError(
+            where=where,
+            problem=f"{extent} is no length",
+            allowed="more than zero",
+            remedy="Ask for a longer one.",
+        )
+    return samples
+
+
+def _both(n_samples: int, sample_rate_hz: Fraction) -> str:
+    return f"{format_s(n_samples / sample_rate_hz)} ({n_samples} samples)"
+
+
+def _nothing_fits(
+    duration: Duration, quantum: int, low: int, sample_rate_hz: Fraction
+) -> RecipeError:
+    limits = f"least {duration.least}, " if duration.least is not None else ""
+    limits += f"most {duration.most or f'{MOST_SAMPLES} samples'}"
+    return RecipeError(
+        where="duration",
+        problem=f"no whole number of loops of {_both(quantum, sample_rate_hz)} lies within {limits}",
+        allowed=f"limits that hold {_both(low * quantum, sample_rate_hz)}",
+        remedy="Widen the limits, or choose rates with a shorter common loop.",
+    )
