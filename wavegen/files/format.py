@@ -1,0 +1,249 @@
+"""What every file format is: facts and codes in, a recording out."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from fractions import Fraction
+from pathlib import Path
+from typing import ClassVar, Protocol
+
+from wavegen.core.errors import FileError
+from wavegen.core.registry import nearest
+from wavegen.core.signal import Signal
+from wavegen.files.datatypes import Codes, Datatype
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Annotation:
+    """A stretch of samples with a name: a marker, a burst, a slot.
+
+    Parameters
+    ----------
+    start_sample : int
+        First sample of it.
+    n_samples : int or None
+        Length; None where the file does not say.
+    label : str
+        Short name (SigMF recommends up to 20 characters).
+    comment : str
+        Anything longer.
+    low_hz, high_hz : float or None
+        Band it occupies, both or neither, Hz.
+    """
+
+    start_sample: int
+    n_samples: int | None = None
+    label: str = ""
+    comment: str = ""
+    low_hz: float | None = None
+    high_hz: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FileFacts:
+    """What a writer is told about the waveform before its first sample.
+
+    Parameters
+    ----------
+    sample_rate_hz : Fraction
+        Exact rate, Hz.
+    n_samples : int
+        How many samples will be written; the writer holds the caller to it.
+    datatype : Datatype
+        One of the format's.
+    title, description : str
+        For people; formats without a place for them leave them out.
+    generator : str
+        Program and version.
+    recipe_sha512 : str
+        Hex digest of the recipe's text, empty if none.
+    annotations : tuple of Annotation
+        Markers.
+    centre_frequency_hz : float or None
+        Radio frequency of the baseband's 0 Hz, Hz.
+    extra : mapping
+        Further facts for formats with room for them (JSON values; keys are identifiers).
+    """
+
+    sample_rate_hz: Fraction
+    n_samples: int
+    datatype: Datatype
+    title: str = ""
+    description: str = ""
+    generator: str = "wavegen"
+    recipe_sha512: str = ""
+    annotations: tuple[Annotation, ...] = ()
+    centre_frequency_hz: float | None = None
+    extra: Mapping[str, object] = field(default_factory=dict)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ReadHints:
+    """What the user says about a file that may not say it itself.
+
+    Parameters
+    ----------
+    format : str or None
+        Name of a format (``sigmf``), or of a datatype (``ci16_le``), which means raw.
+    datatype : str or None
+        Name of a datatype, for files without a header.
+    sample_rate_hz : Fraction or None
+        Exact rate, Hz. It wins over the file's own, with a warning.
+    full_scale : float or None
+        Code that is to read as 1.0 in place of the datatype's: 2048 for 12-bit codes in
+        16-bit rails, 32768 for float files that hold integers.
+    reference_level_dbm : float or None
+        Power at 0 dBFS, dBm; carried, not applied.
+    """
+
+    format: str | None = None
+    datatype: str | None = None
+    sample_rate_hz: Fraction | None = None
+    full_scale: float | None = None
+    reference_level_dbm: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Recording:
+    """A file as the rest of the program sees it.
+
+    Parameters
+    ----------
+    path : Path
+        The data file.
+    files : tuple of Path
+        Every file of it (SigMF has two).
+    format : str
+        Name of its format.
+    signal : Signal
+        The samples, full scale 1.0; small, picklable, reads ranges.
+    sample_rate_hz : Fraction
+        Rate, Hz.
+    n_samples : int
+        Length.
+    datatype : Datatype
+        How samples are coded.
+    title, description : str
+        What the file says about itself.
+    centre_frequency_hz, reference_level_dbm : float or None
+        Radio frequency of 0 Hz, Hz; power at 0 dBFS, dBm.
+    annotations : tuple of Annotation
+        Markers, by start.
+    sha512 : str or None
+        Digest of the data file that the file states; not checked by reading.
+    statistics : mapping or None
+        What this program wrote about the samples, if it wrote them.
+    warnings : tuple of str
+        Legal but doubtful.
+    """
+
+    path: Path
+    files: tuple[Path, ...]
+    format: str
+    signal: Signal
+    sample_rate_hz: Fraction
+    n_samples: int
+    datatype: Datatype
+    title: str = ""
+    description: str = ""
+    centre_frequency_hz: float | None = None
+    reference_level_dbm: float | None = None
+    annotations: tuple[Annotation, ...] = ()
+    sha512: str | None = None
+    statistics: Mapping[str, object] | None = None
+    warnings: tuple[str, ...] = ()
+
+
+class Writer(Protocol):
+    """A file being written: blocks of codes, then one finish."""
+
+    def write(self, codes: Codes) -> None:
+        """Append codes of the facts' datatype, shape (n, 2).
+
+        Raises
+        ------
+        FileError
+            The disk refuses, or more samples than the facts say.
+        """
+
+    def finish(self, statistics: Mapping[str, object] | None = None) -> None:
+        """Complete and close the files.
+
+        Parameters
+        ----------
+        statistics : mapping or None
+            Measured on the codes; formats with room for it store it (JSON values).
+
+        Raises
+        ------
+        FileError
+            Fewer samples than the facts say, or the disk refuses.
+        """
+
+    def close(self) -> None:
+        """Close the files without completing them; after :meth:`finish` nothing happens."""
+
+    @property
+    def sha512(self) -> str:
+        """Hex digest of the data file's bytes, once finished."""
+
+
+class Format(Protocol):
+    """What every member of FORMATS is (the class itself is used through an instance)."""
+
+    name: ClassVar[str]
+    """Its name in recipes and on the command line."""
+    suffixes: ClassVar[tuple[str, ...]]
+    """Endings of its files, lower case; the first is the data file's."""
+    datatypes: ClassVar[Mapping[str, Datatype]]
+    """What can be written, by every name a recipe may use for it."""
+    default_datatype: ClassVar[str]
+    """Used where a recipe names none."""
+
+    def files(self, stem: str, datatype: Datatype) -> tuple[str, ...]:
+        """Return the names of the files that will be made, the data file first."""
+
+    def check(self, facts: FileFacts, where: str) -> None:
+        """Refuse what this format cannot hold, before anything is written.
+
+        Raises
+        ------
+        FileError
+            At ``where``: a datatype, a rate or a length that the format has no room for.
+        """
+
+    def writer(self, drafts: tuple[Path, ...], facts: FileFacts) -> Writer:
+        """Open the (temporary) files, in the order of :meth:`files`."""
+
+    def detect(self, path: Path, head: bytes) -> bool:
+        """Return whether this is a file of this format, by name and first 4096 bytes."""
+
+    def read(self, path: Path, hints: ReadHints) -> Recording:
+        """Open a file for reading.
+
+        Raises
+        ------
+        FileError
+            Not a file of this format, damaged, or facts missing that hints must give.
+        """
+
+
+def pick_datatype(form: Format, name: str | None, where: str) -> Datatype:
+    """Return the datatype that a name means for a format; its default for None.
+
+    Raises
+    ------
+    FileError
+        At ``where``: the format does not write it.
+    """
+    wanted = name or form.default_datatype
+    if wanted in form.datatypes:
+        return form.datatypes[wanted]
+    guess = nearest(wanted, form.datatypes)
+    raise FileError(
+        where=where,
+        problem=f"{form.name} does not write {wanted!r}",
+        allowed=", ".join(form.datatypes),
+        remedy=f"Did you mean {guess}?" if guess else f"Use {form.default_datatype}.",
+    )
