@@ -1,0 +1,227 @@
+"""Polar clipping: the envelope is limited, the phase kept."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Iterator
+from dataclasses import dataclass
+from typing import Annotated
+
+import numpy as np
+from annotated_types import Ge, Le
+from numpy.typing import NDArray
+
+from wavegen.core.evaluate import evaluate
+from wavegen.core.signal import Samples, Signal
+from wavegen.core.site import Note, Site
+
+BLOCK_SAMPLES = 1 << 14
+"""Samples worked on at once: 128 kB in, 128 kB out, 128 kB between."""
+PILOT_SAMPLES = 1 << 22
+"""Samples on which the clip amplitude is found; a period up to this length is used whole."""
+STRETCH_SAMPLES = 1 << 16
+"""One stretch of a longer period; 64 of them, spread evenly."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ClipLevel:
+    """The amplitude that gives a wanted ceiling, and what it does.
+
+    Parameters
+    ----------
+    power : float
+        Clip amplitude squared, on the scale of the input.
+    input_mean, output_mean : float
+        Mean power before and after clipping at ``power``, before anything is scaled back.
+    share_clipped : float
+        Fraction of samples above ``power``.
+    """
+
+    power: float
+    input_mean: float
+    output_mean: float
+    share_clipped: float
+
+
+def find_clip_level(pilot: list[NDArray[np.float32]], ceiling: float) -> ClipLevel | None:
+    """Solve ``A^2 / E[min(p, A^2)] = ceiling`` on samples of the power.
+
+    Parameters
+    ----------
+    pilot : list of float32 array
+        Envelope power ``p``, any lengths; not all zero.
+    ceiling : float
+        Peak over mean of the output, a power ratio above 1.
+
+    Returns
+    -------
+    ClipLevel or None
+        None where no amplitude does it: the input has so many zeros that even its smallest
+        non-zero envelope stands higher above the mean.
+
+    Notes
+    -----
+    ``h(a) = a - ceiling E[min(p, a)]`` is convex and not negative at ``ceiling E[p]``, so
+    Newton's steps from there fall to the root above zero without passing it; ``h`` is
+    piecewise linear, so they end. Derivation; tested against the clipped complex Gaussian,
+    ``ceiling = g / (1 - exp(-g))`` at ``A^2 = g E[p]``, in ``tests/truth/test_clipped_gaussian``.
+    """
+    count = sum(piece.size for piece in pilot)
+    mean = math.fsum(float(piece.sum(dtype=np.float64)) for piece in pilot) / count
+    power = ceiling * mean
+    while True:
+        limit = np.float32(power)
+        limited = [float(np.minimum(piece, limit).sum(dtype=np.float64)) for piece in pilot]
+        above = sum(int(np.count_nonzero(piece > limit)) for piece in pilot)
+        after = math.fsum(limited) / count
+        share = above / count
+        excess = power - ceiling * after
+        slope = 1 - ceiling * share
+        if excess <= 1e-7 * power:
+            return ClipLevel(power=power, input_mean=mean, output_mean=after, share_clipped=share)
+        step = excess / slope if slope > 0 else power
+        if step >= power * (1 - 1e-12):
+            return None
+        power -= step
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Clipped(Signal):
+    """A signal with its envelope limited, scaled back to the mean it had.
+
+    Parameters
+    ----------
+    amplitude : float
+        Largest envelope let through, on the scale of the input.
+    gain : float
+        Amplitude ratio that undoes the change of mean power.
+    origin : str
+        What the amplitude was found on.
+    """
+
+    amplitude: float
+    gain: float
+    origin: str
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Multiply each sample by the smaller of the gain and (ceiling over envelope).
+
+        Five float32 roundings lie between a sample and the ceiling: its envelope passes it by
+        3e-7 of it at most.
+        """
+        source = arrays[0]
+        out = np.empty(stop - start, np.complex64)
+        factor, square = np.empty((2, min(BLOCK_SAMPLES, out.size)), np.float32)
+        gain = np.float32(self.gain)
+        peak = np.float32(self.amplitude * self.gain)
+        for low in range(0, out.size, BLOCK_SAMPLES):
+            block = source[low : low + BLOCK_SAMPLES]
+            f, s = factor[: block.size], square[: block.size]
+            np.multiply(block.real, block.real, out=f)
+            np.multiply(block.imag, block.imag, out=s)
+            np.add(f, s, out=f)
+            np.maximum(f, np.float32(1e-30), out=f)  # zero stays zero instead of 0 * inf
+            np.sqrt(f, out=f)
+            np.divide(peak, f, out=f)
+            np.minimum(f, gain, out=f)
+            np.multiply(block, f, out=out[low : low + BLOCK_SAMPLES])
+        return out
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Clip:
+    """Settings of a polar clip.
+
+    Parameters
+    ----------
+    ceiling_db : float
+        Highest envelope power of the output over the mean power of the output, dB; 0.1 to 60
+        (at 0 dB nothing would be left of the envelope).
+    """
+
+    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
+
+    def build(self, site: Site, source: Signal) -> Signal:
+        """Return the clipped signal at the mean power it had before.
+
+        Parameters
+        ----------
+        site : Site
+            Where it is built. Told the clip ratio over the mean of the input, the change of
+            mean power that is undone, and the share of samples clipped.
+        source : Signal
+            What is clipped. Its period is read here (up to 2^22 samples whole, else 64
+            stretches of 2^16) to find the clip amplitude.
+
+        Returns
+        -------
+        Signal
+            ``source`` itself where it never reaches the ceiling.
+
+        Raises
+        ------
+        RecipeError
+            The source is zero, or for so much of the time that no amplitude gives the ceiling.
+        """
+        is_whole = source.n_samples <= PILOT_SAMPLES
+        pilot = list(_pilot(source))
+        highest = max(float(piece.max()) for piece in pilot)
+        ceiling = 10 ** (self.ceiling_db / 10)
+        level = find_clip_level(pilot, ceiling) if highest else None
+        if level is None:
+            share = sum(int(np.count_nonzero(piece)) for piece in pilot) / sum(
+                piece.size for piece in pilot
+            )
+            least_db = f"{-10 * math.log10(share):.2f} dB" if share else "no ceiling: it is zero"
+            raise site.error(
+                key="ceiling",
+                problem=f"{self.ceiling_db:g} dB cannot be met: the signal is zero "
+                f"for {1 - share:.3%} of the time",
+                allowed=f"above {least_db}",
+                remedy="Raise the ceiling.",
+            )
+        if is_whole and highest <= level.power:
+            papr_db = 10 * math.log10(highest / level.input_mean)
+            _tell(site, f"nothing to clip: the signal peaks {papr_db:.3f} dB over its mean")
+            return source
+        origin = (
+            "the whole period"
+            if is_whole
+            else f"{PILOT_SAMPLES // STRETCH_SAMPLES} stretches of {STRETCH_SAMPLES} samples"
+        )
+        ratio_db = 10 * math.log10(level.power / level.input_mean)
+        change_db = 10 * math.log10(level.output_mean / level.input_mean)
+        _tell(
+            site,
+            f"clips at {ratio_db:.3f} dB over the mean of its input, found on {origin}: "
+            f"{level.share_clipped:.3%} of the samples; "
+            f"the change of mean power, {change_db:.4f} dB, is undone",
+        )
+        return Clipped(
+            sample_rate_hz=source.sample_rate_hz,
+            n_samples=source.n_samples,
+            inputs=(source,),
+            mean_power=source.mean_power,
+            amplitude=math.sqrt(level.power),
+            gain=math.sqrt(level.input_mean / level.output_mean),
+            origin=origin,
+        )
+
+
+def _tell(site: Site, text: str) -> None:
+    site.notes.append(Note(kind="info", where=f"{site.path}.ceiling", text=text))
+
+
+def _pilot(source: Signal) -> Iterator[NDArray[np.float32]]:
+    """Yield the envelope power of stretches of a signal, the same stretches every time."""
+    if source.n_samples <= PILOT_SAMPLES:
+        length, starts = 1 << 20, list(range(0, source.n_samples, 1 << 20))
+    else:
+        count = PILOT_SAMPLES // STRETCH_SAMPLES
+        length, starts = STRETCH_SAMPLES, [source.n_samples * k // count for k in range(count)]
+    for start in starts:
+        stop = min(start + length, source.n_samples)
+        samples = evaluate({source: (start, stop)})[source]
+        power = samples.real * samples.real
+        power += samples.imag * samples.imag
+        yield power
