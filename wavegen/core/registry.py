@@ -61,9 +61,12 @@ class Member:
     tables : tuple of str
         Names of the tables that may hold it, as the recipe room knows them:
         ``signal``, ``stage``, ``pulse``, ``data``.
+    default : str, optional
+        Member that a mapping without ``kind:`` means; without it ``kind`` must be given.
     """
 
     tables: tuple[str, ...]
+    default: str | None = None
 
 
 def nearest(name: str, known: Mapping[str, object] | list[str] | tuple[str, ...]) -> str | None:

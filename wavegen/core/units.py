@@ -15,6 +15,9 @@ from wavegen.core.registry import nearest
 _NUMBER = r"[+-]?[0-9]+(?:\.[0-9]+)?(?:[eE][+-]?[0-9]{1,2})?"
 _QUANTITY = re.compile(rf"({_NUMBER})(?:/([0-9]+(?:\.[0-9]+)?))?(?:\s*([^\s0-9./][^\s0-9]*))?")
 
+_LONGEST = 64
+"""Characters of a number with its unit: no figure needs more, and huge ones cost time."""
+
 _PREFIXES = {
     "G": 9,
     "M": 6,
@@ -36,9 +39,12 @@ class QuantityError(ValueError):
     ----------
     problem, allowed, remedy : str
         As in :class:`wavegen.core.errors.WavegenError`.
+    key : str
+        Where inside the value, as a recipe path: ``roll_off`` or ``[2]``; empty for all of it.
     """
 
-    def __init__(self, *, problem: str, allowed: str, remedy: str) -> None:
+    def __init__(self, *, problem: str, allowed: str, remedy: str, key: str = "") -> None:
+        self.key = key
         self.problem = problem
         self.allowed = allowed
         self.remedy = remedy
@@ -143,6 +149,12 @@ def split_quantity(text: str) -> tuple[Fraction, str]:
     >>> split_quantity("1625/6 kHz")
     (Fraction(1625, 6), 'kHz')
     """
+    if len(text) > _LONGEST:
+        raise QuantityError(
+            problem=f"{text[:20]!r}... is {len(text)} characters long",
+            allowed=f"numbers of up to {_LONGEST} characters",
+            remedy="Write fewer digits.",
+        )
     found = _QUANTITY.fullmatch(text.strip())
     if found is None:
         raise QuantityError(
@@ -192,12 +204,19 @@ def parse_quantity(text: str, dimension: Dimension) -> Fraction:
     number, unit = split_quantity(text)
     if unit in dimension.units:
         return number * dimension.units[unit]
-    allowed = ", ".join(dimension.units) or "no unit"
+    if not dimension.base:
+        raise QuantityError(
+            problem=f"{text!r} has the unit {unit!r}",
+            allowed="a number or a ratio without a unit",
+            remedy=f"Write it like {dimension.example}.",
+        )
+    allowed = ", ".join(dimension.units)
     if not unit:
         raise QuantityError(
             problem=f"{text!r} has no unit",
             allowed=f"a number with one of: {allowed}",
-            remedy=f"Write it like {dimension.example}.",
+            remedy=f"Write {text.strip()} {dimension.base} if that is meant, "
+            f"or as in {dimension.example}.",
         )
     guess = _look_alike(unit, dimension)
     raise QuantityError(
