@@ -8,7 +8,6 @@ common practice of receivers that make them, ``(u - 127.5) / 127.5``.
 
 from __future__ import annotations
 
-import sys
 from dataclasses import dataclass
 from typing import Any
 
@@ -21,8 +20,8 @@ from wavegen.core.signal import Samples
 Codes = NDArray[Any]
 """Sample codes, shape (n_samples, 2): column 0 is I, column 1 is Q."""
 
-_BLOCK = 1 << 13
-"""Samples worked on at a time: the float rails of a block (64 kB) stay in the inner cache."""
+_BLOCK = 1 << 15
+"""Samples worked on at a time: the float rails of a block (256 kB) stay in the second cache."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -102,7 +101,7 @@ DATATYPES: dict[str, Datatype] = {
 """All datatypes by name."""
 
 
-def encode(samples: Samples, datatype: Datatype) -> tuple[Codes, int]:
+def encode(samples: Samples, datatype: Datatype, out: Codes | None = None) -> tuple[Codes, int]:
     """Round samples to codes: half to even, saturating at the ends.
 
     Parameters
@@ -111,11 +110,13 @@ def encode(samples: Samples, datatype: Datatype) -> tuple[Codes, int]:
         Full scale 1.0.
     datatype : Datatype
         What is written.
+    out : array of ``datatype.dtype``, shape (n_samples, 2), C order, optional
+        Where the codes go: reuse one over many blocks (fresh memory costs as much again).
 
     Returns
     -------
     codes : array of ``datatype.dtype``, shape (n_samples, 2)
-        For ``cf32_le`` it may share the memory of ``samples``.
+        ``out`` if given; else, for ``cf32_le``, it may share the memory of ``samples``.
     n_saturated : int
         Rails (not samples) whose rounded value lay outside the codes. Always 0 for floats.
 
@@ -126,7 +127,7 @@ def encode(samples: Samples, datatype: Datatype) -> tuple[Codes, int]:
 
     Notes
     -----
-    Full scales are powers of two, so the only rounding is that to the code.
+    Full scales are powers of two (but for ``cu8``), so the only rounding is that to the code.
 
     Examples
     --------
@@ -137,8 +138,12 @@ def encode(samples: Samples, datatype: Datatype) -> tuple[Codes, int]:
     samples = np.ascontiguousarray(samples, np.complex64)
     rails = samples.view(np.float32)
     if not datatype.is_integer:
-        return rails.reshape(-1, 2).astype(datatype.dtype, copy=False), 0
-    codes = np.empty(rails.size, datatype.dtype)
+        pairs = rails.reshape(-1, 2)
+        if out is None:
+            return pairs.astype(datatype.dtype, copy=False), 0
+        out[:] = pairs
+        return out, 0
+    codes = np.empty(rails.size, datatype.dtype) if out is None else out.reshape(-1)
     kind = np.float64 if datatype.n_bits > 24 else np.float32
     scale, offset = kind(datatype.full_scale), kind(datatype.offset)
     low, high = datatype.lowest, datatype.highest
@@ -153,26 +158,10 @@ def encode(samples: Samples, datatype: Datatype) -> tuple[Codes, int]:
             if not np.isfinite(part).all():
                 raise _not_finite(part, start)
             np.rint(work, out=work)
-            n_saturated += int(np.count_nonzero((work < low) | (work > high)))
+            n_saturated += int(np.count_nonzero(work < low) + np.count_nonzero(work > high))
             np.clip(work, low, high, out=work)
-        _round_into(codes[start : start + part.size], work, datatype.n_bits)
+        codes[start : start + part.size] = np.rint(work, out=work)
     return codes.reshape(-1, 2), n_saturated
-
-
-def _round_into(codes: Codes, work: NDArray[Any], n_bits: int) -> None:
-    """Round to even into codes; ``work`` is spent.
-
-    Up to 16 bits: adding 1.5 * 2^23 leaves a float32 no fraction bits, so the addition itself
-    rounds to even and the integer stands in the low bits of the word. Several times as fast as
-    ``rint`` and the library's conversion from float to a short integer.
-    """
-    if n_bits > 16:
-        codes[:] = np.rint(work, out=work)
-        return
-    work += np.float32(1.5 * 2**23)
-    words = work.view(np.dtype(f"i{n_bits // 8}"))
-    per_rail = 32 // n_bits
-    codes[:] = words[(0 if sys.byteorder == "little" else per_rail - 1) :: per_rail]
 
 
 def _not_finite(part: NDArray[np.float32], start: int) -> SignalError:
@@ -217,17 +206,29 @@ def decode(codes: Codes, datatype: Datatype) -> Samples:
             rails[:] = flat
         return samples
     offset = np.float32(datatype.offset)
-    exact = np.float32(1.0 / datatype.full_scale)
-    is_power_of_two = not offset
+    full_scale = np.float32(datatype.full_scale)
+    step = np.float32(1.0 / datatype.full_scale)
     for start in range(0, flat.size, 2 * _BLOCK):
         work = rails[start : start + 2 * _BLOCK]
         work[:] = flat[start : start + 2 * _BLOCK]
-        if is_power_of_two:
-            work *= exact
-        else:
+        if offset:
             work -= offset
-            work /= np.float32(datatype.full_scale)
+            work /= full_scale
+        else:
+            work *= step  # a power of two, so this is exact, and faster than a division
     return samples
+
+
+def first_not_finite(samples: Samples) -> int | None:
+    """Return the index of the first NaN or infinite sample of a block, or None.
+
+    Examples
+    --------
+    >>> first_not_finite(np.array([0, 1j, complex("nan")], np.complex64))
+    2
+    """
+    is_finite = np.isfinite(samples)
+    return None if is_finite.all() else int(np.argmin(is_finite))
 
 
 def quantised(samples: Samples, datatype: Datatype) -> Samples:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import errno
+import stat
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -94,3 +95,44 @@ def told(path: Path) -> Iterator[None]:
         yield
     except OSError as error:
         raise os_fault(path, error) from error
+
+
+def regular_size(path: Path) -> int:
+    """Return the size of an ordinary file, bytes, without opening it.
+
+    Raises
+    ------
+    FileError
+        Missing, out of reach, a folder, a pipe, a socket or a device (reading one of those
+        could wait for ever).
+    """
+    with told(path):
+        status = path.stat()
+    if stat.S_ISDIR(status.st_mode):
+        raise FileError(
+            where=str(path),
+            problem="is a folder",
+            allowed="a file",
+            remedy="Name the file inside it.",
+        )
+    if not stat.S_ISREG(status.st_mode):
+        raise FileError(
+            where=str(path),
+            problem="is a pipe, a socket or a device",
+            allowed="an ordinary file, of which any part can be read",
+            remedy="Save the samples to a file first.",
+        )
+    return status.st_size
+
+
+def read_head(path: Path, n_bytes: int = 4096) -> bytes:
+    """Return the first bytes of an ordinary file.
+
+    Raises
+    ------
+    FileError
+        As :func:`regular_size`, or it cannot be opened.
+    """
+    regular_size(path)
+    with told(path), path.open("rb") as file:
+        return file.read(n_bytes)

@@ -11,6 +11,7 @@ from typing import ClassVar, Protocol
 from wavegen.core.errors import FileError
 from wavegen.core.registry import nearest
 from wavegen.core.signal import Signal
+from wavegen.core.units import format_hz
 from wavegen.files.datatypes import Codes, Datatype
 
 
@@ -247,3 +248,68 @@ def pick_datatype(form: Format, name: str | None, where: str) -> Datatype:
         allowed=", ".join(form.datatypes),
         remedy=f"Did you mean {guess}?" if guess else f"Use {form.default_datatype}.",
     )
+
+
+def check_facts(form: Format, facts: FileFacts, where: str) -> None:
+    """Refuse what no format can hold, and datatypes that ``form`` does not write.
+
+    Raises
+    ------
+    FileError
+        At ``where``.
+    """
+    if facts.datatype not in form.datatypes.values():
+        pick_datatype(form, facts.datatype.name, where)
+    if facts.n_samples < 1 or facts.sample_rate_hz <= 0:
+        raise FileError(
+            where=where,
+            problem=f"{facts.n_samples} samples at {format_hz(facts.sample_rate_hz)}",
+            allowed="at least one sample, at a rate above 0 Hz",
+            remedy="Correct the duration or the sample rate.",
+        )
+
+
+def told_rate(
+    path: Path, *, stated_hz: Fraction | None, hints: ReadHints
+) -> tuple[Fraction, tuple[str, ...]]:
+    """Return the sample rate that holds, and a warning where the user overrules the file.
+
+    Raises
+    ------
+    FileError
+        Neither the file nor the user gives one.
+    """
+    asked = hints.sample_rate_hz
+    if asked is None:
+        if stated_hz is None:
+            raise FileError(
+                where=str(path),
+                problem="does not give the sample rate",
+                allowed="samples together with their rate",
+                remedy="Add --sample-rate, such as --sample-rate 20MHz.",
+            )
+        return stated_hz, ()
+    if stated_hz is None or stated_hz == asked:
+        return asked, ()
+    text = (
+        f"{path.name} states {format_hz(stated_hz)}; "
+        f"read at {format_hz(asked)}, as --sample-rate says"
+    )
+    return asked, (text,)
+
+
+def refuse_other_datatype(path: Path, stated: Datatype, hints: ReadHints) -> None:
+    """Refuse a datatype hint that contradicts the file's header.
+
+    Raises
+    ------
+    FileError
+        The two differ.
+    """
+    if hints.datatype not in {None, stated.name}:
+        raise FileError(
+            where=str(path),
+            problem=f"its header says {stated.name}, the option says {hints.datatype}",
+            allowed="the header's datatype",
+            remedy="Leave the datatype out, or read the data file as raw with --format.",
+        )

@@ -1,0 +1,140 @@
+"""Raw interleaved I and Q without a header: the file's ending names the datatype.
+
+``NAME.ci16_le`` holds little-endian 16-bit pairs and nothing else. Rate, level and title have
+no place in such a file; on reading, the rate is always told (``--sample-rate 20MHz``), and the
+datatype where the ending does not name it (``--format ci16_le``).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from fractions import Fraction
+from pathlib import Path
+from typing import ClassVar
+
+from wavegen.core.errors import FileError
+from wavegen.files.datatypes import (
+    CF32_LE,
+    CF64_LE,
+    CI8,
+    CI16_BE,
+    CI16_LE,
+    CI32_LE,
+    CU8,
+    Codes,
+    Datatype,
+)
+from wavegen.files.faults import read_head
+from wavegen.files.format import FileFacts, ReadHints, Recording, Writer, check_facts
+from wavegen.files.interleaved import InterleavedWriter, open_interleaved
+from wavegen.files.signatures import signature_of
+
+_WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)}
+_READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE)}
+
+
+class Raw:
+    """Raw interleaved files."""
+
+    name: ClassVar[str] = "raw"
+    suffixes: ClassVar[tuple[str, ...]] = tuple(f".{name}" for name in _READ)
+    datatypes: ClassVar[Mapping[str, Datatype]] = _WRITTEN
+    default_datatype: ClassVar[str] = "ci16_le"
+
+    def files(self, stem: str, datatype: Datatype) -> tuple[str, ...]:
+        """Return the name of the file: the stem with the datatype as its ending."""
+        return (f"{stem}.{datatype.name}",)
+
+    def check(self, facts: FileFacts, where: str) -> None:
+        """Refuse a datatype that is not written."""
+        check_facts(self, facts, where)
+
+    def writer(self, drafts: tuple[Path, ...], facts: FileFacts) -> Writer:
+        """Open the file."""
+        return RawWriter(drafts[0], facts)
+
+    def detect(self, path: Path, head: bytes) -> bool:
+        """Return whether the ending names a datatype and nothing says otherwise."""
+        return path.suffix.lower() in self.suffixes and signature_of(head) is None
+
+    def read(self, path: Path, hints: ReadHints) -> Recording:
+        """Open a file whose datatype is told, or named by its ending.
+
+        Raises
+        ------
+        FileError
+            No datatype, no sample rate, empty, or not whole samples.
+        """
+        datatype = _datatype_of(path, hints)
+        if hints.sample_rate_hz is None:
+            raise FileError(
+                where=str(path),
+                problem="has no header that gives the sample rate",
+                allowed="raw samples together with their rate",
+                remedy="Add --sample-rate, such as --sample-rate 20MHz.",
+            )
+        signal = open_interleaved(
+            path,
+            datatype=datatype,
+            sample_rate_hz=hints.sample_rate_hz,
+            full_scale=hints.full_scale,
+        )
+        known = signature_of(read_head(path))
+        doubt = f"{path.name} starts like {known.what}; it is read as bare samples" if known else ""
+        return Recording(
+            path=path,
+            files=(path,),
+            format=self.name,
+            signal=signal,
+            sample_rate_hz=Fraction(hints.sample_rate_hz),
+            n_samples=signal.n_samples,
+            datatype=datatype,
+            reference_level_dbm=hints.reference_level_dbm,
+            warnings=(doubt,) if doubt else (),
+        )
+
+
+def _datatype_of(path: Path, hints: ReadHints) -> Datatype:
+    told = hints.datatype or (hints.format if hints.format in _READ else None)
+    wanted = told or path.suffix.lower().removeprefix(".")
+    if wanted in _READ:
+        return _READ[wanted]
+    raise FileError(
+        where=str(path),
+        problem=f"raw samples cannot be {told!r}" if told else "its name does not say the datatype",
+        allowed=", ".join(_READ),
+        remedy="Name it, such as --format ci16_le --sample-rate 20MHz.",
+    )
+
+
+class RawWriter:
+    """Writes one raw file.
+
+    Parameters
+    ----------
+    draft : Path
+        The (temporary) file.
+    facts : FileFacts
+        What will come.
+    """
+
+    def __init__(self, draft: Path, facts: FileFacts) -> None:
+        self._data = InterleavedWriter(draft, datatype=facts.datatype, n_samples=facts.n_samples)
+        self._sha512 = ""
+
+    def write(self, codes: Codes) -> None:
+        """Append codes, shape (n, 2)."""
+        self._data.write(codes)
+
+    def finish(self, statistics: Mapping[str, object] | None = None) -> None:
+        """Close the file; a raw file has no room for statistics."""
+        self._sha512 = self._data.complete()
+
+    def close(self) -> None:
+        """Close the file as it is."""
+        self._data.close()
+
+    @property
+    def sha512(self) -> str:
+        """Hex digest of the file's bytes."""
+        return self._sha512
