@@ -1,0 +1,90 @@
+"""`wavegen make`: stimulus files from recipes, measured and verified."""
+
+from __future__ import annotations
+
+import argparse
+from pathlib import Path
+from typing import Any
+
+from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.options import add_overrides, add_workers
+
+DIFFERS = 5
+
+
+class Make:
+    """The verb ``make``."""
+
+    summary = "make stimulus files from recipes, measured and verified"
+    description = (
+        "Make the files of one or more recipes. Everything of a recipe goes to OUT/NAME/:\n"
+        "the stimulus in each format asked for, and one sidecar NAME.ccdf.json and\n"
+        "NAME.ccdf.csv with the power statistics of what was written."
+    )
+
+    @staticmethod
+    def arguments(parser: argparse.ArgumentParser) -> None:
+        """Declare the arguments."""
+        parser.add_argument("recipes", nargs="+", metavar="RECIPE", help="a file, or a shipped recipe's name")
+        parser.add_argument("--out", type=Path, default=Path("output"), metavar="DIR", help="default: output")
+        parser.add_argument("--overwrite", action="store_true", help="replace files that exist")
+        add_overrides(parser)
+        add_workers(parser)
+
+    @staticmethod
+    def run(arguments: argparse.Namespace, console: Console) -> int:
+        """Make the files and print what they measure."""
+        from wavegen.core.allocation import keep_large_blocks
+
+        keep_large_blocks()
+        from wavegen.production.make import make
+        from wavegen.recipe.find import find_recipe
+        from wavegen.recipe.load import load_recipe
+
+        loaded = [
+            load_recipe(find_recipe(name), overrides=tuple(arguments.overrides))
+            for name in arguments.recipes
+        ]
+        documents = []
+        differs = False
+        progress = ConsoleProgress()
+        for recipe in loaded:
+            try:
+                made = make(
+                    recipe,
+                    out=arguments.out,
+                    overwrite=arguments.overwrite,
+                    workers=arguments.workers,
+                    progress=progress,
+                )
+            finally:
+                progress.close()
+            differs = differs or made.differs
+            document = {"folder": str(made.folder), **made.document}
+            documents.append(document)
+            if not arguments.json:
+                show(document, console)
+        if arguments.json:
+            console.document(documents[0] if len(documents) == 1 else documents)
+        return DIFFERS if differs else 0
+
+
+def show(document: dict[str, Any], console: Console) -> None:
+    """Print one stimulus: files, figures, levels, levels along the bench."""
+    from wavegen.reports.tables import bench_table, file_table, level_table, summary_table
+
+    for note in (*document["rounded"], *document["warnings"]):
+        change = f" (asked {note['asked']}, got {note['given']})" if "given" in note else ""
+        console.warn(f"{note['where']}: {note['text']}{change}")
+    title = document["title"] or document["recipe"]["name"]
+    console.table(summary_table(document, title=title))
+    console.table(level_table(document))
+    law = document["law"]
+    if law:
+        console.line(f"Law: {law['name']}; the file {law['verdict']} with it.".replace("differs with", "differs from"))
+    bench = bench_table(document)
+    if bench:
+        console.table(bench)
+        console.line(document["safety"])
+    console.line(f"In {document['folder']}:")
+    console.table(file_table(document))

@@ -1,0 +1,168 @@
+"""`wavegen measure`: the power statistics of a file or a recipe."""
+
+from __future__ import annotations
+
+import argparse
+from pathlib import Path
+from typing import Any
+
+from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.options import (
+    add_overrides,
+    add_workers,
+    level_dbm,
+    place,
+    positive,
+    rate,
+)
+from wavegen.core.errors import ArgumentsError
+
+RECIPE_SUFFIXES = {".yaml", ".yml"}
+
+
+class Measure:
+    """The verb ``measure``."""
+
+    summary = "measure the power statistics of a file or a recipe"
+    description = (
+        "Measure mean, peaks and the CCDF of a recording, of a stimulus file, or of what a\n"
+        "recipe would make. A file with a sidecar is a loop; any other is a recording unless\n"
+        "--loop or --period says otherwise."
+    )
+
+    @staticmethod
+    def arguments(parser: argparse.ArgumentParser) -> None:
+        """Declare the arguments."""
+        parser.add_argument("subject", metavar="FILE|RECIPE", help="a data file, or a recipe by file or name")
+        group = parser.add_argument_group("files without a header")
+        group.add_argument("--format", metavar="NAME", help="a format or datatype, such as ci16_le")
+        group.add_argument("--sample-rate", type=rate, metavar="RATE", help="such as 20MHz")
+        group.add_argument("--full-scale", type=positive, metavar="CODE", help="code that reads as 1.0")
+        parser.add_argument(
+            "--reference-level", type=level_dbm, metavar="LEVEL", help="power at 0 dBFS, such as -20dBm"
+        )
+        parser.add_argument("--from", dest="first", metavar="AT", help="first sample: 10ms or 4096samples")
+        parser.add_argument("--to", dest="stop", metavar="AT", help="where to stop (not included)")
+        loops = parser.add_mutually_exclusive_group()
+        loops.add_argument("--loop", action="store_true", help="the file repeats as a whole")
+        loops.add_argument("--period", metavar="N", help="it repeats after this time or number of samples")
+        add_overrides(parser)
+        add_workers(parser)
+
+    @staticmethod
+    def run(arguments: argparse.Namespace, console: Console) -> int:
+        """Measure and print."""
+        from wavegen.core.allocation import keep_large_blocks
+
+        keep_large_blocks()
+        progress = ConsoleProgress()
+        try:
+            if _is_recipe(arguments.subject):
+                document = _recipe(arguments, progress)
+            else:
+                document = _file(arguments, progress)
+        finally:
+            progress.close()
+        if arguments.json:
+            console.document(document)
+        else:
+            show(document, console)
+        return 0
+
+
+def _is_recipe(subject: str) -> bool:
+    path = Path(subject)
+    if path.suffix.lower() in RECIPE_SUFFIXES:
+        return True
+    if path.exists() or path.suffix or len(path.parts) > 1:
+        return False
+    from wavegen.recipe.find import shipped_recipes
+
+    return any(recipe.name == subject for recipe in shipped_recipes())
+
+
+def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
+    from wavegen.production.measure import measure_recipe
+    from wavegen.production.prepare import prepare
+    from wavegen.recipe.find import find_recipe
+    from wavegen.recipe.load import load_recipe
+
+    for option in ("format", "sample_rate", "full_scale", "first", "stop", "period", "loop"):
+        if getattr(arguments, option):
+            name = {"first": "from", "stop": "to"}.get(option, option.replace("_", "-"))
+            raise ArgumentsError(
+                where=f"--{name}",
+                problem="a recipe is measured as the whole loop that it makes",
+                allowed="this option with a data file",
+                remedy="Leave it out, or change the recipe with --set.",
+            )
+    loaded = load_recipe(find_recipe(arguments.subject), overrides=tuple(arguments.overrides))
+    return measure_recipe(prepare(loaded), workers=arguments.workers, progress=progress)
+
+
+def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
+    from wavegen.core.excerpt import excerpt
+    from wavegen.files.format import ReadHints
+    from wavegen.files.read import open_recording
+    from wavegen.production.measure import Subject, measure
+    from wavegen.production.stimulus import sidecar_of
+
+    if arguments.overrides:
+        raise ArgumentsError(
+            where="--set",
+            problem="a data file has no recipe to change",
+            allowed="--set with a recipe",
+            remedy="Leave it out.",
+        )
+    hints = ReadHints(
+        format=arguments.format,
+        sample_rate_hz=arguments.sample_rate,
+        full_scale=arguments.full_scale,
+        reference_level_dbm=arguments.reference_level,
+    )
+    recording = open_recording(Path(arguments.subject), hints)
+    sidecar = sidecar_of(recording)
+    rate_hz, n_samples = recording.sample_rate_hz, recording.n_samples
+    first = place(arguments.first, rate_hz, "--from") or 0
+    stop = place(arguments.stop, rate_hz, "--to")
+    period = place(arguments.period, rate_hz, "--period")
+    is_cut = first > 0 or stop is not None or period is not None
+    stop = n_samples if stop is None else stop
+    if period is not None:
+        stop = min(stop, first + period)
+    if not 0 <= first < stop <= n_samples or (period is not None and stop - first < period):
+        raise ArgumentsError(
+            where="--from/--to/--period",
+            problem=f"samples {first} to {stop} are asked of {n_samples}",
+            allowed=f"a stretch inside 0 to {n_samples} samples that is not empty",
+            remedy="Correct the limits.",
+        )
+    loops = arguments.loop or period is not None or (sidecar is not None and not is_cut)
+    subject = Subject(
+        name=recording.path.name,
+        signal=excerpt(recording.signal, first, stop),
+        loops=loops,
+        cycle_samples=sidecar["loop"]["cycle_samples"] if sidecar and not is_cut else None,
+        reference_level_dbm=recording.reference_level_dbm,
+    )
+    document = measure(subject, workers=arguments.workers, progress=progress)
+    document |= {"file_format": recording.format, "datatype": recording.datatype.name}
+    document["warnings"] = [
+        {"kind": "warning", "where": str(recording.path), "text": text}
+        for text in recording.warnings
+    ]
+    return document
+
+
+def show(document: dict[str, Any], console: Console) -> None:
+    """Print one measurement."""
+    from wavegen.production.sidecar import SAFETY
+    from wavegen.reports.tables import level_table, summary_table
+
+    for note in (*document.get("rounded", ()), *document["warnings"]):
+        console.warn(f"{note['where']}: {note['text']}")
+    kind = f"{document['file_format']} {document['datatype']}, " if "file_format" in document else ""
+    console.table(summary_table(document, title=f"{document['name']} ({kind}{document['is']})"))
+    console.table(level_table(document))
+    if "mean_dbm" in document:
+        console.line(SAFETY)

@@ -1,0 +1,310 @@
+"""The sidecar of a stimulus: what was made, how, and what its codes measure."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import platform
+import re
+from collections.abc import Sequence
+from dataclasses import asdict
+from functools import cache
+from importlib import metadata, resources
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen import __version__
+from wavegen.core.site import Note
+from wavegen.core.units import format_hz
+from wavegen.laws.law import Law
+from wavegen.meters.peak import BetweenSamplesPeak
+from wavegen.meters.power import PowerStatistics
+from wavegen.meters.seam import SeamFigure
+from wavegen.production.bench import PathLevel
+from wavegen.production.export import ExportedFile
+from wavegen.production.prepare import Prepared
+from wavegen.production.waveform import Waveform
+
+FORMAT = "wavegen.ccdf"
+VERSION = 1
+GRID_STEP_DB = 0.05
+LOWEST_PROBABILITY = 1e-9
+PROBABILITIES = (0.1, 0.01, 1e-3, 1e-4, 1e-5, 1e-6)
+PAPR_NOTE = "of the complex envelope: an unmodulated carrier reads 0 dB"
+_NUMBERS = re.compile(r"\[[-+0-9.eE,\s]+\]")
+LIBRARIES = ("numpy", "scipy", "sigmf", "soundfile", "pydantic", "ruamel.yaml")
+SAFETY = (
+    "Check the peak envelope power against every rating in the path, use a load or an "
+    "attenuator, radiate only with a licence and under local rules, keep within the exposure "
+    "limits that apply, and leave the decision to qualified people."
+)
+
+
+@cache
+def schema() -> dict[str, Any]:
+    """Return the JSON Schema of a sidecar, as shipped in the package."""
+    text = resources.files("wavegen.production").joinpath("sidecar.schema.json").read_text()
+    found: dict[str, Any] = json.loads(text)
+    return found
+
+
+def rounded(value: float, digits: int = 6) -> float | None:
+    """Return a figure for JSON: finite and rounded, None if there is none."""
+    return round(float(value), digits) if np.isfinite(value) else None
+
+
+def level_rows(statistics: PowerStatistics) -> list[dict[str, Any]]:
+    """Return the levels at 10 % ... 0.0001 %, dB over the mean."""
+    return [
+        {
+            "probability": row.probability,
+            "level_db": rounded(row.level_db, 4),
+            "resolved": bool(row.resolved),
+        }
+        for row in statistics.levels(PROBABILITIES)
+    ]
+
+
+def grid_db(statistics: PowerStatistics) -> NDArray[np.float64]:
+    """Return the level grid of a curve: 0.05 dB, from -30 dB to just over the peak."""
+    top = int(np.ceil(statistics.papr_db / GRID_STEP_DB)) + 1
+    low = round(-30 / GRID_STEP_DB)
+    return np.arange(low, max(top, low + 1) + 1) * GRID_STEP_DB
+
+
+def curves(statistics: PowerStatistics) -> dict[str, Any]:
+    """Return PDF, CDF and CCDF on the level grid.
+
+    Notes
+    -----
+    The PDF is the share of time between one level and the next, per dB, so that it adds up to
+    what lies on the grid; the CDF is ``1 - CCDF`` and counts exact zeros.
+    """
+    level = grid_db(statistics)
+    ccdf = statistics.ccdf(level)
+    pdf = -np.diff(ccdf, append=0.0) / GRID_STEP_DB
+    at = [round(float(x), 2) for x in level]
+    return {
+        "ccdf": {"level_db": at, "probability": [float(x) for x in ccdf]},
+        "cdf": {"level_db": at, "probability": [float(x) for x in 1 - ccdf]},
+        "pdf": {"level_db": at, "per_db": [float(max(x, 0.0)) for x in pdf]},
+    }
+
+
+def power_figures(statistics: PowerStatistics, peak: BetweenSamplesPeak) -> dict[str, Any]:
+    """Return mean, peaks, levels and curves of one set of codes."""
+    return {
+        "mean_dbfs": rounded(statistics.mean_db),
+        "peak_dbfs": rounded(statistics.peak_db),
+        "peak_between_samples_dbfs": rounded(10 * np.log10(peak.power)),
+        "papr_db": rounded(statistics.papr_db),
+        "papr_between_samples_db": rounded(10 * np.log10(peak.power) - statistics.mean_db),
+        "n_samples": statistics.n_samples,
+        "n_zeros": statistics.n_zeros,
+        "levels": level_rows(statistics),
+        **curves(statistics),
+    }
+
+
+def gaussian_reference(level_db: NDArray[np.float64]) -> dict[str, Any]:
+    """Return the complex Gaussian's CCDF on a grid: ``exp(-x)``, x the power over the mean."""
+    probability = np.exp(-(10 ** (level_db / 10)))
+    return {
+        "name": "complex Gaussian",
+        "level_db": [round(float(x), 2) for x in level_db],
+        "probability": [float(x) for x in probability],
+    }
+
+
+def law_document(law: Law | None, verdict: str) -> dict[str, Any] | None:
+    """Return a law's curve on a 0.05 dB grid down to 1e-9, and how the file compares."""
+    if law is None:
+        return None
+    high = law.level_db(LOWEST_PROBABILITY)
+    count = int(np.ceil((high + 30) / GRID_STEP_DB)) + 2
+    level = -30 + np.arange(count) * GRID_STEP_DB
+    return {
+        "name": law.name,
+        "holds": law.holds,
+        "level_db": [round(float(x), 2) for x in level],
+        "probability": [float(x) for x in law.ccdf(level)],
+        "levels": [
+            {"probability": q, "level_db": rounded(law.level_db(q), 4)} for q in PROBABILITIES
+        ],
+        "verdict": verdict,
+    }
+
+
+def note_rows(notes: Sequence[Note]) -> list[dict[str, Any]]:
+    """Return notes as rows without empty cells."""
+    return [{k: v for k, v in asdict(note).items() if v is not None} for note in notes]
+
+
+def versions() -> dict[str, str]:
+    """Return the versions of the program, Python and the libraries that shape the bytes."""
+    found = {"wavegen": __version__, "python": platform.python_version()}
+    return found | {name: metadata.version(name) for name in LIBRARIES}
+
+
+def stimulus_document(
+    prepared: Prepared,
+    waveform: Waveform,
+    *,
+    files: Sequence[ExportedFile],
+    gain: float,
+    law: Law | None,
+    verdict: str,
+    levels: Sequence[PathLevel],
+) -> dict[str, Any]:
+    """Return the sidecar of a stimulus as JSON values.
+
+    Parameters
+    ----------
+    prepared : Prepared
+        The recipe and what was rounded.
+    waveform : Waveform
+        What was rendered.
+    files : sequence of ExportedFile
+        At least one; its figures stand at the top level too.
+    gain : float
+        Amplitude factor from unit mean power to full scale.
+    law : Law or None
+        Exact curve where there is one.
+    verdict : {"agrees", "differs", "undecided"}
+        How the first file compares with it.
+    levels : sequence of PathLevel
+        Along the bench's path; empty without a bench.
+
+    Returns
+    -------
+    dict
+        Valid by :func:`schema`.
+    """
+    loaded = prepared.loaded
+    recipe = loaded.recipe
+    rate = recipe.sample_rate_hz
+    first = files[0]
+    nominal = prepared.built.signal.mean_power
+    return {
+        "format": FORMAT,
+        "version": VERSION,
+        "title": recipe.title,
+        "recipe": {
+            "name": loaded.name,
+            "sha256": loaded.sha256,
+            "text": loaded.text,
+            "overrides": list(loaded.overrides),
+        },
+        "seed": recipe.seed,
+        "versions": versions(),
+        "sample_rate_hz": float(rate),
+        "sample_rate_exact_hz": str(rate),
+        "n_samples": waveform.statistics.n_samples,
+        "duration_s": float(waveform.statistics.n_samples / rate),
+        "full_scale": "0 dBFS is an envelope equal to one rail's full scale",
+        "papr_is": PAPR_NOTE,
+        "loop": {
+            "cycle_samples": prepared.cycle_samples,
+            "seam": seam_row(waveform.seam),
+        },
+        "mean": {
+            "nominal_db": None if nominal is None else rounded(10 * np.log10(nominal)),
+            "realised_db": rounded(waveform.statistics.mean_db),
+            "parts": part_rows(prepared, waveform),
+        },
+        "scaling": {
+            "gain_db": rounded(20 * np.log10(gain)),
+            "peak_dbfs": rounded(20 * np.log10(gain) + 10 * np.log10(waveform.peak.power)),
+            "average_dbfs": rounded(20 * np.log10(gain) + waveform.statistics.mean_db),
+        },
+        "rounded": note_rows([n for n in prepared.notes if n.kind == "rounded"]),
+        "warnings": note_rows([n for n in prepared.notes if n.kind == "warning"]),
+        "notes": note_rows([n for n in prepared.notes if n.kind == "info"]),
+        **power_figures(first.statistics, first.peak),
+        "reference": gaussian_reference(grid_db(first.statistics)),
+        "law": law_document(law, verdict),
+        "bench": bench_rows(levels),
+        "files": [file_row(item) for item in files],
+        "safety": SAFETY,
+    }
+
+
+def seam_row(seam: SeamFigure) -> dict[str, Any]:
+    """Return the loop-seam figure as JSON values."""
+    return {
+        key: rounded(value, 2) if isinstance(value, float) else value
+        for key, value in asdict(seam).items()
+    } | {"is_clean": bool(seam.is_clean)}
+
+
+def part_rows(prepared: Prepared, waveform: Waveform) -> list[dict[str, Any]]:
+    """Return nominal and realised mean of each part, dB over unit power."""
+    rows = []
+    for part in prepared.built.parts:
+        nominal = part.signal.mean_power
+        rows.append(
+            {
+                "path": part.path,
+                "name": part.name,
+                "nominal_db": None if nominal is None else rounded(10 * np.log10(nominal)),
+                "realised_db": rounded(10 * np.log10(waveform.part_means[part.path])),
+            }
+        )
+    return rows
+
+
+def bench_rows(levels: Sequence[PathLevel]) -> dict[str, Any] | None:
+    """Return the levels along the path, None without a bench."""
+    if not levels:
+        return None
+    rows = []
+    for level in levels:
+        row = {k: v for k, v in asdict(level).items() if v is not None}
+        rows.append({k: rounded(v, 3) if isinstance(v, float) else v for k, v in row.items()})
+    return {"levels_are": "at the input of each place", "path": rows}
+
+
+def file_row(item: ExportedFile) -> dict[str, Any]:
+    """Return one file's entry."""
+    return {
+        "name": item.names[0],
+        "all_names": list(item.names),
+        "format": item.format,
+        "datatype": item.datatype.name,
+        "sha512": item.sha512,
+        "n_saturated": item.n_saturated,
+        **power_figures(item.statistics, item.peak),
+    }
+
+
+def as_json(document: dict[str, Any]) -> str:
+    """Return the sidecar's text: strict JSON, arrays of numbers on one line each."""
+    plain = json.dumps(document, ensure_ascii=False, allow_nan=False, indent=1)
+    return _NUMBERS.sub(lambda found: " ".join(found.group().split()), plain) + "\n"
+
+
+def as_csv(document: dict[str, Any]) -> str:
+    """Return the curves of the first file as comma-separated columns."""
+    text = io.StringIO()
+    rows = csv.writer(text, lineterminator="\n")
+    rows.writerow(["level_db", "ccdf", "cdf", "pdf_per_db", "complex_gaussian_ccdf"])
+    rows.writerows(
+        zip(
+            document["ccdf"]["level_db"],
+            document["ccdf"]["probability"],
+            document["cdf"]["probability"],
+            document["pdf"]["per_db"],
+            document["reference"]["probability"],
+            strict=True,
+        )
+    )
+    return text.getvalue()
+
+
+def describe(prepared: Prepared) -> str:
+    """Return one sentence about a stimulus, for formats with room for it."""
+    recipe = prepared.loaded.recipe
+    return f"{recipe.title or prepared.loaded.name}; loops; {format_hz(recipe.sample_rate_hz)}"

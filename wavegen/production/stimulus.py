@@ -1,0 +1,81 @@
+"""A stimulus file and its sidecar, found again."""
+
+from __future__ import annotations
+
+import json
+from pathlib import Path
+from typing import Any
+
+from wavegen.core.errors import FileError
+from wavegen.files.format import Recording
+from wavegen.production.sidecar import FORMAT
+
+SUFFIX = ".ccdf.json"
+LARGEST_BYTES = 64_000_000
+
+
+def sidecar_of(recording: Recording) -> dict[str, Any] | None:
+    """Return the sidecar beside a data file that lists it, None if there is none.
+
+    Parameters
+    ----------
+    recording : Recording
+        An open file.
+
+    Returns
+    -------
+    dict or None
+
+    Raises
+    ------
+    FileError
+        A sidecar lies there and cannot be read.
+    """
+    name = recording.path.name
+    for path in sorted(recording.path.parent.glob(f"*{SUFFIX}")):
+        if _mentions(path, name):
+            document = read_sidecar(path)
+            if any(item["name"] == name for item in document["files"]):
+                return document
+    return None
+
+
+def _mentions(path: Path, name: str) -> bool:
+    """Return whether a sidecar speaks of a file: a damaged one of another file is no matter."""
+    if not path.is_file() or path.stat().st_size > LARGEST_BYTES:
+        return False
+    return json.dumps(name, ensure_ascii=False).encode() in path.read_bytes()
+
+
+def read_sidecar(path: Path) -> dict[str, Any]:
+    """Read a sidecar.
+
+    Raises
+    ------
+    FileError
+        Too large, not JSON, or not of this format.
+    """
+    problem = ""
+    document: Any = None
+    try:
+        if path.stat().st_size > LARGEST_BYTES:
+            problem = f"is larger than {LARGEST_BYTES // 1_000_000} MB"
+        else:
+            document = json.loads(path.read_text(encoding="utf-8"))
+    except (OSError, ValueError, RecursionError) as error:
+        problem = f"cannot be read: {error}"
+    if not problem:
+        from jsonschema import Draft202012Validator
+
+        from wavegen.production.sidecar import schema
+
+        fault = next(Draft202012Validator(schema()).iter_errors(document), None)
+        if fault is None:
+            return dict(document)
+        problem = f"is no {FORMAT} sidecar: {fault.json_path}: {fault.message[:120]}"
+    raise FileError(
+        where=str(path),
+        problem=problem,
+        allowed="a sidecar as `wavegen make` writes it",
+        remedy="Make the stimulus again, or move the sidecar away to measure a plain recording.",
+    )

@@ -1,0 +1,125 @@
+"""Documents as tables for people."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+from wavegen.core.table import Table
+from wavegen.core.units import format_hz, format_s
+
+_PERCENT = {0.1: "10 %", 0.01: "1 %", 1e-3: "0.1 %", 1e-4: "0.01 %", 1e-5: "0.001 %", 1e-6: "0.0001 %"}
+
+
+def percent(probability: float) -> str:
+    """Write a probability as the trade does.
+
+    Examples
+    --------
+    >>> percent(0.001)
+    '0.1 %'
+    """
+    return _PERCENT.get(probability) or f"{100 * probability:g} %"
+
+
+def summary_table(document: dict[str, Any], *, title: str) -> Table:
+    """Return the main figures of a measurement or sidecar."""
+    rows = [
+        ("sample rate", format_hz(document["sample_rate_hz"])),
+        ("length", f"{format_s(document['duration_s'])}, {document['n_samples']} samples"),
+        ("mean", f"{document['mean_dbfs']:.2f} dBFS"),
+        ("peak at samples", f"{document['peak_dbfs']:.2f} dBFS"),
+        ("peak between samples", f"{document['peak_between_samples_dbfs']:.2f} dBFS"),
+        ("PAPR at samples", f"{document['papr_db']:.2f} dB"),
+        ("PAPR between samples", f"{document['papr_between_samples_db']:.2f} dB"),
+    ]
+    if "mean_dbm" in document:
+        rows.append(("mean", f"{document['mean_dbm']:.2f} dBm"))
+        rows.append(("peak envelope power", f"{document['peak_envelope_dbm']:.2f} dBm"))
+    if document["n_zeros"]:
+        rows.append(("exact zeros", f"{document['n_zeros']} samples"))
+    seam = document.get("seam") or document.get("loop", {}).get("seam")
+    if seam:
+        rows.append(("loop seam", seam_words(seam)))
+    return Table(title=title, headings=("figure", "value"), rows=tuple(rows))
+
+
+def seam_words(seam: dict[str, Any]) -> str:
+    """Say how a loop closes."""
+    state = "clean" if seam["is_clean"] else "BROKEN"
+    return f"{state}, {seam['at_seam_dbc']:.1f} dBc out of band there"
+
+
+def level_table(document: dict[str, Any]) -> Table:
+    """Return the CCDF's levels beside the complex Gaussian and, where there is one, the law."""
+    law = document.get("law")
+    exact = {row["probability"]: row["level_db"] for row in law["levels"]} if law else {}
+    headings = ["probability", "level over mean", "complex Gaussian"]
+    if law:
+        headings.append("law")
+    is_loop = document.get("is") != "a recording"
+    rows = []
+    for row in document["levels"]:
+        probability = row["probability"]
+        level = row["level_db"]
+        if level is None or (not row["resolved"] and not is_loop):
+            shown = "too few samples"
+        elif probability * document["n_samples"] < 1:
+            shown = "loop too short"
+        else:
+            shown = f"{level:.2f} dB"
+        cells = [percent(probability), shown, f"{_gaussian_db(probability):.2f} dB"]
+        if law:
+            cells.append(f"{exact[probability]:.2f} dB")
+        rows.append(tuple(cells))
+    return Table(
+        title="Instantaneous power exceeds its mean by",
+        headings=tuple(headings),
+        rows=tuple(rows),
+        right=frozenset(range(len(headings))),
+    )
+
+
+def _gaussian_db(probability: float) -> float:
+    return 10 * math.log10(-math.log(probability))
+
+
+def bench_table(document: dict[str, Any]) -> Table | None:
+    """Return average and peak envelope power along the path, None without a bench."""
+    bench = document.get("bench")
+    if not bench:
+        return None
+    rows = tuple(
+        (
+            place["name"],
+            f"{place['average_dbm']:.2f} dBm",
+            f"{place['peak_envelope_dbm']:.2f} dBm",
+            _rating(place),
+        )
+        for place in bench["path"]
+    )
+    return Table(
+        title="Levels at the input of each place",
+        headings=("place", "average", "peak envelope", "ratings"),
+        rows=rows,
+        right=frozenset({1, 2}),
+    )
+
+
+def _rating(place: dict[str, Any]) -> str:
+    found = []
+    if "average_limit_dbm" in place:
+        found.append(f"average {place['average_limit_dbm']:g} dBm")
+    if "peak_limit_dbm" in place:
+        found.append(f"peak {place['peak_limit_dbm']:g} dBm")
+    return ", ".join(found) or "none given"
+
+
+def file_table(document: dict[str, Any]) -> Table:
+    """Return the files of a stimulus."""
+    rows = tuple(
+        (name, f"{item['format']} {item['datatype']}" if name == item["name"] else "")
+        for item in document["files"]
+        for name in item["all_names"]
+    )
+    return Table(title="Files", headings=("name", "format"), rows=rows)
