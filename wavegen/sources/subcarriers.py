@@ -1,0 +1,195 @@
+"""Sets of subcarriers, and the fixed values that pilots carry."""
+
+from __future__ import annotations
+
+import math
+import re
+from collections.abc import Mapping
+from dataclasses import dataclass
+from typing import Self
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen.core.units import QuantityError
+from wavegen.sources.mapping.constellation import Constellation
+
+LARGEST_INDEX = 1 << 20
+"""Bound of a subcarrier index, so that a slip of the pen cannot fill the memory."""
+
+_PART = re.compile(r"([+-]?[0-9]{1,9})(?:\s*\.\.\s*([+-]?[0-9]{1,9})(?:\s+by\s+([0-9]{1,9}))?)?")
+_EXAMPLE = "Write it like '-600..-1, 1..600' or '0..1200 by 4'."
+
+
+def _refuse(*, problem: str, allowed: str) -> QuantityError:
+    return QuantityError(problem=problem, allowed=allowed, remedy=_EXAMPLE)
+
+
+@dataclass(frozen=True, slots=True)
+class IndexSet:
+    """Subcarrier indices in the order in which they are listed; 0 is the centre.
+
+    Parameters
+    ----------
+    runs : tuple of (first, last, step)
+        Each run holds ``first, first + step, ...`` up to ``last``, which belongs to the run.
+    """
+
+    runs: tuple[tuple[int, int, int], ...]
+
+    @property
+    def indices(self) -> tuple[int, ...]:
+        """Every index, in the order listed."""
+        return tuple(k for low, high, step in self.runs for k in range(low, high + 1, step))
+
+    def __len__(self) -> int:
+        return sum((high - low) // step + 1 for low, high, step in self.runs)
+
+    def __str__(self) -> str:
+        return ", ".join(_text(*run) for run in self.runs)
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read indices and ranges.
+
+        Parameters
+        ----------
+        value : object
+            Text such as ``-600..-1, 1..600`` (both ends belong to a range) or
+            ``0..1200 by 4`` (every fourth), a single integer, or a list of these.
+
+        Returns
+        -------
+        IndexSet
+
+        Raises
+        ------
+        QuantityError
+            Not of that form, empty, a range that runs downwards, or an index beyond 2^20.
+
+        Examples
+        --------
+        >>> IndexSet.parse("-2..-1, 4..10 by 3").indices
+        (-2, -1, 4, 7, 10)
+        """
+        parts = value if isinstance(value, list | tuple) else [value]
+        runs = [run for part in parts for run in _runs_of(part)]
+        if not runs:
+            raise _refuse(problem="no subcarriers are listed", allowed="at least one subcarrier")
+        return cls(tuple(runs))
+
+
+def _text(first: int, last: int, step: int) -> str:
+    if first == last:
+        return str(first)
+    return f"{first}..{last}" if step == 1 else f"{first}..{last} by {step}"
+
+
+def _runs_of(part: object) -> list[tuple[int, int, int]]:
+    """Read one item of a list: an integer, or text with ranges between commas."""
+    if isinstance(part, bool) or not isinstance(part, int | str):
+        raise _refuse(problem=f"{part!r} is no subcarrier index", allowed="integers and ranges")
+    text = str(part).strip()
+    return [_run_of(item.strip()) for item in text.split(",")] if text else []
+
+
+def _run_of(text: str) -> tuple[int, int, int]:
+    found = _PART.fullmatch(text)
+    if found is None:
+        raise _refuse(
+            problem=f"{text!r} is no subcarrier index or range", allowed="integers and ranges"
+        )
+    first = int(found[1])
+    last = first if found[2] is None else int(found[2])
+    step = 1 if found[3] is None else int(found[3])
+    if max(abs(first), abs(last)) > LARGEST_INDEX:
+        raise _refuse(problem=f"{text!r} goes far out", allowed=f"indices within ±{LARGEST_INDEX}")
+    if last < first or not step:
+        raise _refuse(
+            problem=f"the range {text!r} holds nothing",
+            allowed="ranges from low to high, with a step of 1 or more",
+        )
+    return first, first + (last - first) // step * step, step
+
+
+@dataclass(frozen=True, slots=True)
+class PilotValues:
+    """Values of pilots, the same in every symbol: a sequence, or one drawn from the seed.
+
+    Parameters
+    ----------
+    sequence : tuple of complex
+        Values on any scale, repeated over the subcarriers as often as needed; empty if drawn.
+    drawn_from : Constellation or None
+        One point is drawn for each subcarrier.
+    """
+
+    sequence: tuple[complex, ...] = ()
+    drawn_from: Constellation | None = None
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read a list of values, or ``{random: CONSTELLATION}``.
+
+        Parameters
+        ----------
+        value : object
+            ``[1, 1, 1, -1]``, ``[[0.7, 0.7], [0.7, -0.7]]`` (real and imaginary part), or
+            ``{random: qpsk}``.
+
+        Returns
+        -------
+        PilotValues
+
+        Raises
+        ------
+        QuantityError
+            Not of that form, a number that is not finite, or nothing but zeros.
+        """
+        if isinstance(value, Mapping) and list(value) == ["random"]:
+            return cls(drawn_from=Constellation.parse(value["random"]))
+        items = value if isinstance(value, list | tuple) else ()
+        sequence = tuple(_number(item) for item in items)
+        if not any(sequence):
+            raise QuantityError(
+                problem=f"{value!r} gives no pilot values",
+                allowed="a list of numbers or of pairs [re, im], not all zero, or {random: qpsk}",
+                remedy="Write it like [1, 1, 1, -1].",
+            )
+        return cls(sequence)
+
+    def over(self, n: int, words: NDArray[np.unsignedinteger]) -> NDArray[np.complex128]:
+        """Return the values of ``n`` subcarriers, scaled to unit mean power over them.
+
+        Parameters
+        ----------
+        n : int
+            Subcarriers.
+        words : unsigned integer array, shape (n,)
+            Random words; read where the values are drawn.
+
+        Returns
+        -------
+        complex128 array, shape (n,)
+            All zero if the first ``n`` values of the sequence are.
+        """
+        if self.drawn_from is not None:
+            values = self.drawn_from.points[words & (self.drawn_from.points.size - 1)]
+        else:
+            values = np.resize(np.array(self.sequence, np.complex128), n)
+        power = float(np.mean(values.real**2 + values.imag**2))
+        scaled: NDArray[np.complex128] = values / math.sqrt(power) if power else values
+        return scaled
+
+
+def _number(item: object) -> complex:
+    parts = item if isinstance(item, list | tuple) else [item]
+    numbers = [float(x) for x in parts if isinstance(x, int | float) and not isinstance(x, bool)]
+    is_sound = len(numbers) == len(parts) in (1, 2) and all(map(math.isfinite, numbers))
+    if not is_sound or any(abs(x) > 1e6 for x in numbers):
+        raise QuantityError(
+            problem=f"{item!r} is no pilot value",
+            allowed="a finite number or a pair [re, im], up to 1e6",
+            remedy="Write it like 1 or [0.7, -0.7].",
+        )
+    return complex(*numbers)
