@@ -187,7 +187,12 @@ def evaluate(
     Returns
     -------
     dict of Signal to complex64 array, shape (stop - start,)
-        Not to be written to: two entries may share memory.
+        Contiguous. Not to be written to: two entries may share memory.
+
+    Raises
+    ------
+    ValueError
+        A signal computed another number of samples than it was asked for.
     """
     todo = plan(wanted)
     readers = _count_readers(todo.work)
@@ -201,7 +206,12 @@ def evaluate(
                 held[source].read(low, high)
                 for source, (low, high) in zip(signal.inputs, needed, strict=True)
             ]
-            store.arrays.append(signal.compute(start, stop, *arrays))
+            samples = np.ascontiguousarray(signal.compute(start, stop, *arrays))
+            if samples.shape != (stop - start,):
+                kind = type(signal).__name__
+                msg = f"{kind}.compute gave {samples.shape} for [{start}, {stop})"
+                raise ValueError(msg)
+            store.arrays.append(samples)
         held[signal] = store
         if made is not None:
             made[signal] = made.get(signal, 0) + item.n_samples

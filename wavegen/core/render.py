@@ -81,10 +81,11 @@ def strip_length(signal: Signal) -> int:
     wanted = min(max(STRIP_SAMPLES, 8 * depth[signal]), LONGEST_STRIP_SAMPLES)
     length = -(-wanted // STRIP_QUANTUM) * STRIP_QUANTUM
     while length > SHORTEST_STRIP_SAMPLES:
-        held = plan({signal: (0, min(length, signal.n_samples))}).peak_bytes
-        if held * IN_FLIGHT_STRIPS <= IN_FLIGHT_BYTES:
+        held = plan({signal: (0, min(length, signal.n_samples))}).peak_bytes * IN_FLIGHT_STRIPS
+        if held <= IN_FLIGHT_BYTES:
             break
-        length = max(length // 2 // STRIP_QUANTUM * STRIP_QUANTUM, SHORTEST_STRIP_SAMPLES)
+        fitting = min(length * IN_FLIGHT_BYTES // held, length - 1)
+        length = max(fitting // STRIP_QUANTUM * STRIP_QUANTUM, SHORTEST_STRIP_SAMPLES)
     return length
 
 

@@ -88,4 +88,4 @@ def random_words(
         random_bytes(key, low * width_bytes, (high - low) * width_bytes).view(dtype)
         for low, high in fold(first, first + count, period)
     ]
-    return pieces[0] if len(pieces) == 1 else np.concatenate(pieces)
+    return pieces[0] if len(pieces) == 1 else np.concatenate([np.empty(0, dtype), *pieces])

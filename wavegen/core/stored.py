@@ -39,10 +39,18 @@ class Stored(Signal):
         Raises
         ------
         FileError
-            The file is shorter than it was.
+            The file is gone, or shorter than it was.
         """
         count = stop - start
-        samples = np.fromfile(self.path, np.complex64, count, offset=start * 8)
+        try:
+            samples = np.fromfile(self.path, np.complex64, count, offset=start * 8)
+        except OSError as error:
+            raise FileError(
+                where=str(self.path),
+                problem=f"cannot be read any more ({error.strerror or error})",
+                allowed="a file that stays where it is while it is in use",
+                remedy="Put the file back and start again.",
+            ) from error
         if samples.size != count:
             raise FileError(
                 where=str(self.path),
@@ -98,12 +106,30 @@ class Scratch:
         trace: TracebackType | None,
     ) -> None:
         """Remove the file, whatever happened."""
-        self._file.close()
-        self.path.unlink(missing_ok=True)
+        try:
+            self._file.close()
+        except OSError:  # what could not be flushed is thrown away anyway
+            pass
+        finally:
+            self.path.unlink(missing_ok=True)
 
     def write(self, samples: Samples) -> None:
-        """Append samples."""
-        self._file.write(samples.data)
+        """Append samples.
+
+        Raises
+        ------
+        FileError
+            The disk filled up or failed meanwhile.
+        """
+        try:
+            self._file.write(samples.data)
+        except OSError as error:
+            raise FileError(
+                where=str(self.path.parent),
+                problem=f"the scratch file could not be written ({error.strerror or error})",
+                allowed=f"{self._n * 8 / 1e6:.0f} MB of scratch",
+                remedy="Free some disk, or choose another output folder.",
+            ) from error
 
     def signal(self) -> Stored:
         """Return what was written as a signal."""

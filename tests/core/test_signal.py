@@ -1,0 +1,29 @@
+import dataclasses
+
+import pytest
+
+from wavegen.core.signal import Signal
+
+
+def test_defaults_describe_a_source_on_no_grid(lab):
+    signal = Signal(sample_rate_hz=lab.rate_hz, n_samples=10)
+    assert (signal.step, signal.inputs, signal.mean_power) == (1, (), 1.0)
+    assert signal.needs(0, 10) == ()
+
+
+def test_needs_is_the_same_range_of_each_input_unless_said(lab):
+    source = lab.white(10)
+    assert lab.multiplied(source, source).needs(2, 5) == ((2, 5), (2, 5))
+
+
+def test_signals_are_frozen_and_compare_by_identity(lab):
+    signal, twin = lab.white(10), lab.white(10)
+    with pytest.raises(dataclasses.FrozenInstanceError):
+        signal.n_samples = 11
+    assert signal != twin
+    assert len({signal, twin, signal}) == 2
+
+
+def test_a_bare_description_names_itself_when_computed(lab):
+    with pytest.raises(TypeError, match="Signal"):
+        Signal(sample_rate_hz=lab.rate_hz, n_samples=10).compute(0, 10)
