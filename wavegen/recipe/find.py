@@ -1,0 +1,67 @@
+"""Recipes by path or by the name of one that is shipped."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+from wavegen.core.errors import RecipeError
+from wavegen.core.registry import nearest
+from wavegen.recipe.tree import FaultError, Scalar, Table, read_tree
+
+
+def shipped_folder() -> Path:
+    """Return the folder of shipped recipes: in the package, or beside it in a checkout."""
+    package = Path(__file__).resolve().parents[1]
+    inside = package / "recipes"
+    return inside if inside.is_dir() else package.parent / "recipes"
+
+
+def shipped_recipes() -> list[tuple[str, str, Path]]:
+    """Return name, title and path of every shipped recipe, by name."""
+    return [(path.stem, _title(path), path) for path in sorted(shipped_folder().glob("*.yaml"))]
+
+
+def find_recipe(name_or_path: str | Path) -> Path:
+    """Return the file of a recipe.
+
+    Parameters
+    ----------
+    name_or_path : str or Path
+        A path, else the name of a shipped recipe, with or without ``.yaml``.
+
+    Returns
+    -------
+    Path
+
+    Raises
+    ------
+    RecipeError
+        Neither; the nearest shipped name is given.
+    """
+    path = Path(name_or_path)
+    try:
+        if path.is_file():
+            return path
+    except (OSError, ValueError):  # too long or with a zero byte: no such file
+        pass
+    shipped = {name: found for name, _, found in shipped_recipes()}
+    wanted = str(name_or_path).removesuffix(".yaml")
+    if wanted in shipped:
+        return shipped[wanted]
+    guess = nearest(path.stem, shipped)
+    raise RecipeError(
+        where=str(name_or_path)[:200],
+        problem="there is no such recipe",
+        allowed="a path, or a shipped recipe: " + (", ".join(shipped) or "none"),
+        remedy=f"Did you mean {guess}?" if guess else "Check the path.",
+    )
+
+
+def _title(path: Path) -> str:
+    """Return the title without checking the rest; empty if it cannot be read."""
+    try:
+        tree, _ = read_tree(path.read_text(encoding="utf-8"))
+    except (OSError, UnicodeDecodeError, FaultError):
+        return ""
+    title = tree.get("title") if isinstance(tree, Table) else None
+    return title.text if isinstance(title, Scalar) else ""

@@ -1,0 +1,407 @@
+"""What a recipe says at its top level: the loop, the signal, the bench and the files."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Annotated, Any, Literal, Self
+
+from annotated_types import Ge, Gt, Le, MinLen
+
+from wavegen.core.registry import Member, nearest
+from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity, split_quantity
+from wavegen.files import FORMATS
+from wavegen.recipe.exact import write_quantity
+from wavegen.recipe.names import check_name
+
+Unit = Literal["seconds", "symbols", "samples"]
+
+_SUFFIX: dict[Unit, str] = {"seconds": "_s", "symbols": "_symbols", "samples": "_samples"}
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Extent:
+    """One stretch of time, exact, in the unit it was asked in.
+
+    Parameters
+    ----------
+    value : Fraction
+        Above zero; whole for symbols and samples.
+    unit : {"seconds", "symbols", "samples"}
+        What the value counts.
+    """
+
+    value: Fraction
+    unit: Unit
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read ``10 ms``, ``140 symbols`` or ``12288 samples``.
+
+        Raises
+        ------
+        QuantityError
+            No such value, none above zero, or a part of a symbol or sample.
+        """
+        if not isinstance(value, str):
+            raise QuantityError(
+                problem=f"{value!r} has no unit"
+                if isinstance(value, int | float) and not isinstance(value, bool)
+                else f"{str(value)[:40]!r} is no duration",
+                allowed="a time, symbols or samples",
+                remedy="Write it like 10 ms, 140 symbols or 12288 samples.",
+            )
+        number, word = split_quantity(value)
+        unit = next((u for u, suffix in _SUFFIX.items() if word in DIMENSIONS[suffix].units), None)
+        if unit is None:
+            known = [w for suffix in _SUFFIX.values() for w in DIMENSIONS[suffix].units]
+            guess = {w.casefold(): w for w in known}.get(word.casefold()) or nearest(word, known)
+            raise QuantityError(
+                problem=f"{value!r} has the unknown unit {word!r}"
+                if word
+                else f"{value!r}: no unit",
+                allowed="one of: " + ", ".join(known),
+                remedy=f"Did you mean {guess}?"
+                if guess
+                else "Write it like 10 ms, 140 symbols or 12288 samples.",
+            )
+        number = parse_quantity(value, DIMENSIONS[_SUFFIX[unit]])
+        if number <= 0 or (unit != "seconds" and number.denominator != 1):
+            raise QuantityError(
+                problem=f"{value!r} is not above zero"
+                if number <= 0
+                else f"{value!r} is not a whole number of {unit}",
+                allowed="times above zero; whole symbols or samples from 1",
+                remedy="Write it like 10 ms, 140 symbols or 12288 samples.",
+            )
+        return cls(value=number, unit=unit)
+
+    def text(self) -> str:
+        """Return the value as a recipe writes it."""
+        return write_quantity(self.value, DIMENSIONS[_SUFFIX[self.unit]])
+
+    def __str__(self) -> str:
+        """Read as a recipe writes it."""
+        return self.text()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Duration:
+    """How long the loop is asked to be.
+
+    Parameters
+    ----------
+    at : Extent
+        What is asked; the loop is the nearest length that all parts can close on.
+    multiple : Extent, optional
+        The loop shall be a whole multiple of this, such as a generator's granularity.
+    least, most : Extent, optional
+        Bounds of the loop after rounding.
+    """
+
+    at: Extent
+    multiple: Extent | None = None
+    least: Extent | None = None
+    most: Extent | None = None
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read a length, or a mapping ``{at, multiple, least, most}`` of lengths.
+
+        Raises
+        ------
+        QuantityError
+            Not of that form, or bounds (in the same unit) that leave nothing.
+        """
+        if not isinstance(value, dict):
+            return cls(at=Extent.parse(value))
+        for key in value:
+            if key not in _DURATION_KEYS:
+                guess = nearest(str(key), _DURATION_KEYS)
+                raise QuantityError(
+                    problem=f"unknown key {str(key)[:40]!r}",
+                    allowed="the keys " + ", ".join(_DURATION_KEYS),
+                    remedy=f"Did you mean {guess}?" if guess else "Remove it.",
+                    key=str(key),
+                )
+        if "at" not in value:
+            raise QuantityError(
+                problem="the key at is missing",
+                allowed="the keys " + ", ".join(_DURATION_KEYS),
+                remedy="Add at: 10 ms",
+                key="at",
+            )
+        lengths = {}
+        for key, item in value.items():
+            try:
+                lengths[key] = Extent.parse(item)
+            except QuantityError as error:
+                raise QuantityError(
+                    problem=error.problem, allowed=error.allowed, remedy=error.remedy, key=key
+                ) from error
+        return cls(**lengths)
+
+    def __post_init__(self) -> None:
+        """Refuse bounds that leave nothing."""
+        chain = (("least", self.least), ("at", self.at), ("most", self.most))
+        given = [(key, length) for key, length in chain if length is not None]
+        for index, (_, low) in enumerate(given):
+            for key, high in given[index + 1 :]:
+                if low.unit == high.unit and low.value > high.value:
+                    raise QuantityError(
+                        problem=f"{high.text()} is shorter than {low.text()}",
+                        allowed="least, at and most in rising order",
+                        remedy="Exchange or correct them.",
+                        key=key,
+                    )
+
+    def text(self) -> object:
+        """Return the value as a recipe writes it."""
+        if self.multiple is None and self.least is None and self.most is None:
+            return self.at.text()
+        pairs = ((key, getattr(self, key)) for key in _DURATION_KEYS)
+        return {key: length.text() for key, length in pairs if length is not None}
+
+
+_DURATION_KEYS = ("at", "multiple", "least", "most")
+
+Role = Literal[
+    "generator",
+    "cable",
+    "driver",
+    "attenuator",
+    "coupler",
+    "device",
+    "load",
+    "sensor",
+    "analyser",
+]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PathStage:
+    """One piece of hardware between the generator and whatever ends the path.
+
+    Parameters
+    ----------
+    name : str
+        What messages and the sidecar call it.
+    role : str, optional
+        What it is; exactly one stage of a path is the ``device``.
+    gain_db : float
+        Output over input power, dB; negative where it loses.
+    average_limit_dbm, peak_limit_dbm : float, optional
+        Ratings at its input, dBm: of average power and of peak envelope power.
+    """
+
+    name: str
+    role: Role | None = None
+    gain_db: float = 0.0
+    average_limit_dbm: float | None = None
+    peak_limit_dbm: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Bench:
+    """The powers on the bench, from which every rating in the path is checked.
+
+    Parameters
+    ----------
+    average_power_at_device_dbm : float
+        Average power at the input of the device, dBm.
+    averaged_over : {"period", "burst"}
+        Whether that is the average over the whole loop or while a burst is on.
+    impedance_ohm : float
+        Of the system, ohm.
+    path : tuple of PathStage
+        From the generator on, in order.
+    """
+
+    average_power_at_device_dbm: float
+    averaged_over: Literal["period", "burst"] = "period"
+    impedance_ohm: Annotated[float, Gt(0)] = 50.0
+    path: Annotated[tuple[PathStage, ...], MinLen(1)]
+
+    def __post_init__(self) -> None:
+        """Refuse a path without exactly one device."""
+        count = sum(stage.role == "device" for stage in self.path)
+        if count != 1:
+            raise QuantityError(
+                problem=f"{count or 'no'} stages of the path have the role device",
+                allowed="exactly one",
+                remedy="Give role: device to the stage that is tested."
+                if not count
+                else "Keep role: device on the stage that is tested; call the others driver.",
+                key="path",
+            )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FormatRequest:
+    """One file of samples that is asked for.
+
+    Parameters
+    ----------
+    format : str
+        Name in the table of formats.
+    datatype : str
+        How a sample is stored, one of the format's own.
+    name : str, optional
+        File name without suffix; the recipe's own if not given.
+    """
+
+    format: str
+    datatype: str
+    name: str | None = None
+
+    @classmethod
+    def parse(cls, value: object) -> Self:
+        """Read a format's name, or a mapping ``{format, datatype, name}``.
+
+        Raises
+        ------
+        QuantityError
+            Unknown format, datatype or key, or a name that could leave the folder.
+        """
+        given = value if isinstance(value, dict) else {"format": value}
+        for key in given:
+            if key not in {"format", "datatype", "name"}:
+                guess = nearest(str(key), ("format", "datatype", "name"))
+                raise QuantityError(
+                    problem=f"unknown key {str(key)[:40]!r}",
+                    allowed="the keys format, datatype, name",
+                    remedy=f"Did you mean {guess}?" if guess else "Remove it.",
+                    key=str(key),
+                )
+        name: object = given.get("format")
+        datatype: object = given.get("datatype")
+        stem: object = given.get("name")
+        if not isinstance(name, str) or name not in FORMATS:
+            guess = FORMATS.nearest(str(name))
+            raise QuantityError(
+                problem=f"unknown format {str(name)[:40]!r}"
+                if name is not None
+                else "the key format is missing",
+                allowed=", ".join(FORMATS),
+                remedy=f"Did you mean {guess}?" if guess else f"Write {next(iter(FORMATS))}.",
+                key="format" if isinstance(value, dict) else "",
+            )
+        made = FORMATS.load(name)
+        if datatype is None:
+            datatype = made.default_datatype
+        if not isinstance(datatype, str) or datatype not in made.datatypes:
+            guess = nearest(str(datatype), made.datatypes)
+            raise QuantityError(
+                problem=f"{name} has no datatype {str(datatype)[:40]!r}",
+                allowed=", ".join(made.datatypes),
+                remedy=f"Did you mean {guess}?" if guess else f"Write {made.default_datatype}.",
+                key="datatype",
+            )
+        return cls(format=name, datatype=datatype, name=_checked_stem(stem))
+
+    def text(self) -> object:
+        """Return the value as a recipe writes it."""
+        if self.name is None and self.datatype == FORMATS.load(self.format).default_datatype:
+            return self.format
+        written = {"format": self.format, "datatype": self.datatype}
+        return written if self.name is None else written | {"name": self.name}
+
+
+def _checked_stem(stem: object) -> str | None:
+    if stem is None:
+        return None
+    if not isinstance(stem, str):
+        raise QuantityError(
+            problem=f"{str(stem)[:40]!r} is no text",
+            allowed="a file name without folder and suffix",
+            remedy="Put the name in quotes.",
+            key="name",
+        )
+    try:
+        check_name(stem)
+    except QuantityError as error:
+        raise QuantityError(
+            problem=error.problem, allowed=error.allowed, remedy=error.remedy, key="name"
+        ) from error
+    return stem
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Output:
+    """The files of samples, and how far they are filled.
+
+    Parameters
+    ----------
+    iq : tuple of FormatRequest
+        One file each.
+    peak_dbfs : float, optional
+        Peak between samples, dBFS, at most 0. It is -1 if neither level is given.
+    average_dbfs : float, optional
+        Average power, dBFS, instead of the peak.
+    """
+
+    iq: Annotated[tuple[FormatRequest, ...], MinLen(1)] = (
+        FormatRequest(format="sigmf", datatype="ci16_le"),
+    )
+    peak_dbfs: Annotated[float, Le(0)] | None = None
+    average_dbfs: float | None = None
+
+    def __post_init__(self) -> None:
+        """Refuse two levels or two files of one name; the peak is -1 dBFS unless said."""
+        if self.peak_dbfs is not None and self.average_dbfs is not None:
+            raise QuantityError(
+                problem="both peak and average are given",
+                allowed="one of the two: the other follows from the waveform",
+                remedy="Remove one of them.",
+                key="average",
+            )
+        if self.peak_dbfs is None and self.average_dbfs is None:
+            object.__setattr__(self, "peak_dbfs", -1.0)
+        seen: set[tuple[str, str | None]] = set()
+        for index, request in enumerate(self.iq):
+            file = (request.format, request.name and request.name.casefold())
+            if file in seen:
+                raise QuantityError(
+                    problem=f"{request.format} is asked for twice under the same file name",
+                    allowed="each format once a file name",
+                    remedy=f"Give one of them a name: {{format: {request.format}, name: ...}}.",
+                    key=f"iq[{index}]",
+                )
+            seen.add(file)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Recipe:
+    """A whole recipe.
+
+    Parameters
+    ----------
+    wavegen : int
+        Version of the recipe format: 1.
+    title : str
+        One line for people.
+    seed : int
+        Seed of all random data, 0 to 2**63 - 1.
+    sample_rate_hz : Fraction
+        Exact sample rate of the loop, Hz.
+    duration : Duration
+        Extent that the loop is asked to have.
+    signal : settings
+        A member of the sources or combiners.
+    stages : tuple of settings
+        What the signal passes through, in order.
+    bench : Bench, optional
+        Powers and ratings on the bench.
+    output : Output
+        Files and their level.
+    """
+
+    wavegen: Literal[1]
+    title: str = ""
+    seed: Annotated[int, Ge(0), Le(2**63 - 1)] = 1
+    sample_rate_hz: Annotated[Fraction, Gt(0)]
+    duration: Duration
+    signal: Annotated[Any, Member(("signal",))]
+    stages: tuple[Annotated[Any, Member(("stage",))], ...] = ()
+    bench: Bench | None = None
+    output: Output = Output()
