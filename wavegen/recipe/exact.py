@@ -30,7 +30,7 @@ def write_number(value: Fraction | float) -> str:
     >>> write_number(Fraction(812500, 3)), write_number(Fraction(1, 8)), write_number(0.1)
     ('812500/3', '0.125', '0.1')
     """
-    text = _number(value)
+    text = repr(value).removesuffix(".0") if isinstance(value, float) else _number(value)
     if split_quantity(text)[0] != _meant(value):
         message = f"{value!r} has no exact text"
         raise ValueError(message)

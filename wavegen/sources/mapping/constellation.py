@@ -14,6 +14,8 @@ from wavegen.core.units import QuantityError
 from wavegen.sources.mapping import MAPPINGS
 
 LARGEST = 1 << 16
+_UNIT = 1e-12
+"""Points this close to unit power are kept bit for bit, so that writing them loses nothing."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,6 +34,22 @@ class Constellation:
 
     name: str
     points: NDArray[np.complex128]
+
+    def __eq__(self, other: object) -> bool:
+        """Return whether name and points are the same."""
+        if not isinstance(other, Constellation):
+            return NotImplemented
+        return self.name == other.name and np.array_equal(self.points, other.points)
+
+    def __hash__(self) -> int:
+        """Agree with equality."""
+        return hash((self.name, self.points.size))
+
+    def text(self) -> object:
+        """Return the value as a recipe writes it: the name, or the list of points."""
+        if self.name in MAPPINGS:
+            return self.name
+        return [[float(point.real), float(point.imag)] for point in self.points]
 
     @property
     def n_bits(self) -> int:
@@ -93,8 +111,8 @@ class Constellation:
             Not such a list.
         """
         try:
-            pairs = np.array(value, dtype=np.float64)
-        except (TypeError, ValueError):
+            pairs = np.array(value, dtype=np.float64) if _is_numeric(value) else np.empty(0)
+        except (TypeError, ValueError, OverflowError):
             pairs = np.empty(0)
         count = pairs.shape[0] if pairs.ndim == 2 else 0
         is_sound = pairs.ndim == 2 and pairs.shape[1] == 2 and bool(np.isfinite(pairs).all())
@@ -105,6 +123,16 @@ class Constellation:
                 remedy="Write it like [[1, 1], [-1, 1], [-1, -1], [1, -1]].",
             )
         points = pairs[:, 0] + 1j * pairs[:, 1]
+        if abs(np.mean(pairs[:, 0] ** 2 + pairs[:, 1] ** 2) - 1) < _UNIT:
+            return cls("points", points)
         points = points / np.sqrt(np.mean(np.abs(points / np.abs(points).max()) ** 2))
         points = points / np.sqrt(np.mean(np.abs(points) ** 2))
         return cls("points", points)
+
+
+def _is_numeric(value: object) -> bool:
+    """Return whether a list of lists holds numbers alone: no text, no true or false."""
+    if not isinstance(value, list | tuple):
+        return False
+    inner = [item for row in value if isinstance(row, list | tuple) for item in row]
+    return all(isinstance(item, int | float) and not isinstance(item, bool) for item in inner)
