@@ -8,7 +8,6 @@ datatype where the ending does not name it (``--format ci16_le``).
 from __future__ import annotations
 
 from collections.abc import Mapping
-from fractions import Fraction
 from pathlib import Path
 from typing import ClassVar
 
@@ -25,9 +24,9 @@ from wavegen.files.datatypes import (
     Datatype,
 )
 from wavegen.files.faults import read_head
-from wavegen.files.format import FileFacts, ReadHints, Recording, Writer, check_facts
+from wavegen.files.format import FileFacts, ReadHints, Recording, Writer, check_facts, told_rate
 from wavegen.files.interleaved import InterleavedWriter, open_interleaved
-from wavegen.files.signatures import signature_of
+from wavegen.files.signatures import TEXT, is_text, signature_of
 
 _WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)}
 _READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE)}
@@ -66,27 +65,22 @@ class Raw:
             No datatype, no sample rate, empty, or not whole samples.
         """
         datatype = _datatype_of(path, hints)
-        if hints.sample_rate_hz is None:
-            raise FileError(
-                where=str(path),
-                problem="has no header that gives the sample rate",
-                allowed="raw samples together with their rate",
-                remedy="Add --sample-rate, such as --sample-rate 20MHz.",
-            )
+        sample_rate_hz, _ = told_rate(path, stated_hz=None, hints=hints)
         signal = open_interleaved(
             path,
             datatype=datatype,
-            sample_rate_hz=hints.sample_rate_hz,
+            sample_rate_hz=sample_rate_hz,
             full_scale=hints.full_scale,
         )
-        known = signature_of(read_head(path))
+        head = read_head(path)
+        known = signature_of(head) or (TEXT if is_text(head) else None)
         doubt = f"{path.name} starts like {known.what}; it is read as bare samples" if known else ""
         return Recording(
             path=path,
             files=(path,),
             format=self.name,
             signal=signal,
-            sample_rate_hz=Fraction(hints.sample_rate_hz),
+            sample_rate_hz=sample_rate_hz,
             n_samples=signal.n_samples,
             datatype=datatype,
             reference_level_dbm=hints.reference_level_dbm,
