@@ -19,7 +19,7 @@ from wavegen.dsp.windows import STOPBAND_DB, design_lowpass, kaiser_transition
 from wavegen.laws.gaussian import GaussianLaw
 from wavegen.laws.law import Law
 
-LONGEST_HALF_LENGTH = 130_000
+LONGEST_HALF_LENGTH = 125_000
 """Longest filter taken on, taps each side of its middle: transforms of 2^19 then."""
 DEFAULT_EDGE = 0.05
 _BLOCK = 1 << 14
