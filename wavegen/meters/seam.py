@@ -1,0 +1,204 @@
+"""Whether a loop can be heard closing: out-of-band power at the seam against elsewhere.
+
+A record that does not close jumps at the seam, and a jump is wide: its spectrum lies outside the
+band of the signal, where a stretch from anywhere else in the loop has next to nothing.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Literal
+
+import numpy as np
+import scipy.fft
+from numpy.typing import NDArray
+
+from wavegen.core.errors import SignalError
+from wavegen.core.evaluate import evaluate
+from wavegen.core.signal import Signal
+
+LONGEST_STRETCH = 16384
+SHORTEST_STRETCH = 256
+N_STRETCHES = 20
+KAISER_BETA = 17.0
+"""Side lobes at -163 dB (J. F. Kaiser: beta = 0.1102 (A - 8.7)): below float32 rounding."""
+MARGIN_DB = 3.0
+"""By chance a stretch is above the largest of 20 others in one of 21 loops; by 3 dB it is not,
+since each figure is a mean over many bins."""
+FLOOR_DBC = -125.0
+"""float32 samples alone leave about -140 dBc; converters have -100 dBc at best."""
+_BELOW_BAND = 10.0 ** (-40 / 10)
+_MAIN_LOBE_BINS = 7
+"""The window widens a line to ``sqrt(beta^2 + pi^2) / pi`` = 5.5 bins on each side."""
+_FEWEST_BINS = 1 / 64
+_QUIETEST = 1 / 10
+_SMOOTHED_BINS = 65
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SeamFigure:
+    """Out-of-band power at the seam of a loop and elsewhere in it.
+
+    Parameters
+    ----------
+    at_seam_dbc : float
+        In the stretch centred on the seam, dB over the mean power of the other stretches.
+    interior_dbc : float
+        The largest of the other stretches, dB on the same scale.
+    floor_dbc : float
+        Where both lie below it, the seam counts as clean.
+    out_of_band : {"40 dB below the band", "quietest tenth"}
+        Which bins were counted; the second where the signal fills the whole rate.
+    n_bins : int
+        How many they are.
+    stretch_samples : int
+        Length of a stretch.
+    n_stretches : int
+        Stretches compared with; 0 if the loop is so short that every stretch holds its seam:
+        then nothing can be told, and ``is_clean`` is True though not tested.
+    n_same_place : int
+        Of these, how many stand where the seam does relative to the symbols.
+    """
+
+    at_seam_dbc: float
+    interior_dbc: float
+    floor_dbc: float
+    out_of_band: Literal["40 dB below the band", "quietest tenth"]
+    n_bins: int
+    stretch_samples: int
+    n_stretches: int
+    n_same_place: int
+
+    @property
+    def excess_db(self) -> float:
+        """How far the seam stands above the largest of the others, dB; 0 if both are nothing."""
+        if self.at_seam_dbc == self.interior_dbc:
+            return 0.0
+        return self.at_seam_dbc - self.interior_dbc
+
+    @property
+    def is_tested(self) -> bool:
+        """False if the loop is too short for a stretch without its seam."""
+        return self.n_stretches > 0
+
+    @property
+    def is_clean(self) -> bool:
+        """True if the seam exceeds the rest by 3 dB at most, or lies below the floor."""
+        return self.excess_db <= MARGIN_DB or self.at_seam_dbc < self.floor_dbc
+
+
+def seam_figure(
+    signal: Signal,
+    *,
+    cycle_samples: int | None = None,
+    stretch_samples: int = LONGEST_STRETCH,
+    floor_dbc: float = FLOOR_DBC,
+) -> SeamFigure:
+    """Return how a loop's seam compares with the rest of the loop.
+
+    Parameters
+    ----------
+    signal : Signal
+        The loop; some twenty stretches of it are read.
+    cycle_samples : int, optional
+        After so many samples the symbols stand as before. The other stretches stand at multiples
+        of it as far as there are any; what is missing of twenty is spread evenly over the loop.
+    stretch_samples : int
+        Longest stretch; shortened to a quarter of the loop (a power of two).
+    floor_dbc : float
+        Where the seam counts as clean, dB.
+
+    Returns
+    -------
+    SeamFigure
+
+    Raises
+    ------
+    SignalError
+        There is no power in any stretch.
+
+    Notes
+    -----
+    Each stretch is weighted by a Kaiser window (beta 17) and transformed. In band are the bins
+    that together hold 99 % of the mean spectrum of the other stretches; out of band are those
+    where it is 40 dB or more below the mean density in band, 7 bins (the window's main lobe) and
+    more from the others. If these are fewer than 1/64 of all
+    bins, the quietest tenth is taken instead (of the spectrum smoothed over 65 bins, lest chance
+    choose them).
+    """
+    n = signal.n_samples
+    length = 1 << (max(min(stretch_samples, n // 4), 1).bit_length() - 1)
+    has_room = length >= SHORTEST_STRETCH
+    if not has_room:
+        length = SHORTEST_STRETCH
+    same, others = _places(n, length, cycle_samples if has_room else None, has_room=has_room)
+    spectra = np.stack([_spectrum(signal, place, length) for place in (0, *same, *others)])
+    seam, interior = spectra[0], spectra[1:] if has_room else spectra[:1]
+    mean = interior.mean(axis=0)
+    reference = float(mean.sum())
+    if not reference > 0.0:
+        raise SignalError(
+            where="seam",
+            problem="there is no power in the loop where it was looked at",
+            allowed="a loop with some power",
+            remedy="Check the gating and the level.",
+        )
+    chosen, name = _out_of_band(mean)
+    with np.errstate(divide="ignore"):
+        at_seam = 10 * np.log10(seam[chosen].sum() / reference)
+        elsewhere = 10 * np.log10(interior[:, chosen].sum(axis=1).max() / reference)
+    return SeamFigure(
+        at_seam_dbc=float(at_seam),
+        interior_dbc=float(elsewhere),
+        floor_dbc=floor_dbc,
+        out_of_band=name,
+        n_bins=int(np.count_nonzero(chosen)),
+        stretch_samples=length,
+        n_stretches=len(same) + len(others),
+        n_same_place=len(same),
+    )
+
+
+def _places(
+    n: int, length: int, cycle: int | None, *, has_room: bool
+) -> tuple[list[int], list[int]]:
+    """Return centres clear of the seam: whole cycles from it, and others to make twenty."""
+    if not has_room:
+        return [], []
+    same: list[int] = []
+    if cycle is not None:
+        first, last = -(-length // cycle), (n - length) // cycle
+        if last >= first:
+            numbers = np.linspace(first, last, N_STRETCHES).round().astype(np.int64)
+            same = [int(number) * cycle for number in np.unique(numbers)]
+    missing = N_STRETCHES - len(same)
+    spread = np.linspace(length, n - length, missing) if missing else np.zeros(0)
+    return same, [int(place) for place in spread]
+
+
+def _spectrum(signal: Signal, centre: int, length: int) -> NDArray[np.float64]:
+    """Return the windowed power spectrum of a stretch, shape (length,)."""
+    wanted = (centre - length // 2, centre + length // 2)
+    samples = evaluate({signal: wanted})[signal].astype(np.complex128)
+    window = np.kaiser(length + 1, KAISER_BETA)[:-1]
+    power: NDArray[np.float64] = np.abs(scipy.fft.fft(samples * window)) ** 2
+    return power
+
+
+def _out_of_band(
+    mean: NDArray[np.float64],
+) -> tuple[NDArray[np.bool_], Literal["40 dB below the band", "quietest tenth"]]:
+    """Return which bins count as out of band, and by which rule."""
+    ranked = np.sort(mean)[::-1]
+    held = np.cumsum(ranked)
+    in_band = int(np.searchsorted(held, 0.99 * held[-1])) + 1
+    band = np.flatnonzero(mean >= _BELOW_BAND * held[in_band - 1] / in_band)
+    chosen = np.ones(mean.size, np.bool_)
+    for shift in range(-_MAIN_LOBE_BINS, _MAIN_LOBE_BINS + 1):
+        chosen[(band + shift) % mean.size] = False
+    if np.count_nonzero(chosen) >= _FEWEST_BINS * mean.size:
+        return chosen, "40 dB below the band"
+    half = _SMOOTHED_BINS // 2
+    sums = np.cumsum(np.concatenate([[0.0], mean[-half:], mean, mean[:half]]))
+    smooth = sums[_SMOOTHED_BINS:] - sums[:-_SMOOTHED_BINS]
+    return smooth <= np.quantile(smooth, _QUIETEST), "quietest tenth"
