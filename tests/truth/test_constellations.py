@@ -1,4 +1,4 @@
-"""Constellations against their standards; where each number comes from is in rows_carrier.md."""
+"""Constellations against their standards; where each number comes from is in README.md."""
 
 import numpy as np
 import pytest

@@ -25,8 +25,14 @@ from wavegen.dsp.pulses.rectangular import Hold
 
 LONGEST_ROW = 1 << 18
 """Longest output row of :class:`RowShaper`, samples; beyond, its rows leave every cache."""
-ROWS = 4
+LEAST_ROWS = 4
 """Rows a call of the FFT: single rows run several times slower."""
+CALL_SAMPLES = 1 << 16
+"""Samples a call of the FFT where rows are short: enough to hide the call, inside the cache."""
+MOST_DENSITY = 128
+"""Points a symbol at which the spectrum of a pulse is taken where its ends are abrupt."""
+ROW_OVERHEAD = 10_000
+"""Cost of starting a row in units of ``F log2 F`` (measured: about 3 us)."""
 SILENT = 1e-7
 """Spectrum of a pulse below this share of its highest value (-140 dB) is left out."""
 POLYNOMIAL_ERROR = 1e-9
@@ -179,9 +185,10 @@ class RowShaper:
         windows = windows[:: self.hop_cycles * self.n_symbols]
         total = stop - start
         out = np.empty(total, np.complex64)
-        buffer = np.empty((min(ROWS, windows.shape[0]), n_out), np.complex64)
-        for first in range(0, windows.shape[0], ROWS):
-            spectrum = scipy.fft.fft(windows[first : first + ROWS], axis=1)
+        n_rows = min(max(LEAST_ROWS, CALL_SAMPLES // n_out), windows.shape[0])
+        buffer = np.empty((n_rows, n_out), np.complex64)
+        for first in range(0, windows.shape[0], n_rows):
+            spectrum = scipy.fft.fft(windows[first : first + n_rows], axis=1)
             rows = buffer[: spectrum.shape[0]]
             self._fill(rows, spectrum)
             rows = scipy.fft.ifft(rows, axis=1, norm="forward", overwrite_x=True)
@@ -279,7 +286,7 @@ def _row_units(pulse: Pulse, a: int, b: int, longest: int) -> int | None:
     units = lost + 1
     while units * a <= longest or (pulse.is_sampled and best is None):
         units = scipy.fft.next_fast_len(units)
-        cost = units * log2(max(units * a, 2)) / (units - lost)
+        cost = (units * a * log2(max(units * a, 2)) + ROW_OVERHEAD) / (units - lost)
         if cost < least:
             best, least = units, cost
         units += 1
@@ -288,8 +295,7 @@ def _row_units(pulse: Pulse, a: int, b: int, longest: int) -> int | None:
 
 def _design_rows(pulse: Pulse, a: int, b: int, units: int, gain: float) -> RowShaper:
     n_in, n_out = units * b, units * a
-    density = a if b == 1 else max(8, 4 * -(-a // b))
-    lines = _spectrum(pulse, n_in, density) * (gain / n_in)
+    lines = _spectrum(pulse, n_in, a if b == 1 else _density(pulse, a, b)) * (gain / n_in)
     half = lines.size // 2
     is_heard = np.abs(lines) > SILENT * np.abs(lines).max()
     heard = np.flatnonzero(np.roll(is_heard, half))  # from the lowest negative line up
@@ -304,6 +310,17 @@ def _design_rows(pulse: Pulse, a: int, b: int, units: int, gain: float) -> RowSh
         pieces=pieces,
         silent=silent,
     )
+
+
+def _density(pulse: Pulse, a: int, b: int) -> int:
+    """Return points a symbol at which no line of the pulse is loud enough to fold."""
+    density = max(8, 4 * -(-a // b))
+    while density < MOST_DENSITY:
+        lines = np.abs(_spectrum(pulse, 2 * pulse.span_symbols + 1, density))
+        if np.max(lines[lines.size // 2 - lines.size // 16 :][: lines.size // 8]) < SILENT / 2:
+            break
+        density *= 2
+    return density
 
 
 def _spectrum(pulse: Pulse, n_symbols: int, per_symbol: int) -> NDArray[np.complex128]:

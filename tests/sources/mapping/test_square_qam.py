@@ -1,3 +1,5 @@
+import itertools
+
 import numpy as np
 import pytest
 
@@ -17,7 +19,7 @@ def test_axis_levels_are_the_odd_numbers_gray_labelled(n_bits):
     levels = axis_levels(bits)
     order = np.argsort(levels)
     assert levels[order].tolist() == list(range(1 - (1 << n_bits), 1 << n_bits, 2))
-    assert all(int(a ^ b).bit_count() == 1 for a, b in zip(order, order[1:], strict=False))
+    assert all(int(a ^ b).bit_count() == 1 for a, b in itertools.pairwise(order))
 
 
 def test_power_is_one():

@@ -4,7 +4,8 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Self
+from numbers import Real
+from typing import Any, Self
 
 import numpy as np
 from numpy.typing import NDArray
@@ -61,6 +62,10 @@ class Constellation:
         """Points for every byte (up to 8 bits a symbol) or 16-bit word: the table repeats."""
         size = 256 if self.n_bits <= 8 else 65536
         return np.tile(self.points, size // self.points.size).astype(np.complex64)
+
+    def __getstate__(self) -> dict[str, Any]:
+        """Leave out the wide table, which is made again: workers get a small description."""
+        return {"name": self.name, "points": self.points}
 
     @classmethod
     def parse(cls, value: object) -> Self:
@@ -132,7 +137,9 @@ class Constellation:
 
 def _is_numeric(value: object) -> bool:
     """Return whether a list of lists holds numbers alone: no text, no true or false."""
+    if isinstance(value, np.ndarray):
+        return value.dtype.kind in "iuf"
     if not isinstance(value, list | tuple):
         return False
     inner = [item for row in value if isinstance(row, list | tuple) for item in row]
-    return all(isinstance(item, int | float) and not isinstance(item, bool) for item in inner)
+    return all(isinstance(item, Real) and not isinstance(item, bool) for item in inner)
