@@ -267,6 +267,22 @@ def check_facts(form: Format, facts: FileFacts, where: str) -> None:
             allowed="at least one sample, at a rate above 0 Hz",
             remedy="Correct the duration or the sample rate.",
         )
+    for item in facts.annotations:
+        end = item.start_sample + (item.n_samples or 0)
+        if not 0 <= item.start_sample < facts.n_samples or end > facts.n_samples:
+            raise FileError(
+                where=where,
+                problem=f"the marker {item.label!r} covers {item.start_sample} to {end - 1}",
+                allowed=f"samples 0 to {facts.n_samples - 1}",
+                remedy="Cut markers at the end of the file.",
+            )
+        if (item.low_hz is None) != (item.high_hz is None):
+            raise FileError(
+                where=where,
+                problem=f"the marker {item.label!r} has one band edge",
+                allowed="both edges or neither",
+                remedy="Give the other edge too.",
+            )
 
 
 def told_rate(

@@ -57,9 +57,9 @@ def read_json(path: Path, most_bytes: int = MOST_BYTES) -> dict[str, object]:
         raise _fault(path, "is nested too deep", f"up to {_MOST_DEPTH} levels") from error
     except ValueError as error:  # from the hooks below, and integers of thousands of digits
         raise _fault(path, str(error), "JSON (RFC 8259) with each key once") from error
-    problem = _fault_inside(found)
-    if problem:
-        raise _fault(path, problem, f"up to {_MOST_DEPTH} levels of well-formed text and numbers")
+    inside = _fault_inside(found)
+    if inside:
+        raise _fault(path, inside, f"up to {_MOST_DEPTH} levels of well-formed text and numbers")
     if not isinstance(found, dict):
         raise _fault(path, f"holds a JSON {type(found).__name__}", "a JSON object")
     return found
