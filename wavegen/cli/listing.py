@@ -39,7 +39,7 @@ def _members(topic: str) -> list[tuple[str, str]]:
     if topic == "recipes":
         from wavegen.recipe.find import shipped_recipes
 
-        return [(recipe.name, recipe.title) for recipe in shipped_recipes()]
+        return [(name, title) for name, title, _ in shipped_recipes()]
     rows: list[tuple[str, str]] = []
     for table in _tables(topic):
         for name in table:

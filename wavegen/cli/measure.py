@@ -78,7 +78,7 @@ def _is_recipe(subject: str) -> bool:
         return False
     from wavegen.recipe.find import shipped_recipes
 
-    return any(recipe.name == subject for recipe in shipped_recipes())
+    return any(name == subject for name, _, _ in shipped_recipes())
 
 
 def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 from concurrent.futures import Executor
 from dataclasses import dataclass
 from pathlib import Path
@@ -178,7 +179,7 @@ def plan_files(prepared: Prepared, drafts: Drafts) -> list[Target]:
             title=loaded.recipe.title,
             description=describe(prepared),
             generator=f"wavegen {__version__}",
-            recipe_sha512=loaded.sha512,
+            recipe_sha512=hashlib.sha512(loaded.text.encode()).hexdigest(),
         )
         form.check(facts, where)
         names = form.files(wanted.name or loaded.name, facts.datatype)

@@ -31,6 +31,7 @@ def gain_for(loaded: LoadedRecipe, waveform: Waveform) -> float:
     """
     output = loaded.recipe.output
     if output.average_dbfs is None:
+        assert output.peak_dbfs is not None  # noqa: S101 - the settings give one of the two
         return math.sqrt(10 ** (output.peak_dbfs / 10) / waveform.peak.power)
     if output.average_dbfs + waveform.papr_db > 0:
         raise loaded.resolve(

@@ -72,7 +72,8 @@ def grid_db(statistics: PowerStatistics) -> NDArray[np.float64]:
     """Return the level grid of a curve: 0.05 dB, from -30 dB to just over the peak."""
     top = int(np.ceil(statistics.papr_db / GRID_STEP_DB)) + 1
     low = round(-30 / GRID_STEP_DB)
-    return np.arange(low, max(top, low + 1) + 1) * GRID_STEP_DB
+    steps: NDArray[np.float64] = np.arange(low, max(top, low + 1) + 1, dtype=np.float64)
+    return steps * GRID_STEP_DB
 
 
 def curves(statistics: PowerStatistics) -> dict[str, Any]:
@@ -123,7 +124,7 @@ def law_document(law: Law | None, verdict: str) -> dict[str, Any] | None:
     """Return a law's curve on a 0.05 dB grid down to 1e-9, and how the file compares."""
     if law is None:
         return None
-    high = law.level_db(LOWEST_PROBABILITY)
+    high = float(law.level_db(LOWEST_PROBABILITY))
     count = int(np.ceil((high + 30) / GRID_STEP_DB)) + 2
     level = -30 + np.arange(count) * GRID_STEP_DB
     return {
@@ -132,7 +133,7 @@ def law_document(law: Law | None, verdict: str) -> dict[str, Any] | None:
         "level_db": [round(float(x), 2) for x in level],
         "probability": [float(x) for x in law.ccdf(level)],
         "levels": [
-            {"probability": q, "level_db": rounded(law.level_db(q), 4)} for q in PROBABILITIES
+            {"probability": q, "level_db": rounded(float(law.level_db(q)), 4)} for q in PROBABILITIES
         ],
         "verdict": verdict,
     }
@@ -234,10 +235,11 @@ def stimulus_document(
 
 def seam_row(seam: SeamFigure) -> dict[str, Any]:
     """Return the loop-seam figure as JSON values."""
+    figures = asdict(seam) | {"excess_db": seam.excess_db, "is_clean": seam.is_clean}
     return {
         key: rounded(value, 2) if isinstance(value, float) else value
-        for key, value in asdict(seam).items()
-    } | {"is_clean": bool(seam.is_clean)}
+        for key, value in figures.items()
+    }
 
 
 def part_rows(prepared: Prepared, waveform: Waveform) -> list[dict[str, Any]]:

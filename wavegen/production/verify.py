@@ -92,4 +92,5 @@ def rounding_db(file: ExportedFile, level_db: NDArray[np.float64]) -> NDArray[np
     if not file.datatype.is_integer:
         return np.zeros(level_db.size)
     codes = file.datatype.full_scale * 10 ** ((file.statistics.mean_db + level_db) / 20)
-    return 20 * np.log10(1 + np.sqrt(0.5) / codes)
+    change: NDArray[np.float64] = 20 * np.log10(1 + np.sqrt(0.5) / codes)
+    return change
