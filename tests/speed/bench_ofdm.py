@@ -127,7 +127,7 @@ def ratios(signal: Prefixed, repeats: int) -> dict[str, float]:
 def main() -> None:
     """Print the ratios."""
     parser = argparse.ArgumentParser(description=__doc__)
-    parser.add_argument("--samples", type=int, default=1 << 22)
+    parser.add_argument("--samples", type=int, default=1 << 24)
     parser.add_argument("--repeats", type=int, default=9)
     chosen = parser.parse_args()
     print("large blocks kept:", keep_large_blocks())  # noqa: T201 - a benchmark prints

@@ -81,7 +81,7 @@ def random_words(
         uint8, uint16, uint32 or uint64.
     """
     dtype = np.dtype(f"<u{width_bytes}")
-    if count >= period:
+    if count > period or (count == period and first % period):
         whole = random_bytes(key, 0, period * width_bytes).view(dtype)
         return whole.take(np.arange(first, first + count), mode="wrap")
     pieces = [

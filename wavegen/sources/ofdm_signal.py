@@ -13,8 +13,10 @@ from numpy.typing import NDArray
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.sources.ofdm_layout import Layout
 
-BLOCK_SAMPLES = 1 << 15
-"""Samples worked on at a time: 256 kB, so that passes after the first find them in cache."""
+FFT_SAMPLES = 1 << 16
+"""Samples filled and transformed at a time: 512 kB, so that the FFT finds them in cache."""
+LAID_SAMPLES = 1 << 18
+"""Samples laid at a time: fewer cost calls, more lose the cache."""
 FEWEST_ROWS = 4
 """Rows an FFT call should have: single rows run several times slower."""
 MOST_SLICES = 12
@@ -99,7 +101,19 @@ class SymbolBodies(Signal):
     @property
     def block_rows(self) -> int:
         """Symbols worked on at a time."""
-        return max(BLOCK_SAMPLES // self.n_fft, FEWEST_ROWS)
+        return max(FFT_SAMPLES // self.n_fft, FEWEST_ROWS)
+
+    @cached_property
+    def gaps(self) -> list[slice]:
+        """Bins that no slice of data fills: empty ones and pilots."""
+        free = np.ones(self.n_fft, np.bool_)
+        for part in self.carried:
+            if len(part.slices) <= MOST_SLICES:
+                free[part.bins] = False
+        edges = np.flatnonzero(np.diff(np.concatenate(([False], free, [False]))))
+        if edges.size > 2 * MOST_SLICES:
+            return [slice(0, self.n_fft)]
+        return [slice(int(a), int(b)) for a, b in edges.reshape(-1, 2)]
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Return whole symbols: FFT bins filled, then transformed in place."""
@@ -128,6 +142,7 @@ class Writer:
 
     def __init__(self, bodies: SymbolBodies, first: int, count: int) -> None:
         self._fixed = bodies.fixed
+        self._gaps = bodies.gaps
         self._parts = []
         n_rows = min(bodies.block_rows, count)
         row = np.arange(n_rows)[:, None] * bodies.n_fft
@@ -138,7 +153,8 @@ class Writer:
 
     def fill(self, low: int, some: Samples) -> None:
         """Write the bins of symbols ``first + low ...`` into rows of ``n_fft``."""
-        some[:] = self._fixed
+        for gap in self._gaps:
+            some[:, gap] = self._fixed[gap]
         n = some.shape[0]
         for part, words, room, scatter in self._parts:
             values = room[:n]
@@ -207,7 +223,7 @@ class Prefixed(Signal):
         for j, prefix in enumerate(self.layout.prefixes):
             length = prefix + self.layout.n_fft
             last = found[-1] if found else (0, 0, -1)
-            if last[2] == prefix and (j + 1 - last[0]) * length <= BLOCK_SAMPLES:
+            if last[2] == prefix and (j + 1 - last[0]) * length <= LAID_SAMPLES:
                 found[-1] = (last[0], j + 1, prefix)
             else:
                 found.append((j, j + 1, prefix))
@@ -240,7 +256,7 @@ class Prefixed(Signal):
         before = bodies[: end - first]  # row i: the symbol before symbol first + i
         current = bodies[1:] if layout.edge else bodies
         m = layout.n_symbols
-        per_block = max(BLOCK_SAMPLES // layout.n_samples, 1)
+        per_block = max(LAID_SAMPLES // layout.n_samples, 1)
         symbol = first
         while symbol < end:
             place, left = symbol % m, end - symbol
