@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import sys
+import textwrap
 import time
 from typing import TYPE_CHECKING, Any
 
@@ -44,8 +45,8 @@ class Console:
         sys.stdout.write("\n")
 
     def line(self, text: str = "") -> None:
-        """Print a line of the result on stdout."""
-        sys.stdout.write(text + "\n")
+        """Print a sentence of the result on stdout, broken at 80 columns."""
+        sys.stdout.write(textwrap.fill(text, WIDTH, break_long_words=False) + "\n")
 
     def table(self, table: Table) -> None:
         """Print a table on stdout, at most 80 columns wide."""
@@ -54,7 +55,9 @@ class Console:
         from rich.table import Table as Drawn
         from rich.text import Text
 
-        drawn = Drawn(title=Text(table.title), title_justify="left", box=SIMPLE_HEAD, pad_edge=False)
+        drawn = Drawn(
+            title=Text(table.title), title_justify="left", box=SIMPLE_HEAD, pad_edge=False
+        )
         for number, heading in enumerate(table.headings):
             drawn.add_column(
                 heading,

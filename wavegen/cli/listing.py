@@ -20,7 +20,9 @@ class Listing:
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
-        parser.add_argument("topic", nargs="?", choices=TOPICS, metavar="TOPIC", help=", ".join(TOPICS))
+        parser.add_argument(
+            "topic", nargs="?", choices=TOPICS, metavar="TOPIC", help=", ".join(TOPICS)
+        )
 
     @staticmethod
     def run(arguments: argparse.Namespace, console: Console) -> int:
@@ -28,10 +30,14 @@ class Listing:
         topics = (arguments.topic,) if arguments.topic else TOPICS
         found = {topic: _members(topic) for topic in topics}
         if arguments.json:
-            console.document({topic: [{"name": n, "about": a} for n, a in rows] for topic, rows in found.items()})
+            console.document(
+                {topic: [{"name": n, "about": a} for n, a in rows] for topic, rows in found.items()}
+            )
             return 0
         for topic, rows in found.items():
-            console.table(Table(title=topic.capitalize(), headings=("name", "about"), rows=tuple(rows)))
+            console.table(
+                Table(title=topic.capitalize(), headings=("name", "about"), rows=tuple(rows))
+            )
         return 0
 
 

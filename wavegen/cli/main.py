@@ -108,7 +108,7 @@ def run(argv: Sequence[str] | None = None) -> int:
     except BrokenPipeError:  # the reader of our output has gone, as in `wavegen list | head -1`
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
         return 0
-    except Exception as error:  # noqa: BLE001 - the last resort: a sentence, never a traceback
+    except Exception as error:
         if os.environ.get("WAVEGEN_TRACEBACK"):
             raise
         console.fail(

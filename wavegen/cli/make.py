@@ -25,8 +25,12 @@ class Make:
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
-        parser.add_argument("recipes", nargs="+", metavar="RECIPE", help="a file, or a shipped recipe's name")
-        parser.add_argument("--out", type=Path, default=Path("output"), metavar="DIR", help="default: output")
+        parser.add_argument(
+            "recipes", nargs="+", metavar="RECIPE", help="a file, or a shipped recipe's name"
+        )
+        parser.add_argument(
+            "--out", type=Path, default=Path("output"), metavar="DIR", help="default: output"
+        )
         parser.add_argument("--overwrite", action="store_true", help="replace files that exist")
         add_overrides(parser)
         add_workers(parser)
@@ -71,7 +75,13 @@ class Make:
 
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one stimulus: files, figures, levels, levels along the bench."""
-    from wavegen.reports.tables import bench_table, file_table, level_table, summary_table
+    from wavegen.reports.tables import (
+        bench_table,
+        file_table,
+        law_words,
+        level_table,
+        summary_table,
+    )
 
     for note in (*document["rounded"], *document["warnings"]):
         change = f" (asked {note['asked']}, got {note['given']})" if "given" in note else ""
@@ -79,9 +89,8 @@ def show(document: dict[str, Any], console: Console) -> None:
     title = document["title"] or document["recipe"]["name"]
     console.table(summary_table(document, title=title))
     console.table(level_table(document))
-    law = document["law"]
-    if law:
-        console.line(f"Law: {law['name']}; the file {law['verdict']} with it.".replace("differs with", "differs from"))
+    if document["law"]:
+        console.line(law_words(document["law"]))
     bench = bench_table(document)
     if bench:
         console.table(bench)

@@ -33,19 +33,30 @@ class Measure:
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
-        parser.add_argument("subject", metavar="FILE|RECIPE", help="a data file, or a recipe by file or name")
+        parser.add_argument(
+            "subject", metavar="FILE|RECIPE", help="a data file, or a recipe by file or name"
+        )
         group = parser.add_argument_group("files without a header")
         group.add_argument("--format", metavar="NAME", help="a format or datatype, such as ci16_le")
         group.add_argument("--sample-rate", type=rate, metavar="RATE", help="such as 20MHz")
-        group.add_argument("--full-scale", type=positive, metavar="CODE", help="code that reads as 1.0")
-        parser.add_argument(
-            "--reference-level", type=level_dbm, metavar="LEVEL", help="power at 0 dBFS, such as -20dBm"
+        group.add_argument(
+            "--full-scale", type=positive, metavar="CODE", help="code that reads as 1.0"
         )
-        parser.add_argument("--from", dest="first", metavar="AT", help="first sample: 10ms or 4096samples")
+        parser.add_argument(
+            "--reference-level",
+            type=level_dbm,
+            metavar="LEVEL",
+            help="power at 0 dBFS, such as -20dBm",
+        )
+        parser.add_argument(
+            "--from", dest="first", metavar="AT", help="first sample: 10ms or 4096samples"
+        )
         parser.add_argument("--to", dest="stop", metavar="AT", help="where to stop (not included)")
         loops = parser.add_mutually_exclusive_group()
         loops.add_argument("--loop", action="store_true", help="the file repeats as a whole")
-        loops.add_argument("--period", metavar="N", help="it repeats after this time or number of samples")
+        loops.add_argument(
+            "--period", metavar="N", help="it repeats after this time or number of samples"
+        )
         add_overrides(parser)
         add_workers(parser)
 
@@ -161,7 +172,9 @@ def show(document: dict[str, Any], console: Console) -> None:
 
     for note in (*document.get("rounded", ()), *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
-    kind = f"{document['file_format']} {document['datatype']}, " if "file_format" in document else ""
+    kind = (
+        f"{document['file_format']} {document['datatype']}, " if "file_format" in document else ""
+    )
     console.table(summary_table(document, title=f"{document['name']} ({kind}{document['is']})"))
     console.table(level_table(document))
     if "mean_dbm" in document:

@@ -16,7 +16,9 @@ LARGEST_STRETCH = 2
 """A loop may be this many times longer than asked; beyond, the recipe must say so itself."""
 
 
-def loop_length(duration: Duration, cycle: Cycle, sample_rate_hz: Fraction) -> tuple[int, list[Note]]:
+def loop_length(
+    duration: Duration, cycle: Cycle, sample_rate_hz: Fraction
+) -> tuple[int, list[Note]]:
     """Return the loop's length in samples and what was rounded.
 
     Parameters
@@ -69,7 +71,7 @@ def loop_length(duration: Duration, cycle: Cycle, sample_rate_hz: Fraction) -> t
     if n_samples > LARGEST_STRETCH * asked and duration.least is None:
         raise RecipeError(
             where="duration",
-            problem=f"{duration.at} is shorter than the shortest loop, {_both(quantum, sample_rate_hz)}",
+            problem=f"{duration.at} is shorter than the shortest loop",
             allowed=f"at least {_both(quantum, sample_rate_hz)}",
             remedy="Ask for a whole number of these loops.",
         )
@@ -127,7 +129,7 @@ def _nothing_fits(
     limits += f"most {duration.most or f'{MOST_SAMPLES} samples'}"
     return RecipeError(
         where="duration",
-        problem=f"no whole number of loops of {_both(quantum, sample_rate_hz)} lies within {limits}",
+        problem=f"no whole number of {_both(quantum, sample_rate_hz)} lies within {limits}",
         allowed=f"limits that hold {_both(low * quantum, sample_rate_hz)}",
         remedy="Widen the limits, or choose rates with a shorter common loop.",
     )

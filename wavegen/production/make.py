@@ -123,7 +123,9 @@ def make(
             bench = loaded.recipe.bench
             levels = path_levels(bench, waveform.papr_db) if bench else []
             refuse_overload(levels)
-            files = [_export(target, waveform.signal, gain, workers, progress) for target in targets]
+            files = [
+                _export(target, waveform.signal, gain, workers, progress) for target in targets
+            ]
         law = law_of(prepared)
         document = stimulus_document(
             prepared,

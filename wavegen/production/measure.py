@@ -155,4 +155,3 @@ def measure_recipe(
     for kind, key in (("rounded", "rounded"), ("warning", "warnings"), ("info", "notes")):
         document[key] = note_rows([note for note in prepared.notes if note.kind == kind])
     return document
-

@@ -130,10 +130,12 @@ def law_document(law: Law | None, verdict: str) -> dict[str, Any] | None:
     return {
         "name": law.name,
         "holds": law.holds,
+        "n_instants": getattr(law, "n_instants", None),
         "level_db": [round(float(x), 2) for x in level],
         "probability": [float(x) for x in law.ccdf(level)],
         "levels": [
-            {"probability": q, "level_db": rounded(float(law.level_db(q)), 4)} for q in PROBABILITIES
+            {"probability": q, "level_db": rounded(float(law.level_db(q)), 4)}
+            for q in PROBABILITIES
         ],
         "verdict": verdict,
     }

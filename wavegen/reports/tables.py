@@ -8,7 +8,14 @@ from typing import Any
 from wavegen.core.table import Table
 from wavegen.core.units import format_hz, format_s
 
-_PERCENT = {0.1: "10 %", 0.01: "1 %", 1e-3: "0.1 %", 1e-4: "0.01 %", 1e-5: "0.001 %", 1e-6: "0.0001 %"}
+_PERCENT = {
+    0.1: "10 %",
+    0.01: "1 %",
+    1e-3: "0.1 %",
+    1e-4: "0.01 %",
+    1e-5: "0.001 %",
+    1e-6: "0.0001 %",
+}
 
 
 def percent(probability: float) -> str:
@@ -22,20 +29,41 @@ def percent(probability: float) -> str:
     return _PERCENT.get(probability) or f"{100 * probability:g} %"
 
 
+def fixed(value: float, unit: str) -> str:
+    """Write a level with two decimals, never as a negative zero.
+
+    Examples
+    --------
+    >>> fixed(-0.001, "dBFS")
+    '0.00 dBFS'
+    """
+    return f"{round(value, 2) + 0.0:.2f} {unit}"
+
+
+def law_words(law: dict[str, Any]) -> str:
+    """Say how a file compares with its law."""
+    instants = law.get("n_instants")
+    where = f", at the {instants} different instants of this loop" if instants else ""
+    verb = {"agrees": "agrees with", "differs": "DIFFERS FROM"}.get(law["verdict"])
+    if verb is None:
+        return f"Law: {law['name']}; there is not enough to tell whether the file follows it."
+    return f"Law: {law['name']}; the file {verb} it{where}."
+
+
 def summary_table(document: dict[str, Any], *, title: str) -> Table:
     """Return the main figures of a measurement or sidecar."""
     rows = [
         ("sample rate", format_hz(document["sample_rate_hz"])),
         ("length", f"{format_s(document['duration_s'])}, {document['n_samples']} samples"),
-        ("mean", f"{document['mean_dbfs']:.2f} dBFS"),
-        ("peak at samples", f"{document['peak_dbfs']:.2f} dBFS"),
-        ("peak between samples", f"{document['peak_between_samples_dbfs']:.2f} dBFS"),
-        ("PAPR at samples", f"{document['papr_db']:.2f} dB"),
-        ("PAPR between samples", f"{document['papr_between_samples_db']:.2f} dB"),
+        ("mean", fixed(document["mean_dbfs"], "dBFS")),
+        ("peak at samples", fixed(document["peak_dbfs"], "dBFS")),
+        ("peak between samples", fixed(document["peak_between_samples_dbfs"], "dBFS")),
+        ("PAPR at samples", fixed(document["papr_db"], "dB")),
+        ("PAPR between samples", fixed(document["papr_between_samples_db"], "dB")),
     ]
     if "mean_dbm" in document:
-        rows.append(("mean", f"{document['mean_dbm']:.2f} dBm"))
-        rows.append(("peak envelope power", f"{document['peak_envelope_dbm']:.2f} dBm"))
+        rows.append(("mean", fixed(document["mean_dbm"], "dBm")))
+        rows.append(("peak envelope power", fixed(document["peak_envelope_dbm"], "dBm")))
     if document["n_zeros"]:
         rows.append(("exact zeros", f"{document['n_zeros']} samples"))
     seam = document.get("seam") or document.get("loop", {}).get("seam")
@@ -67,10 +95,10 @@ def level_table(document: dict[str, Any]) -> Table:
         elif probability * document["n_samples"] < 1:
             shown = "loop too short"
         else:
-            shown = f"{level:.2f} dB"
-        cells = [percent(probability), shown, f"{_gaussian_db(probability):.2f} dB"]
+            shown = fixed(level, "dB")
+        cells = [percent(probability), shown, fixed(_gaussian_db(probability), "dB")]
         if law:
-            cells.append(f"{exact[probability]:.2f} dB")
+            cells.append(fixed(exact[probability], "dB"))
         rows.append(tuple(cells))
     return Table(
         title="Instantaneous power exceeds its mean by",
@@ -92,8 +120,8 @@ def bench_table(document: dict[str, Any]) -> Table | None:
     rows = tuple(
         (
             place["name"],
-            f"{place['average_dbm']:.2f} dBm",
-            f"{place['peak_envelope_dbm']:.2f} dBm",
+            fixed(place["average_dbm"], "dBm"),
+            fixed(place["peak_envelope_dbm"], "dBm"),
             _rating(place),
         )
         for place in bench["path"]
