@@ -37,7 +37,7 @@ def test_the_taper_falls_from_one_to_zero(span):
 def test_spans_stay_within_bounds_and_fall_with_roll_off():
     spans = [default_span(a) for a in (0.0, 1e-9, 0.05, 0.1, 0.22, 0.5, 1.0)]
     assert spans == sorted(spans, reverse=True)
-    assert (spans[0], spans[-1]) == (256, 32)
+    assert (spans[0], spans[-1]) == (256, 48)
 
 
 def test_energy_does_not_depend_on_the_lattice_of_a_band_limited_pulse():

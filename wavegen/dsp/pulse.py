@@ -130,21 +130,22 @@ def default_span(roll_off: float) -> int:
     Returns
     -------
     int
-        ``14 / roll_off`` rounded up to an even number, at least 32, at most 256.
+        ``14 / roll_off`` rounded up to an even number, at least 48, at most 256.
 
     Notes
     -----
     The tails fall as ``1 / (4 pi roll_off t^2)``, so that equal interference needs a span in
-    proportion to ``1 / roll_off``: EVM behind the same filter stays below 0.006 % from roll-off
-    0.05 to 1 (computed; tested in ``tests/truth/test_pulses.py``).
+    proportion to ``1 / roll_off``: EVM behind the same filter stays below 0.0055 % from roll-off
+    0.05 to 1; 48 symbols hold the floor outside the band below -110 dB at large roll-offs
+    (computed; tested in ``tests/truth/test_pulses.py``).
 
     Examples
     --------
     >>> [default_span(roll_off) for roll_off in (0.05, 0.1, 0.22, 0.35, 1.0)]
-    [256, 140, 64, 40, 32]
+    [256, 140, 64, 48, 48]
     """
     wanted = 14.0 / roll_off if roll_off > 14.0 / 256 else 256.0
-    return min(max(2 * int(np.ceil(wanted / 2)), 32), 256)
+    return min(max(2 * int(np.ceil(wanted / 2)), 48), 256)
 
 
 def mean_energy(pulse: Pulse, *, per_symbol: int, period_symbols: int) -> float:
