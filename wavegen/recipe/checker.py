@@ -198,7 +198,7 @@ class _Walk:
                 return self.settings(node, known[usual].load(usual), path)
         if chosen is None or scalars.is_null(chosen):
             return self.fault(
-                node.place,
+                node.place if chosen is None else chosen.place,
                 join(path, "kind") if isinstance(node, Table) else path,
                 problem="the key kind is missing"
                 if isinstance(node, Table)

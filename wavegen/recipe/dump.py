@@ -104,7 +104,7 @@ def _value(  # noqa: PLR0911 # one return a kind of value
     if callable(getattr(type(value), "text", None)):  # a field of that name is no method
         made: object = value.text()
         return made
-    if hasattr(type(value), "parse") and type(value).__str__ is not object.__str__:
+    if hasattr(type(value), "parse") and "__str__" in vars(type(value)):
         return str(value)
     if not dataclasses.is_dataclass(value) or hasattr(type(value), "parse"):
         message = f"{path}: {type(value).__name__} has no text for a recipe"

@@ -74,7 +74,7 @@ def write_quantity(value: Fraction | float, dimension: Dimension) -> str:
         number = meant / size
         texts.append((_cost(number), f"{_number(number)} {word}"))
     text = min(texts)[1]
-    if dimension.suffix in {"_samples", "_symbols"}:
+    if not meant or dimension.suffix in {"_samples", "_symbols"}:
         text = f"{_number(meant)} {dimension.base}"
     if parse_quantity(text, dimension) != meant:
         message = f"{value!r} {dimension.base} has no exact text"

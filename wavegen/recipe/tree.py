@@ -220,7 +220,10 @@ class _Reader:
             )
         if kind == "ScalarEvent":
             self.count(1, place)
-            node = Scalar(event.value, event.implicit[0], place)
+            is_plain = event.implicit[0]
+            if is_plain and not event.value and self.stack and self.stack[-1].key is not None:
+                place = self.stack[-1].key.place  # nothing stands nowhere: its key says more
+            node = Scalar(event.value, is_plain, place)
             if event.anchor is not None:
                 self.anchors[event.anchor] = _Anchored(node, 1, 0)
             self.add(node, 1, 0)
@@ -381,8 +384,14 @@ def _events(text: str, override: str) -> Iterator[Any]:
             yield event
     except MarkedYAMLError as error:
         mark = error.problem_mark or error.context_mark
+        if "quoted scalar" in str(error.context) and "end of stream" in str(error.problem):
+            mark = error.context_mark  # where the quotes open
         place = replace(last, line=mark.line + 1, column=mark.column + 1) if mark else last
-        raise FaultError(_not_yaml(place, error.problem or "it cannot be read")) from error
+        fault = _not_yaml(place, error.problem or "it cannot be read")
+        if error.context_mark is not None and "while parsing a flow" in str(error.context):
+            line = error.context_mark.line + 1
+            fault = replace(fault, remedy=f"Close the bracket that opens on line {line}.")
+        raise FaultError(fault) from error
     except (
         YAMLError,
         ValueError,

@@ -1,0 +1,126 @@
+"""The top level of a recipe: durations, the bench, the files."""
+
+from fractions import Fraction
+
+import pytest
+
+from wavegen.core.units import QuantityError
+from wavegen.recipe.load import load_text
+from wavegen.recipe.settings import Bench, Duration, Extent, FormatRequest, Output, PathStage
+from wavegen.recipe.tables import Tables
+
+
+@pytest.mark.parametrize(
+    ("text", "value", "unit"),
+    [
+        ("10 ms", Fraction(1, 100), "seconds"),
+        ("1/3 s", Fraction(1, 3), "seconds"),
+        ("140 symbols", Fraction(140), "symbols"),
+        ("1 symbol", Fraction(1), "symbols"),
+        ("12288 samples", Fraction(12288), "samples"),
+        ("1e3 samples", Fraction(1000), "samples"),
+    ],
+)
+def test_a_duration_keeps_its_value_and_unit(text: str, value: Fraction, unit: str) -> None:
+    made = Duration.parse(text)
+    assert made.at == Extent(value=value, unit=unit)  # type: ignore[arg-type]
+    assert (made.multiple, made.least, made.most) == (None, None, None)
+    assert Duration.parse(made.text()) == made
+    assert str(made.at) == made.text()
+
+
+def test_a_duration_with_bounds() -> None:
+    made = Duration.parse({"at": "10 ms", "multiple": "16 samples", "most": "200 symbols"})
+    assert made.multiple == Extent(value=Fraction(16), unit="samples")
+    assert made.most == Extent(value=Fraction(200), unit="symbols")
+    assert made.text() == {"at": "10 ms", "multiple": "16 samples", "most": "200 symbols"}
+    assert Duration.parse(made.text()) == made
+
+
+@pytest.mark.parametrize(
+    ("value", "key"),
+    [
+        ({"at": "10 ms", "least": "11 ms"}, "at"),
+        ({"at": "10 ms", "most": "9 ms"}, "most"),
+        ({"at": "10 ms", "least": "9 samples", "most": "8 samples"}, "most"),
+        ({"at": "10 ms", "multiple": True}, "multiple"),
+        ({"at": None}, "at"),
+        ({"at": {"at": "1 ms"}}, "at"),
+        (True, ""),
+        (10.5, ""),
+        ("ten ms", ""),
+    ],
+)
+def test_durations_that_make_no_sense(value: object, key: str) -> None:
+    with pytest.raises(QuantityError) as caught:
+        Duration.parse(value)
+    assert caught.value.key == key
+    assert caught.value.remedy
+
+
+def test_bounds_in_other_units_are_left_to_whoever_knows_the_rate() -> None:
+    Duration.parse({"at": "10 ms", "least": "99999999 samples"})
+
+
+def stages(*roles: str | None) -> tuple[PathStage, ...]:
+    return tuple(PathStage(name=f"s{i}", role=role) for i, role in enumerate(roles))  # type: ignore[arg-type]
+
+
+def test_a_bench_has_one_device() -> None:
+    Bench(average_power_at_device_dbm=-10, path=stages(None, "device", "load"))
+    for roles in [(), ("cable",), ("device", "device")]:
+        with pytest.raises(QuantityError) as caught:
+            Bench(average_power_at_device_dbm=-10, path=stages(*roles))
+        assert caught.value.key == "path"
+
+
+def test_the_bench_of_a_recipe(head: str, tables: Tables) -> None:
+    text = f"""{head}signal: {{kind: choosy}}
+bench:
+  average_power_at_device: -10 dBm
+  averaged_over: burst
+  path:
+    - {{name: cable, gain: -1.2 dB, peak_limit: 33 dBm}}
+    - {{name: amplifier, role: device, gain: 30 dB, average_limit: 20 dBm}}
+"""
+    bench = load_text(text, tables=tables).recipe.bench
+    assert bench is not None
+    assert bench.average_power_at_device_dbm == -10
+    assert bench.averaged_over == "burst"
+    assert bench.impedance_ohm == 50
+    assert bench.path[0].peak_limit_dbm == 33
+    assert bench.path[1].average_limit_dbm == 20
+    assert bench.path[1].role == "device"
+
+
+def test_an_output_without_a_word() -> None:
+    made = Output()
+    assert made.iq == (FormatRequest(format="sigmf", datatype="ci16_le"),)
+    assert made.peak_dbfs == -1
+    assert made.average_dbfs is None
+    assert Output(average_dbfs=-12.0).peak_dbfs is None
+
+
+@pytest.mark.usefixtures("members")
+def test_formats_bring_their_datatype() -> None:
+    assert FormatRequest.parse("sound").datatype == "int16"
+    made = FormatRequest.parse({"format": "sound", "datatype": "float32", "name": "loud"})
+    assert made == FormatRequest(format="sound", datatype="float32", name="loud")
+    assert FormatRequest.parse(made.text()) == made
+    assert FormatRequest.parse("sound").text() == "sound"
+
+
+def test_files_are_told_apart_by_format_and_name() -> None:
+    one = FormatRequest(format="sound", datatype="int16")
+    Output(iq=(one, FormatRequest(format="sound", datatype="int16", name="b")))
+    Output(iq=(one, FormatRequest(format="pairs", datatype="ci16_le")))
+    with pytest.raises(QuantityError) as caught:
+        Output(iq=(one, FormatRequest(format="sound", datatype="float32")))
+    assert caught.value.key == "iq[1]"
+    with pytest.raises(QuantityError):  # one file on systems that fold case
+        Output(
+            iq=(
+                FormatRequest(format="sound", datatype="int16", name="B"),
+                FormatRequest(format="sound", datatype="int16", name="b"),
+            )
+        )
