@@ -84,3 +84,14 @@ def test_writer_refuses_another_shape(tmp_path):
         writer.write(np.zeros(8, "<i2"))
     writer.close()
     assert "(8,)" in caught.value.problem
+
+
+def test_reading_beyond_4_gib(tmp_path):
+    """A sparse file of 5 GiB: only its last samples take room on the disk."""
+    with (tmp_path / "x").open("wb") as file:
+        file.seek(5 * 2**30 - 8)
+        file.write(np.array([1, 2, 3, 4], "<i2").tobytes())
+    signal = open_it(tmp_path / "x")
+    assert signal.n_samples == 5 * 2**28
+    codes = signal.codes(signal.n_samples - 3, signal.n_samples)
+    np.testing.assert_array_equal(codes, [[0, 0], [1, 2], [3, 4]])

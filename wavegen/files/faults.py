@@ -41,6 +41,11 @@ _REASONS = {
         "files up to the quota",
         "Free some disk or choose another output folder.",
     ),
+    errno.EFBIG: (
+        "the file is too large for the file system",
+        "files as large as the file system holds",
+        "Ask for a shorter file or choose another output folder.",
+    ),
     errno.EISDIR: ("is a folder", "a file", "Name the file inside it."),
     errno.ENOTDIR: (
         "a part of the path is not a folder",
