@@ -6,7 +6,7 @@ import pytest
 from hypothesis import HealthCheck, given, settings
 from hypothesis import strategies as st
 
-from wavegen.core.evaluate import MERGE_GAP, evaluate, fold, order, plan
+from wavegen.core.evaluate import MERGE_GAP, evaluate, fold, order, plan, repeat
 from wavegen.core.signal import Signal
 
 
@@ -65,6 +65,16 @@ class TestOrder:
         assert len(order([lab.chain(lab.white(100), 3000)])) == 3001
 
 
+class TestRepeat:
+    @given(st.integers(1, 9), st.integers(-50, 50), st.integers(0, 60))
+    def test_by_index(self, size, start, count):
+        got = repeat(np.arange(size), start, start + count)
+        assert got.tolist() == [index % size for index in range(start, start + count)]
+
+    def test_far_along_a_short_period(self):
+        assert repeat(np.arange(3), 10**15, 10**15 + 4).tolist() == [1, 2, 0, 1]
+
+
 class TestAgainstDirectReferences:
     """Each signal against arithmetic over the whole period at once."""
 
@@ -103,6 +113,12 @@ class TestAgainstDirectReferences:
         got = evaluate({lab.multiplied(long, short): (0, 5000)}, made=made)
         assert same_bits(next(iter(got.values())), want)
         assert made[short] == 3
+
+    def test_a_short_period_far_along_a_long_one(self, lab):
+        long, short = lab.white(10**15), lab.white(3, "short")
+        got = one(lab.multiplied(long, short), 10**14, 10**14 + 1000)
+        repeated = lab.direct_white(3, "short")[(10**14 + np.arange(1000)) % 3]
+        assert same_bits(got, one(long, 10**14, 10**14 + 1000) * repeated)
 
     def test_a_period_of_one_cell_under_twelve_rounds(self, lab):
         want = lab.direct_white(98)

@@ -1,4 +1,6 @@
 import dataclasses
+import pickle
+from functools import cached_property
 
 import pytest
 
@@ -27,3 +29,22 @@ def test_signals_are_frozen_and_compare_by_identity(lab):
 def test_a_bare_description_names_itself_when_computed(lab):
     with pytest.raises(TypeError, match="Signal"):
         Signal(sample_rate_hz=lab.rate_hz, n_samples=10).compute(0, 10)
+
+
+class Cached(Signal):
+    """A signal with something worth keeping."""
+
+    @cached_property
+    def table(self):
+        return bytes(10**6)
+
+
+def test_what_was_cached_does_not_travel(lab):
+    signal = Cached(sample_rate_hz=lab.rate_hz, n_samples=10)
+    assert len(signal.table) == 10**6
+    packed = pickle.dumps(signal)
+    assert len(packed) < 1000
+    again = pickle.loads(packed)  # noqa: S301 - our own bytes
+    assert (again.sample_rate_hz, again.n_samples) == (lab.rate_hz, 10)
+    assert "table" in vars(signal)
+    assert "table" not in vars(again)

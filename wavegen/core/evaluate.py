@@ -10,10 +10,14 @@ from __future__ import annotations
 from bisect import bisect_right
 from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import TypeVar
 
 import numpy as np
+from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
+
+Scalar = TypeVar("Scalar", bound=np.generic)
 
 BYTES_PER_SAMPLE = 8
 MERGE_GAP = 1 << 12
@@ -122,6 +126,35 @@ def fold(start: int, stop: int, period: int) -> list[Range]:
     return [(first, last)] if last <= period else [(first, period), (0, last - period)]
 
 
+def repeat(period: NDArray[Scalar], start: int, stop: int) -> NDArray[Scalar]:
+    """Return a range of a cyclic array by copying whole periods.
+
+    Parameters
+    ----------
+    period : array, shape (n,)
+        One period.
+    start, stop : int
+        Range; indices may pass the seam, be negative or cover several periods.
+
+    Returns
+    -------
+    array, shape (stop - start,)
+
+    Notes
+    -----
+    ``take(mode="wrap")`` steps each index down by one period at a time: far along a short
+    period it never ends.
+
+    Examples
+    --------
+    >>> repeat(np.array([0, 1, 2]), -2, 6)
+    array([1, 2, 0, 1, 2, 0, 1, 2])
+    """
+    first = start % period.size
+    begun = np.concatenate((period[first:], period[:first]))
+    return np.tile(begun, -(-(stop - start) // period.size))[: stop - start]
+
+
 def _merge(ranges: list[Range], step: int, period: int) -> tuple[Range, ...]:
     """Widen folded ranges to the grid and join those that touch or nearly touch."""
     gap = max(step, MERGE_GAP)
@@ -147,7 +180,7 @@ class _Held:
     def read(self, start: int, stop: int) -> Samples:
         """Return an unfolded range; a view where it lies in one segment."""
         if stop - start > self.period:
-            return self.arrays[0].take(np.arange(start, stop), mode="wrap")
+            return repeat(self.arrays[0], start, stop)
         pieces: list[Samples] = []
         position = start
         while position < stop:

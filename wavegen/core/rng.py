@@ -7,7 +7,7 @@ import hashlib
 import numpy as np
 from numpy.typing import NDArray
 
-from wavegen.core.evaluate import fold
+from wavegen.core.evaluate import fold, repeat
 
 _BLOCK_BYTES = 32
 """One Philox 4x64 counter value gives four 64-bit words."""
@@ -83,7 +83,7 @@ def random_words(
     dtype = np.dtype(f"<u{width_bytes}")
     if count > period or (count == period and first % period):
         whole = random_bytes(key, 0, period * width_bytes).view(dtype)
-        return whole.take(np.arange(first, first + count), mode="wrap")
+        return repeat(whole, first, first + count)
     pieces = [
         random_bytes(key, low * width_bytes, (high - low) * width_bytes).view(dtype)
         for low, high in fold(first, first + count, period)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -42,6 +43,15 @@ class Signal:
     step: int = 1
     inputs: tuple[Signal, ...] = ()
     mean_power: float | None = 1.0
+
+    def __getstate__(self) -> dict[str, object]:
+        """Pickle the description only: what ``cached_property`` made is made again there."""
+        kind = type(self)
+        return {
+            name: value
+            for name, value in vars(self).items()
+            if not isinstance(getattr(kind, name, None), cached_property)
+        }
 
     def needs(self, start: int, stop: int) -> tuple[Range, ...]:
         """Return the range wanted of each input to compute ``[start, stop)``.
