@@ -21,15 +21,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
-
-CELL = 1024
-"""Samples in a cell of the absolute index grid, over which power is summed in float64."""
-BINS_PER_OCTAVE = 512
-"""Linear bins an octave: at most ``10 log10(1 + 1/512)`` = 0.0085 dB wide."""
-LOWEST_OCTAVE = -300
-"""Power exponent of bin 0: below the square of the least float32 (2^-298)."""
-N_OCTAVES = 560
-N_BINS = N_OCTAVES * BINS_PER_OCTAVE
+from wavegen.dsp.cell_sums import CELL, sum_cells
+from wavegen.dsp.power_bins import (
+    BINS_PER_OCTAVE,
+    LOWEST_OCTAVE,
+    N_BINS,
+    bin_of,
+)
 
 _BIAS = 127
 _SHIFT = (-LOWEST_OCTAVE - _BIAS) * BINS_PER_OCTAVE
@@ -90,72 +88,6 @@ class PowerTally:
     sums: NDArray[np.float64]
     maxima: NDArray[np.float64]
     bad_index: int
-
-
-def bin_edges(first_bin: int, n_bins: int) -> NDArray[np.float64]:
-    """Return the edges of bins, as power.
-
-    Parameters
-    ----------
-    first_bin, n_bins : int
-        Which bins.
-
-    Returns
-    -------
-    float64 array, shape (n_bins + 1,)
-        Bin ``k`` holds powers from its edge (included) to the next (excluded).
-
-    Examples
-    --------
-    >>> one = -LOWEST_OCTAVE * BINS_PER_OCTAVE
-    >>> bin_edges(one, 2).tolist()
-    [0.99951171875, 1.0009765625, 1.0029296875]
-    """
-    halves = 2 * np.arange(first_bin, first_bin + n_bins + 1) - 1
-    octave, place = np.divmod(halves, 2 * BINS_PER_OCTAVE)
-    edges: NDArray[np.float64] = np.ldexp(
-        1.0 + place / (2 * BINS_PER_OCTAVE), octave + LOWEST_OCTAVE
-    )
-    return edges
-
-
-def bin_of(power: float) -> int:
-    """Return the number of the bin that holds a positive power that a float32 can state."""
-    fraction, exponent = np.frexp(power)
-    place = int((2.0 * float(fraction) - 1.0) * 2 * BINS_PER_OCTAVE)
-    return (int(exponent) - 1 - LOWEST_OCTAVE) * BINS_PER_OCTAVE + (place + 1) // 2
-
-
-def sum_cells(powers: NDArray[np.floating[Any]]) -> NDArray[np.float64]:
-    """Return the sum of each cell of 1024 powers by a fixed pairwise tree.
-
-    Parameters
-    ----------
-    powers : float array, shape (n,)
-        The last cell may be short: zeros are added behind.
-
-    Returns
-    -------
-    float64 array, shape (ceil(n / 1024),)
-    """
-    rows = np.zeros((-(-powers.size // CELL), CELL))
-    rows.reshape(-1)[: powers.size] = powers
-    quarter = CELL // 4
-    first, second, third, fourth = (rows[:, k * quarter : (k + 1) * quarter] for k in range(4))
-    total = (first + third) + (second + fourth)
-    while total.shape[1] > 1:
-        half = total.shape[1] // 2
-        total = total[:, :half] + total[:, half:]
-    return total[:, 0]
-
-
-def sum_tree(values: NDArray[np.float64]) -> float:
-    """Return a sum by a pairwise tree whose shape depends on the count alone."""
-    while values.size > 1:
-        if values.size % 2:
-            values = np.append(values, 0.0)
-        values = values[0::2] + values[1::2]
-    return float(values[0]) if values.size else 0.0
 
 
 def exact_powers(samples: Samples) -> NDArray[np.float64]:

@@ -24,8 +24,8 @@ from numpy.typing import NDArray
 
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
-from wavegen.dsp.power_kernel import CELL
-from wavegen.meters.power import PowerStatistics
+from wavegen.dsp.cell_sums import CELL
+from wavegen.meters.power_statistics import PowerStatistics
 
 POINTS_PER_SAMPLE = 16
 HALF_LENGTH = 64

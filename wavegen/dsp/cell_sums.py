@@ -1,0 +1,116 @@
+"""Sums that do not depend on how the samples were cut."""
+
+from __future__ import annotations
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+CELL = 1024
+"""Samples in a cell of the absolute index grid, over which power is summed in float64."""
+
+
+def sum_cells(powers: NDArray[np.floating[Any]]) -> NDArray[np.float64]:
+    """Return the sum of each cell of 1024 powers by a fixed pairwise tree.
+
+    Parameters
+    ----------
+    powers : float array, shape (n,)
+        The last cell may be short: zeros are added behind.
+
+    Returns
+    -------
+    float64 array, shape (ceil(n / 1024),)
+    """
+    rows = np.zeros((-(-powers.size // CELL), CELL))
+    rows.reshape(-1)[: powers.size] = powers
+    quarter = CELL // 4
+    first, second, third, fourth = (rows[:, k * quarter : (k + 1) * quarter] for k in range(4))
+    total = (first + third) + (second + fourth)
+    while total.shape[1] > 1:
+        half = total.shape[1] // 2
+        total = total[:, :half] + total[:, half:]
+    return total[:, 0]
+
+
+def sum_tree(values: NDArray[np.float64]) -> float:
+    """Return a sum by a pairwise tree whose shape depends on the count alone."""
+    while values.size > 1:
+        if values.size % 2:
+            values = np.append(values, 0.0)
+        values = values[0::2] + values[1::2]
+    return float(values[0]) if values.size else 0.0
+
+
+class CellSums:
+    """Sums over cells of the absolute grid, from stretches cut anywhere.
+
+    Parameters
+    ----------
+    start : int
+        Index of the first sample.
+
+    Notes
+    -----
+    Cells cut by the edge of a stretch are kept as single powers until their other part is
+    merged, so that each sum is taken over the same samples in the same order, however the
+    samples were cut. Memory: 16 bytes for 1024 samples.
+    """
+
+    def __init__(self, start: int) -> None:
+        self.start = self.stop = start
+        self._head: list[NDArray[np.float64]] = []
+        self._tail: list[NDArray[np.float64]] = []
+        self._sums: list[NDArray[np.float64]] = []
+        self._maxima: list[NDArray[np.float64]] = []
+
+    @property
+    def _first_edge(self) -> int:
+        return -(-self.start // CELL) * CELL
+
+    def add_powers(self, powers: NDArray[np.float64]) -> None:
+        """Append powers that lie inside one cell."""
+        if not powers.size:
+            return
+        if self.stop < self._first_edge:
+            self._head.append(powers)
+        else:
+            self._tail.append(powers)
+        self.stop += powers.size
+        if self.stop % CELL == 0 and self._tail:
+            whole = np.concatenate(self._tail)
+            self._tail = []
+            self._sums.append(sum_cells(whole))
+            self._maxima.append(whole.max(keepdims=True))
+
+    def add_cells(self, sums: NDArray[np.float64], maxima: NDArray[np.float64]) -> None:
+        """Append whole cells; this stretch must end on the grid."""
+        if sums.size:
+            self._sums.append(sums)
+            self._maxima.append(maxima)
+            self.stop += sums.size * CELL
+
+    def append(self, following: CellSums) -> None:
+        """Append the stretch that starts where this one ends."""
+        for powers in following._head:
+            self.add_powers(powers)
+        for sums, maxima in zip(following._sums, following._maxima, strict=True):
+            self.add_cells(sums, maxima)
+        for powers in following._tail:
+            self.add_powers(powers)
+
+    def total(self) -> tuple[float, NDArray[np.float64]]:
+        """Return the sum of all by a fixed pairwise tree, and the largest power of each cell."""
+        sums, maxima = list(self._sums), list(self._maxima)
+        if self._head:
+            head = np.concatenate(self._head)
+            sums.insert(0, sum_cells(head))
+            maxima.insert(0, head.max(keepdims=True))
+        if self._tail:
+            tail = np.concatenate(self._tail)
+            sums.append(sum_cells(tail))
+            maxima.append(tail.max(keepdims=True))
+        if not sums:
+            return 0.0, np.zeros(0)
+        return sum_tree(np.concatenate(sums)), np.concatenate(maxima)
