@@ -153,3 +153,10 @@ def test_a_real_file_keeps_its_bytes_folder_and_name(tmp_path: Path) -> None:
     assert (loaded.name, loaded.folder, loaded.file) == ("field day", tmp_path, str(path))
     assert loaded.sha256 == hashlib.sha256(text.encode()).hexdigest()
     assert type(loaded.recipe.signal).__name__ == "Noise"
+
+
+def test_faults_beyond_counting_are_counted(tables: Tables) -> None:
+    with pytest.raises(RecipeFaults) as caught:
+        load_text(TEXT + "".join(f"x{n}: 1\n" for n in range(150)), tables=tables)
+    assert len(caught.value.faults) == 101
+    assert caught.value.faults[-1].problem == "50 more faults"

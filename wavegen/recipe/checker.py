@@ -164,11 +164,10 @@ class _Walk:
         self, node: Table, fields: dict[str, tuple[dataclasses.Field[Any], Any]], path: str
     ) -> None:
         given = {entry.key for entry in node.entries}
-        for key, (item, _) in fields.items():
+        for key, (item, hint) in fields.items():
             if key in given or not _is_required(item):
                 continue
-            found = dimension_of(item.name)
-            example = found.example if found else "..."
+            example = _example(hint, dimension_of(item.name), self.tables)
             self.fault(
                 node.place,
                 join(path, key),
@@ -520,14 +519,21 @@ def _wanted(hint: Any, dimension: Dimension | None) -> str:
     }.get(hint, "a value")
 
 
-def _example(hint: Any, dimension: Dimension | None) -> str:
+def _example(hint: Any, dimension: Dimension | None, tables: Tables = TABLES) -> str:
     if get_origin(hint) is Annotated:
-        return _example(get_args(hint)[0], dimension)
+        base, *marks = get_args(hint)
+        chosen = next((mark for mark in marks if isinstance(mark, Member)), None)
+        if chosen is not None:
+            return f"{{kind: {next(iter(members(tables, chosen.tables)), '...')}}}"
+        return _example(base, dimension, tables)
     if hint in _NUMBERS and dimension is not None:
         return dimension.example
     if get_origin(hint) is Literal:
         return str(get_args(hint)[0])
-    return _EXAMPLES.get(hint, "a value")
+    if get_origin(hint) is tuple:
+        return f"[{_example(get_args(hint)[0], dimension, tables)}]"
+    shown_by_class = getattr(hint, "example", None)  # classes with a notation may show it
+    return shown_by_class if isinstance(shown_by_class, str) else _EXAMPLES.get(hint, "...")
 
 
 def _takes_null(hint: Any) -> bool:

@@ -29,6 +29,9 @@ from wavegen.recipe.tree import (
 LARGEST_BYTES = 128 * 1024
 """Size of a recipe file; the shipped ones have one or two kB."""
 
+MOST_FAULTS = 100
+"""Faults that are written out."""
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LoadedRecipe:
@@ -203,7 +206,10 @@ def _load(
     recipe, found = check(tree, Recipe, tables=tables)
     faults = sorted((*faults, *found), key=_order)
     if faults:
-        raise RecipeFaults([fault.error(file) for fault in faults])
+        errors = [fault.error(file) for fault in faults[:MOST_FAULTS]]
+        if len(faults) > MOST_FAULTS:
+            errors.append(_more(len(faults) - MOST_FAULTS, file))
+        raise RecipeFaults(errors)
     return LoadedRecipe(
         recipe=recipe,
         text=text,
@@ -213,6 +219,15 @@ def _load(
         name=name,
         file=file,
         places=_places(tree),
+    )
+
+
+def _more(count: int, file: str) -> RecipeError:
+    return RecipeError(
+        where=file,
+        problem=f"{count} more faults",
+        allowed="a recipe without faults",
+        remedy="Correct the first ones and try again.",
     )
 
 

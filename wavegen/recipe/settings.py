@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Any, ClassVar, Literal, Self
 
 from annotated_types import Ge, Gt, Le, MinLen
 
@@ -99,6 +99,7 @@ class Duration:
         Bounds of the loop after rounding.
     """
 
+    example: ClassVar[str] = "10 ms"
     at: Extent
     multiple: Extent | None = None
     least: Extent | None = None
@@ -250,6 +251,7 @@ class FormatRequest:
         File name without suffix; the recipe's own if not given.
     """
 
+    example: ClassVar[str] = "sigmf"
     format: str
     datatype: str
     name: str | None = None

@@ -158,6 +158,12 @@ class PilotValues:
             )
         return cls(sequence)
 
+    def text(self) -> object:
+        """Return the value as a recipe writes it."""
+        if self.drawn_from is not None:
+            return {"random": self.drawn_from.text()}
+        return [[value.real, value.imag] if value.imag else value.real for value in self.sequence]
+
     def over(self, n: int, words: NDArray[np.unsignedinteger]) -> NDArray[np.complex128]:
         """Return the values of ``n`` subcarriers, scaled to unit mean power over them.
 

@@ -242,20 +242,20 @@ def test_the_recipe_that_the_cases_spoil_is_sound(tables: Tables) -> None:
 
 
 @pytest.mark.parametrize(
-    ("text", "path"),
+    ("text", "path", "example"),
     [
-        ("sample_rate: 1 MHz\nduration: 1 ms\n" + GOOD, "wavegen"),
-        ("wavegen: 1\nduration: 1 ms\n" + GOOD, "sample_rate"),
-        ("wavegen: 1\nsample_rate: 1 MHz\n" + GOOD, "duration"),
-        ("wavegen: 1\nsample_rate: 1 MHz\nduration: 1 ms\n", "signal"),
+        ("sample_rate: 1 MHz\nduration: 1 ms\n" + GOOD, "wavegen", "1"),
+        ("wavegen: 1\nduration: 1 ms\n" + GOOD, "sample_rate", "3.84 MHz"),
+        ("wavegen: 1\nsample_rate: 1 MHz\n" + GOOD, "duration", "10 ms"),
+        ("wavegen: 1\nsample_rate: 1 MHz\nduration: 1 ms\n", "signal", "{kind: carrier}"),
     ],
 )
-def test_required_keys_are_named(text: str, path: str, tables: Tables) -> None:
+def test_required_keys_are_named(text: str, path: str, example: str, tables: Tables) -> None:
     with pytest.raises(RecipeFaults) as caught:
         load_text(text, tables=tables)
     (fault,) = caught.value.faults
     assert fault.where == f"recipe.yaml:1:1: {path}"
-    assert f"Add {path}: " in fault.remedy
+    assert fault.remedy == f"Add {path}: {example}"
 
 
 def test_all_faults_come_at_once_in_the_order_of_the_file(tables: Tables) -> None:
