@@ -42,7 +42,7 @@ class Group:
     subcarriers: IndexSet
     constellation: Constellation
     level_db: Level = 0.0
-    data: Annotated[Any, Member(("data",))] = field(default_factory=Random)
+    data: Annotated[Any, Member(("data",), default="random")] = field(default_factory=Random)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -261,5 +261,5 @@ def _carry(
             label=f".groups[{number}]",
         ),
         table=points.astype(np.complex64),
-        bins=np.array(group.subcarriers.indices, np.intp) % n_fft,
+        bins=(np.array(group.subcarriers.indices) % n_fft).astype(np.uint32),
     )

@@ -11,6 +11,7 @@ import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
+from wavegen.dsp.mapping_kernel import write_points
 from wavegen.sources.ofdm_layout import Layout
 
 FFT_SAMPLES = 1 << 16
@@ -19,8 +20,8 @@ LAID_SAMPLES = 1 << 18
 """Samples laid at a time: fewer cost calls, more lose the cache."""
 FEWEST_ROWS = 4
 """Rows an FFT call should have: single rows run several times slower."""
-MOST_SLICES = 12
-"""Up to here a set of bins is filled slice by slice; beyond, one scatter is faster."""
+MOST_GAPS = 12
+"""Up to here the bins without data are cleared gap by gap; beyond, clearing all is faster."""
 
 
 class Words(Protocol):
@@ -40,41 +41,18 @@ class Carried:
         Word ``symbol * n + i`` is for subcarrier ``i`` of a symbol.
     table : complex64 array, shape (order,)
         Point of each symbol number, level and scale included.
-    bins : intp array, shape (n,)
+    bins : uint32 array, shape (n,)
         FFT bin of each subcarrier.
     """
 
     data: Words
     table: Samples
-    bins: NDArray[np.intp]
-
-    @cached_property
-    def wide(self) -> Samples:
-        """Table for raw words: repeated to 256 entries where a word is a byte."""
-        return np.tile(self.table, max(256 // self.table.size, 1))
-
-    @cached_property
-    def slices(self) -> list[tuple[slice, slice]]:
-        """Subcarriers and bins that correspond, as few slices as a walk along them finds."""
-        found: list[tuple[slice, slice]] = []
-        bins, n, i = self.bins, self.bins.size, 0
-        while i < n:
-            step = int(bins[i + 1] - bins[i]) if i + 1 < n else 1
-            step = max(step, 1)
-            j = i + 1
-            while j < n and bins[j] - bins[j - 1] == step:
-                j += 1
-            found.append((slice(i, j), slice(int(bins[i]), int(bins[j - 1]) + 1, step)))
-            i = j
-        return found
+    bins: NDArray[np.uint32]
 
     def rows(self, first: int, count: int) -> NDArray[np.unsignedinteger]:
-        """Return the words of symbols ``first ...``, shape (count, n); numbers if 16 bits wide."""
+        """Return the words of symbols ``first ...``, shape (count, n)."""
         n = self.bins.size
-        words = self.data.words(first * n, count * n).reshape(count, n)
-        if words.itemsize > 1:
-            words = words & words.dtype.type(self.table.size - 1)  # a small table stays in cache
-        return words
+        return self.data.words(first * n, count * n).reshape(count, n)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -105,65 +83,42 @@ class SymbolBodies(Signal):
 
     @cached_property
     def gaps(self) -> list[slice]:
-        """Bins that no slice of data fills: empty ones and pilots."""
+        """Bins without data, few slices: empty ones and pilots, or simply all."""
         free = np.ones(self.n_fft, np.bool_)
         for part in self.carried:
-            if len(part.slices) <= MOST_SLICES:
-                free[part.bins] = False
+            free[part.bins] = False
         edges = np.flatnonzero(np.diff(np.concatenate(([False], free, [False]))))
-        if edges.size > 2 * MOST_SLICES:
+        if edges.size > 2 * MOST_GAPS:
             return [slice(0, self.n_fft)]
         return [slice(int(a), int(b)) for a, b in edges.reshape(-1, 2)]
+
+    def fill(self, some: Samples, words: list[NDArray[np.unsignedinteger]]) -> None:
+        """Write the bins of successive symbols.
+
+        Parameters
+        ----------
+        some : complex64 array, shape (n_symbols, n_fft)
+            Written to; contiguous.
+        words : list of unsigned integer array, shape (n_symbols, n)
+            One for each of ``carried``.
+        """
+        for gap in self.gaps:
+            some[:, gap] = self.fixed[gap]
+        for part, numbers in zip(self.carried, words, strict=True):
+            write_points(some, numbers, table=part.table, bins=part.bins)
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Return whole symbols: FFT bins filled, then transformed in place."""
         first = start // self.n_fft
         rows = np.empty((stop // self.n_fft - first, self.n_fft), np.complex64)
-        writer = Writer(self, first, rows.shape[0])
+        words = [part.rows(first, rows.shape[0]) for part in self.carried]
         for low in range(0, rows.shape[0], self.block_rows):
             some = rows[low : low + self.block_rows]
-            writer.fill(low, some)
+            self.fill(some, [numbers[low : low + self.block_rows] for numbers in words])
             done = scipy.fft.ifft(some, axis=1, norm="forward", overwrite_x=True)
             if not np.may_share_memory(done, some):
                 some[:] = done
         return rows.reshape(-1)
-
-
-class Writer:
-    """Fills FFT bins of successive symbols, with the arrays it needs made once.
-
-    Parameters
-    ----------
-    bodies : SymbolBodies
-        What is written.
-    first, count : int
-        Symbols.
-    """
-
-    def __init__(self, bodies: SymbolBodies, first: int, count: int) -> None:
-        self._fixed = bodies.fixed
-        self._gaps = bodies.gaps
-        self._parts = []
-        n_rows = min(bodies.block_rows, count)
-        row = np.arange(n_rows)[:, None] * bodies.n_fft
-        for part in bodies.carried:
-            values = np.empty((n_rows, part.bins.size), np.complex64)
-            scatter = row + part.bins if len(part.slices) > MOST_SLICES else None
-            self._parts.append((part, part.rows(first, count), values, scatter))
-
-    def fill(self, low: int, some: Samples) -> None:
-        """Write the bins of symbols ``first + low ...`` into rows of ``n_fft``."""
-        for gap in self._gaps:
-            some[:, gap] = self._fixed[gap]
-        n = some.shape[0]
-        for part, words, room, scatter in self._parts:
-            values = room[:n]
-            part.wide.take(words[low : low + n], out=values, mode="clip")
-            if scatter is not None:
-                some.reshape(-1)[scatter[:n]] = values
-            else:
-                for place, bins in part.slices:
-                    some[:, bins] = values[:, place]
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -184,12 +139,12 @@ class Subcarriers(Signal):
         n_active = bodies.indices.size
         first = start // n_active
         out = np.empty((stop // n_active - first, n_active), np.complex64)
-        writer = Writer(bodies, first, out.shape[0])
+        words = [part.rows(first, out.shape[0]) for part in bodies.carried]
         room = np.empty((min(bodies.block_rows, out.shape[0]), bodies.n_fft), np.complex64)
         bins = bodies.indices % bodies.n_fft
         for low in range(0, out.shape[0], bodies.block_rows):
             some = room[: out.shape[0] - low]
-            writer.fill(low, some)
+            bodies.fill(some, [numbers[low : low + bodies.block_rows] for numbers in words])
             out[low : low + bodies.block_rows] = some[:, bins]
         return out.reshape(-1)
 
