@@ -183,6 +183,14 @@ def test_own_taps_want_a_whole_number_of_samples_a_symbol():
     assert "2.5" in caught.value.problem
 
 
+@pytest.mark.parametrize("taps", [(0.0, 0.0), (1.0, float("nan")), (float("inf"),)])
+def test_own_taps_are_finite_and_not_all_zero(taps):
+    made = settings(Fraction(1_250_000), pulse=Taps(taps=taps))
+    with pytest.raises(RecipeError) as caught:
+        made.build(site_for(made, 10))
+    assert caught.value.where == "signal.pulse.taps"
+
+
 @pytest.mark.parametrize(
     ("pulse", "rate"),
     [

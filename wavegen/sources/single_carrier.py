@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import cached_property
@@ -50,6 +51,15 @@ class SingleCarrier:
         Shape of a symbol; a root raised cosine of roll-off 0.22 if not given.
     data : member of DATA
         Where the symbols come from; random if not given.
+
+    Notes
+    -----
+    With the default root raised cosine the untouched carrier shows an EVM below 0.01 % behind a
+    matched filter at roll-offs from 0.05 to 1, and its spectrum, seam included, lies below
+    -120 dB of the passband 0.2 symbol rates beyond the band edge (roll-off 0.22; measured on the
+    average -134 dB, tested in ``tests/sources/test_single_carrier.py``). Samples a symbol are
+    phases: at four of them the CCDF of the samples differs from continuous time by up to 0.1 dB
+    (QPSK, roll-off 0.5).
     """
 
     constellation: Constellation
@@ -68,8 +78,8 @@ class SingleCarrier:
         Raises
         ------
         RecipeError
-            The pulse occupies more than the sample rate, or is given by samples and the sample
-            rate is no whole multiple of the symbol rate.
+            The pulse occupies more than the sample rate, or is given by taps that are all zero or
+            that the sample rate, no whole multiple of the symbol rate, falls between.
         """
         n_samples, n_symbols = samples_per(self.symbol_rate_hz, site.sample_rate_hz)
         settings: PulseSettings = self.pulse
@@ -100,6 +110,14 @@ class SingleCarrier:
                 allowed="sample rates that are whole multiples of the symbol rate, "
                 f"{format_hz(symbol_rate)}",
                 remedy="Choose such a sample rate, or a pulse with a formula.",
+            )
+        values = pulse.on_lattice(math.floor(rate / symbol_rate)) if pulse.is_sampled else None
+        if values is not None and not (np.isfinite(values).all() and values.any()):
+            raise site.error(
+                key="pulse.taps",
+                problem="the taps carry no energy, or no finite one",
+                allowed="finite numbers, not all zero",
+                remedy="Give the samples of a pulse.",
             )
         occupied = (2 * pulse.half_band if pulse.half_band else 1.0) * symbol_rate
         if occupied > rate:
