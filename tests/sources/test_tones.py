@@ -75,6 +75,7 @@ def test_list_snaps_to_the_loop_and_says_so():
     assert lines_of(samples_of(signal))[0].tolist() == [-20, 30]
     note = here.notes[0]
     assert (note.kind, note.asked, note.given) == ("rounded", "30.1 kHz", "30 kHz")
+    assert note.where == "signal.tones[0].frequency_offset"
     assert len(here.notes) == 1
 
 
@@ -190,8 +191,8 @@ def test_tones_are_right_at_any_place_and_their_floor_is_low(n):
 
 
 def test_loops_beyond_32_bits_are_exact():
-    n = (1 << 33) + 1
-    signal = Tones(tones=(at(123_456),), phases="equal").build(site(n))
+    n = (1 << 34) + 1
+    signal = Tones(tones=(at(323_456),), phases="equal").build(site(n))
     start = (n // 1024 - 1) * 1024
     got = signal.compute(start, start + 1024)
     line = int(signal.bins[0])

@@ -234,8 +234,9 @@ def plan_lines(settings: Tones, site: Site) -> Lines:
         See :meth:`Tones.build`.
     """
     notes: list[Note] = []
-    wanted, frequencies = _frequencies(settings, site)
-    bins = _snapped(settings, site, frequencies, notes)
+    wanted, keys = _in_order(settings, site)
+    frequencies = [tone.frequency_offset_hz for tone in wanted]
+    bins = _snapped(settings, site, frequencies, keys, notes)
     powers = np.array([10 ** (tone.level_db / 10) for tone in wanted])
     phases = _phases(settings, site, powers, notes)
     own = np.array([math.nan if tone.phase_deg is None else tone.phase_deg for tone in wanted])
@@ -259,8 +260,11 @@ def plan_lines(settings: Tones, site: Site) -> Lines:
     return Lines(bins=bins[keep], amplitudes=amplitudes, notes=tuple(notes))
 
 
-def _frequencies(settings: Tones, site: Site) -> tuple[list[Tone], list[Fraction]]:
-    """Return the tones in the order of frequency; complain about those that do not fit."""
+def _in_order(settings: Tones, site: Site) -> tuple[list[Tone], list[str]]:
+    """Return the tones in the order of frequency, and where each stands in the settings.
+
+    Complains about those that do not fit the sample rate.
+    """
     positions = comb_positions(settings, site.path)
     if positions is None:
         listed = sorted(
@@ -272,8 +276,8 @@ def _frequencies(settings: Tones, site: Site) -> tuple[list[Tone], list[Fraction
         spacing = settings.spacing_hz or Fraction(0)
         keys = ["spacing"] * len(positions)
         wanted = [Tone(frequency_offset_hz=place * spacing / 2) for place in positions]
-    frequencies = [tone.frequency_offset_hz for tone in wanted]
-    for key, frequency in zip(keys, frequencies, strict=True):
+    for key, tone in zip(keys, wanted, strict=True):
+        frequency = tone.frequency_offset_hz
         if 2 * abs(frequency) >= site.sample_rate_hz:
             raise site.error(
                 key=key,
@@ -281,11 +285,15 @@ def _frequencies(settings: Tones, site: Site) -> tuple[list[Tone], list[Fraction
                 allowed=f"below half the sample rate, {format_hz(site.sample_rate_hz / 2)}",
                 remedy="Raise the sample rate or move the tones inwards.",
             )
-    return wanted, frequencies
+    return wanted, keys
 
 
 def _snapped(
-    settings: Tones, site: Site, frequencies: list[Fraction], notes: list[Note]
+    settings: Tones,
+    site: Site,
+    frequencies: list[Fraction],
+    keys: list[str],
+    notes: list[Note],
 ) -> NDArray[np.int64]:
     """Return the lines of the loop's grid that the tones fall on, noting those that moved."""
     grid = site.sample_rate_hz / site.n_samples
@@ -312,7 +320,7 @@ def _snapped(
             notes.append(
                 Note(
                     kind="rounded",
-                    where=f"{site.path}.tones",
+                    where=f"{site.path}.{keys[number]}",
                     text=f"A tone moved by {format_hz(moved)} to a whole number of cycles in the "
                     "loop.",
                     asked=format_hz(frequency),
