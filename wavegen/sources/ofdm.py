@@ -134,11 +134,12 @@ class Ofdm:
             variance += len(group.subcarriers) * (1 - abs(mean) ** 2) * amplitude**2
         power = layout.mean_power(variance, expected)
         scale = 1 / math.sqrt(power)
+        body_power = (variance + float(np.sum(np.abs(expected) ** 2))) / power
         bodies = SymbolBodies(
             sample_rate_hz=site.sample_rate_hz * n_symbols * n_fft / site.n_samples,
             n_samples=n_symbols * n_fft,
             step=n_fft,
-            mean_power=(variance + float(np.sum(np.abs(expected) ** 2))) / power,
+            mean_power=body_power,
             n_fft=n_fft,
             carried=tuple(
                 _carry(site, number, group, n_fft=n_fft, n_symbols=n_symbols, scale=scale)
@@ -151,7 +152,7 @@ class Ofdm:
             sample_rate_hz=site.sample_rate_hz * n_symbols * indices.size / site.n_samples,
             n_samples=n_symbols * indices.size,
             step=indices.size,
-            mean_power=bodies.mean_power and bodies.mean_power / indices.size,
+            mean_power=body_power / indices.size,
             bodies=bodies,
         )
         return Prefixed(

@@ -59,9 +59,10 @@ class Stretch:
 
         Examples
         --------
-        >>> Stretch.parse("144/2048"), Stretch.parse("16 samples")
-        (Stretch(value=Fraction(9, 128), in_samples=False), Stretch(value=Fraction(16, 1), \
-in_samples=True))
+        >>> Stretch.parse("144/2048").samples(1024)
+        Fraction(72, 1)
+        >>> Stretch.parse("16 samples").samples(1024)
+        Fraction(16, 1)
         """
         if isinstance(value, bool) or not isinstance(value, str | int | float):
             raise _refuse_stretch(problem=f"{value!r} is no length")
