@@ -1,0 +1,192 @@
+"""At least one example of every source, stage and combiner: a member without one fails."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+from wavegen.core.signal import Signal
+from wavegen.core.site import Site
+from wavegen.dsp.pulses.rectangular import Rectangular
+from wavegen.sources.carrier import Carrier
+from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.noise import Noise
+from wavegen.sources.ofdm import Group, Ofdm, Pilots
+from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
+from wavegen.sources.single_carrier import SingleCarrier
+from wavegen.sources.subcarriers import IndexSet, PilotValues
+from wavegen.sources.tones import Notch, Tone, Tones
+from wavegen.stages.channel.scale import Scale
+from wavegen.stages.combine.sum import Part, Sum
+from wavegen.stages.crest.clip import Clip
+
+RATE_HZ = Fraction(1_000_000)
+LOOP_SAMPLES = 40_000
+"""About as long as each loop is made: whole cycles, several cells of any grid."""
+
+
+@dataclass(frozen=True, kw_only=True)
+class SourceExample:
+    """Settings of a source, and what is known of it beforehand.
+
+    Parameters
+    ----------
+    settings : member of SOURCES
+    is_random : bool
+        Whether another seed or label gives other samples.
+    is_exact : bool
+        Whether every loop has unit mean power, rather than the average over seeds.
+    least_samples : int
+        Loop to make, at least.
+    """
+
+    settings: Any
+    is_random: bool = True
+    is_exact: bool = False
+    least_samples: int = LOOP_SAMPLES
+
+
+SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
+    "carrier": (
+        SourceExample(settings=Carrier(phase_deg=30.0), is_random=False, is_exact=True),
+        SourceExample(settings=Carrier(), is_random=False, is_exact=True, least_samples=1),
+    ),
+    "noise": (
+        SourceExample(settings=Noise(bandwidth_hz=Fraction(1_000_000))),
+        SourceExample(settings=Noise(bandwidth_hz=Fraction(300_000))),
+        SourceExample(settings=Noise(bandwidth_hz=Fraction(300_000)), least_samples=97),
+    ),
+    "ofdm": (
+        SourceExample(
+            settings=Ofdm(
+                subcarrier_spacing_hz=Fraction(15_625),
+                groups=(
+                    Group(
+                        subcarriers=IndexSet.parse("-20..-1, 1..20"),
+                        constellation=Constellation.parse("16qam"),
+                    ),
+                ),
+                cyclic_prefix=CyclicPrefix.parse(["6 samples", "2 x 5 samples"]),
+                edge_window=Stretch.parse("3 samples"),
+            )
+        ),
+        SourceExample(
+            settings=Ofdm(
+                subcarrier_spacing_hz=Fraction(15_625),
+                groups=(
+                    Group(
+                        subcarriers=IndexSet.parse("-20..-1, 2..20"),
+                        constellation=Constellation.parse("qpsk"),
+                        level_db=-3.0,
+                    ),
+                ),
+                pilots=(
+                    Pilots(subcarriers=IndexSet.parse("1, 21"), values=PilotValues.parse([1, -1])),
+                ),
+                cyclic_prefix=CyclicPrefix.parse("1/4"),
+            )
+        ),
+    ),
+    "single_carrier": (
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("qpsk"), symbol_rate_hz=Fraction(250_000)
+            )
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("64qam"),
+                symbol_rate_hz=Fraction(1_000_000 * 13, 48),
+            )
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("8psk"),
+                symbol_rate_hz=Fraction(250_000),
+                pulse=Rectangular(),
+            ),
+            is_exact=True,
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("qpsk"), symbol_rate_hz=Fraction(250_000)
+            ),
+            least_samples=40,
+        ),
+    ),
+    "tones": (
+        SourceExample(settings=Tones(count=16, spacing_hz=Fraction(10_000)), is_exact=True),
+        SourceExample(
+            settings=Tones(
+                count=32,
+                spacing_hz=Fraction(1_000),
+                phases="newman",
+                notch=Notch(width_hz=Fraction(4_000)),
+            ),
+            is_random=False,
+            is_exact=True,
+        ),
+        SourceExample(
+            settings=Tones(
+                tones=(
+                    Tone(frequency_offset_hz=Fraction(-123_400), phase_deg=10.0),
+                    Tone(frequency_offset_hz=Fraction(77_700), level_db=-6.0, phase_deg=0.0),
+                ),
+            ),
+            is_random=False,
+            is_exact=True,
+        ),
+    ),
+}
+
+
+@dataclass(frozen=True, kw_only=True)
+class StageExample:
+    """How to build a stage or a combiner on one source.
+
+    Parameters
+    ----------
+    settings : member of STAGES or COMBINERS
+    build : callable
+        ``(settings, site, source) -> Signal``.
+    identity : settings, optional
+        The same at zero strength: its output is its input, bit for bit.
+    """
+
+    settings: Any
+    build: Callable[[Any, Site, Signal], Signal]
+    identity: Any = None
+
+
+def _stage(settings: Any, site: Site, source: Signal) -> Signal:
+    built: Signal = settings.build(site, source)
+    return built
+
+
+def _combine(settings: Any, site: Site, source: Signal) -> Signal:
+    built: Signal = settings.combine(site, [source] * len(settings.parts))
+    return built
+
+
+STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
+    "clip": (
+        StageExample(settings=Clip(ceiling_db=5.0), build=_stage, identity=Clip(ceiling_db=60.0)),
+        StageExample(settings=Clip(ceiling_db=0.5), build=_stage),
+    ),
+    "scale": (
+        StageExample(settings=Scale(gain_db=-3.0), build=_stage, identity=Scale(gain_db=0.0)),
+    ),
+    "sum": (
+        StageExample(
+            settings=Sum(
+                parts=(
+                    Part(signal=None, frequency_offset_hz=Fraction(200_000)),
+                    Part(signal=None, frequency_offset_hz=Fraction(-150_000), level_db=-3.0),
+                    Part(signal=None, level_db=3.0),
+                )
+            ),
+            build=_combine,
+            identity=Sum(parts=(Part(signal=None),)),
+        ),
+    ),
+}
