@@ -11,7 +11,7 @@ from annotated_types import Ge, Gt, Interval, Le, MinLen
 from wavegen.core.errors import RecipeError
 from wavegen.core.registry import Member, Registry
 from wavegen.core.units import QuantityError
-from wavegen.recipe import settings as settings_module
+from wavegen.recipe import format_request
 from wavegen.recipe.tables import Tables
 
 HERE = "wavegen_recipe_test_members"
@@ -176,7 +176,7 @@ def formats(monkeypatch: pytest.MonkeyPatch) -> Registry:
     made = Registry(
         "format", {"pairs": f"{HERE}:Pairs", "sound": f"{HERE}:Sound", "sigmf": f"{HERE}:Pairs"}
     )
-    monkeypatch.setattr(settings_module, "FORMATS", made)
+    monkeypatch.setattr(format_request, "FORMATS", made)
     return made
 
 

@@ -14,8 +14,9 @@ from hypothesis import strategies as st
 
 from wavegen.core.registry import Member
 from wavegen.recipe.checker import check, fields_of, join
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.tables import Tables
-from wavegen.recipe.tree import Fault, read_tree
+from wavegen.recipe.tree import Fault
 
 SHARED = hypothesis_settings(suppress_health_check=[HealthCheck.function_scoped_fixture])
 

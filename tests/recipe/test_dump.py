@@ -16,9 +16,9 @@ from wavegen.recipe.checker import check
 from wavegen.recipe.dump import dump
 from wavegen.recipe.load import load_text
 from wavegen.recipe.names import LONGEST
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.settings import Output
 from wavegen.recipe.tables import Tables
-from wavegen.recipe.tree import read_tree
 
 SHARED = hypothesis_settings(
     suppress_health_check=[HealthCheck.function_scoped_fixture], max_examples=60, deadline=None

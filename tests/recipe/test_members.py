@@ -9,14 +9,14 @@ import pytest
 from wavegen.core.registry import Registry
 from wavegen.core.units import QuantityError
 from wavegen.files import FORMATS
-from wavegen.recipe import settings as settings_module
+from wavegen.recipe import format_request as requests_module
 from wavegen.recipe.checker import check, fields_of
 from wavegen.recipe.dump import dump
 from wavegen.recipe.find import shipped_recipes
+from wavegen.recipe.format_request import FormatRequest
 from wavegen.recipe.load import load_recipe, load_text
-from wavegen.recipe.settings import FormatRequest
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.tables import TABLES, members
-from wavegen.recipe.tree import read_tree
 
 MEMBERS = [(table, kind) for table in TABLES for kind in members(TABLES, (table,))]
 
@@ -69,7 +69,7 @@ ODD = [
 @pytest.fixture(autouse=True)
 def formats(monkeypatch: pytest.MonkeyPatch) -> Registry:
     """Use the real formats here."""
-    monkeypatch.setattr(settings_module, "FORMATS", FORMATS)
+    monkeypatch.setattr(requests_module, "FORMATS", FORMATS)
     return FORMATS
 
 

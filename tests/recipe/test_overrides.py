@@ -6,9 +6,9 @@ import pytest
 
 from wavegen.core.errors import RecipeFaults
 from wavegen.recipe.load import load_text
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.settings import Recipe
 from wavegen.recipe.tables import Tables
-from wavegen.recipe.tree import read_tree
 
 TEXT = """\
 wavegen: 1

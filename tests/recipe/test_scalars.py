@@ -3,8 +3,9 @@
 import pytest
 
 from wavegen.core.units import QuantityError
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.scalars import boolean, is_null, kind_of, plain
-from wavegen.recipe.tree import Place, Scalar, read_tree
+from wavegen.recipe.tree import Place, Scalar
 
 
 def scalar(text: str, *, is_plain: bool = True) -> Scalar:

@@ -5,8 +5,9 @@ from fractions import Fraction
 import pytest
 
 from wavegen.core.units import QuantityError
+from wavegen.recipe.format_request import FormatRequest
 from wavegen.recipe.load import load_text
-from wavegen.recipe.settings import Bench, Duration, Extent, FormatRequest, Output, PathStage
+from wavegen.recipe.settings import Bench, Duration, Extent, Output, PathStage
 from wavegen.recipe.tables import Tables
 
 

@@ -8,12 +8,8 @@ from __future__ import annotations
 import dataclasses
 import types
 from collections.abc import Callable, Iterator
-from fractions import Fraction
 from functools import cache
 from typing import Annotated, Any, Final, Literal, Union, get_args, get_origin, get_type_hints
-
-import annotated_types
-from pydantic import ConfigDict, TypeAdapter, ValidationError
 
 from wavegen.core.errors import RecipeError
 from wavegen.core.registry import Member, nearest
@@ -22,14 +18,21 @@ from wavegen.core.units import (
     QuantityError,
     dimension_of,
     key_of,
-    parse_quantity,
-    split_quantity,
 )
 from wavegen.recipe import scalars
-from wavegen.recipe.names import NAME_FIELDS, check_name, check_text
+from wavegen.recipe.bounds import bounds_broken
+from wavegen.recipe.names import check_text
 from wavegen.recipe.scalars import kind_of, shown
 from wavegen.recipe.tables import DEFAULT_KINDS, TABLES, Tables, members
 from wavegen.recipe.tree import Fault, Items, Node, Place, Scalar, Table
+from wavegen.recipe.values import (
+    NUMBERS,
+    describe_node,
+    example_of,
+    read_number,
+    read_text,
+    wanted,
+)
 
 
 class _Faulty:
@@ -37,8 +40,6 @@ class _Faulty:
 
 
 _FAULTY: Final = _Faulty()
-
-_NUMBERS = (Fraction, float, int)
 
 
 def check(
@@ -115,7 +116,7 @@ class _Walk:
             return self.fault(
                 node.place,
                 path or "the recipe",
-                problem=f"{_what(node)} where a mapping is needed",
+                problem=f"{describe_node(node)} where a mapping is needed",
                 allowed="a mapping with the keys: " + ", ".join(fields),
                 remedy=f"Write keys and values, such as {next(iter(fields), 'key')}: ...",
             )
@@ -167,7 +168,7 @@ class _Walk:
         for key, (item, hint) in fields.items():
             if key in given or not _is_required(item):
                 continue
-            example = _example(hint, dimension_of(item.name), self.tables)
+            example = example_of(hint, dimension_of(item.name), self.tables)
             self.fault(
                 node.place,
                 join(path, key),
@@ -214,7 +215,7 @@ class _Walk:
                 where,
                 problem=f"unknown {called} {shown(name)}"
                 if isinstance(chosen, Scalar)
-                else f"{_what(chosen)} where the name of a {called} is needed",
+                else f"{describe_node(chosen)} where the name of a {called} is needed",
                 allowed=", ".join(known),
                 remedy=f"Did you mean {guess}?" if guess else "Choose one of these.",
             )
@@ -244,8 +245,8 @@ class _Walk:
                 node.place,
                 path,
                 problem="there is no value",
-                allowed=_wanted(hint, dimension),
-                remedy=f"Write {_example(hint, dimension)}, or remove the key.",
+                allowed=wanted(hint, dimension),
+                remedy=f"Write {example_of(hint, dimension)}, or remove the key.",
             )
         if origin is Literal:
             return self.literal(node, get_args(hint), path)
@@ -285,11 +286,12 @@ class _Walk:
                     return choice
         names = [str(choice) for choice in choices]
         guess = nearest(node.text, names) if isinstance(node, Scalar) else None
-        quotes = "Remove the quotes." if guess and guess == _plain_text(node) else None
+        is_quoted = isinstance(node, Scalar) and guess == node.text
+        quotes = "Remove the quotes." if is_quoted else None
         return self.fault(
             node.place,
             path,
-            problem=f"{_what(node)} is none of the choices",
+            problem=f"{describe_node(node)} is none of the choices",
             allowed=", ".join(names),
             remedy=quotes or (f"Did you mean {guess}?" if guess else f"Write {names[0]}."),
         )
@@ -304,9 +306,9 @@ class _Walk:
             return self.fault(
                 node.place,
                 path,
-                problem=f"{_what(node)} where a list{count} is needed",
-                allowed=f"a list{count}: {_wanted(hints[0], dimension)}",
-                remedy=f"Write it in brackets, like [{_example(hints[0], dimension)}].",
+                problem=f"{describe_node(node)} where a list{count} is needed",
+                allowed=f"a list{count}: {wanted(hints[0], dimension)}",
+                remedy=f"Write it in brackets, like [{example_of(hints[0], dimension)}].",
             )
         inner = [hints[0]] * len(node.nodes) if is_open else list(hints)
         made = tuple(
@@ -333,17 +335,17 @@ class _Walk:
             return self.fault(
                 node.place,
                 path,
-                problem=f"{_what(node)} where one value is needed",
-                allowed=_wanted(hint, dimension),
-                remedy=f"Write {_example(hint, dimension)}.",
+                problem=f"{describe_node(node)} where one value is needed",
+                allowed=wanted(hint, dimension),
+                remedy=f"Write {example_of(hint, dimension)}.",
             )
         try:
             if hint is bool:
                 return scalars.boolean(node)
             if hint is str:
-                return _text(node, path.rpartition(".")[2])
-            if hint in _NUMBERS:
-                return _number(node, hint, dimension)
+                return read_text(node, path.rpartition(".")[2])
+            if hint in NUMBERS:
+                return read_number(node, hint, dimension)
             if hint is Any or hint is object:
                 return scalars.plain(node)
         except QuantityError as error:
@@ -357,183 +359,17 @@ class _Walk:
         """Check the bounds of an annotation through pydantic."""
         if made is _FAULTY or made is None:
             return made
-        bounds = _bounds(hint)
-        if not bounds:
-            return made
-        kind: Any = type(made)
-        try:
-            _adapter(kind, bounds).validate_python(made)
-        except ValidationError:
-            unit = f" {dimension.base}" if dimension and dimension.base else ""
-            given = node.text if isinstance(node, Scalar) else _what(node)
-            allowed = " and ".join(filter(None, (_bound(mark, unit) for mark in bounds)))
+        allowed = bounds_broken(made, hint, dimension.base if dimension else "")
+        if allowed is not None:
+            given = node.text if isinstance(node, Scalar) else describe_node(node)
             return self.fault(
                 node.place,
                 path,
                 problem=f"{given} is out of bounds",
-                allowed=allowed or "values within the bounds of this key",
+                allowed=allowed,
                 remedy="Choose a value within these bounds.",
             )
         return made
-
-
-# Scalars ----------------------------------------------------------------------------------
-
-
-def _text(node: Scalar, field: str) -> str:
-    kind = kind_of(node)
-    if kind != "text":
-        raise QuantityError(
-            problem=f"{shown(node.text)} is read as {_KINDS[kind]} where text is needed",
-            allowed="text",
-            remedy=f'Put it in quotes: "{node.text[:40]}".',
-        )
-    if field in NAME_FIELDS:
-        check_name(node.text, may_be_empty=field == "title")
-    else:
-        check_text(node.text)
-    return node.text
-
-
-_KINDS = {
-    "null": "nothing",
-    "bool": "true or false",
-    "int": "a number",
-    "float": "a number",
-    "text": "text",
-}
-
-
-def _number(node: Scalar, hint: type[Any], dimension: Dimension | None) -> Fraction | float | int:
-    kind = kind_of(node)
-    example = dimension.example if dimension else _EXAMPLES.get(hint, "0.22")
-    if kind == "bool":
-        raise QuantityError(
-            problem=f"{node.text} is true or false, not a number",
-            allowed=_wanted(hint, dimension),
-            remedy=f"Write it like {example}.",
-        )
-    scalars.refuse_odd_number(node.text)
-    if dimension is not None:
-        value = parse_quantity(node.text, dimension)
-    else:
-        value, unit = split_quantity(node.text)
-        if unit:
-            raise QuantityError(
-                problem=f"{shown(node.text)} has the unit {unit!r}",
-                allowed="a number without a unit",
-                remedy=f"Remove the unit: write {node.text.removesuffix(unit).strip()}.",
-            )
-    if not node.is_plain and _is_decimal(node.text):
-        raise QuantityError(
-            problem=f"{shown(node.text)} is text in quotes where a number is needed",
-            allowed=_wanted(hint, dimension),
-            remedy="Remove the quotes.",
-        )
-    if hint is int:
-        if value.denominator != 1:
-            raise QuantityError(
-                problem=f"{shown(node.text)} is not whole",
-                allowed="whole numbers",
-                remedy=f"Write {round(value)}, if that is meant.",
-            )
-        return int(value)
-    return value if hint is Fraction else float(value)
-
-
-_EXAMPLES: dict[Any, str] = {int: "12", float: "0.22", Fraction: "13/48", bool: "true"}
-
-
-def _is_decimal(text: str) -> bool:
-    return kind_of(Scalar(text, True, Place(1, 1))) in {"int", "float"}  # noqa: FBT003 # a record
-
-
-# Bounds -----------------------------------------------------------------------------------
-
-
-@cache
-def _bounds(hint: Any) -> tuple[Any, ...]:
-    marks: list[Any] = []
-    for mark in get_args(hint)[1:]:
-        if isinstance(mark, annotated_types.GroupedMetadata):
-            marks.extend(mark)
-        elif isinstance(mark, annotated_types.BaseMetadata):
-            marks.append(mark)
-    return tuple(marks)
-
-
-@cache
-def _adapter(kind: Any, bounds: tuple[Any, ...]) -> TypeAdapter[Any]:
-    hint: Any = Annotated[(kind, *bounds)]
-    if kind not in {int, float, Fraction, str, bool, tuple}:
-        return TypeAdapter(hint, config=ConfigDict(arbitrary_types_allowed=True, strict=True))
-    return TypeAdapter(hint, config=ConfigDict(strict=kind is not Fraction))
-
-
-_WORDS = (
-    (annotated_types.Gt, "gt", "above"),
-    (annotated_types.Ge, "ge", "at least"),
-    (annotated_types.Lt, "lt", "below"),
-    (annotated_types.Le, "le", "at most"),
-    (annotated_types.MultipleOf, "multiple_of", "a multiple of"),
-    (annotated_types.MinLen, "min_length", "a length of at least"),
-    (annotated_types.MaxLen, "max_length", "a length of at most"),
-)
-
-
-def _bound(mark: object, unit: str) -> str | None:
-    for kind, name, word in _WORDS:
-        if isinstance(mark, kind):
-            return f"{word} {getattr(mark, name)}{'' if 'length' in name else unit}"
-    return None
-
-
-# Words ------------------------------------------------------------------------------------
-
-
-def _what(node: Node) -> str:
-    if isinstance(node, Scalar):
-        return shown(node.text) if node.text else "nothing"
-    return f"a list of {len(node.nodes)}" if isinstance(node, Items) else "a mapping"
-
-
-def _plain_text(node: Node) -> str | None:
-    return node.text if isinstance(node, Scalar) else None
-
-
-def _wanted(hint: Any, dimension: Dimension | None) -> str:
-    if get_origin(hint) is Annotated:
-        return _wanted(get_args(hint)[0], dimension)
-    if get_origin(hint) is Literal:
-        return ", ".join(str(choice) for choice in get_args(hint))
-    if get_origin(hint) is tuple:
-        return "a list"
-    if hint in _NUMBERS and dimension is not None and dimension.base:
-        return f"a number with a unit, such as {dimension.example}"
-    return {
-        int: "a whole number",
-        float: "a number",
-        Fraction: "a number or a ratio",
-        bool: "true or false",
-        str: "text",
-    }.get(hint, "a value")
-
-
-def _example(hint: Any, dimension: Dimension | None, tables: Tables = TABLES) -> str:
-    if get_origin(hint) is Annotated:
-        base, *marks = get_args(hint)
-        chosen = next((mark for mark in marks if isinstance(mark, Member)), None)
-        if chosen is not None:
-            return f"{{kind: {next(iter(members(tables, chosen.tables)), '...')}}}"
-        return _example(base, dimension, tables)
-    if hint in _NUMBERS and dimension is not None:
-        return dimension.example
-    if get_origin(hint) is Literal:
-        return str(get_args(hint)[0])
-    if get_origin(hint) is tuple:
-        return f"[{_example(get_args(hint)[0], dimension, tables)}]"
-    shown_by_class = getattr(hint, "example", None)  # classes with a notation may show it
-    return shown_by_class if isinstance(shown_by_class, str) else _EXAMPLES.get(hint, "...")
 
 
 def _takes_null(hint: Any) -> bool:

@@ -6,7 +6,8 @@ from pathlib import Path
 
 from wavegen.core.errors import RecipeError
 from wavegen.core.registry import nearest
-from wavegen.recipe.tree import FaultError, Scalar, Table, read_tree
+from wavegen.recipe.reader import read_tree
+from wavegen.recipe.tree import FaultError, Scalar, Table
 
 
 def shipped_folder() -> Path:

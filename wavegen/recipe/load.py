@@ -13,6 +13,7 @@ from wavegen.core.units import QuantityError
 from wavegen.recipe.checker import check, join
 from wavegen.recipe.names import check_name
 from wavegen.recipe.overrides import apply_override
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.settings import Recipe
 from wavegen.recipe.tables import TABLES, Tables
 from wavegen.recipe.tree import (
@@ -23,7 +24,6 @@ from wavegen.recipe.tree import (
     Place,
     Table,
     describe,
-    read_tree,
 )
 
 LARGEST_BYTES = 128 * 1024

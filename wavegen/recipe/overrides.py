@@ -7,6 +7,7 @@ from dataclasses import replace
 
 from wavegen.core.registry import nearest
 from wavegen.recipe.checker import join
+from wavegen.recipe.reader import read_tree
 from wavegen.recipe.scalars import is_null, shown
 from wavegen.recipe.tree import (
     Entry,
@@ -17,7 +18,6 @@ from wavegen.recipe.tree import (
     Place,
     Scalar,
     Table,
-    read_tree,
 )
 
 _PATH = re.compile(r"[^.\[\]\s=]+(?:\[[0-9]{1,6}\])*(?:\.[^.\[\]\s=]+(?:\[[0-9]{1,6}\])*)*")
