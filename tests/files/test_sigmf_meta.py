@@ -181,3 +181,13 @@ def test_no_rate_needs_a_hint(tmp_path):
         Sigmf().read(path, ReadHints())
     assert "--sample-rate" in caught.value.remedy
     assert Sigmf().read(path, ReadHints(sample_rate_hz=2)).sample_rate_hz == 2
+
+
+@pytest.mark.parametrize(
+    ("name", "is_grammatical"),
+    [("ci16_le_", False), ("ci8_le", False), ("ci16", False), ("ri16_le", True), ("cf32_be", True)],
+)
+def test_what_breaks_the_grammar_is_told_from_what_is_not_read(tmp_path, name, is_grammatical):
+    with pytest.raises(FileError) as caught:
+        read_meta(write(tmp_path, with_global(core__datatype=name)))
+    assert caught.value.allowed.startswith("ci16_le, ") == is_grammatical
