@@ -102,15 +102,6 @@ def test_an_output_without_a_word() -> None:
     assert Output(average_dbfs=-12.0).peak_dbfs is None
 
 
-@pytest.mark.usefixtures("members")
-def test_formats_bring_their_datatype() -> None:
-    assert FormatRequest.parse("sound").datatype == "int16"
-    made = FormatRequest.parse({"format": "sound", "datatype": "float32", "name": "loud"})
-    assert made == FormatRequest(format="sound", datatype="float32", name="loud")
-    assert FormatRequest.parse(made.text()) == made
-    assert FormatRequest.parse("sound").text() == "sound"
-
-
 def test_files_are_told_apart_by_format_and_name() -> None:
     one = FormatRequest(format="sound", datatype="int16")
     Output(iq=(one, FormatRequest(format="sound", datatype="int16", name="b")))
