@@ -1,4 +1,5 @@
 import itertools
+import weakref
 from dataclasses import dataclass
 
 import numpy as np
@@ -190,6 +191,23 @@ class TestWork:
         deep = plan({lab.chain(lab.white(n), 10): (0, n)})
         assert deep.cost_samples == 11 * n
         assert deep.peak_bytes == 2 * n * 8
+
+    def test_freed_means_gone(self, lab):
+        made, alive = [], []
+
+        @dataclass(frozen=True, eq=False, kw_only=True)
+        class Watched(Signal):
+            def compute(self, start, stop, *arrays):
+                alive.append(sum(array() is not None for array in made))
+                samples = np.zeros(stop - start, np.complex64)
+                made.append(weakref.ref(samples))
+                return samples
+
+        top = Watched(sample_rate_hz=lab.rate_hz, n_samples=100)
+        for _ in range(5):
+            top = Watched(sample_rate_hz=lab.rate_hz, n_samples=100, inputs=(top,))
+        evaluate({top: (0, 100)})
+        assert alive == [0, 1, 1, 1, 1, 1]
 
     def test_peak_counts_all_inputs_of_a_wide_signal(self, lab):
         n = 10_000
