@@ -8,7 +8,6 @@ Trans. Commun. 50(1), 2002 (formulas from memory, derived again: they are integr
 Rayleigh density).
 """
 
-from dataclasses import dataclass
 from fractions import Fraction
 
 import numpy as np
@@ -17,9 +16,8 @@ from scipy.optimize import brentq
 from scipy.special import erfc
 
 from wavegen.core.render import samples_of
-from wavegen.core.rng import random_words, stream_key
-from wavegen.core.signal import Signal
 from wavegen.core.site import Site
+from wavegen.core.stored import Stored
 from wavegen.stages.crest.clip import Clip
 
 N_SAMPLES = 1 << 20
@@ -34,31 +32,19 @@ TABLE = {
 """Clip ratio, dB: gain, output power in dB, share clipped, peak over the new mean in dB."""
 
 
-@dataclass(frozen=True, eq=False, kw_only=True)
-class Gaussian(Signal):
-    """White complex Gaussian samples of unit power (Box and Muller, 1958)."""
-
-    def compute(self, start, stop, *arrays):
-        words = random_words(
-            stream_key(5, "gaussian"),
-            2 * start,
-            2 * (stop - start),
-            period=2 * self.n_samples,
-            width_bytes=4,
-        )
-        uniform = (words + 0.5) / 2.0**32
-        turn = np.exp(2j * np.pi * uniform[1::2])
-        return (np.sqrt(-np.log(uniform[::2])) * turn).astype(np.complex64)
+@pytest.fixture(scope="module")
+def samples():
+    """White complex Gaussian samples of unit power."""
+    rng = np.random.default_rng(5)
+    rails = rng.normal(scale=np.sqrt(0.5), size=2 * N_SAMPLES).astype(np.float32)
+    return rails.view(np.complex64).astype(np.complex128)
 
 
 @pytest.fixture(scope="module")
-def source():
-    return Gaussian(sample_rate_hz=Fraction(1_000_000), n_samples=N_SAMPLES)
-
-
-@pytest.fixture(scope="module")
-def samples(source):
-    return samples_of(source).astype(np.complex128)
+def source(samples, tmp_path_factory):
+    path = tmp_path_factory.mktemp("gaussian") / "white.cf32"
+    samples.astype(np.complex64).tofile(path)
+    return Stored(sample_rate_hz=Fraction(1_000_000), n_samples=N_SAMPLES, path=path)
 
 
 def clip(source, ceiling_db):
