@@ -2,12 +2,15 @@
 
 from __future__ import annotations
 
+import io
 import json
+import os
 import sys
 import textwrap
 import time
 from typing import TYPE_CHECKING, Any
 
+from wavegen.core.errors import FileError
 from wavegen.core.table import Table
 
 if TYPE_CHECKING:
@@ -16,8 +19,62 @@ if TYPE_CHECKING:
 WIDTH = 80
 
 
+class Page(io.StringIO):
+    """What will be written to stdout, drawn with the characters that stdout can hold."""
+
+    @property
+    def encoding(self) -> str:  # type: ignore[override]
+        """Encoding of stdout."""
+        return encoding_of_stdout()
+
+
+def encoding_of_stdout() -> str:
+    """Return the encoding of stdout, UTF-8 if it has none."""
+    return getattr(sys.stdout, "encoding", None) or "utf-8"
+
+
+def discard_stdout() -> None:
+    """Send what is still to be flushed nowhere: its reader has gone, or its disk is full."""
+    try:
+        descriptor = sys.stdout.fileno()
+    except (AttributeError, OSError, ValueError):  # closed, or no file of the system
+        return
+    os.dup2(os.open(os.devnull, os.O_WRONLY), descriptor)
+
+
 class Console:
     """The terminal of one run."""
+
+    def _put(self, text: str) -> None:
+        """Write to stdout; what its encoding cannot hold is escaped.
+
+        Raises
+        ------
+        FileError
+            stdout is closed, or the disk under it is full.
+        BrokenPipeError
+            Nobody reads it any more.
+        """
+        encoding = encoding_of_stdout()
+        held = text.encode(encoding, "backslashreplace").decode(encoding)
+        problem = "is closed"
+        if sys.stdout is not None:
+            try:
+                sys.stdout.write(held)
+                sys.stdout.flush()
+            except BrokenPipeError:
+                raise
+            except (OSError, ValueError) as error:
+                problem = f"could not be written ({getattr(error, 'strerror', None) or error})"
+                discard_stdout()
+            else:
+                return
+        raise FileError(
+            where="standard output",
+            problem=problem,
+            allowed="an output that takes the results",
+            remedy="Free some disk, or write to another file.",
+        )
 
     def fail(self, text: str) -> None:
         """Say on stderr why the run ends."""
@@ -41,12 +98,13 @@ class Console:
 
     def document(self, document: Any) -> None:
         """Print one JSON document on stdout."""
-        sys.stdout.write(json.dumps(document, ensure_ascii=False, allow_nan=False, indent=1))
-        sys.stdout.write("\n")
+        is_ascii = not encoding_of_stdout().casefold().startswith("utf")
+        text = json.dumps(document, ensure_ascii=is_ascii, allow_nan=False, indent=1)
+        self._put(f"{text}\n")
 
     def line(self, text: str = "") -> None:
         """Print a sentence of the result on stdout, broken at 80 columns."""
-        sys.stdout.write(textwrap.fill(text, WIDTH, break_long_words=False) + "\n")
+        self._put(textwrap.fill(text, WIDTH, break_long_words=False) + "\n")
 
     def table(self, table: Table) -> None:
         """Print a table on stdout, at most 80 columns wide."""
@@ -66,7 +124,10 @@ class Console:
             )
         for row in table.rows:
             drawn.add_row(*(Text(cell) for cell in row))
-        Terminal(width=WIDTH, highlight=False).print(drawn)
+        page = Page()
+        is_terminal = sys.stdout is not None and sys.stdout.isatty()
+        Terminal(file=page, width=WIDTH, highlight=False, force_terminal=is_terminal).print(drawn)
+        self._put(page.getvalue())
 
 
 class ConsoleProgress:

@@ -4,11 +4,15 @@ from __future__ import annotations
 
 import argparse
 import os
+import re
+import signal
 import sys
+import threading
 from collections.abc import Sequence
+from types import FrameType
 
 from wavegen import __version__
-from wavegen.cli.console import Console
+from wavegen.cli.console import Console, discard_stdout
 from wavegen.core.errors import (
     ArgumentsError,
     FileError,
@@ -77,6 +81,34 @@ def status_of(error: WavegenError) -> int:
     return next((status for kind, status in STATUS if isinstance(error, kind)), BUG)
 
 
+def join_negative(argv: Sequence[str]) -> list[str]:
+    """Join long options with values that start with a minus, which argparse takes for options.
+
+    Examples
+    --------
+    >>> join_negative(["measure", "a.wav", "--reference-level", "-10dBm"])
+    ['measure', 'a.wav', '--reference-level=-10dBm']
+    """
+    joined: list[str] = []
+    for word in argv:
+        is_value = re.match(r"-\.?[0-9]", word)
+        if is_value and joined and re.fullmatch(r"--[a-z][a-z-]*", joined[-1]):
+            joined[-1] = f"{joined[-1]}={word}"
+        else:
+            joined.append(word)
+    return joined
+
+
+def _end_on_termination() -> None:
+    """Let a request to end (by a scheduler, a shell) clean up as an interrupt does."""
+
+    def interrupt(_number: int, _frame: FrameType | None) -> None:
+        raise KeyboardInterrupt
+
+    if threading.current_thread() is threading.main_thread():
+        signal.signal(signal.SIGTERM, interrupt)
+
+
 def run(argv: Sequence[str] | None = None) -> int:
     """Run the command and return its exit status.
 
@@ -91,14 +123,15 @@ def run(argv: Sequence[str] | None = None) -> int:
         0 done; 1 our bug; 2 arguments; 3 recipe; 4 file; 5 differs or target not met;
         6 undecided; 130 interrupted.
     """
+    if argv is None:
+        _end_on_termination()
     try:
-        arguments = parser().parse_args(argv)
+        arguments = parser().parse_args(join_negative(sys.argv[1:] if argv is None else argv))
     except SystemExit as stop:  # argparse leaves this way: 0 after --help, 2 after a wrong option
         return stop.code if isinstance(stop.code, int) else 2
     console = Console()
     try:
         status = int(arguments.run(arguments, console))
-        sys.stdout.flush()
     except WavegenError as error:
         console.fail(str(error))
         return status_of(error)
@@ -106,7 +139,7 @@ def run(argv: Sequence[str] | None = None) -> int:
         console.fail("interrupted; nothing half-written is left")
         return INTERRUPTED
     except BrokenPipeError:  # the reader of our output has gone, as in `wavegen list | head -1`
-        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+        discard_stdout()
         return 0
     except Exception as error:
         if os.environ.get("WAVEGEN_TRACEBACK"):

@@ -8,6 +8,7 @@ from typing import Any
 
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import add_overrides, add_workers
+from wavegen.core.errors import ArgumentsError
 
 DIFFERS = 5
 
@@ -49,6 +50,7 @@ class Make:
             load_recipe(find_recipe(name), overrides=tuple(arguments.overrides))
             for name in arguments.recipes
         ]
+        refuse_same_name([recipe.name for recipe in loaded])
         documents = []
         differs = False
         progress = ConsoleProgress()
@@ -71,6 +73,24 @@ class Make:
         if arguments.json:
             console.document(documents[0] if len(documents) == 1 else documents)
         return DIFFERS if differs else 0
+
+
+def refuse_same_name(names: list[str]) -> None:
+    """Refuse two recipes that would write into one folder, before any is made.
+
+    Raises
+    ------
+    ArgumentsError
+        The name that occurs twice.
+    """
+    for number, name in enumerate(names):
+        if name.casefold() in [other.casefold() for other in names[:number]]:
+            raise ArgumentsError(
+                where="RECIPE",
+                problem=f"two recipes are called {name}, and both would go to one folder",
+                allowed="recipes of different names",
+                remedy="Name each once, or make them with a different --out.",
+            )
 
 
 def show(document: dict[str, Any], console: Console) -> None:

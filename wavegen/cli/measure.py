@@ -98,8 +98,17 @@ def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[st
     from wavegen.recipe.find import find_recipe
     from wavegen.recipe.load import load_recipe
 
-    for option in ("format", "sample_rate", "full_scale", "first", "stop", "period", "loop"):
-        if getattr(arguments, option):
+    for option in (
+        "format",
+        "sample_rate",
+        "full_scale",
+        "reference_level",
+        "first",
+        "stop",
+        "period",
+        "loop",
+    ):
+        if getattr(arguments, option) not in {None, False}:
             name = {"first": "from", "stop": "to"}.get(option, option.replace("_", "-"))
             raise ArgumentsError(
                 where=f"--{name}",
@@ -116,7 +125,7 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
     from wavegen.files.format import ReadHints
     from wavegen.files.read import open_recording
     from wavegen.production.measure import Subject, measure
-    from wavegen.production.stimulus import sidecar_of
+    from wavegen.production.stimulus import mismatch, sidecar_of
 
     if arguments.overrides:
         raise ArgumentsError(
@@ -133,6 +142,12 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
     )
     recording = open_recording(Path(arguments.subject), hints)
     sidecar = sidecar_of(recording)
+    warnings = list(recording.warnings)
+    if sidecar is not None:
+        other = mismatch(recording, sidecar)
+        if other is not None:
+            sidecar = None
+            warnings.append(other)
     rate_hz, n_samples = recording.sample_rate_hz, recording.n_samples
     first = place(arguments.first, rate_hz, "--from") or 0
     stop = place(arguments.stop, rate_hz, "--to")
@@ -159,8 +174,7 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
     document = measure(subject, workers=arguments.workers, progress=progress)
     document |= {"file_format": recording.format, "datatype": recording.datatype.name}
     document["warnings"] = [
-        {"kind": "warning", "where": str(recording.path), "text": text}
-        for text in recording.warnings
+        {"kind": "warning", "where": str(recording.path), "text": text} for text in warnings
     ]
     return document
 

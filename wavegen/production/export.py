@@ -76,7 +76,7 @@ def _encode_strip(
     samples = source.compute(start, stop)
     samples *= gain
     codes, n_saturated = encode(samples, datatype)
-    reading = PowerMeter().begin(source)
+    reading = PowerMeter(where="the written codes").begin(source)
     reading.feed(start, decode(codes, datatype))
     return codes, n_saturated, reading
 

@@ -40,8 +40,9 @@ def loop_length(
     Raises
     ------
     RecipeError
-        Symbols asked of a signal without them, or no whole loop within the limits; the
-        sentence says which would fit.
+        Symbols asked of a signal without them, more than :data:`MOST_SAMPLES`, a length
+        outside its own limits, or no whole loop within the limits; the sentence says which
+        would fit.
     """
     asked = in_samples(duration.at, cycle, sample_rate_hz, "duration")
     unit = 1
@@ -56,19 +57,19 @@ def loop_length(
             )
         unit = int(multiple)
     quantum = math.lcm(cycle.n_samples, unit)
-    low = 1
-    high = MOST_SAMPLES // quantum
+    least, most = Fraction(0), Fraction(MOST_SAMPLES)
     if duration.least is not None:
         least = in_samples(duration.least, cycle, sample_rate_hz, "duration.least")
-        low = max(1, math.ceil(least / quantum))
     if duration.most is not None:
-        most = in_samples(duration.most, cycle, sample_rate_hz, "duration.most")
-        high = min(high, math.floor(most / quantum))
+        most = min(most, in_samples(duration.most, cycle, sample_rate_hz, "duration.most"))
+    low, high = max(1, math.ceil(least / quantum)), math.floor(most / quantum)
     if low > high:
         raise _nothing_fits(duration, quantum, low, sample_rate_hz)
+    if not least <= asked <= most:
+        raise _beyond(asked, least, most, sample_rate_hz)
     count = min(max(math.floor(asked / quantum + Fraction(1, 2)), low), high)
     n_samples = count * quantum
-    if n_samples > LARGEST_STRETCH * asked and duration.least is None:
+    if n_samples > LARGEST_STRETCH * asked:
         raise RecipeError(
             where="duration",
             problem=f"{duration.at} is shorter than the shortest loop",
@@ -120,6 +121,18 @@ def in_samples(extent: Extent, cycle: Cycle, sample_rate_hz: Fraction, where: st
 
 def _both(n_samples: int, sample_rate_hz: Fraction) -> str:
     return f"{format_s(n_samples / sample_rate_hz)} ({n_samples} samples)"
+
+
+def _beyond(
+    asked: Fraction, least: Fraction, most: Fraction, sample_rate_hz: Fraction
+) -> RecipeError:
+    low, high = (_both(n, sample_rate_hz) for n in (max(1, math.ceil(least)), math.floor(most)))
+    return RecipeError(
+        where="duration",
+        problem=f"{format_s(asked / sample_rate_hz)} is {float(asked):.10g} samples",
+        allowed=f"from {low} to {high}",
+        remedy="Correct the length or its limits, or lower the sample rate.",
+    )
 
 
 def _nothing_fits(

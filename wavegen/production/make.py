@@ -17,11 +17,12 @@ from wavegen.files import FORMATS
 from wavegen.files.atomic import Drafts
 from wavegen.files.format import FileFacts, Format, pick_datatype
 from wavegen.production.bench import path_levels, refuse_overload
+from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
 from wavegen.production.export import ExportedFile, export
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
 from wavegen.production.sidecar import as_csv, as_json, describe, stimulus_document
-from wavegen.production.verify import compare_with_law, law_of
+from wavegen.production.verify import law_of, worst_verdict
 from wavegen.production.waveform import render_loop
 from wavegen.recipe.load import LoadedRecipe
 
@@ -46,7 +47,7 @@ class Made:
 
     @property
     def differs(self) -> bool:
-        """Whether the first file differs from its law."""
+        """Whether a file differs from the law."""
         law = self.document["law"]
         return law is not None and law["verdict"] == "differs"
 
@@ -119,13 +120,16 @@ def make(
                 executor=executor,
                 progress=progress,
             )
+            prepared.notes.extend(doubts_of_mean(prepared, waveform))
             gain = gain_for(loaded, waveform)
+            refuse_unresolved(loaded, waveform, gain, [t.facts.datatype for t in targets])
             bench = loaded.recipe.bench
             levels = path_levels(bench, waveform.papr_db) if bench else []
             refuse_overload(levels)
             files = [
                 _export(target, waveform.signal, gain, workers, progress) for target in targets
             ]
+        prepared.notes.extend(doubts_of_files(files))
         law = law_of(prepared)
         document = stimulus_document(
             prepared,
@@ -133,7 +137,7 @@ def make(
             files=files,
             gain=gain,
             law=law,
-            verdict=compare_with_law(law, files[0]),
+            verdict=worst_verdict(law, files),
             levels=levels,
         )
         sidecar.write_text(as_json(document), encoding="utf-8")

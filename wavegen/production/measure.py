@@ -82,7 +82,7 @@ def measure(
     """
     keep_large_blocks()
     signal = subject.signal
-    tap = Tap(name="power", signal=signal, meter=PowerMeter())
+    tap = Tap(name="power", signal=signal, meter=PowerMeter(where=subject.name))
     reading = render(
         signal,
         taps=(tap,),

@@ -56,6 +56,11 @@ def rounded(value: float, digits: int = 6) -> float | None:
     return round(float(value), digits) if np.isfinite(value) else None
 
 
+def in_db(power: float | None) -> float | None:
+    """Return a power for JSON in dB; None where there is none, or none is known."""
+    return rounded(10 * np.log10(power)) if power else None
+
+
 def level_rows(statistics: PowerStatistics) -> list[dict[str, Any]]:
     """Return the levels at 10 % ... 0.0001 %, dB over the mean."""
     return [
@@ -177,7 +182,7 @@ def stimulus_document(
     law : Law or None
         Exact curve where there is one.
     verdict : {"agrees", "differs", "undecided"}
-        How the first file compares with it.
+        How the files compare with it: one that differs makes it ``differs``.
     levels : sequence of PathLevel
         Along the bench's path; empty without a bench.
 
@@ -190,7 +195,6 @@ def stimulus_document(
     recipe = loaded.recipe
     rate = recipe.sample_rate_hz
     first = files[0]
-    nominal = prepared.built.signal.mean_power
     return {
         "format": FORMAT,
         "version": VERSION,
@@ -214,7 +218,7 @@ def stimulus_document(
             "seam": seam_row(waveform.seam),
         },
         "mean": {
-            "nominal_db": None if nominal is None else rounded(10 * np.log10(nominal)),
+            "nominal_db": in_db(prepared.built.signal.mean_power),
             "realised_db": rounded(waveform.statistics.mean_db),
             "parts": part_rows(prepared, waveform),
         },
@@ -246,18 +250,15 @@ def seam_row(seam: SeamFigure) -> dict[str, Any]:
 
 def part_rows(prepared: Prepared, waveform: Waveform) -> list[dict[str, Any]]:
     """Return nominal and realised mean of each part, dB over unit power."""
-    rows = []
-    for part in prepared.built.parts:
-        nominal = part.signal.mean_power
-        rows.append(
-            {
-                "path": part.path,
-                "name": part.name,
-                "nominal_db": None if nominal is None else rounded(10 * np.log10(nominal)),
-                "realised_db": rounded(10 * np.log10(waveform.part_means[part.path])),
-            }
-        )
-    return rows
+    return [
+        {
+            "path": part.path,
+            "name": part.name,
+            "nominal_db": in_db(part.signal.mean_power),
+            "realised_db": in_db(waveform.part_means[part.path]),
+        }
+        for part in prepared.built.parts
+    ]
 
 
 def bench_rows(levels: Sequence[PathLevel]) -> dict[str, Any] | None:

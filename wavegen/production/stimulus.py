@@ -42,9 +42,39 @@ def sidecar_of(recording: Recording) -> dict[str, Any] | None:
 
 def _mentions(path: Path, name: str) -> bool:
     """Return whether a sidecar speaks of a file: a damaged one of another file is no matter."""
-    if not path.is_file() or path.stat().st_size > LARGEST_BYTES:
+    try:
+        if not path.is_file() or path.stat().st_size > LARGEST_BYTES:
+            return False
+        return json.dumps(name, ensure_ascii=False).encode() in path.read_bytes()
+    except OSError:  # one that may not be read says nothing
         return False
-    return json.dumps(name, ensure_ascii=False).encode() in path.read_bytes()
+
+
+def mismatch(recording: Recording, sidecar: dict[str, Any]) -> str | None:
+    """Return how a data file is not the one that its sidecar describes, None if it may be.
+
+    Parameters
+    ----------
+    recording : Recording
+        An open file.
+    sidecar : dict
+        What lies beside it.
+
+    Returns
+    -------
+    str or None
+        One sentence; lengths and rates are compared, not the hash.
+    """
+    for what, stated, found in (
+        ("samples", sidecar["n_samples"], recording.n_samples),
+        ("Hz", sidecar["sample_rate_hz"], float(recording.sample_rate_hz)),
+    ):
+        if stated != found:
+            return (
+                f"the sidecar beside it is of a loop with {stated:.12g} {what}, the file has "
+                f"{found:.12g}: it is measured as a recording"
+            )
+    return None
 
 
 def read_sidecar(path: Path) -> dict[str, Any]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import Any, Literal
 
 import numpy as np
@@ -77,6 +78,20 @@ def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:
     tiny = 1.0 / statistics.n_samples
     is_inside = (measured >= low - slack - tiny) & (measured <= high + slack + tiny)
     return "agrees" if bool(is_inside.all()) else "differs"
+
+
+def worst_verdict(law: Law | None, files: Sequence[ExportedFile]) -> Verdict:
+    """Return ``differs`` if one of the files differs, else how the first compares.
+
+    Parameters
+    ----------
+    law : Law or None
+        None gives ``undecided``.
+    files : sequence of ExportedFile
+        At least one.
+    """
+    verdicts = [compare_with_law(law, file) for file in files]
+    return "differs" if "differs" in verdicts else verdicts[0]
 
 
 def rounding_db(file: ExportedFile, level_db: NDArray[np.float64]) -> NDArray[np.float64]:

@@ -40,6 +40,17 @@ def fixed(value: float, unit: str) -> str:
     return f"{round(value, 2) + 0.0:.2f} {unit}"
 
 
+def length_words(duration_s: float, n_samples: int) -> str:
+    """Write a length as time and samples.
+
+    Examples
+    --------
+    >>> length_words(1e-6, 1)
+    '1 µs, 1 sample'
+    """
+    return f"{format_s(duration_s)}, {n_samples} sample{'s' if n_samples != 1 else ''}"
+
+
 def law_words(law: dict[str, Any]) -> str:
     """Say how a file compares with its law."""
     instants = law.get("n_instants")
@@ -54,7 +65,7 @@ def summary_table(document: dict[str, Any], *, title: str) -> Table:
     """Return the main figures of a measurement or sidecar."""
     rows = [
         ("sample rate", format_hz(document["sample_rate_hz"])),
-        ("length", f"{format_s(document['duration_s'])}, {document['n_samples']} samples"),
+        ("length", length_words(document["duration_s"], document["n_samples"])),
         ("mean", fixed(document["mean_dbfs"], "dBFS")),
         ("peak at samples", fixed(document["peak_dbfs"], "dBFS")),
         ("peak between samples", fixed(document["peak_between_samples_dbfs"], "dBFS")),
@@ -74,6 +85,8 @@ def summary_table(document: dict[str, Any], *, title: str) -> Table:
 
 def seam_words(seam: dict[str, Any]) -> str:
     """Say how a loop closes."""
+    if not seam["n_stretches"]:
+        return "not tested, the loop is too short"
     state = "clean" if seam["is_clean"] else "BROKEN"
     return f"{state}, {seam['at_seam_dbc']:.1f} dBc out of band there"
 
