@@ -36,6 +36,7 @@ _FINE_BITS = (1 << _STEP_BITS) - 1
 _HALF = 1 << (_STEP_BITS - 1)
 _LEAST_PLAIN = (_BIAS - 80) << 23
 _ABOVE_PLAIN = (_BIAS + 80) << 23
+_LEAST_PLAIN_POWER, _ABOVE_PLAIN_POWER = 2.0**-80, 2.0**80
 """Float32 bits of power 2^-80 and 2^80: what lies outside is squared again after scaling."""
 _SCALE_BITS = 96
 _UP = np.float32(2.0**_SCALE_BITS)
@@ -45,8 +46,13 @@ _POWER_DOWN = 2.0 ** (-2 * _SCALE_BITS)
 _BIN_OFFSET = 2 * _SCALE_BITS * BINS_PER_OCTAVE
 _NOT_COUNTED = -1
 _BANKS = 2
-"""Interleaved copies of the counts, so that equal samples in a row need not wait."""
+"""Interleaved copies of the counts, so that equal samples in a row need not wait; the loops and
+sums below are written for two."""
 _FINE_BANKS = 4
+_FINE_STRIDE = (1 << _STEP_BITS) + 16
+"""Copies of the counts of the highest bin, and how far apart: not a power of two, lest they meet in
+one set of the cache."""
+_ONE_BIN_DOWN = 1 - 1 / 256
 _NUMPY_BLOCK = 64 * CELL
 
 
@@ -236,7 +242,7 @@ class _Workspace(threading.local):
 
     def __init__(self) -> None:
         self.counts = np.zeros(N_BINS * _BANKS, np.uint32)
-        self.fine = np.zeros(_FINE_BANKS << _STEP_BITS, np.uint32)
+        self.fine = np.zeros(_FINE_BANKS * _FINE_STRIDE, np.uint32)
         self.power = np.zeros(CELL, np.float32)
         self.wide = np.zeros(CELL, np.float64)
 
@@ -257,7 +263,7 @@ def _tally_compiled(kernel: Callable[..., None], samples: Samples) -> PowerTally
     n_cells = -(-samples.size // CELL)
     sums, maxima = np.empty(n_cells), np.empty(n_cells)
     state = np.array([-1, 0, -1, -1], np.int64)
-    extremes = np.array([0.0, np.inf])
+    extremes = np.array([0.0, np.inf, 0.0])
     kernel(
         samples.view(np.float32),
         work.counts,
@@ -275,17 +281,17 @@ def _tally_compiled(kernel: Callable[..., None], samples: Samples) -> PowerTally
         work.counts[:] = 0
         work.fine[:] = 0
         return _bad_tally(bad)
-    peak, least = extremes.tolist()
+    peak, least, _ = extremes.tolist()
     counts = np.zeros(0, np.int64)
     first = 0
-    fine = work.fine.reshape(-1, _FINE_BANKS).sum(axis=1, dtype=np.int64)
+    fine = work.fine.reshape(_FINE_BANKS, -1).sum(axis=0, dtype=np.uint32)
     work.fine[:] = 0
     codes = np.flatnonzero(fine)
     top_powers = np.zeros(0)
     if peak > 0.0:
         first = bin_of(least)
         banks = work.counts[first * _BANKS : (top_bin + 1) * _BANKS]
-        counts = banks.reshape(-1, _BANKS).sum(axis=1, dtype=np.int64)
+        counts = banks[0::2].astype(np.int64) + banks[1::2]
         banks[:] = 0
         octave, mantissa = np.divmod((top_bin << _STEP_BITS) - _HALF + codes, 1 << 23)
         top_powers = np.ldexp(1.0 + mantissa / (1 << 23), octave + LOWEST_OCTAVE)
@@ -297,7 +303,7 @@ def _tally_compiled(kernel: Callable[..., None], samples: Samples) -> PowerTally
         least=least,
         peak_index=peak_index,
         top_powers=top_powers,
-        top_counts=fine[codes],
+        top_counts=fine[codes].astype(np.int64),
         sums=sums,
         maxima=maxima,
         bad_index=-1,
@@ -371,19 +377,24 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
     """Count cell by cell; written for the compiler (see :func:`tally_by_numpy` for the sense).
 
     ``bits`` views ``power``. ``state`` is bin of the peak, zeros, index of the peak, index of a
-    sample that is not finite; ``extremes`` is peak and least power.
+    sample that is not finite; ``extremes`` is peak and least power, and a sum
+    without sense that keeps the reads of the next cell from being left out.
     """
     half_bin = np.uint32(_HALF)
+    even, odd = np.uint32(0xFFFFFFFE), np.uint32(1)
+    plain = counts[_SHIFT * 2 :]  # unsigned indices need no test for being negative
     n_samples = parts.size // 2
+    touched = np.float32(0.0)
     top = state[0]
     peak = extremes[0]
     least = extremes[1]
     for cell in range(sums.size):
         first = cell * CELL
         size = min(CELL, n_samples - first)
+        mine = parts[2 * first : 2 * (first + size)]
         for i in range(size):
-            real = parts[2 * (first + i)]
-            imag = parts[2 * (first + i) + 1]
+            real = mine[2 * i]
+            imag = mine[2 * i + 1]
             power[i] = real * real + imag * imag
         high = np.uint32(0)
         low = np.uint32(0xFFFFFFFF)
@@ -391,27 +402,22 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
             high = max(high, bits[i])
             low = min(low, bits[i])
         if size == CELL and low >= np.uint32(_LEAST_PLAIN) and high < np.uint32(_ABOVE_PLAIN):
-            for i in range(0, CELL, 4):
-                counts[(((bits[i] + half_bin) >> np.uint32(14)) + _SHIFT) * 2] += np.uint32(1)
-                counts[(((bits[i + 1] + half_bin) >> np.uint32(14)) + _SHIFT) * 2 + 1] += np.uint32(
-                    1
-                )
-                counts[(((bits[i + 2] + half_bin) >> np.uint32(14)) + _SHIFT) * 2] += np.uint32(1)
-                counts[(((bits[i + 3] + half_bin) >> np.uint32(14)) + _SHIFT) * 2 + 1] += np.uint32(
-                    1
-                )
-            number = np.int64((high + half_bin) >> np.uint32(14)) + _SHIFT
-            if number >= top:
-                if number > top:
-                    fine[:] = np.uint32(0)
-                    top = number
-                code = np.uint32(top - _SHIFT)
-                for i in range(0, CELL, 4):  # adding 0 or 1 costs less than a wrong guess
-                    for k in range(4):
-                        here = bits[i + k] + half_bin
-                        fine[(here & np.uint32(_FINE_BITS)) * 4 + k] += np.uint32(
-                            (here >> np.uint32(14)) == code
-                        )
+            # Reading the next cell on the way, a cache line at a time, counting never waits for
+            # memory: 1.04 instead of 1.36 ns a sample where they come from far.
+            ahead = mine
+            if first + 2 * CELL <= n_samples:
+                ahead = parts[2 * (first + CELL) : 2 * (first + 2 * CELL)]
+            for i in range(0, CELL, 8):
+                touched += ahead[2 * i]
+                plain[((bits[i] + half_bin) >> np.uint32(13)) & even] += np.uint32(1)
+                plain[((bits[i + 1] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
+                plain[((bits[i + 2] + half_bin) >> np.uint32(13)) & even] += np.uint32(1)
+                plain[((bits[i + 3] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
+                plain[((bits[i + 4] + half_bin) >> np.uint32(13)) & even] += np.uint32(1)
+                plain[((bits[i + 5] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
+                plain[((bits[i + 6] + half_bin) >> np.uint32(13)) & even] += np.uint32(1)
+                plain[((bits[i + 7] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
+            top = max(top, np.int64((high + half_bin) >> np.uint32(14)) + _SHIFT)
             for i in range(256):
                 wide[i] = (np.float64(power[i]) + np.float64(power[i + 512])) + (
                     np.float64(power[i + 256]) + np.float64(power[i + 768])
@@ -422,19 +428,19 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
             largest = np.float64(power[0])
             if largest > peak:
                 peak = largest
-                for i in range(first, first + CELL):
-                    real = parts[2 * i]
-                    imag = parts[2 * i + 1]
+                for i in range(CELL):
+                    real = mine[2 * i]
+                    imag = mine[2 * i + 1]
                     if np.float64(real * real + imag * imag) == largest:
-                        state[2] = i
+                        state[2] = first + i
                         break
         else:
             largest = np.float64(0.0)
             for i in range(CELL):
                 wide[i] = 0.0
             for i in range(size):
-                real = parts[2 * (first + i)]
-                imag = parts[2 * (first + i) + 1]
+                real = mine[2 * i]
+                imag = mine[2 * i + 1]
                 if not (np.isfinite(real) and np.isfinite(imag)):
                     state[3] = first + i
                     return
@@ -465,11 +471,7 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
                 if exact > peak:
                     peak = exact
                     state[2] = first + i
-                if number > top:
-                    fine[:] = np.uint32(0)
-                    top = number
-                if number == top:
-                    fine[(here & np.uint32(_FINE_BITS)) * 4] += np.uint32(1)
+                top = max(top, number)
             for i in range(256):
                 wide[i] = (wide[i] + wide[i + 512]) + (wide[i + 256] + wide[i + 768])
         maxima[cell] = largest
@@ -482,3 +484,30 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
     state[0] = top
     extremes[0] = peak
     extremes[1] = least
+    extremes[2] = touched
+    # Once more over the cells that reach the highest bin, to resolve it to the bit.
+    scale_parts = np.float32(1.0)
+    code = top - _SHIFT
+    if peak == 0.0:
+        return
+    if peak < _LEAST_PLAIN_POWER:
+        scale_parts = _UP
+        code += _BIN_OFFSET
+    elif peak >= _ABOVE_PLAIN_POWER:
+        scale_parts = _DOWN
+        code -= _BIN_OFFSET
+    for cell in range(sums.size):
+        if maxima[cell] < _ONE_BIN_DOWN * peak:
+            continue
+        first = cell * CELL
+        size = min(CELL, n_samples - first)
+        mine = parts[2 * first : 2 * (first + size)]
+        for i in range(size):
+            real = mine[2 * i] * scale_parts
+            imag = mine[2 * i + 1] * scale_parts
+            power[i] = real * real + imag * imag
+        for i in range(size):  # adding 0 or 1 costs less than a wrong guess
+            here = bits[i] + half_bin
+            fine[(here & np.uint32(_FINE_BITS)) + np.uint32((i & 3) * _FINE_STRIDE)] += np.uint32(
+                np.int64(here >> np.uint32(14)) == code
+            )
