@@ -36,7 +36,6 @@ _FINE_BITS = (1 << _STEP_BITS) - 1
 _HALF = 1 << (_STEP_BITS - 1)
 _LEAST_PLAIN = (_BIAS - 80) << 23
 _ABOVE_PLAIN = (_BIAS + 80) << 23
-_LEAST_PLAIN_POWER, _ABOVE_PLAIN_POWER = 2.0**-80, 2.0**80
 """Float32 bits of power 2^-80 and 2^80: what lies outside is squared again after scaling."""
 _SCALE_BITS = 96
 _UP = np.float32(2.0**_SCALE_BITS)
@@ -52,8 +51,7 @@ _FINE_BANKS = 4
 _FINE_STRIDE = (1 << _STEP_BITS) + 16
 """Copies of the counts of the highest bin, and how far apart: not a power of two, lest they meet in
 one set of the cache."""
-_ONE_BIN_DOWN = 1 - 1 / 256
-_NUMPY_BLOCK = 64 * CELL
+_NUMPY_BLOCK = 16 * CELL
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -108,31 +106,37 @@ def exact_powers(samples: Samples) -> NDArray[np.float64]:
     -------
     float64 array, shape (n,)
     """
-    return _powers(samples)[2]
+    return _powers(samples)[0].astype(np.float64)
 
 
 def _powers(
     samples: Samples,
-) -> tuple[NDArray[np.uint32], NDArray[np.int64], NDArray[np.float64]]:
-    """Return bits, bin offset and power of each sample; zeros have offset ``_NOT_COUNTED``."""
+) -> tuple[NDArray[np.float32] | NDArray[np.float64], NDArray[np.int32]]:
+    """Return power and bin of each sample; zeros have bin ``_NOT_COUNTED``."""
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
-        power = samples.real * samples.real + samples.imag * samples.imag
+        power = samples.real * samples.real
+        power += samples.imag * samples.imag
         bits = power.view(np.uint32)
-        offset = np.full(samples.size, _SHIFT, np.int64)
-        exact = power.astype(np.float64)
+        if not samples.size or (bits.min() >= _LEAST_PLAIN and bits.max() < _ABOVE_PLAIN):
+            return power, _number(bits) + np.int32(_SHIFT)
         odd = np.flatnonzero((bits < _LEAST_PLAIN) | (bits >= _ABOVE_PLAIN))
-        if odd.size:
-            few = samples[odd]
-            is_zero = (few.real == 0) & (few.imag == 0)
-            is_large = bits[odd] >= _ABOVE_PLAIN
-            scale = np.where(is_large, _DOWN, _UP)
-            real, imag = few.real * scale, few.imag * scale
-            again = real * real + imag * imag
-            power[odd] = again
-            exact[odd] = again.astype(np.float64) * np.where(is_large, _POWER_UP, _POWER_DOWN)
-            offset[odd] += np.where(is_large, _BIN_OFFSET, -_BIN_OFFSET)
-            offset[odd[is_zero]] = _NOT_COUNTED
-    return bits, offset, exact
+        few = samples[odd]
+        is_large = bits[odd] >= _ABOVE_PLAIN
+        scale = np.where(is_large, _DOWN, _UP)
+        real, imag = few.real * scale, few.imag * scale
+        again = real * real + imag * imag
+        exact = power.astype(np.float64)
+        exact[odd] = again.astype(np.float64) * np.where(is_large, _POWER_UP, _POWER_DOWN)
+        power[odd] = again
+        number = _number(bits) + np.int32(_SHIFT)
+        number[odd] += np.where(is_large, _BIN_OFFSET, -_BIN_OFFSET).astype(np.int32)
+        number[odd[(few.real == 0) & (few.imag == 0)]] = _NOT_COUNTED
+    return exact, number
+
+
+def _number(bits: NDArray[np.uint32]) -> NDArray[np.int32]:
+    """Return the bin of float32 bits, counted from that of bits 0."""
+    return ((bits + np.uint32(_HALF)) >> np.uint32(_STEP_BITS)).view(np.int32)
 
 
 class _Total:
@@ -146,32 +150,39 @@ class _Total:
         self.least = np.inf
         self.top: dict[float, int] = {}
 
-    def add(self, start: int, samples: Samples) -> tuple[int, NDArray[np.float64]]:
-        bits, offset, exact = _powers(samples)
-        finite = np.isfinite(samples.real) & np.isfinite(samples.imag)
-        if not finite.all():
-            return start + int(np.argmin(finite)), exact
-        used = offset != _NOT_COUNTED
-        self.n_zeros += used.size - int(np.count_nonzero(used))
-        if not used.any():
-            return -1, exact
-        number = ((bits[used] + np.uint32(_HALF)) >> np.uint32(_STEP_BITS)).astype(
-            np.int64
-        ) + offset[used]
+    def add(self, start: int, samples: Samples) -> NDArray[np.float32] | NDArray[np.float64]:
+        """Count a block of finite samples and return their powers."""
+        powers, number = _powers(samples)
+        counted = powers
         low = int(number.min())
-        found = np.bincount(number - low)
+        if low == _NOT_COUNTED:
+            used = number != _NOT_COUNTED
+            number, counted = number[used], powers[used]
+            self.n_zeros += used.size - number.size
+            if not number.size:
+                return powers
+            low = int(number.min())
+        found = np.bincount(number - np.int32(low))
         self.counts[low : low + found.size] += found
-        self.least = min(self.least, float(exact[used].min()))
-        largest = float(exact.max())
+        self.least = min(self.least, float(counted.min()))
+        top = low + found.size - 1
+        largest = float(powers.max())
         if largest > self.peak:
-            if self.peak == 0.0 or bin_of(largest) != bin_of(self.peak):
+            if self.peak == 0.0 or top > bin_of(self.peak):
                 self.top.clear()
             self.peak = largest
-            self.peak_index = start + int(np.argmax(exact))
-        in_top = exact[used][number == bin_of(self.peak)]
-        for power, count in zip(*np.unique(in_top, return_counts=True), strict=True):
-            self.top[float(power)] = self.top.get(float(power), 0) + int(count)
-        return -1, exact
+            self.peak_index = start + int(np.argmax(powers))
+        if top == bin_of(self.peak):
+            in_top = counted[number == top]
+            for power, count in zip(*np.unique(in_top, return_counts=True), strict=True):
+                self.top[float(power)] = self.top.get(float(power), 0) + int(count)
+        return powers
+
+
+def _first_bad(samples: Samples) -> int:
+    """Return the first sample that is not finite, or -1."""
+    finite = np.isfinite(samples)
+    return -1 if finite.all() else int(np.argmin(finite))
 
 
 def tally_by_numpy(samples: Samples) -> PowerTally:
@@ -188,25 +199,26 @@ def tally_by_numpy(samples: Samples) -> PowerTally:
     """
     total = _Total()
     sums, maxima = [np.empty(0)], [np.empty(0)]
-    bad = -1
     for start in range(0, samples.size, _NUMPY_BLOCK):
-        bad, exact = total.add(start, samples[start : start + _NUMPY_BLOCK])
+        block = samples[start : start + _NUMPY_BLOCK]
+        bad = _first_bad(block)
         if bad >= 0:
-            break
-        sums.append(sum_cells(exact))
-        maxima.append(np.maximum.reduceat(exact, np.arange(0, exact.size, CELL)))
-    powers = np.array(sorted(total.top))
+            return _bad_tally(start + bad)
+        powers = total.add(start, block)
+        sums.append(sum_cells(powers))
+        maxima.append(np.maximum.reduceat(powers, np.arange(0, powers.size, CELL)))
+    top_powers = np.array(sorted(total.top))
     return PowerTally(
         **_cut(total.counts, total.least, total.peak),
         n_zeros=total.n_zeros,
         peak=total.peak,
         least=float(total.least),
         peak_index=total.peak_index,
-        top_powers=powers,
-        top_counts=np.array([total.top[power] for power in powers], np.int64),
+        top_powers=top_powers,
+        top_counts=np.array([total.top[power] for power in top_powers], np.int64),
         sums=np.concatenate(sums),
         maxima=np.concatenate(maxima),
-        bad_index=bad,
+        bad_index=-1,
     )
 
 
@@ -417,7 +429,17 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
                 plain[((bits[i + 5] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
                 plain[((bits[i + 6] + half_bin) >> np.uint32(13)) & even] += np.uint32(1)
                 plain[((bits[i + 7] + half_bin) >> np.uint32(13)) | odd] += np.uint32(1)
-            top = max(top, np.int64((high + half_bin) >> np.uint32(14)) + _SHIFT)
+            number = np.int64((high + half_bin) >> np.uint32(14)) + _SHIFT
+            if number >= top:
+                if number > top:
+                    fine[:] = np.uint32(0)
+                    top = number
+                code = np.uint32(top - _SHIFT)
+                for i in range(0, CELL, 4):  # adding 0 or 1 costs less than a wrong guess
+                    for k in range(4):
+                        here = bits[i + k] + half_bin
+                        place = (here & np.uint32(_FINE_BITS)) + np.uint32(k * _FINE_STRIDE)
+                        fine[place] += np.uint32((here >> np.uint32(14)) == code)
             for i in range(256):
                 wide[i] = (np.float64(power[i]) + np.float64(power[i + 512])) + (
                     np.float64(power[i + 256]) + np.float64(power[i + 768])
@@ -471,7 +493,11 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
                 if exact > peak:
                     peak = exact
                     state[2] = first + i
-                top = max(top, number)
+                if number > top:
+                    fine[:] = np.uint32(0)
+                    top = number
+                if number == top:
+                    fine[here & np.uint32(_FINE_BITS)] += np.uint32(1)
             for i in range(256):
                 wide[i] = (wide[i] + wide[i + 512]) + (wide[i + 256] + wide[i + 768])
         maxima[cell] = largest
@@ -485,29 +511,3 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
     extremes[0] = peak
     extremes[1] = least
     extremes[2] = touched
-    # Once more over the cells that reach the highest bin, to resolve it to the bit.
-    scale_parts = np.float32(1.0)
-    code = top - _SHIFT
-    if peak == 0.0:
-        return
-    if peak < _LEAST_PLAIN_POWER:
-        scale_parts = _UP
-        code += _BIN_OFFSET
-    elif peak >= _ABOVE_PLAIN_POWER:
-        scale_parts = _DOWN
-        code -= _BIN_OFFSET
-    for cell in range(sums.size):
-        if maxima[cell] < _ONE_BIN_DOWN * peak:
-            continue
-        first = cell * CELL
-        size = min(CELL, n_samples - first)
-        mine = parts[2 * first : 2 * (first + size)]
-        for i in range(size):
-            real = mine[2 * i] * scale_parts
-            imag = mine[2 * i + 1] * scale_parts
-            power[i] = real * real + imag * imag
-        for i in range(size):  # adding 0 or 1 costs less than a wrong guess
-            here = bits[i] + half_bin
-            fine[(here & np.uint32(_FINE_BITS)) + np.uint32((i & 3) * _FINE_STRIDE)] += np.uint32(
-                np.int64(here >> np.uint32(14)) == code
-            )
