@@ -124,6 +124,7 @@ def test_a_file_whose_stem_names_no_folder(tmp_path: Path, name: str) -> None:
 
 def test_a_byte_order_mark_and_foreign_line_ends_pass(tables: Tables) -> None:
     loaded = load_text("\ufeff" + TEXT.replace("\n", "\r\n"), tables=tables)
+    assert loaded.text.startswith("wavegen")
     assert loaded.place("signal.parts[1].level") == Place(11, 14)
     assert loaded.place("wavegen") == Place(1, 10)
 

@@ -2,6 +2,7 @@
 
 import pytest
 
+from wavegen.core.registry import Registry
 from wavegen.recipe.tables import DEFAULT_KINDS, TABLES, Tables, kind_of_class, members
 
 
@@ -31,3 +32,9 @@ def test_a_class_finds_its_kind(tables: Tables) -> None:
 def test_an_unknown_table_is_our_bug(tables: Tables) -> None:
     with pytest.raises(KeyError):
         members(tables, ("pulses",))
+
+
+def test_the_first_table_wins() -> None:
+    first, second = Registry("a", {"x": "m:A"}), Registry("b", {"x": "m:B", "y": "m:C"})
+    found = members({"t": (first, second)}, ("t",))
+    assert found == {"x": first, "y": second}

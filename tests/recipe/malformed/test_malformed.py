@@ -56,6 +56,7 @@ CASES = [
     top("unknown key", "titel: x", 1, "titel", "title"),
     top("key by its field", "sample_rate_hz: 1", 1, "sample_rate_hz", "sample_rate"),
     top("key in capitals", "Seed: 3", 1, "Seed", "seed"),
+    top("kind where no table is", "kind: carrier", 1, "kind", "unknown key"),
     top("far-off key", "quux: 3", 1, "quux", "output"),
     top("duplicate key", "duration: 2 ms", 1, "", "line 3"),
     top("merge key", "<<: {seed: 1}", 1, "", "merge"),
