@@ -5,7 +5,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from wavegen.core.units import QuantityError
-from wavegen.recipe.names import LONGEST, check_name, check_text
+from wavegen.recipe.names import LONGEST, check_name, check_text, check_title
 
 
 @pytest.mark.parametrize(
@@ -42,8 +42,12 @@ def test_taken(name: str) -> None:
     check_name(name)
 
 
-def test_a_title_may_be_empty() -> None:
-    check_name("", may_be_empty=True)
+def test_a_title_names_no_file() -> None:
+    check_title("")
+    check_title("Rate 1/2 at 3.84 Msym/s, C:\\ and ..")
+    for wrong in ("a\nb", "a\tb", "x" * (LONGEST + 1), "a\x00"):
+        with pytest.raises(QuantityError):
+            check_title(wrong)
 
 
 def test_text_may_have_lines() -> None:

@@ -101,7 +101,7 @@ def test_the_tree_given_is_left_alone(tables: Tables) -> None:
             "at most 1",
         ),
         ("output={peak: 0 dBFS, peak: 0 dBFS}", "--set output", "twice"),
-        ("title=../x", "--set title", "separator"),
+        ('title="a\\tb"', "--set title", "tab"),
     ],
 )
 def test_faults_name_the_override(override: str, where: str, word: str, tables: Tables) -> None:

@@ -72,7 +72,7 @@ def test_text() -> None:
         (scalar("false"), "note"),
         (scalar("../x"), "name"),
         (scalar("a/b"), "share"),
-        (scalar("a/b"), "title"),
+        (scalar("a\nb", is_plain=False), "title"),
         (scalar("", is_plain=False), "name"),
         (scalar("a\0b", is_plain=False), "path"),
     ]:

@@ -9,7 +9,7 @@ from wavegen.core.units import QuantityError
 LONGEST = 120
 """Characters; file systems take 255 bytes and suffixes follow."""
 
-NAME_FIELDS = frozenset({"name", "title", "share"})
+NAME_FIELDS = frozenset({"name", "share"})
 """Text fields of settings that are names."""
 
 _REFUSED = frozenset({"Cc", "Cs", "Zl", "Zp"})
@@ -35,15 +35,32 @@ def check_text(text: str) -> None:
             )
 
 
-def check_name(text: str, *, may_be_empty: bool = False) -> None:
+def check_title(text: str) -> None:
+    """Refuse a title that is more than one line; it names no file, so a slash is fine.
+
+    Raises
+    ------
+    QuantityError
+        Tabs, line ends, control characters, or too long.
+    """
+    check_text(text)
+    if "\n" in text or "\t" in text or len(text) > LONGEST:
+        raise QuantityError(
+            problem=f"the title {text[:40]!r} holds a tab or a line end"
+            if len(text) <= LONGEST
+            else f"the title {text[:40]!r}... is {len(text)} characters long",
+            allowed=f"one line of up to {LONGEST} characters",
+            remedy="Shorten it; longer remarks go into comments.",
+        )
+
+
+def check_name(text: str) -> None:
     r"""Refuse a name that could leave its folder or break a line of output.
 
     Parameters
     ----------
     text : str
         The name of a part, a file or a recipe.
-    may_be_empty : bool
-        Whether no text is fine.
 
     Raises
     ------
@@ -53,8 +70,6 @@ def check_name(text: str, *, may_be_empty: bool = False) -> None:
     """
     check_text(text)
     allowed = f"one line of up to {LONGEST} characters without / or \\, not . or .."
-    if not text and may_be_empty:
-        return
     if any(character in text for character in "/\\\n\t"):
         raise QuantityError(
             problem=f"the name {text[:40]!r} holds a path separator, a tab or a line end",

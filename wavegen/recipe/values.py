@@ -8,7 +8,7 @@ from typing import Annotated, Any, Literal, get_args, get_origin
 from wavegen.core.registry import Member
 from wavegen.core.units import Dimension, QuantityError, parse_quantity, split_quantity
 from wavegen.recipe import scalars
-from wavegen.recipe.names import NAME_FIELDS, check_name, check_text
+from wavegen.recipe.names import NAME_FIELDS, check_name, check_text, check_title
 from wavegen.recipe.scalars import kind_of, shown
 from wavegen.recipe.tables import TABLES, Tables, members
 from wavegen.recipe.tree import Items, Node, Place, Scalar
@@ -32,7 +32,9 @@ def read_text(node: Scalar, field: str) -> str:
             remedy=f'Put it in quotes: "{node.text[:40]}".',
         )
     if field in NAME_FIELDS:
-        check_name(node.text, may_be_empty=field == "title")
+        check_name(node.text)
+    elif field == "title":
+        check_title(node.text)
     else:
         check_text(node.text)
     return node.text

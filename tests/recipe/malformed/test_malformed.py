@@ -119,7 +119,7 @@ CASES = [
     top("title a number", "title: 12", 8, "title", "quotes"),
     top("title a truth", "title: true", 8, "title", "quotes"),
     top("title a list", "title: [x]", 8, "title", "text"),
-    top("title with a path", "title: a/b", 8, "title", "separator"),
+    top("title of two lines", 'title: "a\\nb"', 8, "title", "line end"),
     top("title with a control", 'title: "a\\u001b[2J"', 8, "title", "U+001B"),
     top("title with half a pair", 'title: "a\\ud800"', 8, "title", "U+D800"),
     top("title turning", 'title: "a\\u202eb"', 8, "title", "U+202E"),
