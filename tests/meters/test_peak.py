@@ -74,6 +74,28 @@ def test_peak_across_the_seam(held, band_noise):
     assert search(held, rolled, loops=False).power < found.power
 
 
+def test_peak_after_the_last_sample_that_only_the_first_announces(held):
+    # A pulse 0.35 of a sample before the first: the last sample, 5.6 dB under its crest, and
+    # all others of the last cell would not call for a search.
+    n = 4096
+    place = (np.arange(n) + n // 2) % n - n // 2
+    samples = np.sinc(0.9 * (place + 0.35)) * np.exp(-(((place + 0.35) / 40) ** 2))
+    found = search(held, samples)
+    assert n - 1 < found.position_samples < n
+    # The grid of sixteenths misses the crest by 0.025 of a sample.
+    assert found.power == pytest.approx(np.sinc(0.9 * 0.025) ** 2, rel=1e-4)
+
+
+def test_crest_far_above_its_nearest_samples(held):
+    # cos(pi 0.58 t) under a bell, its crest halfway: the nearest samples are 4.3 dB lower,
+    # 3.0 dB under the largest sample of the record, which stands beside a lesser crest.
+    time = np.arange(2048) - 1000.5
+    samples = np.cos(np.pi * 0.58 * time) * np.exp(-((time / 4) ** 2) / 2)
+    found = search(held, samples)
+    assert found.position_samples == 1000.5
+    assert found.power == pytest.approx(1, rel=1e-4)
+
+
 def test_recording_stays_inside(held):
     # A carrier that begins and ends: read as a loop it would ring at the seam.
     samples = np.exp(2j * np.pi * 0.1234567 * np.arange(3001)).astype(np.complex64)

@@ -49,6 +49,18 @@ def test_counts_are_exact_at_edges():
     np.testing.assert_array_equal(found.exceedances_of_power(asked), exact)
 
 
+def test_counts_are_exact_in_the_highest_bin_and_below_the_least():
+    powers = np.array([0.25, 0.25, 1.0, 1.0, 1.0, 1.0005])
+    found = measure_samples(np.sqrt(powers).astype(np.complex64))
+    # More than a power, not that power itself.
+    asked = np.append(found.top_powers, found.least * np.array([0.9999, 1.00001]))
+    assert found.top_counts.tolist() == [3, 1]
+    counts = found.exceedances_of_power(asked)
+    assert counts[:3].tolist() == [1, 0, 6]
+    # Inside the lowest bin the two samples are spread from the least power upwards.
+    assert 5.9 < counts[3] < 6
+
+
 def test_levels_are_where_the_sorted_samples_are():
     samples = gaussian(3, 200_000)
     found = measure_samples(samples)
