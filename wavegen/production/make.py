@@ -15,6 +15,7 @@ from wavegen.core.progress import Progress, silent
 from wavegen.core.stored import Scratch
 from wavegen.files import FORMATS
 from wavegen.files.atomic import Drafts
+from wavegen.files.faults import told
 from wavegen.files.format import FileFacts, Format, pick_datatype
 from wavegen.production.bench import path_levels, refuse_overload
 from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
@@ -140,8 +141,9 @@ def make(
             verdict=worst_verdict(law, files),
             levels=levels,
         )
-        sidecar.write_text(as_json(document), encoding="utf-8")
-        curve.write_text(as_csv(document), encoding="utf-8")
+        for path, text in ((sidecar, as_json(document)), (curve, as_csv(document))):
+            with told(path):
+                path.write_text(text, encoding="utf-8")
     names = [name for target in targets for name in target.names]
     names += [f"{loaded.name}.ccdf.json", f"{loaded.name}.ccdf.csv"]
     folder = out / loaded.name

@@ -96,7 +96,7 @@ def curves(statistics: PowerStatistics) -> dict[str, Any]:
     return {
         "ccdf": {"level_db": at, "probability": [float(x) for x in ccdf]},
         "cdf": {"level_db": at, "probability": [float(x) for x in 1 - ccdf]},
-        "pdf": {"level_db": at, "per_db": [float(max(x, 0.0)) for x in pdf]},
+        "pdf": {"level_db": at, "per_db": [float(x) + 0.0 for x in pdf]},
     }
 
 

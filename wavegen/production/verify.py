@@ -15,7 +15,10 @@ from wavegen.production.prepare import Prepared
 Verdict = Literal["agrees", "differs", "undecided"]
 
 TOLERANCE_DB = 0.01
-"""Half a bin of the histogram and the arithmetic's own error, with a margin."""
+"""A bin of the histogram (0.0085 dB) and the arithmetic's own error."""
+ROUNDOFF = 1e-9
+"""Of probabilities, which are sums of 1/n."""
+_FAR_DB = 400.0
 DEEPEST_DB = -20.0
 """Levels below this are not compared: there a code is a large part of the envelope."""
 
@@ -57,27 +60,31 @@ def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:
 
     Notes
     -----
-    At every level the file's CCDF must lie between the law's at the level plus and minus a
-    tolerance, widened by what a loop of few samples can differ from the continuous curve
-    (``sampling_slack`` of the law). The tolerance is 0.01 dB plus the largest change that
-    rounding to codes can make to an envelope: half a code on each rail, 0.71 codes.
+    At every level the file's CCDF must lie between the law's a little above and a little below
+    it (:func:`law_levels`), widened by what a loop of few samples can differ from the continuous
+    curve (``sampling_slack`` of the law). No sample may stand over the law's peak by more.
     """
     if law is None:
         return "undecided"
     statistics = file.statistics
     top = max(law.peak_db, statistics.papr_db) + 1.0
     level = np.arange(DEEPEST_DB, top, 0.05)
-    margin = TOLERANCE_DB + rounding_db(file, level)
-    slack_of: Any = getattr(law, "sampling_slack", None)
+    below, above = law_levels(file, level)
     measured = statistics.ccdf(level)
-    low = law.ccdf(level + margin)
-    high = law.ccdf(level - margin)
-    slack = np.zeros(level.size)
-    if slack_of is not None:
-        slack = np.maximum(slack_of(level + margin), slack_of(level - margin))
-    tiny = 1.0 / statistics.n_samples
-    is_inside = (measured >= low - slack - tiny) & (measured <= high + slack + tiny)
-    return "agrees" if bool(is_inside.all()) else "differs"
+    fewest = law.ccdf(above) - sampling_slack(law, above) - ROUNDOFF
+    most = law.ccdf(below) + sampling_slack(law, below) + ROUNDOFF
+    is_inside = bool(np.all((measured >= fewest) & (measured <= most)))
+    lowest_peak, _ = law_levels(file, np.array([statistics.papr_db]))
+    return "agrees" if is_inside and lowest_peak[0] <= law.peak_db else "differs"
+
+
+def sampling_slack(law: Law, level_db: NDArray[np.float64]) -> NDArray[np.float64]:
+    """Return how far samples of a loop may stand from a law, 0 where it does not say."""
+    slack_of: Any = getattr(law, "sampling_slack", None)
+    if slack_of is None:
+        return np.zeros(level_db.size)
+    slack: NDArray[np.float64] = slack_of(level_db)
+    return slack
 
 
 def worst_verdict(law: Law | None, files: Sequence[ExportedFile]) -> Verdict:
@@ -94,18 +101,43 @@ def worst_verdict(law: Law | None, files: Sequence[ExportedFile]) -> Verdict:
     return "differs" if "differs" in verdicts else verdicts[0]
 
 
-def rounding_db(file: ExportedFile, level_db: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return the largest change of an envelope by rounding to codes, dB, at each level.
+def law_levels(
+    file: ExportedFile, level_db: NDArray[np.float64]
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return between which levels of the law a level of a file lies.
 
     Parameters
     ----------
     file : ExportedFile
         Its datatype and mean.
     level_db : float64 array
-        Levels, dB over the mean.
+        Levels, dB over the mean of the codes.
+
+    Returns
+    -------
+    below, above : float64 array
+        Levels, dB over the mean before rounding.
+
+    Notes
+    -----
+    Rounding moves an envelope by half a code on each rail, 0.71 codes, at most. It moves the RMS
+    value by no more (triangle inequality), and so the mean that levels are over. To this come
+    0.01 dB for the histogram's bins and the arithmetic.
     """
-    if not file.datatype.is_integer:
-        return np.zeros(level_db.size)
-    codes = file.datatype.full_scale * 10 ** ((file.statistics.mean_db + level_db) / 20)
-    change: NDArray[np.float64] = 20 * np.log10(1 + np.sqrt(0.5) / codes)
-    return change
+    statistics = file.statistics
+    code = 1 / file.datatype.full_scale if file.datatype.is_integer else 0.0
+    reach = code * np.sqrt(0.5)
+    envelope = 10 ** ((statistics.mean_db + level_db) / 20)
+    rms = 10 ** (statistics.mean_db / 20)
+    below = _db_amplitude((envelope - reach) / (rms + reach)) - TOLERANCE_DB
+    above = (
+        _db_amplitude((envelope + reach) / (rms - reach)) + TOLERANCE_DB
+        if rms > reach
+        else np.full(level_db.size, _FAR_DB)
+    )
+    return below, above
+
+
+def _db_amplitude(ratio: NDArray[np.float64]) -> NDArray[np.float64]:
+    level: NDArray[np.float64] = 20 * np.log10(np.maximum(ratio, 10 ** (-_FAR_DB / 20)))
+    return level
