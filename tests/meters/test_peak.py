@@ -201,3 +201,31 @@ def test_nothing_below_the_largest_sample(held):
         found = search(held, samples)
         assert found.power >= found.sample_peak
         assert found.gained_db >= 0
+
+
+@pytest.mark.parametrize("fraction", [0.05, 0.25, 0.5, 0.9])
+@pytest.mark.parametrize("offset", [0.0, 0.31, 0.5])
+def test_filled_fraction_of_a_band(held, band_noise, fraction, offset):
+    n = 1 << 16
+    samples = band_noise(4, n, fraction) * np.exp(2j * np.pi * offset * np.arange(n))
+    signal = held(samples.astype(np.complex64))
+    found = peak.filled_fraction(signal, measure_samples(samples.astype(np.complex64)))
+    # A stretch of 4096 samples spreads an edge by the window's main lobe, 8 bins each side.
+    assert fraction - 0.002 <= found <= fraction + 16 / 4096 + 0.002
+
+
+def test_a_short_wide_burst_at_the_crest_counts(held, band_noise):
+    n = 1 << 18
+    samples = band_noise(4, n, 0.05)
+    samples[100_000:104_000] += 4 * band_noise(5, 4000, 0.9)
+    samples = samples.astype(np.complex64)
+    statistics = measure_samples(samples)
+    assert peak.filled_fraction(held(samples), statistics) > 0.85
+    found = peak_between_samples(held(samples), statistics)
+    assert found.power == pytest.approx(by_transform(samples)[0], rel=2e-4)
+
+
+def test_the_search_is_as_deep_as_the_band_asks():
+    assert peak.searched_db(1.0) == peak.SEARCHED_DB
+    assert peak.searched_db(0.5) == pytest.approx(3.0103 + peak.MARGIN_DB, abs=1e-4)
+    assert peak.searched_db(0.125) == pytest.approx(0.1685 + peak.MARGIN_DB, abs=1e-4)

@@ -7,8 +7,11 @@ M. Gharavi-Alkhansari, B. H. Khalaj, IEEE Trans. Commun. 51(1), 2003, 72-78; fro
 figures re-computed). So
 
 - the nearest sample (tau <= 1/2) is at most ``-20 log10 cos(pi b / 2)`` below the peak: 3.01 dB
-  at 2 samples per Hz, and under ``SEARCHED_DB`` = 4.5 dB up to b = 0.59. For random signals that
-  fill more, 4.5 dB covers the worst seen at b = 1 (4.2 dB in OFDM symbols of 256 subcarriers);
+  at b = 1/2, 0.69 dB at b = 1/4. ``b`` is read off the spectrum where the highest samples stand and
+  at places spread over the signal; the search goes ``MARGIN_DB`` deeper than the bound, for the
+  power that is left outside the band. It never goes deeper than ``SEARCHED_DB`` = 4.5 dB (the
+  bound at b = 0.59): that covers the worst seen in random signals at b = 1 (4.2 dB in OFDM
+  symbols of 256 subcarriers);
 - on a grid of half samples (tau <= 1/4) it is at most 3.01 dB below for any b up to 1;
 - on a grid of quarter samples (tau <= 1/8), at most 0.69 dB below;
 - on the final grid of sixteenths (tau <= 1/32), at most 0.042 dB: what the figure can still miss.
@@ -16,10 +19,12 @@ figures re-computed). So
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from functools import cache
 
 import numpy as np
+import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.evaluate import evaluate
@@ -36,7 +41,12 @@ Kaiser's design formula, A = 8 + 2.285 (N - 1) dw): flat up to 0.93 of the sampl
 _SHORT_HALF_LENGTH = 4
 _SHORT_BETA = 4.0
 SEARCHED_DB = 4.5
-_SEARCHED = 10.0 ** (-SEARCHED_DB / 10)
+MARGIN_DB = 0.5
+LEFT_OUT = 1e-5
+"""Share of the power that may lie outside the band that counts as filled."""
+_STRETCH = 4096
+_STRETCHES = 16
+"""Stretches whose spectrum is read: this many at the highest samples, as many spread evenly."""
 _LEAST_PLAIN = 2.0**-80
 _COARSE = 0.45
 """Half-sample grid: cos(pi/4)^2 = 0.5, and a tenth less for the short filter's own error."""
@@ -107,8 +117,8 @@ def peak_between_samples(
     -----
     Band-limited interpolation by a Kaiser-windowed sinc of 64 samples on each side; valid for
     signals that fill up to 0.93 of the sample rate. The grid misses at most 0.042 dB of the true
-    peak. Searched are places within 4.5 dB of the peak (see the module), first on a rough grid of
-    half samples, then on quarters, then on sixteenths. Of a block of 65536 samples at most 256
+    peak. Searched are places near samples that the peak can be near (see the module), first on a
+    rough grid of half samples, then on quarters, then on sixteenths. Of a block of 65536 samples at most 256
     and 32 places go into the second and the third round, the best of the round before: this
     bounds the time for constant envelopes, where every place is as good as any other. The
     blocks lie on the absolute grid, so nothing depends on strips or workers.
@@ -119,16 +129,17 @@ def peak_between_samples(
     if not _LEAST_PLAIN < statistics.peak < 1 / _LEAST_PLAIN:  # float32 would run out of range
         scale = float(np.exp2(np.floor(np.log2(statistics.peak) / 2)))
     peak = statistics.peak / scale**2
+    searched = 10.0 ** (-searched_db(filled_fraction(signal, statistics, loops=loops)) / 10)
     best = _Best(peak, float(statistics.peak_index))
-    for start, stop, largest in _blocks(statistics, loops=loops):
+    for start, stop, largest in _blocks(statistics, searched, loops=loops):
         start, stop = max(start, low), min(stop, high)  # noqa: PLW2901
-        if start >= stop or largest / scale**2 < best.power * _SEARCHED:
+        if start >= stop or largest / scale**2 < best.power * searched:
             continue
         wanted = (start - HALF_LENGTH, stop + HALF_LENGTH)
         samples = evaluate({signal: wanted})[signal]
         if scale != 1.0:
             samples = (samples.astype(np.complex128) / scale).astype(np.complex64)
-        best = _search(samples, start, best)
+        best = _search(samples, start, best, searched)
     return BetweenSamplesPeak(
         power=best.power * scale**2,
         position_samples=best.position,
@@ -137,14 +148,81 @@ def peak_between_samples(
     )
 
 
-def _blocks(statistics: PowerStatistics, *, loops: bool) -> list[tuple[int, int, float]]:
+def searched_db(filled: float) -> float:
+    """Return how far below the largest sample the peak's neighbours may stand, dB.
+
+    Parameters
+    ----------
+    filled : float
+        Fraction of the sample rate that the signal fills, 0 to 1.
+
+    Examples
+    --------
+    >>> round(searched_db(0.25), 2), searched_db(1.0)
+    (1.19, 4.5)
+    """
+    bound = -20.0 * math.log10(max(math.cos(math.pi * filled / 2), 1e-9))
+    return min(bound + MARGIN_DB, SEARCHED_DB)
+
+
+def filled_fraction(signal: Signal, statistics: PowerStatistics, *, loops: bool = True) -> float:
+    """Return the fraction of the sample rate that holds all but 1e-5 of the power.
+
+    Parameters
+    ----------
+    signal : Signal
+        What was measured.
+    statistics : PowerStatistics
+        Of that signal: tells where the highest samples stand.
+    loops : bool
+        Whether stretches may pass the seam.
+
+    Returns
+    -------
+    float
+        Width of the smallest band (anywhere, round the ends of the spectrum too) in the mean
+        spectrum of stretches of 4096 samples: 16 at the highest cells, 16 spread evenly. 1.0
+        where the signal is shorter than a stretch and does not loop.
+    """
+    n = statistics.n_samples
+    if not loops and n < _STRETCH:
+        return 1.0
+    highest = np.argsort(-statistics.cell_maxima, kind="stable")[:_STRETCHES]
+    centres = [statistics.start // CELL * CELL + int(cell) * CELL for cell in highest]
+    centres += [statistics.start + n * i // _STRETCHES for i in range(_STRETCHES)]
+    window = np.kaiser(_STRETCH, _KAISER_BETA).astype(np.float32)
+    spectrum = np.zeros(_STRETCH)
+    for centre in centres:
+        start = centre - _STRETCH // 2
+        if not loops:
+            start = min(max(start, statistics.start), statistics.start + n - _STRETCH)
+        samples = evaluate({signal: (start, start + _STRETCH)})[signal]
+        largest = float(np.abs(samples).max())
+        if largest > 0:  # each stretch counts by its shape, so that no level runs out of range
+            bins = scipy.fft.fft(samples * (window / np.float32(largest)))
+            spectrum += np.abs(bins.astype(np.complex128)) ** 2
+    return 1.0 - _widest_gap(spectrum, LEFT_OUT) / _STRETCH
+
+
+def _widest_gap(spectrum: NDArray[np.float64], share: float) -> int:
+    """Return the most neighbouring bins, round the ends too, that hold up to a share of all."""
+    n = spectrum.size
+    total = np.concatenate(([0.0], np.cumsum(np.concatenate((spectrum, spectrum)))))
+    limit = share * total[n]
+    ends = np.searchsorted(total, total[:n] + limit, side="right") - 1
+    return int(min(np.max(ends - np.arange(n)), n))
+
+
+def _blocks(
+    statistics: PowerStatistics, searched: float, *, loops: bool
+) -> list[tuple[int, int, float]]:
     """Return stretches to search and the largest power at their samples, the largest first."""
     first_cell = statistics.start // CELL
     maxima = statistics.cell_maxima
     # A place belongs to the sample before it: a cell's last place may owe its height to the next.
     beyond = maxima[0] if loops else 0.0
     reach = np.maximum(maxima, np.append(maxima[1:], beyond))
-    hopeful = reach >= statistics.peak * _SEARCHED
+    hopeful = reach >= statistics.peak * searched
     blocks: list[tuple[int, int, float]] = []
     per_block = _BLOCK // CELL
     for block in range(first_cell // per_block, (first_cell + maxima.size - 1) // per_block + 1):
@@ -158,7 +236,7 @@ def _blocks(statistics: PowerStatistics, *, loops: bool) -> list[tuple[int, int,
     return sorted(blocks, key=lambda item: (-item[2], item[0]))
 
 
-def _search(samples: Samples, start: int, best: _Best) -> _Best:
+def _search(samples: Samples, start: int, best: _Best, searched: float) -> _Best:
     """Search the places after each sample of a block for a larger power.
 
     Parameters
@@ -169,11 +247,13 @@ def _search(samples: Samples, start: int, best: _Best) -> _Best:
         Index of the block's first sample.
     best : _Best
         The best so far.
+    searched : float
+        Power, over the best, from which a sample's neighbourhood is looked at.
     """
     n = samples.size - 2 * HALF_LENGTH
     power = _power(samples[HALF_LENGTH : HALF_LENGTH + n + 1])
     near = np.maximum(power[:-1], power[1:])
-    places = np.flatnonzero(near >= np.float32(best.power * _SEARCHED))
+    places = np.flatnonzero(near >= np.float32(best.power * searched))
     if not places.size:
         return best
     rough = np.maximum(_halfway(samples, places, n), near[places])
