@@ -118,10 +118,10 @@ def peak_between_samples(
     Band-limited interpolation by a Kaiser-windowed sinc of 64 samples on each side; valid for
     signals that fill up to 0.93 of the sample rate. The grid misses at most 0.042 dB of the true
     peak. Searched are places near samples that the peak can be near (see the module), first on a
-    rough grid of half samples, then on quarters, then on sixteenths. Of a block of 65536 samples at most 256
-    and 32 places go into the second and the third round, the best of the round before: this
-    bounds the time for constant envelopes, where every place is as good as any other. The
-    blocks lie on the absolute grid, so nothing depends on strips or workers.
+    rough grid of half samples, then on quarters, then on sixteenths. Of a block of 65536 samples
+    at most 256 and 32 places go into the second and the third round, the best of the round
+    before: this bounds the time for constant envelopes, where every place is as good as any
+    other. The blocks lie on the absolute grid, so nothing depends on strips or workers.
     """
     first, last = statistics.start, statistics.start + statistics.n_samples
     low, high = (first, last) if loops else (first + HALF_LENGTH, last - HALF_LENGTH)
