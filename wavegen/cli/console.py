@@ -33,6 +33,14 @@ def encoding_of_stdout() -> str:
     return getattr(sys.stdout, "encoding", None) or "utf-8"
 
 
+def stdout_is_terminal() -> bool:
+    """Return whether stdout is a terminal; one that is closed is none."""
+    try:
+        return sys.stdout is not None and sys.stdout.isatty()
+    except ValueError:
+        return False
+
+
 def discard_stdout() -> None:
     """Send what is still to be flushed nowhere: its reader has gone, or its disk is full."""
     try:
@@ -125,8 +133,10 @@ class Console:
         for row in table.rows:
             drawn.add_row(*(Text(cell) for cell in row))
         page = Page()
-        is_terminal = sys.stdout is not None and sys.stdout.isatty()
-        Terminal(file=page, width=WIDTH, highlight=False, force_terminal=is_terminal).print(drawn)
+        terminal = Terminal(
+            file=page, width=WIDTH, highlight=False, force_terminal=stdout_is_terminal()
+        )
+        terminal.print(drawn)
         self._put(page.getvalue())
 
 

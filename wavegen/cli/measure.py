@@ -25,9 +25,9 @@ class Measure:
 
     summary = "measure the power statistics of a file or a recipe"
     description = (
-        "Measure mean, peaks and the CCDF of a recording, of a stimulus file, or of what a\n"
-        "recipe would make. A file with a sidecar is a loop; any other is a recording unless\n"
-        "--loop or --period says otherwise."
+        "Measure mean, peaks and the CCDF of a recording, of a stimulus file, or of what\n"
+        "a recipe would make. A file with a sidecar is a loop; any other is a recording\n"
+        "unless --loop or --period says otherwise."
     )
 
     @staticmethod
@@ -108,7 +108,8 @@ def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[st
         "period",
         "loop",
     ):
-        if getattr(arguments, option) not in {None, False}:
+        given = getattr(arguments, option)
+        if given is not None and given is not False:
             name = {"first": "from", "stop": "to"}.get(option, option.replace("_", "-"))
             raise ArgumentsError(
                 where=f"--{name}",
