@@ -101,25 +101,3 @@ def test_the_edges_add_up_to_one() -> None:
     rising = Layout(n_fft=64, prefixes=(16,), edge=9).rising
     assert np.allclose(rising + rising[::-1], 1)
     assert np.all(np.diff(rising) > 0)
-
-
-def test_mean_power_of_random_data_alone() -> None:
-    layout = Layout(n_fft=64, prefixes=(16, 20), edge=8)
-    # Raised cosine: the mean of w^2 + (1 - w)^2 is 3/4 over each edge of 8 samples.
-    expected = 2.5 * (164 - 2 * 8 / 4) / 164
-    assert np.isclose(layout.mean_power(2.5, np.zeros(64, np.complex128)), expected)
-
-
-def test_mean_power_of_fixed_values_is_that_of_the_samples() -> None:
-    rng = np.random.default_rng(20)
-    layout = Layout(n_fft=16, prefixes=(5, 7), edge=4)
-    fixed = rng.normal(size=16) + 1j * rng.normal(size=16)
-    body = np.fft.ifft(fixed) * 16
-    rising = layout.rising
-    samples = []
-    for prefix in layout.prefixes:
-        symbol = np.concatenate([body[16 - prefix :], body])
-        symbol[:4] = rising * symbol[:4] + (1 - rising) * body[:4]
-        samples.append(symbol)
-    expected = np.mean(np.abs(np.concatenate(samples)) ** 2)
-    assert np.isclose(layout.mean_power(0.0, fixed), expected, rtol=1e-12)

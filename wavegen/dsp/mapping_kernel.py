@@ -24,6 +24,7 @@ def write_points(
     *,
     table: Samples,
     bins: NDArray[np.uint32],
+    places: NDArray[np.intp] | None = None,
 ) -> None:
     """Write ``table[words]`` into columns ``bins`` of rows.
 
@@ -31,19 +32,22 @@ def write_points(
     ----------
     rows : complex64 array, shape (n_symbols, n_fft)
         Written to, in columns ``bins`` only; contiguous.
-    words : uint8 or uint16 array, shape (n_symbols, n)
+    words : uint8 or uint16 array, shape (n_symbols, n) or (n_places, n)
         Their low bits number the points; contiguous.
     table : complex64 array, shape (order,)
         A power of 2 entries.
     bins : uint32 array, shape (n,)
         Column of each word, below ``n_fft``.
+    places : intp array, shape (n_places,), optional
+        Row of each row of words; all rows in turn unless given.
     """
     kernel = _compile()
     if kernel is None:
-        write_points_by_numpy(rows, words, table=table, bins=bins)
-    else:
-        # one 8-byte move a point, where complex64 would be two of 4
-        kernel(rows.view(np.uint64), words, table.view(np.uint64), bins)
+        write_points_by_numpy(rows, words, table=table, bins=bins, places=places)
+        return
+    where = np.arange(words.shape[0]) if places is None else places
+    # one 8-byte move a point, where complex64 would be two of 4
+    kernel(rows.view(np.uint64), words, table.view(np.uint64), bins, where)
 
 
 def write_points_by_numpy(
@@ -52,15 +56,40 @@ def write_points_by_numpy(
     *,
     table: Samples,
     bins: NDArray[np.uint32],
+    places: NDArray[np.intp] | None = None,
 ) -> None:
     """Do what :func:`write_points` does, without a compiler; same parameters."""
     values = table.take(words & words.dtype.type(min(table.size, 1 << 16) - 1))
+    write_values(rows, values, bins=bins, places=places)
+
+
+def write_values(
+    rows: Samples,
+    values: Samples,
+    *,
+    bins: NDArray[np.uint32],
+    places: NDArray[np.intp] | None = None,
+) -> None:
+    """Write values into columns ``bins`` of rows.
+
+    Parameters
+    ----------
+    rows : complex64 array, shape (n_symbols, n_fft)
+        Written to, in columns ``bins`` only.
+    values : complex64 array, shape (n_symbols, n) or (n_places, n)
+        What is written.
+    bins : uint32 array, shape (n,)
+        Column of each value, below ``n_fft``.
+    places : intp array, shape (n_places,), optional
+        Row of each row of values; all rows in turn unless given.
+    """
+    where = slice(None) if places is None else places
     stretches = _slices(bins.tobytes())
     if len(stretches) > _MOST_SLICES:
-        rows[:, bins] = values
+        rows[where if places is None else places[:, None], bins] = values
     else:
-        for place, columns in stretches:
-            rows[:, columns] = values[:, place]
+        for columns, stretch in stretches:
+            rows[where, stretch] = values[:, columns]
 
 
 @lru_cache(maxsize=64)
@@ -103,6 +132,7 @@ def _compile() -> Callable[..., None] | None:
             kinds.Array(word, 2, "C"),
             kinds.Array(kinds.uint64, 1, "C"),
             kinds.Array(kinds.uint32, 1, "C"),
+            kinds.Array(kinds.intp, 1, "C"),
         )
         for word in (kinds.uint8, kinds.uint16)
     ]
@@ -117,9 +147,10 @@ def _write(
     words: NDArray[np.unsignedinteger],
     table: NDArray[np.uint64],
     bins: NDArray[np.uint32],
+    places: NDArray[np.intp],
 ) -> None:
     mask = np.uint32(table.size - 1)
-    for k in range(rows.shape[0]):
-        row, numbers = rows[k], words[k]
+    for k in range(places.size):
+        row, numbers = rows[places[k]], words[k]
         for i in range(bins.size):
             row[bins[i]] = table[np.uint32(numbers[i]) & mask]

@@ -1,4 +1,4 @@
-"""Prefixes and edges of OFDM symbols in whole samples, and the mean power they leave."""
+"""Prefixes and edges of OFDM symbols in whole samples."""
 
 from __future__ import annotations
 
@@ -8,7 +8,6 @@ from fractions import Fraction
 from typing import Self
 
 import numpy as np
-import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.errors import RecipeError
@@ -99,6 +98,11 @@ class CyclicPrefix:
     """
 
     runs: tuple[tuple[int, Stretch], ...]
+
+    @property
+    def n_symbols(self) -> int:
+        """Symbols in the pattern as listed."""
+        return sum(count for count, _ in self.runs)
 
     def __str__(self) -> str:
         return ", ".join(str(length) if n == 1 else f"{n} x {length}" for n, length in self.runs)
@@ -193,42 +197,6 @@ class Layout:
         """
         t = np.arange(self.edge) + 0.5
         return 0.5 - 0.5 * np.cos(np.pi * t / max(self.edge, 1))
-
-    def mean_power(self, variance: float, fixed: NDArray[np.complex128]) -> float:
-        """Return the expected mean power over the pattern.
-
-        Parameters
-        ----------
-        variance : float
-            Summed variance of the subcarriers' values, drawn anew in each symbol.
-        fixed : complex128 array, shape (n_fft,)
-            Expected value of each FFT bin: what is the same in every symbol.
-
-        Returns
-        -------
-        float
-
-        Notes
-        -----
-        With ``D(n)`` the inverse transform of ``fixed`` and ``w`` the rising edge, a sample
-        outside the edge has the expected power ``V + |D(n)|^2``. Inside, two symbols
-        overlap: their random parts add in power, ``V (w^2 + (1 - w)^2)``, their fixed parts
-        in amplitude, ``|w D(t - c) + (1 - w) D(t)|^2`` with ``c`` the prefix. Source:
-        derivation; tested against averages over many loops.
-        """
-        w = self.rising
-        mixed = variance * float(np.sum(w**2 + (1 - w) ** 2))
-        steady = np.asarray(scipy.fft.ifft(fixed, norm="forward"))
-        power = steady.real**2 + steady.imag**2
-        body = float(power.sum()) + variance * self.n_fft
-        total = 0.0
-        for prefix in self.prefixes:
-            tail = steady[self.n_fft - prefix :]
-            edge = w * tail[: self.edge] + (1 - w) * steady[: self.edge]
-            rest = power[self.n_fft - prefix + self.edge :]
-            total += body + mixed + variance * rest.size
-            total += float(rest.sum() + np.sum(edge.real**2 + edge.imag**2))
-        return total / self.n_samples
 
 
 def fft_length(*, sample_rate_hz: Fraction, spacing_hz: Fraction, where: str) -> int:

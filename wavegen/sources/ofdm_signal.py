@@ -4,15 +4,17 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Protocol
 
 import numpy as np
 import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
-from wavegen.dsp.mapping_kernel import write_points
+from wavegen.dsp.mapping_kernel import write_values
+from wavegen.sources.ofdm_carried import Carried, Drawn, Pinned
 from wavegen.sources.ofdm_layout import Layout
+from wavegen.sources.ofdm_power import half_turn
+from wavegen.sources.ofdm_schedule import states
 
 FFT_SAMPLES = 1 << 16
 """Samples filled and transformed at a time: 512 kB, so that the FFT finds them in cache."""
@@ -22,37 +24,6 @@ FEWEST_ROWS = 4
 """Rows an FFT call should have: single rows run several times slower."""
 MOST_GAPS = 12
 """Up to here the bins without data are cleared gap by gap; beyond, clearing all is faster."""
-
-
-class Words(Protocol):
-    """Symbol numbers on a cyclic axis, as data sources give them."""
-
-    def words(self, first: int, count: int) -> NDArray[np.unsignedinteger]:
-        """Return words whose low bits number the symbols ``first ...``."""
-
-
-@dataclass(frozen=True, eq=False, kw_only=True)
-class Carried:
-    """Subcarriers that carry one stream of data.
-
-    Parameters
-    ----------
-    data : Words
-        Word ``symbol * n + i`` is for subcarrier ``i`` of a symbol.
-    table : complex64 array, shape (order,)
-        Point of each symbol number, level and scale included.
-    bins : uint32 array, shape (n,)
-        FFT bin of each subcarrier.
-    """
-
-    data: Words
-    table: Samples
-    bins: NDArray[np.uint32]
-
-    def rows(self, first: int, count: int) -> NDArray[np.unsignedinteger]:
-        """Return the words of symbols ``first ...``, shape (count, n)."""
-        n = self.bins.size
-        return self.data.words(first * n, count * n).reshape(count, n)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -65,16 +36,20 @@ class SymbolBodies(Signal):
         Useful samples of a symbol.
     carried : tuple of Carried
         What is drawn anew in each symbol.
-    fixed : complex64 array, shape (n_fft,)
-        FFT bins that are the same in each symbol (pilots), zero elsewhere.
+    pinned : tuple of Pinned
+        What is the same in each symbol in which it is on: pilots.
     indices : intp array, shape (n_active,)
-        Subcarriers in use, ascending; 0 is the centre.
+        Subcarriers in use in any symbol, ascending; 0 is the centre.
+    is_shifted : bool
+        Whether every subcarrier stands half a spacing higher, its phase counted from the start
+        of the useful part.
     """
 
     n_fft: int
     carried: tuple[Carried, ...]
-    fixed: Samples
+    pinned: tuple[Pinned, ...]
     indices: NDArray[np.intp]
+    is_shifted: bool = False
 
     @property
     def block_rows(self) -> int:
@@ -83,41 +58,74 @@ class SymbolBodies(Signal):
 
     @cached_property
     def gaps(self) -> list[slice]:
-        """Bins without data, few slices: empty ones and pilots, or simply all."""
+        """Bins without data in some symbol, few slices: empty ones and pilots, or simply all."""
         free = np.ones(self.n_fft, np.bool_)
         for part in self.carried:
-            free[part.bins] = False
+            if part.presence.is_always:
+                free[part.bins] = False
         edges = np.flatnonzero(np.diff(np.concatenate(([False], free, [False]))))
         if edges.size > 2 * MOST_GAPS:
             return [slice(0, self.n_fft)]
         return [slice(int(a), int(b)) for a, b in edges.reshape(-1, 2)]
 
-    def fill(self, some: Samples, words: list[NDArray[np.unsignedinteger]]) -> None:
+    @cached_property
+    def backgrounds(self) -> tuple[Samples, NDArray[np.intp]]:
+        """Bins of what is pinned, shape (n_states, n_fft), and the state of each symbol."""
+        if not self.pinned:
+            return np.zeros((1, self.n_fft), np.complex64), np.zeros(1, np.intp)
+        on, numbers = states([part.presence for part in self.pinned])
+        grids = np.zeros((on.shape[0], self.n_fft), np.complex64)
+        for part, is_on in zip(self.pinned, on.T, strict=True):
+            grids[np.ix_(is_on, part.bins)] = part.values
+        return grids, numbers
+
+    @cached_property
+    def turn(self) -> Samples:
+        """Shift by half a subcarrier, shape (n_fft,)."""
+        return half_turn(self.n_fft).astype(np.complex64)
+
+    def draw(self, first: int, count: int) -> list[Drawn]:
+        """Return the words of symbols ``first ...`` for each of ``carried``."""
+        return [part.rows(first, count) for part in self.carried]
+
+    def fill(self, some: Samples, drawn: list[Drawn], *, first: int, skip: int) -> None:
         """Write the bins of successive symbols.
 
         Parameters
         ----------
         some : complex64 array, shape (n_symbols, n_fft)
             Written to; contiguous.
-        words : list of unsigned integer array, shape (n_symbols, n)
-            One for each of ``carried``.
+        drawn : list of unsigned integer array
+            What :meth:`draw` gave for symbols ``first ...``.
+        first : int
+            Its first symbol.
+        skip : int
+            Symbols of it before those written here.
         """
+        grids, numbers = self.backgrounds
+        symbol, count = first + skip, some.shape[0]
         for gap in self.gaps:
-            some[:, gap] = self.fixed[gap]
-        for part, numbers in zip(self.carried, words, strict=True):
-            write_points(some, numbers, table=part.table, bins=part.bins)
+            if grids.shape[0] == 1:
+                some[:, gap] = grids[0, gap]
+            else:
+                which = numbers[np.arange(symbol, symbol + count) % numbers.size]
+                some[:, gap] = grids[which, gap]
+        for part, words in zip(self.carried, drawn, strict=True):
+            part.write(some, part.between(words, first, skip, count), symbol)
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Return whole symbols: FFT bins filled, then transformed in place."""
         first = start // self.n_fft
         rows = np.empty((stop // self.n_fft - first, self.n_fft), np.complex64)
-        words = [part.rows(first, rows.shape[0]) for part in self.carried]
+        drawn = self.draw(first, rows.shape[0])
         for low in range(0, rows.shape[0], self.block_rows):
             some = rows[low : low + self.block_rows]
-            self.fill(some, [numbers[low : low + self.block_rows] for numbers in words])
+            self.fill(some, drawn, first=first, skip=low)
             done = scipy.fft.ifft(some, axis=1, norm="forward", overwrite_x=True)
             if not np.may_share_memory(done, some):
                 some[:] = done
+            if self.is_shifted:
+                some *= self.turn
         return rows.reshape(-1)
 
 
@@ -125,10 +133,13 @@ class SymbolBodies(Signal):
 class Subcarriers(Signal):
     """What each subcarrier carries: index ``symbol * n_active + position``, ascending.
 
+    Zero where a subcarrier is off.
+
     Parameters
     ----------
     bodies : SymbolBodies
-        Whose subcarriers; values are on the scale of ``fft(body) / n_fft``.
+        Whose subcarriers; values are on the scale of ``fft(body) / n_fft``, once a shift by
+        half a subcarrier is undone.
     """
 
     bodies: SymbolBodies
@@ -139,13 +150,44 @@ class Subcarriers(Signal):
         n_active = bodies.indices.size
         first = start // n_active
         out = np.empty((stop // n_active - first, n_active), np.complex64)
-        words = [part.rows(first, out.shape[0]) for part in bodies.carried]
+        drawn = bodies.draw(first, out.shape[0])
         room = np.empty((min(bodies.block_rows, out.shape[0]), bodies.n_fft), np.complex64)
         bins = bodies.indices % bodies.n_fft
         for low in range(0, out.shape[0], bodies.block_rows):
             some = room[: out.shape[0] - low]
-            bodies.fill(some, [numbers[low : low + bodies.block_rows] for numbers in words])
+            bodies.fill(some, drawn, first=first, skip=low)
             out[low : low + bodies.block_rows] = some[:, bins]
+        return out.reshape(-1)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Points(Signal):
+    """Points of the groups before DFT spreading: index ``symbol * n_points + position``.
+
+    Group by group, in each the order in which its subcarriers are listed; zero where a group is
+    off. Rotation, level and scale are included: the DFT of a spread group's points, over the
+    root of their number, is what :class:`Subcarriers` has for it.
+
+    Parameters
+    ----------
+    bodies : SymbolBodies
+        Whose groups.
+    """
+
+    bodies: SymbolBodies
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Return the points of whole symbols."""
+        parts = self.bodies.carried
+        n_points = sum(part.bins.size for part in parts)
+        first = start // n_points
+        out = np.zeros((stop // n_points - first, n_points), np.complex64)
+        column = 0
+        for part in parts:
+            place = np.arange(column, column + part.bins.size, dtype=np.uint32)
+            points = part.points(part.rows(first, out.shape[0]))
+            write_values(out, points, bins=place, places=part.presence.places(first, out.shape[0]))
+            column += part.bins.size
         return out.reshape(-1)
 
 
@@ -159,10 +201,17 @@ class Prefixed(Signal):
         The repeating pattern; the loop holds a whole number of them.
     ideal : Signal
         What each subcarrier carries, on the (symbol, subcarrier) axis.
+    points : Signal or None
+        Points before DFT spreading, on the (symbol, point) axis; None where nothing is spread.
+    is_shifted : bool
+        Whether subcarriers stand half a spacing higher: what goes on beyond a useful symbol, on
+        either side, is then its other end with the sign changed.
     """
 
     layout: Layout
     ideal: Signal
+    points: Signal | None = None
+    is_shifted: bool = False
 
     @cached_property
     def starts(self) -> NDArray[np.int64]:
@@ -233,7 +282,8 @@ class Prefixed(Signal):
     def _weights(self) -> tuple[NDArray[np.float32], NDArray[np.float32]]:
         """Edge of the incoming and of the outgoing symbol, for I and Q in turn."""
         rising = np.repeat(self.layout.rising, 2)
-        return rising.astype(np.float32), (1 - rising).astype(np.float32)
+        falling = rising - 1 if self.is_shifted else 1 - rising
+        return rising.astype(np.float32), falling.astype(np.float32)
 
     def _lay(self, out: Samples, current: Samples, before: Samples, place: int) -> None:
         """Write the same part of several patterns, from symbol ``place`` of the pattern on."""
@@ -249,7 +299,10 @@ class Prefixed(Signal):
             part = rows[:, offset : offset + (b - a) * length].reshape(n_patterns, b - a, length)
             body = current[:, a:b]
             part[..., prefix:] = body
-            part[..., :prefix] = body[..., n_fft - prefix :]
+            if self.is_shifted:
+                np.negative(body[..., n_fft - prefix :], out=part[..., :prefix])
+            else:
+                part[..., :prefix] = body[..., n_fft - prefix :]
             if edge:
                 rising, falling = self._weights
                 mixed = part[..., :edge].view(np.float32)
