@@ -7,6 +7,7 @@ from typing import Any
 
 from wavegen.core.signal import Signal
 from wavegen.core.site import Site
+from wavegen.core.timespan import TimeSpan
 from wavegen.dsp.pulses.rectangular import Rectangular
 from wavegen.sources.carrier import Carrier
 from wavegen.sources.mapping.constellation import Constellation
@@ -16,6 +17,10 @@ from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.single_carrier import SingleCarrier
 from wavegen.sources.subcarriers import IndexSet, PilotValues
 from wavegen.sources.tones import Notch, Tone, Tones
+from wavegen.stages.channel.delay import Delay
+from wavegen.stages.channel.filter import Filter, FilterTaps
+from wavegen.stages.channel.gate import Gate
+from wavegen.stages.channel.resample import Resample
 from wavegen.stages.channel.scale import Scale
 from wavegen.stages.combine.sum import Part, Sum
 from wavegen.stages.crest.clip import Clip
@@ -151,11 +156,14 @@ class StageExample:
         ``(settings, site, source) -> Signal``.
     identity : settings, optional
         The same at zero strength: its output is its input, bit for bit.
+    is_measured : bool
+        Whether the mean power behind it has no closed form.
     """
 
     settings: Any
     build: Callable[[Any, Site, Signal], Signal]
     identity: Any = None
+    is_measured: bool = False
 
 
 def _stage(settings: Any, site: Site, source: Signal) -> Signal:
@@ -172,6 +180,56 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
     "clip": (
         StageExample(settings=Clip(ceiling_db=5.0), build=_stage, identity=Clip(ceiling_db=60.0)),
         StageExample(settings=Clip(ceiling_db=0.5), build=_stage),
+    ),
+    "delay": (
+        StageExample(
+            settings=Delay(delay=TimeSpan.parse("-12.3 us")),
+            build=_stage,
+            identity=Delay(delay=TimeSpan.parse("0 s")),
+        ),
+        StageExample(settings=Delay(delay=TimeSpan.parse("30001 samples")), build=_stage),
+    ),
+    "filter": (
+        StageExample(
+            settings=Filter(bandwidth_hz=Fraction(100_000), transition_hz=Fraction(20_000)),
+            build=_stage,
+            is_measured=True,
+        ),
+        StageExample(
+            settings=Filter(
+                low_hz=Fraction(-50_000),
+                high_hz=Fraction(90_000),
+                stopband_db=60.0,
+                keep_mean=True,
+            ),
+            build=_stage,
+        ),
+        StageExample(
+            settings=Filter(taps=FilterTaps.parse([0.5, [0.25, -0.25], 0.0, 0.1])),
+            build=_stage,
+            identity=Filter(taps=FilterTaps.parse([1])),
+            is_measured=True,
+        ),
+    ),
+    "gate": (
+        StageExample(
+            settings=Gate(
+                duty_percent=Fraction(25),
+                period=TimeSpan.parse("400 us"),
+                ramp=TimeSpan.parse("20 samples"),
+            ),
+            build=_stage,
+            identity=Gate(duty_percent=Fraction(100), period=TimeSpan.parse("1 sample")),
+        ),
+        StageExample(settings=Gate(pattern="1101", slot=TimeSpan.parse("7 samples")), build=_stage),
+    ),
+    "resample": (
+        StageExample(
+            settings=Resample(input_rate_hz=Fraction(625_000)),
+            build=_stage,
+            identity=Resample(input_rate_hz=RATE_HZ),
+        ),
+        StageExample(settings=Resample(input_rate_hz=Fraction(3_000_000)), build=_stage),
     ),
     "scale": (
         StageExample(settings=Scale(gain_db=-3.0), build=_stage, identity=Scale(gain_db=0.0)),

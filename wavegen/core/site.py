@@ -102,7 +102,11 @@ class SourceSettings(Protocol):
 
 
 class StageSettings(Protocol):
-    """What every member of STAGES is."""
+    """What every member of STAGES is.
+
+    A stage that has a say in the loop's length also has ``cycle``, as sources have; one whose
+    input runs at another rate has ``upstream_rate``: see :mod:`wavegen.stages.chain`.
+    """
 
     def build(self, site: Site, source: Signal) -> Signal:
         """Return the signal after this stage."""

@@ -149,14 +149,16 @@ def filter_rows(
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Filtered(Signal):
-    """A signal through a finite filter, zero delay: ``y[n] = sum_k taps[h + k] x[n - k]``.
+    """A signal through a finite filter: ``y[n] = sum_k taps[h + k] x[n - lag - k]``.
 
     Parameters
     ----------
     taps : float64 or complex128 array, shape (2 h + 1,)
-        Odd count; the middle tap belongs to lag zero.
+        Odd count; the middle tap belongs to ``lag``.
     n_fft : int
         Transform length, at least ``2 h + 1``; ``step`` is ``n_fft - 2 h``.
+    lag : int
+        Delay of the middle tap, samples; 0 for a filter without delay.
 
     Notes
     -----
@@ -165,6 +167,7 @@ class Filtered(Signal):
 
     taps: NDArray[np.float64] | NDArray[np.complex128]
     n_fft: int
+    lag: int = 0
 
     @classmethod
     def of(
@@ -174,6 +177,7 @@ class Filtered(Signal):
         *,
         mean_power: float | None = None,
         n_fft: int | None = None,
+        lag: int = 0,
     ) -> Self:
         """Filter a signal.
 
@@ -182,11 +186,13 @@ class Filtered(Signal):
         source : Signal
             What is filtered; the result keeps its rate and period.
         taps : float64 or complex128 array, shape (2 h + 1,)
-            Odd count; the middle tap belongs to lag zero.
+            Odd count; the middle tap belongs to ``lag``.
         mean_power : float, optional
             Of the result, where it is known in closed form.
         n_fft : int, optional
             Transform length; :func:`fft_length` if not given.
+        lag : int
+            Delay of the middle tap, samples.
 
         Returns
         -------
@@ -202,6 +208,7 @@ class Filtered(Signal):
             mean_power=mean_power,
             taps=taps,
             n_fft=length,
+            lag=lag,
         )
 
     @property
@@ -216,7 +223,8 @@ class Filtered(Signal):
 
     def needs(self, start: int, stop: int) -> tuple[Range, ...]:
         """Return the range with the filter's halo on both sides."""
-        return ((start - self.half_length, stop + self.half_length),)
+        reach = self.half_length
+        return ((start - self.lag - reach, stop - self.lag + reach),)
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Filter whole cells."""

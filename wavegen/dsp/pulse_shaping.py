@@ -56,7 +56,13 @@ class Shaper(Protocol):
 
 
 def plan_shaping(
-    pulse: Pulse, *, n_samples: int, n_symbols: int, period_symbols: int, longest: int = LONGEST_ROW
+    pulse: Pulse,
+    *,
+    n_samples: int,
+    n_symbols: int,
+    period_symbols: int,
+    longest: int = LONGEST_ROW,
+    gain: float | None = None,
 ) -> Shaper:
     """Choose the form of shaping for a pulse and a rate, scaled to unit mean power.
 
@@ -70,6 +76,8 @@ def plan_shaping(
         Symbols in the loop; it enters the scale alone.
     longest : int
         Longest FFT row accepted, samples.
+    gain : float, optional
+        What the pulse is multiplied by, instead of what gives unit mean power. A hold has none.
 
     Returns
     -------
@@ -78,7 +86,8 @@ def plan_shaping(
     energy = mean_energy(pulse, per_symbol=n_samples, period_symbols=period_symbols)
     if isinstance(pulse, Hold):
         return HoldShaper(n_samples=n_samples, n_symbols=n_symbols)
-    gain = energy**-0.5
+    if gain is None:
+        gain = energy**-0.5
     n_rows = _row_units(pulse, n_samples, n_symbols, longest)
     if n_rows is not None:
         return _design_rows(pulse, n_samples, n_symbols, n_rows, gain)

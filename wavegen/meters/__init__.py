@@ -6,6 +6,7 @@ METERS = Registry(
     "meter",
     {
         "power": "wavegen.meters.power:PowerMeter",
+        "gated_power": "wavegen.meters.gated:GatedPowerMeter",
         "mean": "wavegen.meters.mean:MeanMeter",
     },
 )
