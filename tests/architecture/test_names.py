@@ -18,7 +18,7 @@ from wavegen.stages import COMBINERS, STAGES
 
 ROOT = Path(__file__).parents[2]
 
-DIMENSIONLESS = {"roll_off", "taps", "multiple"}
+DIMENSIONLESS = {"roll_off", "taps", "multiple", "bt", "h"}
 """Fields of settings that are numbers without a unit, by nature."""
 
 COVERED_BY: dict[str, str] = {}

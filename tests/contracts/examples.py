@@ -14,6 +14,7 @@ from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.noise import Noise
 from wavegen.sources.ofdm import Group, Ofdm, Pilots
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
+from wavegen.sources.phase_modulation import PhaseModulation
 from wavegen.sources.single_carrier import SingleCarrier
 from wavegen.sources.subcarriers import IndexSet, PilotValues
 from wavegen.sources.tones import Notch, Tone, Tones
@@ -91,6 +92,23 @@ SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
                 cyclic_prefix=CyclicPrefix.parse("1/4"),
             )
         ),
+    ),
+    "phase_modulation": tuple(
+        SourceExample(
+            settings=PhaseModulation(symbol_rate_hz=Fraction(rate_hz), **fields),
+            is_exact=True,
+            least_samples=least_samples,
+        )
+        for rate_hz, least_samples, fields in (
+            ("125000", LOOP_SAMPLES, {"scheme": "msk"}),
+            ("325000/3", LOOP_SAMPLES, {"scheme": "gmsk", "bt": 0.3, "differential": True}),
+            ("100000", LOOP_SAMPLES, {"scheme": "gfsk", "bt": 0.5, "h": Fraction("0.32")}),
+            ("50000", 40, {"scheme": "cpfsk", "h": Fraction(7, 10), "levels": 4}),
+            ("123456", 2 * LOOP_SAMPLES, {"scheme": "cpfsk", "h": Fraction(1, 3), "levels": 8}),
+            ("48000", LOOP_SAMPLES, {"scheme": "four_level_fm"}),
+            ("250000", LOOP_SAMPLES, {"scheme": "soqpsk_tg"}),
+            ("200000", LOOP_SAMPLES, {"scheme": "oqpsk_half_sine"}),
+        )
     ),
     "single_carrier": (
         SourceExample(

@@ -6,6 +6,7 @@ SOURCES = Registry(
     "source",
     {
         "single_carrier": "wavegen.sources.single_carrier:SingleCarrier",
+        "phase_modulation": "wavegen.sources.phase_modulation:PhaseModulation",
         "ofdm": "wavegen.sources.ofdm:Ofdm",
         "tones": "wavegen.sources.tones:Tones",
         "noise": "wavegen.sources.noise:Noise",
