@@ -29,12 +29,15 @@ class Pulse:
         Known only at whole samples, so that the samples per symbol must be an integer.
     is_matched : bool
         A filter matched to it is meant to leave no interference between symbols.
+    is_smooth : bool
+        False where it jumps or bends at whole symbols, smooth as it may be between them.
     """
 
     span_symbols: int
     half_band: float | None = None
     is_sampled: bool = False
     is_matched: bool = False
+    is_smooth: bool = True
 
     def values(self, t: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return the pulse at times in symbols from its own symbol's instant.
@@ -65,6 +68,35 @@ class Pulse:
         """
         half = self.span_symbols * per_symbol
         return self.values(np.arange(-half, half) / per_symbol)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Stretched(Pulse):
+    """A pulse on an axis of half symbols: twice as long there.
+
+    Parameters
+    ----------
+    inner : Pulse
+        The pulse on the symbol axis.
+    """
+
+    inner: Pulse
+
+    @classmethod
+    def of(cls, pulse: Pulse) -> Stretched:
+        """Return a pulse as one whose axis counts half symbols."""
+        return cls(
+            span_symbols=2 * pulse.span_symbols,
+            half_band=None if pulse.half_band is None else pulse.half_band / 2,
+            is_sampled=pulse.is_sampled,
+            is_matched=pulse.is_matched,
+            is_smooth=pulse.is_smooth,
+            inner=pulse,
+        )
+
+    def values(self, t: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Return the pulse at times in half symbols."""
+        return self.inner.values(t / 2)
 
 
 class PulseSettings(Protocol):

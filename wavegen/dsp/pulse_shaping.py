@@ -2,8 +2,8 @@
 
 ``a`` samples hold ``b`` symbols, in lowest terms; sample ``n`` stands at ``n b / a`` symbols. Three
 forms, chosen by :func:`plan_shaping`: held symbols are gathered; band-limited and sampled pulses go
-through short FFT rows; where those would grow too long (``a`` large), the pulse is a polynomial
-between symbols.
+through short FFT rows; where those would grow too long (``a`` large), or a pulse bends at symbols
+that fall between samples, the pulse is a polynomial between symbols.
 """
 
 from __future__ import annotations
@@ -37,6 +37,8 @@ SILENT = 1e-7
 """Spectrum of a pulse below this share of its highest value (-140 dB) is left out."""
 POLYNOMIAL_ERROR = 1e-9
 """First Chebyshev term left out of the polynomials between symbols."""
+HIGHEST_DEGREE = 32
+"""Degree that the terms of a pulse without a band limit are looked for in."""
 BLOCK_SAMPLES = 1 << 14
 """Samples that :class:`PolynomialShaper` makes at a time, about."""
 
@@ -89,7 +91,7 @@ def plan_shaping(
     if gain is None:
         gain = energy**-0.5
     n_rows = _row_units(pulse, n_samples, n_symbols, longest)
-    if n_rows is not None:
+    if n_rows is not None and (pulse.is_smooth or n_symbols == 1):
         return _design_rows(pulse, n_samples, n_symbols, n_rows, gain)
     return _design_polynomials(pulse, n_samples, n_symbols, gain)
 
@@ -364,13 +366,19 @@ def _multiples(start: int, stop: int, period: int, origin: int) -> range:
 
 def _design_polynomials(pulse: Pulse, a: int, b: int, gain: float) -> PolynomialShaper:
     span = pulse.span_symbols
-    reach = np.pi * ((pulse.half_band or 1.0) + 0.5)  # the taper widens the band a little
-    terms = np.abs(scipy.special.jv(np.arange(40), reach))
-    degree = int(np.flatnonzero(terms > POLYNOMIAL_ERROR)[-1])
+    degree = HIGHEST_DEGREE
+    if pulse.half_band is not None:
+        reach = np.pi * (pulse.half_band + 0.5)  # the taper widens the band a little
+        terms = np.abs(scipy.special.jv(np.arange(40), reach))
+        degree = int(np.flatnonzero(terms > POLYNOMIAL_ERROR)[-1])
     nodes = np.polynomial.chebyshev.chebpts1(degree + 1)
     shifts = np.arange(-span, span)
     values = gain * pulse.values(shifts[:, None] + (nodes + 1.0) / 2)
     series = np.polynomial.chebyshev.chebfit(nodes, values.T, degree)
+    if pulse.half_band is None:
+        sizes = np.max(np.abs(series), axis=1)
+        degree = int(np.flatnonzero(sizes > POLYNOMIAL_ERROR * sizes.max())[-1])
+        series = series[: degree + 1]
     powers = np.zeros((degree + 1, 2 * span))
     for order, row in enumerate(series):  # each Chebyshev polynomial as powers of u
         basis = np.polynomial.chebyshev.cheb2poly([0.0] * order + [1.0])

@@ -3,27 +3,36 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from functools import cached_property
+from pathlib import Path
 from typing import Annotated, Any, Protocol
 
 import numpy as np
 from annotated_types import Gt
 from numpy.typing import NDArray
 
+from wavegen.core.evaluate import repeat
 from wavegen.core.registry import Member
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Cycle, Note, Site, samples_per
-from wavegen.core.units import format_hz
-from wavegen.dsp.pulse import Pulse, PulseSettings, residual_evm_percent
+from wavegen.core.units import QuantityError, format_hz
+from wavegen.dsp.pulse import Pulse, PulseSettings, Stretched, residual_evm_percent
 from wavegen.dsp.pulse_shaping import Shaper, plan_shaping
 from wavegen.dsp.pulses.root_raised_cosine import RootRaisedCosine
+from wavegen.dsp.pulses.taps import MOST_TAPS, Taps
 from wavegen.sources.data.random import Random
+from wavegen.sources.differential import integrate, phase_steps
 from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.rotation import Rotation
+from wavegen.sources.small_file import read_numbers
 
 DOUBTFUL_EVM_PERCENT = 0.1
 """A cut pulse that leaves more interference than this is worth a warning."""
+
+LARGEST_TABLE = 1 << 20
+"""Turned points that are kept at hand."""
 
 
 class SymbolNumbers(Protocol):
@@ -51,6 +60,17 @@ class SingleCarrier:
         Shape of a symbol; a root raised cosine of roll-off 0.22 if not given.
     data : member of DATA
         Where the symbols come from; random if not given.
+    rotation : Rotation, optional
+        Angle by which each symbol is turned over the one before: ``pi/4``, ``3 pi/8``. The loop
+        holds whole turns.
+    stagger : bool
+        Whether the Q rail is late by half a symbol: offset QPSK. The constellation must be a
+        grid: any point of one rail with any of the other.
+    differential : bool
+        Whether each symbol turns the last one by the angle from point 0 to its own point: with a
+        rotation of ``pi/4``, QPSK is pi/4-DQPSK. The points must lie on one circle at equal
+        distances. Where the data of a loop do not add up to whole turns, its last symbol makes
+        up for it, which is noted; random data are drawn as phases and always close.
 
     Notes
     -----
@@ -66,11 +86,66 @@ class SingleCarrier:
     symbol_rate_hz: Annotated[Fraction, Gt(0)]
     pulse: Annotated[Any, Member(("pulse",))] = field(default_factory=_default_pulse)
     data: Annotated[Any, Member(("data",), default="random")] = field(default_factory=Random)
+    rotation: Rotation | None = None
+    stagger: bool = False
+    differential: bool = False
+
+    def __post_init__(self) -> None:
+        """Refuse what has no meaning together."""
+        for key, is_set in (("rotation", self.rotation), ("differential", self.differential)):
+            if self.stagger and is_set:
+                raise QuantityError(
+                    problem=f"stagger is asked together with {key}",
+                    allowed="one of the two: a staggered constellation stays where it is",
+                    remedy=f"Remove stagger or {key}.",
+                    key="stagger",
+                )
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
-        """Return the shortest loop: the fewest samples that hold whole symbols."""
-        n_samples, n_symbols = samples_per(self.symbol_rate_hz, sample_rate_hz)
-        return Cycle(n_samples=n_samples, n_symbols=n_symbols)
+        """Return the shortest loop: the fewest samples that hold whole symbols and turns."""
+        return self._whole(sample_rate_hz, 1 if self.rotation is None else self.rotation.period)
+
+    def data_cycle(
+        self, sample_rate_hz: Fraction, path: str, folder: Path = Path()
+    ) -> Cycle | None:
+        """Return the shortest loop that also holds whole periods of the data.
+
+        Parameters
+        ----------
+        sample_rate_hz : Fraction
+            Hz.
+        path : str
+            Path in the recipe, for messages.
+        folder : Path
+            What the paths of a recipe are relative to.
+
+        Returns
+        -------
+        Cycle or None
+            None for data without a period.
+
+        Raises
+        ------
+        RecipeError
+            Data from a file that cannot be read.
+        """
+        site = Site(sample_rate_hz=sample_rate_hz, n_samples=1, seed=0, label=path, path=path)
+        try:
+            period = self.data.period_bits(folder)
+        except QuantityError as error:
+            raise _at(site, "data.path", error) from error
+        if period is None:
+            return None
+        n_symbols = period // math.gcd(period, self.constellation.n_bits)
+        return self._whole(
+            sample_rate_hz, math.lcm(n_symbols, self.rotation.period if self.rotation else 1)
+        )
+
+    def _whole(self, sample_rate_hz: Fraction, multiple: int) -> Cycle:
+        """Return the shortest loop of so many symbols or a multiple of them."""
+        a, b = samples_per(self.symbol_rate_hz, sample_rate_hz)
+        n_symbols = math.lcm(b, multiple)
+        return Cycle(n_samples=n_symbols // b * a, n_symbols=n_symbols)
 
     def build(self, site: Site) -> ShapedCarrier:
         """Return the carrier, cyclic over the loop of the site, of unit mean power.
@@ -78,27 +153,73 @@ class SingleCarrier:
         Raises
         ------
         RecipeError
-            The pulse occupies more than the sample rate, or is given by taps that are all zero or
-            that the sample rate, no whole multiple of the symbol rate, falls between.
+            The pulse occupies more than the sample rate, or is given by taps that are all zero,
+            that cannot be read, or that the sample rate, no whole multiple of the symbol rate,
+            falls between; a constellation that cannot be staggered or encoded differentially.
         """
-        n_samples, n_symbols = samples_per(self.symbol_rate_hz, site.sample_rate_hz)
+        a, b = samples_per(self.symbol_rate_hz, site.sample_rate_hz)
         settings: PulseSettings = self.pulse
-        pulse = settings.design(Fraction(n_samples, n_symbols))
+        if isinstance(settings, Taps):
+            settings = _with_taps(settings, site)
+        pulse = settings.design(Fraction(a, b))
+        rate_of_axis = self.symbol_rate_hz * (2 if self.stagger else 1)
+        n_samples, n_symbols = samples_per(rate_of_axis, site.sample_rate_hz)
         self._check(site, pulse, n_symbols)
-        period = site.n_samples * n_symbols // n_samples
-        ideal = Symbols(
-            sample_rate_hz=self.symbol_rate_hz,
-            n_samples=period,
-            constellation=self.constellation,
-            numbers=self.data.bind(site, n_bits=self.constellation.n_bits, period=period),
-        )
+        ideal = self._symbols(site, site.n_samples * b // a)
+        inputs: tuple[Signal, ...] = (ideal,)
+        if self.stagger:
+            pulse = Stretched.of(pulse)
+            period = 2 * ideal.n_samples
+            inputs = (Rails(sample_rate_hz=rate_of_axis, n_samples=period, inputs=inputs),)
         return ShapedCarrier(
             sample_rate_hz=site.sample_rate_hz,
             n_samples=site.n_samples,
-            step=_shaper(pulse, n_samples, n_symbols, period).step,
-            inputs=(ideal,),
+            step=_shaper(pulse, n_samples, n_symbols, inputs[0].n_samples).step,
+            inputs=inputs,
             pulse=pulse,
             ratio=(n_samples, n_symbols),
+        )
+
+    def _symbols(self, site: Site, period: int) -> Symbols:
+        """Return the points sent, encoded and turned."""
+        points = self.constellation.points
+        if self.stagger and not _is_grid(points):
+            raise site.error(
+                key="stagger",
+                problem=f"{self.constellation.name} is not made of two independent rails",
+                allowed="qpsk, square QAM, or a grid of own points with two rails of equal power",
+                remedy="Choose such a constellation, or remove stagger.",
+            )
+        turns = self.rotation.period if self.rotation else 1
+        if turns * points.size > LARGEST_TABLE:
+            raise site.error(
+                key="rotation",
+                problem=f"{turns} turns of {points.size} points",
+                allowed=f"up to {LARGEST_TABLE} turned points",
+                remedy="Choose a rotation that comes round sooner.",
+            )
+        n_bits = self.constellation.n_bits
+        numbers: SymbolNumbers = self.data.bind(site, n_bits=n_bits, period=period)
+        constellation = self.constellation
+        if self.differential:
+            steps = phase_steps(points)
+            if steps is None:
+                raise site.error(
+                    key="differential",
+                    problem=f"{self.constellation.name} does not turn a phase by equal steps",
+                    allowed="phase-shift keying: points on one circle at equal distances",
+                    remedy="Choose bpsk, qpsk or 8psk, or remove differential.",
+                )
+            circle = points[0] * np.exp(2j * np.pi * np.arange(points.size) / points.size)
+            constellation = Constellation("points", circle)
+            if not isinstance(self.data, Random):
+                numbers = _integrated(site, numbers, steps, period)
+        return Symbols(
+            sample_rate_hz=self.symbol_rate_hz,
+            n_samples=period,
+            constellation=constellation,
+            numbers=numbers,
+            rotation=self.rotation,
         )
 
     def _check(self, site: Site, pulse: Pulse, n_symbols: int) -> None:
@@ -107,8 +228,8 @@ class SingleCarrier:
             raise site.error(
                 key="pulse.taps",
                 problem=f"{float(rate / symbol_rate):.10g} samples a symbol fall between the taps",
-                allowed="sample rates that are whole multiples of the symbol rate, "
-                f"{format_hz(symbol_rate)}",
+                allowed=f"sample rates that are {'even' if self.stagger else 'whole'} multiples "
+                f"of the symbol rate, {format_hz(symbol_rate)}",
                 remedy="Choose such a sample rate, or a pulse with a formula.",
             )
         values = pulse.on_lattice(math.floor(rate / symbol_rate)) if pulse.is_sampled else None
@@ -138,6 +259,45 @@ class SingleCarrier:
             site.notes.append(Note(kind="warning", where=f"{site.path}.pulse", text=text))
 
 
+def _at(site: Site, key: str, error: QuantityError) -> Exception:
+    return site.error(key=key, problem=error.problem, allowed=error.allowed, remedy=error.remedy)
+
+
+def _with_taps(settings: Taps, site: Site) -> Taps:
+    """Return taps that stand in the settings, read from their file if need be."""
+    if settings.file is None:
+        return settings
+    try:
+        taps = read_numbers(site.folder / settings.file, most=MOST_TAPS)
+    except QuantityError as error:
+        raise _at(site, "pulse.file", error) from error
+    return replace(settings, taps=taps, file=None)
+
+
+def _is_grid(points: NDArray[np.complex128]) -> bool:
+    """Return whether points pair every level of one rail with every one of the other."""
+    places = points.round(9)
+    levels = np.unique(places.real), np.unique(places.imag)
+    is_full = levels[0].size * levels[1].size == np.unique(places).size == points.size
+    is_even = abs(float(np.mean(points.real**2) - np.mean(points.imag**2))) < 1e-9
+    return is_full and is_even
+
+
+def _integrated(
+    site: Site, numbers: SymbolNumbers, steps: NDArray[np.uint16], period: int
+) -> SymbolNumbers:
+    """Return the phases that data turn to, with a note where the last symbol closes the loop."""
+    states = integrate(numbers, steps, period)
+    if states.residue:
+        text = (
+            f"the data of the loop do not add up to whole turns: its last symbol turns by "
+            f"{states.residue}/{steps.size} of a turn more than its data say."
+        )
+        where = f"{site.path}.differential"
+        site.notes.append(Note(kind="warning", where=where, text=text))
+    return states
+
+
 @dataclass(frozen=True, eq=False, kw_only=True)
 class Symbols(Signal):
     """The points sent, one sample a symbol: the reference of an EVM.
@@ -148,14 +308,54 @@ class Symbols(Signal):
         Points, of unit mean power.
     numbers : SymbolNumbers
         Which of them.
+    rotation : Rotation, optional
+        Angle from symbol to symbol; symbol 0 is not turned.
     """
 
     constellation: Constellation
     numbers: SymbolNumbers
+    rotation: Rotation | None = None
+
+    @cached_property
+    def turned(self) -> tuple[Samples, NDArray[np.intp]]:
+        """Points after each turn of the rotation, one after the other, and where each starts."""
+        turns = np.ones(1) if self.rotation is None else self.rotation.factors
+        points = self.constellation.points
+        table = (turns[:, None] * points).astype(np.complex64)
+        return table.ravel(), np.arange(turns.size) * points.size
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Return the points of symbols ``[start, stop)``."""
-        return self.constellation.wide.take(self.numbers.words(start, stop - start))
+        words = self.numbers.words(start, stop - start)
+        if self.rotation is None:
+            return self.constellation.wide.take(words)
+        table, origins = self.turned
+        places = repeat(origins, start, stop)
+        places += words & words.dtype.type(self.constellation.points.size - 1)
+        return table.take(places)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class Rails(Signal):
+    """The rails of symbols in turn, two samples a symbol: I, then Q half a symbol later.
+
+    Notes
+    -----
+    Scaled by ``sqrt(2)``: each rail of a symbol of unit power has power 1/2.
+    """
+
+    def needs(self, start: int, stop: int) -> tuple[Range, ...]:
+        """Return the range of symbols that hold these rails."""
+        return ((start // 2, -(-stop // 2)),)
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Return rails ``[start, stop)``."""
+        symbols = arrays[0]
+        rails = np.zeros(2 * symbols.size, np.complex64)
+        rails.real[0::2] = symbols.real
+        rails.imag[1::2] = symbols.imag
+        rails *= np.float32(math.sqrt(2.0))
+        return rails[start % 2 : start % 2 + stop - start]
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -167,7 +367,7 @@ class ShapedCarrier(Signal):
     pulse : Pulse
         Shape of a symbol, on any scale.
     ratio : (int, int)
-        Samples and symbols of the shortest cycle.
+        Samples and symbols (half symbols where staggered) of the shortest cycle.
     """
 
     pulse: Pulse
@@ -176,12 +376,13 @@ class ShapedCarrier(Signal):
     @property
     def ideal(self) -> Signal:
         """Return the symbols sent, a signal on the symbol axis."""
-        return self.inputs[0]
+        source = self.inputs[0]
+        return source.inputs[0] if isinstance(source, Rails) else source
 
     @cached_property
     def shaper(self) -> Shaper:
         """Return what turns ranges of symbols into ranges of samples; made when first used."""
-        return _shaper(self.pulse, *self.ratio, self.ideal.n_samples)
+        return _shaper(self.pulse, *self.ratio, self.inputs[0].n_samples)
 
     def __getstate__(self) -> dict[str, Any]:
         """Leave out what can be made again, so that a worker gets a small description."""

@@ -17,7 +17,7 @@ class Rectangular:
 
     def design(self, samples_per_symbol: Fraction) -> Pulse:
         """Return the pulse."""
-        return Hold(span_symbols=1)
+        return Hold(span_symbols=1, is_smooth=False)
 
 
 @dataclass(frozen=True, kw_only=True)

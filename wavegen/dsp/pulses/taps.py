@@ -11,7 +11,10 @@ import numpy as np
 from annotated_types import MaxLen, MinLen
 from numpy.typing import NDArray
 
+from wavegen.core.units import QuantityError
 from wavegen.dsp.pulse import Pulse
+
+MOST_TAPS = 1 << 16
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -20,13 +23,29 @@ class Taps:
 
     Parameters
     ----------
-    taps : tuple of float
+    taps : tuple of float, optional
         Samples of the pulse at the output sample rate, on any scale (the energy is made 1), not
         all zero. The middle one, of two middle ones the earlier, falls on its symbol's instant.
         The sample rate must be a whole multiple of the symbol rate.
+    file : str, optional
+        Text file that holds them instead, its path relative to the recipe: decimal numbers with
+        blanks, line ends or commas between them.
     """
 
-    taps: Annotated[tuple[float, ...], MinLen(1), MaxLen(1 << 16)]
+    taps: Annotated[tuple[float, ...], MinLen(1), MaxLen(MOST_TAPS)] | None = None
+    file: str | None = None
+
+    def __post_init__(self) -> None:
+        """Refuse neither and both."""
+        if (self.taps is None) == (self.file is None):
+            raise QuantityError(
+                problem="neither taps nor a file is given"
+                if self.taps is None
+                else "both taps and a file are given",
+                allowed="one of the keys taps and file",
+                remedy="Write taps: [0.5, 1, 0.5], or file: taps.txt.",
+                key="taps",
+            )
 
     def design(self, samples_per_symbol: Fraction) -> Pulse:
         """Return the pulse.
@@ -35,7 +54,15 @@ class Taps:
         ----------
         samples_per_symbol : Fraction
             A whole number; the caller refuses others, see ``Pulse.is_sampled``.
+
+        Raises
+        ------
+        ValueError
+            Taps in a file that the caller has not read.
         """
+        if self.taps is None:
+            message = "taps in a file are read before a pulse is designed"
+            raise ValueError(message)
         per_symbol = math.floor(samples_per_symbol)
         longest = len(self.taps) - (len(self.taps) - 1) // 2
         return SampledPulse(

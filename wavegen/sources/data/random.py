@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from pathlib import Path
 
 import numpy as np
 from numpy.typing import NDArray
@@ -57,6 +58,10 @@ class Random:
     """
 
     share: str | None = None
+
+    def period_bits(self, folder: Path = Path()) -> int | None:
+        """Return None: random data have no period of their own."""
+        return None
 
     def bind(self, site: Site, *, n_bits: int, period: int, label: str = "") -> RandomSymbols:
         """Return the symbols of one stream.

@@ -8,6 +8,8 @@ MAPPINGS = Registry(
         "bpsk": "wavegen.sources.mapping.psk:bpsk",
         "qpsk": "wavegen.sources.mapping.psk:qpsk",
         "8psk": "wavegen.sources.mapping.psk:psk8",
+        "16apsk": "wavegen.sources.mapping.apsk:apsk16",
+        "32apsk": "wavegen.sources.mapping.apsk:apsk32",
         "16qam": "wavegen.sources.mapping.square_qam:qam16",
         "64qam": "wavegen.sources.mapping.square_qam:qam64",
         "256qam": "wavegen.sources.mapping.square_qam:qam256",

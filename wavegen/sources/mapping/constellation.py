@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from dataclasses import dataclass
 from functools import cached_property
+from importlib import import_module
 from numbers import Real
 from typing import Any, Self
 
@@ -30,11 +32,13 @@ class Constellation:
     points : complex128 array, shape (order,)
         Entry ``i`` is the point of the symbol whose bits, first bit most significant, read
         ``i``. Unit mean power.
-
+    notation : object
+        What a recipe writes for it, where that is neither the name nor the list of points.
     """
 
     name: str
     points: NDArray[np.complex128]
+    notation: object = None
 
     def __eq__(self, other: object) -> bool:
         """Return whether name and points are the same."""
@@ -47,8 +51,10 @@ class Constellation:
         return hash((self.name, self.points.size))
 
     def text(self) -> object:
-        """Return the value as a recipe writes it: the name, or the list of points."""
-        if self.name in MAPPINGS:
+        """Return the value as a recipe writes it: the name, the rings, or the list of points."""
+        if self.notation is not None:
+            return self.notation
+        if self.name.partition(" ")[0] in MAPPINGS:
             return self.name
         return [[float(point.real), float(point.imag)] for point in self.points]
 
@@ -65,16 +71,18 @@ class Constellation:
 
     def __getstate__(self) -> dict[str, Any]:
         """Leave out the wide table, which is made again: workers get a small description."""
-        return {"name": self.name, "points": self.points}
+        return {"name": self.name, "points": self.points, "notation": self.notation}
 
     @classmethod
     def parse(cls, value: object) -> Self:
-        """Read a name such as ``64qam``, or a list of points ``[[re, im], ...]``.
+        """Read a name such as ``64qam``, rings, or a list of points ``[[re, im], ...]``.
 
         Parameters
         ----------
         value : object
-            Text or list as YAML gives it.
+            Text, mapping or list as YAML gives it: ``16apsk 2/3`` names a code rate too,
+            ``{rings: [4, 12], ratios: [2.85], phases: [45 deg, 15 deg]}`` is read by
+            :func:`wavegen.sources.mapping.apsk.from_rings`.
 
         Returns
         -------
@@ -85,15 +93,23 @@ class Constellation:
         QuantityError
             Unknown name, or points that make no constellation.
         """
+        apsk = import_module("wavegen.sources.mapping.apsk")  # it imports this module
+        made: Self
+        if isinstance(value, Mapping):
+            made = apsk.from_rings(value)
+            return made
         if isinstance(value, str):
             if value not in MAPPINGS:
+                rated: Self | None = apsk.at_code_rate(value)
+                if rated is not None:
+                    return rated
                 guess = nearest(value, MAPPINGS)
                 raise QuantityError(
                     problem=f"unknown constellation {value!r}",
-                    allowed=", ".join(MAPPINGS) + ", or a list of points",
+                    allowed=", ".join(MAPPINGS) + ", rings, or a list of points",
                     remedy=f"Did you mean {guess}?" if guess else "Choose one of these.",
                 )
-            made: Self = MAPPINGS.load(value)()
+            made = MAPPINGS.load(value)()
             return made
         return cls.of_points(value)
 
