@@ -13,7 +13,7 @@ from wavegen.production.export import Written, brief, export
 
 
 @pytest.fixture
-def write(lab, tmp_path, monkeypatch):
+def write(tmp_path, monkeypatch):
     def run(signal, datatype=CI16_LE, gain=0.25, workers=1, strip=1 << 19, **options):
         monkeypatch.setattr(room, "STRIP_SAMPLES", strip)
         facts = FileFacts(

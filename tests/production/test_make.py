@@ -55,13 +55,15 @@ def short_strips(monkeypatch):
 
 
 @pytest.mark.parametrize("workers", [1, 2, 5])
-def test_threads_do_not_change_a_byte(lab, both, reference, tmp_path, workers, short_strips):
+@pytest.mark.usefixtures("short_strips")
+def test_threads_do_not_change_a_byte(lab, both, reference, tmp_path, workers):
     made = lab.make(both, tmp_path, workers=workers)
     assert hashes(made) == hashes(reference)
     assert made.document == reference.document
 
 
-def test_processes_do_not_change_a_byte(lab, both, reference, tmp_path, short_strips):
+@pytest.mark.usefixtures("short_strips")
+def test_processes_do_not_change_a_byte(lab, both, reference, tmp_path):
     context = multiprocessing.get_context("spawn")
     with ProcessPoolExecutor(2, mp_context=context) as executor:
         for workers in (1, 2, 5):
@@ -93,7 +95,7 @@ def test_existing_files_are_kept_unless_told(lab, tmp_path):
 @pytest.mark.parametrize("task", ["rendering", "writing case.wav"])
 @pytest.mark.parametrize("error", [KeyboardInterrupt, RuntimeError])
 def test_an_interruption_leaves_nothing_behind(lab, both, tmp_path, task, error):
-    def stop(name, done, total):
+    def stop(name, done, _total):
         if name == task and done:
             raise error
 
@@ -106,7 +108,7 @@ def test_an_interruption_while_overwriting_keeps_what_was_there(lab, tmp_path):
     made = lab.make(lab.SINGLE, tmp_path)
     before = [path.read_bytes() for path in made.files]
 
-    def stop(name, done, total):
+    def stop(name, _done, _total):
         if name.startswith("writing"):
             raise KeyboardInterrupt
 
@@ -123,10 +125,10 @@ def test_a_writer_that_is_interrupted_leaves_nothing_behind(lab, tmp_path, monke
     def writer(self, drafts, facts):
         made = plain(self, drafts, facts)
 
-        def write(codes):
+        def write(_self, _codes):
             raise KeyboardInterrupt
 
-        monkeypatch.setattr(type(made), "write", lambda _, codes: write(codes))
+        monkeypatch.setattr(type(made), "write", write)
         return made
 
     monkeypatch.setattr(form, "writer", writer)
@@ -145,7 +147,7 @@ def test_a_disk_that_is_too_small_is_told_before_the_work(lab, tmp_path, monkeyp
 
 
 def test_a_disk_that_fills_up_meanwhile(lab, tmp_path, monkeypatch):
-    def full(self, samples):
+    def full(_self, _samples):
         raise FileError(
             where="x", problem="no space", allowed="space", remedy="Free some disk."
         ) from OSError(errno.ENOSPC, "No space left on device")

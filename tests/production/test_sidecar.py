@@ -91,7 +91,7 @@ def test_the_top_level_repeats_the_first_file(made, source):
         assert document[key] == first[key], key
 
 
-def test_what_was_made_and_how(made, lab):
+def test_what_was_made_and_how(made):
     document = stored(made["SINGLE"])
     text = document["recipe"]["text"]
     assert hashlib.sha256(text.encode()).hexdigest() == document["recipe"]["sha256"]

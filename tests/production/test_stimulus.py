@@ -49,7 +49,10 @@ def test_a_broken_sidecar_of_another_file_does_not_matter(made, recording, text)
         lambda text: text.replace('"version": 1', '"version": 2'),
         lambda text: text.replace('"n_samples": 8000', '"n_samples": "8000"', 1),
         lambda text: json.dumps(["case.sigmf-data", text]),
-        lambda text: "[" * 100_000 + '"case.sigmf-data"',
+        lambda _: "[" * 100_000 + '"case.sigmf-data"',
+        lambda _: "[" * 900 + '"case.sigmf-data"' + "]" * 900,
+        lambda text: text.replace('"per_db": [', '"per_db": [-1.0, '),
+        lambda text: text.replace('"per_db": [', '"per_db": ["0", '),
     ],
 )
 def test_a_broken_sidecar_of_this_file_is_told(made, recording, change):
@@ -69,8 +72,8 @@ def test_a_sidecar_that_only_speaks_of_the_file_is_not_its_own(made, recording):
     assert sidecar_of(recording) is None
 
 
-def test_a_sidecar_that_may_not_be_read_says_nothing(made, recording, monkeypatch):
-    def refuse(self):
+def test_a_sidecar_that_may_not_be_read_says_nothing(recording, monkeypatch):
+    def refuse(_self):
         raise PermissionError(13, "Permission denied")
 
     monkeypatch.setattr(Path, "read_bytes", refuse)
@@ -89,7 +92,7 @@ def test_names_with_quotes_are_found(lab, tmp_path):
     assert sidecar_of(open_recording(made.files[0])) is not None
 
 
-def test_a_file_of_another_length_or_rate_is_not_the_sidecars_loop(made, recording):
+def test_a_file_of_another_length_or_rate_is_not_the_sidecars_loop(recording):
     document = sidecar_of(recording)
     assert mismatch(recording, document) is None
     assert "8000 samples" in mismatch(replace(recording, n_samples=7999), document)

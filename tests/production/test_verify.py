@@ -97,7 +97,7 @@ def test_one_file_that_differs_is_enough():
     assert worst_verdict(None, [good]) == "undecided"
 
 
-def test_law_of_takes_only_what_holds_for_every_loop(lab, monkeypatch):
+def test_law_of_takes_only_what_holds_for_every_loop(lab):
     assert law_of(lab.prepared(lab.CARRIER)).holds == "every loop"
     assert law_of(lab.prepared(lab.SINGLE)) is None
     assert law_of(lab.prepared(lab.NOISE)) is None

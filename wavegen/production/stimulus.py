@@ -77,6 +77,32 @@ def mismatch(recording: Recording, sidecar: dict[str, Any]) -> str | None:
     return None
 
 
+def _fault_of(document: Any) -> str:
+    """Return how a document is no sidecar, empty if it is one."""
+    from jsonschema import Draft202012Validator
+
+    from wavegen.production.sidecar import schema
+
+    fault = next(Draft202012Validator(schema()).iter_errors(_condensed(document)), None)
+    if fault is None:
+        return ""
+    return f"is no {FORMAT} sidecar: {fault.json_path}: {fault.message[:120]}"
+
+
+def _condensed(value: Any) -> Any:
+    """Return JSON values with the extremes of each list of numbers in place of the list.
+
+    The schema bounds numbers singly, and a curve has thousands.
+    """
+    if isinstance(value, dict):
+        return {key: _condensed(item) for key, item in value.items()}
+    if not isinstance(value, list):
+        return value
+    if len(value) > 2 and all(type(item) in {int, float} for item in value):
+        return [min(value), max(value)]
+    return [_condensed(item) for item in value]
+
+
 def read_sidecar(path: Path) -> dict[str, Any]:
     """Read a sidecar.
 
@@ -85,24 +111,16 @@ def read_sidecar(path: Path) -> dict[str, Any]:
     FileError
         Too large, not JSON, or not of this format.
     """
-    problem = ""
-    document: Any = None
     try:
         if path.stat().st_size > LARGEST_BYTES:
             problem = f"is larger than {LARGEST_BYTES // 1_000_000} MB"
         else:
             document = json.loads(path.read_text(encoding="utf-8"))
+            problem = _fault_of(document)
     except (OSError, ValueError, RecursionError) as error:
         problem = f"cannot be read: {error}"
     if not problem:
-        from jsonschema import Draft202012Validator
-
-        from wavegen.production.sidecar import schema
-
-        fault = next(Draft202012Validator(schema()).iter_errors(document), None)
-        if fault is None:
-            return dict(document)
-        problem = f"is no {FORMAT} sidecar: {fault.json_path}: {fault.message[:120]}"
+        return dict(document)
     raise FileError(
         where=str(path),
         problem=problem,

@@ -1,0 +1,127 @@
+import pytest
+
+from wavegen.reports.tables import (
+    bench_table,
+    file_table,
+    fixed,
+    law_words,
+    length_words,
+    level_table,
+    percent,
+    seam_words,
+    summary_table,
+)
+
+LEVELS = [
+    {"probability": 0.1, "level_db": 3.6221, "resolved": True},
+    {"probability": 1e-3, "level_db": 8.3, "resolved": False},
+    {"probability": 1e-6, "level_db": 9.0, "resolved": False},
+]
+FIGURES = {
+    "sample_rate_hz": 3.84e6,
+    "duration_s": 0.002,
+    "n_samples": 7680,
+    "mean_dbfs": -10.0,
+    "peak_dbfs": -1.5,
+    "peak_between_samples_dbfs": -1.0,
+    "papr_db": 8.5,
+    "papr_between_samples_db": 9.0,
+    "n_zeros": 0,
+    "levels": LEVELS,
+}
+
+
+def cells(document, **options):
+    return dict(summary_table(FIGURES | document, title="x").rows, **options)
+
+
+def test_the_main_figures_with_units():
+    assert cells({}) == {
+        "sample rate": "3.84 MHz",
+        "length": "2 ms, 7680 samples",
+        "mean": "-10.00 dBFS",
+        "peak at samples": "-1.50 dBFS",
+        "peak between samples": "-1.00 dBFS",
+        "PAPR at samples": "8.50 dB",
+        "PAPR between samples": "9.00 dB",
+    }
+
+
+def test_dbm_never_without_the_peak_envelope_power():
+    rows = summary_table(
+        FIGURES | {"mean_dbm": -20.0, "peak_envelope_dbm": -11.0, "n_zeros": 3}, title="x"
+    ).rows
+    assert ("mean", "-20.00 dBm") in rows
+    assert rows[rows.index(("mean", "-20.00 dBm")) + 1] == ("peak envelope power", "-11.00 dBm")
+    assert ("exact zeros", "3 samples") in rows
+
+
+@pytest.mark.parametrize(
+    ("seam", "words"),
+    [
+        ({"is_clean": True, "at_seam_dbc": -80.04, "n_stretches": 20}, "clean, -80.0 dBc"),
+        ({"is_clean": False, "at_seam_dbc": -30.0, "n_stretches": 20}, "BROKEN, -30.0 dBc"),
+        ({"is_clean": True, "at_seam_dbc": -30.0, "n_stretches": 0}, "not tested"),
+    ],
+)
+def test_how_a_loop_closes(seam, words):
+    assert words in seam_words(seam)
+    assert words in cells({"loop": {"seam": seam}})["loop seam"]
+    assert words in cells({"seam": seam})["loop seam"]
+
+
+def test_levels_of_a_loop_are_exact_and_those_of_a_recording_need_samples():
+    loop = level_table(FIGURES | {"law": None}).rows
+    assert loop == (
+        ("10 %", "3.62 dB", "3.62 dB"),
+        ("0.1 %", "8.30 dB", "8.39 dB"),
+        ("0.0001 %", "loop too short", "11.40 dB"),
+    )
+    recording = level_table(FIGURES | {"law": None, "is": "a recording"}).rows
+    assert [row[1] for row in recording] == ["3.62 dB", "too few samples", "too few samples"]
+
+
+def test_a_level_that_does_not_exist():
+    levels = [{"probability": 0.1, "level_db": None, "resolved": True}]
+    assert level_table(FIGURES | {"levels": levels}).rows[0][1] == "too few samples"
+
+
+def test_the_law_has_a_column():
+    law = {"levels": [{"probability": row["probability"], "level_db": 1.0} for row in LEVELS]}
+    table = level_table(FIGURES | {"law": law})
+    assert table.headings[-1] == "law"
+    assert {row[-1] for row in table.rows} == {"1.00 dB"}
+
+
+@pytest.mark.parametrize(
+    ("verdict", "words"),
+    [("agrees", "agrees with"), ("differs", "DIFFERS FROM"), ("undecided", "not enough")],
+)
+def test_verdicts(verdict, words):
+    said = law_words({"name": "8 tones", "verdict": verdict, "n_instants": 400})
+    assert "8 tones" in said
+    assert words in said
+    assert ("400 different instants" in said) == (verdict != "undecided")
+
+
+def test_the_bench():
+    assert bench_table({"bench": None}) is None
+    place = {"name": "amp", "average_dbm": -10.0, "peak_envelope_dbm": -1.0}
+    limits = {"average_limit_dbm": 3.5, "peak_limit_dbm": 10.0}
+    table = bench_table({"bench": {"path": [place, place | limits]}})
+    assert table.headings[1:3] == ("average", "peak envelope")
+    assert table.rows == (
+        ("amp", "-10.00 dBm", "-1.00 dBm", "none given"),
+        ("amp", "-10.00 dBm", "-1.00 dBm", "average 3.5 dBm, peak 10 dBm"),
+    )
+
+
+def test_files_with_their_formats_once():
+    item = {"name": "a.x", "all_names": ["a.x", "a.y"], "format": "sigmf", "datatype": "ci8"}
+    assert file_table({"files": [item]}).rows == (("a.x", "sigmf ci8"), ("a.y", ""))
+
+
+def test_words():
+    assert [percent(p) for p in (0.1, 1e-6, 0.05)] == ["10 %", "0.0001 %", "5 %"]
+    assert fixed(-0.004, "dB") == "0.00 dB"
+    assert length_words(1.0, 2) == "1 s, 2 samples"
