@@ -8,13 +8,18 @@ from typing import Any
 from wavegen.core.signal import Signal
 from wavegen.core.site import Site
 from wavegen.core.timespan import TimeSpan
+from wavegen.dsp.pulses.half_sine import HalfSine
+from wavegen.dsp.pulses.linearised_gaussian import LinearisedGaussian
 from wavegen.dsp.pulses.rectangular import Rectangular
 from wavegen.sources.carrier import Carrier
+from wavegen.sources.data.pattern import BitText, Pattern
+from wavegen.sources.data.prbs import PseudoRandom
 from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.noise import Noise
 from wavegen.sources.ofdm import Group, Ofdm, Pilots
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.phase_modulation import PhaseModulation
+from wavegen.sources.rotation import Rotation
 from wavegen.sources.single_carrier import SingleCarrier
 from wavegen.sources.subcarriers import IndexSet, PilotValues
 from wavegen.sources.tones import Notch, Tone, Tones
@@ -135,6 +140,42 @@ SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
                 constellation=Constellation.parse("qpsk"), symbol_rate_hz=Fraction(250_000)
             ),
             least_samples=40,
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("8psk"),
+                symbol_rate_hz=Fraction(1_000_000 * 13, 48),
+                pulse=LinearisedGaussian(),
+                rotation=Rotation.parse("3 pi/8"),
+            )
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("qpsk"),
+                symbol_rate_hz=Fraction(2_000_000, 7),
+                pulse=HalfSine(),
+                stagger=True,
+            ),
+            is_exact=True,
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("qpsk"),
+                symbol_rate_hz=Fraction(250_000),
+                data=PseudoRandom(sequence="pn15"),
+                rotation=Rotation.parse("pi/4"),
+                differential=True,
+            ),
+            is_random=False,
+        ),
+        SourceExample(
+            settings=SingleCarrier(
+                constellation=Constellation.parse("16apsk 2/3"),
+                symbol_rate_hz=Fraction(1_000_000 * 13, 48),
+                data=Pattern(bits=BitText.parse("0x0 1234 5678 9ABC DEF")),
+            ),
+            is_random=False,
+            least_samples=97,
         ),
     ),
     "tones": (

@@ -14,6 +14,9 @@ from wavegen.dsp.pulse_shaping import (
     RowShaper,
     plan_shaping,
 )
+from wavegen.dsp.pulses.gaussian import Gaussian
+from wavegen.dsp.pulses.half_sine import HalfSine
+from wavegen.dsp.pulses.linearised_gaussian import LinearisedGaussian
 from wavegen.dsp.pulses.raised_cosine import RaisedCosine
 from wavegen.dsp.pulses.rectangular import Rectangular
 from wavegen.dsp.pulses.root_raised_cosine import RootRaisedCosine
@@ -41,6 +44,13 @@ CASES = [
     (Taps(taps=(1.0, -2.0, 3.0, 0.5, 0.25)), Fraction(2), RowShaper),
     (Taps(taps=(1.0, 2.0, 2.0, 1.0)), Fraction(4), RowShaper),
     (Taps(taps=(1.0, 0.5)), Fraction(1), RowShaper),
+    (HalfSine(), Fraction(4), RowShaper),
+    (HalfSine(), Fraction(7, 3), PolynomialShaper),
+    (Gaussian(bt=0.3), Fraction(5, 2), RowShaper),
+    (Gaussian(bt=1.0, symbols="impulses"), Fraction(1000003, 700000), PolynomialShaper),
+    (Gaussian(bt=1.0), Fraction(1000003, 700000), PolynomialShaper),
+    (LinearisedGaussian(), Fraction(4), RowShaper),
+    (LinearisedGaussian(), Fraction(1000003, 300000), PolynomialShaper),
 ]
 IDS = [f"{type(settings).__name__}-{ratio}" for settings, ratio, _ in CASES]
 
@@ -154,3 +164,16 @@ def test_folding_below_the_band_is_that_of_the_samples():
     wanted = direct(pulse, ratio, source, 0, 3000)
     error = np.mean(np.abs(got - wanted) ** 2) / np.mean(np.abs(wanted) ** 2)
     assert 10 * np.log10(error) < -120
+
+
+@pytest.mark.parametrize("ratio", [(4, 1), (1234567, 500000)])
+def test_a_given_gain_replaces_unit_power(ratio):
+    pulse = RootRaisedCosine(roll_off=0.3).design(Fraction(*ratio))
+    options = {"n_samples": ratio[0], "n_symbols": ratio[1], "period_symbols": 10**6}
+    usual, twice = plan_shaping(pulse, **options), plan_shaping(pulse, gain=2.0, **options)
+    low, high = usual.needs(0, 500)
+    symbols = np.exp(2j * np.arange(high - low) ** 2).astype(np.complex64)
+    factor = 2 * np.sqrt(mean_energy(pulse, per_symbol=ratio[0], period_symbols=10**6))
+    assert twice.shape(0, 500, symbols) == pytest.approx(
+        factor * usual.shape(0, 500, symbols), abs=1e-5
+    )
