@@ -3,7 +3,7 @@ import pytest
 
 from wavegen.core.units import QuantityError
 from wavegen.sources.mapping.constellation import Constellation
-from wavegen.sources.subcarriers import IndexSet, PilotValues
+from wavegen.sources.subcarriers import IndexSet, PilotValues, SymbolSet
 
 
 @pytest.mark.parametrize(
@@ -31,6 +31,23 @@ def test_index_sets_are_read_in_their_order(value, indices) -> None:
 def test_what_is_no_index_set_is_refused(value) -> None:
     with pytest.raises(QuantityError):
         IndexSet.parse(value)
+
+
+@pytest.mark.parametrize(
+    ("value", "numbers"),
+    [("0..13 by 2, 3", (0, 2, 4, 6, 8, 10, 12, 3)), (5, (5,)), ([0, "4..5"], (0, 4, 5))],
+)
+def test_symbols_are_read_in_the_same_notation(value, numbers) -> None:
+    found = SymbolSet.parse(value)
+    assert found.numbers == numbers
+    assert SymbolSet.parse(str(found)) == found
+
+
+@pytest.mark.parametrize("value", ["", "-1", "-3..2", "5..1", True, None, 1.5, "1..9999999"])
+def test_what_is_no_set_of_symbols_is_refused(value) -> None:
+    with pytest.raises(QuantityError) as caught:
+        SymbolSet.parse(value)
+    assert "subcarrier" not in caught.value.problem + caught.value.allowed + caught.value.remedy
 
 
 def test_far_indices_are_refused_before_they_are_expanded() -> None:
