@@ -16,13 +16,26 @@ from wavegen.files.datatypes import (
     CI32_LE,
     CU8,
     DATATYPES,
+    RI16_LE,
     decode,
     encode,
+    first_misfit,
     first_not_finite,
+    join_channels,
     quantised,
+    real_of,
+    takes_words,
+    word_in,
 )
 
-INTEGER = [item for item in DATATYPES.values() if item.is_integer]
+INTEGER = [item for item in DATATYPES.values() if item.is_integer and not item.is_real]
+REAL = [item for item in DATATYPES.values() if item.is_real]
+WORDS = [
+    word_in(item, bits=bits, align=align)
+    for item in (CI16_LE, CI16_BE, RI16_LE)
+    for bits in (12, 14)
+    for align in ("left", "right")
+]
 
 
 def gaussian(n, scale=0.2):
@@ -149,7 +162,7 @@ def test_codes_of_32_bits_are_rounded_to_float32():
 @pytest.mark.parametrize("datatype", DATATYPES.values(), ids=lambda item: item.name)
 def test_codes_go_where_they_are_told(datatype):
     samples = gaussian(5000)
-    out = np.empty((5000, 2), datatype.dtype)
+    out = np.empty((5000, datatype.n_rails), datatype.dtype)
     codes, _ = encode(samples, datatype, out)
     assert np.shares_memory(codes, out)
     np.testing.assert_array_equal(out, encode(samples, datatype)[0])
@@ -158,7 +171,7 @@ def test_codes_go_where_they_are_told(datatype):
 def test_no_samples():
     for datatype in DATATYPES.values():
         codes, n_saturated = encode(np.empty(0, np.complex64), datatype)
-        assert codes.shape == (0, 2)
+        assert codes.shape == (0, datatype.n_rails)
         assert n_saturated == 0
         assert decode(codes, datatype).shape == (0,)
 
@@ -167,5 +180,75 @@ def test_names_match_and_datatypes_travel():
     for name, datatype in DATATYPES.items():
         assert datatype.name == name
         assert pickle.loads(pickle.dumps(datatype)) == datatype  # noqa: S301 (our own bytes)
-        packed = 3 if datatype is CI24_LE else datatype.dtype.itemsize
-        assert datatype.bytes_per_sample == 2 * packed
+        packed = 3 if datatype.n_bits == 24 else datatype.dtype.itemsize
+        assert datatype.bytes_per_sample == datatype.n_rails * packed
+        assert datatype.container is datatype
+
+
+@pytest.mark.parametrize("datatype", REAL, ids=lambda item: item.name)
+def test_real_codes_are_those_of_the_i_rail(datatype):
+    alike = DATATYPES["c" + datatype.name[1:]]
+    assert real_of(alike) is datatype
+    samples = gaussian(40_000, scale=0.5)
+    codes, n_saturated = encode(samples, datatype)
+    wanted, n_wanted = encode(samples.real.astype(np.complex64), alike)
+    np.testing.assert_array_equal(codes, wanted[:, :1])
+    assert (codes.shape, n_saturated) == ((40_000, 1), n_wanted)
+    np.testing.assert_array_equal(decode(codes, datatype), decode(wanted, alike).real)
+    if datatype.is_integer:
+        samples[35_000] = np.nan
+        with pytest.raises(SignalError, match="35000"):
+            encode(samples, datatype)
+
+
+@pytest.mark.parametrize("word", WORDS, ids=lambda item: item.label)
+def test_words_in_their_containers(word):
+    samples = gaussian(40_000, scale=0.5)
+    codes, n_saturated = encode(samples, word)
+    rails = np.stack([samples.real, samples.imag][: word.n_rails], axis=1).astype(float)
+    low, high = -(2 ** (word.n_bits - 1)), 2 ** (word.n_bits - 1) - 1
+    rounded = np.rint(rails * 2 ** (word.n_bits - 1))
+    plain = np.clip(rounded, low, high)
+    step = 2 ** (16 - word.n_bits) if word.align == "left" else 1
+    np.testing.assert_array_equal(codes, plain * step)
+    assert n_saturated == np.count_nonzero(rounded != plain) > 100
+    assert first_misfit(codes, word) is None
+    read = decode(codes, word)
+    np.testing.assert_array_equal(read.real, plain[:, 0] / 2 ** (word.n_bits - 1))
+    back, _ = encode(read, word)
+    np.testing.assert_array_equal(back, codes)
+    assert (word.container, word.bytes_per_sample) == (
+        DATATYPES[word.name],
+        DATATYPES[word.name].bytes_per_sample,
+    )
+    assert pickle.loads(pickle.dumps(word)) == word  # noqa: S301 (our own bytes)
+
+
+@pytest.mark.parametrize("word", WORDS, ids=lambda item: item.label)
+def test_codes_that_are_no_words(word):
+    codes = np.zeros((10, 2), word.dtype)
+    codes[7, 1] = 1 if word.align == "left" else 2 ** (word.n_bits - 1)
+    assert first_misfit(codes, word) == (7, int(codes[7, 1]))
+    codes[5, 0] = -1 if word.align == "left" else -(2 ** (word.n_bits - 1)) - 1
+    assert first_misfit(codes, word) == (5, int(codes[5, 0]))
+    assert first_misfit(codes, word.container) is None
+
+
+def test_words_only_in_16_bit_integers():
+    assert [item.name for item in DATATYPES.values() if takes_words(item)] == [
+        "ci16_le",
+        "ci16_be",
+        "ri16_le",
+        "ri16_be",
+    ]
+    assert word_in(CI16_LE, bits=16, align="left") is CI16_LE
+    for datatype, bits in ((CI8, 12), (CF32_LE, 12), (CI16_LE, 8), (CI16_LE, 13)):
+        with pytest.raises(ValueError, match=str(bits)):
+            word_in(datatype, bits=bits, align="left")
+
+
+def test_channels_side_by_side():
+    one, two = (encode(gaussian(10, scale), CI16_LE)[0] for scale in (0.1, 0.2))
+    both = join_channels(one, two)
+    np.testing.assert_array_equal(both[:, 2:], two)
+    assert both.dtype == CI16_LE.dtype

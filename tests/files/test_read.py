@@ -244,7 +244,49 @@ HOSTILE = {
         "Convert",
         "x.wav",
     ),
-    "WAV of one channel": (lambda f: sound(f, 1), NONE, "one channel", "baseband", "x.wav"),
+    "WAV of four channels": (lambda f: sound(f, 4), NONE, "2 channels", "--channel 0", "x.wav"),
+    "a channel that a WAV file has not": (
+        lambda f: sound(f, 4),
+        ReadHints(channel=2),
+        "channel 2",
+        "--channel 0",
+        "x.wav",
+    ),
+    "a second channel of one": (
+        lambda f: sound(f, 2),
+        ReadHints(channel=1),
+        "has 1 channel, and channel 1",
+        "Leave",
+        "x.wav",
+    ),
+    "rows of two channels cut": (
+        lambda f: plain(f, "x.ci16_le", bytes(404)),
+        ReadHints(sample_rate_hz=RATE, channel=1),
+        "404 bytes leave 4",
+        "finished",
+        "x.ci16_le",
+    ),
+    "codes beyond their word": (
+        lambda f: plain(f, "x.ci16_le", b"\0\0\0\x08" * 100),
+        ReadHints(sample_rate_hz=RATE, bits=12, align="right"),
+        "sample 0 holds 2048",
+        "alignment",
+        "x.ci16_le",
+    ),
+    "bits below their word": (
+        lambda f: plain(f, "x.ci16_le", bytes(398) + b"\1\0"),
+        ReadHints(sample_rate_hz=RATE, bits=14, align="left"),
+        "sample 99 holds 1",
+        "alignment",
+        "x.ci16_le",
+    ),
+    "words in bytes": (
+        lambda f: plain(f, "x.ci8", bytes(400)),
+        ReadHints(sample_rate_hz=RATE, bits=12, align="left"),
+        "ci8",
+        "ci16_le",
+        "x.ci8",
+    ),
     "WAV of three channels": (lambda f: sound(f, 3), NONE, "3 channels", "I and Q", "x.wav"),
     "WAV, told another datatype": (
         lambda f: sound(f, 2),
@@ -332,8 +374,9 @@ HOSTILE = {
 def test_malformed_and_hostile_files(tmp_path, case):
     make, hints, problem, remedy, place = HOSTILE[case]
     path = make(tmp_path)
-    with pytest.raises(FileError) as caught:
-        open_recording(path, hints)
+    with pytest.raises(FileError) as caught:  # noqa: PT012 (rows are seen when they are read)
+        recording = open_recording(path, hints)
+        recording.signal.compute(0, recording.n_samples)
     assert caught.value.where.endswith(place)
     assert problem in caught.value.problem
     assert remedy in caught.value.remedy
@@ -404,6 +447,11 @@ def test_a_wav_file_under_any_name(tmp_path):
         (ReadHints(full_scale=0.0), "--full-scale"),
         (ReadHints(full_scale=float("nan")), "--full-scale"),
         (ReadHints(full_scale=float("inf")), "--full-scale"),
+        (ReadHints(bits=13, align="left"), "bits"),
+        (ReadHints(bits=12), "--align left"),
+        (ReadHints(align="left"), "--bits"),
+        (ReadHints(bits=12, align="middle"), "--align"),
+        (ReadHints(bits=12, align="left", full_scale=2048), "--bits"),
     ],
 )
 def test_hints_that_mean_nothing(tmp_path, hints, word):

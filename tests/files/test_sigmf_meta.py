@@ -71,7 +71,7 @@ FOREIGN = {"name": "radar", "version": "1.0.0", "optional": False}
         (with_global(core__datatype="ci16"), ("core:datatype", "ci16")),
         (with_global(core__datatype="ci16_le_"), ("core:datatype", "ci16_le_")),
         (with_global(core__datatype="ci8_le"), ("core:datatype", "ci8_le")),
-        (with_global(core__datatype="ri16_le"), ("core:datatype", "ri16_le")),
+        (with_global(core__datatype="ru16_le"), ("core:datatype", "ru16_le")),
         (with_global(core__datatype="cf32_be"), ("core:datatype", "cf32_be")),
         (with_global(core__version="2.0.0"), ("core:version", "2.0.0")),
         (with_global(core__version="1.2"), ("core:version", "1.2")),
@@ -84,7 +84,10 @@ FOREIGN = {"name": "radar", "version": "1.0.0", "optional": False}
         (with_global(core__sample_rate=None), ("core:sample_rate", "missing")),
         (with_global(core__sha512="abc"), ("core:sha512", "abc")),
         (with_global(core__sha512="0" * 129), ("core:sha512",)),
-        (with_global(core__num_channels=2), ("core:num_channels", "2")),
+        (with_global(core__num_channels=2), ("2 channels",)),
+        (with_global(core__num_channels=0), ("core:num_channels", "0")),
+        (with_global(core__num_channels=1e9), ("core:num_channels",)),
+        (with_global(core__num_channels="2"), ("core:num_channels",)),
         (with_global(core__num_channels=True), ("core:num_channels",)),
         (with_global(core__metadata_only=True), ("core:metadata_only",)),
         (with_global(core__trailing_bytes=8), ("core:trailing_bytes",)),
@@ -100,7 +103,7 @@ FOREIGN = {"name": "radar", "version": "1.0.0", "optional": False}
         (with_global(core__offset=-5), ("core:offset",)),
         (with_global(core__description=["x" * 10_000]), ("core:description", "...")),
     ],
-    ids=range(41),
+    ids=range(44),
 )
 def test_metadata_that_are_refused(tmp_path, changed, words):
     path = write(tmp_path, changed)
@@ -157,13 +160,15 @@ def test_metadata_that_are_read_with_a_warning(tmp_path, changed, word):
         with_section("captures", []),
         with_global(core__num_channels=1, core__trailing_bytes=0, core__metadata_only=False),
         with_global(core__extensions=[FOREIGN | {"optional": True}], radar__prf=1000),
+        with_global(wavegen__word_bits=12, wavegen__word_align="middle"),
+        with_global(wavegen__word_bits=[12], wavegen__word_align={}),
         with_global(wavegen__title=3, wavegen__statistics="none", wavegen__sample_rate_exact="1/0")
         | {},
         with_section("annotations", [{"core:sample_start": 5.0, "core:sample_count": 5.0}]),
     ],
 )
 def test_metadata_that_are_read(tmp_path, changed):
-    if "wavegen:title" in changed["global"]:
+    if any(key.startswith("wavegen:") for key in changed["global"]):
         changed["global"]["core:extensions"] = [
             {"name": "wavegen", "version": "1.0.0", "optional": True}
         ]
@@ -185,7 +190,7 @@ def test_no_rate_needs_a_hint(tmp_path):
 
 @pytest.mark.parametrize(
     ("name", "is_grammatical"),
-    [("ci16_le_", False), ("ci8_le", False), ("ci16", False), ("ri16_le", True), ("cf32_be", True)],
+    [("ci16_le_", False), ("ci8_le", False), ("ci16", False), ("ru16_le", True), ("cf32_be", True)],
 )
 def test_what_breaks_the_grammar_is_told_from_what_is_not_read(tmp_path, name, is_grammatical):
     with pytest.raises(FileError) as caught:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
 from pathlib import Path
@@ -12,7 +12,15 @@ from wavegen.core.errors import FileError
 from wavegen.core.registry import nearest
 from wavegen.core.signal import Signal
 from wavegen.core.units import format_hz
-from wavegen.files.datatypes import Codes, Datatype
+from wavegen.files.datatypes import (
+    ALIGNMENTS,
+    WORD_BITS,
+    Alignment,
+    Codes,
+    Datatype,
+    takes_words,
+    word_in,
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -65,6 +73,8 @@ class FileFacts:
         Radio frequency of the baseband's 0 Hz, Hz.
     extra : mapping
         Further facts for formats with room for them (JSON values; keys are identifiers).
+    n_channels : int
+        Coherent channels that share the file, interleaved sample by sample.
     """
 
     sample_rate_hz: Fraction
@@ -77,6 +87,12 @@ class FileFacts:
     annotations: tuple[Annotation, ...] = ()
     centre_frequency_hz: float | None = None
     extra: Mapping[str, object] = field(default_factory=dict)
+    n_channels: int = 1
+
+    @property
+    def n_columns(self) -> int:
+        """Columns of the codes to come: 2 for each complex channel, 1 for each real one."""
+        return self.datatype.n_rails * self.n_channels
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -96,6 +112,14 @@ class ReadHints:
         16-bit rails, 32768 for float files that hold integers.
     reference_level_dbm : float or None
         Power at 0 dBFS, dBm; carried, not applied.
+    bits : int or None
+        Bits of the words in 16-bit containers: 12, 14 or 16.
+    align : {"left", "right"} or None
+        Where shorter words stand; needed with ``bits`` below 16.
+    channel : int or None
+        Which of several channels, from 0. Files without a header have two if this is given.
+    variable : str or None
+        Which array of a file that holds several.
     """
 
     format: str | None = None
@@ -103,6 +127,10 @@ class ReadHints:
     sample_rate_hz: Fraction | None = None
     full_scale: float | None = None
     reference_level_dbm: float | None = None
+    bits: int | None = None
+    align: Alignment | None = None
+    channel: int | None = None
+    variable: str | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -137,6 +165,18 @@ class Recording:
         What this program wrote about the samples, if it wrote them.
     warnings : tuple of str
         Legal but doubtful.
+    n_channels : int
+        Channels in the file, of which ``signal`` is one.
+    channel : int
+        Which one.
+    is_real : bool
+        The file holds real samples; ``signal`` is their analytic signal, whose envelope is that
+        of the carrier (a real carrier of amplitude A has ``|x| = A``).
+    is_power : bool
+        The file holds power against time; ``|x|^2`` is that power, the phase is 0 by decree, so
+        that spectra and peaks between samples mean nothing.
+    data_start, data_bytes : int, int or None
+        Where in ``path`` the bytes lie that ``sha512`` is about; None for all of the file.
     """
 
     path: Path
@@ -154,13 +194,19 @@ class Recording:
     sha512: str | None = None
     statistics: Mapping[str, object] | None = None
     warnings: tuple[str, ...] = ()
+    n_channels: int = 1
+    channel: int = 0
+    is_real: bool = False
+    is_power: bool = False
+    data_start: int = 0
+    data_bytes: int | None = None
 
 
 class Writer(Protocol):
     """A file being written: blocks of codes, then one finish."""
 
     def write(self, codes: Codes) -> None:
-        """Append codes of the facts' datatype, shape (n, 2).
+        """Append codes of the facts' datatype, shape (n, n_columns).
 
         Raises
         ------
@@ -230,17 +276,35 @@ class Format(Protocol):
         """
 
 
-def pick_datatype(form: Format, name: str | None, where: str) -> Datatype:
+def pick_datatype(
+    form: Format,
+    name: str | None,
+    where: str,
+    *,
+    bits: int | None = None,
+    align: str | None = None,
+) -> Datatype:
     """Return the datatype that a name means for a format; its default for None.
+
+    Parameters
+    ----------
+    form : Format
+        Who writes it.
+    name : str or None
+        By any name that the format knows.
+    where : str
+        For messages.
+    bits, align
+        As in :func:`told_word`.
 
     Raises
     ------
     FileError
-        At ``where``: the format does not write it.
+        At ``where``: the format does not write it, or it holds no such words.
     """
     wanted = name or form.default_datatype
     if wanted in form.datatypes:
-        return form.datatypes[wanted]
+        return told_word(form.datatypes[wanted], bits=bits, align=align, where=where)
     guess = nearest(wanted, form.datatypes)
     raise FileError(
         where=where,
@@ -248,6 +312,120 @@ def pick_datatype(form: Format, name: str | None, where: str) -> Datatype:
         allowed=", ".join(form.datatypes),
         remedy=f"Did you mean {guess}?" if guess else f"Use {form.default_datatype}.",
     )
+
+
+def told_word(datatype: Datatype, *, bits: int | None, align: str | None, where: str) -> Datatype:
+    """Return a datatype whose 16-bit containers hold the words that the user states.
+
+    Parameters
+    ----------
+    datatype : Datatype
+        By its container.
+    bits : int or None
+        Bits of a word: 12, 14 or 16. None: the container is full.
+    align : str or None
+        ``left`` or ``right``; needed below 16 bits, for the two differ by 12 or 24 dB.
+    where : str
+        For messages.
+
+    Raises
+    ------
+    FileError
+        At ``where``: no 16-bit integers, other bits, or no or another alignment.
+    """
+    if bits is None and align is None:
+        return datatype
+    for is_wrong, problem, allowed, remedy in (
+        (
+            not takes_words(datatype),
+            f"{datatype.name} holds no shorter words",
+            "bits and align with 16-bit integers, such as ci16_le",
+            "Leave them out, or choose ci16_le.",
+        ),
+        (
+            bits not in WORD_BITS,
+            f"words of {bits} bits" if bits is not None else "an alignment without bits",
+            f"{', '.join(map(str, WORD_BITS))} bits",
+            "State the bits of the converter's words.",
+        ),
+        (
+            align not in ALIGNMENTS and not (align is None and bits == 16),
+            f"the alignment is {align!r}" if align is not None else "the alignment is missing",
+            " or ".join(ALIGNMENTS),
+            "State left if the lowest bits of the container are zero, else right.",
+        ),
+    ):
+        if is_wrong:
+            raise FileError(where=where, problem=problem, allowed=allowed, remedy=remedy)
+    assert bits is not None  # noqa: S101 - one of WORD_BITS
+    return word_in(datatype, bits=bits, align="left" if align == "left" else "right")
+
+
+def told_channel(path: Path, *, n_channels: int, hints: ReadHints) -> int:
+    """Return which channel of a file is meant.
+
+    Raises
+    ------
+    FileError
+        The file has several and none is named, or one that it has not.
+    """
+    channel = hints.channel
+    if channel is None and n_channels == 1:
+        return 0
+    if channel is None or not 0 <= channel < n_channels:
+        asked = "" if channel is None else f", and channel {channel} is asked for"
+        raise FileError(
+            where=str(path),
+            problem=f"has {n_channels} channel{'s' if n_channels > 1 else ''}{asked}",
+            allowed="one at a time: " + ("0" if n_channels == 1 else f"0 to {n_channels - 1}"),
+            remedy="Add --channel 0, or another." if n_channels > 1 else "Leave --channel out.",
+        )
+    return channel
+
+
+def distinct_stems(stem: str, wanted: Iterable[tuple[Format, Datatype, str | None]]) -> list[str]:
+    """Return a file stem for each output of one recipe, so that no two share a file.
+
+    Parameters
+    ----------
+    stem : str
+        The recipe's own.
+    wanted : iterable of (Format, Datatype, str or None)
+        In the order of the recipe; a name that the recipe gives is kept as it is.
+
+    Returns
+    -------
+    list of str
+        The first file of a name keeps ``stem``; a later one that would collide becomes
+        ``stem.LABEL``, LABEL the datatype's. What still collides is the caller's to refuse.
+
+    Examples
+    --------
+    >>> from wavegen.files.raw import Raw
+    >>> from wavegen.files.sigmf import Sigmf
+    >>> pair, raw = Sigmf(), Raw()
+    >>> two = pair.datatypes["ci16_le"], pair.datatypes["ci8"]
+    >>> distinct_stems("run", [(pair, two[0], None), (pair, two[1], None), (raw, two[0], None)])
+    ['run', 'run.ci8', 'run']
+    """
+    wanted = list(wanted)
+    taken = {
+        name.casefold()
+        for form, datatype, own in wanted
+        if own is not None
+        for name in form.files(own, datatype)
+    }
+    stems = []
+    for form, datatype, own in wanted:
+        if own is not None:
+            stems.append(own)
+            continue
+        chosen = stem
+        if taken & {name.casefold() for name in form.files(stem, datatype)}:
+            chosen = f"{stem}.{datatype.label}"
+        taken |= {name.casefold() for name in form.files(chosen, datatype)}
+        stems.append(chosen)
+    return stems
 
 
 def check_facts(form: Format, facts: FileFacts, where: str) -> None:
@@ -258,7 +436,7 @@ def check_facts(form: Format, facts: FileFacts, where: str) -> None:
     FileError
         At ``where``.
     """
-    if facts.datatype not in form.datatypes.values():
+    if facts.datatype.container not in form.datatypes.values():
         pick_datatype(form, facts.datatype.name, where)
     if facts.n_samples < 1 or facts.sample_rate_hz <= 0:
         raise FileError(
@@ -266,6 +444,13 @@ def check_facts(form: Format, facts: FileFacts, where: str) -> None:
             problem=f"{facts.n_samples} samples at {format_hz(facts.sample_rate_hz)}",
             allowed="at least one sample, at a rate above 0 Hz",
             remedy="Correct the duration or the sample rate.",
+        )
+    if not 1 <= facts.n_channels <= 2:
+        raise FileError(
+            where=where,
+            problem=f"{facts.n_channels} channels",
+            allowed="1, or 2 coherent ones",
+            remedy="Write further channels to files of their own.",
         )
     for item in facts.annotations:
         end = item.start_sample + (item.n_samples or 0)

@@ -2,7 +2,9 @@
 
 ``NAME.ci16_le`` holds little-endian 16-bit pairs and nothing else. Rate, level and title have
 no place in such a file; on reading, the rate is always told (``--sample-rate 20MHz``), and the
-datatype where the ending does not name it (``--format ci16_le``).
+datatype where the ending does not name it (``--format ci16_le``). Neither has the length of
+shorter words (``--bits 12 --align left``) nor the number of channels: ``--channel`` says that
+there are two. Real samples (``NAME.ri16_le``) stand one after another.
 """
 
 from __future__ import annotations
@@ -12,6 +14,7 @@ from pathlib import Path
 from typing import ClassVar
 
 from wavegen.core.errors import FileError
+from wavegen.files.analytic import as_complex
 from wavegen.files.datatypes import (
     CF32_LE,
     CF64_LE,
@@ -20,16 +23,31 @@ from wavegen.files.datatypes import (
     CI16_LE,
     CI32_LE,
     CU8,
+    RF32_LE,
+    RF64_LE,
+    RI8,
+    RI16_BE,
+    RI16_LE,
+    RI32_LE,
     Codes,
     Datatype,
 )
 from wavegen.files.faults import read_head
-from wavegen.files.format import FileFacts, ReadHints, Recording, Writer, check_facts, told_rate
+from wavegen.files.format import (
+    FileFacts,
+    ReadHints,
+    Recording,
+    Writer,
+    check_facts,
+    told_channel,
+    told_rate,
+    told_word,
+)
 from wavegen.files.interleaved import InterleavedWriter, open_interleaved
 from wavegen.files.signatures import TEXT, is_text, signature_of
 
-_WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)}
-_READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE)}
+_WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, RI16_LE, RF32_LE)}
+_READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE, RI8, RI16_BE, RI32_LE, RF64_LE)}
 
 
 class Raw:
@@ -64,18 +82,24 @@ class Raw:
         FileError
             No datatype, no sample rate, empty, or not whole samples.
         """
-        datatype = _datatype_of(path, hints)
+        datatype = told_word(
+            _datatype_of(path, hints), bits=hints.bits, align=hints.align, where=str(path)
+        )
+        n_channels = 1 if hints.channel is None else 2
+        channel = told_channel(path, n_channels=n_channels, hints=hints)
         sample_rate_hz, _ = told_rate(path, stated_hz=None, hints=hints)
         signal = open_interleaved(
             path,
             datatype=datatype,
             sample_rate_hz=sample_rate_hz,
             full_scale=hints.full_scale,
+            n_channels=n_channels,
+            channel=channel,
         )
         head = read_head(path)
         known = signature_of(head) or (TEXT if is_text(head) else None)
         doubt = f"{path.name} starts like {known.what}; it is read as bare samples" if known else ""
-        return Recording(
+        recording = Recording(
             path=path,
             files=(path,),
             format=self.name,
@@ -85,7 +109,10 @@ class Raw:
             datatype=datatype,
             reference_level_dbm=hints.reference_level_dbm,
             warnings=(doubt,) if doubt else (),
+            n_channels=n_channels,
+            channel=channel,
         )
+        return as_complex(recording)
 
 
 def _datatype_of(path: Path, hints: ReadHints) -> Datatype:
@@ -113,11 +140,16 @@ class RawWriter:
     """
 
     def __init__(self, draft: Path, facts: FileFacts) -> None:
-        self._data = InterleavedWriter(draft, datatype=facts.datatype, n_samples=facts.n_samples)
+        self._data = InterleavedWriter(
+            draft,
+            datatype=facts.datatype,
+            n_samples=facts.n_samples,
+            n_channels=facts.n_channels,
+        )
         self._sha512 = ""
 
     def write(self, codes: Codes) -> None:
-        """Append codes, shape (n, 2)."""
+        """Append codes, shape (n, n_columns)."""
         self._data.write(codes)
 
     def finish(self, statistics: Mapping[str, object] | None = None) -> None:

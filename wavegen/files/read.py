@@ -9,7 +9,7 @@ from pathlib import Path
 from wavegen.core.errors import ArgumentsError, FileError
 from wavegen.core.registry import nearest
 from wavegen.files import FORMATS
-from wavegen.files.datatypes import DATATYPES
+from wavegen.files.datatypes import ALIGNMENTS, DATATYPES, WORD_BITS
 from wavegen.files.faults import read_head, told
 from wavegen.files.format import Format, ReadHints, Recording
 from wavegen.files.signatures import TEXT, Signature, is_text, signature_of
@@ -72,6 +72,43 @@ def _check_hints(hints: ReadHints) -> None:
                 allowed="finite numbers above 0",
                 remedy=f"Correct it or leave {option} out.",
             )
+    _check_word(hints)
+
+
+def _check_word(hints: ReadHints) -> None:
+    """Refuse words that are not stated in full, or twice."""
+    for option, is_wrong, problem, allowed, remedy in (
+        (
+            "--bits",
+            hints.bits is not None and hints.bits not in WORD_BITS,
+            f"is {hints.bits}",
+            ", ".join(map(str, WORD_BITS)),
+            "Give the bits of the converter's words, or leave --bits out.",
+        ),
+        (
+            "--align",
+            hints.align is not None and (hints.align not in ALIGNMENTS or hints.bits is None),
+            f"is {hints.align}" + ("" if hints.bits else " without --bits"),
+            "left or right, with --bits",
+            "Give both --bits and --align, or leave both out.",
+        ),
+        (
+            "--align",
+            hints.align is None and hints.bits in {12, 14},
+            f"is missing beside --bits {hints.bits}",
+            "left or right",
+            "Give --align left if the lowest bits of the container are zero, else --align right.",
+        ),
+        (
+            "--full-scale",
+            hints.full_scale is not None and hints.bits is not None,
+            "says again what --bits says",
+            "one of the two",
+            "Leave --full-scale or --bits out.",
+        ),
+    ):
+        if is_wrong:
+            raise ArgumentsError(where=option, problem=problem, allowed=allowed, remedy=remedy)
 
 
 def _told_format(name: str, hints: ReadHints) -> tuple[Format, ReadHints]:
@@ -90,7 +127,9 @@ def _told_format(name: str, hints: ReadHints) -> tuple[Format, ReadHints]:
 
 
 def _unknown(name: str, known: list[str]) -> ArgumentsError:
-    guess = nearest(name, known)
+    is_real = name.startswith("r")  # "f32" means cf32_le, not rf32_le
+    likely = [item for item in known if is_real or not item.startswith("r") or item in FORMATS]
+    guess = nearest(name, likely) or nearest(name, known)
     return ArgumentsError(
         where="--format",
         problem=f"{name!r} is not known",

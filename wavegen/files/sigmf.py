@@ -13,7 +13,18 @@ from typing import ClassVar
 
 from wavegen.core.errors import FileError
 from wavegen.core.units import format_hz
-from wavegen.files.datatypes import CF32_LE, CF64_LE, CI8, CI16_BE, CI16_LE, Codes, Datatype
+from wavegen.files.analytic import as_complex
+from wavegen.files.datatypes import (
+    CF32_LE,
+    CF64_LE,
+    CI8,
+    CI16_BE,
+    CI16_LE,
+    RF32_LE,
+    RI16_LE,
+    Codes,
+    Datatype,
+)
 from wavegen.files.faults import os_fault, regular_size, told
 from wavegen.files.format import (
     FileFacts,
@@ -22,24 +33,28 @@ from wavegen.files.format import (
     Writer,
     check_facts,
     refuse_other_datatype,
+    told_channel,
     told_rate,
+    told_word,
 )
 from wavegen.files.interleaved import InterleavedWriter, open_interleaved
 from wavegen.files.sigmf_meta import Metadata, meta_text, read_meta
 from wavegen.files.strict_json import finite_json
 
 META, DATA = ".sigmf-meta", ".sigmf-data"
-_WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)}
+WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, RI16_LE, RF32_LE)}
+"""What is written, by the names of the specification."""
+
 _MOST_HZ = 10**12
 """Highest ``core:sample_rate``."""
 
 
 class Sigmf:
-    """SigMF recordings of one channel, as a pair of files."""
+    """SigMF recordings of one channel or two, as a pair of files."""
 
     name: ClassVar[str] = "sigmf"
     suffixes: ClassVar[tuple[str, ...]] = (DATA, META)
-    datatypes: ClassVar[Mapping[str, Datatype]] = _WRITTEN
+    datatypes: ClassVar[Mapping[str, Datatype]] = WRITTEN
     default_datatype: ClassVar[str] = "ci16_le"
 
     def files(self, stem: str, datatype: Datatype) -> tuple[str, ...]:
@@ -55,14 +70,7 @@ class Sigmf:
             A datatype that is not written, a rate above 1 THz, or facts that are no JSON.
         """
         check_facts(self, facts, where)
-        if facts.sample_rate_hz > _MOST_HZ:
-            raise FileError(
-                where=where,
-                problem=f"SigMF cannot hold {format_hz(facts.sample_rate_hz)}",
-                allowed=f"up to {format_hz(_MOST_HZ)}",
-                remedy="Lower the sample rate.",
-            )
-        _refuse_no_json(facts.extra, where)
+        check_metadata(facts, where)
 
     def writer(self, drafts: tuple[Path, ...], facts: FileFacts) -> Writer:
         """Open the pair: the data file first."""
@@ -79,38 +87,112 @@ class Sigmf:
         Raises
         ------
         FileError
-            Either is missing or damaged, or holds what is not read: several channels, bytes
-            that are no samples, no data, or an extension that must be understood.
+            Either is missing or damaged, or holds what is not read: bytes that are no samples,
+            no data, or an extension that must be understood. Or there are several channels and
+            none is named.
         """
         meta_path = meta_beside(path)
         meta = read_meta(meta_path)
         refuse_other_datatype(meta_path, meta.datatype, hints)
         data_path = meta_path.parent / (meta.dataset or meta_path.name[: -len(META)] + DATA)
         _refuse_missing_data(data_path, meta_path)
-        sample_rate_hz, warnings = told_rate(meta_path, stated_hz=meta.sample_rate_hz, hints=hints)
-        signal = open_interleaved(
-            data_path,
-            datatype=meta.datatype,
-            sample_rate_hz=sample_rate_hz,
-            full_scale=hints.full_scale,
-        )
-        return Recording(
-            path=data_path,
+        return recording_of(
+            meta,
+            hints,
+            format_name=self.name,
+            meta_path=meta_path,
+            data_path=data_path,
             files=(data_path, meta_path),
-            format=self.name,
-            signal=signal,
-            sample_rate_hz=sample_rate_hz,
-            n_samples=signal.n_samples,
-            datatype=meta.datatype,
-            title=meta.title,
-            description=meta.description,
-            centre_frequency_hz=meta.centre_frequency_hz,
-            reference_level_dbm=hints.reference_level_dbm,
-            annotations=meta.annotations,
-            sha512=meta.sha512,
-            statistics=meta.statistics,
-            warnings=warnings + meta.warnings + _beyond(meta, data_path, signal.n_samples),
         )
+
+
+def recording_of(
+    meta: Metadata,
+    hints: ReadHints,
+    *,
+    format_name: str,
+    meta_path: Path,
+    data_path: Path,
+    files: tuple[Path, ...],
+    data_start: int = 0,
+    data_bytes: int | None = None,
+) -> Recording:
+    """Return the recording that metadata and a data file make.
+
+    Parameters
+    ----------
+    meta : Metadata
+        As read.
+    hints : ReadHints
+        What the user says about it.
+    format_name : str
+        Whose recording it is.
+    meta_path, data_path : Path
+        For messages, and the file that holds the samples.
+    files : tuple of Path
+        Every file of the recording.
+    data_start, data_bytes : int, int or None
+        Where in ``data_path`` the samples lie.
+
+    Raises
+    ------
+    FileError
+        As :meth:`Sigmf.read`.
+    """
+    bits, align = (hints.bits, hints.align) if hints.bits else (meta.word_bits, meta.word_align)
+    datatype = told_word(meta.datatype, bits=bits, align=align, where=str(meta_path))
+    channel = told_channel(meta_path, n_channels=meta.n_channels, hints=hints)
+    sample_rate_hz, warnings = told_rate(meta_path, stated_hz=meta.sample_rate_hz, hints=hints)
+    signal = open_interleaved(
+        data_path,
+        datatype=datatype,
+        sample_rate_hz=sample_rate_hz,
+        full_scale=hints.full_scale,
+        n_channels=meta.n_channels,
+        channel=channel,
+        data_start=data_start,
+        data_bytes=data_bytes,
+    )
+    recording = Recording(
+        path=data_path,
+        files=files,
+        format=format_name,
+        signal=signal,
+        sample_rate_hz=sample_rate_hz,
+        n_samples=signal.n_samples,
+        datatype=datatype,
+        title=meta.title,
+        description=meta.description,
+        centre_frequency_hz=meta.centre_frequency_hz,
+        reference_level_dbm=hints.reference_level_dbm,
+        annotations=meta.annotations,
+        sha512=meta.sha512,
+        statistics=meta.statistics,
+        warnings=warnings + meta.warnings + _beyond(meta, data_path, signal.n_samples),
+        n_channels=meta.n_channels,
+        channel=channel,
+        data_start=data_start,
+        data_bytes=data_bytes,
+    )
+    return as_complex(recording)
+
+
+def check_metadata(facts: FileFacts, where: str) -> None:
+    """Refuse facts that SigMF metadata cannot hold.
+
+    Raises
+    ------
+    FileError
+        At ``where``: a rate above 1 THz, or facts that are no JSON.
+    """
+    if facts.sample_rate_hz > _MOST_HZ:
+        raise FileError(
+            where=where,
+            problem=f"SigMF cannot hold {format_hz(facts.sample_rate_hz)}",
+            allowed=f"up to {format_hz(_MOST_HZ)}",
+            remedy="Lower the sample rate.",
+        )
+    refuse_no_json(facts.extra, where)
 
 
 def meta_beside(path: Path) -> Path:
@@ -160,7 +242,14 @@ def _beyond(meta: Metadata, data: Path, n_samples: int) -> tuple[str, ...]:
     return (text,)
 
 
-def _refuse_no_json(value: Mapping[str, object], where: str) -> None:
+def refuse_no_json(value: Mapping[str, object], where: str) -> None:
+    """Refuse what JSON cannot hold.
+
+    Raises
+    ------
+    FileError
+        At ``where``.
+    """
     reason = finite_json(dict(value))
     if reason is not None:
         raise FileError(
@@ -185,11 +274,16 @@ class SigmfWriter:
     def __init__(self, data: Path, meta: Path, facts: FileFacts) -> None:
         self._meta = meta
         self._facts = facts
-        self._data = InterleavedWriter(data, datatype=facts.datatype, n_samples=facts.n_samples)
+        self._data = InterleavedWriter(
+            data,
+            datatype=facts.datatype,
+            n_samples=facts.n_samples,
+            n_channels=facts.n_channels,
+        )
         self._sha512 = ""
 
     def write(self, codes: Codes) -> None:
-        """Append codes, shape (n, 2)."""
+        """Append codes, shape (n, n_columns)."""
         self._data.write(codes)
 
     def finish(self, statistics: Mapping[str, object] | None = None) -> None:
@@ -200,7 +294,7 @@ class SigmfWriter:
         FileError
             Samples are missing, statistics are no JSON, or the disk refuses.
         """
-        _refuse_no_json(statistics or {}, self._meta.name)
+        refuse_no_json(statistics or {}, self._meta.name)
         self._sha512 = self._data.complete()
         text = meta_text(self._facts, sha512=self._sha512, statistics=statistics)
         with told(self._meta):

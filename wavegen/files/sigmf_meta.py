@@ -13,6 +13,7 @@ from typing import Any
 from wavegen.core.errors import FileError
 from wavegen.files.atomic import check_name
 from wavegen.files.datatypes import (
+    ALIGNMENTS,
     CF32_LE,
     CF64_LE,
     CI8,
@@ -20,18 +21,31 @@ from wavegen.files.datatypes import (
     CI16_LE,
     CI32_LE,
     CU8,
+    RF32_LE,
+    RF64_LE,
+    RI8,
+    RI16_BE,
+    RI16_LE,
+    RI32_LE,
+    WORD_BITS,
     Datatype,
+    takes_words,
 )
 from wavegen.files.faults import told
 from wavegen.files.format import Annotation, FileFacts
 from wavegen.files.strict_json import read_json
 
-_READ = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, CI32_LE, CU8)}
+_COMPLEX = (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, CI32_LE, CU8)
+_REAL = (RI16_LE, RI16_BE, RI8, RF32_LE, RF64_LE, RI32_LE)
+_READ = {item.name: item for item in (*_COMPLEX, *_REAL)}
 _GRAMMAR = re.compile(r"[rc](?:(?:f32|f64|i32|i16|u32|u16)_(?:le|be)|i8|u8)")
 """``core:datatype`` by the ABNF of SigMF 1.2.5; the schema's pattern does not end."""
 
 _VERSION = re.compile(r"([0-9]+)\.[0-9]+\.[0-9]+")
 _EXACT = re.compile(r"([0-9]{1,40})/([0-9]{1,40})")
+_MOST_CHANNELS = 64
+"""Channels of one recording that are read, one at a time."""
+
 _EXTENSION = {"name": "wavegen", "version": "1.0.0", "optional": True}
 """Defined in ``schemas/wavegen.sigmf-ext.md``."""
 
@@ -62,6 +76,10 @@ class Metadata:
         Ours, if we wrote it.
     warnings : tuple of str
         Legal but doubtful.
+    n_channels : int
+        Channels interleaved sample by sample.
+    word_bits, word_align : int, str or None
+        Bits of the words in 16-bit containers and where they stand, if we wrote it.
     """
 
     datatype: Datatype
@@ -75,6 +93,9 @@ class Metadata:
     sha512: str | None
     statistics: Mapping[str, object] | None
     warnings: tuple[str, ...]
+    n_channels: int = 1
+    word_bits: int | None = None
+    word_align: str | None = None
 
 
 def meta_text(facts: FileFacts, *, sha512: str, statistics: Mapping[str, object] | None) -> str:
@@ -102,12 +123,15 @@ def meta_text(facts: FileFacts, *, sha512: str, statistics: Mapping[str, object]
         "core:datatype": facts.datatype.name,
         "core:sample_rate": int(rate) if rate.denominator == 1 else nearest,
         "core:sha512": sha512,
+        "core:num_channels": facts.n_channels if facts.n_channels > 1 else 0,
         "core:recorder": facts.generator,
         "core:description": facts.description or facts.title,
     }
     ours: dict[str, Any] = {
         "wavegen:title": facts.title,
         "wavegen:sample_rate_exact": "" if Fraction(repr(nearest)) == rate else _ratio(rate),
+        "wavegen:word_bits": facts.datatype.n_bits if facts.datatype.is_padded else 0,
+        "wavegen:word_align": facts.datatype.align,
         "wavegen:recipe_sha512": facts.recipe_sha512,
         "wavegen:statistics": dict(statistics or {}),
         "wavegen:facts": dict(facts.extra),
@@ -153,10 +177,27 @@ def read_meta(path: Path) -> Metadata:
     FileError
         Missing or damaged, not valid SigMF, or a recording of a kind that is not read.
     """
+    _refuse_missing(path)
+    return parsed_meta(path, read_json(path))
+
+
+def parsed_meta(path: Path, found: Mapping[str, Any]) -> Metadata:
+    """Return what the JSON object of a metadata file says.
+
+    Parameters
+    ----------
+    path : Path
+        Where it comes from, for messages.
+    found : mapping
+        From :mod:`wavegen.files.strict_json`.
+
+    Raises
+    ------
+    FileError
+        Not valid SigMF, or a recording of a kind that is not read.
+    """
     import sigmf
 
-    _refuse_missing(path)
-    found = read_json(path)
     fields = found.get("global")
     if not isinstance(fields, dict):
         raise _fault(path, f"'global' is {_shown(fields)}", "a JSON object")
@@ -183,7 +224,18 @@ def read_meta(path: Path) -> Metadata:
         sha512=fields.get("core:sha512"),
         statistics=_mapping(fields.get("wavegen:statistics")),
         warnings=doubts + _capture_doubts(path, captures),
+        n_channels=int(fields.get("core:num_channels", 1)),
+        **_word(fields),
     )
+
+
+def _word(fields: Mapping[str, Any]) -> dict[str, Any]:
+    """Return the word that our extension states, if it makes sense with the datatype."""
+    bits, align = fields.get("wavegen:word_bits"), fields.get("wavegen:word_align")
+    is_known = bits in WORD_BITS and align in ALIGNMENTS and isinstance(bits, int)
+    if is_known and takes_words(_READ[fields["core:datatype"]]):
+        return {"word_bits": bits, "word_align": align}
+    return {}
 
 
 def _refuse_missing(path: Path) -> None:
@@ -247,9 +299,11 @@ def _check_numbers(path: Path, fields: Mapping[str, Any]) -> None:
 
 
 def _refuse_kinds(path: Path, fields: Mapping[str, Any]) -> None:
-    if fields.get("core:num_channels", 1) != 1:
-        problem = f"core:num_channels is {_shown(fields['core:num_channels'])}"
-        raise _fault(path, problem, "1: recordings of one channel")
+    count = fields.get("core:num_channels", 1)
+    is_count = isinstance(count, int | float) and not isinstance(count, bool)
+    if not (is_count and count in range(1, _MOST_CHANNELS + 1)):
+        problem = f"core:num_channels is {_shown(count)}"
+        raise _fault(path, problem, f"1 to {_MOST_CHANNELS} channels")
     if fields.get("core:metadata_only"):
         raise _fault(path, "core:metadata_only is set", "recordings with their data")
     if fields.get("core:trailing_bytes"):

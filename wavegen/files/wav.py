@@ -1,7 +1,8 @@
 """WAV and RF64 through ``soundfile``: I is the left channel, Q the right.
 
-Rounding and saturation are ours (:mod:`wavegen.files.datatypes`); the library only packs codes,
-so that what is read back is what was written, bit for bit.
+Four channels are two coherent signals, one channel is a real signal. Rounding and saturation
+are ours (:mod:`wavegen.files.datatypes`); the library only packs codes, so that what is read
+back is what was written, bit for bit.
 """
 
 from __future__ import annotations
@@ -17,10 +18,21 @@ from typing import Any, ClassVar
 import numpy as np
 
 from wavegen.core.errors import FileError
-from wavegen.core.signal import Samples, Signal
 from wavegen.core.units import format_hz
-from wavegen.files.datatypes import CF32_LE, CF64_LE, CI16_LE, CI24_LE, CI32_LE, Codes, Datatype
-from wavegen.files.datatypes import decode as decode_codes
+from wavegen.files.analytic import as_complex
+from wavegen.files.datatypes import (
+    CF32_LE,
+    CF64_LE,
+    CI16_LE,
+    CI24_LE,
+    CI32_LE,
+    RF32_LE,
+    RI16_LE,
+    RI24_LE,
+    Codes,
+    Datatype,
+    real_of,
+)
 from wavegen.files.digest import sha512_of
 from wavegen.files.faults import told
 from wavegen.files.format import (
@@ -30,9 +42,11 @@ from wavegen.files.format import (
     Writer,
     check_facts,
     refuse_other_datatype,
+    told_channel,
     told_rate,
+    told_word,
 )
-from wavegen.files.interleaved import SampleCount, scaled, shorter
+from wavegen.files.interleaved import CodedSamples, SampleCount, refuse_misfit, shorter
 from wavegen.files.riff import Chunk, is_wave, walk
 
 _SUBTYPES = {
@@ -73,6 +87,9 @@ class Wav:
         "ci16_le": CI16_LE,
         "ci24_le": CI24_LE,
         "cf32_le": CF32_LE,
+        "ri16_le": RI16_LE,
+        "ri24_le": RI24_LE,
+        "rf32_le": RF32_LE,
     }
     default_datatype: ClassVar[str] = "ci16_le"
 
@@ -89,7 +106,8 @@ class Wav:
         Raises
         ------
         FileError
-            A rate that is no whole number of Hz or too high, or another datatype.
+            A rate that is no whole number of Hz or too high, another datatype, or two real
+            channels (they would read as I and Q).
 
         Notes
         -----
@@ -97,8 +115,16 @@ class Wav:
         the library takes rates up to ``2^31 - 1``.
         """
         check_facts(self, facts, where)
+        if facts.datatype.is_real and facts.n_channels > 1:
+            raise FileError(
+                where=where,
+                problem="two real channels would read as I and Q of one",
+                allowed="one real channel, or complex ones",
+                remedy="Write sigmf or raw instead, or one file a channel.",
+            )
         rate = facts.sample_rate_hz
-        most = min((1 << 31) - 1, ((1 << 32) - 1) // facts.datatype.bytes_per_sample)
+        row_bytes = facts.datatype.bytes_per_sample * facts.n_channels
+        most = min((1 << 31) - 1, ((1 << 32) - 1) // row_bytes)
         if rate.denominator != 1 or rate > most:
             raise FileError(
                 where=where,
@@ -110,7 +136,7 @@ class Wav:
     def writer(self, drafts: tuple[Path, ...], facts: FileFacts) -> Writer:
         """Open the file."""
         self.check(facts, drafts[0].name)
-        n_bytes = facts.n_samples * facts.datatype.bytes_per_sample
+        n_bytes = facts.n_samples * facts.datatype.bytes_per_sample * facts.n_channels
         return WavWriter(
             drafts[0], facts, container="RF64" if n_bytes > self._riff_limit else "WAV"
         )
@@ -120,28 +146,32 @@ class Wav:
         return is_wave(head)
 
     def read(self, path: Path, hints: ReadHints) -> Recording:
-        """Open a WAV file of two channels.
+        """Open a WAV file: of two channels, of one (real), or one pair of several.
 
         Raises
         ------
         FileError
-            Truncated or with lengths that lie, not two channels, a coding that is not read,
-            or empty.
+            Truncated or with lengths that lie, an odd number of channels, a coding that is not
+            read, or empty.
         """
         riff = walk(path)
         with _opened(path) as file:
             channels, rate, frames = file.channels, file.samplerate, file.frames
             subtype, title, comment = file.subtype, file.title, file.comment
         _refuse_channels(path, channels)
-        datatype = _SUBTYPES.get(subtype)
-        if datatype is None:
+        coding = _SUBTYPES.get(subtype)
+        if coding is None:
             raise FileError(
                 where=str(path),
                 problem=f"is coded as {subtype}",
                 allowed=", ".join(_SUBTYPES),
                 remedy="Convert it to 16-bit or 32-bit float WAV.",
             )
-        refuse_other_datatype(path, datatype, hints)
+        stated = real_of(coding) if channels == 1 else coding
+        refuse_other_datatype(path, stated, hints)
+        datatype = told_word(stated, bits=hints.bits, align=hints.align, where=str(path))
+        n_channels = max(channels // 2, 1)
+        channel = told_channel(path, n_channels=n_channels, hints=hints)
         if rate < 1 or frames < 1:
             raise FileError(
                 where=str(path),
@@ -158,9 +188,11 @@ class Wav:
             mean_power=None,
             path=path,
             subtype=subtype,
+            datatype=datatype,
+            channel=channel,
             gain=1.0 if hints.full_scale is None else datatype.full_scale / hints.full_scale,
         )
-        return Recording(
+        recording = Recording(
             path=path,
             files=(path,),
             format=self.name,
@@ -172,20 +204,20 @@ class Wav:
             description=comment,
             reference_level_dbm=hints.reference_level_dbm,
             warnings=warnings,
+            n_channels=n_channels,
+            channel=channel,
         )
+        return as_complex(recording)
 
 
 def _refuse_channels(path: Path, channels: int) -> None:
-    if channels == 2:
+    if channels == 1 or (channels >= 2 and channels % 2 == 0):
         return
-    what = "one channel, a real signal" if channels == 1 else f"{channels} channels"
     raise FileError(
         where=str(path),
-        problem=f"has {what}",
-        allowed="two channels: I on the left, Q on the right",
-        remedy="Convert it to complex baseband (I and Q) and save it with two channels."
-        if channels == 1
-        else "Save the two channels that hold I and Q.",
+        problem=f"has {channels} channels",
+        allowed="one (a real signal), two (I on the left, Q on the right), or pairs of I and Q",
+        remedy="Save the two channels that hold I and Q.",
     )
 
 
@@ -206,46 +238,42 @@ def _opened(path: Path) -> Iterator[Any]:
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class WavSamples(Signal):
-    """A WAV file of two channels as a signal, full scale 1.0.
+class WavSamples(CodedSamples):
+    """One signal of a WAV file, full scale 1.0.
 
     Parameters
     ----------
-    path : Path
-        The file; it must outlive the signal, unchanged.
     subtype : str
         The library's name of the coding.
-    gain : float
-        Factor after decoding.
+    channel : int
+        Which pair of I and Q.
     """
 
-    path: Path
     subtype: str
-    gain: float = 1.0
+    channel: int = 0
 
-    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
-        """Read samples ``[start, stop)``.
+    def codes(self, start: int, stop: int) -> Codes:
+        """Return the codes of samples ``[start, stop)``, shape (stop - start, n_rails).
 
         Raises
         ------
         FileError
-            The file is gone, damaged or shorter than it was.
+            As :meth:`compute`, or a code that is no word of the datatype.
         """
-        return scaled(decode_codes(self.codes(start, stop), _SUBTYPES[self.subtype]), self.gain)
-
-    def codes(self, start: int, stop: int) -> Codes:
-        """Return the codes of samples ``[start, stop)``, shape (stop - start, 2)."""
         with _opened(self.path) as file:
             if file.frames < stop:
                 raise shorter(self.path, file.frames, self.n_samples)
             file.seek(start)
-            codes: Codes = file.read(
+            frames: Codes = file.read(
                 stop - start, dtype=_HELD.get(self.subtype, "float64"), always_2d=True
             )
-        if codes.shape[0] != stop - start:
-            raise shorter(self.path, start + codes.shape[0], self.n_samples)
+        if frames.shape[0] != stop - start:
+            raise shorter(self.path, start + frames.shape[0], self.n_samples)
+        n_rails = self.datatype.n_rails
+        codes = frames[:, self.channel * n_rails :][:, :n_rails]
         if self.subtype == "PCM_24":
             codes >>= 8  # the library hands 24 bits over at the left of 32
+        refuse_misfit(self.path, codes, self.datatype, start)
         return codes
 
 
@@ -267,15 +295,17 @@ class WavWriter:
 
         self._path = draft
         self._datatype = facts.datatype
-        self._count = SampleCount(draft, facts.n_samples)
+        self._count = SampleCount(draft, facts.n_samples, n_columns=facts.n_columns)
         self._sha512 = ""
-        subtype = next(name for name, item in _SUBTYPES.items() if item is facts.datatype)
+        self._is_24_bits = facts.datatype.n_bits == 24
+        whole = facts.datatype.container
+        subtype = next(name for name, item in _SUBTYPES.items() if whole in {item, real_of(item)})
         with told(draft), self._library_told():
             self._file = soundfile.SoundFile(
                 draft,
                 "w",
                 samplerate=int(facts.sample_rate_hz),
-                channels=2,
+                channels=facts.n_columns,
                 format=container,
                 subtype=subtype,
             )
@@ -297,10 +327,11 @@ class WavWriter:
             ) from error
 
     def write(self, codes: Codes) -> None:
-        """Append codes, shape (n, 2)."""
+        """Append codes, shape (n, n_columns)."""
+        refuse_misfit(self._path, codes, self._datatype, self._count.have)
         self._count.add(codes)
         block = np.ascontiguousarray(codes, self._datatype.dtype)
-        if self._datatype is CI24_LE:
+        if self._is_24_bits:
             block = block << 8
         with told(self._path), self._library_told():
             self._file.write(block)
