@@ -21,7 +21,7 @@ from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.phase_modulation import PhaseModulation
 from wavegen.sources.rotation import Rotation
 from wavegen.sources.single_carrier import SingleCarrier
-from wavegen.sources.subcarriers import IndexSet, PilotValues
+from wavegen.sources.subcarriers import IndexSet, PilotValues, SymbolSet
 from wavegen.sources.tones import Notch, Tone, Tones
 from wavegen.stages.channel.delay import Delay
 from wavegen.stages.channel.filter import Filter, FilterTaps
@@ -95,6 +95,37 @@ SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
                     Pilots(subcarriers=IndexSet.parse("1, 21"), values=PilotValues.parse([1, -1])),
                 ),
                 cyclic_prefix=CyclicPrefix.parse("1/4"),
+            )
+        ),
+        SourceExample(
+            settings=Ofdm(
+                subcarrier_spacing_hz=Fraction(15_625),
+                groups=(
+                    Group(
+                        subcarriers=IndexSet.parse("-18..17"),
+                        constellation=Constellation.parse("16qam"),
+                        symbols=SymbolSet.parse("0, 2"),
+                        spreading="dft",
+                    ),
+                    Group(
+                        subcarriers=IndexSet.parse("-12..-1"),
+                        constellation=Constellation.parse("bpsk"),
+                        symbols=SymbolSet.parse("1"),
+                        spreading="dft",
+                        rotation=Rotation.parse("pi/2"),
+                    ),
+                ),
+                pilots=(
+                    Pilots(
+                        subcarriers=IndexSet.parse("0..15 by 3"),
+                        values=PilotValues.parse({"random": "qpsk"}),
+                        symbols=SymbolSet.parse("1"),
+                    ),
+                ),
+                cyclic_prefix=CyclicPrefix.parse(["6 samples", "2 x 5 samples"]),
+                edge_window=Stretch.parse("3 samples"),
+                frame_symbols=4,
+                half_subcarrier_shift=True,
             )
         ),
     ),
