@@ -7,6 +7,7 @@ import pytest
 from wavegen.dsp.pulse import (
     ENERGY_LATTICE,
     Pulse,
+    Stretched,
     default_span,
     end_taper,
     mean_energy,
@@ -69,3 +70,13 @@ def test_residual_interference_grows_when_the_pulse_is_cut_short():
     assert residual_evm_percent(pulse) < 0.005
     assert residual_evm_percent(cut) > 0.1
     assert residual_evm_percent(RaisedCosine(roll_off=1.0).design(RATIO)) > 1
+
+
+@pytest.mark.parametrize("settings", [RootRaisedCosine(roll_off=0.22), Rectangular()])
+def test_a_pulse_on_half_symbols(settings):
+    pulse = settings.design(Fraction(4))
+    stretched = Stretched.of(pulse)
+    assert stretched.span_symbols == 2 * pulse.span_symbols
+    assert stretched.half_band == (pulse.half_band / 2 if pulse.half_band else None)
+    assert stretched.is_smooth == pulse.is_smooth
+    assert np.array_equal(stretched.on_lattice(4), pulse.on_lattice(8))
