@@ -94,3 +94,13 @@ def test_folded_energy_is_the_gain_for_white_noise_of_that_period(period):
     impulse[0] = 1
     expected = np.sum(np.abs(cyclic_convolution(impulse, taps)) ** 2)
     assert folded_energy(taps, period) == pytest.approx(expected, rel=1e-12)
+
+
+@pytest.mark.parametrize("lag", [3, -7, 20_001, -50_000])
+def test_lag_delays_the_filter(lag):
+    source = table(20_000)
+    taps = some_taps(40, is_complex=True)
+    want = np.roll(samples_of(Filtered.of(source, taps)), lag)
+    got = samples_of(Filtered.of(source, taps, lag=lag))
+    # Rows stand elsewhere under the samples, so the float32 rounding differs.
+    assert np.abs(got - want).max() < 1e-5 * np.abs(want).max()

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from decimal import Decimal
 from fractions import Fraction
 from typing import ClassVar, Literal, Self
 
@@ -78,13 +79,13 @@ class TimeSpan:
         Examples
         --------
         >>> TimeSpan.parse("0.25 ms").text(), TimeSpan(Fraction(25, 2), "samples").text()
-        ('250 us', '25/2 samples')
+        ('250 us', '12.5 samples')
         """
         if self.unit == "samples":
-            return f"{self.value} samples"
+            return f"{_number(self.value)} samples"
         units = DIMENSIONS["_s"].units
-        texts = [f"{self.value / units[word]} {word}" for word in _WRITTEN]
-        return min(texts, key=len)
+        texts = [f"{_number(self.value / units[word])} {word}" for word in _WRITTEN]
+        return min(texts, key=lambda text: ("/" in text, len(text)))
 
     def __str__(self) -> str:
         """Read as a recipe writes it."""
@@ -99,6 +100,12 @@ class TimeSpan:
             Hz.
         """
         return self.value if self.unit == "samples" else self.value * sample_rate_hz
+
+
+def _number(value: Fraction) -> str:
+    """Return a decimal number where one is exact and not long, else a ratio."""
+    text = f"{Decimal(value.numerator) / Decimal(value.denominator):f}"
+    return text if Fraction(text) == value else str(value)
 
 
 def _refuse(*, problem: str, remedy: str = f"Write it like {_EXAMPLE}.") -> QuantityError:

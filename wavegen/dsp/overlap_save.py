@@ -125,12 +125,13 @@ def filter_rows(
     block = min(-(-block // ROWS_AT_LEAST), -(-n_rows // ROWS_AT_LEAST)) * ROWS_AT_LEAST
     work = np.empty((block, n_fft), np.complex64)
     out = np.empty(n_out, np.complex64)
+    windows = samples[:0].reshape(0, n_fft)
+    if n_whole:
+        windows = np.lib.stride_tricks.sliding_window_view(samples, n_fft)[::hop]
     for first in range(0, n_rows, block):
         count = min(block, n_rows - first)
         whole = min(max(n_whole - first, 0), count)
-        for row in range(whole):
-            begin = (first + row) * hop
-            work[row] = samples[begin : begin + n_fft]
+        work[:whole] = windows[first : first + whole]
         for row in range(whole, count):
             rest = samples[(first + row) * hop :]
             work[row, : rest.size] = rest
@@ -140,10 +141,12 @@ def filter_rows(
         lines = scipy.fft.fft(work[:used], axis=1, overwrite_x=True)
         lines *= response
         rows = scipy.fft.ifft(lines, axis=1, overwrite_x=True)
-        for row in range(count):
-            begin = (first + row) * hop
-            end = min(begin + hop, n_out)
-            out[begin:end] = rows[row, half_length : half_length + end - begin]
+        begin = first * hop
+        full = min((n_out - begin) // hop, count)
+        end = begin + full * hop
+        out[begin:end].reshape(full, hop)[...] = rows[:full, half_length : half_length + hop]
+        if full < count:
+            out[end:] = rows[full, half_length : half_length + n_out - end]
     return out
 
 

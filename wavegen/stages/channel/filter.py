@@ -267,10 +267,10 @@ class Filter:
         self._tell(site, source, gain)
         if not self.keep_mean:
             return Filtered.of(source, taps, lag=lag)
-        if not gain:
+        if gain is None or gain < 10 ** (SILENT_DB / 10):
             raise site.error(
                 key="keep_mean",
-                problem="nothing is left behind the filter",
+                problem="next to nothing is left behind the filter",
                 allowed="a signal with power in the band",
                 remedy="Correct the band.",
             )
