@@ -237,7 +237,7 @@ def test_an_output_that_is_full_is_a_file_error():
 
 @pytest.mark.parametrize("encoding", ["ascii", "latin-1"])
 def test_results_fit_the_encoding_of_the_terminal(recipe, texts, monkeypatch, encoding):
-    path = recipe(texts.RECIPE.replace("Pier link", "Pier link \u2014 \u00b5"))
+    path = recipe(texts.RECIPE.replace("2 ms", "200 us"), "pier\u00b5.yaml")
     for arguments in (["measure", str(path)], ["measure", str(path), "--json"], ["--help"]):
         held = io.BytesIO()
         with monkeypatch.context() as patch:
@@ -247,7 +247,7 @@ def test_results_fit_the_encoding_of_the_terminal(recipe, texts, monkeypatch, en
             said = held.getvalue().decode(encoding)
         assert said
         if "--json" in arguments:
-            assert json.loads(said)["name"] == "pier"
+            assert json.loads(said)["name"] == "pier\u00b5"
 
 
 def test_negative_values_are_values():
