@@ -114,6 +114,22 @@ SOUND = [
     ),
     "{kind: single_carrier, constellation: qpsk, symbol_rate: 1 MHz, pulse: rectangular}",
     (
+        "{kind: single_carrier, constellation: 16apsk 2/3, symbol_rate: 1 MHz, rotation: 3pi/8, "
+        "data: {kind: prbs, sequence: pn20_zs, start: 7, inverted: true}}"
+    ),
+    (
+        "{kind: single_carrier, constellation: {rings: [4, 12], ratios: [2.85], "
+        "phases: [45 deg, 15 deg]}, symbol_rate: 1 MHz, pulse: {kind: taps, file: taps.txt}}"
+    ),
+    (
+        "{kind: single_carrier, constellation: qpsk, symbol_rate: 1 MHz, stagger: true, "
+        'pulse: half_sine, data: {kind: pattern, bits: "0011"}}'
+    ),
+    (
+        "{kind: single_carrier, constellation: 8psk, symbol_rate: 1 MHz, differential: true, "
+        "pulse: {kind: gaussian, bt: 0.5, symbols: impulses}, data: {kind: file, path: a/b.bin}}"
+    ),
+    (
         f'{{{OFDM}, edge_window: 16 samples, groups: [{{subcarriers: "-6..-1, 1..6", '
         "constellation: 64qam, level: -1.5 dB, data: {share: a}}]}"
     ),
