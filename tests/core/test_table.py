@@ -1,13 +1,17 @@
-from dataclasses import FrozenInstanceError
+import dataclasses
 
 import pytest
 
 from wavegen.core.table import Table
 
 
-def test_a_table_is_plain_data_that_stays():
-    table = Table(title="Levels", headings=("a", "b"), rows=(("1", "2"),))
+def test_holds_rows_of_text_and_compares_by_value():
+    table = Table(title="Levels", headings=("level, dB",), rows=(("1.0",),))
+    assert table == dataclasses.replace(table)
     assert table.right == frozenset()
-    assert table == Table(title="Levels", headings=("a", "b"), rows=(("1", "2"),))
-    with pytest.raises(FrozenInstanceError):
-        table.title = "other"
+
+
+def test_cannot_be_changed():
+    table = Table(title="Levels", headings=("a",), rows=())
+    with pytest.raises(dataclasses.FrozenInstanceError):
+        table.title = "Other"
