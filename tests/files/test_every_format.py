@@ -33,10 +33,13 @@ def samples():
     return made
 
 
+SELF_DESCRIBING = {"sigmf", "sigmf_archive", "raw"}
+"""Formats in which two real channels cannot be taken for I and Q of one."""
+
 PAIRS = [
     (name, key)
     for name, key in MEMBERS
-    if not (name == "wav" and FORMATS.load(name).datatypes[key].is_real)  # would be I and Q
+    if name in SELF_DESCRIBING or not FORMATS.load(name).datatypes[key].is_real
 ]
 WORDS = [
     (name, key, bits, align)
@@ -131,6 +134,14 @@ def test_two_channels_share_a_file(tmp_path, name, key):
             open_recording(paths[0], hints_for(form))
         assert "2 channels" in caught.value.problem
         assert "--channel" in caught.value.remedy
+
+
+@pytest.mark.parametrize(("name", "key"), sorted(set(MEMBERS) - set(PAIRS)))
+def test_two_real_channels_that_would_be_i_and_q(tmp_path, name, key):
+    with pytest.raises(FileError) as caught:
+        write(tmp_path, name, key, n_channels=2)
+    assert "I and Q" in caught.value.problem
+    assert "sigmf" in caught.value.remedy
 
 
 @pytest.mark.parametrize(("name", "key", "bits", "align"), WORDS)

@@ -6,7 +6,9 @@ FORMATS = Registry(
     "format",
     {
         "sigmf": "wavegen.files.sigmf:Sigmf",
+        "sigmf_archive": "wavegen.files.sigmf_archive:SigmfArchive",
         "wav": "wavegen.files.wav:Wav",
+        "npy": "wavegen.files.npy:Npy",
         "raw": "wavegen.files.raw:Raw",
     },
 )

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import os
+import re
 import secrets
 import unicodedata
 from pathlib import Path
@@ -20,6 +21,9 @@ _RESERVED = frozenset(
 
 _FORBIDDEN = frozenset('/\\:*?"<>|')
 """Separators, and what common file systems refuse."""
+
+_DRAFT = re.compile(r"\.(.+)\.[0-9a-f]{12}\.part", re.DOTALL)
+"""How :class:`Drafts` names a file that is not finished."""
 
 _LONGEST = 200
 """Bytes of a name; file systems hold 255, and temporaries add 23."""
@@ -75,6 +79,18 @@ def _fault_of(name: str) -> str | None:
         (length > _LONGEST, f"is {length} bytes long"),
     )
     return next((problem for is_faulty, problem in faults if is_faulty), None)
+
+
+def final_name(draft: Path) -> str:
+    """Return the name that a file of :class:`Drafts` will have; any other file's own name.
+
+    Examples
+    --------
+    >>> final_name(Path("out/.run.sigmf.0123456789ab.part")), final_name(Path("run.sigmf"))
+    ('run.sigmf', 'run.sigmf')
+    """
+    found = _DRAFT.fullmatch(draft.name)
+    return found[1] if found else draft.name
 
 
 class Drafts:

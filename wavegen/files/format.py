@@ -470,6 +470,23 @@ def check_facts(form: Format, facts: FileFacts, where: str) -> None:
             )
 
 
+def refuse_real_pair(facts: FileFacts, where: str) -> None:
+    """Refuse two real channels, for formats where two columns are I and Q of one.
+
+    Raises
+    ------
+    FileError
+        At ``where``.
+    """
+    if facts.datatype.is_real and facts.n_channels > 1:
+        raise FileError(
+            where=where,
+            problem="two real channels would read as I and Q of one",
+            allowed="one real channel, or complex ones",
+            remedy="Write sigmf or raw instead, or one file a channel.",
+        )
+
+
 def told_rate(
     path: Path, *, stated_hz: Fraction | None, hints: ReadHints
 ) -> tuple[Fraction, tuple[str, ...]]:

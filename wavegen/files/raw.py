@@ -129,7 +129,7 @@ def _datatype_of(path: Path, hints: ReadHints) -> Datatype:
 
 
 class RawWriter:
-    """Writes one raw file.
+    """Writes one raw file, or one with nothing but a header before its samples.
 
     Parameters
     ----------
@@ -137,14 +137,17 @@ class RawWriter:
         The (temporary) file.
     facts : FileFacts
         What will come.
+    header : bytes
+        What comes first.
     """
 
-    def __init__(self, draft: Path, facts: FileFacts) -> None:
+    def __init__(self, draft: Path, facts: FileFacts, *, header: bytes = b"") -> None:
         self._data = InterleavedWriter(
             draft,
             datatype=facts.datatype,
             n_samples=facts.n_samples,
             n_channels=facts.n_channels,
+            header=header,
         )
         self._sha512 = ""
 
@@ -153,7 +156,7 @@ class RawWriter:
         self._data.write(codes)
 
     def finish(self, statistics: Mapping[str, object] | None = None) -> None:
-        """Close the file; a raw file has no room for statistics."""
+        """Close the file; it has no room for statistics."""
         self._sha512 = self._data.complete()
 
     def close(self) -> None:

@@ -35,10 +35,30 @@ def read_json(path: Path, most_bytes: int = MOST_BYTES) -> dict[str, object]:
         double precision, nested too deep, a key twice in one object, or no object at the top.
     """
     size = regular_size(path)
-    if size > most_bytes:
-        raise _fault(path, f"has {size / 1e6:.1f} MB", f"up to {most_bytes / 1e6:.0f} MB of JSON")
+    _refuse_large(path, size, most_bytes)
     with told(path):
         content = path.read_bytes()
+    return parse_json(path, content, most_bytes)
+
+
+def parse_json(path: Path, content: bytes, most_bytes: int = MOST_BYTES) -> dict[str, object]:
+    """Return the JSON object in the bytes of a file.
+
+    Parameters
+    ----------
+    path : Path
+        Where they come from, for messages.
+    content : bytes
+        UTF-8 text.
+    most_bytes : int
+        Largest size that is read.
+
+    Raises
+    ------
+    FileError
+        As :func:`read_json`.
+    """
+    _refuse_large(path, len(content), most_bytes)
     try:
         text = content.decode("utf-8-sig")
         found = json.loads(
@@ -63,6 +83,11 @@ def read_json(path: Path, most_bytes: int = MOST_BYTES) -> dict[str, object]:
     if not isinstance(found, dict):
         raise _fault(path, f"holds a JSON {type(found).__name__}", "a JSON object")
     return found
+
+
+def _refuse_large(path: Path, size: int, most_bytes: int) -> None:
+    if size > most_bytes:
+        raise _fault(path, f"has {size / 1e6:.1f} MB", f"up to {most_bytes / 1e6:.0f} MB of JSON")
 
 
 def finite_json(value: object) -> str | None:

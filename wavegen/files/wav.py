@@ -42,6 +42,7 @@ from wavegen.files.format import (
     Writer,
     check_facts,
     refuse_other_datatype,
+    refuse_real_pair,
     told_channel,
     told_rate,
     told_word,
@@ -115,13 +116,7 @@ class Wav:
         the library takes rates up to ``2^31 - 1``.
         """
         check_facts(self, facts, where)
-        if facts.datatype.is_real and facts.n_channels > 1:
-            raise FileError(
-                where=where,
-                problem="two real channels would read as I and Q of one",
-                allowed="one real channel, or complex ones",
-                remedy="Write sigmf or raw instead, or one file a channel.",
-            )
+        refuse_real_pair(facts, where)
         rate = facts.sample_rate_hz
         row_bytes = facts.datatype.bytes_per_sample * facts.n_channels
         most = min((1 << 31) - 1, ((1 << 32) - 1) // row_bytes)
