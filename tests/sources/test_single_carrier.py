@@ -562,3 +562,14 @@ def test_the_linearised_pulse_is_that_of_its_formula():
         expected += symbols[k % 64] * shape.values(t - k)
     scale = np.sqrt(np.sum(shape.on_lattice(4) ** 2) / 4)
     assert whole(signal) == pytest.approx(expected / scale, abs=1e-5)
+
+
+def test_rails_from_any_half_symbol():
+    made = settings(Fraction(1_000_000), "16qam", stagger=True)
+    signal = made.build(site_for(made, 20))
+    rails = signal.inputs[0]
+    ideal = whole(signal.ideal)
+    period = np.stack([ideal.real, 1j * ideal.imag], axis=1).ravel() * np.sqrt(2)
+    for start, stop in ((0, 80), (1, 80), (3, 4), (4, 5), (7, 20), (-3, 90)):
+        got = evaluate({rails: (start, stop)})[rails]
+        assert got == pytest.approx(period[np.arange(start, stop) % 80], abs=1e-6)
