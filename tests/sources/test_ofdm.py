@@ -10,7 +10,8 @@ from wavegen.core.site import Cycle, Site
 from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.ofdm import Group, Ofdm, Pilots
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
-from wavegen.sources.subcarriers import IndexSet, PilotValues
+from wavegen.sources.rotation import Rotation
+from wavegen.sources.subcarriers import IndexSet, PilotValues, SymbolSet
 
 SPACING = Fraction(312500)
 QPSK = Constellation.parse("qpsk")
@@ -214,3 +215,98 @@ def test_an_edge_lowers_what_lies_out_of_band_and_keeps_the_loop_closed() -> Non
     # Derivation: the edge multiplies sidelobes at f by cos(pi f E) / (1 - (2 f E)^2), E its
     # length; at 120 spacings and E = 1/8 useful symbol that is 1/900 in amplitude or less.
     assert 10 * np.log10(rough[far].sum() / smooth[far].sum()) > 50
+
+
+def on(symbols) -> SymbolSet:
+    return SymbolSet.parse(symbols)
+
+
+SHARED = replace(
+    BASE,
+    groups=(group("1..20", symbols=on("0, 2")), group("1..20", symbols=on(1))),
+    pilots=(replace(pilots("1, 20", [1, -1], 3.0), symbols=on(3)),),
+    frame_symbols=5,
+)
+
+
+@pytest.mark.parametrize(
+    ("prefix", "frame", "n_symbols"),
+    [("1/4", None, 1), ("1/4", 5, 5), ("20 samples, 6 x 16 samples", 14, 14), ("7 x 1/4", 5, 5)],
+)
+def test_the_cycle_holds_whole_patterns_and_whole_frames(prefix, frame, n_symbols) -> None:
+    settings = replace(BASE, cyclic_prefix=CyclicPrefix.parse(prefix), frame_symbols=frame)
+    found = settings.cycle(SPACING * 64, "signal")
+    assert found.n_symbols == n_symbols
+    extra = 4 * n_symbols // 7 if "20" in prefix else 0
+    assert found.n_samples == 80 * n_symbols + extra
+
+
+def test_the_prefixes_as_listed_are_the_frame_unless_it_is_given() -> None:
+    settings = replace(SHARED, frame_symbols=None, cyclic_prefix=CyclicPrefix.parse("7 x 1/4"))
+    assert settings.cycle(SPACING * 64, "signal").n_symbols == 7
+    values = carried(settings.build(site(14)))
+    assert np.all(power_db(values[[4, 5, 6, 11, 12, 13]]) < -200)
+
+
+def test_a_cycle_too_long_is_refused() -> None:
+    settings = replace(
+        SHARED, frame_symbols=9999, cyclic_prefix=CyclicPrefix.parse("20 samples, 16 x 16 samples")
+    )
+    with pytest.raises(RecipeError) as caught:
+        settings.cycle(SPACING * 64, "signal")
+    assert caught.value.where == "signal.frame"
+    assert "169983 symbols" in caught.value.problem
+
+
+@pytest.mark.parametrize(
+    ("change", "key"),
+    [
+        ({"frame_symbols": 3}, "pilots[0].symbols"),
+        ({"frame_symbols": None}, "groups[0].symbols"),
+        ({"groups": (group("1..20", symbols=on("0..2")), group("3"))}, "groups[1].subcarriers"),
+        ({"groups": (group("1..5", symbols=on("3")),)}, "pilots[0].subcarriers"),
+    ],
+)
+def test_schedules_that_cannot_be_are_errors_at_their_key(change, key) -> None:
+    with pytest.raises(RecipeError) as caught:
+        replace(SHARED, **change).build(site(30))
+    assert caught.value.where == f"signal.{key}"
+
+
+def test_shared_subcarriers_and_silence() -> None:
+    place = site(50)
+    signal = SHARED.build(place)
+    assert [note.kind for note in place.notes] == ["info"]
+    values = carried(signal).reshape(10, 5, 64)
+    assert not values[:, 4].any()
+    assert np.allclose(np.abs(values[:, :3, 1:21]), np.abs(values[0, 0, 1]), rtol=1e-5)
+    assert np.allclose(values[:, 3, 1] / np.abs(values[0, 0, 1]), 10**0.15, rtol=1e-5)
+    n_on = samples_of(signal.ideal).reshape(50, -1).any(axis=1).sum()
+    assert n_on == 40
+    assert signal.mean_power == 1
+
+
+def test_mean_power_of_a_schedule_is_one_on_average() -> None:
+    # As above: few subcarriers, a constellation off its centre, a long edge; now with spreading,
+    # rotation, a shift by half a subcarrier, boosted pilots and a silent symbol.
+    lopsided = Constellation.of_points([[1, 0], [0, 1]])
+    settings = replace(
+        BASE,
+        groups=(
+            group("-4..4", constellation=lopsided, symbols=on("0, 2"), spreading="dft"),
+            group("-2..3", constellation=lopsided, symbols=on(1), rotation=Rotation.parse("pi/3")),
+        ),
+        pilots=(replace(pilots("6, 7", [1, [0, 1]], 3.0), symbols=on("0..1, 3")),),
+        cyclic_prefix=CyclicPrefix.parse("8 samples, 12 samples"),
+        edge_window=Stretch.parse("8 samples"),
+        frame_symbols=5,
+        half_subcarrier_shift=True,
+    )
+    n = settings.cycle(SPACING * 16, "signal").n_samples
+    n_batches, n_cycles = 200, 100
+    where = replace(site(1, n_fft=16), n_samples=n * n_batches * n_cycles)
+    x = samples_of(settings.build(where)).astype(complex)
+    means = np.mean(np.abs(x.reshape(n_batches, -1)) ** 2, axis=1)
+    sigma = means.std() / np.sqrt(n_batches)
+    assert sigma < 6e-4
+    assert abs(means.mean() - 1) < 4 * sigma

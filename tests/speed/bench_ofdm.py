@@ -11,6 +11,7 @@ import time
 from collections.abc import Callable
 from fractions import Fraction
 from importlib.util import find_spec
+from typing import Any
 
 import numpy as np
 import scipy.fft
@@ -23,7 +24,7 @@ from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.ofdm import Group, Ofdm
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.ofdm_signal import Prefixed
-from wavegen.sources.subcarriers import IndexSet
+from wavegen.sources.subcarriers import IndexSet, SymbolSet
 
 CASES = {
     "N=2048, 1200 x 64QAM, LTE prefixes": (
@@ -62,24 +63,54 @@ CASES = {
         "72/1024",
         "0 samples",
     ),
+    "N=2048, 1200 x 64QAM, DFT-spread": (
+        2048,
+        "-600..599",
+        "64qam",
+        ["160/2048", "6 x 144/2048"],
+        "0 samples",
+        {"spreading": "dft"},
+    ),
+    "the same shifted by half a subcarrier": (
+        2048,
+        "-600..599",
+        "64qam",
+        ["160/2048", "6 x 144/2048"],
+        "0 samples",
+        {"spreading": "dft"},
+        {"half_subcarrier_shift": True},
+    ),
+    "N=2048, 1200 x 64QAM, on in 12 of 14 symbols": (
+        2048,
+        "-600..599",
+        "64qam",
+        ["160/2048", "6 x 144/2048"],
+        "0 samples",
+        {"symbols": SymbolSet.parse("0..11")},
+        {"frame_symbols": 14},
+    ),
 }
+"""FFT length, subcarriers, constellation, prefixes, edge; more of the group; more of the signal."""
 
 
-def build(case: tuple[object, ...], n_samples: int) -> Prefixed:
+def build(case: tuple[Any, ...], n_samples: int) -> Prefixed:
     """Return the signal of a case, about so long."""
-    n_fft, subcarriers, constellation, prefix, edge = case
+    n_fft, subcarriers, constellation, prefix, edge, *more = case
+    of_group, of_signal = (*more, {}, {})[:2]
     settings = Ofdm(
         subcarrier_spacing_hz=Fraction(15000),
         groups=(
             Group(
                 subcarriers=IndexSet.parse(subcarriers),
                 constellation=Constellation.parse(constellation),
+                **of_group,
             ),
         ),
         cyclic_prefix=CyclicPrefix.parse(prefix),
         edge_window=Stretch.parse(edge),
+        **of_signal,
     )
-    rate = Fraction(15000) * int(str(n_fft))
+    rate = Fraction(15000) * n_fft
     cycle = settings.cycle(rate, "signal").n_samples
     return settings.build(
         Site(
@@ -130,13 +161,13 @@ def main() -> None:
     parser.add_argument("--samples", type=int, default=1 << 24)
     parser.add_argument("--repeats", type=int, default=9)
     chosen = parser.parse_args()
-    print("large blocks kept:", keep_large_blocks())  # noqa: T201 - a benchmark prints
+    print("large blocks kept:", keep_large_blocks())
     for name, case in CASES.items():
         signal = build(case, chosen.samples)
         best = ratios(signal, chosen.repeats)
         rate = signal.n_samples / best["rendered"] / 1e6
         shown = ", ".join(f"{task} {best[task] / best['bare']:.2f}" for task in list(best)[1:])
-        print(f"{name}: {shown} times the bare FFTs; {rate:.0f} MS/s")  # noqa: T201
+        print(f"{name}: {shown} times the bare FFTs; {rate:.0f} MS/s")
 
 
 if __name__ == "__main__":
