@@ -42,7 +42,7 @@ def test_any_range_is_that_of_the_loop(sequence):
 
 @pytest.mark.parametrize(
     ("period", "words"),
-    [(511, None), (1022, None), (100, "200 of the 511 bits"), (400, "1 periods and 289 bits")],
+    [(511, None), (1022, None), (100, "holds 200 bits of pn9"), (400, "1 period and 289 bits")],
 )
 def test_a_cut_is_noted(period, words):
     here = site()
@@ -54,3 +54,4 @@ def test_a_cut_is_noted(period, words):
         ("warning", "signal.groups[1].data")
     ]
     assert words in here.notes[0].text
+    assert "multiples of 511 symbols" in here.notes[0].text

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 from typing import Protocol
 
@@ -144,13 +145,15 @@ def bind_bits(
     -------
     BitSymbols
     """
-    total, rest = n_bits * period, n_bits * period % sequence.period
+    whole, rest = divmod(n_bits * period, sequence.period)
     if rest:
-        whole = total // sequence.period
-        held = f"{whole} periods and {rest} bits" if whole else f"{rest} of the"
+        held = (
+            f"{whole} period{'s' if whole > 1 else ''} and {rest} bits" if whole else f"{rest} bits"
+        )
         text = (
-            f"the loop holds {held} {'of ' if whole else ''}{sequence.period} bits of {called}, "
-            "and cuts it at the seam."
+            f"the loop holds {held} of {called}, whose period is {sequence.period} bits, and cuts "
+            f"it at the seam; multiples of {sequence.period // math.gcd(sequence.period, n_bits)} "
+            "symbols hold whole periods."
         )
         where = f"{site.path}{label}.data"
         site.notes.append(Note(kind="warning", where=where, text=text))
