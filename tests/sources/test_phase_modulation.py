@@ -15,6 +15,9 @@ from wavegen.laws.constant import ConstantLaw
 from wavegen.meters.seam import seam_figure
 from wavegen.recipe.dump import dump
 from wavegen.recipe.load import load_text
+from wavegen.sources import phase_modulation
+from wavegen.sources.data.file import File
+from wavegen.sources.data.prbs import PseudoRandom
 from wavegen.sources.data.random import Random
 from wavegen.sources.phase_modulation import PhaseModulation
 
@@ -36,6 +39,9 @@ class Given:
     """Data from a list, repeated; no random ones."""
 
     values: tuple[int, ...]
+
+    def period_bits(self, folder=None):
+        return len(self.values)
 
     def bind(self, site, *, n_bits, period, label=""):
         return self
@@ -143,7 +149,8 @@ def test_random_symbols_are_changed_with_a_note():
     assert (note.kind, note.where) == ("rounded", "signal.data")
     tail = signal.symbols.tail
     assert 0 < tail.size <= 25
-    assert f"last {tail.size} of 2600" in note.text
+    assert f"last {tail.size} symbols were" in note.text
+    assert "loop of 2600" in note.text
 
 
 def test_other_data_are_refused_with_lengths_that_close():
@@ -153,11 +160,50 @@ def test_other_data_are_refused_with_lengths_that_close():
     with pytest.raises(RecipeError) as found:
         settings.build(site_for(settings, 1))
     assert found.value.where == "signal.data"
-    assert "add up to 4" in found.value.problem
-    assert "25 times as long, 650 symbols" in found.value.remedy
+    assert "add up to 4, no multiple of 25" in found.value.problem
+    assert "multiples of 650 symbols" in found.value.allowed
     site = site_for(settings, 25)
     settings.build(site)
     assert site.notes == []
+
+
+@pytest.mark.parametrize(
+    ("scheme", "more", "n_symbols"),
+    [
+        # pn9: 511 bits, 256 ones; two periods for an even length, levels of +-2 then
+        ("msk", {}, 4 * 511),
+        ("gfsk", {}, 50 * 511),
+        ("soqpsk_tg", {}, 2 * 511),
+        ("oqpsk_half_sine", {}, 2 * 511),
+        # two periods of pn9 hold 511 dibits, of levels -1 in all: eight times to close
+        ("four_level_fm", {}, 8 * 511),
+    ],
+)
+def test_cycle_with_whole_periods_of_the_data(scheme, more, n_symbols):
+    settings = made(scheme, RATE / 8, data=PseudoRandom(sequence="pn9"), **more)
+    cycle = settings.data_cycle(RATE, "signal")
+    assert (cycle.n_samples, cycle.n_symbols) == (8 * n_symbols, n_symbols)
+    site = dataclasses.replace(site_for(settings, 1), n_samples=cycle.n_samples)
+    signal = settings.build(site)
+    assert site.notes == []
+    first = samples_of(signal, -4, 40)
+    assert np.allclose(first[4:], samples_of(signal, 0, 40))
+
+
+def test_cycle_of_data_too_long_to_read(monkeypatch):
+    monkeypatch.setattr(phase_modulation, "MOST_SCANNED", 100)
+    settings = made("gfsk", RATE / 8, data=PseudoRandom(sequence="pn9"))
+    assert settings.data_cycle(RATE, "signal").n_symbols == 25 * 2 * 511
+    offset = made("soqpsk_tg", RATE / 8, data=PseudoRandom(sequence="pn9"))
+    assert offset.data_cycle(RATE, "signal").n_symbols == 2 * 511
+    assert made("gfsk").data_cycle(RATE, "signal") is None
+
+
+def test_data_that_cannot_be_read(tmp_path):
+    settings = made("msk", data=File(path="nowhere.bin"))
+    with pytest.raises(RecipeError) as found:
+        settings.data_cycle(RATE, "signal", tmp_path)
+    assert found.value.where == "signal.data.path"
 
 
 def test_given_data_that_close_are_kept():

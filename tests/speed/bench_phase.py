@@ -54,7 +54,7 @@ def main():
             best[name] = min(best[name], time.process_time() - start)
     for (scheme, ratio), seconds in best.items():
         rate = N_SAMPLES / seconds / 1e6
-        print(f"{scheme:16s} {ratio:>16s} samples a symbol {rate:8.1f} MS/s")  # noqa: T201
+        print(f"{scheme:16s} {ratio:>16s} samples a symbol {rate:8.1f} MS/s")
 
 
 if __name__ == "__main__":

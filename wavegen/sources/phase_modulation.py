@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass, field
 from fractions import Fraction
+from pathlib import Path
 from typing import Annotated, Any, Literal
 
 import numpy as np
@@ -13,7 +14,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.registry import Member
 from wavegen.core.site import Cycle, Note, Site, samples_per
-from wavegen.core.units import format_hz
+from wavegen.core.units import QuantityError, format_hz
 from wavegen.dsp.phase_pulses import (
     PhasePulse,
     four_level_phase,
@@ -38,6 +39,9 @@ Scheme = Literal["msk", "gmsk", "gfsk", "cpfsk", "four_level_fm", "soqpsk_tg", "
 
 MOST_STATES = 10_000
 """Closing a loop may take as many symbols; an index of four decimals needs no more."""
+
+MOST_SCANNED = 1 << 24
+"""Symbols of data that are read to find how many of their periods close a loop."""
 
 _FIELDS: dict[str, tuple[tuple[str, ...], tuple[str, ...]]] = {
     "msk": ((), ("differential",)),
@@ -120,10 +124,60 @@ class PhaseModulation:
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
         """Return the shortest loop: whole symbols, an even number; of four if differential."""
-        n_samples, n_symbols = samples_per(self.symbol_rate_hz, sample_rate_hz)
-        parity = 4 if self.differential else 2
-        times = parity // math.gcd(n_symbols, parity)
-        return Cycle(n_samples=n_samples * times, n_symbols=n_symbols * times)
+        return self._whole(sample_rate_hz, 1)
+
+    def data_cycle(
+        self, sample_rate_hz: Fraction, path: str, folder: Path = Path()
+    ) -> Cycle | None:
+        """Return the shortest loop of whole periods of the data over which the phase closes.
+
+        Parameters
+        ----------
+        sample_rate_hz : Fraction
+            Hz.
+        path : str
+            Path in the recipe, for messages.
+        folder : Path
+            What the paths of a recipe are relative to.
+
+        Returns
+        -------
+        Cycle or None
+            None for data without a period. Where they are longer than 2^24 symbols, a loop that
+            closes whatever they are.
+
+        Raises
+        ------
+        RecipeError
+            Data from a file that cannot be read.
+        """
+        site = Site(
+            sample_rate_hz=sample_rate_hz, n_samples=1, seed=0, label=path, path=path, folder=folder
+        )
+        try:
+            period = self.data.period_bits(folder)
+        except QuantityError as error:
+            raise site.error(
+                key="data.path",
+                problem=error.problem,
+                allowed=error.allowed,
+                remedy=error.remedy,
+            ) from error
+        if period is None:
+            return None
+        n_bits = self._word_bits()
+        whole = self._whole(sample_rate_hz, period // math.gcd(period, n_bits)).n_symbols
+        n_states = states_of(self._index())
+        total = 0  # what the others encode closes by itself
+        if self._alphabet()[1] == "plain":
+            total = self._scan(site, whole)[1] if whole <= MOST_SCANNED else 1
+        return self._whole(sample_rate_hz, whole * (n_states // math.gcd(total, n_states)))
+
+    def _whole(self, sample_rate_hz: Fraction, multiple: int) -> Cycle:
+        """Return the shortest loop of so many symbols or a multiple of them."""
+        a, b = samples_per(self.symbol_rate_hz, sample_rate_hz)
+        n_symbols = math.lcm(b, multiple, 4 if self.differential else 2)
+        return Cycle(n_samples=n_symbols // b * a, n_symbols=n_symbols)
 
     def build(self, site: Site) -> PhaseSignal:
         """Return the carrier, cyclic over the loop of the site, of unit power at all times.
@@ -137,15 +191,10 @@ class PhaseModulation:
         """
         self._check_keys(site)
         index = self._index()
-        alphabet, encoding = self._alphabet()
-        self._check_size(site, index, alphabet[-1])
+        self._check_size(site, index, self._alphabet()[0][-1])
         n_samples, n_symbols = samples_per(self.symbol_rate_hz, site.sample_rate_hz)
         period = site.n_samples * n_symbols // n_samples
-        n_bits = (len(alphabet) - 1).bit_length() if encoding == "plain" else 1
-        words = self.data.bind(site, n_bits=n_bits, period=period)
-        symbols, total = scan(
-            words, encoding=encoding, numbers=self._numbers(), alphabet=alphabet, period=period
-        )
+        symbols, total = self._scan(site, period)
         if total % states_of(index):
             symbols = self._close(site, symbols, total, states_of(index))
         return PhaseSignal(
@@ -155,7 +204,7 @@ class PhaseModulation:
             symbols=symbols,
             pulse=self._pulse(),
             index=index,
-            start_turns=Fraction(start_eighths(words, encoding), 8),
+            start_turns=Fraction(start_eighths(symbols.words, symbols.encoding), 8),
             ratio=(n_samples, n_symbols),
         )
 
@@ -177,6 +226,22 @@ class PhaseModulation:
         order = 4 if self.scheme == "four_level_fm" else self.levels or 2
         levels = tuple(range(1 - order, order, 2))
         return levels, "differential" if self.differential else "plain"
+
+    def _word_bits(self) -> int:
+        """Return the bits of data that one symbol takes."""
+        alphabet, encoding = self._alphabet()
+        return (len(alphabet) - 1).bit_length() if encoding == "plain" else 1
+
+    def _scan(self, site: Site, period: int) -> tuple[PhaseSymbols, int]:
+        """Return the symbols of a loop of so many, and their levels added up."""
+        alphabet, encoding = self._alphabet()
+        return scan(
+            self.data.bind(site, n_bits=self._word_bits(), period=period),
+            encoding=encoding,
+            numbers=self._numbers(),
+            alphabet=alphabet,
+            period=period,
+        )
 
     def _numbers(self) -> NDArray[np.uint8]:
         if self.scheme == "four_level_fm":
@@ -247,21 +312,22 @@ class PhaseModulation:
             order = len(symbols.alphabet)
             tail = closing_tail(last, total=total, n_states=n_states, order=order)
         if tail is None:
-            times = n_states // math.gcd(total, n_states)
+            cycle = self.data_cycle(site.sample_rate_hz, site.path, site.folder)
+            lengths = "even lengths" if cycle is None else f"multiples of {cycle.n_symbols} symbols"
             raise site.error(
                 key="data",
                 problem=f"over {period} symbols the phase does not close: the levels add up to "
-                f"{total}",
-                allowed=f"sums that are multiples of {n_states}",
-                remedy=f"Make the loop {times} times as long, {times * period} symbols (data that "
-                "repeat then close it), or use random data.",
+                f"{total}, no multiple of {n_states}",
+                allowed=f"{lengths}, which hold whole periods of the data and close",
+                remedy="Make the loop so long, or use random data, whose last symbols can be "
+                "chosen.",
             )
+        which = f"{tail.size} symbols were" if tail.size > 1 else "symbol was"
         site.notes.append(
             Note(
                 kind="rounded",
                 where=f"{site.path}.data",
-                text=f"The last {tail.size} of {period} symbols were chosen so that the phase "
-                "closes over the loop.",
+                text=f"The last {which} chosen so that the phase closes over the loop of {period}.",
                 asked=f"levels that add up to {total}",
                 given=f"a multiple of {n_states}",
             )
