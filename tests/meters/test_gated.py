@@ -1,3 +1,5 @@
+import pickle
+
 import numpy as np
 import pytest
 
@@ -78,3 +80,8 @@ def test_what_is_off_may_be_anything(held, samples):
 def test_nothing_on_is_told(held):
     with pytest.raises(SignalError):
         read(held, np.ones(400), Bursts(period_samples=400, runs=((10, 20),), ramp_samples=5))
+
+
+def test_a_worker_gets_the_same_meter():
+    meter = GatedPowerMeter(bursts=BURSTS)
+    assert pickle.loads(pickle.dumps(meter)) == meter  # noqa: S301 - our own bytes
