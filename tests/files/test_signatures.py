@@ -21,7 +21,7 @@ def archive_heads():
     return [
         (packed.getvalue(), "zip"),
         (tape.getvalue(), "tar"),
-        (gzip.compress(bytes(100)), "gzip"),
+        (gzip.compress(bytes(100), mtime=0), "gzip"),
         (array.getvalue(), "NumPy"),
     ]
 

@@ -68,7 +68,7 @@ def main():
     rates = {name: count / best[name] for name, (count, _) in runs.items()}
     reference = max(rate for name, rate in rates.items() if "taps" in name)
     for name, rate in rates.items():
-        print(f"{name:32s} {rate / 1e6:8.2f} MS/s {rate / reference:8.2f} times")  # noqa: T201
+        print(f"{name:32s} {rate / 1e6:8.2f} MS/s {rate / reference:8.2f} times")
 
 
 def _filter(taps, kind, symbols):
