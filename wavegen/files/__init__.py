@@ -9,6 +9,7 @@ FORMATS = Registry(
         "sigmf_archive": "wavegen.files.sigmf_archive:SigmfArchive",
         "wav": "wavegen.files.wav:Wav",
         "npy": "wavegen.files.npy:Npy",
+        "csv": "wavegen.files.csv_iq:CsvIq",
         "raw": "wavegen.files.raw:Raw",
     },
 )
