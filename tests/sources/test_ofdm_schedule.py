@@ -1,3 +1,5 @@
+import pickle
+
 import numpy as np
 import pytest
 
@@ -29,6 +31,15 @@ def test_always_on() -> None:
     assert presence.is_always
     assert presence.places(7, 9) is None
     assert presence.rank(9) == 9
+
+
+def test_it_is_sent_without_what_it_counted() -> None:
+    presence = Presence(on=PATTERN)
+    before = len(pickle.dumps(presence))
+    assert presence.rank(12) == 7
+    packed = pickle.dumps(presence)
+    assert len(packed) == before
+    assert pickle.loads(packed).rank(12) == 7  # noqa: S301 - our own bytes
 
 
 def test_symbols_of_a_frame() -> None:

@@ -25,6 +25,10 @@ class Presence:
 
     on: NDArray[np.bool_]
 
+    def __getstate__(self) -> dict[str, object]:
+        """Leave out what is counted again: workers get a small description."""
+        return {"on": self.on}
+
     @cached_property
     def is_always(self) -> bool:
         """Whether the part is on in every symbol."""
