@@ -10,6 +10,7 @@ FORMATS = Registry(
         "wav": "wavegen.files.wav:Wav",
         "npy": "wavegen.files.npy:Npy",
         "csv": "wavegen.files.csv_iq:CsvIq",
+        "mat": "wavegen.files.mat:Mat",
         "raw": "wavegen.files.raw:Raw",
     },
 )
