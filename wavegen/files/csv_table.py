@@ -178,7 +178,7 @@ def _parsed(block: list[bytes], dialect: Dialect, n_columns: int) -> NDArray[np.
             return None
     elif any(line.rstrip().rstrip(separator).count(separator) != n_columns - 1 for line in block):
         return None
-    text = b"".join(block)
+    text = b"".join(block).removeprefix(b"\xef\xbb\xbf")
     if b"_" in text:  # Python would read 1_000
         return None
     if dialect.decimal_comma:
@@ -244,7 +244,7 @@ def open_table(path: Path) -> Table:
     n_columns = len(_fields(sample[0], separator))
     if n_columns > _MOST_COLUMNS:
         raise _refused(path, f"has {n_columns} columns", "Keep the columns that are needed.")
-    headings = () if heading is None else _headings(heading, separator)
+    headings = () if heading is None else _headings(heading, separator, n_columns)
     if headings and len(headings) != n_columns:
         raise _refused(
             path,
@@ -314,8 +314,10 @@ def _dialect(path: Path, sample: list[bytes], heading: bytes | None) -> Dialect:
     return Dialect(separator=name, decimal_comma=has_comma)
 
 
-def _headings(line: bytes, separator: bytes) -> tuple[Heading, ...]:
-    if separator == b" " and not re.search(rb"[,;\t]", line):
+def _headings(line: bytes, separator: bytes, n_columns: int) -> tuple[Heading, ...]:
+    if n_columns == 1 and not re.search(rb"[,;\t]", line.strip()):
+        fields = [line]
+    elif separator == b" " and not re.search(rb"[,;\t]", line):
         fields = re.split(rb"\s+(?![(\[])", line.strip())
     else:
         fields = _fields(line, separator)
@@ -335,7 +337,10 @@ def heading_of(text: str) -> Heading:
     plain = text.strip().removeprefix("\ufeff").strip().strip("\"'").strip()
     found = _BRACKETED.fullmatch(plain) or _DIVIDED.fullmatch(plain)
     name, unit = (found[1], found[2].strip()) if found else (plain, "")
-    words = [word for word in re.split(r"[\s_\-]+", name.strip().lower()) if word]
+    words = [word for word in re.split(r"[\s_\-]+", name.strip()) if word]
+    if not unit and words and words[-1] == "MW":
+        unit = words.pop()  # a milliwatt is another thing
+    words = [word.lower() for word in words]
     if not unit and len(words) > 1 and words[-1] in _UNIT_WORDS:
         unit = _UNIT_WORDS[words.pop()]
     return Heading(name="_".join(words), unit=unit)
