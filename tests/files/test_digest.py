@@ -31,3 +31,12 @@ def test_claims_are_checked(tmp_path):
     with pytest.raises(FileError) as caught:
         verify_hash(claimed)
     assert caught.value.where == str(path)
+
+
+def test_a_part_of_a_file(tmp_path):
+    content = np.random.default_rng(1).bytes((1 << 20) + 300)
+    (tmp_path / "x").write_bytes(content)
+    digest = sha512_of(tmp_path / "x", start=100, n_bytes=1 << 20)
+    assert digest == hashlib.sha512(content[100 : 100 + (1 << 20)]).hexdigest()
+    with pytest.raises(FileError):
+        sha512_of(tmp_path / "x", start=300, n_bytes=1 << 21)

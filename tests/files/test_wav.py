@@ -7,7 +7,7 @@ import pytest
 import soundfile
 
 from wavegen.core.errors import FileError
-from wavegen.files.datatypes import CF32_LE, CI16_LE, CI24_LE
+from wavegen.files.datatypes import CF32_LE, CI16_LE, CI24_LE, RI16_LE
 from wavegen.files.digest import sha512_of
 from wavegen.files.format import FileFacts, ReadHints
 from wavegen.files.riff import walk
@@ -187,3 +187,28 @@ def test_reading_beyond_4_gib(tmp_path):
     assert recording.n_samples == n_samples
     codes = recording.signal.codes(n_samples - 3, n_samples)
     np.testing.assert_array_equal(codes, [[0, 0], [1, 2], [3, 4]])
+
+
+def test_one_channel_is_a_real_signal(tmp_path):
+    path = tmp_path / "x.wav"
+    tone = np.cos(2 * np.pi * 0.1 * np.arange(4000))
+    soundfile.write(path, np.rint(tone * 16384).astype(np.int16), 48_000)
+    recording = Wav().read(path, ReadHints())
+    assert (recording.is_real, recording.datatype.name) == (True, "ri16_le")
+    envelope = np.abs(recording.signal.compute(0, 4000)[400:-400])
+    np.testing.assert_allclose(envelope, 0.5, atol=1 / 32768)  # half a code, and its quadrature
+
+
+def test_another_reader_finds_a_real_file_and_two_channels(tmp_path):
+    path = tmp_path / "x.wav"
+    codes = np.array([[1], [-2], [300]], "<i2")
+    write(path, codes, RI16_LE)
+    read, _ = soundfile.read(path, dtype="int16", always_2d=True)
+    np.testing.assert_array_equal(read, codes)
+    both = np.arange(12, dtype="<i2").reshape(3, 4)
+    facts = FileFacts(sample_rate_hz=RATE, n_samples=3, datatype=CI16_LE, n_channels=2)
+    writer = Wav().writer((path,), facts)
+    writer.write(both)
+    writer.finish()
+    read, _ = soundfile.read(path, dtype="int16")
+    np.testing.assert_array_equal(read, both)
