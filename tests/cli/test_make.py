@@ -28,6 +28,7 @@ def test_what_it_shows(call, recipe, tmp_path):
         "pier.sigmf-meta",
         "pier.ccdf.json",
         "pier.ccdf.csv",
+        "pier.markers.csv",
     }
 
 

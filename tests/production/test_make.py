@@ -43,6 +43,7 @@ def test_what_is_left_is_what_was_told(lab, reference):
     names = [path.name for path in reference.files]
     assert names == [
         "case.sigmf-data", "case.sigmf-meta", "case.wav", "case.ccdf.json", "case.ccdf.csv",
+        "case.markers.csv",
     ]  # fmt: skip
     assert lab.left_in(reference.folder) == sorted(names)
     assert not reference.differs

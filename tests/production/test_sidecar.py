@@ -24,7 +24,7 @@ def made(lab, tmp_path_factory):
 
 
 def stored(made):
-    return json.loads(made.files[-2].read_text(encoding="utf-8"))
+    return json.loads(made.files[-3].read_text(encoding="utf-8"))
 
 
 def test_the_schema_is_one():
@@ -178,8 +178,8 @@ def test_the_schema_refuses_what_is_missing_or_unknown_or_of_another_type(made):
 
 def test_curves_as_columns(made):
     document = made["SINGLE"].document
-    rows = list(csv.DictReader(io.StringIO(made["SINGLE"].files[-1].read_text())))
-    assert as_csv(document) == made["SINGLE"].files[-1].read_text()
+    rows = list(csv.DictReader(io.StringIO(made["SINGLE"].files[-2].read_text())))
+    assert as_csv(document) == made["SINGLE"].files[-2].read_text()
     assert [float(row["level_db"]) for row in rows] == document["ccdf"]["level_db"]
     assert [float(row["ccdf"]) for row in rows] == document["ccdf"]["probability"]
     assert [float(row["pdf_per_db"]) for row in rows] == document["pdf"]["per_db"]

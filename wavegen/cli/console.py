@@ -121,9 +121,7 @@ class Console:
         from rich.table import Table as Drawn
         from rich.text import Text
 
-        drawn = Drawn(
-            title=Text(table.title), title_justify="left", box=SIMPLE_HEAD, pad_edge=False
-        )
+        drawn = Drawn(box=SIMPLE_HEAD, pad_edge=False)
         for number, heading in enumerate(table.headings):
             drawn.add_column(
                 heading,
@@ -136,7 +134,7 @@ class Console:
         terminal = Terminal(
             file=page, width=WIDTH, highlight=False, force_terminal=stdout_is_terminal()
         )
-        terminal.print(drawn)
+        terminal.print(Text(table.title, style="italic"), drawn)
         self._put(page.getvalue())
 
 

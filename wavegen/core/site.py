@@ -45,10 +45,13 @@ class Cycle:
         Samples in it; every loop is a whole multiple.
     n_symbols : int
         Symbols in it; 0 for a source without symbols.
+    n_data_periods : int
+        Whole periods of the data in it; 0 where that was not asked or they have none.
     """
 
     n_samples: int
     n_symbols: int = 0
+    n_data_periods: int = 0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

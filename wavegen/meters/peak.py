@@ -22,6 +22,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from functools import cache
+from typing import Protocol
 
 import numpy as np
 import scipy.fft
@@ -30,7 +31,6 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.cell_sums import CELL
-from wavegen.meters.power_statistics import PowerStatistics
 
 POINTS_PER_SAMPLE = 16
 HALF_LENGTH = 64
@@ -81,6 +81,30 @@ class BetweenSamplesPeak:
     gained_db: float
 
 
+class Located(Protocol):
+    """What is known of a signal's samples before the search: where its largest stand."""
+
+    @property
+    def start(self) -> int:
+        """Index of the first sample."""
+
+    @property
+    def n_samples(self) -> int:
+        """How many there are."""
+
+    @property
+    def peak(self) -> float:
+        """Largest power at a sample."""
+
+    @property
+    def peak_index(self) -> int:
+        """Where it stands first."""
+
+    @property
+    def cell_maxima(self) -> NDArray[np.float64]:
+        """Largest power of each cell of 1024 samples on the absolute grid."""
+
+
 @dataclass(frozen=True, slots=True)
 class _Best:
     power: float
@@ -94,7 +118,7 @@ class _Best:
 
 
 def peak_between_samples(
-    signal: Signal, statistics: PowerStatistics, *, loops: bool = True
+    signal: Signal, statistics: Located, *, loops: bool = True
 ) -> BetweenSamplesPeak:
     """Return the largest power of a waveform on 16 points a sample.
 
@@ -102,7 +126,7 @@ def peak_between_samples(
     ----------
     signal : Signal
         What was measured, cheap to read again (stored): up to once over is read.
-    statistics : PowerStatistics
+    statistics : Located
         Of that signal: over a whole period if it loops, else over what is searched.
     loops : bool
         Whether the last sample is followed by the first. If not, the search stays inside: within
@@ -165,14 +189,14 @@ def searched_db(filled: float) -> float:
     return min(bound + MARGIN_DB, SEARCHED_DB)
 
 
-def filled_fraction(signal: Signal, statistics: PowerStatistics, *, loops: bool = True) -> float:
+def filled_fraction(signal: Signal, statistics: Located, *, loops: bool = True) -> float:
     """Return the fraction of the sample rate that holds all but 1e-5 of the power.
 
     Parameters
     ----------
     signal : Signal
         What was measured.
-    statistics : PowerStatistics
+    statistics : Located
         Of that signal: tells where the highest samples stand.
     loops : bool
         Whether stretches may pass the seam.
@@ -213,9 +237,7 @@ def _widest_gap(spectrum: NDArray[np.float64], share: float) -> int:
     return int(min(np.max(ends - np.arange(n)), n))
 
 
-def _blocks(
-    statistics: PowerStatistics, searched: float, *, loops: bool
-) -> list[tuple[int, int, float]]:
+def _blocks(statistics: Located, searched: float, *, loops: bool) -> list[tuple[int, int, float]]:
     """Return stretches to search and the largest power at their samples, the largest first."""
     first_cell = statistics.start // CELL
     maxima = statistics.cell_maxima

@@ -17,7 +17,7 @@ class PathLevel:
     name, role : str
         As in the recipe; role is empty if none was given.
     average_dbm : float
-        Mean power over the loop, dBm.
+        Mean power over the loop, or over the on-time where the recipe says so, dBm.
     peak_envelope_dbm : float
         Peak envelope power, dBm: average plus PAPR, from the peak between samples.
     average_limit_dbm, peak_limit_dbm : float or None
@@ -40,7 +40,7 @@ def path_levels(bench: Bench, papr_db: float) -> list[PathLevel]:
     bench : Bench
         Average power wanted at the device, and the path with its gains.
     papr_db : float
-        Peak between samples over the mean, dB.
+        Peak between samples over the mean that ``bench.averaged_over`` names, dB.
 
     Returns
     -------

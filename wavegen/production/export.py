@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections import deque
+from collections.abc import Sequence
 from concurrent.futures import Future, ThreadPoolExecutor
 from dataclasses import dataclass
 from pathlib import Path
@@ -10,14 +11,17 @@ from pathlib import Path
 import numpy as np
 
 from wavegen.core.progress import Progress, silent
-from wavegen.core.render import Reading
-from wavegen.core.signal import Samples, Signal
+from wavegen.core.render import Meter, Reading
+from wavegen.core.signal import Range, Samples, Signal
+from wavegen.dsp.bursts import Bursts
 from wavegen.files.datatypes import Codes, Datatype, decode, encode, quantised
 from wavegen.files.format import FileFacts, Format
+from wavegen.meters.gated import GatedPowerMeter
 from wavegen.meters.peak import BetweenSamplesPeak, peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
 
 STRIP_SAMPLES = 1 << 19
+WHERE = "the written codes"
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -58,6 +62,8 @@ class ExportedFile:
         Of the codes, full scale 1.0.
     peak : BetweenSamplesPeak
         Of the codes.
+    on_statistics : PowerStatistics or None
+        Of the codes while the signal is on, ramps excluded; None if it is never off.
     """
 
     names: tuple[str, ...]
@@ -67,18 +73,25 @@ class ExportedFile:
     n_saturated: int
     statistics: PowerStatistics
     peak: BetweenSamplesPeak
+    on_statistics: PowerStatistics | None = None
 
 
 def _encode_strip(
-    source: Signal, gain: np.float32, datatype: Datatype, start: int, stop: int
-) -> tuple[Codes, int, Reading]:
+    source: Signal,
+    gain: np.float32,
+    datatype: Datatype,
+    meters: Sequence[Meter],
+    strip: Range,
+) -> tuple[Codes, int, list[Reading]]:
     """Return codes of a strip, how many saturated, and what they measure."""
-    samples = source.compute(start, stop)
+    samples = source.compute(*strip)
     samples *= gain
     codes, n_saturated = encode(samples, datatype)
-    reading = PowerMeter(where="the written codes").begin(source)
-    reading.feed(start, decode(codes, datatype))
-    return codes, n_saturated, reading
+    held = decode(codes, datatype)
+    readings = [meter.begin(source) for meter in meters]
+    for reading in readings:
+        reading.feed(strip[0], held)
+    return codes, n_saturated, readings
 
 
 def export(
@@ -89,6 +102,7 @@ def export(
     facts: FileFacts,
     names: tuple[str, ...],
     drafts: tuple[Path, ...],
+    bursts: Bursts | None = None,
     workers: int = 1,
     progress: Progress = silent,
 ) -> ExportedFile:
@@ -106,6 +120,8 @@ def export(
         What the file says about itself.
     names, drafts : tuple
         Final names and temporary paths, the data file first.
+    bursts : Bursts, optional
+        When the signal is on; then the on-time is measured too.
     workers : int
         Threads that encode; one more writes and hashes.
     progress : Progress
@@ -123,10 +139,13 @@ def export(
     datatype = facts.datatype
     factor = np.float32(gain)
     writer = form.writer(drafts, facts)
-    waiting: deque[tuple[int, Future[tuple[Codes, int, Reading]]]] = deque()
+    meters: list[Meter] = [PowerMeter(where=WHERE)]
+    if bursts is not None:
+        meters.append(GatedPowerMeter(bursts=bursts, where=WHERE))
+    waiting: deque[tuple[int, Future[tuple[Codes, int, list[Reading]]]]] = deque()
     starts = iter(range(0, stored.n_samples, STRIP_SAMPLES))
     n_saturated = 0
-    total: Reading | None = None
+    totals: list[Reading] = []
     pool = ThreadPoolExecutor(workers, thread_name_prefix="encode")
 
     def submit() -> None:
@@ -134,7 +153,7 @@ def export(
         if start is not None:
             stop = min(start + STRIP_SAMPLES, stored.n_samples)
             waiting.append(
-                (stop, pool.submit(_encode_strip, stored, factor, datatype, start, stop))
+                (stop, pool.submit(_encode_strip, stored, factor, datatype, meters, (start, stop)))
             )
 
     try:
@@ -142,17 +161,17 @@ def export(
             submit()
         while waiting:
             stop, future = waiting.popleft()
-            codes, saturated, reading = future.result()
+            codes, saturated, readings = future.result()
             submit()
             writer.write(codes)
             n_saturated += saturated
-            if total is None:
-                total = reading
+            if totals:
+                for total, reading in zip(totals, readings, strict=True):
+                    total.merge(reading)
             else:
-                total.merge(reading)
+                totals = readings
             progress(f"writing {names[0]}", stop, stored.n_samples)
-        assert total is not None  # noqa: S101 - a loop has at least one sample
-        statistics: PowerStatistics = total.result()
+        statistics: PowerStatistics = totals[0].result()
         written = Written(
             sample_rate_hz=stored.sample_rate_hz,
             n_samples=stored.n_samples,
@@ -173,6 +192,7 @@ def export(
         n_saturated=n_saturated,
         statistics=statistics,
         peak=peak,
+        on_statistics=totals[1].result() if bursts is not None else None,
     )
 
 

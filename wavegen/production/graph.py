@@ -3,14 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass, field, fields, is_dataclass
+from dataclasses import dataclass, field, fields, is_dataclass, replace
 from fractions import Fraction
+from pathlib import Path
 from typing import Any
 
 from wavegen.core.errors import RecipeError
 from wavegen.core.registry import nearest
 from wavegen.core.signal import Signal
 from wavegen.core.site import Cycle, Site, common_cycle
+from wavegen.stages.chain import build_chain, chain_cycle, rates_of, source_site
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,16 +55,26 @@ def is_combiner(settings: Any) -> bool:
     return hasattr(settings, "combine")
 
 
-def shortest_cycle(settings: Any, sample_rate_hz: Fraction, path: str) -> Cycle:
+def shortest_cycle(
+    settings: Any,
+    sample_rate_hz: Fraction,
+    path: str,
+    stages: tuple[Any, ...] = (),
+    stages_path: str = "stages",
+) -> Cycle:
     """Return the shortest loop of a source, or of all parts of a sum together.
 
     Parameters
     ----------
     settings : source or combiner settings
     sample_rate_hz : Fraction
-        Hz.
+        Rate behind the last stage, Hz.
     path : str
         Path in the recipe.
+    stages : tuple of stage settings
+        What follows it; gates and changes of rate lengthen the loop.
+    stages_path : str
+        Their path in the recipe.
 
     Returns
     -------
@@ -72,19 +84,87 @@ def shortest_cycle(settings: Any, sample_rate_hz: Fraction, path: str) -> Cycle:
     Raises
     ------
     RecipeError
-        As raised by a source.
+        As raised by a source or a stage.
     """
+    if stages:
+        cycle = shortest_cycle(settings, rates_of(stages, sample_rate_hz)[0], path)
+        return chain_cycle(cycle, stages, sample_rate_hz, stages_path)
     if not is_combiner(settings):
-        cycle: Cycle = settings.cycle(sample_rate_hz, path)
-        return cycle
+        made: Cycle = settings.cycle(sample_rate_hz, path)
+        return made
     cycles = [
-        shortest_cycle(part.signal, sample_rate_hz, f"{path}.parts[{number}].signal")
+        shortest_cycle(
+            part.signal,
+            sample_rate_hz,
+            f"{path}.parts[{number}].signal",
+            part.stages,
+            f"{path}.parts[{number}].stages",
+        )
         for number, part in enumerate(settings.parts)
     ]
     n_samples = common_cycle([cycle.n_samples for cycle in cycles])
     rates = {Fraction(cycle.n_symbols, cycle.n_samples) for cycle in cycles}
     n_symbols = n_samples * rates.pop() if len(rates) == 1 else Fraction(0)
     return Cycle(n_samples=n_samples, n_symbols=int(n_symbols))
+
+
+def data_cycle(
+    settings: Any,
+    sample_rate_hz: Fraction,
+    path: str,
+    *,
+    folder: Path,
+    stages: tuple[Any, ...] = (),
+    stages_path: str = "stages",
+) -> Cycle:
+    """Return the shortest loop that also holds whole periods of all data.
+
+    Parameters
+    ----------
+    settings, sample_rate_hz, path, stages, stages_path
+        As in :func:`shortest_cycle`.
+    folder : Path
+        What the paths of a recipe are relative to.
+
+    Returns
+    -------
+    Cycle
+        ``n_data_periods`` counts those of the first part that has any; 0 if none has.
+
+    Raises
+    ------
+    RecipeError
+        As raised by a source or a stage.
+    """
+    if stages:
+        rate = rates_of(stages, sample_rate_hz)[0]
+        inner = data_cycle(settings, rate, path, folder=folder)
+        cycle = chain_cycle(inner, stages, sample_rate_hz, stages_path)
+        longer = Fraction(cycle.n_samples, inner.n_samples) * rate / sample_rate_hz
+        return replace(cycle, n_data_periods=int(inner.n_data_periods * longer))
+    if not is_combiner(settings):
+        method = getattr(settings, "data_cycle", None)
+        found: Cycle | None = method(sample_rate_hz, path, folder) if method else None
+        return found or shortest_cycle(settings, sample_rate_hz, path)
+    cycles = [
+        data_cycle(
+            part.signal,
+            sample_rate_hz,
+            f"{path}.parts[{number}].signal",
+            folder=folder,
+            stages=part.stages,
+            stages_path=f"{path}.parts[{number}].stages",
+        )
+        for number, part in enumerate(settings.parts)
+    ]
+    whole = common_cycle([cycle.n_samples for cycle in cycles])
+    counted = next((cycle for cycle in cycles if cycle.n_data_periods), cycles[0])
+    return replace(
+        shortest_cycle(settings, sample_rate_hz, path),
+        n_samples=whole,
+        n_symbols=0,
+        n_data_periods=counted.n_data_periods * whole // counted.n_samples,
+    )
 
 
 def build(signal: Any, stages: tuple[Any, ...], site: Site) -> Built:
@@ -109,10 +189,8 @@ def build(signal: Any, stages: tuple[Any, ...], site: Site) -> Built:
     """
     check_names(signal, site.path)
     parts: list[BuiltPart] = []
-    built = _build_signal(signal, site, parts)
-    for number, stage in enumerate(stages):
-        built = stage.build(site.at(f"stages[{number}]"), built)
-    return Built(built, parts)
+    built = _build_signal(signal, source_site(stages, site), parts)
+    return Built(build_chain(stages, site, built, "stages"), parts)
 
 
 def _build_signal(settings: Any, site: Site, parts: list[BuiltPart]) -> Signal:
@@ -124,9 +202,9 @@ def _build_signal(settings: Any, site: Site, parts: list[BuiltPart]) -> Signal:
         path = f"{site.path}.parts[{number}]"
         name = part.name or path
         place = len(parts)
-        one = _build_signal(part.signal, site.at(f"{path}.signal", name), parts)
-        for index, stage in enumerate(part.stages):
-            one = stage.build(site.at(f"{path}.stages[{index}]", name), one)
+        here = site.at(f"{path}.signal", name)
+        one = _build_signal(part.signal, source_site(part.stages, here), parts)
+        one = build_chain(part.stages, here, one, f"{path}.stages")
         parts.insert(place, BuiltPart(path, name, one))
         made.append(one)
     combined: Signal = settings.combine(site, made)

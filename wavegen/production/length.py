@@ -16,6 +16,12 @@ LARGEST_STRETCH = 2
 """A loop may be this many times longer than asked; beyond, the recipe must say so itself."""
 
 
+def counts_periods(duration: Duration) -> bool:
+    """Return whether a duration counts periods of the data."""
+    extents = (duration.at, duration.multiple, duration.least, duration.most)
+    return any(extent is not None and extent.unit == "periods" for extent in extents)
+
+
 def loop_length(
     duration: Duration, cycle: Cycle, sample_rate_hz: Fraction
 ) -> tuple[int, list[Note]]:
@@ -26,7 +32,8 @@ def loop_length(
     duration : Duration
         What was asked: a value, or one with a multiple, a least and a most.
     cycle : Cycle
-        Shortest loop of the signal.
+        Shortest loop of the signal; one that holds whole periods of the data where the
+        duration counts these (:func:`counts_periods`).
     sample_rate_hz : Fraction
         Hz.
 
@@ -94,12 +101,21 @@ def in_samples(extent: Extent, cycle: Cycle, sample_rate_hz: Fraction, where: st
     Raises
     ------
     RecipeError
-        Symbols of a signal that has none, or nothing at all.
+        Symbols or periods of a signal that has none, or nothing at all.
     """
     if extent.unit == "seconds":
         samples = extent.value * sample_rate_hz
     elif extent.unit == "samples":
         samples = extent.value
+    elif extent.unit == "periods" and cycle.n_data_periods:
+        samples = extent.value * cycle.n_samples / cycle.n_data_periods
+    elif extent.unit == "periods":
+        raise RecipeError(
+            where=where,
+            problem=f"{extent} of data without a period",
+            allowed="periods of data of the kinds prbs, pattern or file",
+            remedy="Write a time, or give the source such data.",
+        )
     elif cycle.n_symbols:
         samples = extent.value * cycle.n_samples / cycle.n_symbols
     else:

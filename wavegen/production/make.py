@@ -13,18 +13,19 @@ from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.errors import RecipeError
 from wavegen.core.progress import Progress, silent
 from wavegen.core.stored import Scratch
-from wavegen.files import FORMATS
+from wavegen.files import FORMATS, markers
 from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
 from wavegen.files.format import FileFacts, Format, pick_datatype
 from wavegen.production.bench import path_levels, refuse_overload
 from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
 from wavegen.production.export import ExportedFile, export
+from wavegen.production.marking import markers_of
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
 from wavegen.production.sidecar import as_csv, as_json, describe, stimulus_document
 from wavegen.production.verify import law_of, worst_verdict
-from wavegen.production.waveform import render_loop
+from wavegen.production.waveform import Waveform, render_loop
 from wavegen.recipe.load import LoadedRecipe
 
 
@@ -108,6 +109,7 @@ def make(
         targets = plan_files(prepared, drafts)
         sidecar = drafts.add(f"{loaded.name}.ccdf.json")
         curve = drafts.add(f"{loaded.name}.ccdf.csv")
+        marks = drafts.add(f"{loaded.name}{markers.SUFFIX}")
         with Scratch(
             folder=drafts.folder,
             sample_rate_hz=loaded.recipe.sample_rate_hz,
@@ -125,11 +127,9 @@ def make(
             gain = gain_for(loaded, waveform)
             refuse_unresolved(loaded, waveform, gain, [t.facts.datatype for t in targets])
             bench = loaded.recipe.bench
-            levels = path_levels(bench, waveform.papr_db) if bench else []
+            levels = path_levels(bench, waveform.papr_over(bench.averaged_over)) if bench else []
             refuse_overload(levels)
-            files = [
-                _export(target, waveform.signal, gain, workers, progress) for target in targets
-            ]
+            files = [_export(target, waveform, gain, workers, progress) for target in targets]
         prepared.notes.extend(doubts_of_files(files))
         law = law_of(prepared)
         document = stimulus_document(
@@ -141,25 +141,28 @@ def make(
             verdict=worst_verdict(law, files),
             levels=levels,
         )
-        for path, text in ((sidecar, as_json(document)), (curve, as_csv(document))):
+        texts = {sidecar: as_json(document), curve: as_csv(document)}
+        texts[marks] = markers.markers_text(targets[0].facts.annotations)
+        for path, text in texts.items():
             with told(path):
                 path.write_text(text, encoding="utf-8")
     names = [name for target in targets for name in target.names]
-    names += [f"{loaded.name}.ccdf.json", f"{loaded.name}.ccdf.csv"]
+    names += [f"{loaded.name}{end}" for end in (".ccdf.json", ".ccdf.csv", markers.SUFFIX)]
     folder = out / loaded.name
     return Made(folder=folder, files=tuple(folder / name for name in names), document=document)
 
 
 def _export(
-    target: Target, signal: Any, gain: float, workers: int, progress: Progress
+    target: Target, waveform: Waveform, gain: float, workers: int, progress: Progress
 ) -> ExportedFile:
     return export(
-        signal,
+        waveform.signal,
         gain=gain,
         form=target.form,
         facts=target.facts,
         names=target.names,
         drafts=target.drafts,
+        bursts=waveform.bursts,
         workers=workers,
         progress=progress,
     )
@@ -176,6 +179,7 @@ def plan_files(prepared: Prepared, drafts: Drafts) -> list[Target]:
         A format does not write a datatype.
     """
     loaded = prepared.loaded
+    annotations = markers_of(prepared)
     targets = []
     for number, wanted in enumerate(loaded.recipe.output.iq):
         form: Format = FORMATS.load(wanted.format)()
@@ -187,6 +191,7 @@ def plan_files(prepared: Prepared, drafts: Drafts) -> list[Target]:
             title=loaded.recipe.title,
             description=describe(prepared),
             generator=f"wavegen {__version__}",
+            annotations=annotations,
             recipe_sha512=hashlib.sha512(loaded.text.encode()).hexdigest(),
         )
         form.check(facts, where)

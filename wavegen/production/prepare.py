@@ -8,8 +8,8 @@ from wavegen.core.errors import RecipeError
 from wavegen.core.evaluate import plan
 from wavegen.core.render import IN_FLIGHT_STRIPS, strip_length
 from wavegen.core.site import Note, Site
-from wavegen.production.graph import Built, build, shortest_cycle
-from wavegen.production.length import loop_length
+from wavegen.production.graph import Built, build, data_cycle, shortest_cycle
+from wavegen.production.length import counts_periods, loop_length
 from wavegen.recipe.load import LoadedRecipe
 
 MOST_MEMORY_BYTES = 4_000_000_000
@@ -60,7 +60,15 @@ def prepare(loaded: LoadedRecipe) -> Prepared:
     """
     recipe = loaded.recipe
     try:
-        cycle = shortest_cycle(recipe.signal, recipe.sample_rate_hz, "signal")
+        cycle = shortest_cycle(recipe.signal, recipe.sample_rate_hz, "signal", recipe.stages)
+        if counts_periods(recipe.duration):
+            cycle = data_cycle(
+                recipe.signal,
+                recipe.sample_rate_hz,
+                "signal",
+                folder=loaded.folder,
+                stages=recipe.stages,
+            )
         n_samples, notes = loop_length(recipe.duration, cycle, recipe.sample_rate_hz)
         site = Site(
             sample_rate_hz=recipe.sample_rate_hz,
@@ -76,7 +84,11 @@ def prepare(loaded: LoadedRecipe) -> Prepared:
     except RecipeError as error:
         raise loaded.resolve(error) from error
     return Prepared(
-        loaded=loaded, built=built, cycle_samples=cycle.n_samples, notes=notes, site=site
+        loaded=loaded,
+        built=built,
+        cycle_samples=cycle.n_samples,
+        notes=notes,
+        site=site,
     )
 
 

@@ -17,7 +17,7 @@ def gain_for(loaded: LoadedRecipe, waveform: Waveform) -> float:
     loaded : LoadedRecipe
         ``output.peak`` or ``output.average``, dBFS of the envelope.
     waveform : Waveform
-        Mean, and peak between samples.
+        Mean, and peaks between samples of envelope and rails.
 
     Returns
     -------
@@ -32,7 +32,9 @@ def gain_for(loaded: LoadedRecipe, waveform: Waveform) -> float:
     output = loaded.recipe.output
     if output.average_dbfs is None:
         assert output.peak_dbfs is not None  # noqa: S101 - the settings give one of the two
-        return math.sqrt(10 ** (output.peak_dbfs / 10) / waveform.peak.power)
+        is_rail = output.peak_of == "rail"
+        power = waveform.rails.largest if is_rail else waveform.peak.power
+        return math.sqrt(10 ** (output.peak_dbfs / 10) / power)
     if output.average_dbfs + waveform.papr_db > 0:
         raise loaded.resolve(
             RecipeError(

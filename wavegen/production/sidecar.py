@@ -115,6 +115,23 @@ def power_figures(statistics: PowerStatistics, peak: BetweenSamplesPeak) -> dict
     }
 
 
+def on_figures(item: ExportedFile, duty: float | None) -> dict[str, Any] | None:
+    """Return the figures of the on-time, ramps excluded; None for what is never off."""
+    statistics = item.on_statistics
+    if statistics is None:
+        return None
+    return {
+        "is": "while the signal is fully on, ramps excluded; levels over the mean of that time",
+        "duty": duty,
+        "n_samples": statistics.n_samples,
+        "mean_dbfs": rounded(statistics.mean_db),
+        "papr_db": rounded(statistics.papr_db),
+        "papr_between_samples_db": rounded(10 * np.log10(item.peak.power) - statistics.mean_db),
+        "levels": level_rows(statistics),
+        "ccdf": curves(statistics)["ccdf"],
+    }
+
+
 def gaussian_reference(level_db: NDArray[np.float64]) -> dict[str, Any]:
     """Return the complex Gaussian's CCDF on a grid: ``exp(-x)``, x the power over the mean."""
     probability = np.exp(-(10 ** (level_db / 10)))
@@ -195,6 +212,7 @@ def stimulus_document(
     recipe = loaded.recipe
     rate = recipe.sample_rate_hz
     first = files[0]
+    duty = float(waveform.bursts.duty) if waveform.bursts else None
     return {
         "format": FORMAT,
         "version": VERSION,
@@ -226,15 +244,18 @@ def stimulus_document(
             "gain_db": rounded(20 * np.log10(gain)),
             "peak_dbfs": rounded(20 * np.log10(gain) + 10 * np.log10(waveform.peak.power)),
             "average_dbfs": rounded(20 * np.log10(gain) + waveform.statistics.mean_db),
+            "i_peak_dbfs": in_db(gain**2 * waveform.rails.i),
+            "q_peak_dbfs": in_db(gain**2 * waveform.rails.q),
         },
         "rounded": note_rows([n for n in prepared.notes if n.kind == "rounded"]),
         "warnings": note_rows([n for n in prepared.notes if n.kind == "warning"]),
         "notes": note_rows([n for n in prepared.notes if n.kind == "info"]),
         **power_figures(first.statistics, first.peak),
+        "on_time": on_figures(first, duty),
         "reference": gaussian_reference(grid_db(first.statistics)),
         "law": law_document(law, verdict),
-        "bench": bench_rows(levels),
-        "files": [file_row(item) for item in files],
+        "bench": bench_rows(levels, recipe.bench.averaged_over if recipe.bench else "period"),
+        "files": [file_row(item, duty) for item in files],
         "safety": SAFETY,
     }
 
@@ -261,7 +282,7 @@ def part_rows(prepared: Prepared, waveform: Waveform) -> list[dict[str, Any]]:
     ]
 
 
-def bench_rows(levels: Sequence[PathLevel]) -> dict[str, Any] | None:
+def bench_rows(levels: Sequence[PathLevel], averaged_over: str) -> dict[str, Any] | None:
     """Return the levels along the path, None without a bench."""
     if not levels:
         return None
@@ -269,10 +290,14 @@ def bench_rows(levels: Sequence[PathLevel]) -> dict[str, Any] | None:
     for level in levels:
         row = {k: v for k, v in asdict(level).items() if v is not None}
         rows.append({k: rounded(v, 3) if isinstance(v, float) else v for k, v in row.items()})
-    return {"levels_are": "at the input of each place", "path": rows}
+    return {
+        "levels_are": "at the input of each place",
+        "averaged_over": averaged_over,
+        "path": rows,
+    }
 
 
-def file_row(item: ExportedFile) -> dict[str, Any]:
+def file_row(item: ExportedFile, duty: float | None) -> dict[str, Any]:
     """Return one file's entry."""
     return {
         "name": item.names[0],
@@ -282,6 +307,7 @@ def file_row(item: ExportedFile) -> dict[str, Any]:
         "sha512": item.sha512,
         "n_saturated": item.n_saturated,
         **power_figures(item.statistics, item.peak),
+        "on_time": on_figures(item, duty),
     }
 
 

@@ -6,18 +6,24 @@ import math
 from collections.abc import Mapping
 from concurrent.futures import Executor
 from dataclasses import dataclass
+from typing import Literal
 
 from wavegen.core.progress import Progress, silent
 from wavegen.core.render import Tap, render
 from wavegen.core.signal import Signal
 from wavegen.core.stored import Scratch
+from wavegen.dsp.bursts import Bursts
+from wavegen.meters.gated import GatedPowerMeter
 from wavegen.meters.mean import MeanMeter
 from wavegen.meters.peak import BetweenSamplesPeak, peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
+from wavegen.meters.rails import RailPeaks, rail_peaks
 from wavegen.meters.seam import SeamFigure, seam_figure
 from wavegen.production.graph import Built
+from wavegen.stages.channel.gate import on_time
 
 POWER = "power"
+ON_TIME = "on-time"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -36,6 +42,12 @@ class Waveform:
         How the loop closes.
     part_means : mapping of str to float
         Realised mean power of each part, by its path.
+    rails : RailPeaks
+        Largest value of each rail, between samples too.
+    bursts : Bursts or None
+        When the signal is on, if one gate decides that for all of it.
+    on_statistics : PowerStatistics or None
+        Of the on-time, ramps excluded.
     """
 
     signal: Signal
@@ -43,11 +55,20 @@ class Waveform:
     peak: BetweenSamplesPeak
     seam: SeamFigure
     part_means: Mapping[str, float]
+    rails: RailPeaks
+    bursts: Bursts | None = None
+    on_statistics: PowerStatistics | None = None
+
+    def papr_over(self, mean_of: Literal["period", "burst"]) -> float:
+        """Return the peak between samples over the mean of the loop or of the on-time, dB."""
+        on_time = self.on_statistics if mean_of == "burst" else None
+        mean_db = (on_time or self.statistics).mean_db
+        return 10 * math.log10(self.peak.power) - mean_db
 
     @property
     def papr_db(self) -> float:
         """Peak between samples over the mean, dB: the PAPR that a device sees."""
-        return 10 * math.log10(self.peak.power) - self.statistics.mean_db
+        return self.papr_over("period")
 
 
 def render_loop(
@@ -83,6 +104,10 @@ def render_loop(
     """
     taps = [Tap(name=POWER, signal=built.signal, meter=PowerMeter())]
     taps += [Tap(name=part.path, signal=part.signal, meter=MeanMeter()) for part in built.parts]
+    bursts = on_time(built.signal)
+    if bursts is not None:
+        meter = GatedPowerMeter(bursts=bursts)
+        taps.append(Tap(name=ON_TIME, signal=built.signal, meter=meter))
     readings = render(
         built.signal,
         taps=tuple(taps),
@@ -99,5 +124,8 @@ def render_loop(
         statistics=statistics,
         peak=peak_between_samples(stored, statistics),
         seam=seam_figure(stored, cycle_samples=cycle_samples),
+        rails=rail_peaks(stored, statistics),
+        bursts=bursts,
+        on_statistics=readings.pop(ON_TIME, None),
         part_means=readings,
     )

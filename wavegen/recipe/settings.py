@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Annotated, Any, ClassVar, Literal, Self
@@ -13,9 +14,10 @@ from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity, split_
 from wavegen.recipe.exact import write_quantity
 from wavegen.recipe.format_request import FormatRequest
 
-Unit = Literal["seconds", "symbols", "samples"]
+Unit = Literal["seconds", "symbols", "samples", "periods"]
 
 _SUFFIX: dict[Unit, str] = {"seconds": "_s", "symbols": "_symbols", "samples": "_samples"}
+_PERIODS = re.compile(r"([1-9][0-9]{0,9}) PRBS periods?")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -26,8 +28,8 @@ class Extent:
     ----------
     value : Fraction
         Above zero; whole for symbols and samples.
-    unit : {"seconds", "symbols", "samples"}
-        What the value counts.
+    unit : {"seconds", "symbols", "samples", "periods"}
+        What the value counts; periods are those of the data (a PRBS, a pattern, a file).
     """
 
     value: Fraction
@@ -35,7 +37,7 @@ class Extent:
 
     @classmethod
     def parse(cls, value: object) -> Self:
-        """Read ``10 ms``, ``140 symbols`` or ``12288 samples``.
+        """Read ``10 ms``, ``140 symbols``, ``12288 samples`` or ``2 PRBS periods``.
 
         Raises
         ------
@@ -50,6 +52,9 @@ class Extent:
                 allowed="a time, symbols or samples",
                 remedy="Write it like 10 ms, 140 symbols or 12288 samples.",
             )
+        periods = _PERIODS.fullmatch(value.strip())
+        if periods:
+            return cls(value=Fraction(periods[1]), unit="periods")
         number, word = split_quantity(value)
         unit = next((u for u, suffix in _SUFFIX.items() if word in DIMENSIONS[suffix].units), None)
         if unit is None:
@@ -77,6 +82,8 @@ class Extent:
 
     def text(self) -> str:
         """Return the value as a recipe writes it."""
+        if self.unit == "periods":
+            return f"{self.value} PRBS period{'s' if self.value > 1 else ''}"
         return write_quantity(self.value, DIMENSIONS[_SUFFIX[self.unit]])
 
     def __str__(self) -> str:
@@ -248,6 +255,9 @@ class Output:
         Peak between samples, dBFS, at most 0. It is -1 if neither level is given.
     average_dbfs : float, optional
         Average power, dBFS, instead of the peak.
+    peak_of : {"envelope", "rail"}
+        What the peak is of: the envelope, or the larger of the two rails, which are what a
+        converter clips.
     """
 
     iq: Annotated[tuple[FormatRequest, ...], MinLen(1)] = (
@@ -255,6 +265,7 @@ class Output:
     )
     peak_dbfs: Annotated[float, Le(0)] | None = None
     average_dbfs: float | None = None
+    peak_of: Literal["envelope", "rail"] = "envelope"
 
     def __post_init__(self) -> None:
         """Refuse two levels or two files of one name; the peak is -1 dBFS unless said."""

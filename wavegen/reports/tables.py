@@ -75,6 +75,11 @@ def summary_table(document: dict[str, Any], *, title: str) -> Table:
     if "mean_dbm" in document:
         rows.append(("mean", fixed(document["mean_dbm"], "dBm")))
         rows.append(("peak envelope power", fixed(document["peak_envelope_dbm"], "dBm")))
+    on_time = document.get("on_time")
+    if on_time:
+        rows.append(("mean of the on-time", fixed(on_time["mean_dbfs"], "dBFS")))
+        rows.append(("PAPR of the on-time", fixed(on_time["papr_between_samples_db"], "dB")))
+        rows.append(("duty", f"{100 * on_time['duty']:.4g} %"))
     if document["n_zeros"]:
         rows.append(("exact zeros", f"{document['n_zeros']} samples"))
     seam = document.get("seam") or document.get("loop", {}).get("seam")
@@ -92,33 +97,37 @@ def seam_words(seam: dict[str, Any]) -> str:
 
 
 def level_table(document: dict[str, Any]) -> Table:
-    """Return the CCDF's levels beside the complex Gaussian and, where there is one, the law."""
-    law = document.get("law")
-    exact = {row["probability"]: row["level_db"] for row in law["levels"]} if law else {}
-    headings = ["probability", "level over mean", "complex Gaussian"]
+    """Return the CCDF's levels beside on-time, complex Gaussian and law."""
+    law, on_time = document.get("law"), document.get("on_time")
+    columns = {"level over mean": _levels(document, document)}
+    if on_time:
+        columns["over on-time mean"] = _levels(on_time, document)
+    columns["complex Gaussian"] = [
+        fixed(_gaussian_db(row["probability"]), "dB") for row in document["levels"]
+    ]
     if law:
-        headings.append("law")
-    is_loop = document.get("is") != "a recording"
-    rows = []
-    for row in document["levels"]:
-        probability = row["probability"]
-        level = row["level_db"]
-        if level is None or (not row["resolved"] and not is_loop):
-            shown = "too few samples"
-        elif probability * document["n_samples"] < 1:
-            shown = "loop too short"
-        else:
-            shown = fixed(level, "dB")
-        cells = [percent(probability), shown, fixed(_gaussian_db(probability), "dB")]
-        if law:
-            cells.append(fixed(exact[probability], "dB"))
-        rows.append(tuple(cells))
+        exact = {row["probability"]: row["level_db"] for row in law["levels"]}
+        columns["law"] = [fixed(exact[row["probability"]], "dB") for row in document["levels"]]
+    probabilities = [percent(row["probability"]) for row in document["levels"]]
     return Table(
         title="Instantaneous power exceeds its mean by",
-        headings=tuple(headings),
-        rows=tuple(rows),
-        right=frozenset(range(len(headings))),
+        headings=("probability", *columns),
+        rows=tuple(zip(probabilities, *columns.values(), strict=True)),
+        right=frozenset(range(len(columns) + 1)),
     )
+
+
+def _levels(figures: dict[str, Any], document: dict[str, Any]) -> list[str]:
+    is_loop = document.get("is") != "a recording"
+    cells = []
+    for row in figures["levels"]:
+        if row["level_db"] is None or (not row["resolved"] and not is_loop):
+            cells.append("too few samples")
+        elif row["probability"] * figures["n_samples"] < 1:
+            cells.append("loop too short")
+        else:
+            cells.append(fixed(row["level_db"], "dB"))
+    return cells
 
 
 def _gaussian_db(probability: float) -> float:

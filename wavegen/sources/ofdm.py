@@ -6,12 +6,14 @@ import math
 from collections.abc import Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Annotated
+from pathlib import Path
+from typing import Annotated, ClassVar
 
 from annotated_types import Ge, Gt, Le
 
 from wavegen.core.errors import RecipeError
 from wavegen.core.site import Cycle, Site
+from wavegen.core.units import QuantityError
 from wavegen.sources.ofdm_layout import (
     MOST_SYMBOLS,
     CyclicPrefix,
@@ -66,6 +68,9 @@ class Ofdm:
     frame_symbols: Annotated[int, Ge(1), Le(MOST_SYMBOLS)] | None = None
     half_subcarrier_shift: bool = False
 
+    is_framed: ClassVar[bool] = True
+    """Cycles are frames: they get markers."""
+
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
         """Return the shortest loop: whole patterns of prefixes and whole frames.
 
@@ -77,6 +82,56 @@ class Ofdm:
             100 000 symbols.
         """
         return self._cycle(self._lay_out(sample_rate_hz, path), path)
+
+    def data_cycle(
+        self, sample_rate_hz: Fraction, path: str, folder: Path = Path()
+    ) -> Cycle | None:
+        """Return the shortest loop that also holds whole periods of every group's data.
+
+        Parameters
+        ----------
+        sample_rate_hz : Fraction
+            Hz.
+        path : str
+            Path in the recipe, for messages.
+        folder : Path
+            What the paths of a recipe are relative to.
+
+        Returns
+        -------
+        Cycle or None
+            None where no group's data have a period. Periods are counted in the first that has.
+
+        Raises
+        ------
+        RecipeError
+            Data from a file that cannot be read, or as :meth:`cycle`.
+        """
+        cycle = self.cycle(sample_rate_hz, path)
+        n_cycles, first = 1, Fraction(0)
+        for number, group in enumerate(self.groups):
+            try:
+                period = group.data.period_bits(folder)
+            except QuantityError as error:
+                raise RecipeError(
+                    where=f"{path}.groups[{number}].data.path",
+                    problem=error.problem,
+                    allowed=error.allowed,
+                    remedy=error.remedy,
+                ) from error
+            if period is not None:
+                n_on = self._n_frame if group.symbols is None else len(group.symbols.numbers)
+                n_bits = len(group.subcarriers.indices) * group.constellation.n_bits
+                n_bits *= n_on * cycle.n_symbols // self._n_frame
+                n_cycles = math.lcm(n_cycles, period // math.gcd(period, n_bits))
+                first = first or Fraction(n_bits, period)
+        if not first:
+            return None
+        return Cycle(
+            n_samples=cycle.n_samples * n_cycles,
+            n_symbols=cycle.n_symbols * n_cycles,
+            n_data_periods=int(first * n_cycles),
+        )
 
     def build(self, site: Site) -> Prefixed:
         """Return the signal; its expected mean power is 1, silent symbols included.

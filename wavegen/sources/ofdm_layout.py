@@ -11,7 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.errors import RecipeError
-from wavegen.core.units import QuantityError, format_hz, split_quantity
+from wavegen.core.units import QuantityError, format_hz, quantity_pattern, split_quantity
 
 LARGEST_FFT = 1 << 20
 MOST_SYMBOLS = 10_000
@@ -73,6 +73,17 @@ class Stretch:
         if unit and number.denominator != 1:
             raise _refuse_stretch(problem=f"{value!r} is not a whole number of samples")
         return cls(number, in_samples=bool(unit))
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        return {
+            "anyOf": [
+                {"type": "number", "minimum": 0, "maximum": 1},
+                {"type": "string", "pattern": quantity_pattern(("", *_SAMPLE_WORDS), sign="[+]?")},
+            ],
+            "examples": ["144/2048", "16 samples"],
+        }
 
     def samples(self, n_fft: int) -> Fraction:
         """Return the length in samples, perhaps not a whole number."""
@@ -136,6 +147,19 @@ class CyclicPrefix:
                 remedy="Write it like [160/2048, 6 x 144/2048].",
             )
         return cls(runs)
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        length = quantity_pattern(("", *_SAMPLE_WORDS), sign="[+]?")
+        length = length.removeprefix("^").removesuffix("$")
+        run = rf"(?:\s*[0-9]+\s*x)?{length}"
+        one: list[object] = [
+            {"type": "number", "minimum": 0, "maximum": 1},
+            {"type": "string", "pattern": f"^{run}(?:,{run})*$"},
+        ]
+        listed = {"type": "array", "items": {"anyOf": one}, "minItems": 1}
+        return {"anyOf": [*one, listed], "examples": [["160/2048", "6 x 144/2048"]]}
 
 
 def _runs_of(part: object) -> list[tuple[int, Stretch]]:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from pathlib import Path
 from typing import Annotated, Any, Literal
@@ -171,7 +171,8 @@ class PhaseModulation:
         total = 0  # what the others encode closes by itself
         if self._alphabet()[1] == "plain":
             total = self._scan(site, whole)[1] if whole <= MOST_SCANNED else 1
-        return self._whole(sample_rate_hz, whole * (n_states // math.gcd(total, n_states)))
+        cycle = self._whole(sample_rate_hz, whole * (n_states // math.gcd(total, n_states)))
+        return replace(cycle, n_data_periods=cycle.n_symbols * n_bits // period)
 
     def _whole(self, sample_rate_hz: Fraction, multiple: int) -> Cycle:
         """Return the shortest loop of so many symbols or a multiple of them."""

@@ -10,7 +10,7 @@ from typing import ClassVar, Self
 import numpy as np
 from numpy.typing import NDArray
 
-from wavegen.core.units import QuantityError, split_quantity
+from wavegen.core.units import QuantityError, quantity_pattern, split_quantity
 
 LARGEST_PERIOD = 4096
 """Points after which a rotation must have come round."""
@@ -73,6 +73,14 @@ class Rotation:
         if turns.denominator > LARGEST_PERIOD:
             raise _refuse(problem=f"{value!r} comes round after {turns.denominator} points only")
         return cls(turns)
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        multiple = r"[+-]?\s*(?:[0-9]{1,4})?\s*\*?\s*pi(?:\s*/\s*[0-9]{1,4})?"
+        degrees = quantity_pattern(("deg", "°")).removeprefix("^").removesuffix("$")
+        text = {"type": "string", "pattern": rf"^(?:\s*{multiple}\s*|{degrees})$"}
+        return {"anyOf": [{"enum": [0, "0"]}, text], "examples": ["pi/4", "45 deg"]}
 
     @property
     def period(self) -> int:

@@ -136,10 +136,12 @@ class SingleCarrier:
             raise _at(site, "data.path", error) from error
         if period is None:
             return None
-        n_symbols = period // math.gcd(period, self.constellation.n_bits)
-        return self._whole(
+        n_bits = self.constellation.n_bits
+        n_symbols = period // math.gcd(period, n_bits)
+        cycle = self._whole(
             sample_rate_hz, math.lcm(n_symbols, self.rotation.period if self.rotation else 1)
         )
+        return replace(cycle, n_data_periods=cycle.n_symbols * n_bits // period)
 
     def _whole(self, sample_rate_hz: Fraction, multiple: int) -> Cycle:
         """Return the shortest loop of so many symbols or a multiple of them."""

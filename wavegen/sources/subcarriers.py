@@ -80,6 +80,11 @@ class IndexSet:
         """
         return cls(read_runs(value, noun="subcarrier"))
 
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        return _runs_schema("[+-]?", "-600..-1, 1..600", "0..1200 by 4")
+
 
 @dataclass(frozen=True, slots=True)
 class SymbolSet:
@@ -133,6 +138,19 @@ class SymbolSet:
                 allowed="0, the first symbol of the frame, and up",
             )
         return cls(runs)
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        return _runs_schema(r"[+]?", "0, 4, 7, 11", "0..13 by 2")
+
+
+def _runs_schema(sign: str, *examples: str) -> dict[str, object]:
+    number = rf"{sign}[0-9]{{1,9}}"
+    run = rf"\s*{number}(?:\s*\.\.\s*{number}(?:\s+by\s+[0-9]{{1,9}})?)?\s*"
+    one = {"anyOf": [{"type": "integer"}, {"type": "string", "pattern": f"^{run}(?:,{run})*$"}]}
+    listed = {"type": "array", "items": one, "minItems": 1}
+    return {"anyOf": [*one["anyOf"], listed], "examples": list(examples)}
 
 
 def read_runs(value: object, *, noun: Literal["subcarrier", "symbol"]) -> tuple[Run, ...]:
@@ -248,6 +266,20 @@ class PilotValues:
                 remedy="Write it like [1, 1, 1, -1].",
             )
         return cls(sequence)
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        pair = {"type": "array", "items": {"type": "number"}, "minItems": 1, "maxItems": 2}
+        drawn = {
+            "type": "object",
+            "properties": {"random": Constellation.json_schema()},
+            "required": ["random"],
+            "additionalProperties": False,
+        }
+        value = {"anyOf": [{"type": "number"}, pair]}
+        listed = {"type": "array", "items": value, "minItems": 1}
+        return {"anyOf": [listed, drawn], "examples": [[1, 1, 1, -1], {"random": "qpsk"}]}
 
     def text(self) -> object:
         """Return the value as a recipe writes it."""

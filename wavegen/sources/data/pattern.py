@@ -89,6 +89,12 @@ class BitText:
             )
         return cls(value)
 
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        pattern = r"^\s*(?:[01][01\s]*|0\s*x[0-9a-fA-F\s]+)$"
+        return {"type": "string", "pattern": pattern, "examples": ["1100", "0xF0"]}
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Pattern:

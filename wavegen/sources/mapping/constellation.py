@@ -114,6 +114,20 @@ class Constellation:
         return cls.of_points(value)
 
     @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads: names, rings or points."""
+        pair = {"type": "array", "items": {"type": "number"}, "minItems": 2, "maxItems": 2}
+        return {
+            "anyOf": [
+                {"enum": list(MAPPINGS)},
+                {"type": "string", "pattern": "^[0-9]+apsk [0-9]+/[0-9]+$"},
+                {"type": "object", "required": ["rings"]},
+                {"type": "array", "items": pair, "minItems": 2, "maxItems": LARGEST},
+            ],
+            "examples": ["64qam", "16apsk 2/3"],
+        }
+
+    @classmethod
     def of_points(cls, value: object) -> Self:
         """Make a constellation from points on any scale.
 
