@@ -9,6 +9,7 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 from pathlib import Path
+from typing import BinaryIO
 
 import numpy as np
 from numpy.typing import NDArray
@@ -26,6 +27,7 @@ _MOST_COMMENT = 1 << 16
 """Bytes of comments before the first row that are kept."""
 
 _COMMENTS = (b"#", b"%", b"//", b"!")
+_FIGURES = frozenset(bytes([item]) for item in b"0123456789-+.")
 _SETTING = re.compile(r"[#%!/\s]*([A-Za-z_]\w{0,39})\s*[:=]\s*(.{0,500})")
 _BRACKETED = re.compile(r"(.*?)[\s_]*[(\[]([^()\[\]]*)[)\]]")
 _DIVIDED = re.compile(r"(.*?)\s*/\s*(\S+)")
@@ -109,30 +111,35 @@ class Table:
             A row with other columns or with what is no finite number, or a file that changed.
         """
         out = np.empty((stop - start, self.n_columns))
-        done = start // ROWS_PER_MARK * ROWS_PER_MARK
-        offset, number = (int(item) for item in self.marks[start // ROWS_PER_MARK])
         with told(self.path), self.path.open("rb") as file:
-            file.seek(offset)
-            block: list[bytes] = []
-            first = number
-            while done < stop:
-                line = file.readline(_LONGEST_LINE)
-                if not line:
+            for mark in range(start // ROWS_PER_MARK, -(-stop // ROWS_PER_MARK)):
+                first = mark * ROWS_PER_MARK
+                wanted = slice(max(start - first, 0), min(stop - first, ROWS_PER_MARK))
+                block, line = self._block(file, mark, wanted.stop)
+                place = first + wanted.start - start
+                rows = block[wanted]
+                if rows:
+                    out[place : place + len(rows)] = self._numbers(rows, line + wanted.start)
+                if len(block) < wanted.stop:
                     raise self._fault(
-                        problem=f"ends after row {done}", allowed=f"{self.n_rows} rows"
+                        problem=f"ends after row {first + len(block)}",
+                        allowed=f"{self.n_rows} rows",
                     )
-                number += 1
-                if not _is_row(line):
-                    continue
-                if done >= start:
-                    first = first if block else number
-                    block.append(line)
-                done += 1
-                if len(block) == ROWS_PER_MARK or (block and done == stop):
-                    place = done - len(block) - start
-                    out[place : place + len(block)] = self._numbers(block, first)
-                    block = []
         return out
+
+    def _block(self, file: BinaryIO, mark: int, n_wanted: int) -> tuple[list[bytes], int]:
+        """Return up to 4096 rows from a mark, and the number of the first one's line."""
+        offset, line = (int(item) for item in self.marks[mark])
+        file.seek(offset)
+        if mark + 1 < len(self.marks):
+            content = file.read(int(self.marks[mark + 1, 0]) - offset)
+            rows = [item for item in content.split(b"\n") if _is_row(item)]
+        else:
+            rows = []
+            while len(rows) < n_wanted and (item := file.readline(_LONGEST_LINE)):
+                if _is_row(item):
+                    rows.append(item)
+        return rows[:ROWS_PER_MARK], line + 1
 
     def _numbers(self, block: list[bytes], first: int) -> NDArray[np.float64]:
         """Return the numbers of rows, the first of which is line ``first``."""
@@ -178,7 +185,7 @@ def _parsed(block: list[bytes], dialect: Dialect, n_columns: int) -> NDArray[np.
             return None
     elif any(line.rstrip().rstrip(separator).count(separator) != n_columns - 1 for line in block):
         return None
-    text = b"".join(block).removeprefix(b"\xef\xbb\xbf")
+    text = b"\n".join(block).removeprefix(b"\xef\xbb\xbf")
     if b"_" in text:  # Python would read 1_000
         return None
     if dialect.decimal_comma:
@@ -273,6 +280,8 @@ def _refuse_no_text(path: Path) -> None:
 
 
 def _is_row(line: bytes) -> bool:
+    if line[:1] in _FIGURES:  # most rows, told at once
+        return True
     content = line.strip().removeprefix(b"\xef\xbb\xbf")
     return bool(content) and not content.startswith(_COMMENTS)
 
