@@ -87,3 +87,13 @@ def test_too_many_variables(tmp_path):
     with pytest.raises(FileError) as caught:
         arrays_of(path)
     assert "too many" in caught.value.problem
+
+
+def test_a_part_that_reaches_into_the_next_matrix(tmp_path):
+    whole = matrix("<", list(range(100)))
+    path = tmp_path / "x.mat"
+    shorter = struct.pack("<II", 14, len(whole) - 136 - 64)
+    path.write_bytes(whole[:128] + shorter + whole[136:])
+    with pytest.raises(FileError) as caught:
+        arrays_of(path)
+    assert "a part of 100 bytes" in caught.value.problem
