@@ -102,7 +102,7 @@ class Term(Protocol):
 
     def directional(
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
-    ) -> Complexes:
+    ) -> Complexes | None:
         """Return ``E[exp(j t Re(x exp(-j angle)))]``: the two-dimensional function, in polar form.
 
         Parameters
@@ -116,7 +116,8 @@ class Term(Protocol):
 
         Returns
         -------
-        complex128 array, shape (n, m)
+        complex128 array, shape (n, m), or None
+            None where it is not known: such a term joins others whose phases run freely only.
         """
 
 
@@ -150,7 +151,7 @@ class BaseTerm:
 
     def directional(
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
-    ) -> Complexes:
+    ) -> Complexes | None:
         """Return the two-dimensional function; that of an isotropic term has no direction."""
         flat = self.characteristic(t, residue=residue, modulus=modulus).astype(np.complex128)
         return np.repeat(flat[:, None], angle_rad.size, axis=1)
@@ -197,7 +198,7 @@ class Scaled(BaseTerm):
 
     def directional(
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
-    ) -> Complexes:
+    ) -> Complexes | None:
         """Return the two-dimensional function, turned."""
         return self.inner.directional(
             self.gain * t, angle_rad - self.turn_rad, residue=residue, modulus=modulus
