@@ -1,4 +1,5 @@
 import math
+from fractions import Fraction
 
 import numpy as np
 import pytest
@@ -6,6 +7,10 @@ import pytest
 from wavegen.core.errors import RecipeError
 from wavegen.core.render import samples_of
 from wavegen.core.signal import Signal
+from wavegen.core.site import Site
+from wavegen.core.timespan import TimeSpan
+from wavegen.sources.noise import Noise
+from wavegen.stages.channel.gate import Gate, on_time
 from wavegen.stages.crest.clip import (
     PILOT_SAMPLES,
     Clip,
@@ -177,3 +182,23 @@ class TestSolver:
 
     def test_nothing_gives_less_than_the_lowest_envelope(self):
         assert find_clip_level([np.array([1, 0], np.float32)], 1.99) is None
+
+
+@pytest.mark.parametrize("duration", [1 << 18, 3 << 21])
+def test_of_a_gated_signal_the_ceiling_is_over_the_on_time(duration):
+    rate = Fraction(10**6)
+    here = Site(sample_rate_hz=rate, n_samples=duration, seed=5, label="signal", path="signal")
+    noise = Noise(bandwidth_hz=rate / 4).build(here)
+    period = TimeSpan.parse("65536 samples")
+    gated = Gate(duty_percent=Fraction(25), period=period, ramp=TimeSpan.parse("64 samples")).build(
+        here, noise
+    )
+    clipped = Clip(ceiling_db=5.0).build(here, gated)
+    bursts = on_time(clipped)
+    assert bursts is not None
+    power = np.abs(samples_of(clipped)) ** 2
+    on = power[bursts.is_on(0, duration)]
+    assert 10 * np.log10(on.max() / on.mean()) == pytest.approx(5.0, abs=0.03)
+    before = np.abs(samples_of(gated))[bursts.is_on(0, duration)] ** 2
+    assert on.mean() == pytest.approx(before.mean(), rel=0.01)
+    assert not power[20_000:60_000].any()

@@ -87,6 +87,19 @@ class FilterTaps:
             raise _refuse_taps(problem=f"{len(taps)} taps, none above zero" if taps else "no taps")
         return cls(values=tuple(taps))
 
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        pair = {"type": "array", "items": {"type": "number"}, "minItems": 2, "maxItems": 2}
+        listed = {
+            "type": "array",
+            "items": {"anyOf": [{"type": "number"}, pair]},
+            "minItems": 1,
+            "maxItems": MOST_TAPS,
+        }
+        named = {"type": "string", "minLength": 1}
+        return {"anyOf": [listed, named], "examples": [[0.25, 0.5, 0.25], "taps.txt"]}
+
     def text(self) -> object:
         """Return the value as a recipe writes it."""
         if self.path is not None:

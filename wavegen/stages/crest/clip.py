@@ -14,6 +14,8 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
+from wavegen.dsp.bursts import Bursts
+from wavegen.stages.channel.gate import on_time
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 128 kB between."""
@@ -136,7 +138,8 @@ class Clip:
     ----------
     ceiling_db : float
         Highest envelope power of the output over the mean power of the output, dB; 0.1 to 60
-        (at 0 dB nothing would be left of the envelope).
+        (at 0 dB nothing would be left of the envelope). Of a gated signal, over the mean of
+        the on-time, ramps excluded.
     """
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
@@ -164,7 +167,8 @@ class Clip:
             The source is zero, or for so much of the time that no amplitude gives the ceiling.
         """
         is_whole = source.n_samples <= PILOT_SAMPLES
-        pilot = list(_pilot(source))
+        bursts = on_time(source)
+        pilot = list(_pilot(source, bursts))
         highest = max(float(piece.max()) for piece in pilot)
         ceiling = 10 ** (self.ceiling_db / 10)
         level = find_clip_level(pilot, ceiling) if highest else None
@@ -180,7 +184,7 @@ class Clip:
                 allowed=f"above {least_db}",
                 remedy="Raise the ceiling.",
             )
-        if is_whole and highest <= level.power:
+        if is_whole and bursts is None and highest <= level.power:
             papr_db = 10 * math.log10(highest / level.input_mean)
             _tell(site, f"nothing to clip: the signal peaks {papr_db:.3f} dB over its mean")
             return source
@@ -191,6 +195,8 @@ class Clip:
         )
         ratio_db = 10 * math.log10(level.power / level.input_mean)
         change_db = 10 * math.log10(level.output_mean / level.input_mean)
+        if bursts is not None:
+            origin += ", while it is on"
         _tell(
             site,
             f"clips at {ratio_db:.3f} dB over the mean of its input, found on {origin}: "
@@ -212,16 +218,26 @@ def _tell(site: Site, text: str) -> None:
     site.notes.append(Note(kind="info", where=f"{site.path}.ceiling", text=text))
 
 
-def _pilot(source: Signal) -> Iterator[NDArray[np.float32]]:
-    """Yield the envelope power of stretches of a signal, the same stretches every time."""
+def _pilot(source: Signal, bursts: Bursts | None) -> Iterator[NDArray[np.float32]]:
+    """Yield the envelope power of stretches of a signal, the same stretches every time.
+
+    Of a gated signal only what is fully on; a long period is read at bursts spread evenly.
+    """
+    count = PILOT_SAMPLES // STRETCH_SAMPLES
     if source.n_samples <= PILOT_SAMPLES:
         length, starts = 1 << 20, list(range(0, source.n_samples, 1 << 20))
-    else:
-        count = PILOT_SAMPLES // STRETCH_SAMPLES
+    elif bursts is None:
         length, starts = STRETCH_SAMPLES, [source.n_samples * k // count for k in range(count)]
+    else:
+        every = [start for start, _ in bursts.starts(source.n_samples)]
+        picked = sorted({len(every) * k // count for k in range(count)})
+        length, starts = STRETCH_SAMPLES, [every[k] for k in picked]
     for start in starts:
         stop = min(start + length, source.n_samples)
         samples = evaluate({source: (start, stop)})[source]
         power = samples.real * samples.real
         power += samples.imag * samples.imag
-        yield power
+        if bursts is not None:
+            power = power[bursts.is_on(start, stop)]
+        if power.size:
+            yield power
