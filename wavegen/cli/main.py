@@ -28,7 +28,9 @@ VERBS = Registry(
     {
         "make": "wavegen.cli.make:Make",
         "measure": "wavegen.cli.measure:Measure",
+        "new": "wavegen.cli.new:New",
         "list": "wavegen.cli.listing:Listing",
+        "schema": "wavegen.cli.schema:Schema",
     },
 )
 

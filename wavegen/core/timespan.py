@@ -8,7 +8,7 @@ from fractions import Fraction
 from typing import ClassVar, Literal, Self
 
 from wavegen.core.registry import nearest
-from wavegen.core.units import DIMENSIONS, QuantityError, split_quantity
+from wavegen.core.units import DIMENSIONS, QuantityError, quantity_pattern, split_quantity
 
 LONGEST = 10**12
 """Seconds or samples; far beyond any loop."""
@@ -72,6 +72,16 @@ class TimeSpan:
             problem=f"{value!r} has the unknown unit {word!r}" if word else f"{value!r}: no unit",
             remedy=f"Did you mean {guess}?" if guess else f"Write it like {_EXAMPLE}.",
         )
+
+    @classmethod
+    def json_schema(cls) -> dict[str, object]:
+        """Return the JSON Schema of what :meth:`parse` reads."""
+        units = [word for suffix in _SUFFIX.values() for word in DIMENSIONS[suffix].units]
+        return {
+            "type": "string",
+            "pattern": quantity_pattern(units),
+            "examples": ["2.5 us", "16 samples"],
+        }
 
     def text(self) -> str:
         """Return the value as a recipe writes it: the shortest that reads back exactly.

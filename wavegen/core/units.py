@@ -7,6 +7,7 @@ look-alike named. ``inf`` and ``nan`` are no numbers here.
 from __future__ import annotations
 
 import re
+from collections.abc import Iterable
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -224,6 +225,33 @@ def parse_quantity(text: str, dimension: Dimension) -> Fraction:
         allowed=f"one of: {allowed}",
         remedy=f"Did you mean {guess}?" if guess else f"Write it like {dimension.example}.",
     )
+
+
+def quantity_pattern(units: Iterable[str], *, sign: str = "[+-]?") -> str:
+    """Return a regular expression of the text that is read as a number with one of some units.
+
+    Parameters
+    ----------
+    units : iterable of str
+        Unit words; the empty one stands for none.
+    sign : str
+        Regular expression of what may stand before the digits.
+
+    Returns
+    -------
+    str
+        Anchored at both ends, in the syntax that Python and ECMA 262 share, for JSON Schema.
+
+    Examples
+    --------
+    >>> found = re.compile(quantity_pattern(["Hz", "kHz"]))
+    >>> bool(found.search("1625/6 kHz")), bool(found.search("1625/6"))
+    (True, False)
+    """
+    words = "|".join(map(re.escape, units))
+    digits = r"[0-9]+(?:\.[0-9]+)?"
+    exponent = "(?:[eE][+-]?[0-9]{1,2})?"
+    return rf"^\s*{sign}{digits}{exponent}(?:/{digits})?\s*(?:{words})\s*$"
 
 
 def _look_alike(unit: str, dimension: Dimension) -> str | None:

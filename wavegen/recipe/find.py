@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Mapping
 from pathlib import Path
 
 from wavegen.core.errors import RecipeError
@@ -49,12 +50,40 @@ def find_recipe(name_or_path: str | Path) -> Path:
     wanted = str(name_or_path).removesuffix(".yaml")
     if wanted in shipped:
         return shipped[wanted]
-    guess = nearest(path.stem, shipped)
-    raise RecipeError(
-        where=str(name_or_path)[:200],
+    raise _no_such(str(name_or_path), shipped, "a path, or a shipped recipe: ", "Check the path.")
+
+
+def find_shipped(name: str) -> Path:
+    """Return the file of a shipped recipe.
+
+    Parameters
+    ----------
+    name : str
+        Its name, with or without ``.yaml``; a file of that name elsewhere is not looked at.
+
+    Returns
+    -------
+    Path
+
+    Raises
+    ------
+    RecipeError
+        No recipe of that name is shipped; the nearest name is given.
+    """
+    shipped = {known: found for known, _, found in shipped_recipes()}
+    wanted = name.removesuffix(".yaml")
+    if wanted in shipped:
+        return shipped[wanted]
+    raise _no_such(name, shipped, "a shipped recipe: ", "See `wavegen list recipes`.")
+
+
+def _no_such(name: str, shipped: Mapping[str, Path], allowed: str, remedy: str) -> RecipeError:
+    guess = nearest(name.rpartition("/")[2].removesuffix(".yaml")[:200], shipped)
+    return RecipeError(
+        where=name[:200],
         problem="there is no such recipe",
-        allowed="a path, or a shipped recipe: " + (", ".join(shipped) or "none"),
-        remedy=f"Did you mean {guess}?" if guess else "Check the path.",
+        allowed=allowed + (", ".join(shipped) or "none"),
+        remedy=f"Did you mean {guess}?" if guess else remedy,
     )
 
 
