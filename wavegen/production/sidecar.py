@@ -306,9 +306,24 @@ def file_row(item: ExportedFile, duty: float | None) -> dict[str, Any]:
         "datatype": item.datatype.name,
         "sha512": item.sha512,
         "n_saturated": item.n_saturated,
+        "rounding_noise_dbc": rounding_noise_dbc(item),
         **power_figures(item.statistics, item.peak),
         "on_time": on_figures(item, duty),
     }
+
+
+def rounding_noise_dbc(item: ExportedFile) -> float | None:
+    """Return the power of rounding to codes over the mean power, dB; None for float codes.
+
+    Notes
+    -----
+    A twelfth of a squared step on each rail, white: W. R. Bennett, Bell Syst. Tech. J. 27, 1948
+    (from memory). It holds where the signal crosses many codes.
+    """
+    if not item.datatype.is_integer:
+        return None
+    step = 1.0 / item.datatype.full_scale
+    return in_db(step**2 / 6 / item.statistics.mean)
 
 
 def as_json(document: dict[str, Any]) -> str:
