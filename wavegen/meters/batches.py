@@ -1,0 +1,444 @@
+"""Power statistics with what an interval needs: batches in time, runs above each level.
+
+The samples of a record are correlated, so that counting them says little about how sure a figure
+is. What is kept beside the statistics: for each of 64 to 128 stretches in a row (batches) how its
+power is spread, and for every level in how many runs the samples above it come.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, replace
+from typing import Self
+
+import numpy as np
+from numpy.typing import ArrayLike, NDArray
+
+from wavegen.core.signal import Samples, Signal
+from wavegen.dsp.bursts import Bursts
+from wavegen.dsp.cell_sums import CELL, CellSums
+from wavegen.dsp.pair_kernel import added, coarse_edges, coarsened, tally_pairs
+from wavegen.dsp.power_kernel import PowerTally, exact_powers
+from wavegen.meters.power import PowerReading
+from wavegen.meters.power_statistics import PowerStatistics
+
+FEWEST_BATCHES = 64
+"""A Student quantile at 63 degrees is within 2 % of the normal one at 95 %."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Batches:
+    """A record cut in stretches of equal length on the absolute grid.
+
+    Parameters
+    ----------
+    batch_samples : int
+        Length, a power of two: at least 64 whole ones fit in, less than 128. What is left at
+        the end is a batch of its own.
+    n_measured : int64 array, shape (n_batches,)
+        Samples that count in each: all, or those of the on-time.
+    sums : float64 array, shape (n_batches, 3)
+        Of ``p``, ``p^2`` and ``p^3``.
+    counts : int64 array, shape (n_batches, n_bins)
+        Samples in each bin of power; exact zeros are in none.
+    pairs : int64 array, shape (n_bins,)
+        Pairs of neighbours in the record by the lower of their powers.
+    edges : float64 array, shape (n_bins + 1,)
+        Powers: bin ``k`` holds ``edges[k] <= p < edges[k + 1]``; 64 an octave.
+    loops : bool
+        Whether the last sample has the first for its neighbour.
+    """
+
+    batch_samples: int
+    n_measured: NDArray[np.int64]
+    sums: NDArray[np.float64]
+    counts: NDArray[np.int64]
+    pairs: NDArray[np.int64]
+    edges: NDArray[np.float64]
+    loops: bool
+
+    @property
+    def n_batches(self) -> int:
+        """How many there are, the short one at the end included."""
+        return int(self.n_measured.size)
+
+    def above(self, power: ArrayLike) -> NDArray[np.float64]:
+        """Return how many samples of each batch have more than a power.
+
+        Parameters
+        ----------
+        power : array, shape (n_levels,)
+            On the scale of the samples.
+
+        Returns
+        -------
+        float64 array, shape (n_levels, n_batches)
+            Whole at the edges of bins, interpolated between.
+        """
+        return _read(self.counts, self.edges, power)
+
+    def runs(self, power: ArrayLike) -> NDArray[np.float64]:
+        """Return in how many runs the samples of the record with more than a power come.
+
+        Parameters
+        ----------
+        power : array, shape (n_levels,)
+            On the scale of the samples.
+
+        Returns
+        -------
+        float64 array, shape (n_levels,)
+            Whole at the edges of bins, interpolated between. A loop that never falls to the
+            level has no run: none begins.
+        """
+        return _read((self.counts.sum(axis=0) - self.pairs)[np.newaxis], self.edges, power)[:, 0]
+
+
+def _read(
+    counts: NDArray[np.int64], edges: NDArray[np.float64], power: ArrayLike
+) -> NDArray[np.float64]:
+    """Return what lies above powers, shape (n_powers, n_rows), of counts (n_rows, n_bins)."""
+    asked = np.atleast_1d(np.asarray(power, np.float64))
+    beyond = np.zeros((counts.shape[1] + 1, counts.shape[0]))
+    beyond[:-1] = np.cumsum(counts.T[::-1], axis=0)[::-1]
+    if not counts.shape[1]:
+        return np.zeros((asked.size, counts.shape[0]))
+    place = np.clip(np.searchsorted(edges, asked, side="right") - 1, 0, edges.size - 2)
+    width = edges[place + 1] - edges[place]
+    part = np.clip((asked - edges[place]) / width, 0.0, 1.0)[:, np.newaxis]
+    found: NDArray[np.float64] = beyond[place] + part * (beyond[place + 1] - beyond[place])
+    return found
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class BatchedStatistics:
+    """Power statistics of a record, and its batches.
+
+    Parameters
+    ----------
+    statistics : PowerStatistics
+        As the power meter states them.
+    batches : Batches
+        What intervals are made from.
+    """
+
+    statistics: PowerStatistics
+    batches: Batches
+
+
+def batch_length(n_samples: int) -> int:
+    """Return the length of a batch: the power of two of which 64 to 127 fit in.
+
+    Parameters
+    ----------
+    n_samples : int
+        Length of the record.
+
+    Returns
+    -------
+    int
+        1 where there are fewer than 64 samples.
+    """
+    return 1 << max((n_samples // FEWEST_BATCHES).bit_length() - 1, 0)
+
+
+class _Counts(PowerReading):
+    """A power reading that keeps apart what lies in each batch."""
+
+    def __init__(self, where: str, batch_samples: int) -> None:
+        super().__init__(where)
+        self.batch_samples = batch_samples
+        self.rows: dict[int, tuple[NDArray[np.int64], int]] = {}
+
+    def feed(self, start: int, samples: Samples) -> None:
+        """Take in samples, batch by batch."""
+        done = 0
+        while done < samples.size:
+            count = min(
+                self.batch_samples - (start + done) % self.batch_samples, samples.size - done
+            )
+            super().feed(start + done, samples[done : done + count])
+            done += count
+
+    def _count(self, found: PowerTally, start: int) -> None:
+        super()._count(found, start)
+        self.add_row(start // self.batch_samples, *coarsened(found.counts, found.first_bin))
+
+    def add_row(self, batch: int, counts: NDArray[np.int64], first_bin: int) -> None:
+        """Add counts to those of a batch."""
+        kept = self.rows.get(batch)
+        self.rows[batch] = added(*kept, counts, first_bin) if kept else (counts, first_bin)
+
+    def merge(self, following: Self) -> None:
+        """Append the reading of the stretch that starts where this one ends."""
+        super().merge(following)
+        for batch, row in following.rows.items():
+            self.add_row(batch, *row)
+
+
+class BatchedPowerReading:
+    """Running power statistics and batches of one stretch.
+
+    Parameters
+    ----------
+    meter : BatchedPowerMeter
+        Its settings.
+    n_samples : int
+        Length of the whole record: it fixes that of a batch.
+    """
+
+    def __init__(self, meter: BatchedPowerMeter, n_samples: int) -> None:
+        self._meter = meter
+        self._size = batch_length(n_samples)
+        # Batches shorter than a cell come from records so short that they can be held whole.
+        self._power = _Counts(meter.where, max(self._size, CELL))
+        self._held: list[Samples] | None = [] if self._size < CELL else None
+        self._first = self._last = np.zeros(0, np.complex64)
+        self._pairs: tuple[NDArray[np.int64], int] = (np.zeros(0, np.int64), 0)
+        self._squares: CellSums | None = None
+        self._cubes: CellSums | None = None
+        self._on: dict[int, int] = {}
+
+    def feed(self, start: int, samples: Samples) -> None:
+        """Take in samples whose first has index ``start``.
+
+        Raises
+        ------
+        SignalError
+            A sample is not finite.
+        """
+        if not samples.size:
+            return
+        samples = np.asarray(samples, np.complex64)
+        bursts = self._meter.bursts
+        is_on = None
+        if bursts is not None:
+            is_on = bursts.is_on(start, start + samples.size)
+            kept = np.zeros(samples.size, np.complex64)
+            np.copyto(kept, samples, where=is_on)
+            samples = kept
+        self._count_on(start, samples.size, is_on)
+        self._power.feed(start, samples)
+        self._join(samples[:1])
+        self._last = samples[-1:].copy()
+        if self._held is not None:
+            self._held.append(samples.copy())
+            return
+        if self._squares is None or self._cubes is None:
+            self._squares, self._cubes = CellSums(start), CellSums(start)
+        self._add_pieces(start, samples, self._squares, self._cubes)
+
+    def _count_on(self, start: int, count: int, is_on: NDArray[np.bool_] | None) -> None:
+        """Count the samples measured in each batch."""
+        stop = start + count
+        for batch in range(start // self._size, -(-stop // self._size)):
+            low, high = max(batch * self._size, start), min((batch + 1) * self._size, stop)
+            here = high - low
+            if is_on is not None:
+                here = int(np.count_nonzero(is_on[low - start : high - start]))
+            self._on[batch] = self._on.get(batch, 0) + here
+
+    def _add_pieces(self, start: int, samples: Samples, squares: CellSums, cubes: CellSums) -> None:
+        """Count the pairs within a stretch and add its powers to the cells."""
+        head = min(-start % CELL, samples.size)
+        body = head + (samples.size - head) // CELL * CELL
+        empty = np.zeros(0)
+        for low, high, whole in ((0, head, False), (head, body, True), (body, samples.size, False)):
+            if low == high:
+                continue
+            piece = samples[low:high]
+            found = tally_pairs(piece)
+            self._pairs = added(*self._pairs, found.counts, found.first_bin)
+            if low:
+                joint = tally_pairs(samples[low - 1 : low + 1])
+                self._pairs = added(*self._pairs, joint.counts, joint.first_bin)
+            if whole:
+                squares.add_cells(found.squares, empty)
+                cubes.add_cells(found.cubes, empty)
+            else:
+                powers = exact_powers(piece)
+                squares.add_powers(powers * powers)
+                cubes.add_powers(powers * powers * powers)
+
+    def _join(self, sample: Samples) -> None:
+        """Count the pair of the last sample so far and the next one; keep the very first."""
+        if not self._first.size:
+            self._first = sample.copy()
+        elif self._held is None:
+            joint = tally_pairs(np.concatenate([self._last, sample]))
+            self._pairs = added(*self._pairs, joint.counts, joint.first_bin)
+
+    def merge(self, following: Self) -> None:
+        """Append the reading of the stretch that starts where this one ends."""
+        if not following._first.size:
+            return
+        self._power.merge(following._power)
+        self._join(following._first)
+        self._last = following._last
+        for batch, count in following._on.items():
+            self._on[batch] = self._on.get(batch, 0) + count
+        if self._held is not None:
+            self._held += following._held or []
+            return
+        self._pairs = added(*self._pairs, *following._pairs)
+        if self._squares is None or self._cubes is None:
+            self._squares, self._cubes = following._squares, following._cubes
+        elif following._squares is not None and following._cubes is not None:
+            self._squares.append(following._squares)
+            self._cubes.append(following._cubes)
+
+    def result(self) -> BatchedStatistics:
+        """Return the statistics and the batches.
+
+        Raises
+        ------
+        SignalError
+            No samples, or every sample is zero.
+        """
+        statistics = self._power.result()
+        n_measured = np.array([self._on[batch] for batch in sorted(self._on)], np.int64)
+        n_on = int(n_measured.sum())
+        if self._meter.bursts is not None:
+            left_out = statistics.n_samples - n_on
+            cells = self._power.cells
+            total = cells.total()[0] if cells else 0.0
+            statistics = replace(
+                statistics,
+                n_samples=n_on,
+                n_zeros=statistics.n_zeros - left_out,
+                mean=total / n_on,
+            )
+        if self._held is not None:
+            sums, rows = self._short(np.concatenate(self._held))
+        else:
+            sums, rows = self._sums(), self._power.rows
+        pairs = self._pairs
+        if self._meter.loops:
+            joint = tally_pairs(np.concatenate([self._last, self._first]))
+            pairs = added(*pairs, joint.counts, joint.first_bin)
+        counts, first_bin = _stacked(rows, n_measured.size)
+        row, place = added(np.zeros(counts.shape[1], np.int64), first_bin, *pairs)
+        return BatchedStatistics(
+            statistics=statistics,
+            batches=Batches(
+                batch_samples=self._size,
+                n_measured=n_measured,
+                sums=sums,
+                counts=counts,
+                pairs=row[first_bin - place : first_bin - place + counts.shape[1]],
+                edges=coarse_edges(first_bin, counts.shape[1]),
+                loops=self._meter.loops,
+            ),
+        )
+
+    def _sums(self) -> NDArray[np.float64]:
+        """Return the sums of the first three powers in batches of whole cells."""
+        readings = (self._power.cells, self._squares, self._cubes)
+        return np.stack(
+            [_in_rows(cells.cells()[0], self._size // CELL) for cells in readings if cells],
+            axis=1,
+        )
+
+    def _short(
+        self, samples: Samples
+    ) -> tuple[NDArray[np.float64], dict[int, tuple[NDArray[np.int64], int]]]:
+        """Return sums and counts of batches shorter than a cell; counts the pairs too."""
+        found = tally_pairs(samples)
+        self._pairs = (found.counts, found.first_bin)
+        powers = exact_powers(samples)
+        sums = np.stack(
+            [_in_rows(powers**order, self._size) for order in (1, 2, 3)],
+            axis=1,
+        )
+        short = _Counts(self._meter.where, self._size)
+        short.feed(0, samples)
+        return sums, short.rows
+
+
+def _in_rows(values: NDArray[np.float64], length: int) -> NDArray[np.float64]:
+    """Return the sums of rows of ``length`` values, a power of two, by a fixed pairwise tree."""
+    rows = np.zeros((-(-values.size // length), length))
+    rows.reshape(-1)[: values.size] = values
+    while rows.shape[1] > 1:
+        half = rows.shape[1] // 2
+        rows = rows[:, :half] + rows[:, half:]
+    return rows[:, 0]
+
+
+def _stacked(
+    rows: dict[int, tuple[NDArray[np.int64], int]], n_rows: int
+) -> tuple[NDArray[np.int64], int]:
+    """Return rows of counts on common bins, shape (n_rows, n_bins), and the first bin."""
+    used = {batch: row for batch, row in rows.items() if row[0].size}
+    if not used:
+        return np.zeros((n_rows, 0), np.int64), 0
+    low = min(first for _, first in used.values())
+    high = max(first + counts.size for counts, first in used.values())
+    stacked = np.zeros((n_rows, high - low), np.int64)
+    for batch, (counts, first) in used.items():
+        stacked[batch, first - low : first - low + counts.size] = counts
+    return stacked, low
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class BatchedPowerMeter:
+    """Settings of the power meter that keeps what intervals need.
+
+    Parameters
+    ----------
+    where : str
+        What is measured: a file's name, a recipe path.
+    loops : bool
+        Whether the signal is a loop, so that a run may go on across its seam.
+    bursts : Bursts, optional
+        When the signal is on: then only what is fully on counts, as in
+        :class:`wavegen.meters.gated.GatedPowerMeter`. A loop must close its bursts too.
+
+    Notes
+    -----
+    The statistics are those of :class:`wavegen.meters.power.PowerMeter`, bit for bit. Runs cost
+    about as much again as they do; batches cost next to nothing. Memory is flat: 128 rows of
+    some 64 bins an octave, and 24 bytes for 1024 samples.
+    """
+
+    where: str = "signal"
+    loops: bool = False
+    bursts: Bursts | None = None
+
+    def begin(self, signal: Signal) -> BatchedPowerReading:
+        """Return an empty reading for a signal."""
+        return BatchedPowerReading(self, signal.n_samples)
+
+
+def measure_batches(
+    samples: Samples,
+    *,
+    loops: bool = False,
+    bursts: Bursts | None = None,
+    where: str = "samples",
+) -> BatchedStatistics:
+    """Return the power statistics of an array with its batches.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n_samples,)
+        On any scale.
+    loops : bool
+        Whether they are one period of a loop.
+    bursts : Bursts, optional
+        When the signal is on.
+    where : str
+        What it is called in messages.
+
+    Returns
+    -------
+    BatchedStatistics
+
+    Raises
+    ------
+    SignalError
+        No samples, one that is not finite, or zeros only.
+    """
+    meter = BatchedPowerMeter(where=where, loops=loops, bursts=bursts)
+    reading = BatchedPowerReading(meter, samples.size)
+    reading.feed(0, samples)
+    return reading.result()
