@@ -153,11 +153,14 @@ class ClippedLaw:
         Clip amplitude squared over the mean of the input.
     mean : float
         Mean power of the output over that of the input, before it is scaled back.
+    on_time : Law or None
+        Of a gated signal, the law of the time it is fully on, over the mean of that time.
     """
 
     source: Law
     ratio: float
     mean: float
+    on_time: Law | None = None
 
     @property
     def name(self) -> str:
@@ -200,6 +203,8 @@ class ClippedLaw:
 def clip_law(source: Law, ceiling_db: float) -> Law | NoLaw:
     """Return the law of a signal that is clipped to a ceiling over its new mean.
 
+    Of a gated signal the ceiling is over the mean of the time it is fully on.
+
     Parameters
     ----------
     source : Law
@@ -210,7 +215,8 @@ def clip_law(source: Law, ceiling_db: float) -> Law | NoLaw:
     Returns
     -------
     Law or NoLaw
-        ``source`` itself where it never reaches the ceiling. No law where it is zero for so much
+        ``source`` itself where it never reaches the ceiling. Of a gated signal the law of the
+        whole, with that of the on-time beside it. No law where it is zero for so much
         of the time that no amplitude gives the ceiling.
 
     Notes
@@ -226,18 +232,19 @@ def clip_law(source: Law, ceiling_db: float) -> Law | NoLaw:
     >>> round(10 * math.log10(law.ratio), 4), round(law.mean_shift_db, 4)
     (6.0, -0.0818)
     """
+    if isinstance(source, GatedLaw):
+        on_time = clip_law(source.source, ceiling_db)
+        if not isinstance(on_time, ClippedLaw):
+            return on_time if isinstance(on_time, NoLaw) else source
+        ratio = on_time.ratio / source.mean
+        mean = _mean_of_limited(source, ratio)
+        return ClippedLaw(source=source, ratio=ratio, mean=mean, on_time=on_time)
     if source.peak_db <= ceiling_db:
         return source
     ceiling = 10 ** (ceiling_db / 10)
-    reach = amplitude_reach(source) ** 2
-
-    def mean_of_limited(ratio: float) -> float:
-        edges = panel_edges(0.0, math.sqrt(min(ratio, reach)), n_panels=_PANELS)
-        nodes, weights = nodes_of(edges)
-        return math.fsum((2 * nodes * weights * source.ccdf(to_db(nodes**2))).ravel())
 
     def excess(ratio: float) -> float:
-        return ratio - ceiling * mean_of_limited(ratio)
+        return ratio - ceiling * _mean_of_limited(source, ratio)
 
     least = 1e-4
     while excess(least) >= 0:
@@ -248,7 +255,14 @@ def clip_law(source: Law, ceiling_db: float) -> Law | NoLaw:
                 f"to {ceiling_db:g} dB"
             )
     ratio = float(scipy.optimize.brentq(excess, least, 1.01 * ceiling, xtol=1e-14, rtol=1e-13))
-    return ClippedLaw(source=source, ratio=ratio, mean=mean_of_limited(ratio))
+    return ClippedLaw(source=source, ratio=ratio, mean=_mean_of_limited(source, ratio))
+
+
+def _mean_of_limited(source: Law, ratio: float) -> float:
+    """Return ``E[min(p, ratio)]``: the integral of the CCDF up to there."""
+    top = min(math.sqrt(ratio), amplitude_reach(source))
+    nodes, weights = nodes_of(panel_edges(0.0, top, n_panels=_PANELS))
+    return math.fsum((2 * nodes * weights * source.ccdf(to_db(nodes**2))).ravel())
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

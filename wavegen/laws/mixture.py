@@ -1,16 +1,14 @@
-"""Laws that are mixtures: of what different moments of a signal follow."""
+"""Envelopes that follow different laws at different moments."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Protocol
 
 import numpy as np
 import scipy.special
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
-from wavegen.laws.law import Holds, from_db, to_db
-from wavegen.laws.level_search import level_by_halving
+from wavegen.laws.radial import Tail
 
 Reals = NDArray[np.float64]
 
@@ -18,16 +16,9 @@ MOST_AMPLITUDES = 4096
 _BLOCK = 1 << 20
 
 
-class Part(Protocol):
-    """The distribution of the envelope at some of the moments."""
-
-    def above(self, radius: Reals) -> Reals:
-        """Return ``P(R > r)`` for an array of any shape."""
-
-
 @dataclass(frozen=True, eq=False, kw_only=True)
 class KnownAmplitudes:
-    """Amplitudes that are known one by one.
+    """Amplitudes that are known one by one: a tail in steps.
 
     Parameters
     ----------
@@ -38,57 +29,36 @@ class KnownAmplitudes:
     amplitudes: Reals
 
     def above(self, radius: Reals) -> Reals:
-        """Return the share of the amplitudes above."""
+        """Return the share of the amplitudes above each radius."""
         below = np.searchsorted(self.amplitudes, radius, side="right")
         return np.asarray(1 - below / self.amplitudes.size)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class MixtureLaw:
-    """A law that is a weighted sum of parts; what the weights leave is exactly zero power.
+class MixedTail:
+    """A weighted sum of tails; what the weights leave is exactly zero amplitude.
 
     Parameters
     ----------
-    name : str
-        What it is called in results.
     weights : tuple of float
-        Share of time of each part; together at most 1.
-    parts : tuple of Part
-        Amplitudes on one scale.
-    mean_power : float
-        Mean of ``R^2`` of the whole on that scale.
-    peak : float
-        Highest amplitude, finite; a bound will do.
-    holds : {"every loop", "over seeds"}
-    lowest_probability : float
-        See :class:`wavegen.laws.term.Term`.
+        Share of time of each tail; together at most 1.
+    tails : tuple of Tail
+        ``P(R > r)`` of each, on one scale.
+    radii : tuple of float
+        Radius beyond which each tail is 0.
     """
 
-    name: str
     weights: tuple[float, ...]
-    parts: tuple[Part, ...]
-    mean_power: float
-    peak: float
-    holds: Holds = "over seeds"
-    lowest_probability: float = 0.0
+    tails: tuple[Tail, ...]
+    radii: tuple[float, ...]
 
-    @property
-    def peak_db(self) -> float:
-        """Highest level that can occur, dB over the mean."""
-        return float(to_db(self.peak**2 / self.mean_power))
-
-    def ccdf(self, level_db: ArrayLike) -> NDArray[np.float64]:
-        """Return the probability that the power is above a level (dB over the mean)."""
-        radius = np.sqrt(from_db(level_db) * self.mean_power)
-        total = np.zeros(radius.shape)
-        for weight, part in zip(self.weights, self.parts, strict=True):
-            total += weight * part.above(radius)
+    def above(self, radius: Reals) -> Reals:
+        """Return the probability above each radius of a flat array."""
+        total = np.zeros(radius.size)
+        for weight, tail, end in zip(self.weights, self.tails, self.radii, strict=True):
+            inside = radius < end
+            total[inside] += weight * np.clip(tail.above(radius[inside]), 0.0, 1.0)
         return total
-
-    def level_db(self, probability: ArrayLike) -> NDArray[np.float64]:
-        """Return the smallest level whose CCDF is at or below a probability."""
-        found = level_by_halving(self.ccdf, probability, most_db=self.peak_db + 1e-9)
-        return np.where(np.asarray(probability) > 0, found, self.peak_db)
 
 
 def mean_bessel(amplitudes: Reals, t: Reals) -> Reals:
@@ -108,9 +78,8 @@ def mean_bessel(amplitudes: Reals, t: Reals) -> Reals:
 
     Notes
     -----
-    In a bin of width ``d`` that lies at ``s`` the second moment is right, so that the mean of
-    ``J0`` is wrong by about ``(t d)^2 / (24 s t)`` at most, far less in the sum over bins
-    (derivation: two terms of the series about ``s``).
+    In a bin of width ``d`` the second moment is right, so that the mean of ``J0`` is wrong by
+    about ``t d^2 / (24 s)`` at most (derivation: two terms of the series about ``s``).
     """
     if amplitudes.size > MOST_AMPLITUDES:
         top = float(amplitudes.max()) or 1.0

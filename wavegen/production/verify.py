@@ -9,6 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw
 from wavegen.production.export import ExportedFile
 from wavegen.production.prepare import Prepared
 
@@ -40,8 +41,10 @@ def law_of(prepared: Prepared) -> Law | None:
     law_method: Any = getattr(recipe.signal, "law", None)
     if recipe.stages or law_method is None:
         return None
-    law: Law | None = law_method(prepared.site)
-    return law if law is not None and law.holds == "every loop" else None
+    law: Law | NoLaw | None = law_method(prepared.site)
+    if law is None or isinstance(law, NoLaw):
+        return None
+    return law if law.holds == "every loop" else None
 
 
 def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:

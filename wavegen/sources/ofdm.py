@@ -14,6 +14,9 @@ from annotated_types import Ge, Gt, Le
 from wavegen.core.errors import RecipeError
 from wavegen.core.site import Cycle, Site
 from wavegen.core.units import QuantityError
+from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw
+from wavegen.sources.ofdm_law import ofdm_law, ofdm_term
 from wavegen.sources.ofdm_layout import (
     MOST_SYMBOLS,
     CyclicPrefix,
@@ -22,6 +25,7 @@ from wavegen.sources.ofdm_layout import (
     fft_length,
     lay_out,
 )
+from wavegen.sources.ofdm_moments import OfdmTerm
 from wavegen.sources.ofdm_occupancy import check_subcarriers, note_idle
 from wavegen.sources.ofdm_parts import Group, Pilots, carry, part_of_group, part_of_pilots, pin
 from wavegen.sources.ofdm_power import Part, mean_power
@@ -161,6 +165,15 @@ class Ofdm:
             part_of_pilots(site, f"pilots[{i}]", x, n_frame) for i, x in enumerate(self.pilots)
         ]
         return self._assemble(site, layout, groups, pilots, n_cycles * cycle.n_symbols)
+
+    def term(self, site: Site) -> OfdmTerm | NoLaw:
+        """Return what the signal is to a composite, at unit mean power."""
+        layout = self._lay_out(site.sample_rate_hz, site.path)
+        return ofdm_term(self, site, layout, self._n_frame)
+
+    def law(self, site: Site) -> Law | NoLaw:
+        """Return the law of the envelope over seeds; none by name where there is none."""
+        return ofdm_law(self.term(site))
 
     def _assemble(
         self,

@@ -82,7 +82,7 @@ def mean_power(layout: Layout, parts: Sequence[Part], *, is_shifted: bool = Fals
     variances = [
         math.fsum(p.variance for p, is_on in zip(parts, row, strict=True) if is_on) for row in on
     ]
-    steady = [_steady(layout.n_fft, parts, row, is_shifted=is_shifted) for row in on]
+    steady = [steady_samples(layout.n_fft, parts, row, is_shifted=is_shifted) for row in on]
     n_cycle = math.lcm(layout.n_symbols, numbers.size)
     k = np.arange(n_cycle)
     rows = np.stack(
@@ -107,10 +107,22 @@ def mean_power(layout: Layout, parts: Sequence[Part], *, is_shifted: bool = Fals
     return total * layout.n_symbols / (n_cycle * layout.n_samples)
 
 
-def _steady(
+def steady_samples(
     n_fft: int, parts: Sequence[Part], on: NDArray[np.bool_], *, is_shifted: bool
 ) -> NDArray[np.complex128]:
-    """Return the expected samples of a symbol, shape (n_fft,)."""
+    """Return the expected samples of a symbol, shape (n_fft,); read-only where all are zero.
+
+    Parameters
+    ----------
+    n_fft : int
+        FFT length.
+    parts : sequence of Part
+        What puts values on subcarriers.
+    on : bool array, shape (n_parts,)
+        Which of them are on.
+    is_shifted : bool
+        Whether every subcarrier stands half a spacing higher.
+    """
     grid = np.zeros(n_fft, np.complex128)
     for part, is_on in zip(parts, on, strict=True):
         if is_on:

@@ -1,0 +1,254 @@
+"""The law of an OFDM signal, from its settings alone."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import replace
+from typing import Protocol
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen.core.site import Site
+from wavegen.laws.inversion import law_of_characteristic
+from wavegen.laws.law import Law
+from wavegen.laws.mixture import KnownAmplitudes, MixedTail
+from wavegen.laws.radial import RadialLaw, Tail
+from wavegen.laws.term import NoLaw
+from wavegen.sources.ofdm_layout import Layout
+from wavegen.sources.ofdm_moments import Drawn, Moments, OfdmTerm, moments_of
+from wavegen.sources.ofdm_parts import Group, Pilots, part_of_group, part_of_pilots
+from wavegen.sources.ofdm_power import Part, mean_power
+
+FEWEST_SUBCARRIERS = 48
+"""Fewer, counted by their shares of the power, are not isotropic over the samples of a symbol."""
+_ROUNDING = 1e-9
+_OCTAVES = 2.0
+
+
+class Settings(Protocol):
+    """What is read of the settings of an OFDM signal."""
+
+    @property
+    def groups(self) -> tuple[Group, ...]:
+        """Subcarriers with data."""
+
+    @property
+    def pilots(self) -> tuple[Pilots, ...]:
+        """Subcarriers with fixed values."""
+
+    @property
+    def half_subcarrier_shift(self) -> bool:
+        """Whether every subcarrier stands half a spacing higher."""
+
+
+def ofdm_term(settings: Settings, site: Site, layout: Layout, n_frame: int) -> OfdmTerm | NoLaw:
+    """Return what an OFDM signal is to a composite, at unit mean power.
+
+    Parameters
+    ----------
+    settings : settings of OFDM
+        Groups and pilots.
+    site : Site
+        Where it is built; takes no notes here.
+    layout : Layout
+        Prefixes and edge in samples.
+    n_frame : int
+        Symbols of a frame.
+
+    Returns
+    -------
+    OfdmTerm or NoLaw
+        No law where the data of a symbol have the power of fewer than 48 equal subcarriers or
+        are DFT-spread, where a constellation is not circular (``E a^2`` or ``E a^3`` is not 0:
+        BPSK), or where the data are no independent draws.
+
+    Raises
+    ------
+    RecipeError
+        As raised by a group or an entry of pilots.
+    """
+    quiet = replace(site, notes=[])
+    groups = [
+        part_of_group(quiet, f"groups[{i}]", x, n_frame) for i, x in enumerate(settings.groups)
+    ]
+    pilots = [
+        part_of_pilots(quiet, f"pilots[{i}]", x, n_frame) for i, x in enumerate(settings.pilots)
+    ]
+    parts, is_shifted = [*groups, *pilots], settings.half_subcarrier_shift
+    data = _data_of(settings.groups, site)
+    if isinstance(data, NoLaw):
+        return data
+    scale = 1 / math.sqrt(mean_power(layout, parts, is_shifted=is_shifted))
+    moments, on, clock = moments_of(layout, parts, is_shifted=is_shifted, scale=scale)
+    drawn = [_drawn_of(settings.groups, row, scale) for row in on]
+    for state in drawn:
+        reason = _unlawful(settings.groups, state)
+        if reason:
+            return NoLaw(reason=reason)
+    names = dict.fromkeys(group.constellation.name for group in settings.groups)
+    has_known = any(m.known is not None for m in moments)
+    made = OfdmTerm(
+        name=f"OFDM, {', '.join(names)}" if names else "OFDM, pilots alone",
+        holds="over seeds" if settings.groups else "every loop",
+        peak=max(
+            _peak(state, row, groups, pilots, scale) for state, row in zip(drawn, on, strict=True)
+        ),
+        clock_samples=clock,
+        symmetry=1 if has_known else 0,
+        data=frozenset(name for name, _ in data),
+        lowest_probability=max((lowest for _, lowest in data), default=0.0),
+        moments=tuple(moments),
+        drawn=tuple(drawn),
+    )
+    return replace(made, clock_samples=1) if made.is_uniform else made
+
+
+def ofdm_law(term: OfdmTerm | NoLaw) -> Law | NoLaw:
+    """Return the law of an OFDM signal on its own.
+
+    Parameters
+    ----------
+    term : OfdmTerm or NoLaw
+        From :func:`ofdm_term`.
+
+    Returns
+    -------
+    Law or NoLaw
+
+    Notes
+    -----
+    Moments without data (pilots alone, silent symbols) are counted as they are. The others are
+    inverted together where their data have about the same power.
+    """
+    if isinstance(term, NoLaw):
+        return term
+    n_all = sum(moments.count for moments in term.moments)
+    weights: list[float] = []
+    tails: list[Tail] = []
+    radii: list[float] = []
+    random: dict[int, list[Moments]] = {}
+    for moments in term.moments:
+        power = sum(
+            gain**2 * part.count * part.power
+            for state, gain in moments.sources
+            for part in term.drawn[state]
+        )
+        if power > 0:
+            random.setdefault(round(math.log2(power) / _OCTAVES), []).append(moments)
+        elif moments.known is not None:
+            weights.append(moments.count / n_all)
+            tails.append(KnownAmplitudes(amplitudes=np.sort(np.abs(moments.known))))
+            radii.append(math.inf)
+    for alike in random.values():
+        part = replace(term, moments=tuple(alike), _last={})
+        total = sum(moments.count for moments in alike)
+        law = law_of_characteristic(
+            part.characteristic,
+            name=term.name,
+            holds=term.holds,
+            mean_power=_mean_power(part),
+            peak=term.peak,
+        )
+        if isinstance(law, NoLaw):
+            return law
+        weights.append(total / n_all)
+        tails.append(law.tail)
+        radii.append(min(law.radius, law.peak))
+    return RadialLaw(
+        name=term.name,
+        holds=term.holds,
+        mean_power=1.0,
+        peak=term.peak,
+        radius=term.peak,
+        tail=MixedTail(weights=tuple(weights), tails=tuple(tails), radii=tuple(radii)),
+        lowest_probability=term.lowest_probability,
+    )
+
+
+def _mean_power(term: OfdmTerm) -> float:
+    """Return the mean power of the moments of a term."""
+    total, n_all = 0.0, 0
+    for moments in term.moments:
+        power = sum(
+            gain**2 * part.count * part.power
+            for state, gain in moments.sources
+            for part in term.drawn[state]
+        )
+        if moments.known is not None:
+            power += float(np.mean(np.abs(moments.known) ** 2))
+        total += moments.count * power
+        n_all += moments.count
+    return total / n_all
+
+
+def _data_of(groups: Sequence[Group], site: Site) -> list[tuple[str, float]] | NoLaw:
+    """Return the stream of each group and the lowest probability it serves."""
+    found: list[tuple[str, float]] = []
+    for number, group in enumerate(groups):
+        bits = group.data.period_bits(site.folder)
+        if bits is None:
+            share = getattr(group.data, "share", None)
+            found.append((f"{share or site.label}.groups[{number}]", 0.0))
+            continue
+        name = getattr(group.data, "sequence", None)
+        if name is None:
+            return NoLaw(reason=f"finite pattern: groups[{number}] repeats {bits} bits")
+        if any(name == other for other, _ in found):
+            return NoLaw(reason=f"two groups carry the same {name}")
+        found.append((name, 10 / bits))
+    return found
+
+
+def _drawn_of(groups: Sequence[Group], on: NDArray[np.bool_], scale: float) -> tuple[Drawn, ...]:
+    """Return what the groups that are on draw in a symbol."""
+    made = []
+    for group, is_on in zip(groups, on, strict=False):  # pilots come after the groups
+        points = group.constellation.points
+        centred = points - _mean(points)
+        if is_on and np.abs(centred).max() > _ROUNDING:
+            radii = np.abs(centred) * (10 ** (group.level_db / 20) * scale)
+            made.append(Drawn(count=len(group.subcarriers), radii=radii))
+    return tuple(made)
+
+
+def _mean(points: NDArray[np.complex128]) -> complex:
+    mean = complex(points.mean())
+    return mean if abs(mean) > _ROUNDING else 0j
+
+
+def _unlawful(groups: Sequence[Group], state: Sequence[Drawn]) -> str | None:
+    """Return why the data of a state are not isotropic, or None."""
+    for group in groups:
+        points = group.constellation.points - _mean(group.constellation.points)
+        if group.spreading is not None and np.abs(points).max() > _ROUNDING:
+            return "DFT-spread subcarriers have no law"
+        skew = max(abs(np.mean(points**2)), abs(np.mean(points**3)))
+        if skew > _ROUNDING:
+            name = group.constellation.name
+            return f"OFDM with {name}: it is not circular, so that samples differ within a symbol"
+    total = sum(part.count * part.power for part in state)
+    squares = sum(part.count * part.power**2 for part in state)
+    if total and total**2 < (FEWEST_SUBCARRIERS - _ROUNDING) * squares:
+        return (
+            f"OFDM with the power of {total**2 / squares:.0f} subcarriers of data; "
+            f"from {FEWEST_SUBCARRIERS} on there is a law"
+        )
+    return None
+
+
+def _peak(
+    state: Sequence[Drawn],
+    on: NDArray[np.bool_],
+    groups: Sequence[Part],
+    pilots: Sequence[Part],
+    scale: float,
+) -> float:
+    """Return a bound on the envelope of a symbol: all subcarriers at their peaks, in phase."""
+    known = sum(
+        float(np.sum(np.abs(part.expected))) * scale
+        for part, is_on in zip([*groups, *pilots], on, strict=True)
+        if is_on
+    )
+    return known + sum(part.count * float(part.radii.max()) for part in state)
