@@ -24,7 +24,7 @@ def test_periodic_noise_is_clean_and_a_cut_record_is_not(held, band_noise, n):
     cut = seam_figure(held(band_noise(1, 2 * n, 0.25)[:n]))
     assert cut.excess_db > 20
     assert not cut.is_clean
-    assert cut.out_of_band == "40 dB below the band"
+    assert cut.out_of_band.endswith("dB below the band")
 
 
 def test_tone_that_misses_the_loop_by_a_hundredth_of_a_cycle(held):

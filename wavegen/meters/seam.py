@@ -7,7 +7,6 @@ band of the signal, where a stretch from anywhere else in the loop has next to n
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Literal
 
 import numpy as np
 import scipy.fft
@@ -27,7 +26,9 @@ MARGIN_DB = 3.0
 since each figure is a mean over many bins."""
 FLOOR_DBC = -125.0
 """float32 samples alone leave about -140 dBc; converters have -100 dBc at best."""
-_BELOW_BAND = 10.0 ** (-40 / 10)
+_DEPTHS_DB = (40, 60, 80, 100)
+"""How far below the band a bin lies to be out of it. A spectrum that falls off slowly hides a jump
+in the first of these, where its own skirts are; it shows in a deeper one."""
 _MAIN_LOBE_BINS = 7
 """The window widens a line to ``sqrt(beta^2 + pi^2) / pi`` = 5.5 bins on each side."""
 _FEWEST_BINS = 1 / 64
@@ -47,8 +48,9 @@ class SeamFigure:
         The largest of the other stretches, dB on the same scale.
     floor_dbc : float
         Where both lie below it, the seam counts as clean.
-    out_of_band : {"40 dB below the band", "quietest tenth"}
-        Which bins were counted; the second where the signal fills the whole rate.
+    out_of_band : str
+        Which bins were counted: ``40 dB below the band`` (or 60, 80, 100), the depth at which
+        the seam stands out most; ``quietest tenth`` where the signal fills the whole rate.
     n_bins : int
         How many they are.
     stretch_samples : int
@@ -63,7 +65,7 @@ class SeamFigure:
     at_seam_dbc: float
     interior_dbc: float
     floor_dbc: float
-    out_of_band: Literal["40 dB below the band", "quietest tenth"]
+    out_of_band: str
     n_bins: int
     stretch_samples: int
     n_stretches: int
@@ -122,9 +124,10 @@ def seam_figure(
     Each stretch is weighted by a Kaiser window (beta 17) and transformed. In band are the bins
     that together hold 99 % of the mean spectrum of the other stretches; out of band are those
     where it is 40 dB or more below the mean density in band, 7 bins (the window's main lobe) and
-    more from the others. If these are fewer than 1/64 of all
-    bins, the quietest tenth is taken instead (of the spectrum smoothed over 65 bins, lest chance
-    choose them).
+    more from the others. The comparison is made with 60, 80 and 100 dB too, and the depth is
+    told at which the seam exceeds the others most. Sets of fewer than 1/64 of all bins are left
+    out; if none is left, the quietest tenth is taken (of the spectrum smoothed over 65 bins,
+    lest chance choose them).
     """
     n = signal.n_samples
     length = 1 << (max(min(stretch_samples, n // 4), 1).bit_length() - 1)
@@ -143,20 +146,25 @@ def seam_figure(
             allowed="a loop with some power",
             remedy="Check the gating and the level.",
         )
-    chosen, name = _out_of_band(mean)
-    with np.errstate(divide="ignore"):
-        at_seam = 10 * np.log10(seam[chosen].sum() / reference)
-        elsewhere = 10 * np.log10(interior[:, chosen].sum(axis=1).max() / reference)
-    return SeamFigure(
-        at_seam_dbc=float(at_seam),
-        interior_dbc=float(elsewhere),
-        floor_dbc=floor_dbc,
-        out_of_band=name,
-        n_bins=int(np.count_nonzero(chosen)),
-        stretch_samples=length,
-        n_stretches=len(same) + len(others),
-        n_same_place=len(same),
-    )
+    figures = []
+    for chosen, name in _out_of_band(mean):
+        with np.errstate(divide="ignore"):
+            at_seam = 10 * np.log10(seam[chosen].sum() / reference)
+            elsewhere = 10 * np.log10(interior[:, chosen].sum(axis=1).max() / reference)
+        figures.append(
+            SeamFigure(
+                at_seam_dbc=float(at_seam),
+                interior_dbc=float(elsewhere),
+                floor_dbc=floor_dbc,
+                out_of_band=name,
+                n_bins=int(np.count_nonzero(chosen)),
+                stretch_samples=length,
+                n_stretches=len(same) + len(others),
+                n_same_place=len(same),
+            )
+        )
+    heard = [figure for figure in figures if figure.at_seam_dbc >= floor_dbc]
+    return max(heard, key=lambda figure: figure.excess_db) if heard else figures[0]
 
 
 def _places(
@@ -187,18 +195,22 @@ def _spectrum(signal: Signal, centre: int, length: int) -> NDArray[np.float64]:
 
 def _out_of_band(
     mean: NDArray[np.float64],
-) -> tuple[NDArray[np.bool_], Literal["40 dB below the band", "quietest tenth"]]:
-    """Return which bins count as out of band, and by which rule."""
+) -> list[tuple[NDArray[np.bool_], str]]:
+    """Return sets of bins that count as out of band, each with its rule; one at least."""
     ranked = np.sort(mean)[::-1]
     held = np.cumsum(ranked)
     in_band = int(np.searchsorted(held, 0.99 * held[-1])) + 1
-    band = np.flatnonzero(mean >= _BELOW_BAND * held[in_band - 1] / in_band)
-    chosen = np.ones(mean.size, np.bool_)
-    for shift in range(-_MAIN_LOBE_BINS, _MAIN_LOBE_BINS + 1):
-        chosen[(band + shift) % mean.size] = False
-    if np.count_nonzero(chosen) >= _FEWEST_BINS * mean.size:
-        return chosen, "40 dB below the band"
+    found = []
+    for depth in _DEPTHS_DB:
+        band = np.flatnonzero(mean >= 10 ** (-depth / 10) * held[in_band - 1] / in_band)
+        chosen = np.ones(mean.size, np.bool_)
+        for shift in range(-_MAIN_LOBE_BINS, _MAIN_LOBE_BINS + 1):
+            chosen[(band + shift) % mean.size] = False
+        if np.count_nonzero(chosen) >= _FEWEST_BINS * mean.size:
+            found.append((chosen, f"{depth} dB below the band"))
+    if found:
+        return found
     half = _SMOOTHED_BINS // 2
     sums = np.cumsum(np.concatenate([[0.0], mean[-half:], mean, mean[:half]]))
     smooth = sums[_SMOOTHED_BINS:] - sums[:-_SMOOTHED_BINS]
-    return smooth <= np.quantile(smooth, _QUIETEST), "quietest tenth"
+    return [(smooth <= np.quantile(smooth, _QUIETEST), "quietest tenth")]
