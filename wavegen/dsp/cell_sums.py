@@ -100,8 +100,8 @@ class CellSums:
         for powers in following._tail:
             self.add_powers(powers)
 
-    def total(self) -> tuple[float, NDArray[np.float64]]:
-        """Return the sum of all by a fixed pairwise tree, and the largest power of each cell."""
+    def cells(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """Return sum and largest power of each cell of the grid, from that of the first sample."""
         sums, maxima = list(self._sums), list(self._maxima)
         if self._head:
             head = np.concatenate(self._head)
@@ -112,5 +112,10 @@ class CellSums:
             sums.append(sum_cells(tail))
             maxima.append(tail.max(keepdims=True))
         if not sums:
-            return 0.0, np.zeros(0)
-        return sum_tree(np.concatenate(sums)), np.concatenate(maxima)
+            return np.zeros(0), np.zeros(0)
+        return np.concatenate(sums), np.concatenate(maxima)
+
+    def total(self) -> tuple[float, NDArray[np.float64]]:
+        """Return the sum of all by a fixed pairwise tree, and the largest power of each cell."""
+        sums, maxima = self.cells()
+        return sum_tree(sums), maxima

@@ -106,13 +106,26 @@ def exact_powers(samples: Samples) -> NDArray[np.float64]:
     -------
     float64 array, shape (n,)
     """
-    return _powers(samples)[0].astype(np.float64)
+    return numbered_powers(samples)[0].astype(np.float64)
 
 
-def _powers(
+def numbered_powers(
     samples: Samples,
 ) -> tuple[NDArray[np.float32] | NDArray[np.float64], NDArray[np.int32]]:
-    """Return power and bin of each sample; zeros have bin ``_NOT_COUNTED``."""
+    """Return power and bin of each sample.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n,)
+        Finite samples on any scale.
+
+    Returns
+    -------
+    powers : float32 or float64 array, shape (n,)
+        float64 where float32 cannot hold one of them.
+    bins : int32 array, shape (n,)
+        As numbered by :mod:`wavegen.dsp.power_bins`; -1 for exact zeros.
+    """
     with np.errstate(over="ignore", under="ignore", invalid="ignore"):
         power = samples.real * samples.real
         power += samples.imag * samples.imag
@@ -152,7 +165,7 @@ class _Total:
 
     def add(self, start: int, samples: Samples) -> NDArray[np.float32] | NDArray[np.float64]:
         """Count a block of finite samples and return their powers."""
-        powers, number = _powers(samples)
+        powers, number = numbered_powers(samples)
         counted = powers
         low = int(number.min())
         if low == _NOT_COUNTED:
@@ -296,14 +309,15 @@ def _tally_compiled(kernel: Callable[..., None], samples: Samples) -> PowerTally
     peak, least, _ = extremes.tolist()
     counts = np.zeros(0, np.int64)
     first = 0
-    fine = work.fine.reshape(_FINE_BANKS, -1).sum(axis=0, dtype=np.uint32)
-    work.fine[:] = 0
-    codes = np.flatnonzero(fine)
+    banked = work.fine.reshape(_FINE_BANKS, -1)
+    fine = (banked[0] + banked[1]) + (banked[2] + banked[3])
+    codes = np.flatnonzero(fine != 0)  # many times as fast as on the numbers
+    banked[:, codes] = 0
     top_powers = np.zeros(0)
     if peak > 0.0:
         first = bin_of(least)
         banks = work.counts[first * _BANKS : (top_bin + 1) * _BANKS]
-        counts = banks[0::2].astype(np.int64) + banks[1::2]
+        counts = (banks[0::2] + banks[1::2]).astype(np.int64)
         banks[:] = 0
         octave, mantissa = np.divmod((top_bin << _STEP_BITS) - _HALF + codes, 1 << 23)
         top_powers = np.ldexp(1.0 + mantissa / (1 << 23), octave + LOWEST_OCTAVE)

@@ -7,6 +7,9 @@ METERS = Registry(
     {
         "power": "wavegen.meters.power:PowerMeter",
         "gated_power": "wavegen.meters.gated:GatedPowerMeter",
+        "batched_power": "wavegen.meters.batches:BatchedPowerMeter",
         "mean": "wavegen.meters.mean:MeanMeter",
+        "burst_powers": "wavegen.meters.burst_powers:BurstPowerMeter",
+        "record": "wavegen.meters.record:RecordMeter",
     },
 )
