@@ -95,7 +95,11 @@ class Site:
 
 
 class SourceSettings(Protocol):
-    """What every member of SOURCES is: a frozen dataclass of settings."""
+    """What every member of SOURCES is: a frozen dataclass of settings.
+
+    Optional: ``law(site)``, the distribution of the envelope, and ``term(site)``, what the source
+    is to a composite; either may be a :class:`wavegen.laws.term.NoLaw` that says why.
+    """
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
         """Return the shortest loop; raise RecipeError (at ``path``) where none fits."""
@@ -108,7 +112,9 @@ class StageSettings(Protocol):
     """What every member of STAGES is.
 
     A stage that has a say in the loop's length also has ``cycle``, as sources have; one whose
-    input runs at another rate has ``upstream_rate``: see :mod:`wavegen.stages.chain`.
+    input runs at another rate has ``upstream_rate``; one that knows what becomes of a law or of a
+    part of a composite has ``law(site, source)`` or ``term(site, source)``: see
+    :mod:`wavegen.stages.chain`.
     """
 
     def build(self, site: Site, source: Signal) -> Signal:

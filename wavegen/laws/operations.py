@@ -10,15 +10,38 @@ import numpy as np
 import scipy.special
 from numpy.typing import NDArray
 
+from wavegen.laws.gaussian import GaussianLaw
 from wavegen.laws.law import Law, to_db
 from wavegen.laws.mapped import amplitude_reach
 from wavegen.laws.panels import nodes_of, panel_edges
-from wavegen.laws.term import BaseTerm, Complexes, Reals, Term
+from wavegen.laws.term import BaseTerm, Complexes, GaussianTerm, NoLaw, Reals, Term
 
 _PANELS = 128
 _BLOCK = 1 << 20
 MOST_AMPLITUDES = 256
 """Different amplitudes of ramps that are told apart; more are gathered into so many."""
+
+
+def filtered_law(source: Law, *, how: str = "filtered") -> Law | NoLaw:
+    """Return the law behind a linear filter: complex Gaussian stays so, others have none.
+
+    Parameters
+    ----------
+    source : Law
+        Of the input.
+    how : str
+        What is done to it, for the reason: ``filtered``, ``resampled``.
+    """
+    if isinstance(source, GaussianLaw):
+        return source
+    return NoLaw(reason=f"{source.name}, {how}, has no law")
+
+
+def filtered_term(source: Term, *, how: str = "filtered") -> Term | NoLaw:
+    """Return what a part is behind a linear filter that keeps its mean power."""
+    if isinstance(source, GaussianTerm):
+        return source
+    return NoLaw(reason=f"{source.name}, {how}, has no law")
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

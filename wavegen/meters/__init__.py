@@ -11,5 +11,6 @@ METERS = Registry(
         "mean": "wavegen.meters.mean:MeanMeter",
         "burst_powers": "wavegen.meters.burst_powers:BurstPowerMeter",
         "record": "wavegen.meters.record:RecordMeter",
+        "symbol_papr": "wavegen.meters.symbol_papr:SymbolPaprMeter",
     },
 )

@@ -15,8 +15,9 @@ from wavegen.core.errors import RecipeError
 from wavegen.core.site import Cycle, Site
 from wavegen.core.units import QuantityError
 from wavegen.laws.law import Law
+from wavegen.laws.papr_symbol import LevelCrossing
 from wavegen.laws.term import NoLaw
-from wavegen.sources.ofdm_law import ofdm_law, ofdm_term
+from wavegen.sources.ofdm_law import ofdm_law, ofdm_symbol_law, ofdm_term
 from wavegen.sources.ofdm_layout import (
     MOST_SYMBOLS,
     CyclicPrefix,
@@ -174,6 +175,11 @@ class Ofdm:
     def law(self, site: Site) -> Law | NoLaw:
         """Return the law of the envelope over seeds; none by name where there is none."""
         return ofdm_law(self.term(site))
+
+    def symbol_papr_law(self, site: Site) -> LevelCrossing | NoLaw:
+        """Return the law of the PAPR per symbol, which is not that of the envelope."""
+        layout = self._lay_out(site.sample_rate_hz, site.path)
+        return ofdm_symbol_law(self, site, layout, self._n_frame)
 
     def _assemble(
         self,

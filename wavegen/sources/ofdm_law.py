@@ -14,6 +14,7 @@ from wavegen.core.site import Site
 from wavegen.laws.inversion import law_of_characteristic
 from wavegen.laws.law import Law
 from wavegen.laws.mixture import KnownAmplitudes, MixedTail
+from wavegen.laws.papr_symbol import LevelCrossing
 from wavegen.laws.radial import RadialLaw, Tail
 from wavegen.laws.term import NoLaw
 from wavegen.sources.ofdm_layout import Layout
@@ -252,3 +253,34 @@ def _peak(
         if is_on
     )
     return known + sum(part.count * float(part.radii.max()) for part in state)
+
+
+def ofdm_symbol_law(
+    settings: Settings, site: Site, layout: Layout, n_frame: int
+) -> LevelCrossing | NoLaw:
+    """Return the law of the PAPR per symbol: another statistic than the law of the envelope.
+
+    Parameters
+    ----------
+    settings, site, layout, n_frame
+        As in :func:`ofdm_term`.
+
+    Returns
+    -------
+    LevelCrossing or NoLaw
+        No law with a schedule or with pilots, or where the envelope has none.
+    """
+    if n_frame > 1 or settings.pilots:
+        return NoLaw(reason="PAPR per symbol with pilots or a schedule has no law")
+    term = ofdm_term(settings, site, layout, n_frame)
+    if isinstance(term, NoLaw):
+        return term
+    return LevelCrossing.of_spectrum(
+        np.concatenate([np.array(group.subcarriers.indices) for group in settings.groups]),
+        np.concatenate(
+            [
+                np.full(len(group.subcarriers), 10 ** (group.level_db / 10))
+                for group in settings.groups
+            ]
+        ),
+    )

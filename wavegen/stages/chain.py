@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Sequence
 from dataclasses import replace
 from fractions import Fraction
@@ -12,6 +13,8 @@ from wavegen.core.errors import RecipeError
 from wavegen.core.signal import Signal
 from wavegen.core.site import Cycle, Site, StageSettings
 from wavegen.core.units import format_hz
+from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw, Term
 
 
 @runtime_checkable
@@ -28,6 +31,25 @@ class SetsCycle(Protocol):
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
         """Return the shortest loop at the output's rate."""
+
+
+@runtime_checkable
+class HasLaw(Protocol):
+    """A stage that says what becomes of a law."""
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the output for that of the input; none by name.
+
+        ``site`` is that of the output, as in ``build``; it takes no notes here.
+        """
+
+
+@runtime_checkable
+class HasTerm(Protocol):
+    """A stage that says what becomes of a part of a composite."""
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the term of the output for that of the input; none by name."""
 
 
 def rates_of(stages: Sequence[StageSettings], sample_rate_hz: Fraction) -> list[Fraction]:
@@ -141,6 +163,54 @@ def build_chain(stages: Sequence[StageSettings], site: Site, source: Signal, pat
         here = site.at(f"{path}[{number}]", site.label)
         source = stage.build(_at_rate(here, rate), source)
     return source
+
+
+def chain_law(
+    stages: Sequence[StageSettings], site: Site, source: Law | NoLaw, path: str
+) -> Law | NoLaw:
+    """Return the law behind stages in a row.
+
+    Parameters
+    ----------
+    stages, site, path
+        As in :func:`build_chain`.
+    source : Law or NoLaw
+        Of the source.
+
+    Returns
+    -------
+    Law or NoLaw
+        No law, by name, from the first stage on that leaves none.
+    """
+    rates = rates_of(stages, site.sample_rate_hz)[1:]
+    for number, (stage, rate) in enumerate(zip(stages, rates, strict=True)):
+        if isinstance(source, NoLaw):
+            return source
+        if not isinstance(stage, HasLaw):
+            return NoLaw(reason=f"{source.name}, then {_words(stage)}, has no law")
+        here = site.at(f"{path}[{number}]", site.label)
+        source = stage.law(_at_rate(here, rate), source)
+    return source
+
+
+def chain_term(
+    stages: Sequence[StageSettings], site: Site, source: Term | NoLaw, path: str
+) -> Term | NoLaw:
+    """Return what a part of a composite is behind stages in a row; as :func:`chain_law`."""
+    rates = rates_of(stages, site.sample_rate_hz)[1:]
+    for number, (stage, rate) in enumerate(zip(stages, rates, strict=True)):
+        if isinstance(source, NoLaw):
+            return source
+        if not isinstance(stage, HasTerm):
+            return NoLaw(reason=f"{source.name}, then {_words(stage)}, has no law")
+        here = site.at(f"{path}[{number}]", site.label)
+        source = stage.term(_at_rate(here, rate), source)
+    return source
+
+
+def _words(stage: StageSettings) -> str:
+    """Return the name of a stage's class in words."""
+    return re.sub(r"(?<!^)([A-Z])", r" \1", type(stage).__name__).lower()
 
 
 def _at_rate(site: Site, rate: Fraction) -> Site:

@@ -14,6 +14,9 @@ from wavegen.dsp.bursts import Bursts
 from wavegen.dsp.interpolation import PASSBAND, delay_taps
 from wavegen.dsp.overlap_save import Filtered
 from wavegen.dsp.pilot import power_beyond
+from wavegen.laws.law import Law
+from wavegen.laws.operations import DelayedTerm, filtered_law, filtered_term
+from wavegen.laws.term import NoLaw, Term
 
 DOUBTFUL_SHARE = 1e-6
 """Power beyond the passband worth a warning: an EVM of 0.1 %."""
@@ -122,6 +125,19 @@ class Delay:
             lag=lag,
             fraction=fraction,
         )
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the input behind whole samples; a part of one is a filter."""
+        if self.delay.samples(site.sample_rate_hz).denominator == 1:
+            return source
+        return filtered_law(source, how="delayed by part of a sample")
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the delayed part of a composite."""
+        lag = self.delay.samples(site.sample_rate_hz)
+        if lag.denominator == 1:
+            return DelayedTerm.of(source, int(lag))
+        return filtered_term(source, how="delayed by part of a sample")
 
 
 def _shifted(source: Signal, lag: int) -> Signal:

@@ -20,6 +20,9 @@ from wavegen.core.units import QuantityError, format_hz
 from wavegen.dsp.overlap_save import Filtered
 from wavegen.dsp.pilot import N_STRETCHES, STRETCH_SAMPLES, is_whole, power_gain
 from wavegen.dsp.windows import STOPBAND_DB, design_bandpass, design_lowpass, kaiser_transition
+from wavegen.laws.law import Law
+from wavegen.laws.operations import filtered_law, filtered_term
+from wavegen.laws.term import NoLaw, Term
 
 Filter_ = NDArray[np.float64] | NDArray[np.complex128]
 
@@ -288,6 +291,16 @@ class Filter:
                 remedy="Correct the band.",
             )
         return Filtered.of(source, taps * gain**-0.5, lag=lag, mean_power=source.mean_power)
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law behind the filter: only complex Gaussian signals keep theirs."""
+        return filtered_law(source)
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the filtered part of a composite; its power must be known."""
+        if not self.keep_mean:
+            return NoLaw(reason=f"{source.name}, filtered, has a power that is not known")
+        return filtered_term(source)
 
     def _design(self, site: Site, rate: Fraction) -> Filter_:
         if self.bandwidth_hz is not None:

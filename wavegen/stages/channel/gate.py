@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Annotated, Protocol, runtime_checkable
 
@@ -15,10 +15,16 @@ from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Cycle, Note, Site
 from wavegen.core.timespan import TimeSpan
 from wavegen.core.units import QuantityError, format_s
-from wavegen.dsp.bursts import Bursts
+from wavegen.dsp.bursts import LONGEST_TABLE, Bursts, raised_cosine_ramp
+from wavegen.laws.law import Law
+from wavegen.laws.mapped import GatedLaw
+from wavegen.laws.operations import GatedTerm
+from wavegen.laws.term import NoLaw, Term
 
 NO_TIME = TimeSpan(Fraction(0), "samples")
 NEITHER = (False, False)
+MOST_RAMP_AMPLITUDES = 256
+"""Amplitudes that stand for a ramp in a law; their mean square is the ramp's."""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -213,6 +219,36 @@ class Gate:
             mean_power=None if source.mean_power is None else source.mean_power * bursts.mean_gain,
             gate=bursts,
         )
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the whole, over its mean; ``on_time`` of it is that of the on-time."""
+        bursts = self._quiet_bursts(site)
+        if bursts is None:
+            return source
+        ramps = 2 * bursts.ramp_samples * len(bursts.runs)
+        return GatedLaw(
+            source=source,
+            duty_fully_on=float(bursts.duty_fully_on),
+            ramp=raised_cosine_ramp(min(bursts.ramp_samples, MOST_RAMP_AMPLITUDES)),
+            ramp_share=ramps / bursts.period_samples,
+        )
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the gated part of a composite."""
+        bursts = self._quiet_bursts(site)
+        if bursts is None:
+            return source
+        if bursts.period_samples > LONGEST_TABLE:
+            return NoLaw(
+                reason=f"{source.name}, gated, repeats after {bursts.period_samples} samples"
+            )
+        ones = np.ones(bursts.period_samples, np.complex64)
+        return GatedTerm.of(source, bursts.apply(ones, 0).real.astype(np.float64))
+
+    def _quiet_bursts(self, site: Site) -> Bursts | None:
+        """Return the on-times without telling of rounding again."""
+        period = self.cycle(site.sample_rate_hz, site.path).n_samples
+        return self._bursts(replace(site, notes=[]), site.sample_rate_hz, period)
 
     def _unit(self) -> tuple[str, TimeSpan, int]:
         """Return the key that sets the period, its length, and how many make a period."""

@@ -17,6 +17,9 @@ from wavegen.dsp.bursts import Bursts
 from wavegen.dsp.interpolation import PASSBAND, Interpolator
 from wavegen.dsp.pilot import power_beyond
 from wavegen.dsp.pulse_shaping import Shaper, plan_shaping
+from wavegen.laws.law import Law
+from wavegen.laws.operations import filtered_law, filtered_term
+from wavegen.laws.term import NoLaw, Term
 
 LARGEST_RATIO = 1024
 """Rates further apart than this are refused: the kernel would outgrow every cache."""
@@ -169,3 +172,15 @@ class Resample:
             mean_power=source.mean_power,
             ratio=(ratio.numerator, ratio.denominator),
         )
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law at the new rate: only complex Gaussian signals keep theirs."""
+        if self.input_rate_hz == site.sample_rate_hz:
+            return source
+        return filtered_law(source, how="resampled")
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the part of a composite at the new rate."""
+        if self.input_rate_hz == site.sample_rate_hz:
+            return source
+        return filtered_term(source, how="resampled")

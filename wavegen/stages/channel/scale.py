@@ -10,6 +10,9 @@ from annotated_types import Ge, Le
 
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Site
+from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw, Term
+from wavegen.laws.term import Scaled as ScaledTerm
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -68,3 +71,11 @@ class Scale:
             mean_power=power,
             gain=10 ** (self.gain_db / 20),
         )
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the input: levels are over the mean."""
+        return source
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return the scaled part of a composite."""
+        return ScaledTerm.of(source, gain=10 ** (self.gain_db / 20))

@@ -15,6 +15,11 @@ from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
 from wavegen.dsp.bursts import Bursts
+from wavegen.laws.inversion import law_of_term
+from wavegen.laws.law import Law
+from wavegen.laws.mapped import clip_law
+from wavegen.laws.operations import EnvelopeTerm
+from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.channel.gate import on_time
 
 BLOCK_SAMPLES = 1 << 14
@@ -211,6 +216,28 @@ class Clip:
             amplitude=math.sqrt(level.power),
             gain=math.sqrt(level.input_mean / level.output_mean),
             origin=origin,
+        )
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the clipped signal from that of its input."""
+        return clip_law(source, self.ceiling_db)
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return what a clipped part is to a composite: lawful if isotropic at all times."""
+        if source.symmetry or source.clock_samples > 1:
+            return NoLaw(reason=f"{source.name}, clipped, has no law beside others")
+        before = law_of_term(source)
+        after = before if isinstance(before, NoLaw) else clip_law(before, self.ceiling_db)
+        if isinstance(after, NoLaw):
+            return after
+        return EnvelopeTerm(
+            name=after.name,
+            holds=after.holds,
+            mean_power=source.mean_power,
+            peak=math.sqrt(source.mean_power) * 10 ** (after.peak_db / 20),
+            data=source.data,
+            lowest_probability=source.lowest_probability,
+            law=after,
         )
 
 
