@@ -1,12 +1,18 @@
-"""On-times that repeat, by index: which samples are on, fully on, or in a ramp."""
+"""On-times that repeat, by index: which samples are on, fully on, or in a ramp.
+
+A record's own bursts, at places that follow no rule, are the runs of one period as long as the
+record.
+"""
 
 from __future__ import annotations
 
 import math
+from bisect import bisect_right
 from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
+from operator import itemgetter
 from typing import Self
 
 import numpy as np
@@ -41,7 +47,7 @@ def raised_cosine_ramp(n_samples: int) -> NDArray[np.float64]:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Bursts:
-    """When a periodic gate is on.
+    """When a gate is on: periodically, or at any places of a record that is one period.
 
     Parameters
     ----------
@@ -126,10 +132,40 @@ class Bursts:
         """
         first = start // self.period_samples - 1
         for base in range(first * self.period_samples, stop, self.period_samples):
-            for begin, end in self.runs:
+            number = bisect_right(self.runs, start - base + inset, key=itemgetter(1))
+            while number < len(self.runs) and base + self.runs[number][0] + inset < stop:
+                begin, end = self.runs[number]
                 low, high = max(base + begin + inset, start), min(base + end - inset, stop)
                 if low < high:
                     yield low, high
+                number += 1
+
+    def over(self, n_samples: int) -> Self:
+        """Return the bursts of a stretch from index 0, each by itself.
+
+        Parameters
+        ----------
+        n_samples : int
+            Length of the stretch; as a period it need not be a multiple of this one's.
+
+        Returns
+        -------
+        Bursts
+            Of period ``n_samples``: where that is a multiple of the own period they repeat as
+            before, else what is on at either end is cut there.
+
+        Examples
+        --------
+        >>> Bursts(period_samples=10, runs=((2, 5),)).over(24).runs
+        ((2, 5), (12, 15), (22, 24))
+        """
+        if n_samples % self.period_samples == 0:
+            runs = [(begin, begin + size) for begin, size in self.starts(n_samples)]
+        else:
+            runs = list(self.within(0, n_samples))
+        return type(self)(
+            period_samples=n_samples, runs=tuple(runs), ramp_samples=self.ramp_samples
+        )
 
     def starts(self, n_samples: int) -> list[tuple[int, int]]:
         """Return the bursts that begin in ``[0, n_samples)``.
