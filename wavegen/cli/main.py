@@ -28,6 +28,8 @@ VERBS = Registry(
     {
         "make": "wavegen.cli.make:Make",
         "measure": "wavegen.cli.measure:Measure",
+        "check": "wavegen.cli.check:Check",
+        "show": "wavegen.cli.show:Show",
         "new": "wavegen.cli.new:New",
         "list": "wavegen.cli.listing:Listing",
         "schema": "wavegen.cli.schema:Schema",

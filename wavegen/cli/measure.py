@@ -9,15 +9,15 @@ from typing import Any
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import (
     add_overrides,
+    add_reading,
     add_workers,
+    hints_of,
+    is_recipe,
     level_dbm,
     place,
-    positive,
-    rate,
+    refuse_reading,
 )
 from wavegen.core.errors import ArgumentsError
-
-RECIPE_SUFFIXES = {".yaml", ".yml"}
 
 
 class Measure:
@@ -36,12 +36,7 @@ class Measure:
         parser.add_argument(
             "subject", metavar="FILE|RECIPE", help="a data file, or a recipe by file or name"
         )
-        group = parser.add_argument_group("files without a header")
-        group.add_argument("--format", metavar="NAME", help="a format or datatype, such as ci16_le")
-        group.add_argument("--sample-rate", type=rate, metavar="RATE", help="such as 20MHz")
-        group.add_argument(
-            "--full-scale", type=positive, metavar="CODE", help="code that reads as 1.0"
-        )
+        add_reading(parser)
         parser.add_argument(
             "--reference-level",
             type=level_dbm,
@@ -68,7 +63,7 @@ class Measure:
         keep_large_blocks()
         progress = ConsoleProgress()
         try:
-            if _is_recipe(arguments.subject):
+            if is_recipe(arguments.subject):
                 document = _recipe(arguments, progress)
             else:
                 document = _file(arguments, progress)
@@ -81,51 +76,44 @@ class Measure:
         return 0
 
 
-def _is_recipe(subject: str) -> bool:
-    path = Path(subject)
-    if path.suffix.lower() in RECIPE_SUFFIXES:
-        return True
-    if path.exists() or path.suffix or len(path.parts) > 1:
-        return False
-    from wavegen.recipe.find import shipped_recipes
-
-    return any(name == subject for name, _, _ in shipped_recipes())
-
-
 def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
     from wavegen.production.measure import measure_recipe
     from wavegen.production.prepare import prepare
     from wavegen.recipe.find import find_recipe
     from wavegen.recipe.load import load_recipe
 
-    for option in (
-        "format",
-        "sample_rate",
-        "full_scale",
-        "reference_level",
-        "first",
-        "stop",
-        "period",
-        "loop",
-    ):
+    problem = "a recipe is measured as the whole loop that it makes"
+    refuse_reading(argparse.Namespace(**vars(arguments) | {"channel": None}), problem)
+    for option in ("reference_level", "first", "stop", "period", "loop"):
         given = getattr(arguments, option)
         if given is not None and given is not False:
             name = {"first": "from", "stop": "to"}.get(option, option.replace("_", "-"))
             raise ArgumentsError(
                 where=f"--{name}",
-                problem="a recipe is measured as the whole loop that it makes",
+                problem=problem,
                 allowed="this option with a data file",
                 remedy="Leave it out, or change the recipe with --set.",
             )
     loaded = load_recipe(find_recipe(arguments.subject), overrides=tuple(arguments.overrides))
-    return measure_recipe(prepare(loaded), workers=arguments.workers, progress=progress)
+    channels = prepare(loaded).channels
+    chosen = arguments.channel
+    if (chosen is None and len(channels) > 1) or not 0 <= (chosen or 0) < len(channels):
+        raise ArgumentsError(
+            where="--channel",
+            problem=f"the recipe has {len(channels)} channel{'s' if len(channels) > 1 else ''}"
+            + ("" if chosen is None else f", and channel {chosen} is asked for"),
+            allowed="one at a time: " + ("0 or 1" if len(channels) > 1 else "0"),
+            remedy="Add --channel 0, or another." if len(channels) > 1 else "Leave it out.",
+        )
+    document = measure_recipe(channels[chosen or 0], workers=arguments.workers, progress=progress)
+    return document | ({"channel": chosen} if len(channels) > 1 else {})
 
 
 def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
     from wavegen.core.excerpt import excerpt
-    from wavegen.files.format import ReadHints
+    from wavegen.files.analytic import looped
     from wavegen.files.read import open_recording
-    from wavegen.production.measure import Subject, measure
+    from wavegen.production.measure import Subject, completed_hints, measure
     from wavegen.production.stimulus import mismatch, sidecar_of
 
     if arguments.overrides:
@@ -135,14 +123,15 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
             allowed="--set with a recipe",
             remedy="Leave it out.",
         )
-    hints = ReadHints(
-        format=arguments.format,
-        sample_rate_hz=arguments.sample_rate,
-        full_scale=arguments.full_scale,
-        reference_level_dbm=arguments.reference_level,
-    )
+    hints = hints_of(arguments)
     recording = open_recording(Path(arguments.subject), hints)
     sidecar = sidecar_of(recording)
+    if sidecar is not None:
+        name = recording.path.name
+        entry = next(item for item in sidecar["files"] if item["name"] == name)
+        completed = completed_hints(entry, recording, hints)
+        if completed is not hints:
+            recording = open_recording(Path(arguments.subject), completed)
     warnings = list(recording.warnings)
     if sidecar is not None:
         other = mismatch(recording, sidecar)
@@ -167,13 +156,20 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
     loops = arguments.loop or period is not None or (sidecar is not None and not is_cut)
     subject = Subject(
         name=recording.path.name,
-        signal=excerpt(recording.signal, first, stop),
+        signal=looped(recording, first, stop) if loops else excerpt(recording.signal, first, stop),
         loops=loops,
         cycle_samples=sidecar["loop"]["cycle_samples"] if sidecar and not is_cut else None,
         reference_level_dbm=recording.reference_level_dbm,
+        is_power=recording.is_power,
     )
     document = measure(subject, workers=arguments.workers, progress=progress)
-    document |= {"file_format": recording.format, "datatype": recording.datatype.name}
+    document |= {
+        "file_format": recording.format,
+        "datatype": recording.datatype.label,
+        "is_real": recording.is_real,
+    }
+    if recording.n_channels > 1:
+        document["channel"] = recording.channel
     document["warnings"] = [
         {"kind": "warning", "where": str(recording.path), "text": text} for text in warnings
     ]
@@ -187,9 +183,12 @@ def show(document: dict[str, Any], console: Console) -> None:
 
     for note in (*document.get("rounded", ()), *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
-    kind = (
-        f"{document['file_format']} {document['datatype']}, " if "file_format" in document else ""
-    )
+    kind = ""
+    if "file_format" in document:
+        coded = "power series" if document["is_power"] else document["datatype"]
+        kind = f"{document['file_format']} {coded}, "
+    if "channel" in document:
+        kind += f"channel {document['channel']}, "
     console.table(summary_table(document, title=f"{document['name']} ({kind}{document['is']})"))
     console.table(level_table(document))
     if "mean_dbm" in document:

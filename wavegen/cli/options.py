@@ -5,9 +5,14 @@ from __future__ import annotations
 import argparse
 import os
 from fractions import Fraction
+from pathlib import Path
+from typing import TYPE_CHECKING
 
 from wavegen.core.errors import ArgumentsError
 from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity, split_quantity
+
+if TYPE_CHECKING:
+    from wavegen.files.format import ReadHints
 
 MOST_WORKERS = 256
 
@@ -49,6 +54,105 @@ def add_overrides(parser: argparse.ArgumentParser) -> None:
     )
 
 
+def add_reading(parser: argparse.ArgumentParser, *, before: str = "") -> None:
+    """Declare what says how a file without a header is read.
+
+    Parameters
+    ----------
+    parser : ArgumentParser
+        Of a verb.
+    before : str
+        Stands before the names that a verb needs for its output: ``input-``.
+    """
+    group = parser.add_argument_group("files without a header, or with several signals")
+    group.add_argument("--format", metavar="NAME", help="a format or datatype, such as ci16_le")
+    group.add_argument(
+        f"--{before}sample-rate", dest="told_rate", type=rate, metavar="RATE", help="such as 20MHz"
+    )
+    group.add_argument("--full-scale", type=positive, metavar="CODE", help="code that reads as 1.0")
+    group.add_argument(
+        f"--{before}bits",
+        dest="told_bits",
+        type=int,
+        choices=(12, 14, 16),
+        help="bits of the words in 16-bit containers",
+    )
+    group.add_argument(
+        f"--{before}align",
+        dest="told_align",
+        choices=("left", "right"),
+        help="where shorter words stand in their containers",
+    )
+    group.add_argument(
+        "--channel", type=whole, metavar="N", help="which of several channels, from 0"
+    )
+    group.add_argument("--variable", metavar="NAME", help="which array of several")
+
+
+def hints_of(arguments: argparse.Namespace) -> ReadHints:
+    """Return what the options of :func:`add_reading` say."""
+    from wavegen.files.format import ReadHints
+
+    return ReadHints(
+        format=arguments.format,
+        sample_rate_hz=arguments.told_rate,
+        full_scale=arguments.full_scale,
+        bits=arguments.told_bits,
+        align=arguments.told_align,
+        channel=arguments.channel,
+        variable=arguments.variable,
+        reference_level_dbm=getattr(arguments, "reference_level", None),
+    )
+
+
+_READING = {
+    "format": "format",
+    "told_rate": "sample-rate",
+    "full_scale": "full-scale",
+    "told_bits": "bits",
+    "told_align": "align",
+    "channel": "channel",
+    "variable": "variable",
+}
+
+
+def refuse_reading(arguments: argparse.Namespace, problem: str) -> None:
+    """Refuse the options of :func:`add_reading` where there is nothing to read by them.
+
+    Raises
+    ------
+    ArgumentsError
+        The first that is given.
+    """
+    for name, option in _READING.items():
+        if getattr(arguments, name) is not None:
+            raise ArgumentsError(
+                where=f"--{option}",
+                problem=problem,
+                allowed="this option with a data file",
+                remedy="Leave it out.",
+            )
+
+
+RECIPE_SUFFIXES = {".yaml", ".yml"}
+
+
+def is_recipe(subject: str) -> bool:
+    """Return whether an argument means a recipe: by its ending, or as the name of a shipped one."""
+    path = Path(subject)
+    if path.suffix.lower() in RECIPE_SUFFIXES:
+        return True
+    try:
+        is_there = path.exists()
+    except (OSError, ValueError):  # too long, or with a NUL: no such file, and no such name
+        return False
+    if is_there or path.suffix or len(path.parts) > 1:
+        return False
+    from wavegen.recipe.find import shipped_recipes
+
+    return any(name == subject for name, _, _ in shipped_recipes())
+
+
 def rate(text: str) -> Fraction:
     """Read a rate with its unit, such as ``20MHz`` or ``1625/6 kHz``.
 
@@ -71,6 +175,43 @@ def level_dbm(text: str) -> float:
     return float(_quantity(text, "_dbm"))
 
 
+def ratio_db(text: str) -> float:
+    """Read a ratio with its unit, such as ``-3dB``.
+
+    Raises
+    ------
+    argparse.ArgumentTypeError
+        No ratio in dB.
+    """
+    return float(_quantity(text, "_db"))
+
+
+def level_dbfs(text: str) -> float:
+    """Read a level with its unit, such as ``-1dBFS``.
+
+    Raises
+    ------
+    argparse.ArgumentTypeError
+        No level in dBFS.
+    """
+    return float(_quantity(text, "_dbfs"))
+
+
+def tolerance_db(text: str) -> float:
+    """Read a tolerance such as ``0.05dB``.
+
+    Raises
+    ------
+    argparse.ArgumentTypeError
+        No ratio in dB, or a negative one.
+    """
+    value = ratio_db(text)
+    if value < 0:
+        message = f"{text!r} is negative; allowed: from 0 dB. Write it like 0.05dB."
+        raise argparse.ArgumentTypeError(message)
+    return value
+
+
 def _quantity(text: str, suffix: str, least: Fraction | None = None) -> Fraction:
     try:
         value = parse_quantity(text, DIMENSIONS[suffix])
@@ -80,6 +221,20 @@ def _quantity(text: str, suffix: str, least: Fraction | None = None) -> Fraction
         message = f"{text!r} is not above zero; allowed: more than 0. Write it like 20 MHz."
         raise argparse.ArgumentTypeError(message)
     return value
+
+
+def whole(text: str) -> int:
+    """Read a whole number from 0.
+
+    Raises
+    ------
+    argparse.ArgumentTypeError
+        Anything else.
+    """
+    if not text.isascii() or not text.isdigit() or len(text) > 9:
+        message = f"{text[:40]!r} is no whole number; allowed: 0 and up"
+        raise argparse.ArgumentTypeError(message)
+    return int(text)
 
 
 def positive(text: str) -> float:

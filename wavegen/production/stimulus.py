@@ -3,15 +3,166 @@
 from __future__ import annotations
 
 import json
+from dataclasses import dataclass, replace
+from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
 from wavegen.core.errors import FileError
-from wavegen.files.format import Recording
+from wavegen.files.faults import told
+from wavegen.files.format import ReadHints, Recording
+from wavegen.files.read import open_recording
 from wavegen.production.sidecar import FORMAT
 
 SUFFIX = ".ccdf.json"
 LARGEST_BYTES = 64_000_000
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Stimulus:
+    """A sidecar, and which of its files are meant.
+
+    Parameters
+    ----------
+    path : Path
+        The sidecar; its files lie beside it.
+    document : dict
+        What it says.
+    names : tuple of str
+        Data files that are meant: all that it lists, or the one that was named.
+    """
+
+    path: Path
+    document: dict[str, Any]
+    names: tuple[str, ...]
+
+    @property
+    def items(self) -> list[dict[str, Any]]:
+        """Entries of the files that are meant."""
+        return [item for item in self.document["files"] if item["name"] in self.names]
+
+    def open(self, item: dict[str, Any], hints: ReadHints | None = None) -> Recording:
+        """Open one of its files; the sidecar gives the rate where the file itself does not.
+
+        Raises
+        ------
+        FileError
+            Missing or damaged.
+        """
+        return open_listed(self.path.parent / item["name"], self.document, hints or ReadHints())
+
+
+def open_listed(path: Path, document: dict[str, Any], hints: ReadHints) -> Recording:
+    """Open a file that a sidecar lists, which gives the rate where the file itself does not.
+
+    Raises
+    ------
+    FileError
+        Missing or damaged.
+    """
+    try:
+        return open_recording(path, hints)
+    except FileError:
+        if hints.sample_rate_hz is not None:
+            raise
+    rate_hz = Fraction(document["sample_rate_exact_hz"])
+    return open_recording(path, replace(hints, sample_rate_hz=rate_hz))
+
+
+def find_stimulus(path: Path) -> Stimulus:
+    """Return the stimulus that a path means.
+
+    Parameters
+    ----------
+    path : Path
+        A folder that holds one, a sidecar, or a data file (of a pair either, or their common
+        name) that a sidecar beside it lists.
+
+    Returns
+    -------
+    Stimulus
+
+    Raises
+    ------
+    FileError
+        There is none, several, or its sidecar cannot be read.
+    """
+    if "\0" in str(path):
+        raise FileError(
+            where=repr(str(path)),
+            problem="the name holds a NUL character",
+            allowed="names that a file can have",
+            remedy="Check the name.",
+        )
+    with told(path):
+        is_folder = path.is_dir()
+    if is_folder:
+        path = _only_sidecar(path)
+    if path.name.lower().endswith(SUFFIX):
+        document = read_sidecar(path)
+        names = tuple(item["name"] for item in document["files"])
+        return Stimulus(path=path, document=document, names=names)
+    found = listing(path)
+    if found is not None:
+        return found
+    with told(path):
+        path.stat()
+    raise FileError(
+        where=str(path),
+        problem="no sidecar beside it lists this file",
+        allowed=f"a stimulus with its sidecar NAME{SUFFIX}, as `wavegen make` writes them",
+        remedy="Name the sidecar, or measure the file with `wavegen measure`.",
+    )
+
+
+def listing(path: Path) -> Stimulus | None:
+    """Return the stimulus whose sidecar lists a file, None if there is none.
+
+    Parameters
+    ----------
+    path : Path
+        A data file, any other file of it, or the common name of a pair. It need not exist.
+
+    Raises
+    ------
+    FileError
+        A sidecar speaks of it and cannot be read.
+    """
+    name = path.name
+    for sidecar in _sidecars(path.parent):
+        if not _mentions(sidecar, name, is_whole=bool(path.suffix)):
+            continue
+        document = read_sidecar(sidecar)
+        for item in document["files"]:
+            if name in item["all_names"] or name in _stems(item["all_names"]):
+                return Stimulus(path=sidecar, document=document, names=(item["name"],))
+    return None
+
+
+def _stems(names: list[str]) -> set[str]:
+    """Return the common name of a pair; a single file has none."""
+    stems = {name.rpartition(".")[0] for name in names}
+    return stems if len(names) > 1 and len(stems) == 1 else set()
+
+
+def _sidecars(folder: Path) -> list[Path]:
+    with told(folder):
+        return sorted(path for path in folder.glob(f"*{SUFFIX}") if not path.is_dir())
+
+
+def _only_sidecar(folder: Path) -> Path:
+    found = _sidecars(folder)
+    own = folder / f"{folder.resolve().name}{SUFFIX}"
+    if own in found:
+        return own
+    if len(found) == 1:
+        return found[0]
+    raise FileError(
+        where=str(folder),
+        problem=f"holds {len(found) or 'no'} sidecars" + (": which one?" if found else ""),
+        allowed=f"a folder with one file that ends in {SUFFIX}",
+        remedy=f"Name one of them, such as {found[0].name}." if found else "Check the path.",
+    )
 
 
 def sidecar_of(recording: Recording) -> dict[str, Any] | None:
@@ -40,12 +191,16 @@ def sidecar_of(recording: Recording) -> dict[str, Any] | None:
     return None
 
 
-def _mentions(path: Path, name: str) -> bool:
-    """Return whether a sidecar speaks of a file: a damaged one of another file is no matter."""
+def _mentions(path: Path, name: str, *, is_whole: bool = True) -> bool:
+    """Return whether a sidecar speaks of a file: a damaged one of another file is no matter.
+
+    A name that is not the whole one may go on, as the common name of a pair does.
+    """
     try:
         if not path.is_file() or path.stat().st_size > LARGEST_BYTES:
             return False
-        return json.dumps(name, ensure_ascii=False).encode() in path.read_bytes()
+        quoted = json.dumps(name, ensure_ascii=False)
+        return (quoted if is_whole else quoted[:-1]).encode("utf-8", "replace") in path.read_bytes()
     except OSError:  # one that may not be read says nothing
         return False
 
@@ -85,8 +240,15 @@ def _fault_of(document: Any) -> str:
 
     fault = next(Draft202012Validator(schema()).iter_errors(_condensed(document)), None)
     if fault is None:
-        return ""
+        names = [name for item in document["files"] for name in (item["name"], *item["all_names"])]
+        outside = next((name for name in names if not _is_plain(name)), None)
+        return f"lists {outside[:60]!r}, which is no name beside it" if outside else ""
     return f"is no {FORMAT} sidecar: {fault.json_path}: {fault.message[:120]}"
+
+
+def _is_plain(name: str) -> bool:
+    """Return whether a name stays in its folder, here and on other systems."""
+    return name not in {"", ".", ".."} and not set(name) & set("/\\\0")
 
 
 def _condensed(value: Any) -> Any:

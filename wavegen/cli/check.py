@@ -1,0 +1,82 @@
+"""`wavegen check`: a stimulus against its sidecar."""
+
+from __future__ import annotations
+
+import argparse
+from pathlib import Path
+from typing import Any
+
+from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.options import add_workers, tolerance_db
+
+STATUS = {"match": 0, "differ": 5, "undecided": 6}
+UNREADABLE = 4
+
+
+class Check:
+    """The verb ``check``."""
+
+    summary = "check a stimulus against its sidecar"
+    description = (
+        "Check that files are still what their sidecar says: by their SHA-512, and where\n"
+        "that differs, by measuring them as a loop. A folder or a sidecar stands for all\n"
+        "files that it lists, a data file for itself. Exit status: 0 match, 5 differ,\n"
+        "6 undecided, 4 if a file is missing or cannot be read."
+    )
+
+    @staticmethod
+    def arguments(parser: argparse.ArgumentParser) -> None:
+        """Declare the arguments."""
+        parser.add_argument(
+            "stimulus", type=Path, metavar="STIMULUS", help="a folder, a sidecar or a data file"
+        )
+        parser.add_argument(
+            "--tolerance",
+            type=tolerance_db,
+            metavar="LEVEL",
+            default=None,
+            help="largest difference that matches (default: 0.05dB, more than rounding makes)",
+        )
+        add_workers(parser)
+
+    @staticmethod
+    def run(arguments: argparse.Namespace, console: Console) -> int:
+        """Compare and print."""
+        from wavegen.core.allocation import keep_large_blocks
+
+        keep_large_blocks()
+        from wavegen.production.check import TOLERANCE_DB, check
+        from wavegen.production.stimulus import find_stimulus
+
+        progress = ConsoleProgress()
+        try:
+            document = check(
+                find_stimulus(arguments.stimulus),
+                tolerance_db=TOLERANCE_DB if arguments.tolerance is None else arguments.tolerance,
+                workers=arguments.workers,
+                progress=progress,
+            )
+        finally:
+            progress.close()
+        if arguments.json:
+            console.document(document)
+        else:
+            show(document, console)
+        for row in document["files"]:
+            if not row["is_readable"]:
+                console.fail("; ".join(row["reasons"]))
+        return STATUS[document["verdict"]] if document["is_complete"] else UNREADABLE
+
+
+def show(document: dict[str, Any], console: Console) -> None:
+    """Print one check."""
+    from wavegen.reports.inspection import check_table, verdict_words
+
+    for row in document["files"]:
+        for warning in row["warnings"]:
+            console.warn(f"{row['name']}: {warning}")
+    console.table(check_table(document))
+    for row in document["files"]:
+        for reason in row["reasons"] if row["is_readable"] else ():
+            console.line(f"{row['name']}: {reason}.")
+    console.line(verdict_words(document))

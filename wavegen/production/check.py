@@ -1,0 +1,277 @@
+"""A stimulus against its sidecar: the hash, then what the file measures as a loop."""
+
+from __future__ import annotations
+
+import math
+from typing import Any, Literal
+
+from wavegen.core.errors import FileError, SignalError
+from wavegen.core.progress import Progress, silent
+from wavegen.core.units import format_hz
+from wavegen.files.analytic import looped
+from wavegen.files.digest import sha512_of
+from wavegen.files.format import Recording
+from wavegen.production.measure import Subject, measure
+from wavegen.production.sidecar import FORMAT
+from wavegen.production.stimulus import Stimulus
+
+Verdict = Literal["match", "differ", "undecided"]
+
+TOLERANCE_DB = 0.05
+"""Levels of one loop written twice may differ by this.
+
+It is six bins of the power meter (0.0085 dB) and the step of the sidecar's curves. Rounding the
+same loop to 8 bits near full scale moves the mean by 0.001 dB and its peak by 0.05 dB (0.71 of
+127 codes); to 16 bits, by 0.0002 dB. Power sensors are not that good: a larger difference is none
+of rounding, and one that a bench can see.
+"""
+
+_SAME: dict[str, Any] = {
+    "verdict": "match",
+    "compared_by": "hash",
+    "largest_difference_db": 0.0,
+    "mean_difference_db": 0.0,
+    "peak_difference_db": 0.0,
+    "peak_between_samples_difference_db": 0.0,
+    "papr_difference_db": 0.0,
+}
+"""Equal bytes: no difference, and nothing to measure."""
+
+_FIGURES = ("mean_dbfs", "peak_dbfs", "peak_between_samples_dbfs", "papr_db")
+
+
+def check(
+    stimulus: Stimulus,
+    *,
+    tolerance_db: float = TOLERANCE_DB,
+    workers: int = 1,
+    progress: Progress = silent,
+) -> dict[str, Any]:
+    """Compare the files of a stimulus with what its sidecar says of them.
+
+    Parameters
+    ----------
+    stimulus : Stimulus
+        Its sidecar, and which of its files are meant.
+    tolerance_db : float
+        Largest difference of a level that still matches, dB; at least 0.
+    workers, progress
+        As in :func:`wavegen.core.render.render`.
+
+    Returns
+    -------
+    dict
+        JSON values: one entry for each file, and the verdict of all: ``differ`` if one differs,
+        else ``undecided`` if one is. ``is_complete`` is False where a file is missing or cannot
+        be read.
+
+    Notes
+    -----
+    A file whose bytes, length, rate and datatype are those of the sidecar matches; nothing is
+    measured then. Any other is read as a loop, and its mean, peaks, PAPR and the levels of its
+    CCDF are compared. A loop's figures are exact, but a level with fewer than ten samples beyond
+    it hangs on those few: it is ``undecided``, and so is the file if only such levels differ.
+    """
+    files = [
+        check_file(stimulus, item, tolerance_db=tolerance_db, workers=workers, progress=progress)
+        for item in stimulus.items
+    ]
+    verdicts = [row["verdict"] for row in files]
+    return {
+        "format": f"{FORMAT}.check",
+        "version": 1,
+        "name": stimulus.document["recipe"]["name"],
+        "title": stimulus.document["title"],
+        "sidecar": str(stimulus.path),
+        "verdict": _worst(verdicts),
+        "is_complete": all(row["is_readable"] for row in files),
+        "tolerance_db": tolerance_db,
+        "files": files,
+    }
+
+
+def _worst(verdicts: list[Verdict]) -> Verdict:
+    order: tuple[Verdict, ...] = ("differ", "undecided")
+    return next((verdict for verdict in order if verdict in verdicts), "match")
+
+
+def check_file(
+    stimulus: Stimulus,
+    item: dict[str, Any],
+    *,
+    tolerance_db: float,
+    workers: int = 1,
+    progress: Progress = silent,
+) -> dict[str, Any]:
+    """Compare one file with its entry in the sidecar.
+
+    Parameters
+    ----------
+    stimulus : Stimulus
+        Its sidecar.
+    item : dict
+        The entry.
+    tolerance_db, workers, progress
+        As in :func:`check`.
+
+    Returns
+    -------
+    dict
+        JSON values; differences are those of the file from the sidecar, dB.
+    """
+    row: dict[str, Any] = {
+        "name": item["name"],
+        "hash": "missing",
+        "verdict": "undecided",
+        "compared_by": None,
+        "is_readable": False,
+        "reasons": [],
+        "largest_difference_db": None,
+        "at_probability": None,
+        "mean_difference_db": None,
+        "peak_difference_db": None,
+        "peak_between_samples_difference_db": None,
+        "papr_difference_db": None,
+        "levels": [],
+        "warnings": [],
+    }
+    path = stimulus.path.parent / item["name"]
+    try:
+        is_equal = sha512_of(path, progress) == item["sha512"]
+        row["hash"] = "equal" if is_equal else "differs"
+        row["verdict"] = "undecided" if is_equal else "differ"
+        recording = stimulus.open(item)
+    except FileError as error:
+        return row | {"reasons": [str(error)]}
+    row |= {"is_readable": True, "warnings": list(recording.warnings)}
+    facts = _other_facts(recording, stimulus.document, item)
+    if facts:
+        return row | {"verdict": "differ", "compared_by": "facts", "reasons": facts}
+    if is_equal and recording.datatype.name == item["datatype"]:
+        return row | _SAME
+    return row | _measured(recording, item, tolerance_db, workers, progress)
+
+
+def _other_facts(recording: Recording, document: dict[str, Any], item: dict[str, Any]) -> list[str]:
+    found = []
+    if recording.n_samples != item["n_samples"]:
+        found.append(f"has {recording.n_samples} samples, the sidecar says {item['n_samples']}")
+    if float(recording.sample_rate_hz) != document["sample_rate_hz"]:
+        stated = format_hz(document["sample_rate_hz"])
+        found.append(f"has the rate {format_hz(recording.sample_rate_hz)}, stated is {stated}")
+    return found
+
+
+def _measured(
+    recording: Recording,
+    item: dict[str, Any],
+    tolerance_db: float,
+    workers: int,
+    progress: Progress,
+) -> dict[str, Any]:
+    subject = Subject(name=recording.path.name, signal=looped(recording), loops=True)
+    try:
+        found = measure(subject, workers=workers, progress=progress)
+    except SignalError as error:
+        reasons = [f"is no signal any more: {error.problem}"]
+        return {"verdict": "differ", "compared_by": "statistics", "reasons": reasons}
+    except FileError as error:
+        return {"is_readable": False, "reasons": [str(error)]}
+    return compare_figures(item, found, tolerance_db=tolerance_db)
+
+
+def compare_figures(
+    stated: dict[str, Any], found: dict[str, Any], *, tolerance_db: float
+) -> dict[str, Any]:
+    """Compare two sets of figures of loops of one length.
+
+    Parameters
+    ----------
+    stated, found : dict
+        As :func:`wavegen.production.sidecar.power_figures` gives them.
+    tolerance_db : float
+        Largest difference that still matches, dB.
+
+    Returns
+    -------
+    dict
+        ``verdict``, reasons, and every difference (``found`` less ``stated``), dB.
+    """
+    levels = _compare_levels(stated, found, tolerance_db)
+    single = {key: round(found[key] - stated[key], 6) for key in _FIGURES}
+    resolved = [row for row in levels if row["verdict"] != "undecided"]
+    reasons = [
+        f"{words} differs by {single[key]:+.3f} dB"
+        for key, words in zip(
+            _FIGURES, ("the mean", "the peak", "the peak between samples", "the PAPR"), strict=True
+        )
+        if abs(single[key]) > tolerance_db
+    ]
+    reasons += [
+        f"the level at {row['probability']:g} differs" + _by(row["difference_db"])
+        for row in resolved
+        if row["verdict"] == "differ"
+    ]
+    verdict: Verdict = "differ" if reasons else "match"
+    doubtful = [row for row in levels if row["verdict"] == "undecided" and row["is_beyond"]]
+    if verdict == "match" and (doubtful or not resolved):
+        verdict = "undecided"
+        reasons = [
+            f"the level at {row['probability']:g} differs{_by(row['difference_db'])}, with fewer "
+            "than ten samples beyond it"
+            for row in doubtful
+        ] or ["the loop is so short that no level has ten samples beyond it"]
+    largest = max(resolved, key=_size, default=None)
+    return {
+        "verdict": verdict,
+        "compared_by": "statistics",
+        "reasons": reasons,
+        "largest_difference_db": largest["difference_db"] if largest else None,
+        "at_probability": largest["probability"] if largest else None,
+        "mean_difference_db": single["mean_dbfs"],
+        "peak_difference_db": single["peak_dbfs"],
+        "peak_between_samples_difference_db": single["peak_between_samples_dbfs"],
+        "papr_difference_db": single["papr_db"],
+        "levels": [{k: v for k, v in row.items() if k != "is_beyond"} for row in levels],
+    }
+
+
+def _compare_levels(
+    stated: dict[str, Any], found: dict[str, Any], tolerance_db: float
+) -> list[dict[str, Any]]:
+    others = {row["probability"]: row for row in found["levels"]}
+    rows = []
+    for row in stated["levels"]:
+        other = others.get(row["probability"])
+        if other is None:
+            continue
+        difference = _difference(row["level_db"], other["level_db"])
+        is_beyond = difference is None or abs(difference) > tolerance_db
+        is_resolved = row["resolved"] and other["resolved"]
+        rows.append(
+            {
+                "probability": row["probability"],
+                "stated_db": row["level_db"],
+                "found_db": other["level_db"],
+                "difference_db": difference,
+                "verdict": ("differ" if is_beyond else "match") if is_resolved else "undecided",
+                "is_beyond": is_beyond,
+            }
+        )
+    return rows
+
+
+def _difference(stated_db: float | None, found_db: float | None) -> float | None:
+    """Return the difference of two levels; None where one of them alone is minus infinity."""
+    if stated_db is None or found_db is None:
+        return 0.0 if stated_db is found_db else None
+    return round(found_db - stated_db, 4)
+
+
+def _size(row: dict[str, Any]) -> float:
+    difference = row["difference_db"]
+    return math.inf if difference is None else abs(difference)
+
+
+def _by(difference_db: float | None) -> str:
+    return " without bound" if difference_db is None else f" by {difference_db:+.3f} dB"
