@@ -308,7 +308,7 @@ class RecordReading:
             return
         cell, stop = self._cell, start + samples.size
         first, last = -(-start // cell) * cell, stop // cell * cell
-        if first >= last:
+        if first > last:  # inside one cell
             self._open.append((start, samples.copy()))
             self._close()
             return
