@@ -37,6 +37,9 @@ _NARROWEST = 2e-5
 _SETTLED = 17.0
 """Time constants until one pole has settled to 4e-8."""
 _FINE = 16
+_FINER = 64
+_WIDE = 0.02
+"""Cutoffs from here on, in cycles a sample, are designed on the finer grid."""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -318,19 +321,20 @@ def one_pole_taps(cutoff: float) -> tuple[NDArray[np.float64], int]:
 
     Notes
     -----
-    The decay ``exp(-2 pi cutoff t)`` is sampled 16 times as finely, band-limited to the sample
-    rate and thinned out, so that the response is that of the pole up to 0.45 of the rate, and not
-    of its aliases.
+    The decay ``exp(-2 pi cutoff t)`` is sampled 16 or 64 times as finely, band-limited to the
+    sample rate and thinned out, so that the response is that of the pole up to 0.45 of the rate,
+    and not of its aliases (to 2e-4).
     """
-    decay = 2 * np.pi * cutoff / _FINE
+    times = _FINER if cutoff >= _WIDE else _FINE
+    decay = 2 * np.pi * cutoff / times
     fine = np.exp(-decay * np.arange(math.ceil(_SETTLED / decay) + 1))
     fine[0] /= 2  # the trapezoid rule, where the decay begins
-    limit = design_lowpass(passband_edge=0.45 / _FINE, stopband_edge=0.55 / _FINE, stopband_db=80)
-    before = limit.size // 2 // _FINE + 1
-    after = math.ceil((fine.size + limit.size // 2) / _FINE)
+    limit = design_lowpass(passband_edge=0.45 / times, stopband_edge=0.55 / times, stopband_db=80)
+    before = limit.size // 2 // times + 1
+    after = math.ceil((fine.size + limit.size // 2) / times)
     n_fft = scipy.fft.next_fast_len(fine.size + limit.size)
     joined = scipy.fft.irfft(scipy.fft.rfft(fine, n_fft) * scipy.fft.rfft(limit, n_fft), n_fft)
-    place = np.arange(-before, after + 1) * _FINE + limit.size // 2
+    place = np.arange(-before, after + 1) * times + limit.size // 2
     taps = np.where((place >= 0) & (place < n_fft), joined[np.clip(place, 0, n_fft - 1)], 0.0)
     if taps.size % 2 == 0:
         taps = np.append(taps, 0.0)
