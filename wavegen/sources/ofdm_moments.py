@@ -42,6 +42,13 @@ class Drawn:
         """Variance of one subcarrier."""
         return float(np.mean(self.radii**2))
 
+    @property
+    def rings(self) -> tuple[Reals, Reals]:
+        """Different magnitudes and the share of the points on each."""
+        rounded = np.round(self.radii / self.radii.max(), 10)
+        _, first, counts = np.unique(rounded, return_index=True, return_counts=True)
+        return self.radii[first], counts / self.radii.size
+
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Moments:
@@ -199,9 +206,9 @@ class OfdmTerm(BaseTerm):
             return kept[1]
         total = np.ones(t.size)
         for part in self.drawn[state]:
-            rings, counts = np.unique(np.round(part.radii, 12), return_counts=True)
+            rings, shares = part.rings
             waves = scipy.special.j0(np.multiply.outer(gain * t, rings))
-            total *= (waves @ (counts / counts.sum())) ** part.count
+            total *= (waves @ shares) ** part.count
         self._last[state, gain] = (t, total)
         return total
 
