@@ -7,7 +7,7 @@ import pytest
 from wavegen.core.evaluate import evaluate
 from wavegen.core.render import samples_of
 from wavegen.core.signal import Signal
-from wavegen.dsp.differences import FourthDifference, Offset
+from wavegen.dsp.differences import FourthDifference
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -53,9 +53,3 @@ def test_the_cut_changes_no_bit():
     whole = samples_of(signal)
     for low, high in ((0, 1), (1, 3), (5, 2999), (2998, 3000)):
         assert evaluate({signal: (low, high)})[signal].tobytes() == whole[low:high].tobytes()
-
-
-def test_an_offset_is_subtracted_and_nothing_else():
-    samples = np.array([1 + 2j, 3, -1j])
-    got = samples_of(Offset.of(held(samples), 1 + 1j))
-    assert got.tolist() == (samples - (1 + 1j)).tolist()

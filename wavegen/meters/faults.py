@@ -9,28 +9,29 @@ from __future__ import annotations
 import math
 from concurrent.futures import Executor
 from dataclasses import dataclass
-from typing import Any, Self
 
 import numpy as np
 from numpy.typing import NDArray
 
-from wavegen.core.evaluate import evaluate
 from wavegen.core.progress import Progress, silent
 from wavegen.core.render import Tap, render
-from wavegen.core.signal import Samples, Signal
-from wavegen.dsp.cell_sums import CELL
-from wavegen.dsp.differences import FourthDifference
-from wavegen.meters.power import PowerReading
-from wavegen.meters.power_statistics import PowerStatistics
+from wavegen.core.signal import Signal
+from wavegen.files.format import Recording
+from wavegen.meters.fault import Fault, stretch_text
 from wavegen.meters.record import RecordFigures, RecordMeter
+from wavegen.meters.stationarity import (
+    SURE_SIGMA,
+    batches_of,
+    breaks_tap,
+    level_faults,
+    splices,
+)
 from wavegen.meters.stretches import Stretches, look_at_stretches
 
 SMALL_DB = -40.0
 """Offset over the signal, image over the signal: 1 % EVM each."""
 CARRIER_DB = 50.0
 """An offset so far over the rest is an unmodulated carrier at 0 Hz."""
-SURE_SIGMA = 6.0
-"""Complex Gaussian estimates pass this many standard errors once in exp(36) = 4e15."""
 START_UP_RATIO = 2.0
 """First samples further out than any later one by 3 dB: of honest samples the first 64 hold the
 largest in 64 of n records, by 3 dB in one of millions."""
@@ -46,69 +47,7 @@ CORNER_RATIO = 1.03
 that it passes 1; where the envelope is constant or clipped it stays 1."""
 QUANTISATION_DB = -30.0
 """Step^2 / 12 a rail over the signal's power: 3 % EVM, levels in steps of 0.6 dB at most."""
-DRIFT_DB = 0.2
-"""Over the record; half as much as the tightest tolerance that levels are compared with."""
-STEP_DB = 0.5
-SPLICE_DB = 15.0
-"""How far breaks must stand over the rest of the fourth difference. Measured: jumps between symbols
-of a real uplink stand up to 11 dB over theirs, splices of oversampled noise 20 dB."""
-MOST_SPLICES = 16
-"""More breaks than this are a way of modulating, not a way of editing."""
-EDGE_DB = 10.0
-"""A break across which the level changes by more is an edge of a burst."""
-_N_BATCHES = 64
 _RUN = 16
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Fault:
-    """One thing that is wrong with a record.
-
-    Parameters
-    ----------
-    kind : str
-        Name for programs: ``dc_offset``, ``iq_imbalance``, ``clipped``, ``fill``, ``start_up``,
-        ``not_finite``, ``ends_early``, ``coarse_quantisation``, ``splice``, ``level_step``,
-        ``level_drift``, ``constant_start``.
-    text : str
-        Name for people.
-    size : float
-        How large.
-    unit : str
-        Of ``size``.
-    where : str
-        In which samples.
-    effect : str
-        What it does to the figures.
-    remedy : str
-        What to do about it.
-    first_sample, stop_sample : int or None
-        The same place in numbers, where it is one.
-    """
-
-    kind: str
-    text: str
-    size: float
-    unit: str
-    where: str
-    effect: str
-    remedy: str
-    first_sample: int | None = None
-    stop_sample: int | None = None
-
-    def row(self) -> dict[str, Any]:
-        """Return it as JSON values."""
-        return {
-            "kind": self.kind,
-            "fault": self.text,
-            "size": round(self.size, 4),
-            "unit": self.unit,
-            "where": self.where,
-            "first_sample": self.first_sample,
-            "stop_sample": self.stop_sample,
-            "effect": self.effect,
-            "remedy": self.remedy,
-        }
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -178,8 +117,8 @@ def check_record(
     seen = look_at_stretches(signal)
     record = RecordMeter(offset=seen.offset, code_scale=code_scale, n_rails=n_rails)
     taps = [Tap(name="record", signal=signal, meter=record)]
-    breaks = FourthDifference.of(signal, loops=loops)
-    taps.append(Tap(name="breaks", signal=breaks, meter=_BreakMeter()))
+    breaks = breaks_tap(signal, loops=loops)
+    taps.append(breaks)
     read = render(
         signal,
         taps=tuple(taps),
@@ -198,9 +137,9 @@ def check_record(
     offset, offset_dbc, dc = _dc(figures, seen)
     imbalance, unequal = _imbalance(seen, n_rails)
     noise_db, n_codes, coarse = _quantisation(figures)
-    faults += [*dc, *unequal, *coarse, *_level(figures)]
+    faults += [*dc, *unequal, *coarse, *level_faults(figures)]
     if read["breaks"] is not None:
-        faults += _splices(signal, breaks, read["breaks"], figures)
+        faults += splices(signal, breaks.signal, read["breaks"], figures)
     return RecordCheck(
         faults=tuple(faults),
         offset=offset,
@@ -210,6 +149,27 @@ def check_record(
         quantisation_db=noise_db,
         n_codes=n_codes,
     )
+
+
+def code_scale(recording: Recording) -> float | None:
+    """Return the codes to full scale of a file of integers, for :func:`check_record`.
+
+    Parameters
+    ----------
+    recording : Recording
+        As opened.
+
+    Returns
+    -------
+    float or None
+        None for files of floats. Codes that stand half a step off zero count in half steps.
+    """
+    datatype = recording.datatype
+    if not datatype.is_integer or recording.is_power:
+        return None
+    source = getattr(recording.signal, "source", recording.signal)
+    scale = datatype.full_scale / float(getattr(source, "gain", 1.0))
+    return scale if float(datatype.offset).is_integer() else 2 * scale
 
 
 def _db(ratio: float) -> float:
@@ -258,7 +218,7 @@ def _start(figures: RecordFigures) -> list[Fault]:
                 text="fill or sync words at the start",
                 size=lift_db,
                 unit="dB",
-                where=_stretch(0, n_fill),
+                where=stretch_text(0, n_fill),
                 effect=f"lifts the mean by {lift_db:.1f} dB, all levels read as much too low",
                 remedy=f"Measure with --from {last}samples.",
                 first_sample=0,
@@ -273,7 +233,7 @@ def _start(figures: RecordFigures) -> list[Fault]:
                 text="start-up",
                 size=last - n_fill,
                 unit="samples",
-                where=_stretch(n_fill, last),
+                where=stretch_text(n_fill, last),
                 effect=f"lies {ratio_db:.1f} dB further out than any later sample: sets the peak "
                 "of what is left when an offset is removed",
                 remedy=f"Measure with --from {last}samples.",
@@ -314,7 +274,7 @@ def _constant(kind: str, text: str, start: int, stop: int) -> Fault:
         text=text,
         size=stop - start,
         unit="samples",
-        where=_stretch(start, stop),
+        where=stretch_text(start, stop),
         effect="counts as signal: moves the mean and stands as a step in the curve",
         remedy=f"Measure with --from {stop}samples."
         if start == 0
@@ -395,15 +355,6 @@ def _pile_up(
     return (extreme, count) if count >= PILE_UP_RATIO * smooth else None
 
 
-def _batches(figures: RecordFigures) -> NDArray[np.float64]:
-    """Return the cells added up to 64 to 127 batches of equal count, shape (n_batches, 6)."""
-    cells = figures.cells[figures.cells[:, 0] > 0.5 * figures.cell_samples]
-    while cells.shape[0] >= 2 * _N_BATCHES:
-        cells = cells[: cells.shape[0] // 2 * 2]
-        cells = cells[0::2] + cells[1::2]
-    return cells
-
-
 def _dc(figures: RecordFigures, seen: Stretches) -> tuple[complex, float, list[Fault]]:
     """Return the offset, its power over the signal's, dB, and the fault if it is one."""
     total = figures.cells.sum(axis=0)
@@ -417,7 +368,7 @@ def _dc(figures: RecordFigures, seen: Stretches) -> tuple[complex, float, list[F
     if not signal_power > 0:
         return offset, (math.inf if power else -math.inf), []
     size_db = _db(power / signal_power)
-    batches = _batches(figures)
+    batches = batches_of(figures)
     means = (batches[:, 1] + 1j * batches[:, 2]) / batches[:, :1].ravel()
     if means.size < 4:
         return offset, size_db, []
@@ -497,180 +448,3 @@ def _quantisation(
         remedy="Record with more gain or more bits.",
     )
     return noise_db, int(codes.size), [fault]
-
-
-def _level(figures: RecordFigures) -> list[Fault]:
-    """Find a level that steps once or drifts, over the batches that are on."""
-    batches = _batches(figures)
-    if batches.shape[0] < 16:
-        return []
-    power = (batches[:, 3] + batches[:, 4]) / batches[:, 0]
-    top = float(np.quantile(power, 0.9))
-    is_on = power > top / 4
-    if is_on.mean() < 0.9:  # bursts: their levels are told one by one
-        return []
-    level = 10 * np.log10(power[is_on])
-    place = np.flatnonzero(is_on).astype(np.float64)
-    per_batch = figures.n_samples / batches.shape[0]
-    step = _step(level)
-    drift = _drift(place, level)
-    if step is not None and (drift is None or step[2] >= drift[1]):
-        at, size_db, _ = step
-        sample = round(float(place[at]) * per_batch)
-        return [
-            Fault(
-                kind="level_step",
-                text="the level steps",
-                size=size_db,
-                unit="dB",
-                where=f"near sample {sample}",
-                effect="two levels in one curve: it is wider than that of either part",
-                remedy="Measure both parts with --from and --to.",
-                first_sample=sample,
-            )
-        ]
-    if drift is None:
-        return []
-    return [
-        Fault(
-            kind="level_drift",
-            text="the level drifts",
-            size=drift[0],
-            unit="dB over the record",
-            where="throughout",
-            effect="the record is not stationary: mean and levels depend on the part measured",
-            remedy="Let the source settle, or measure a shorter part with --from and --to.",
-        )
-    ]
-
-
-def _drift(place: NDArray[np.float64], level: NDArray[np.float64]) -> tuple[float, float] | None:
-    """Return the slope over the whole, dB, and its significance, if it is sure."""
-    centred = place - place.mean()
-    slope = float(centred @ level / (centred @ centred))
-    rest = level - level.mean() - slope * centred
-    spread = float(rest @ rest) / max(rest.size - 2, 1)
-    # Neighbouring batches that move together count less: first-order correlation.
-    linked = float(rest[1:] @ rest[:-1] / (rest @ rest)) if spread > 0 else 0.0
-    linked = min(max(linked, 0.0), 0.9)
-    error = math.sqrt(spread / float(centred @ centred) * (1 + linked) / (1 - linked))
-    size_db = slope * float(np.ptp(place) + 1)
-    sure = abs(slope) / max(error, 1e-300)
-    return (size_db, sure) if abs(size_db) >= DRIFT_DB and sure > SURE_SIGMA else None
-
-
-def _step(level: NDArray[np.float64]) -> tuple[int, float, float] | None:
-    """Return where the level steps best, by how much (dB), and its significance."""
-    n = level.size
-    count = np.arange(4, n - 3)
-    sums = np.concatenate([[0.0], np.cumsum(level)])
-    squares = np.concatenate([[0.0], np.cumsum((level - level.mean()) ** 2)])
-    low = sums[count] / count
-    high = (sums[-1] - sums[count]) / (n - count)
-    gain = count * (n - count) / n * (high - low) ** 2
-    best = int(np.argmax(gain))
-    at, size_db = int(count[best]), float(high[best] - low[best])
-    left = max(float(squares[-1] - gain[best]), 1e-12) / max(n - 2, 1)
-    # Slow movements pass for steps: ask how batches just before and after differ, too.
-    near = float(level[at : at + 4].mean() - level[at - 4 : at].mean())
-    sure = math.sqrt(float(gain[best]) / left)
-    is_sharp = near * size_db > 0 and abs(near) > 0.7 * abs(size_db)
-    is_one = abs(size_db) >= STEP_DB and sure > 2 * SURE_SIGMA and is_sharp
-    return (at, size_db, sure) if is_one else None
-
-
-def _splices(
-    signal: Signal,
-    breaks: FourthDifference,
-    statistics: PowerStatistics,
-    figures: RecordFigures,
-) -> list[Fault]:
-    """Find breaks of the waveform: few cells of the fourth difference far over the rest."""
-    maxima = statistics.cell_maxima
-    order = np.argsort(-maxima, kind="stable")[: MOST_SPLICES * 2 + 2]
-    ranked = maxima[order]
-    if maxima.size < 4 * MOST_SPLICES:
-        return []
-    ratio = ranked[:-1] / np.maximum(ranked[1:], 1e-300)
-    n_high = int(np.argmax(ratio[: 2 * MOST_SPLICES])) + 1
-    if ratio[n_high - 1] < 10 ** (SPLICE_DB / 10):
-        return []
-    places: list[int] = []
-    for cell in np.sort(order[:n_high]).tolist():
-        start = max((statistics.start // CELL + cell) * CELL, statistics.start)
-        stop = min(start + CELL, signal.n_samples)
-        power = np.abs(evaluate({breaks: (start, stop)})[breaks]) ** 2
-        place = start + int(np.argmax(power))
-        if place < 2 * figures.head.size and place - 2 < figures.head.size:
-            continue  # what happens there is told as start-up
-        if not places or place - places[-1] > _RUN:
-            places.append(place)
-    places = [place for place in places if not _is_edge(signal, place)]
-    if not 1 <= len(places) <= MOST_SPLICES or _is_clocked(places):
-        return []
-    height_db = _db(float(ranked[n_high - 1] / ranked[n_high]))
-    listed = ", ".join(str(place) for place in places[:5]) + (" ..." if len(places) > 5 else "")
-    return [
-        Fault(
-            kind="splice",
-            text="the waveform breaks, as where records are joined",
-            size=len(places),
-            unit="breaks" if len(places) > 1 else "break",
-            where=f"sample{'s' if len(places) > 1 else ''} {listed}",
-            effect=f"stand {height_db:.0f} dB over the rest of the fourth difference: spectrum, "
-            "ACLR and peak between samples are not to be judged across them",
-            remedy="Measure the parts with --from and --to; of power statistics only the mean "
-            "level of the parts matters.",
-            first_sample=places[0],
-        )
-    ]
-
-
-def _is_edge(signal: Signal, place: int) -> bool:
-    """Return whether a burst begins or ends here: silence, or another level, on one side."""
-    low, high = max(place - 40, 0), min(place + 40, signal.n_samples)
-    samples = evaluate({signal: (low, high)})[signal].astype(np.complex128)
-    power = np.abs(samples) ** 2
-    before, after = power[: place - low - 3], power[place - low + 4 :]
-    if before.size < 8 or after.size < 8:
-        return True  # too near to an end to tell
-    ratio = (float(before.mean()) + 1e-300) / (float(after.mean()) + 1e-300)
-    return not 10 ** (-EDGE_DB / 10) < ratio < 10 ** (EDGE_DB / 10)
-
-
-def _is_clocked(places: list[int]) -> bool:
-    """Return whether three or more breaks come at equal distances: symbols, not splices."""
-    gaps = np.diff(places)
-    return gaps.size >= 2 and float(np.ptp(gaps)) < 0.15 * float(gaps.mean())
-
-
-def _stretch(start: int, stop: int) -> str:
-    return f"sample {start}" if stop == start + 1 else f"samples {start} to {stop - 1}"
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _BreakMeter:
-    """Settings of the meter of breaks."""
-
-    def begin(self, signal: Signal) -> _Breaks:
-        """Return an empty reading."""
-        return _Breaks()
-
-
-class _Breaks:
-    """A power reading whose result is None where there is no power."""
-
-    def __init__(self) -> None:
-        self._power = PowerReading("fourth difference")
-
-    def feed(self, start: int, samples: Samples) -> None:
-        """Take in samples whose first has index ``start``."""
-        self._power.feed(start, samples)
-
-    def merge(self, following: Self) -> None:
-        """Append the reading of the stretch that starts where this one ends."""
-        self._power.merge(following._power)
-
-    def result(self) -> PowerStatistics | None:
-        """Return the statistics."""
-        return self._power.result() if self._power.peak > 0 else None
