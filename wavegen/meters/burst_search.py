@@ -47,6 +47,8 @@ DEEPEST_FLOOR_DB = 60.0
 """A floor further under the top (exact zeros) counts as this far."""
 DEFAULT_HYSTERESIS_DB = 3.0
 _WINDOWS_IN_RECORD = 16
+_STRIP_SAMPLES = 1 << 18
+"""Shorter than usual: five windows are held at once."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -189,7 +191,12 @@ def find_bursts(
     """
     search = search or BurstSearch()
     _check(search)
-    names = {"workers": workers, "executor": executor, "progress": progress}
+    names = {
+        "workers": workers,
+        "executor": executor,
+        "progress": progress,
+        "strip_samples": _STRIP_SAMPLES,
+    }
     n = signal.n_samples
     widths = _widths(search, n)
     tracks = [MovingPower.of(signal, width, loops=loops) for width in widths]

@@ -287,8 +287,12 @@ class RecordReading:
             self._counts = [np.zeros(size, np.int64) for _ in rails]
         for counts, rail in zip(self._counts, rails, strict=True):
             if self._scale:
-                codes = np.rint(rail * np.float32(self._scale)).astype(np.int64)
-                place = np.clip(codes + FINEST_CODES, 0, 2 * FINEST_CODES)
+                codes = rail * np.float32(self._scale)
+                np.rint(codes, out=codes)
+                codes += np.float32(FINEST_CODES)
+                if codes.min() < 0 or codes.max() > 2 * FINEST_CODES:
+                    np.clip(codes, 0, 2 * FINEST_CODES, out=codes)
+                place = codes.astype(np.int64)
             else:
                 bits = np.ascontiguousarray(rail, np.float32).view(np.uint32)
                 place = (bits >> np.uint32(_FLOAT_SHIFT)).astype(np.int64)
