@@ -172,3 +172,18 @@ class TestPattern:
     def test_that_is_never_on_is_told(self):
         with pytest.raises(SignalError):
             pattern_bursts(Bursts(period_samples=500, runs=((300, 400),)), n_samples=250)
+
+
+@pytest.mark.parametrize("threshold_db", [None, -6.0, -12.0])
+def test_abrupt_edges_are_found_to_the_sample(held, threshold_db):
+    # Constant level: the window crosses the threshold after that share of its length.
+    samples = np.full(N, 1e-3, np.complex64)
+    samples[20_000:50_000] = 1
+    search = BurstSearch(window_samples=400, threshold_db=threshold_db)
+    ((start, stop),) = find_bursts(held(samples), search, loops=False).bursts.runs
+    assert abs(start - 20_000) <= 2
+    assert abs(stop - 50_000) <= 2
+    crossing = BurstSearch(window_samples=400, threshold_db=threshold_db, edges="crossing")
+    ((early, late),) = find_bursts(held(samples), crossing, loops=False).bursts.runs
+    assert early < 20_000 - 90
+    assert late > 50_000 + 90
