@@ -236,7 +236,9 @@ def find_bursts(
     crossings: list[Range] = render(track, taps=(tap,), task=f"bursts of {where}", **names)[  # type: ignore[arg-type]
         "edges"
     ].runs(n, loops=loops)
-    runs, n_cut = _tidied(crossings, search, split.window, threshold / on_level, n, loops=loops)
+    runs, n_cut = _tidied(
+        crossings, search, split.window, (threshold / on_level, closing / on_level), n, loops=loops
+    )
     ends_db = _db(threshold / on_level)
     guard = search.guard_samples
     if guard is None:
@@ -419,7 +421,7 @@ def _tidied(
     crossings: list[Range],
     search: BurstSearch,
     window: int,
-    relative: float,
+    shares: tuple[float, float],
     n_samples: int,
     *,
     loops: bool,
@@ -435,13 +437,13 @@ def _tidied(
     if loops and len(joined) > 1 and joined[0][0] + n_samples - joined[-1][1] < dead:
         _, end = joined.pop(0)
         joined[-1] = (joined[-1][0], end + n_samples)
-    shift = 0
+    shifts = [0, 0]  # the window crosses a level when that share of it holds an abrupt burst
     if search.edges == "moved":
-        shift = max(round(window * (0.5 - min(relative, 0.5))), 0)
+        shifts = [round(window * max(0.5 - share, 0.0)) for share in shares]
     shortest = window // 2 if search.shortest_samples is None else search.shortest_samples
     runs, n_cut = [], 0
     for start, stop in joined:
-        low, high = start + shift, stop - shift
+        low, high = start + shifts[0], stop - shifts[1]
         if not loops and start == 0:
             low = 0
         if not loops and stop == n_samples:
