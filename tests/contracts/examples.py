@@ -30,6 +30,11 @@ from wavegen.stages.channel.resample import Resample
 from wavegen.stages.channel.scale import Scale
 from wavegen.stages.combine.sum import Part, Sum
 from wavegen.stages.crest.clip import Clip
+from wavegen.stages.crest.clip_filter import ClipFilter
+from wavegen.stages.crest.passband import Passband
+from wavegen.stages.crest.peak_cancellation import PeakCancellation
+from wavegen.stages.crest.peak_windowing import PeakWindowing
+from wavegen.stages.crest.projection import Projection
 
 RATE_HZ = Fraction(1_000_000)
 LOOP_SAMPLES = 40_000
@@ -271,6 +276,22 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
         StageExample(settings=Clip(ceiling_db=5.0), build=_stage, identity=Clip(ceiling_db=60.0)),
         StageExample(settings=Clip(ceiling_db=0.5), build=_stage),
     ),
+    "clip_filter": (
+        StageExample(
+            settings=ClipFilter(ceiling_db=5.0, rounds=3),
+            build=_stage,
+            identity=ClipFilter(ceiling_db=60.0),
+        ),
+        StageExample(
+            settings=ClipFilter(
+                ceiling_db=4.0,
+                rounds=1,
+                passbands=(Passband(low_hz=Fraction(-100_000), high_hz=Fraction(130_000)),),
+                transition_hz=Fraction(50_000),
+            ),
+            build=_stage,
+        ),
+    ),
     "delay": (
         StageExample(
             settings=Delay(delay=TimeSpan.parse("-12.3 us")),
@@ -312,6 +333,37 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             identity=Gate(duty_percent=Fraction(100), period=TimeSpan.parse("1 sample")),
         ),
         StageExample(settings=Gate(pattern="1101", slot=TimeSpan.parse("7 samples")), build=_stage),
+    ),
+    "peak_cancellation": (
+        StageExample(
+            settings=PeakCancellation(ceiling_db=5.0, passes=2),
+            build=_stage,
+            identity=PeakCancellation(ceiling_db=60.0),
+        ),
+        StageExample(
+            settings=PeakCancellation(ceiling_db=6.0, passes=1, pulse="band"), build=_stage
+        ),
+    ),
+    "peak_windowing": (
+        StageExample(
+            settings=PeakWindowing(ceiling_db=5.0),
+            build=_stage,
+            identity=PeakWindowing(ceiling_db=60.0),
+        ),
+        StageExample(
+            settings=PeakWindowing(
+                ceiling_db=3.0, window="gaussian", length=TimeSpan.parse("21 us")
+            ),
+            build=_stage,
+        ),
+        StageExample(settings=PeakWindowing(ceiling_db=7.0, window="hann"), build=_stage),
+    ),
+    "projection": (
+        StageExample(
+            settings=Projection(ceiling_db=5.0, rounds=4, transition_hz=Fraction(20_000)),
+            build=_stage,
+            identity=Projection(ceiling_db=60.0),
+        ),
     ),
     "resample": (
         StageExample(

@@ -60,6 +60,15 @@ class MovesBursts(Protocol):
         """Return the on-times at its output for those at its input."""
 
 
+@runtime_checkable
+class ActsOn(Protocol):
+    """A signal of several inputs, all made of one of them: it is on when that is."""
+
+    @property
+    def acts_on(self) -> Signal:
+        """The input that decides."""
+
+
 def on_time(signal: Signal) -> Bursts | None:
     """Return when a signal is on, if one gate decides that for all of it.
 
@@ -79,6 +88,9 @@ def on_time(signal: Signal) -> Bursts | None:
     """
     passed: list[MovesBursts] = []
     while not isinstance(signal, Gated):
+        if isinstance(signal, ActsOn):
+            signal = signal.acts_on
+            continue
         if len(signal.inputs) != 1:
             return None
         if isinstance(signal, MovesBursts):

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
 from dataclasses import dataclass
 from typing import Annotated
 
@@ -11,23 +10,18 @@ import numpy as np
 from annotated_types import Ge, Le
 from numpy.typing import NDArray
 
-from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
-from wavegen.dsp.bursts import Bursts
 from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
 from wavegen.laws.mapped import clip_law
 from wavegen.laws.operations import EnvelopeTerm
 from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.channel.gate import on_time
+from wavegen.stages.crest.ceiling import PILOT_SAMPLES, STRETCH_SAMPLES, pilot_power
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 128 kB between."""
-PILOT_SAMPLES = 1 << 22
-"""Samples on which the clip amplitude is found; a period up to this length is used whole."""
-STRETCH_SAMPLES = 1 << 16
-"""One stretch of a longer period; 64 of them, spread evenly."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -173,7 +167,7 @@ class Clip:
         """
         is_whole = source.n_samples <= PILOT_SAMPLES
         bursts = on_time(source)
-        pilot = list(_pilot(source, bursts))
+        pilot = list(pilot_power(source, bursts))
         highest = max(float(piece.max()) for piece in pilot)
         ceiling = 10 ** (self.ceiling_db / 10)
         level = find_clip_level(pilot, ceiling) if highest else None
@@ -243,28 +237,3 @@ class Clip:
 
 def _tell(site: Site, text: str) -> None:
     site.notes.append(Note(kind="info", where=f"{site.path}.ceiling", text=text))
-
-
-def _pilot(source: Signal, bursts: Bursts | None) -> Iterator[NDArray[np.float32]]:
-    """Yield the envelope power of stretches of a signal, the same stretches every time.
-
-    Of a gated signal only what is fully on; a long period is read at bursts spread evenly.
-    """
-    count = PILOT_SAMPLES // STRETCH_SAMPLES
-    if source.n_samples <= PILOT_SAMPLES:
-        length, starts = 1 << 20, list(range(0, source.n_samples, 1 << 20))
-    elif bursts is None:
-        length, starts = STRETCH_SAMPLES, [source.n_samples * k // count for k in range(count)]
-    else:
-        every = [start for start, _ in bursts.starts(source.n_samples)]
-        picked = sorted({len(every) * k // count for k in range(count)})
-        length, starts = STRETCH_SAMPLES, [every[k] for k in picked]
-    for start in starts:
-        stop = min(start + length, source.n_samples)
-        samples = evaluate({source: (start, stop)})[source]
-        power = samples.real * samples.real
-        power += samples.imag * samples.imag
-        if bursts is not None:
-            power = power[bursts.is_on(start, stop)]
-        if power.size:
-            yield power

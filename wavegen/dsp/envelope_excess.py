@@ -1,0 +1,162 @@
+"""How far samples stand over an amplitude: the piece of them that a limiter would cut off.
+
+All functions are local and elementwise, so that no answer depends on how a range is cut.
+"""
+
+from __future__ import annotations
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen.core.signal import Samples
+
+BLOCK_SAMPLES = 1 << 14
+"""Samples worked on at once: 128 kB in, 128 kB out, 64 kB of power."""
+
+
+def power_of(samples: Samples, *, out: NDArray[np.float32] | None = None) -> NDArray[np.float32]:
+    """Return ``|x|^2``.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n,)
+        Any.
+    out : float32 array, shape (n,), optional
+        Where it goes.
+
+    Returns
+    -------
+    float32 array, shape (n,)
+    """
+    power = np.empty(samples.size, np.float32) if out is None else out
+    squared = np.empty((2, min(BLOCK_SAMPLES, samples.size)), np.float32)
+    for low in range(0, samples.size, BLOCK_SAMPLES):
+        block = samples[low : low + BLOCK_SAMPLES]
+        real, imag = squared[0, : block.size], squared[1, : block.size]
+        np.multiply(block.real, block.real, out=real)
+        np.multiply(block.imag, block.imag, out=imag)
+        np.add(real, imag, out=power[low : low + BLOCK_SAMPLES])
+    return power
+
+
+def excess_over(samples: Samples, amplitude: float) -> Samples:
+    """Return what a polar clip takes away: ``x (1 - A / |x|)`` where ``|x| > A``, else zero.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n,)
+        Not changed.
+    amplitude : float
+        Largest envelope let through, ``A``.
+
+    Returns
+    -------
+    complex64 array, shape (n,)
+        Owned by the caller.
+
+    Examples
+    --------
+    >>> excess_over(np.array([3 + 4j, 1j], np.complex64), 2.5).tolist()
+    [(1.5+2j), 0j]
+    """
+    out = np.zeros(samples.size, np.complex64)
+    work = np.empty((2, min(BLOCK_SAMPLES, samples.size)), np.float32)
+    limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
+    for low in range(0, samples.size, BLOCK_SAMPLES):
+        block = samples[low : low + BLOCK_SAMPLES]
+        power, square = work[0, : block.size], work[1, : block.size]
+        np.multiply(block.real, block.real, out=power)
+        np.multiply(block.imag, block.imag, out=square)
+        np.add(power, square, out=power)
+        above = np.flatnonzero(power > limit)
+        if above.size:
+            share = np.float32(1) - top / np.sqrt(power[above])
+            out[low + above] = block[above] * share
+    return out
+
+
+def shortfall_of(samples: Samples, amplitude: float) -> NDArray[np.float32]:
+    """Return ``1 - A / |x|`` where ``|x| > A``, else zero: the gain that a clip lacks.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n,)
+        Not changed.
+    amplitude : float
+        Largest envelope let through, ``A``.
+
+    Returns
+    -------
+    float32 array, shape (n,)
+        0 to 1.
+    """
+    power = power_of(samples)
+    above = np.flatnonzero(power > np.float32(amplitude * amplitude))
+    short = np.zeros(samples.size, np.float32)
+    short[above] = np.float32(1) - np.float32(amplitude) / np.sqrt(power[above])
+    return short
+
+
+def local_peaks(values: NDArray[np.float32], *, over: float, reach: int) -> NDArray[np.intp]:
+    """Return where values pass a threshold and no neighbour within reach stands higher.
+
+    Parameters
+    ----------
+    values : float32 array, shape (n,)
+        At least ``2 reach`` of them.
+    over : float
+        Threshold, itself excluded.
+    reach : int
+        Neighbours compared on each side; of equals the first counts. Places nearer than this
+        to an end are never returned.
+
+    Returns
+    -------
+    int array
+        Rising indices.
+
+    Examples
+    --------
+    >>> local_peaks(np.array([0, 2, 5, 5, 1, 0, 3, 0, 0], np.float32), over=1, reach=2).tolist()
+    [2, 6]
+    """
+    places = np.flatnonzero(values[reach : values.size - reach] > np.float32(over)) + reach
+    for step in range(1, reach + 1):
+        here = values[places]
+        places = places[(here > values[places - step]) & (here >= values[places + step])]
+    return places
+
+
+def dilate(values: NDArray[np.float32], reach: int) -> NDArray[np.float32]:
+    """Return the largest value within reach of each place that has all its neighbours.
+
+    Parameters
+    ----------
+    values : float32 array, shape (n,)
+        Not changed.
+    reach : int
+        Neighbours on each side.
+
+    Returns
+    -------
+    float32 array, shape (n - 2 reach,)
+
+    Notes
+    -----
+    Maxima over 2, 4, 8, ... values in a row, then of two overlapping stretches (M. van Herk, 1992,
+    has a faster form; this one is elementwise).
+
+    Examples
+    --------
+    >>> dilate(np.array([0, 1, 0, 0, 3, 0, 0], np.float32), 1).tolist()
+    [1.0, 1.0, 3.0, 3.0, 3.0]
+    """
+    length = 2 * reach + 1
+    wide, width = values, 1
+    while 2 * width <= length:
+        wide = np.maximum(wide[: wide.size - width], wide[width:])
+        width *= 2
+    rest = length - width
+    if not rest:
+        return wide.copy() if wide is values else wide
+    return np.maximum(wide[: wide.size - rest], wide[rest:])

@@ -1,0 +1,131 @@
+"""Clip and filter, repeated: peaks are clipped, and only what falls into the band is kept.
+
+J. Armstrong, "Peak-to-average power reduction for OFDM by repeated clipping and frequency domain
+filtering", Electronics Letters 38(5), 2002, 246-247. Filtered is here what the clip takes away,
+not what it leaves: for a signal inside its band that is the same, and what lies outside is left
+as it was.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Annotated
+
+import numpy as np
+from annotated_types import Ge, Gt, Le
+
+from wavegen.core.signal import Range, Samples, Signal
+from wavegen.core.site import Site
+from wavegen.dsp.band_filter import BandFilter
+from wavegen.dsp.envelope_excess import excess_over
+from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.crest.passband import Passband, filled_band
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class ClipFilterRound(Signal):
+    """A signal less the part of its excess that lies in the band, times a gain.
+
+    Parameters
+    ----------
+    amplitude : float
+        Where it is clipped.
+    band : BandFilter
+        What passes may be changed.
+    gain : float
+        Amplitude ratio of the whole.
+    """
+
+    amplitude: float
+    band: BandFilter
+    gain: float = 1.0
+
+    def needs(self, start: int, stop: int) -> tuple[Range, ...]:
+        """Return the range with the filter's halo."""
+        reach = self.band.half_length
+        return ((start - reach, stop + reach),)
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Clip, filter the excess, subtract."""
+        source = arrays[0]
+        reach = self.band.half_length
+        out = self.band.apply(excess_over(source, self.amplitude), stop - start)
+        np.subtract(source[reach : source.size - reach], out, out=out)
+        if self.gain != 1.0:
+            flat = out.view(np.float32)
+            np.multiply(flat, np.float32(self.gain), out=flat)
+        return out
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ClipFilter:
+    """Settings of repeated clipping and filtering.
+
+    Parameters
+    ----------
+    ceiling_db : float
+        Where every round clips, over the mean power of the output, dB; 0.1 to 60. Of a gated
+        signal, over the mean of the on-time. Filtering lets peaks grow back: the more rounds,
+        the less.
+    rounds : int
+        How often it is clipped and filtered; 1 to 64. Each costs a pair of transforms.
+    passbands : tuple of Passband
+        Bands of the signal, where distortion is allowed; found on the signal if not given.
+    transition_hz : Fraction, optional
+        Width of each edge of the bands, outside them, Hz.
+    """
+
+    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
+    rounds: Annotated[int, Ge(1), Le(64)] = 8
+    passbands: tuple[Passband, ...] = ()
+    transition_hz: Annotated[Fraction, Gt(0)] | None = None
+
+    def build(self, site: Site, source: Signal) -> Signal:
+        """Return the signal after all rounds, at the mean power it had before.
+
+        Parameters
+        ----------
+        site : Site
+            Where it is built. Told of the band, the clip amplitude over the mean of the input,
+            the change of mean power that is undone, and the peaks that are left.
+        source : Signal
+            What is reduced; parts of it are read here.
+
+        Returns
+        -------
+        Signal
+            ``source`` itself where it never reaches the ceiling.
+
+        Raises
+        ------
+        RecipeError
+            The source is zero, a passband lies outside the sampled band, or no amplitude gives
+            the ceiling.
+        """
+        filled = filled_band(
+            site, source, passbands=self.passbands, transition_hz=self.transition_hz
+        )
+        if filled is None:
+            raise refuse_zero(site, self.ceiling_db)
+        band = filled.band_filter
+
+        def process(amplitude: float, gain: float) -> Signal:
+            made = source
+            for number in range(self.rounds):
+                is_last = number + 1 == self.rounds
+                made = ClipFilterRound(
+                    sample_rate_hz=source.sample_rate_hz,
+                    n_samples=source.n_samples,
+                    step=band.hop,
+                    inputs=(made,),
+                    mean_power=source.mean_power if is_last else None,
+                    amplitude=amplitude,
+                    band=band,
+                    gain=gain if is_last else 1.0,
+                )
+            return made
+
+        action = f"clips {self.rounds} times" if self.rounds > 1 else "clips once"
+        pilot = look(source, oversampling=filled.oversampling, halo=self.rounds * band.half_length)
+        return reduce_to(site, pilot, self.ceiling_db, process, action) or source

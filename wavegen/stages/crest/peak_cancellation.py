@@ -1,0 +1,178 @@
+"""Peak cancellation: a band-limited pulse is subtracted at each peak.
+
+J. Song, H. Ochiai, "Performance analysis for OFDM signals with peak cancellation", EURASIP
+J. Wireless Communications and Networking 2015:85. Which samples are peaks is decided by their
+neighbours alone, so that strips need no history.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Annotated, Literal
+
+import numpy as np
+from annotated_types import Ge, Gt, Le
+
+from wavegen.core.signal import Range, Samples, Signal
+from wavegen.core.site import Site
+from wavegen.dsp.band_filter import BandFilter
+from wavegen.dsp.envelope_excess import local_peaks, power_of
+from wavegen.dsp.occupied_bands import design_pulse
+from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.crest.passband import Passband, filled_band
+
+LONGEST_LOBE = 64
+"""Samples compared on each side of a peak, at most."""
+
+
+def half_lobe(pulse: BandFilter) -> int:
+    """Return half the half-width of a pulse's main lobe, samples: peaks nearer are one peak.
+
+    Parameters
+    ----------
+    pulse : BandFilter
+        1 in the middle.
+
+    Returns
+    -------
+    int
+        Half the lag at which the magnitude stops falling; 1 to 64.
+    """
+    size = np.abs(pulse.taps[pulse.half_length :])
+    rising = np.flatnonzero(np.diff(size) > 0)
+    first = int(rising[0]) if rising.size else size.size - 1
+    return min(max(round(first / 2), 1), LONGEST_LOBE)
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class CancellationPass(Signal):
+    """A signal less one pulse for each of its peaks, times a gain.
+
+    Parameters
+    ----------
+    amplitude : float
+        Where peaks are brought down to.
+    pulse : BandFilter
+        1 in the middle.
+    reach : int
+        A peak is the highest sample within so many on each side.
+    gain : float
+        Amplitude ratio of the whole.
+    """
+
+    amplitude: float
+    pulse: BandFilter
+    reach: int
+    gain: float = 1.0
+
+    def needs(self, start: int, stop: int) -> tuple[Range, ...]:
+        """Return the range with the pulse's halo and the neighbours of the outermost peaks."""
+        halo = self.pulse.half_length + self.reach
+        return ((start - halo, stop + halo),)
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Find the peaks, place their excess, shape it with the pulse, subtract."""
+        source = arrays[0]
+        power = power_of(source)
+        peaks = local_peaks(power, over=self.amplitude**2, reach=self.reach)
+        share = np.float32(1) - np.float32(self.amplitude) / np.sqrt(power[peaks])
+        placed = np.zeros(source.size - 2 * self.reach, np.complex64)
+        placed[peaks - self.reach] = source[peaks] * share
+        out = self.pulse.apply(placed, stop - start)
+        halo = self.pulse.half_length + self.reach
+        np.subtract(source[halo : source.size - halo], out, out=out)
+        if self.gain != 1.0:
+            flat = out.view(np.float32)
+            np.multiply(flat, np.float32(self.gain), out=flat)
+        return out
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PeakCancellation:
+    """Settings of peak cancellation.
+
+    Parameters
+    ----------
+    ceiling_db : float
+        Where each peak is brought down to, over the mean power of the output, dB; 0.1 to 60. Of
+        a gated signal, over the mean of the on-time. Pulses add up, so that some peaks stay
+        above: the more passes, the fewer.
+    passes : int
+        How often peaks are looked for and cancelled; 1 to 32. Each costs a pair of transforms.
+    pulse : {"spectrum", "band"}
+        A pulse with the shape of the signal's own power spectrum, so that every carrier of a
+        composite bears its share; or one that is flat over the bands.
+    passbands : tuple of Passband
+        Bands of the signal, where distortion is allowed; found on the signal if not given.
+    transition_hz : Fraction, optional
+        Width of each edge of the bands, outside them, Hz.
+    """
+
+    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
+    passes: Annotated[int, Ge(1), Le(32)] = 4
+    pulse: Literal["spectrum", "band"] = "spectrum"
+    passbands: tuple[Passband, ...] = ()
+    transition_hz: Annotated[Fraction, Gt(0)] | None = None
+
+    def build(self, site: Site, source: Signal) -> Signal:
+        """Return the signal after all passes, at the mean power it had before.
+
+        Parameters
+        ----------
+        site : Site
+            Where it is built. Told of the band, the amplitude over the mean of the input, the
+            change of mean power that is undone, and the peaks that are left.
+        source : Signal
+            What is reduced; parts of it are read here.
+
+        Returns
+        -------
+        Signal
+            ``source`` itself where it never reaches the ceiling.
+
+        Raises
+        ------
+        RecipeError
+            The source is zero, a passband lies outside the sampled band, or no amplitude gives
+            the ceiling.
+        """
+        filled = filled_band(
+            site, source, passbands=self.passbands, transition_hz=self.transition_hz
+        )
+        if filled is None:
+            raise refuse_zero(site, self.ceiling_db)
+        band = filled.band_filter
+        if self.pulse == "spectrum" and band.half_length:
+            taps = design_pulse(
+                filled.spectrum,
+                filled.bands,
+                half_length=band.half_length,
+                widened=filled.transition / 2,
+            )
+        else:
+            taps = band.taps / band.taps[band.half_length].real
+        pulse = BandFilter(taps)
+        reach = half_lobe(pulse)
+
+        def process(amplitude: float, gain: float) -> Signal:
+            made = source
+            for number in range(self.passes):
+                is_last = number + 1 == self.passes
+                made = CancellationPass(
+                    sample_rate_hz=source.sample_rate_hz,
+                    n_samples=source.n_samples,
+                    step=pulse.hop,
+                    inputs=(made,),
+                    mean_power=source.mean_power if is_last else None,
+                    amplitude=amplitude,
+                    pulse=pulse,
+                    reach=reach,
+                    gain=gain if is_last else 1.0,
+                )
+            return made
+
+        times = f"in {self.passes} passes" if self.passes > 1 else "once"
+        halo = self.passes * (pulse.half_length + reach)
+        pilot = look(source, oversampling=filled.oversampling, halo=halo)
+        return reduce_to(site, pilot, self.ceiling_db, process, f"cancels peaks {times}") or source
