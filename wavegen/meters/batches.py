@@ -7,8 +7,9 @@ power is spread, and for every level in how many runs the samples above it come.
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass, replace
-from typing import Self
+from typing import Any, Self
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -16,7 +17,14 @@ from numpy.typing import ArrayLike, NDArray
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.bursts import Bursts
 from wavegen.dsp.cell_sums import CELL, CellSums
-from wavegen.dsp.pair_kernel import added, coarse_edges, coarsened, tally_pairs
+from wavegen.dsp.pair_kernel import (
+    FINE_PER_COARSE,
+    added,
+    coarse_edges,
+    coarsened,
+    tally_pairs,
+)
+from wavegen.dsp.power_bins import bin_of
 from wavegen.dsp.power_kernel import PowerTally, exact_powers
 from wavegen.meters.power import PowerReading
 from wavegen.meters.power_statistics import PowerStatistics
@@ -107,6 +115,69 @@ def _read(
     part = np.clip((asked - edges[place]) / width, 0.0, 1.0)[:, np.newaxis]
     found: NDArray[np.float64] = beyond[place] + part * (beyond[place + 1] - beyond[place])
     return found
+
+
+def in_pairs(batches: Batches) -> Batches:
+    """Return batches of twice the length, the old ones added up two by two."""
+
+    def paired(values: NDArray[Any]) -> NDArray[Any]:
+        return np.add.reduceat(values, np.arange(0, values.shape[0], 2), axis=0)
+
+    return replace(
+        batches,
+        batch_samples=2 * batches.batch_samples,
+        n_measured=paired(batches.n_measured),
+        sums=paired(batches.sums),
+        counts=paired(batches.counts),
+    )
+
+
+def pooled(members: Sequence[Batches]) -> Batches:
+    """Return the batches of several records as those of one.
+
+    Parameters
+    ----------
+    members : sequence of Batches
+        One or more, on one scale and of one sample rate; each record measured on its own, so
+        that no run goes on from one to the next.
+
+    Returns
+    -------
+    Batches
+        The shortest are added up in pairs until fewer than 128 are left, or each record is one
+        batch. Where the means of the records differ, the scatter of the batches says so.
+    """
+    parts = [*members]
+    while sum(part.n_batches for part in parts) >= 2 * FEWEST_BATCHES:
+        halved = [k for k, part in enumerate(parts) if part.n_batches > 1]
+        if not halved:
+            break
+        shortest = min(halved, key=lambda k: parts[k].batch_samples)
+        parts[shortest] = in_pairs(parts[shortest])
+    used = [part for part in parts if part.pairs.size]
+    if not used:
+        return parts[0]
+    firsts = [bin_of(float(part.edges[0])) // FINE_PER_COARSE for part in used]
+    low = min(firsts)
+    high = max(first + part.pairs.size for first, part in zip(firsts, used, strict=True))
+    counts = np.zeros((sum(part.n_batches for part in parts), high - low), np.int64)
+    pairs = np.zeros(high - low, np.int64)
+    row = 0
+    for part in parts:
+        if part.pairs.size:
+            first = bin_of(float(part.edges[0])) // FINE_PER_COARSE - low
+            counts[row : row + part.n_batches, first : first + part.pairs.size] = part.counts
+            pairs[first : first + part.pairs.size] += part.pairs
+        row += part.n_batches
+    return Batches(
+        batch_samples=max(part.batch_samples for part in parts),
+        n_measured=np.concatenate([part.n_measured for part in parts]),
+        sums=np.concatenate([part.sums for part in parts]),
+        counts=counts,
+        pairs=pairs,
+        edges=coarse_edges(low, high - low),
+        loops=all(part.loops for part in parts),
+    )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

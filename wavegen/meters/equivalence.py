@@ -217,11 +217,30 @@ def probabilities_of(down_to: float) -> tuple[NDArray[np.float64], NDArray[np.fl
     return decades, between[between > down_to * (1 + 1e-9)]
 
 
+def alarm_of_a_decade(down_to: float = DOWN_TO, false_alarm: float = FALSE_ALARM) -> float:
+    """Return what each decade may contribute to the false alarm: for planning a record.
+
+    Parameters
+    ----------
+    down_to : float
+        Least probability compared.
+    false_alarm : float
+        Of the whole comparison.
+
+    Returns
+    -------
+    float
+        Two-sided.
+    """
+    decades, _ = probabilities_of(down_to)
+    return false_alarm * DECADES_SHARE / decades.size
+
+
 def _tests(down_to: float, false_alarm: float) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Return probabilities tested and what each may contribute to the false alarm."""
     decades, between = probabilities_of(down_to)
     rest = false_alarm * (1 - DECADES_SHARE) / (between.size + 2)
-    each = np.full(decades.size, false_alarm * DECADES_SHARE / decades.size)
+    each = np.full(decades.size, alarm_of_a_decade(down_to, false_alarm))
     return np.concatenate([decades, between]), np.concatenate([each, np.full(between.size, rest)])
 
 
