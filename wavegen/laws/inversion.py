@@ -16,8 +16,8 @@ from wavegen.laws.term import NoLaw, Reals, Term
 MOST_TERMS = 1 << 17
 """Terms of the series; beyond, the envelope is blurred by as little as they allow."""
 FIRST_TERMS = 256
-NEGLIGIBLE = 1e-15
-"""Characteristic functions below this for a whole block of terms end the series."""
+NEGLIGIBLE = 1e-14
+"""Characteristic functions below this times the root of the number of terms end the series."""
 EMPTY = 2e-13
 """Probability left above the radius of the series, at most."""
 BLUR_DB = 2e-4
@@ -96,7 +96,12 @@ def law_of_characteristic(
     rms = math.sqrt(mean_power)
     radius = min(peak * (1 + 1e-9), 6.0 * rms)
     while True:
-        made = _series(characteristic, radius, rms, most_terms)
+        made = series_of(
+            characteristic,
+            radius=radius,
+            most_terms=most_terms,
+            blur=rms * (10 ** (BLUR_DB / 20) - 1),
+        )
         if isinstance(made, NoLaw):
             return made
         if radius >= peak or _is_empty(made, radius):
@@ -155,34 +160,49 @@ def bessel_zeros(count: int) -> Reals:
     return np.asarray(zeros)
 
 
-def _series(
-    characteristic: Callable[[Reals], Reals], radius: float, rms: float, most_terms: int
+def series_of(
+    characteristic: Callable[[Reals], Reals], *, radius: float, most_terms: int, blur: float
 ) -> BesselSeries | NoLaw:
-    """Return as many terms as matter."""
+    """Return as many terms of the series of an envelope as matter.
+
+    Parameters
+    ----------
+    characteristic : callable
+        ``t -> E[J0(t R)]``.
+    radius : float
+        ``L``: the envelope stays below.
+    most_terms : int
+        Longest series.
+    blur : float
+        Widest standard deviation of noise that may be added to end the series by then.
+
+    Returns
+    -------
+    BesselSeries or NoLaw
+    """
     pieces: list[Reals] = []
     count, block = 0, FIRST_TERMS
+    left = math.inf
     zeros = bessel_zeros(most_terms)
     while count < most_terms:
         part = zeros[count : count + block]
         piece = characteristic(part / radius)
         pieces.append(piece)
         count += part.size
-        if np.max(np.abs(piece)) < NEGLIGIBLE * math.sqrt(count):
+        left = float(np.max(np.abs(piece)))
+        if left < NEGLIGIBLE * math.sqrt(count):
             break
         block = max(FIRST_TERMS, count // 4)
     phi = np.concatenate(pieces)
     a = zeros[:count]
-    if np.max(np.abs(pieces[-1])) >= 1e-13:
-        last = a[-1] / radius
-        blur = 2 * math.sqrt(math.log(max(np.max(np.abs(pieces[-1])) / 1e-13, 1.0))) / last
-        if 20 * math.log10(1 + blur / rms) > BLUR_DB:
+    if left >= NEGLIGIBLE * math.sqrt(count):
+        wanted = 2 * math.sqrt(math.log(left / 1e-14)) * radius / float(a[-1])
+        if wanted > blur:
             return NoLaw(
                 reason=f"its characteristic function falls too slowly for {most_terms} terms"
             )
-        phi *= np.exp(-0.25 * (blur * a / radius) ** 2)
-    return BesselSeries(
-        zeros=a / radius, weights=2 * phi / (a * scipy.special.j1(a) ** 2 * radius)
-    )
+        phi *= np.exp(-0.25 * (wanted * a / radius) ** 2)
+    return BesselSeries(zeros=a / radius, weights=2 * phi / (a * scipy.special.j1(a) ** 2 * radius))
 
 
 def _is_empty(series: BesselSeries, radius: float) -> bool:

@@ -13,7 +13,7 @@ from wavegen.laws.law import Holds, checked_probability, from_db, to_db
 
 Reals = NDArray[np.float64]
 
-TABLE = 384
+TABLE = 128
 """Radii at which a probability is first looked for."""
 _STEPS = 80
 _TINY = 1e-300
