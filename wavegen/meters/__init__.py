@@ -11,6 +11,10 @@ METERS = Registry(
         "mean": "wavegen.meters.mean:MeanMeter",
         "burst_powers": "wavegen.meters.burst_powers:BurstPowerMeter",
         "record": "wavegen.meters.record:RecordMeter",
+        "spectrum": "wavegen.meters.spectrum:SpectrumMeter",
+        "cubic": "wavegen.meters.cubic:CubicMeter",
+        "evm": "wavegen.meters.evm:EvmMeter",
+        "frame_error": "wavegen.meters.evm_errors:FrameErrorMeter",
         "symbol_papr": "wavegen.meters.symbol_papr:SymbolPaprMeter",
     },
 )

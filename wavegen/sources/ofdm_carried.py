@@ -44,6 +44,10 @@ class Carried:
         Factor of each point of a symbol.
     is_spread : bool
         Whether the points of a symbol go through a DFT of their number, over its root.
+    name : str
+        Its place in the settings.
+    constellation : str
+        Name of its constellation.
     """
 
     data: Words
@@ -52,6 +56,8 @@ class Carried:
     presence: Presence
     rotation: Samples | None = None
     is_spread: bool = False
+    name: str = "group"
+    constellation: str = "points"
 
     def rows(self, first: int, count: int) -> Drawn:
         """Return the words of symbols ``first ...``, of those in which the part is on."""
@@ -113,8 +119,11 @@ class Pinned:
         What they carry, level and scale included.
     presence : Presence
         When they are on.
+    name : str
+        Their place in the settings.
     """
 
     bins: NDArray[np.intp]
     values: Samples
     presence: Presence
+    name: str = "pilots"

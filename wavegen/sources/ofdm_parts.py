@@ -182,6 +182,8 @@ def carry(
         presence=part.presence,
         rotation=group.rotation.over(n).astype(np.complex64) if group.rotation.turns else None,
         is_spread=group.spreading == "dft",
+        name=part.key,
+        constellation=group.constellation.name,
     )
 
 
@@ -191,6 +193,7 @@ def pin(part: Part, *, n_fft: int, scale: float) -> Pinned:
         bins=part.indices % n_fft,
         values=(part.expected * scale).astype(np.complex64),
         presence=part.presence,
+        name=part.key,
     )
 
 

@@ -10,11 +10,14 @@ import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
+from wavegen.dsp.arrival import Arrival
 from wavegen.dsp.mapping_kernel import write_values
 from wavegen.sources.ofdm_carried import Carried, Drawn, Pinned
 from wavegen.sources.ofdm_layout import Layout
 from wavegen.sources.ofdm_power import half_turn
+from wavegen.sources.ofdm_reception import receive_subcarriers
 from wavegen.sources.ofdm_schedule import states
+from wavegen.sources.reception import Reception
 
 FFT_SAMPLES = 1 << 16
 """Samples filled and transformed at a time: 512 kB, so that the FFT finds them in cache."""
@@ -212,6 +215,40 @@ class Prefixed(Signal):
     ideal: Signal
     points: Signal | None = None
     is_shifted: bool = False
+
+    def receive(
+        self, conditioned: Signal, arrival: Arrival, *, early_samples: int | None = None
+    ) -> Reception:
+        """Return the subcarriers sent and those behind one transform a symbol.
+
+        Parameters
+        ----------
+        conditioned : Signal
+            What a receiver gets, at the sample rate of this signal.
+        arrival : Arrival
+            How this signal stands in it.
+        early_samples : int, optional
+            How long before the useful part the transform begins; in the middle of what the edge
+            leaves of the shortest prefix if not given.
+
+        Returns
+        -------
+        Reception
+
+        Raises
+        ------
+        SignalError
+            The transform would begin outside the clean part of the shortest prefix.
+        """
+        return receive_subcarriers(
+            conditioned,
+            arrival,
+            layout=self.layout,
+            ideal=self.ideal,
+            points=self.points,
+            is_shifted=self.is_shifted,
+            early_samples=early_samples,
+        )
 
     @cached_property
     def starts(self) -> NDArray[np.int64]:

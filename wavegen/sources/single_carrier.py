@@ -18,13 +18,16 @@ from wavegen.core.registry import Member
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Cycle, Note, Site, samples_per
 from wavegen.core.units import QuantityError, format_hz
+from wavegen.dsp.arrival import Arrival
 from wavegen.dsp.pulse import Pulse, PulseSettings, Stretched, residual_evm_percent
 from wavegen.dsp.pulse_shaping import Shaper, plan_shaping
 from wavegen.dsp.pulses.root_raised_cosine import RootRaisedCosine
 from wavegen.dsp.pulses.taps import MOST_TAPS, Taps
+from wavegen.sources.carrier_reception import JoinedRails, match
 from wavegen.sources.data.random import Random
 from wavegen.sources.differential import integrate, phase_steps
 from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.reception import Reception, SymbolClass
 from wavegen.sources.rotation import Rotation
 from wavegen.sources.small_file import read_numbers
 
@@ -380,6 +383,61 @@ class ShapedCarrier(Signal):
         """Return the symbols sent, a signal on the symbol axis."""
         source = self.inputs[0]
         return source.inputs[0] if isinstance(source, Rails) else source
+
+    def receive(
+        self, conditioned: Signal, arrival: Arrival, *, early_samples: int | None = None
+    ) -> Reception:
+        """Return the symbols sent and those behind the matched filter.
+
+        Parameters
+        ----------
+        conditioned : Signal
+            What a receiver gets, at the sample rate of this carrier.
+        arrival : Arrival
+            How the carrier stands in it.
+        early_samples : int, optional
+            Nothing to a single carrier.
+
+        Returns
+        -------
+        Reception
+            Rotated and differential symbols are compared as they were sent, phase included. A
+            pulse that leaves interference behind its matched filter by nature is compared with
+            what the same filter makes of the untouched carrier.
+
+        Raises
+        ------
+        SignalError
+            Symbols fall between samples and the pulse is not band-limited.
+        """
+        source, pulse, ratio = self.inputs[0], self.pulse, self.ratio
+        matched = match(conditioned, arrival, pulse=pulse, ratio=ratio, axis=source)
+        expected, symbols, remarks = source, self.ideal, arrival.remarks
+        if not pulse.is_matched:
+            still = Arrival(n_samples=self.n_samples)
+            expected = match(self, still, pulse=pulse, ratio=ratio, axis=source)
+            text = "the reference is the untouched carrier behind the same filter"
+            remarks = (*remarks, text)
+        name = getattr(getattr(symbols, "constellation", None), "name", "symbols")
+        classes = (SymbolClass(name="symbols", constellation=name),)
+        if not isinstance(source, Rails):
+            return Reception(received=matched, ideal=expected, classes=classes, remarks=remarks)
+        joined = [
+            JoinedRails(
+                sample_rate_hz=symbols.sample_rate_hz,
+                n_samples=symbols.n_samples,
+                inputs=(rails,),
+                mean_power=None,
+            )
+            for rails in (matched, expected)
+        ]
+        return Reception(
+            received=joined[0],
+            ideal=joined[1] if expected is not source else symbols,
+            classes=classes,
+            rails=(matched, expected),
+            remarks=remarks,
+        )
 
     @cached_property
     def shaper(self) -> Shaper:
