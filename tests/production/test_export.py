@@ -9,7 +9,7 @@ from wavegen.files import FORMATS
 from wavegen.files.datatypes import CI8, CI16_LE
 from wavegen.files.format import FileFacts
 from wavegen.production import export as room
-from wavegen.production.export import Written, brief, export
+from wavegen.production.export import Channel, Written, brief, export
 
 
 @pytest.fixture
@@ -21,8 +21,9 @@ def write(tmp_path, monkeypatch):
         )
         path = tmp_path / "draft"
         form = FORMATS.load("raw")()
+        bursts = options.pop("bursts", None)
         made = export(
-            signal,
+            [Channel(signal=signal, bursts=bursts)],
             gain=gain,
             form=form,
             facts=facts,

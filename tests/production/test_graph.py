@@ -125,7 +125,7 @@ def test_stages_run_in_order_on_the_part_and_on_the_sum(lab):
 
 
 def test_check_names_passes_what_is_right(lab):
-    check_names(lab.load(lab.SINGLE).recipe.signal, "signal")
+    check_names({"signal": lab.load(lab.SINGLE).recipe.signal})
 
 
 def test_prepare_resolves_errors_to_the_line(lab):

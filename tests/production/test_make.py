@@ -4,12 +4,14 @@ import multiprocessing
 from concurrent.futures import ProcessPoolExecutor
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from wavegen.core import render as render_room
 from wavegen.core import stored
 from wavegen.core.errors import FileError, RecipeError, SignalError
 from wavegen.files import FORMATS
+from wavegen.files.format import Annotation
 
 SUM = """signal:
   kind: sum
@@ -189,12 +191,47 @@ def test_a_folder_without_permission(lab, tmp_path, monkeypatch):
 
 
 def test_two_files_of_one_name(lab, tmp_path):
-    text = lab.SINGLE + "output: {iq: [sigmf, {format: sigmf, datatype: cf32_le}]}\n"
+    text = lab.SINGLE + "output: {iq: [sigmf, {format: sigmf, datatype: ci16_le}]}\n"
     with pytest.raises(RecipeError):
         lab.make(text, tmp_path)
-    text = lab.SINGLE + "output: {iq: [sigmf, {format: sigmf, datatype: cf32_le, name: Case}]}\n"
-    with pytest.raises(FileError, match="twice"):
-        lab.make(text, tmp_path)
+    names = "{format: sigmf, name: a}, {format: sigmf, datatype: cf32_le, name: A}"
+    with pytest.raises(RecipeError):
+        lab.make(lab.SINGLE + f"output: {{iq: [{names}]}}\n", tmp_path)
+    assert lab.left_in(tmp_path) == []
+
+
+def test_files_of_one_format_and_several_datatypes_stand_side_by_side(lab, tmp_path):
+    ask = "[sigmf, {format: sigmf, datatype: cf32_le}, {format: raw, bits: 12, align: left}, raw]"
+    made = lab.make(lab.SINGLE + f"output: {{iq: {ask}}}\n", tmp_path)
+    assert [item["name"] for item in made.document["files"]] == [
+        "case.sigmf-data", "case.cf32_le.sigmf-data", "case.ci16_le", "case.ci16_le.ci16_le",
+    ]  # fmt: skip
+    assert all(path.is_file() for path in made.files)
+    # A name of the recipe's own goes first; what would collide with it gives way.
+    ask = "[sigmf, {format: sigmf, datatype: cf32_le, name: Case}]"
+    made = lab.make(lab.SINGLE + f"output: {{iq: {ask}}}\n", tmp_path / "own")
+    names = [item["name"] for item in made.document["files"]]
+    assert names == ["case.ci16_le.sigmf-data", "Case.sigmf-data"]
+
+
+def test_words_shorter_than_their_containers(lab, tmp_path):
+    ask = "[raw, {format: raw, bits: 14, align: left}, {format: raw, bits: 14, align: right}]"
+    made = lab.make(lab.SINGLE + f"output: {{iq: {ask}, peak: -1 dBFS}}\n", tmp_path)
+    wide, left, right = (np.fromfile(path, "<i2").astype(int) for path in made.files[:3])
+    assert np.all(left == 4 * right)
+    assert np.abs(right).max() < 1 << 13
+    assert np.abs(wide - left).max() <= 3  # half a step of 4 each, and half a code
+    said = [(item["datatype"], item["bits"], item["align"]) for item in made.document["files"]]
+    assert said == [("ci16_le", None, None), ("ci16_le", 14, "left"), ("ci16_le", 14, "right")]
+    noise = [item["rounding_noise_dbc"] for item in made.document["files"]]
+    assert noise[1] == noise[2] == pytest.approx(noise[0] + 20 * np.log10(4), abs=1e-3)
+
+
+def test_markers_are_checked_before_they_are_written(lab, tmp_path, monkeypatch):
+    wrong = (Annotation(start_sample=9000, label="burst on"),)
+    monkeypatch.setattr("wavegen.production.make.markers_of", lambda _: wrong)
+    with pytest.raises(FileError, match="burst on"):
+        lab.make(lab.SINGLE, tmp_path)
     assert lab.left_in(tmp_path) == []
 
 

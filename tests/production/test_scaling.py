@@ -9,35 +9,49 @@ from wavegen.production.scaling import gain_for
 
 def waveform(mean, peak):
     statistics = SimpleNamespace(mean=mean, mean_db=10 * np.log10(mean))
-    papr_db = 10 * np.log10(peak / mean)
-    return SimpleNamespace(statistics=statistics, peak=SimpleNamespace(power=peak), papr_db=papr_db)
+    rails = SimpleNamespace(largest=peak / 2)
+    return SimpleNamespace(statistics=statistics, peak=SimpleNamespace(power=peak), rails=rails)
 
 
 def test_gain_by_the_peak(lab):
     loaded = lab.load(lab.CARRIER + "output: {peak: -6 dBFS}\n")
-    assert gain_for(loaded, waveform(1.0, 4.0)) == pytest.approx(10 ** (-6 / 20) / 2, rel=1e-12)
+    assert gain_for(loaded, [waveform(1.0, 4.0)]) == pytest.approx(10 ** (-6 / 20) / 2, rel=1e-12)
 
 
 def test_the_peak_is_minus_one_unless_said(lab):
-    gain = gain_for(lab.load(lab.CARRIER), waveform(1.0, 1.0))
+    gain = gain_for(lab.load(lab.CARRIER), [waveform(1.0, 1.0)])
     assert gain == pytest.approx(10 ** (-1 / 20), rel=1e-12)
 
 
 def test_gain_by_the_average(lab):
     loaded = lab.load(lab.CARRIER + "output: {average: -15 dBFS}\n")
-    assert gain_for(loaded, waveform(2.0, 8.0)) == pytest.approx(
+    assert gain_for(loaded, [waveform(2.0, 8.0)]) == pytest.approx(
         10 ** (-15 / 20) / np.sqrt(2), rel=1e-12
     )
 
 
 def test_an_average_that_would_put_the_peak_over_full_scale(lab):
     loaded = lab.load(lab.CARRIER + "output: {average: -6 dBFS}\n")
-    gain_for(loaded, waveform(1.0, 10**0.599))
+    gain_for(loaded, [waveform(1.0, 10**0.599)])
     with pytest.raises(RecipeError) as caught:
-        gain_for(loaded, waveform(1.0, 10**0.7))
+        gain_for(loaded, [waveform(1.0, 10**0.7)])
     assert caught.value.where.startswith("case.yaml:5:")
     assert "1.00 dBFS" in caught.value.problem
     assert "-7.00 dBFS" in caught.value.allowed
+
+
+def test_of_two_channels_the_larger_peak_and_the_first_average_count(lab):
+    both = [waveform(1.0, 2.0), waveform(0.5, 4.0)]
+    loaded = lab.load(lab.CARRIER + "output: {peak: -6 dBFS}\n")
+    assert gain_for(loaded, both) == pytest.approx(10 ** (-6 / 20) / 2, rel=1e-12)
+    assert gain_for(loaded, both[::-1]) == gain_for(loaded, both)
+    loaded = lab.load(lab.CARRIER + "output: {peak: -6 dBFS, peak_of: rail}\n")
+    assert gain_for(loaded, both) == pytest.approx(10 ** (-6 / 20) / np.sqrt(2), rel=1e-12)
+    loaded = lab.load(lab.CARRIER + "output: {average: -7 dBFS}\n")
+    assert gain_for(loaded, both) == pytest.approx(10 ** (-7 / 20), rel=1e-12)
+    loaded = lab.load(lab.CARRIER + "output: {average: -5 dBFS}\n")
+    with pytest.raises(RecipeError, match=r"1\.02 dBFS"):  # 4 over 1 is 6.02 dB
+        gain_for(loaded, both)
 
 
 def test_peak_and_average_are_honoured_in_the_written_codes(lab, tmp_path):

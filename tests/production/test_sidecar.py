@@ -95,6 +95,10 @@ def test_the_top_level_repeats_the_first_file(made, source):
         "sha512",
         "n_saturated",
         "rounding_noise_dbc",
+        "bits",
+        "align",
+        "real",
+        "channels",
     }:
         assert document[key] == first[key], key
 

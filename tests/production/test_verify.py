@@ -13,9 +13,14 @@ from wavegen.production.verify import compare_with_law, law_levels, law_of, wors
 TONES = "signal: {kind: tones, count: 8, spacing: 10 kHz, phases: newman}\n"
 
 
+def levels_of(file, level_db):
+    return law_levels(file.datatype, file.statistics, level_db)
+
+
 def as_file(samples, datatype=CF32_LE):
     statistics = measure_samples(samples.astype(np.complex64))
-    return SimpleNamespace(statistics=statistics, datatype=datatype)
+    channel = SimpleNamespace(statistics=statistics)
+    return SimpleNamespace(channels=(channel,), statistics=statistics, datatype=datatype)
 
 
 def law(lab, phases="newman"):
@@ -68,14 +73,14 @@ def test_rounding_to_codes_is_allowed_for_and_no_more(lab):
 
 def test_how_far_rounding_can_move_a_level():
     # A mean of -20 dBFS in 8 bits is 12.8 codes RMS; half a code on each rail is 0.7071 codes.
-    below, above = law_levels(as_file(np.full(100, 0.1), CI8), np.array([0.0, -40.0]))
+    below, above = levels_of(as_file(np.full(100, 0.1), CI8), np.array([0.0, -40.0]))
     half = np.sqrt(0.5)
     assert below[0] == pytest.approx(20 * np.log10((12.8 - half) / (12.8 + half)) - 0.01, abs=1e-6)
     assert above[0] == pytest.approx(20 * np.log10((12.8 + half) / (12.8 - half)) + 0.01, abs=1e-6)
     assert below[1] < -300  # less than a code: anything may have stood there
-    below, above = law_levels(as_file(np.full(100, 0.1)), np.array([3.0]))
+    below, above = levels_of(as_file(np.full(100, 0.1)), np.array([3.0]))
     assert (below, above) == (pytest.approx(2.99), pytest.approx(3.01))
-    _, above = law_levels(as_file(np.full(100, 0.001), CI8), np.array([0.0]))
+    _, above = levels_of(as_file(np.full(100, 0.001), CI8), np.array([0.0]))
     assert above > 300
 
 

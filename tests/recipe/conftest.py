@@ -3,7 +3,7 @@
 from dataclasses import dataclass
 from fractions import Fraction
 from types import ModuleType
-from typing import Annotated, Any, Literal, Self
+from typing import Annotated, Any, ClassVar, Literal, Self
 
 import pytest
 from annotated_types import Ge, Gt, Interval, Le, MinLen
@@ -11,6 +11,7 @@ from annotated_types import Ge, Gt, Interval, Le, MinLen
 from wavegen.core.errors import RecipeError
 from wavegen.core.registry import Member, Registry
 from wavegen.core.units import QuantityError
+from wavegen.files.datatypes import CF32_LE, CI16_LE, RI16_LE
 from wavegen.recipe import format_request
 from wavegen.recipe.tables import Tables
 
@@ -128,7 +129,7 @@ class Pairs:
 
     name = "pairs"
     suffixes = (".iq",)
-    datatypes = ("ci16_le", "cf32_le")
+    datatypes: ClassVar = {"ci16_le": CI16_LE, "cf32_le": CF32_LE, "ri16_le": RI16_LE}
     default_datatype = "ci16_le"
 
 
@@ -136,7 +137,7 @@ class Sound(Pairs):
     """Another."""
 
     name = "sound"
-    datatypes = ("int16", "float32")
+    datatypes: ClassVar = {"int16": CI16_LE, "float32": CF32_LE}
     default_datatype = "int16"
 
 

@@ -167,9 +167,14 @@ def test_shipped_recipes_come_back(name: str) -> None:
 def test_every_format_takes_its_datatypes_and_no_other(name: str) -> None:
     plain = FormatRequest.parse(name)
     assert plain.text() == name
-    for datatype in FORMATS.load(name).datatypes:
-        made = FormatRequest.parse({"format": name, "datatype": datatype})
+    for datatype, about in FORMATS.load(name).datatypes.items():
+        given = {"format": name, "datatype": datatype}
+        real = {"real": {"centre": "30 MHz"}}
+        made = FormatRequest.parse(given | (real if about.is_real else {}))
         assert FormatRequest.parse(made.text()) == made
+        with pytest.raises(QuantityError) as caught:
+            FormatRequest.parse(given | ({} if about.is_real else real))
+        assert caught.value.key in {"datatype", "real"}
     with pytest.raises(QuantityError) as caught:
         FormatRequest.parse({"format": name, "datatype": "ci7"})
     assert caught.value.key == "datatype"

@@ -4,7 +4,9 @@ from fractions import Fraction
 
 import pytest
 
+from wavegen.core.errors import RecipeError
 from wavegen.core.units import QuantityError
+from wavegen.recipe.dump import dump
 from wavegen.recipe.format_request import FormatRequest
 from wavegen.recipe.load import load_text
 from wavegen.recipe.settings import Bench, Duration, Extent, Output, PathStage
@@ -106,8 +108,10 @@ def test_files_are_told_apart_by_format_and_name() -> None:
     one = FormatRequest(format="sound", datatype="int16")
     Output(iq=(one, FormatRequest(format="sound", datatype="int16", name="b")))
     Output(iq=(one, FormatRequest(format="pairs", datatype="ci16_le")))
+    Output(iq=(one, FormatRequest(format="sound", datatype="float32")))
+    Output(iq=(one, FormatRequest(format="sound", datatype="int16", bits=12, align="left")))
     with pytest.raises(QuantityError) as caught:
-        Output(iq=(one, FormatRequest(format="sound", datatype="float32")))
+        Output(iq=(one, FormatRequest(format="sound", datatype="int16", bits=16)))
     assert caught.value.key == "iq[1]"
     with pytest.raises(QuantityError):  # one file on systems that fold case
         Output(
@@ -116,3 +120,20 @@ def test_files_are_told_apart_by_format_and_name() -> None:
                 FormatRequest(format="sound", datatype="int16", name="b"),
             )
         )
+
+
+def test_a_second_channel_loads_and_comes_back(head: str, tables: Tables) -> None:
+    text = f"""{head}signal: {{kind: choosy}}
+second_channel: {{signal: {{kind: choosy, high: 2}}, stages: [{{kind: ceiling, ceiling: 7 dB}}]}}
+"""
+    recipe = load_text(text, tables=tables).recipe
+    second = recipe.second_channel
+    assert second is not None
+    assert (second.level_db, len(second.stages)) == (0.0, 1)
+    assert load_text(dump(recipe, tables=tables), tables=tables).recipe == recipe
+    for wrong in (
+        "second_channel: {level: 3 dB}",
+        "second_channel: {signal: {kind: choosy}, x: 1}",
+    ):
+        with pytest.raises(RecipeError):
+            load_text(f"{head}signal: {{kind: choosy}}\n{wrong}\n", tables=tables)

@@ -97,6 +97,7 @@ def show(document: dict[str, Any], console: Console) -> None:
     """Print one stimulus: files, figures, levels, levels along the bench."""
     from wavegen.reports.tables import (
         bench_table,
+        channel_table,
         file_table,
         law_words,
         level_table,
@@ -111,6 +112,11 @@ def show(document: dict[str, Any], console: Console) -> None:
     console.table(level_table(document))
     if document["law"]:
         console.line(law_words(document["law"]))
+    channels = channel_table(document)
+    if channels:
+        console.table(channels)
+        if document["second_channel"]["law"]:
+            console.line(f"Channel 1: {law_words(document['second_channel']['law'])}")
     bench = bench_table(document)
     if bench:
         console.table(bench)

@@ -111,7 +111,7 @@ def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[st
 
 def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
     from wavegen.core.excerpt import excerpt
-    from wavegen.files.analytic import looped
+    from wavegen.files.analytic import edge_text, looped
     from wavegen.files.read import open_recording
     from wavegen.production.measure import Subject, completed_hints, measure
     from wavegen.production.stimulus import mismatch, sidecar_of
@@ -154,6 +154,9 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
             remedy="Correct the limits.",
         )
     loops = arguments.loop or period is not None or (sidecar is not None and not is_cut)
+    if loops and recording.is_real:  # what follows the end is known
+        ends = edge_text(recording.path, recording.n_samples)
+        warnings = [text for text in warnings if text != ends]
     subject = Subject(
         name=recording.path.name,
         signal=looped(recording, first, stop) if loops else excerpt(recording.signal, first, stop),

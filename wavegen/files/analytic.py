@@ -190,11 +190,12 @@ def as_complex(recording: Recording) -> Recording:
         recording,
         signal=AnalyticSamples.of(source),
         is_real=True,
-        warnings=(*recording.warnings, _edge_text(recording.path, recording.n_samples)),
+        warnings=(*recording.warnings, edge_text(recording.path, recording.n_samples)),
     )
 
 
-def _edge_text(path: Path, n_samples: int) -> str:
+def edge_text(path: Path, n_samples: int) -> str:
+    """Return the warning about the ends of real samples that do not repeat."""
     if n_samples <= 2 * EDGE_SAMPLES:
         return (
             f"{path.name} is real and short: the envelope of all its {n_samples} samples "

@@ -22,6 +22,8 @@ class PathLevel:
         Peak envelope power, dBm: average plus PAPR, from the peak between samples.
     average_limit_dbm, peak_limit_dbm : float or None
         Ratings at the input.
+    channel : int or None
+        Which of two channels; None where there is one.
     """
 
     name: str
@@ -30,9 +32,12 @@ class PathLevel:
     peak_envelope_dbm: float
     average_limit_dbm: float | None
     peak_limit_dbm: float | None
+    channel: int | None = None
 
 
-def path_levels(bench: Bench, papr_db: float) -> list[PathLevel]:
+def path_levels(
+    bench: Bench, papr_db: float, *, over_first_db: float = 0.0, channel: int | None = None
+) -> list[PathLevel]:
     """Return average and peak at the input of every place.
 
     Parameters
@@ -41,6 +46,10 @@ def path_levels(bench: Bench, papr_db: float) -> list[PathLevel]:
         Average power wanted at the device, and the path with its gains.
     papr_db : float
         Peak between samples over the mean that ``bench.averaged_over`` names, dB.
+    over_first_db : float
+        Average power of this channel over that of the first, dB.
+    channel : int, optional
+        Which of two channels; each has a path of its own, alike.
 
     Returns
     -------
@@ -56,7 +65,8 @@ def path_levels(bench: Bench, papr_db: float) -> list[PathLevel]:
     for number, place in enumerate(bench.path):
         low, high = min(number, device), max(number, device)
         between = sum(step.gain_db for step in bench.path[low:high])
-        average = bench.average_power_at_device_dbm + (between if number > device else -between)
+        average = bench.average_power_at_device_dbm + over_first_db
+        average += between if number > device else -between
         levels.append(
             PathLevel(
                 name=place.name,
@@ -65,6 +75,7 @@ def path_levels(bench: Bench, papr_db: float) -> list[PathLevel]:
                 peak_envelope_dbm=average + papr_db,
                 average_limit_dbm=place.average_limit_dbm,
                 peak_limit_dbm=place.peak_limit_dbm,
+                channel=channel,
             )
         )
     return levels
@@ -78,15 +89,17 @@ def refuse_overload(levels: list[PathLevel]) -> None:
     TargetMissed
         The first place whose average or peak lies over its rating.
     """
-    for number, level in enumerate(levels):
+    for level in levels:
         for what, value, limit in (
             ("average power", level.average_dbm, level.average_limit_dbm),
             ("peak envelope power", level.peak_envelope_dbm, level.peak_limit_dbm),
         ):
             if limit is not None and value > limit:
+                of = "" if level.channel is None else f" of channel {level.channel}"
+                places = [place for place in levels if place.channel == level.channel]
                 raise TargetMissed(
-                    where=f"bench.path[{number}]",
-                    problem=f"{what} at the input of {level.name!r} would be {value:.2f} dBm",
+                    where=f"bench.path[{places.index(level)}]",
+                    problem=f"{what}{of} at the input of {level.name!r} would be {value:.2f} dBm",
                     allowed=f"its rating, up to {limit:.2f} dBm",
                     remedy=(
                         "Lower average_power_at_device, reduce the crest factor, or put an "

@@ -51,7 +51,7 @@ def doubts_of_mean(prepared: Prepared, waveform: Waveform) -> list[Note]:
     if change_db < CANCELLED_DB:
         raise prepared.loaded.resolve(
             RecipeError(
-                where="signal",
+                where=prepared.site.path,
                 problem=f"the parts cancel each other: {change_db:.1f} dB of their power are left",
                 allowed=f"at least {CANCELLED_DB:.0f} dB; below, only rounding is left",
                 remedy="Change the phase or frequency of a part, or let it draw its own data.",
@@ -63,11 +63,15 @@ def doubts_of_mean(prepared: Prepared, waveform: Waveform) -> list[Note]:
         f"the mean power of this loop stands {change_db:+.2f} dB from the nominal one: a short "
         "loop differs from its process, and parts that share data or frequencies add as amplitudes"
     )
-    return [Note(kind="warning", where="signal", text=text)]
+    return [Note(kind="warning", where=prepared.site.path, text=text)]
 
 
 def refuse_unresolved(
-    loaded: LoadedRecipe, waveform: Waveform, gain: float, datatypes: Sequence[Datatype]
+    loaded: LoadedRecipe,
+    waveform: Waveform,
+    gain: float,
+    datatypes: Sequence[Datatype],
+    channel: str = "",
 ) -> None:
     """Refuse a level at which a file's codes would all be zero.
 
@@ -81,6 +85,8 @@ def refuse_unresolved(
         Amplitude factor to full scale 1.0.
     datatypes : sequence of Datatype
         One for each file.
+    channel : str
+        Of several channels the one that the waveform is: ``of channel 1``.
 
     Raises
     ------
@@ -95,8 +101,9 @@ def refuse_unresolved(
                 RecipeError(
                     where="output",
                     problem=(
-                        f"the peak between samples would stand at {_dbfs(peak)}, below the "
-                        f"smallest step of output.iq[{number}], {datatype.name}"
+                        f"the peak between samples{channel and ' '}{channel} would stand at "
+                        f"{_dbfs(peak)}, below the smallest step of output.iq[{number}], "
+                        f"{datatype.label}"
                     ),
                     allowed=f"peaks from {_dbfs(least)}",
                     remedy="Raise the level, or write a float datatype.",
@@ -130,15 +137,19 @@ def doubts_of_files(files: Sequence[ExportedFile]) -> list[Note]:
             notes.append(Note(kind="warning", where=where, text=text))
         if not file.datatype.is_integer:
             continue
-        margin_db = (
-            file.statistics.mean_db + 20 * math.log10(file.datatype.full_scale) + 10 * math.log10(6)
-        )
-        if margin_db < ROUNDING_MARGIN_DB:
-            text = (
-                f"the rounding to {file.datatype.name} stands only {margin_db:.1f} dB below the "
-                "mean; raise the level or choose a wider datatype"
+        for channel, codes in enumerate(file.channels):
+            margin_db = (
+                codes.statistics.mean_db
+                + 20 * math.log10(file.datatype.full_scale)
+                + 10 * math.log10(6)
             )
-            notes.append(Note(kind="warning", where=where, text=text))
+            if margin_db < ROUNDING_MARGIN_DB:
+                of = f" of channel {channel}" if len(file.channels) > 1 else ""
+                text = (
+                    f"the rounding to {file.datatype.label} stands only {margin_db:.1f} dB below "
+                    f"the mean{of}; raise the level or choose a wider datatype"
+                )
+                notes.append(Note(kind="warning", where=where, text=text))
     return notes
 
 

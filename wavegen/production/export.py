@@ -3,19 +3,23 @@
 from __future__ import annotations
 
 from collections import deque
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from fractions import Fraction
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 
 from wavegen.core.progress import Progress, silent
-from wavegen.core.render import Meter, Reading
+from wavegen.core.render import Meter, Reading, Tap, render, samples_of
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.dsp.bursts import Bursts
-from wavegen.files.datatypes import Codes, Datatype, decode, encode, quantised
+from wavegen.files.analytic import analytic_loop
+from wavegen.files.datatypes import Codes, Datatype, decode, encode, join_channels, quantised
 from wavegen.files.format import FileFacts, Format
+from wavegen.files.real_if import real_if
 from wavegen.meters.gated import GatedPowerMeter
 from wavegen.meters.peak import BetweenSamplesPeak, peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
@@ -45,6 +49,25 @@ class Written(Signal):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class ChannelCodes:
+    """What the codes of one channel measure.
+
+    Parameters
+    ----------
+    statistics : PowerStatistics
+        Of the codes, full scale 1.0; of real ones that of their analytic signal.
+    peak : BetweenSamplesPeak
+        Of the codes.
+    on_statistics : PowerStatistics or None
+        Of the codes while the signal is on, ramps excluded; None if it is never off.
+    """
+
+    statistics: PowerStatistics
+    peak: BetweenSamplesPeak
+    on_statistics: PowerStatistics | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class ExportedFile:
     """What was written and what its codes measure.
 
@@ -52,18 +75,18 @@ class ExportedFile:
     ----------
     names : tuple of str
         Files made, the data file first.
-    format, datatype : str
+    format : str
         As in the recipe's terms.
+    datatype : Datatype
+        How samples are coded.
     sha512 : str
         Of the data file.
     n_saturated : int
         Rails that were cut at full scale.
-    statistics : PowerStatistics
-        Of the codes, full scale 1.0.
-    peak : BetweenSamplesPeak
-        Of the codes.
-    on_statistics : PowerStatistics or None
-        Of the codes while the signal is on, ramps excluded; None if it is never off.
+    channels : tuple of ChannelCodes
+        One or two.
+    centre_hz : Fraction or None
+        Intermediate frequency of real samples, Hz.
     """
 
     names: tuple[str, ...]
@@ -71,38 +94,85 @@ class ExportedFile:
     datatype: Datatype
     sha512: str
     n_saturated: int
-    statistics: PowerStatistics
-    peak: BetweenSamplesPeak
-    on_statistics: PowerStatistics | None = None
+    channels: tuple[ChannelCodes, ...]
+    centre_hz: Fraction | None = None
+
+    @property
+    def statistics(self) -> PowerStatistics:
+        """Those of the first channel."""
+        return self.channels[0].statistics
+
+    @property
+    def peak(self) -> BetweenSamplesPeak:
+        """That of the first channel."""
+        return self.channels[0].peak
+
+    @property
+    def on_statistics(self) -> PowerStatistics | None:
+        """Those of the first channel."""
+        return self.channels[0].on_statistics
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Channel:
+    """One channel to write.
+
+    Parameters
+    ----------
+    signal : Signal
+        The loop, a leaf whose ranges can be read.
+    bursts : Bursts or None
+        When it is on; then the on-time is measured too.
+    """
+
+    signal: Signal
+    bursts: Bursts | None = None
+
+    @property
+    def meters(self) -> tuple[Meter, ...]:
+        """What measures its codes."""
+        every: Meter = PowerMeter(where=WHERE)
+        if self.bursts is None:
+            return (every,)
+        return (every, GatedPowerMeter(bursts=self.bursts, where=WHERE))
 
 
 def _encode_strip(
-    source: Signal,
-    gain: np.float32,
-    datatype: Datatype,
-    meters: Sequence[Meter],
-    strip: Range,
+    channels: Sequence[Channel], gain: np.float32, datatype: Datatype, strip: Range
 ) -> tuple[Codes, int, list[Reading]]:
-    """Return codes of a strip, how many saturated, and what they measure."""
-    samples = source.compute(*strip)
-    samples *= gain
-    codes, n_saturated = encode(samples, datatype)
-    held = decode(codes, datatype)
-    readings = [meter.begin(source) for meter in meters]
-    for reading in readings:
-        reading.feed(strip[0], held)
+    """Return codes of a strip, how many saturated, and what complex ones measure."""
+    together: list[Codes] = []
+    readings: list[Reading] = []
+    n_saturated = 0
+    for channel in channels:
+        source = channel.signal
+        is_leaf = not source.inputs
+        samples = source.compute(*strip) if is_leaf else samples_of(source, *strip)
+        samples *= gain
+        codes, n_cut = encode(samples, datatype)
+        together.append(codes)
+        n_saturated += n_cut
+        if datatype.is_real:
+            continue
+        held = decode(codes, datatype)
+        for meter in channel.meters:
+            reading = meter.begin(source)
+            reading.feed(strip[0], held)
+            readings.append(reading)
+    codes = together[0] if len(together) == 1 else join_channels(*together)
     return codes, n_saturated, readings
 
 
 def export(
-    stored: Signal,
+    channels: Sequence[Channel],
     *,
     gain: float,
     form: Format,
     facts: FileFacts,
     names: tuple[str, ...],
     drafts: tuple[Path, ...],
-    bursts: Bursts | None = None,
+    centre_hz: Fraction | None = None,
+    loops: bool = True,
     workers: int = 1,
     progress: Progress = silent,
 ) -> ExportedFile:
@@ -110,18 +180,20 @@ def export(
 
     Parameters
     ----------
-    stored : Signal
-        The loop, a leaf whose ranges can be read.
+    channels : sequence of Channel
+        One, or two of one length.
     gain : float
-        Amplitude factor to full scale 1.0.
+        Amplitude factor to full scale 1.0, of both.
     form : Format
         Who writes it.
     facts : FileFacts
         What the file says about itself.
     names, drafts : tuple
         Final names and temporary paths, the data file first.
-    bursts : Bursts, optional
-        When the signal is on; then the on-time is measured too.
+    centre_hz : Fraction, optional
+        Intermediate frequency of a real datatype, Hz, on the loop's grid.
+    loops : bool
+        Whether the last sample is followed by the first, for the peak between samples.
     workers : int
         Threads that encode; one more writes and hashes.
     progress : Progress
@@ -138,12 +210,15 @@ def export(
     """
     datatype = facts.datatype
     factor = np.float32(gain)
+    if centre_hz is not None:
+        channels = [
+            replace(channel, signal=real_if(channel.signal, centre_hz, WHERE))
+            for channel in channels
+        ]
+    n_samples = channels[0].signal.n_samples
     writer = form.writer(drafts, facts)
-    meters: list[Meter] = [PowerMeter(where=WHERE)]
-    if bursts is not None:
-        meters.append(GatedPowerMeter(bursts=bursts, where=WHERE))
     waiting: deque[tuple[int, Future[tuple[Codes, int, list[Reading]]]]] = deque()
-    starts = iter(range(0, stored.n_samples, STRIP_SAMPLES))
+    starts = iter(range(0, n_samples, STRIP_SAMPLES))
     n_saturated = 0
     totals: list[Reading] = []
     pool = ThreadPoolExecutor(workers, thread_name_prefix="encode")
@@ -151,10 +226,9 @@ def export(
     def submit() -> None:
         start = next(starts, None)
         if start is not None:
-            stop = min(start + STRIP_SAMPLES, stored.n_samples)
-            waiting.append(
-                (stop, pool.submit(_encode_strip, stored, factor, datatype, meters, (start, stop)))
-            )
+            stop = min(start + STRIP_SAMPLES, n_samples)
+            future = pool.submit(_encode_strip, channels, factor, datatype, (start, stop))
+            waiting.append((stop, future))
 
     try:
         for _ in range(workers + 1):
@@ -170,17 +244,13 @@ def export(
                     total.merge(reading)
             else:
                 totals = readings
-            progress(f"writing {names[0]}", stop, stored.n_samples)
-        statistics: PowerStatistics = totals[0].result()
-        written = Written(
-            sample_rate_hz=stored.sample_rate_hz,
-            n_samples=stored.n_samples,
-            inputs=(stored,),
-            gain=gain,
-            datatype=datatype,
+            progress(f"writing {names[0]}", stop, n_samples)
+        figures = iter([total.result() for total in totals])
+        measured = tuple(
+            _measured(channel, gain, datatype, figures, workers, loops=loops)
+            for channel in channels
         )
-        peak = peak_between_samples(written, statistics)
-        writer.finish(brief(statistics, peak))
+        writer.finish(brief(measured[0].statistics, measured[0].peak))
     finally:
         writer.close()
         pool.shutdown(cancel_futures=True)
@@ -190,9 +260,41 @@ def export(
         datatype=datatype,
         sha512=writer.sha512,
         n_saturated=n_saturated,
+        channels=measured,
+        centre_hz=centre_hz,
+    )
+
+
+def _measured(
+    channel: Channel,
+    gain: float,
+    datatype: Datatype,
+    figures: Iterator[Any],
+    workers: int,
+    *,
+    loops: bool,
+) -> ChannelCodes:
+    """Return what one channel's codes measure; those of real samples are measured here."""
+    written: Signal = Written(
+        sample_rate_hz=channel.signal.sample_rate_hz,
+        n_samples=channel.signal.n_samples,
+        inputs=(channel.signal,),
+        mean_power=None,
+        gain=gain,
+        datatype=datatype,
+    )
+    if datatype.is_real:
+        written = analytic_loop(written)
+        taps = tuple(
+            Tap(name=str(number), signal=written, meter=meter)
+            for number, meter in enumerate(channel.meters)
+        )
+        figures = iter(render(written, taps=taps, workers=workers).values())
+    statistics: PowerStatistics = next(figures)
+    return ChannelCodes(
         statistics=statistics,
-        peak=peak,
-        on_statistics=totals[1].result() if bursts is not None else None,
+        peak=peak_between_samples(written, statistics, loops=loops),
+        on_statistics=None if channel.bursts is None else next(figures),
     )
 
 

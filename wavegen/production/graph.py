@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, field, fields, is_dataclass, replace
 from fractions import Fraction
 from pathlib import Path
@@ -176,7 +176,7 @@ def build(signal: Any, stages: tuple[Any, ...], site: Site) -> Built:
     stages : tuple of stage settings
         Applied in order after the signal.
     site : Site
-        At path ``signal``.
+        At path ``signal`` or ``second_channel.signal``; :func:`check_names` has passed.
 
     Returns
     -------
@@ -185,12 +185,12 @@ def build(signal: Any, stages: tuple[Any, ...], site: Site) -> Built:
     Raises
     ------
     RecipeError
-        Two parts of one name, data shared with no part, or as raised by a member.
+        As raised by a member.
     """
-    check_names(signal, site.path)
     parts: list[BuiltPart] = []
     built = _build_signal(signal, source_site(stages, site), parts)
-    return Built(build_chain(stages, site, built, "stages"), parts)
+    stages_path = site.path.removesuffix("signal") + "stages"
+    return Built(build_chain(stages, site, built, stages_path), parts)
 
 
 def _build_signal(settings: Any, site: Site, parts: list[BuiltPart]) -> Signal:
@@ -234,8 +234,21 @@ def _shares(value: Any, path: str) -> Iterator[tuple[str, str]]:
                 yield from _shares(inner, f"{path}.{item.name}")
 
 
-def check_names(signal: Any, path: str) -> None:
+def _over(
+    channels: Mapping[str, Any], walk: Callable[[Any, str], Iterator[tuple[str, str]]]
+) -> Iterator[tuple[str, str]]:
+    for path, signal in channels.items():
+        yield from walk(signal, path)
+
+
+def check_names(channels: Mapping[str, Any]) -> None:
     """Refuse two parts of one name, and data shared with a part that is not there.
+
+    Parameters
+    ----------
+    channels : mapping of str to settings
+        The signal of each channel by its path. Their parts share one space of names; of several
+        channels the path of one that is a plain source is a name too, under which it draws.
 
     Raises
     ------
@@ -243,7 +256,9 @@ def check_names(signal: Any, path: str) -> None:
         At the second use of the name, or at ``share``.
     """
     names: dict[str, str] = {}
-    for name, where in _named_parts(signal, path):
+    if len(channels) > 1:
+        names |= {path: path for path, signal in channels.items() if not is_combiner(signal)}
+    for name, where in _over(channels, _named_parts):
         if name in names:
             raise RecipeError(
                 where=where,
@@ -252,7 +267,7 @@ def check_names(signal: Any, path: str) -> None:
                 remedy="Rename one of them; to use the same data, write data: {share: ...}.",
             )
         names[name] = where
-    for name, where in _shares(signal, path):
+    for name, where in _over(channels, _shares):
         if name not in names:
             guess = nearest(name, list(names))
             raise RecipeError(

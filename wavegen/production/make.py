@@ -3,8 +3,11 @@
 from __future__ import annotations
 
 import hashlib
+from collections.abc import Sequence
 from concurrent.futures import Executor
+from contextlib import ExitStack
 from dataclasses import dataclass
+from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
@@ -12,18 +15,31 @@ from wavegen import __version__
 from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.errors import RecipeError
 from wavegen.core.progress import Progress, silent
+from wavegen.core.site import Note
 from wavegen.core.stored import Scratch
 from wavegen.files import FORMATS, markers
 from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
-from wavegen.files.format import FileFacts, Format, pick_datatype
-from wavegen.production.bench import path_levels, refuse_overload
+from wavegen.files.format import FileFacts, Format, distinct_stems
+from wavegen.production.bench import PathLevel, path_levels, refuse_overload
 from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
-from wavegen.production.export import ExportedFile, export
+from wavegen.production.export import Channel, ExportedFile, export
+from wavegen.production.intermediate import (
+    folded_db,
+    notes_of_folding,
+    snapped_centre,
+    spectrum_of,
+)
 from wavegen.production.marking import markers_of
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
-from wavegen.production.sidecar import as_csv, as_json, describe, stimulus_document
+from wavegen.production.sidecar import (
+    MadeChannel,
+    as_csv,
+    as_json,
+    describe,
+    stimulus_document,
+)
 from wavegen.production.verify import law_of, worst_verdict
 from wavegen.production.waveform import Waveform, render_loop
 from wavegen.recipe.load import LoadedRecipe
@@ -49,9 +65,9 @@ class Made:
 
     @property
     def differs(self) -> bool:
-        """Whether a file differs from the law."""
-        law = self.document["law"]
-        return law is not None and law["verdict"] == "differs"
+        """Whether a file differs from the law of one of its channels."""
+        laws = [self.document["law"], (self.document["second_channel"] or {}).get("law")]
+        return any(law is not None and law["verdict"] == "differs" for law in laws)
 
 
 @dataclass(frozen=True, slots=True)
@@ -62,6 +78,8 @@ class Target:
     facts: FileFacts
     names: tuple[str, ...]
     drafts: tuple[Path, ...]
+    where: str
+    centre_hz: Fraction | None = None
 
 
 def make(
@@ -110,37 +128,39 @@ def make(
         sidecar = drafts.add(f"{loaded.name}.ccdf.json")
         curve = drafts.add(f"{loaded.name}.ccdf.csv")
         marks = drafts.add(f"{loaded.name}{markers.SUFFIX}")
-        with Scratch(
-            folder=drafts.folder,
-            sample_rate_hz=loaded.recipe.sample_rate_hz,
-            n_samples=prepared.site.n_samples,
-        ) as scratch:
-            waveform = render_loop(
-                prepared.built,
-                scratch,
-                cycle_samples=prepared.cycle_samples,
-                workers=workers,
-                executor=executor,
-                progress=progress,
-            )
-            prepared.notes.extend(doubts_of_mean(prepared, waveform))
-            gain = gain_for(loaded, waveform)
-            refuse_unresolved(loaded, waveform, gain, [t.facts.datatype for t in targets])
-            bench = loaded.recipe.bench
-            levels = path_levels(bench, waveform.papr_over(bench.averaged_over)) if bench else []
+        with ExitStack() as stack:
+            waveforms = [
+                render_loop(
+                    channel.built,
+                    stack.enter_context(_scratch(channel, drafts.folder)),
+                    cycle_samples=channel.cycle_samples,
+                    workers=workers,
+                    executor=executor,
+                    progress=progress,
+                )
+                for channel in prepared.channels
+            ]
+            for channel, waveform in zip(prepared.channels, waveforms, strict=True):
+                prepared.notes.extend(doubts_of_mean(channel, waveform))
+            gain = gain_for(loaded, waveforms)
+            _refuse_unresolved(loaded, waveforms, gain, targets)
+            prepared.notes.extend(_doubts_of_folding(loaded, waveforms, targets))
+            levels = bench_levels(loaded, waveforms)
             refuse_overload(levels)
-            files = [_export(target, waveform, gain, workers, progress) for target in targets]
+            files = [_export(target, waveforms, gain, workers, progress) for target in targets]
         prepared.notes.extend(doubts_of_files(files))
-        law = law_of(prepared)
-        document = stimulus_document(
-            prepared,
-            waveform,
-            files=files,
-            gain=gain,
-            law=law,
-            verdict=worst_verdict(law, files),
-            levels=levels,
-        )
+        channels = []
+        for number, channel in enumerate(prepared.channels):
+            law = law_of(channel)
+            channels.append(
+                MadeChannel(
+                    prepared=channel,
+                    waveform=waveforms[number],
+                    law=law,
+                    verdict=worst_verdict(law, files, number),
+                )
+            )
+        document = stimulus_document(channels, files=files, gain=gain, levels=levels)
         texts = {sidecar: as_json(document), curve: as_csv(document)}
         texts[marks] = markers.markers_text(targets[0].facts.annotations)
         for path, text in texts.items():
@@ -152,17 +172,81 @@ def make(
     return Made(folder=folder, files=tuple(folder / name for name in names), document=document)
 
 
+def _scratch(channel: Prepared, folder: Path) -> Scratch:
+    return Scratch(
+        folder=folder,
+        sample_rate_hz=channel.site.sample_rate_hz,
+        n_samples=channel.site.n_samples,
+    )
+
+
+def _refuse_unresolved(
+    loaded: LoadedRecipe, waveforms: Sequence[Waveform], gain: float, targets: Sequence[Target]
+) -> None:
+    datatypes = [target.facts.datatype for target in targets]
+    for number, waveform in enumerate(waveforms):
+        name = f"of channel {number}" if len(waveforms) > 1 else ""
+        refuse_unresolved(loaded, waveform, gain, datatypes, name)
+
+
+def _doubts_of_folding(
+    loaded: LoadedRecipe, waveforms: Sequence[Waveform], targets: Sequence[Target]
+) -> list[Note]:
+    """Return what real files fold back; refuse what they would spoil."""
+    asked = [target for target in targets if target.centre_hz is not None]
+    if not asked:
+        return []
+    notes = []
+    for waveform in waveforms:
+        power = spectrum_of(waveform.signal, waveform.statistics)
+        for target in asked:
+            assert target.centre_hz is not None  # noqa: S101 - chosen above
+            folded = folded_db(
+                power,
+                centre_hz=target.centre_hz,
+                sample_rate_hz=waveform.signal.sample_rate_hz,
+            )
+            try:
+                notes += notes_of_folding(folded, centre_hz=target.centre_hz, where=target.where)
+            except RecipeError as error:
+                raise loaded.resolve(error) from error
+    return notes
+
+
+def bench_levels(loaded: LoadedRecipe, waveforms: Sequence[Waveform]) -> list[PathLevel]:
+    """Return the levels along the bench's path, of every channel; empty without a bench."""
+    bench = loaded.recipe.bench
+    if bench is None:
+        return []
+    over = bench.averaged_over
+    means = [waveform.mean_over_db(over) for waveform in waveforms]
+    return [
+        level
+        for number, waveform in enumerate(waveforms)
+        for level in path_levels(
+            bench,
+            waveform.papr_over(over),
+            over_first_db=means[number] - means[0],
+            channel=number if len(waveforms) > 1 else None,
+        )
+    ]
+
+
 def _export(
-    target: Target, waveform: Waveform, gain: float, workers: int, progress: Progress
+    target: Target,
+    waveforms: Sequence[Waveform],
+    gain: float,
+    workers: int,
+    progress: Progress,
 ) -> ExportedFile:
     return export(
-        waveform.signal,
+        [Channel(signal=waveform.signal, bursts=waveform.bursts) for waveform in waveforms],
         gain=gain,
         form=target.form,
         facts=target.facts,
         names=target.names,
         drafts=target.drafts,
-        bursts=waveform.bursts,
+        centre_hz=target.centre_hz,
         workers=workers,
         progress=progress,
     )
@@ -174,29 +258,52 @@ def plan_files(prepared: Prepared, drafts: Drafts) -> list[Target]:
     Raises
     ------
     FileError
-        An output exists, or a format has no room for the rate or the length.
+        An output exists, or a format has no room for the rate, the length or the channels.
     RecipeError
-        A format does not write a datatype.
+        No file is asked for, or an intermediate frequency leaves no room.
     """
     loaded = prepared.loaded
-    annotations = markers_of(prepared)
+    rate_hz, n_samples = loaded.recipe.sample_rate_hz, prepared.site.n_samples
+    annotations = markers.checked_markers(
+        markers_of(prepared), n_samples=n_samples, where=f"{loaded.name}{markers.SUFFIX}"
+    )
+    requests = loaded.recipe.output.iq
+    forms: list[Format] = [FORMATS.load(wanted.format)() for wanted in requests]
+    datatypes = [wanted.chosen() for wanted in requests]
+    stems = distinct_stems(
+        loaded.name, zip(forms, datatypes, (wanted.name for wanted in requests), strict=True)
+    )
     targets = []
-    for number, wanted in enumerate(loaded.recipe.output.iq):
-        form: Format = FORMATS.load(wanted.format)()
+    for number, (form, wanted) in enumerate(zip(forms, requests, strict=True)):
         where = f"output.iq[{number}]"
         facts = FileFacts(
-            sample_rate_hz=loaded.recipe.sample_rate_hz,
-            n_samples=prepared.site.n_samples,
-            datatype=pick_datatype(form, wanted.datatype, where),
+            sample_rate_hz=rate_hz,
+            n_samples=n_samples,
+            datatype=datatypes[number],
             title=loaded.recipe.title,
             description=describe(prepared),
             generator=f"wavegen {__version__}",
             annotations=annotations,
             recipe_sha512=hashlib.sha512(loaded.text.encode()).hexdigest(),
+            n_channels=len(prepared.channels),
         )
         form.check(facts, where)
-        names = form.files(wanted.name or loaded.name, facts.datatype)
-        targets.append(Target(form, facts, names, tuple(drafts.add(name) for name in names)))
+        names = form.files(stems[number], facts.datatype)
+        centre_hz = None
+        centre_where = f"{where}.real.centre"
+        if wanted.real is not None:
+            try:
+                centre_hz, notes = snapped_centre(
+                    wanted.real.centre_hz,
+                    sample_rate_hz=rate_hz,
+                    n_samples=n_samples,
+                    where=centre_where,
+                )
+            except RecipeError as error:
+                raise loaded.resolve(error) from error
+            prepared.notes.extend(notes)
+        paths = tuple(drafts.add(name) for name in names)
+        targets.append(Target(form, facts, names, paths, centre_where, centre_hz))
     if not targets:
         raise loaded.resolve(
             RecipeError(

@@ -3,13 +3,14 @@
 from __future__ import annotations
 
 from concurrent.futures import Executor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.progress import Progress, silent
 from wavegen.core.render import Tap, render
 from wavegen.core.signal import Signal
+from wavegen.files.format import ReadHints, Recording, told_channel
 from wavegen.meters.peak import peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
 from wavegen.meters.seam import seam_figure
@@ -43,6 +44,8 @@ class Subject:
         Shortest loop, where known: then the seam is judged.
     reference_level_dbm : float or None
         Power at 0 dBFS, dBm, where known.
+    is_power : bool
+        The samples are power against time without a phase: then there is no peak between them.
     """
 
     name: str
@@ -50,6 +53,7 @@ class Subject:
     loops: bool
     cycle_samples: int | None = None
     reference_level_dbm: float | None = None
+    is_power: bool = False
 
 
 def measure(
@@ -71,7 +75,8 @@ def measure(
     Returns
     -------
     dict
-        JSON values, with the keys of a sidecar where they mean the same.
+        JSON values, with the keys of a sidecar where they mean the same. Peaks between samples
+        are null of a power series.
 
     Raises
     ------
@@ -92,12 +97,15 @@ def measure(
         task=f"measuring {subject.name}",
     )
     statistics: PowerStatistics = reading["power"]
-    peak = peak_between_samples(signal, statistics, loops=subject.loops)
+    peak = None
+    if not subject.is_power:
+        peak = peak_between_samples(signal, statistics, loops=subject.loops)
     document: dict[str, Any] = {
         "format": f"{FORMAT}.measurement",
         "version": 1,
         "name": subject.name,
         "is": "this loop" if subject.loops else "a recording",
+        "is_power": subject.is_power,
         "sample_rate_hz": float(signal.sample_rate_hz),
         "duration_s": float(signal.n_samples / signal.sample_rate_hz),
         **power_figures(statistics, peak),
@@ -108,20 +116,55 @@ def measure(
     }
     if subject.reference_level_dbm is not None:
         document |= absolute(document, subject.reference_level_dbm)
-    if subject.loops and subject.cycle_samples is not None:
+    if subject.loops and subject.cycle_samples is not None and not subject.is_power:
         seam = seam_figure(signal, cycle_samples=subject.cycle_samples)
         document["seam"] = seam_row(seam)
     return document
 
 
 def absolute(document: dict[str, Any], reference_level_dbm: float) -> dict[str, Any]:
-    """Return mean and peak envelope power in dBm; the two always stand together."""
+    """Return mean and peak envelope power in dBm; the two always stand together.
+
+    Of a power series the peak is its largest sample: nothing is known between them.
+    """
     peak = document["peak_between_samples_dbfs"]
+    if peak is None:
+        peak = document["peak_dbfs"]
     return {
         "reference_level_dbm": reference_level_dbm,
         "mean_dbm": rounded(document["mean_dbfs"] + reference_level_dbm),
         "peak_envelope_dbm": rounded(peak + reference_level_dbm),
     }
+
+
+def completed_hints(entry: dict[str, Any], recording: Recording, hints: ReadHints) -> ReadHints:
+    """Return hints completed by what a sidecar says of a file that does not say it itself.
+
+    Parameters
+    ----------
+    entry : dict
+        The file's entry in the sidecar's ``files``.
+    recording : Recording
+        The file as the hints open it.
+    hints : ReadHints
+        What the user says; it wins.
+
+    Returns
+    -------
+    ReadHints
+        ``hints`` itself where nothing is missing.
+
+    Raises
+    ------
+    FileError
+        The file holds two channels and none is named.
+    """
+    if entry["channels"] is not None:
+        told_channel(recording.path, n_channels=len(entry["channels"]), hints=hints)
+    is_told = hints.bits is not None or hints.align is not None or recording.datatype.is_padded
+    if entry["bits"] is None or is_told:
+        return hints
+    return replace(hints, bits=entry["bits"], align=entry["align"])
 
 
 def measure_recipe(
@@ -136,7 +179,7 @@ def measure_recipe(
     Parameters
     ----------
     prepared : Prepared
-        From :func:`wavegen.production.prepare.prepare`.
+        From :func:`wavegen.production.prepare.prepare`, or one of its ``channels``.
     workers, executor, progress
         As in :func:`measure`.
 

@@ -5,10 +5,11 @@ from __future__ import annotations
 import csv
 import io
 import json
+import math
 import platform
 import re
 from collections.abc import Sequence
-from dataclasses import asdict
+from dataclasses import asdict, dataclass
 from functools import cache
 from importlib import metadata, resources
 from typing import Any
@@ -19,12 +20,13 @@ from numpy.typing import NDArray
 from wavegen import __version__
 from wavegen.core.site import Note
 from wavegen.core.units import format_hz
+from wavegen.files.datatypes import Datatype
 from wavegen.laws.law import Law
 from wavegen.meters.peak import BetweenSamplesPeak
 from wavegen.meters.power import PowerStatistics
 from wavegen.meters.seam import SeamFigure
 from wavegen.production.bench import PathLevel
-from wavegen.production.export import ExportedFile
+from wavegen.production.export import ChannelCodes, ExportedFile
 from wavegen.production.prepare import Prepared
 from wavegen.production.waveform import Waveform
 
@@ -100,14 +102,23 @@ def curves(statistics: PowerStatistics) -> dict[str, Any]:
     }
 
 
-def power_figures(statistics: PowerStatistics, peak: BetweenSamplesPeak) -> dict[str, Any]:
-    """Return mean, peaks, levels and curves of one set of codes."""
+def power_figures(statistics: PowerStatistics, peak: BetweenSamplesPeak | None) -> dict[str, Any]:
+    """Return mean, peaks, levels and curves of one set of codes.
+
+    Parameters
+    ----------
+    statistics : PowerStatistics
+        Of the codes.
+    peak : BetweenSamplesPeak or None
+        None where there is nothing between samples, as in a power series.
+    """
+    between_db = math.nan if peak is None else 10 * float(np.log10(peak.power))
     return {
         "mean_dbfs": rounded(statistics.mean_db),
         "peak_dbfs": rounded(statistics.peak_db),
-        "peak_between_samples_dbfs": rounded(10 * np.log10(peak.power)),
+        "peak_between_samples_dbfs": rounded(between_db),
         "papr_db": rounded(statistics.papr_db),
-        "papr_between_samples_db": rounded(10 * np.log10(peak.power) - statistics.mean_db),
+        "papr_between_samples_db": rounded(between_db - statistics.mean_db),
         "n_samples": statistics.n_samples,
         "n_zeros": statistics.n_zeros,
         "levels": level_rows(statistics),
@@ -115,7 +126,7 @@ def power_figures(statistics: PowerStatistics, peak: BetweenSamplesPeak) -> dict
     }
 
 
-def on_figures(item: ExportedFile, duty: float | None) -> dict[str, Any] | None:
+def on_figures(item: ChannelCodes, duty: float | None) -> dict[str, Any] | None:
     """Return the figures of the on-time, ramps excluded; None for what is never off."""
     statistics = item.on_statistics
     if statistics is None:
@@ -174,32 +185,52 @@ def versions() -> dict[str, str]:
     return found | {name: metadata.version(name) for name in LIBRARIES}
 
 
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MadeChannel:
+    """One channel of a stimulus, for the sidecar.
+
+    Parameters
+    ----------
+    prepared : Prepared
+        Its graph.
+    waveform : Waveform
+        What was rendered.
+    law : Law or None
+        Exact curve where there is one.
+    verdict : {"agrees", "differs", "undecided"}
+        How the files compare with it: one that differs makes it ``differs``.
+    """
+
+    prepared: Prepared
+    waveform: Waveform
+    law: Law | None
+    verdict: str
+
+    @property
+    def duty(self) -> float | None:
+        """On-time over the loop, None for what is never off."""
+        bursts = self.waveform.bursts
+        return float(bursts.duty) if bursts else None
+
+
 def stimulus_document(
-    prepared: Prepared,
-    waveform: Waveform,
+    channels: Sequence[MadeChannel],
     *,
     files: Sequence[ExportedFile],
     gain: float,
-    law: Law | None,
-    verdict: str,
     levels: Sequence[PathLevel],
 ) -> dict[str, Any]:
     """Return the sidecar of a stimulus as JSON values.
 
     Parameters
     ----------
-    prepared : Prepared
-        The recipe and what was rounded.
-    waveform : Waveform
-        What was rendered.
+    channels : sequence of MadeChannel
+        One or two. The top level is about the first; ``second_channel`` holds what is about the
+        second alone, and ``channels`` of each file the figures of both.
     files : sequence of ExportedFile
         At least one; its figures stand at the top level too.
     gain : float
-        Amplitude factor from unit mean power to full scale.
-    law : Law or None
-        Exact curve where there is one.
-    verdict : {"agrees", "differs", "undecided"}
-        How the files compare with it: one that differs makes it ``differs``.
+        Amplitude factor from unit mean power to full scale, of both channels.
     levels : sequence of PathLevel
         Along the bench's path; empty without a bench.
 
@@ -208,11 +239,13 @@ def stimulus_document(
     dict
         Valid by :func:`schema`.
     """
+    prepared, waveform = channels[0].prepared, channels[0].waveform
     loaded = prepared.loaded
     recipe = loaded.recipe
     rate = recipe.sample_rate_hz
-    first = files[0]
-    duty = float(waveform.bursts.duty) if waveform.bursts else None
+    first = files[0].channels[0]
+    duties = [channel.duty for channel in channels]
+    second = channel_rows(channels[1], gain) if len(channels) > 1 else None
     return {
         "format": FORMAT,
         "version": VERSION,
@@ -235,28 +268,52 @@ def stimulus_document(
             "cycle_samples": prepared.cycle_samples,
             "seam": seam_row(waveform.seam),
         },
-        "mean": {
-            "nominal_db": in_db(prepared.built.signal.mean_power),
-            "realised_db": rounded(waveform.statistics.mean_db),
-            "parts": part_rows(prepared, waveform),
-        },
-        "scaling": {
-            "gain_db": rounded(20 * np.log10(gain)),
-            "peak_dbfs": rounded(20 * np.log10(gain) + 10 * np.log10(waveform.peak.power)),
-            "average_dbfs": rounded(20 * np.log10(gain) + waveform.statistics.mean_db),
-            "i_peak_dbfs": in_db(gain**2 * waveform.rails.i),
-            "q_peak_dbfs": in_db(gain**2 * waveform.rails.q),
-        },
+        "mean": mean_rows(prepared, waveform),
+        "scaling": scaling_rows(waveform, gain),
+        "second_channel": second,
         "rounded": note_rows([n for n in prepared.notes if n.kind == "rounded"]),
         "warnings": note_rows([n for n in prepared.notes if n.kind == "warning"]),
         "notes": note_rows([n for n in prepared.notes if n.kind == "info"]),
         **power_figures(first.statistics, first.peak),
-        "on_time": on_figures(first, duty),
+        "on_time": on_figures(first, duties[0]),
         "reference": gaussian_reference(grid_db(first.statistics)),
-        "law": law_document(law, verdict),
+        "law": law_document(channels[0].law, channels[0].verdict),
         "bench": bench_rows(levels, recipe.bench.averaged_over if recipe.bench else "period"),
-        "files": [file_row(item, duty) for item in files],
+        "files": [file_row(item, duties) for item in files],
         "safety": SAFETY,
+    }
+
+
+def channel_rows(channel: MadeChannel, gain: float) -> dict[str, Any]:
+    """Return what is about one channel alone, apart from its figures in each file."""
+    return {
+        "loop": {
+            "cycle_samples": channel.prepared.cycle_samples,
+            "seam": seam_row(channel.waveform.seam),
+        },
+        "mean": mean_rows(channel.prepared, channel.waveform),
+        "scaling": scaling_rows(channel.waveform, gain),
+        "law": law_document(channel.law, channel.verdict),
+    }
+
+
+def mean_rows(prepared: Prepared, waveform: Waveform) -> dict[str, Any]:
+    """Return nominal and realised mean, dB over unit power; of the parts too."""
+    return {
+        "nominal_db": in_db(prepared.built.signal.mean_power),
+        "realised_db": rounded(waveform.statistics.mean_db),
+        "parts": part_rows(prepared, waveform),
+    }
+
+
+def scaling_rows(waveform: Waveform, gain: float) -> dict[str, Any]:
+    """Return the gain to full scale and where it puts peaks and average."""
+    return {
+        "gain_db": rounded(20 * np.log10(gain)),
+        "peak_dbfs": rounded(20 * np.log10(gain) + 10 * np.log10(waveform.peak.power)),
+        "average_dbfs": rounded(20 * np.log10(gain) + waveform.statistics.mean_db),
+        "i_peak_dbfs": in_db(gain**2 * waveform.rails.i),
+        "q_peak_dbfs": in_db(gain**2 * waveform.rails.q),
     }
 
 
@@ -297,33 +354,50 @@ def bench_rows(levels: Sequence[PathLevel], averaged_over: str) -> dict[str, Any
     }
 
 
-def file_row(item: ExportedFile, duty: float | None) -> dict[str, Any]:
-    """Return one file's entry."""
+def file_row(item: ExportedFile, duties: Sequence[float | None]) -> dict[str, Any]:
+    """Return one file's entry; ``channels`` is null where it has one."""
+    rows = [
+        channel_figures(codes, item.datatype, duty)
+        for codes, duty in zip(item.channels, duties, strict=True)
+    ]
+    datatype, centre_hz = item.datatype, item.centre_hz
     return {
         "name": item.names[0],
         "all_names": list(item.names),
         "format": item.format,
-        "datatype": item.datatype.name,
+        "datatype": datatype.name,
+        "bits": datatype.n_bits if datatype.is_padded else None,
+        "align": datatype.align,
+        "real": None if centre_hz is None else {"centre_hz": float(centre_hz)},
         "sha512": item.sha512,
         "n_saturated": item.n_saturated,
-        "rounding_noise_dbc": rounding_noise_dbc(item),
+        **rows[0],
+        "channels": rows if len(rows) > 1 else None,
+    }
+
+
+def channel_figures(item: ChannelCodes, datatype: Datatype, duty: float | None) -> dict[str, Any]:
+    """Return the figures of one channel of a file."""
+    return {
+        "rounding_noise_dbc": rounding_noise_dbc(item.statistics, datatype),
         **power_figures(item.statistics, item.peak),
         "on_time": on_figures(item, duty),
     }
 
 
-def rounding_noise_dbc(item: ExportedFile) -> float | None:
+def rounding_noise_dbc(statistics: PowerStatistics, datatype: Datatype) -> float | None:
     """Return the power of rounding to codes over the mean power, dB; None for float codes.
 
     Notes
     -----
     A twelfth of a squared step on each rail, white: W. R. Bennett, Bell Syst. Tech. J. 27, 1948
-    (from memory). It holds where the signal crosses many codes.
+    (from memory). It holds where the signal crosses many codes. The analytic signal of real
+    samples has the noise of its one rail in both.
     """
-    if not item.datatype.is_integer:
+    if not datatype.is_integer:
         return None
-    step = 1.0 / item.datatype.full_scale
-    return in_db(step**2 / 6 / item.statistics.mean)
+    step = 1.0 / datatype.full_scale
+    return in_db(step**2 / 6 / statistics.mean)
 
 
 def as_json(document: dict[str, Any]) -> str:
@@ -353,4 +427,6 @@ def as_csv(document: dict[str, Any]) -> str:
 def describe(prepared: Prepared) -> str:
     """Return one sentence about a stimulus, for formats with room for it."""
     recipe = prepared.loaded.recipe
-    return f"{recipe.title or prepared.loaded.name}; loops; {format_hz(recipe.sample_rate_hz)}"
+    channels = "; two coherent channels" if prepared.second else ""
+    name = recipe.title or prepared.loaded.name
+    return f"{name}; loops; {format_hz(recipe.sample_rate_hz)}{channels}"

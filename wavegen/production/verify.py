@@ -8,8 +8,10 @@ from typing import Any, Literal
 import numpy as np
 from numpy.typing import NDArray
 
+from wavegen.files.datatypes import Datatype
 from wavegen.laws.law import Law
 from wavegen.laws.term import NoLaw
+from wavegen.meters.power import PowerStatistics
 from wavegen.production.export import ExportedFile
 from wavegen.production.prepare import Prepared
 
@@ -47,7 +49,7 @@ def law_of(prepared: Prepared) -> Law | None:
     return law if law.holds == "every loop" else None
 
 
-def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:
+def compare_with_law(law: Law | None, file: ExportedFile, channel: int = 0) -> Verdict:
     """Return whether a file's codes follow a law that holds for every loop.
 
     Parameters
@@ -56,6 +58,8 @@ def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:
         None gives ``undecided``.
     file : ExportedFile
         What was written.
+    channel : int
+        Which of its channels.
 
     Returns
     -------
@@ -69,15 +73,15 @@ def compare_with_law(law: Law | None, file: ExportedFile) -> Verdict:
     """
     if law is None:
         return "undecided"
-    statistics = file.statistics
+    statistics = file.channels[channel].statistics
     top = max(law.peak_db, statistics.papr_db) + 1.0
     level = np.arange(DEEPEST_DB, top, 0.05)
-    below, above = law_levels(file, level)
+    below, above = law_levels(file.datatype, statistics, level)
     measured = statistics.ccdf(level)
     fewest = law.ccdf(above) - sampling_slack(law, above) - ROUNDOFF
     most = law.ccdf(below) + sampling_slack(law, below) + ROUNDOFF
     is_inside = bool(np.all((measured >= fewest) & (measured <= most)))
-    lowest_peak, _ = law_levels(file, np.array([statistics.papr_db]))
+    lowest_peak, _ = law_levels(file.datatype, statistics, np.array([statistics.papr_db]))
     return "agrees" if is_inside and lowest_peak[0] <= law.peak_db else "differs"
 
 
@@ -90,7 +94,7 @@ def sampling_slack(law: Law, level_db: NDArray[np.float64]) -> NDArray[np.float6
     return slack
 
 
-def worst_verdict(law: Law | None, files: Sequence[ExportedFile]) -> Verdict:
+def worst_verdict(law: Law | None, files: Sequence[ExportedFile], channel: int = 0) -> Verdict:
     """Return ``differs`` if one of the files differs, else how the first compares.
 
     Parameters
@@ -99,20 +103,24 @@ def worst_verdict(law: Law | None, files: Sequence[ExportedFile]) -> Verdict:
         None gives ``undecided``.
     files : sequence of ExportedFile
         At least one.
+    channel : int
+        Which of their channels the law is of.
     """
-    verdicts = [compare_with_law(law, file) for file in files]
+    verdicts = [compare_with_law(law, file, channel) for file in files]
     return "differs" if "differs" in verdicts else verdicts[0]
 
 
 def law_levels(
-    file: ExportedFile, level_db: NDArray[np.float64]
+    datatype: Datatype, statistics: PowerStatistics, level_db: NDArray[np.float64]
 ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
     """Return between which levels of the law a level of a file lies.
 
     Parameters
     ----------
-    file : ExportedFile
-        Its datatype and mean.
+    datatype : Datatype
+        Of the codes.
+    statistics : PowerStatistics
+        Their mean.
     level_db : float64 array
         Levels, dB over the mean of the codes.
 
@@ -126,10 +134,13 @@ def law_levels(
     Rounding moves an envelope by half a code on each rail, 0.71 codes, at most. It moves the RMS
     value by no more (triangle inequality), and so the mean that levels are over. To this come
     0.01 dB for the histogram's bins and the arithmetic.
+
+    Of real samples the envelope moves by half a code in phase and, in quadrature, by what the
+    quadrature filter makes of uniform errors of the samples around: a sum of many, with a
+    standard deviation of ``1 / sqrt(12)`` of a code, taken at six times that.
     """
-    statistics = file.statistics
-    code = 1 / file.datatype.full_scale if file.datatype.is_integer else 0.0
-    reach = code * np.sqrt(0.5)
+    code = 1 / datatype.full_scale if datatype.is_integer else 0.0
+    reach = code * (np.sqrt(0.25 + 36 / 12) if datatype.is_real else np.sqrt(0.5))
     envelope = 10 ** ((statistics.mean_db + level_db) / 20)
     rms = 10 ** (statistics.mean_db / 20)
     below = _db_amplitude((envelope - reach) / (rms + reach)) - TOLERANCE_DB

@@ -61,9 +61,12 @@ class Waveform:
 
     def papr_over(self, mean_of: Literal["period", "burst"]) -> float:
         """Return the peak between samples over the mean of the loop or of the on-time, dB."""
+        return 10 * math.log10(self.peak.power) - self.mean_over_db(mean_of)
+
+    def mean_over_db(self, mean_of: Literal["period", "burst"]) -> float:
+        """Return the mean of the loop or of the on-time, dB over unit power."""
         on_time = self.on_statistics if mean_of == "burst" else None
-        mean_db = (on_time or self.statistics).mean_db
-        return 10 * math.log10(self.peak.power) - mean_db
+        return (on_time or self.statistics).mean_db
 
     @property
     def papr_db(self) -> float:

@@ -22,8 +22,9 @@ import annotated_types
 from wavegen.core.registry import Member
 from wavegen.core.units import DIMENSIONS, Dimension, dimension_of, quantity_pattern
 from wavegen.files import FORMATS
+from wavegen.files.datatypes import ALIGNMENTS, WORD_BITS
 from wavegen.recipe.checker import fields_of
-from wavegen.recipe.format_request import FormatRequest
+from wavegen.recipe.format_request import FormatRequest, RealOutput
 from wavegen.recipe.names import LONGEST, NAME_FIELDS
 from wavegen.recipe.settings import Duration, Extent, Recipe
 from wavegen.recipe.tables import DEFAULT_KINDS, TABLES, Tables, members
@@ -330,6 +331,19 @@ def _format_request() -> Schema:
     }
     properties["format"] |= {"enum": list(FORMATS)}
     properties["name"] |= {"anyOf": [_text("name", ()), {"type": "null"}]}
+    properties["bits"] |= {"enum": [*WORD_BITS, None]}
+    properties["align"] |= {"enum": [*ALIGNMENTS, None]}
+    centre = {
+        "description": _descriptions(RealOutput)["centre_hz"],
+        **quantity_schema(DIMENSIONS["_hz"], (annotated_types.Gt(0),)),
+    }
+    frequency = {
+        "type": "object",
+        "properties": {"centre": centre},
+        "required": ["centre"],
+        "additionalProperties": False,
+    }
+    properties["real"] |= {"anyOf": [frequency, {"type": "null"}]}
     mapping = {
         "type": "object",
         "properties": properties,

@@ -250,11 +250,12 @@ class Output:
     Parameters
     ----------
     iq : tuple of FormatRequest
-        One file each.
+        One file each. Of files of one format and another datatype the later ones have the
+        datatype in their name.
     peak_dbfs : float, optional
         Peak between samples, dBFS, at most 0. It is -1 if neither level is given.
     average_dbfs : float, optional
-        Average power, dBFS, instead of the peak.
+        Average power, dBFS, instead of the peak; of two channels that of the first.
     peak_of : {"envelope", "rail"}
         What the peak is of: the envelope, or the larger of the two rails, which are what a
         converter clips.
@@ -278,17 +279,43 @@ class Output:
             )
         if self.peak_dbfs is None and self.average_dbfs is None:
             object.__setattr__(self, "peak_dbfs", -1.0)
-        seen: set[tuple[str, str | None]] = set()
+        seen: set[tuple[str, str, str]] = set()
         for index, request in enumerate(self.iq):
-            file = (request.format, request.name and request.name.casefold())
+            own = request.name
+            file = (
+                request.format,
+                "" if own is None else own.casefold(),
+                request.chosen().label if own is None else "",
+            )
             if file in seen:
                 raise QuantityError(
                     problem=f"{request.format} is asked for twice under the same file name",
-                    allowed="each format once a file name",
+                    allowed="each format once a file name, or once a datatype without a name",
                     remedy=f"Give one of them a name: {{format: {request.format}, name: ...}}.",
                     key=f"iq[{index}]",
                 )
             seen.add(file)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SecondChannel:
+    """A second waveform on the same loop, coherent with the first, in the same files.
+
+    Parameters
+    ----------
+    signal : settings
+        A member of the sources or combiners. It draws its own data; ``data: {share: NAME}``
+        takes those of a named part of either channel, and ``share: signal`` those of the first
+        channel where that is a plain source.
+    stages : tuple of settings
+        What this signal passes through, in order.
+    level_db : float
+        Nominal power over that of the first channel, dB; both share one gain to full scale.
+    """
+
+    signal: Annotated[Any, Member(("signal",))]
+    stages: tuple[Annotated[Any, Member(("stage",))], ...] = ()
+    level_db: Annotated[float, Ge(-200), Le(200)] = 0.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -311,8 +338,11 @@ class Recipe:
         A member of the sources or combiners.
     stages : tuple of settings
         What the signal passes through, in order.
+    second_channel : SecondChannel, optional
+        A second waveform, coherent with the first: every file then holds two channels.
     bench : Bench, optional
-        Powers and ratings on the bench.
+        Powers and ratings on the bench; with two channels each has such a path, and the average
+        power is that of the first.
     output : Output
         Files and their level.
     """
@@ -324,5 +354,6 @@ class Recipe:
     duration: Duration
     signal: Annotated[Any, Member(("signal",))]
     stages: tuple[Annotated[Any, Member(("stage",))], ...] = ()
+    second_channel: SecondChannel | None = None
     bench: Bench | None = None
     output: Output = Output()

@@ -17,6 +17,8 @@ _PERCENT = {
     1e-6: "0.0001 %",
 }
 
+NO_PEAK = "none: a power series has no phase"
+
 
 def percent(probability: float) -> str:
     """Write a probability as the trade does.
@@ -63,18 +65,20 @@ def law_words(law: dict[str, Any]) -> str:
 
 def summary_table(document: dict[str, Any], *, title: str) -> Table:
     """Return the main figures of a measurement or sidecar."""
+    peak, papr = document["peak_between_samples_dbfs"], document["papr_between_samples_db"]
     rows = [
         ("sample rate", format_hz(document["sample_rate_hz"])),
         ("length", length_words(document["duration_s"], document["n_samples"])),
         ("mean", fixed(document["mean_dbfs"], "dBFS")),
         ("peak at samples", fixed(document["peak_dbfs"], "dBFS")),
-        ("peak between samples", fixed(document["peak_between_samples_dbfs"], "dBFS")),
+        ("peak between samples", NO_PEAK if peak is None else fixed(peak, "dBFS")),
         ("PAPR at samples", fixed(document["papr_db"], "dB")),
-        ("PAPR between samples", fixed(document["papr_between_samples_db"], "dB")),
+        ("PAPR between samples", NO_PEAK if papr is None else fixed(papr, "dB")),
     ]
     if "mean_dbm" in document:
+        of = ", of the largest sample" if peak is None else ""
         rows.append(("mean", fixed(document["mean_dbm"], "dBm")))
-        rows.append(("peak envelope power", fixed(document["peak_envelope_dbm"], "dBm")))
+        rows.append(("peak envelope power", fixed(document["peak_envelope_dbm"], "dBm") + of))
     on_time = document.get("on_time")
     if on_time:
         rows.append(("mean of the on-time", fixed(on_time["mean_dbfs"], "dBFS")))
@@ -130,6 +134,26 @@ def _levels(figures: dict[str, Any], document: dict[str, Any]) -> list[str]:
     return cells
 
 
+def law_table(law: dict[str, Any], *, title: str) -> Table:
+    """Return a law's levels beside the complex Gaussian, and its highest peak."""
+    rows = [
+        (
+            percent(row["probability"]),
+            fixed(row["level_db"], "dB"),
+            fixed(_gaussian_db(row["probability"]), "dB"),
+        )
+        for row in law["levels"]
+    ]
+    peak = "no bound" if law["peak_db"] is None else fixed(law["peak_db"], "dB")
+    rows.append(("highest peak", peak, "no bound"))
+    return Table(
+        title=f"{title}: {law['name']} ({law['holds']})",
+        headings=("probability", "level over mean", "complex Gaussian"),
+        rows=tuple(rows),
+        right=frozenset({0, 1, 2}),
+    )
+
+
 def _gaussian_db(probability: float) -> float:
     return 10 * math.log10(-math.log(probability))
 
@@ -141,7 +165,7 @@ def bench_table(document: dict[str, Any]) -> Table | None:
         return None
     rows = tuple(
         (
-            place["name"],
+            place["name"] + (f", channel {place['channel']}" if "channel" in place else ""),
             fixed(place["average_dbm"], "dBm"),
             fixed(place["peak_envelope_dbm"], "dBm"),
             _rating(place),
@@ -168,8 +192,43 @@ def _rating(place: dict[str, Any]) -> str:
 def file_table(document: dict[str, Any]) -> Table:
     """Return the files of a stimulus."""
     rows = tuple(
-        (name, f"{item['format']} {item['datatype']}" if name == item["name"] else "")
+        (name, _coding(item) if name == item["name"] else "")
         for item in document["files"]
         for name in item["all_names"]
     )
     return Table(title="Files", headings=("name", "format"), rows=rows)
+
+
+def _coding(item: dict[str, Any]) -> str:
+    """Say how a file holds its samples."""
+    words = [f"{item['format']} {item['datatype']}"]
+    if item.get("bits"):
+        words.append(f"{item['bits']} bits at the {item['align']}")
+    if item.get("real"):
+        words.append(f"around {format_hz(item['real']['centre_hz'])}")
+    if item.get("channels"):
+        words.append(f"{len(item['channels'])} channels")
+    return ", ".join(words)
+
+
+def channel_table(document: dict[str, Any]) -> Table | None:
+    """Return the main figures of both channels of the first file, None where it has one."""
+    channels = document["files"][0].get("channels")
+    if not channels:
+        return None
+    rows = tuple(
+        (title, *(fixed(figures[key], unit) for figures in channels))
+        for title, key, unit in (
+            ("mean", "mean_dbfs", "dBFS"),
+            ("peak at samples", "peak_dbfs", "dBFS"),
+            ("peak between samples", "peak_between_samples_dbfs", "dBFS"),
+            ("PAPR at samples", "papr_db", "dB"),
+            ("PAPR between samples", "papr_between_samples_db", "dB"),
+        )
+    )
+    return Table(
+        title="Both channels",
+        headings=("figure", *(f"channel {number}" for number in range(len(channels)))),
+        rows=rows,
+        right=frozenset(range(1, len(channels) + 1)),
+    )
