@@ -271,3 +271,98 @@ def test_a_disagreeing_rate_is_told(call, recipe, tmp_path):
     path = tmp_path / "output" / "pier" / "pier.sigmf-data"
     said = call("measure", path, "--sample-rate", "5 MHz", "--json")
     assert "5 MHz" in json.dumps(said.json()["warnings"])
+
+
+def test_words_are_as_told(call, tmp_path):
+    path = tmp_path / "words.ci16_le"
+    np.full(400, 1024, "<i2").tofile(path)
+    for options, power in (
+        (("--bits", "12", "--align", "right"), 0.5),  # 1024 of 2048 on both rails
+        (("--bits", "12", "--align", "left"), 2 / 1024),
+        ((), 2 / 1024),
+    ):
+        document = part(call, path, *options)
+        assert document["mean_dbfs"] == pytest.approx(10 * math.log10(power), abs=1e-4)
+    assert document["datatype"] == "ci16_le"
+    document = part(call, path, "--bits", "12", "--align", "right")
+    assert document["datatype"] == "ci16_le_12bit_right"
+    assert call("measure", path, *RATE, "--bits", "13", "--align", "left").status == 2
+    assert call("measure", path, *RATE, "--bits", "12").status == 2
+
+
+REAL = "output={iq: [{format: raw, real: {centre: 1 MHz}}]}"
+WORDS = "output={iq: [{format: raw, bits: 14, align: right}]}"
+BOTH = "second_channel={level: -6 dB, signal: {kind: carrier}}"
+PIER = ("--sample-rate", "4 MHz", "--json")
+
+
+def test_real_samples_of_a_stimulus_are_a_loop_without_ends(call, recipe, tmp_path):
+    made = call("make", recipe(), "--set", REAL, "--json").json()
+    path = tmp_path / "output" / "pier" / made["files"][0]["name"]
+    document = call("measure", path, *PIER).json()
+    assert (document["is"], document["is_real"], document["warnings"]) == ("this loop", True, [])
+    for key in ("mean_dbfs", "peak_between_samples_dbfs", "levels", "ccdf"):
+        assert document[key] == made[key]
+    cut = call("measure", path, *PIER, "--from", "0.5 ms").json()
+    assert "beyond its ends" in cut["warnings"][0]["text"]
+
+
+def test_the_sidecar_tells_the_words(call, recipe, tmp_path):
+    made = call("make", recipe(), "--set", WORDS, "--json").json()
+    path = tmp_path / "output" / "pier" / made["files"][0]["name"]
+    document = call("measure", path, *PIER).json()
+    assert document["mean_dbfs"] == made["mean_dbfs"]
+    assert document["datatype"] == "ci16_le_14bit_right"
+    told = call("measure", path, *PIER, "--bits", "16", "--align", "right").json()
+    assert told["mean_dbfs"] == pytest.approx(made["mean_dbfs"] - 20 * math.log10(4), abs=1e-5)
+
+
+def test_channels_are_measured_one_at_a_time(call, recipe, tmp_path):
+    path = recipe()
+    made = call("make", path, "--set", BOTH, "--set", "output.iq=[raw, sigmf]", "--json").json()
+    assert "channel 1" in call("make", path, "--set", BOTH, "--out", "other").out
+    for item in made["files"]:
+        file = tmp_path / "output" / "pier" / item["name"]
+        said = call("measure", file, *PIER)
+        assert said.status == 4
+        assert "--channel 0" in said.err
+        for number in (0, 1):
+            document = call("measure", file, *PIER, "--channel", number).json()
+            assert (document["is"], document["channel"]) == ("this loop", number)
+            assert document["mean_dbfs"] == item["channels"][number]["mean_dbfs"]
+        assert call("measure", file, *PIER, "--channel", "2").status == 4
+    assert "channel 1, this loop" in call("measure", file, "--channel", "1").out
+
+
+def test_channels_of_a_recipe(call, recipe):
+    path = recipe()
+    said = call("measure", path, "--set", BOTH)
+    assert said.status == 2
+    assert "--channel 0" in said.err
+    document = call("measure", path, "--set", BOTH, "--channel", "1", "--json").json()
+    assert document["mean_dbfs"] == pytest.approx(10 * math.log10(10**-0.6), abs=1e-4)
+    assert document["channel"] == 1
+    assert call("measure", path, "--set", BOTH, "--channel", "2").status == 2
+    assert call("measure", path, "--channel", "1").status == 2
+    assert "channel" not in call("measure", path, "--channel", "0", "--json").json()
+
+
+@pytest.mark.parametrize(
+    ("heading", "factor_db"), [("power_dBm", 0.0), ("power (mW)", 0.0), ("power (W)", 30.0)]
+)
+def test_a_power_series_has_no_peak_between_samples(call, tmp_path, heading, factor_db):
+    power = np.array([1.0, 2.0, 4.0, 1.0] * 100)
+    column = 10 * np.log10(power) if "dBm" in heading else power
+    rows = "".join(f"{n * 1e-6:.6f},{x:.9f}\n" for n, x in enumerate(column))
+    path = tmp_path / "sensor.csv"
+    path.write_text(f"time (s),{heading}\n{rows}")
+    said = call("measure", path)
+    assert said.status == 0
+    assert "power series" in said.out
+    assert "none" in said.out
+    document = call("measure", path, "--json").json()
+    assert document["is_power"]
+    assert document["peak_between_samples_dbfs"] is document["papr_between_samples_db"] is None
+    assert document["mean_dbm"] == pytest.approx(10 * math.log10(2) + factor_db, abs=1e-4)
+    assert document["peak_envelope_dbm"] == pytest.approx(10 * math.log10(4) + factor_db, abs=1e-4)
+    assert f"{document['peak_envelope_dbm']:.2f} dBm, of the largest sample" in said.out

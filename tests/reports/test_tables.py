@@ -2,6 +2,7 @@ import pytest
 
 from wavegen.reports.tables import (
     bench_table,
+    channel_table,
     file_table,
     fixed,
     law_words,
@@ -125,3 +126,38 @@ def test_words():
     assert [percent(p) for p in (0.1, 1e-6, 0.05)] == ["10 %", "0.0001 %", "5 %"]
     assert fixed(-0.004, "dB") == "0.00 dB"
     assert length_words(1.0, 2) == "1 s, 2 samples"
+
+
+def test_a_power_series_has_no_peak_between_samples():
+    found = {"peak_between_samples_dbfs": None, "papr_between_samples_db": None}
+    rows = cells(found | {"mean_dbm": -10.0, "peak_envelope_dbm": -1.5})
+    assert rows["peak between samples"] == rows["PAPR between samples"]
+    assert "power series" in rows["peak between samples"]
+    assert rows["peak envelope power"] == "-1.50 dBm, of the largest sample"
+
+
+def test_files_say_how_they_hold_their_samples():
+    item = {"name": "a.x", "all_names": ["a.x"], "format": "raw", "datatype": "ci16_le"}
+    told = item | {"bits": 14, "align": "left", "channels": [FIGURES, FIGURES]}
+    real = item | {"datatype": "ri16_le", "real": {"centre_hz": 3e7}}
+    rows = file_table({"files": [item, told, real]}).rows
+    assert [row[1] for row in rows] == [
+        "raw ci16_le",
+        "raw ci16_le, 14 bits at the left, 2 channels",
+        "raw ri16_le, around 30 MHz",
+    ]
+
+
+def test_both_channels_side_by_side():
+    assert channel_table({"files": [{"channels": None}]}) is None
+    table = channel_table({"files": [{"channels": [FIGURES, FIGURES | {"mean_dbfs": -16.0}]}]})
+    assert table is not None
+    assert table.headings == ("figure", "channel 0", "channel 1")
+    assert table.rows[0] == ("mean", "-10.00 dBFS", "-16.00 dBFS")
+
+
+def test_the_places_of_each_channel_are_told_apart():
+    place = {"name": "pad", "average_dbm": 0.0, "peak_envelope_dbm": 9.0}
+    table = bench_table({"bench": {"path": [place | {"channel": 0}, place | {"channel": 1}]}})
+    assert table is not None
+    assert [row[0] for row in table.rows] == ["pad, channel 0", "pad, channel 1"]
