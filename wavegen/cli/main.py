@@ -30,6 +30,7 @@ VERBS = Registry(
         "measure": "wavegen.cli.measure:Measure",
         "check": "wavegen.cli.check:Check",
         "show": "wavegen.cli.show:Show",
+        "convert": "wavegen.cli.convert:Convert",
         "new": "wavegen.cli.new:New",
         "list": "wavegen.cli.listing:Listing",
         "schema": "wavegen.cli.schema:Schema",

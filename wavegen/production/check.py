@@ -10,10 +10,10 @@ from wavegen.core.progress import Progress, silent
 from wavegen.core.units import format_hz
 from wavegen.files.analytic import looped
 from wavegen.files.digest import sha512_of
-from wavegen.files.format import Recording
+from wavegen.files.format import ReadHints, Recording
 from wavegen.production.measure import Subject, measure
 from wavegen.production.sidecar import FORMAT
-from wavegen.production.stimulus import Stimulus
+from wavegen.production.stimulus import Stimulus, loop_warnings
 
 Verdict = Literal["match", "differ", "undecided"]
 
@@ -37,6 +37,7 @@ _SAME: dict[str, Any] = {
 }
 """Equal bytes: no difference, and nothing to measure."""
 
+_PLAIN = ReadHints()
 _FIGURES = ("mean_dbfs", "peak_dbfs", "peak_between_samples_dbfs", "papr_db")
 
 
@@ -133,6 +134,7 @@ def check_file(
         "peak_between_samples_difference_db": None,
         "papr_difference_db": None,
         "levels": [],
+        "channels": None,
         "warnings": [],
     }
     path = stimulus.path.parent / item["name"]
@@ -140,16 +142,42 @@ def check_file(
         is_equal = sha512_of(path, progress) == item["sha512"]
         row["hash"] = "equal" if is_equal else "differs"
         row["verdict"] = "undecided" if is_equal else "differ"
-        recording = stimulus.open(item)
+        recordings = [stimulus.open(item, hints) for hints in _hints(item)]
     except FileError as error:
         return row | {"reasons": [str(error)]}
-    row |= {"is_readable": True, "warnings": list(recording.warnings)}
+    recording = recordings[0]
+    row |= {"is_readable": True, "warnings": loop_warnings(recording)}
     facts = _other_facts(recording, stimulus.document, item)
     if facts:
         return row | {"verdict": "differ", "compared_by": "facts", "reasons": facts}
     if is_equal and recording.datatype.name == item["datatype"]:
         return row | _SAME
-    return row | _measured(recording, item, tolerance_db, workers, progress)
+    stated = item["channels"] or [item]
+    found = [
+        _measured(one, figures, tolerance_db, workers, progress)
+        for one, figures in zip(recordings, stated, strict=True)
+    ]
+    return row | _together(found)
+
+
+def _hints(item: dict[str, Any]) -> list[ReadHints]:
+    """Return how each channel of a file is read."""
+    channels = item["channels"]
+    return [ReadHints(channel=number) for number in range(len(channels))] if channels else [_PLAIN]
+
+
+def _together(found: list[dict[str, Any]]) -> dict[str, Any]:
+    """Return the comparison of a file from those of its channels; the worst stands for both."""
+    if len(found) == 1:
+        return found[0]
+    order = {verdict: rank for rank, verdict in enumerate(("differ", "undecided", "match"))}
+    worst = min(found, key=lambda row: order[row.get("verdict", "undecided")])
+    reasons = [
+        f"channel {number}: {reason}"
+        for number, row in enumerate(found)
+        for reason in row["reasons"]
+    ]
+    return worst | {"reasons": reasons, "channels": found}
 
 
 def _other_facts(recording: Recording, document: dict[str, Any], item: dict[str, Any]) -> list[str]:

@@ -148,7 +148,8 @@ def _encode_strip(
         source = channel.signal
         is_leaf = not source.inputs
         samples = source.compute(*strip) if is_leaf else samples_of(source, *strip)
-        samples *= gain
+        with np.errstate(invalid="ignore"):  # what is not finite is told by name, below
+            samples *= gain
         codes, n_cut = encode(samples, datatype)
         together.append(codes)
         n_saturated += n_cut
@@ -159,7 +160,7 @@ def _encode_strip(
             reading = meter.begin(source)
             reading.feed(strip[0], held)
             readings.append(reading)
-    codes = together[0] if len(together) == 1 else join_channels(*together)
+    codes = together[0] if len(together) == 1 else join_channels(*together[::-1])
     return codes, n_saturated, readings
 
 

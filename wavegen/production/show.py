@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 from collections import Counter
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
+from wavegen.core.errors import FileError
 from wavegen.core.progress import Progress, silent
 from wavegen.files import FORMATS
 from wavegen.files.csv_table import open_table
@@ -16,7 +18,14 @@ from wavegen.files.format import ReadHints, Recording
 from wavegen.files.read import open_recording
 from wavegen.production.prepare import Prepared
 from wavegen.production.sidecar import FORMAT, note_rows
-from wavegen.production.stimulus import SUFFIX, Stimulus, listing, mismatch, open_listed
+from wavegen.production.stimulus import (
+    SUFFIX,
+    Stimulus,
+    listing,
+    loop_warnings,
+    mismatch,
+    open_listed,
+)
 from wavegen.recipe.dump import dump
 from wavegen.recipe.tables import TABLES, kind_of_class
 
@@ -59,9 +68,19 @@ def show_recording(path: Path, hints: ReadHints, *, progress: Progress = silent)
         No such file, or one that cannot be read.
     """
     stimulus = listing(path)
-    if stimulus is None:
-        return _described(open_recording(path, hints), None, progress)
-    return _described(open_listed(path, stimulus.document, hints), stimulus, progress)
+    if stimulus is not None:
+        if stimulus.items[0]["channels"] and hints.channel is None:
+            hints = replace(hints, channel=0)
+        return _described(open_listed(path, stimulus.document, hints), stimulus, progress)
+    try:
+        recording = open_recording(path, hints)
+    except FileError:
+        if hints.channel is not None:
+            raise
+        recording = open_recording(path, replace(hints, channel=0))
+        if recording.format == "raw":  # where naming a channel says that there are two
+            raise
+    return _described(recording, None, progress)
 
 
 def _described(
@@ -69,7 +88,7 @@ def _described(
 ) -> dict[str, Any]:
     item = stimulus.items[0] if stimulus else None
     verdict = _hash_verdict(recording, item, progress)
-    warnings = list(recording.warnings)
+    warnings = loop_warnings(recording) if stimulus else list(recording.warnings)
     law = None
     if stimulus is not None:
         other = mismatch(recording, stimulus.document)
@@ -80,6 +99,8 @@ def _described(
         warnings.append("its bytes are not those that were described: levels are left out")
     source = item or recording.statistics
     is_known = source is not None and verdict != "differs"
+    if item and item["channels"]:
+        source = item["channels"][recording.channel]
     level = {key: source[key] for key in _FIGURES if key in source} if is_known and source else None
     datatype = recording.datatype
     return _head("stimulus" if stimulus else "recording", recording.path.name) | {

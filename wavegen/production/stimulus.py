@@ -9,9 +9,11 @@ from pathlib import Path
 from typing import Any
 
 from wavegen.core.errors import FileError
+from wavegen.files.analytic import edge_text
 from wavegen.files.faults import told
 from wavegen.files.format import ReadHints, Recording
 from wavegen.files.read import open_recording
+from wavegen.production.measure import completed_hints
 from wavegen.production.sidecar import FORMAT
 
 SUFFIX = ".ccdf.json"
@@ -61,12 +63,15 @@ def open_listed(path: Path, document: dict[str, Any], hints: ReadHints) -> Recor
         Missing or damaged.
     """
     try:
-        return open_recording(path, hints)
+        recording = open_recording(path, hints)
     except FileError:
         if hints.sample_rate_hz is not None:
             raise
-    rate_hz = Fraction(document["sample_rate_exact_hz"])
-    return open_recording(path, replace(hints, sample_rate_hz=rate_hz))
+        hints = replace(hints, sample_rate_hz=Fraction(document["sample_rate_exact_hz"]))
+        recording = open_recording(path, hints)
+    entry = next(item for item in document["files"] if item["name"] == recording.path.name)
+    completed = completed_hints(entry, recording, hints)
+    return recording if completed is hints else open_recording(path, completed)
 
 
 def find_stimulus(path: Path) -> Stimulus:
@@ -203,6 +208,14 @@ def _mentions(path: Path, name: str, *, is_whole: bool = True) -> bool:
         return (quoted if is_whole else quoted[:-1]).encode("utf-8", "replace") in path.read_bytes()
     except OSError:  # one that may not be read says nothing
         return False
+
+
+def loop_warnings(recording: Recording) -> list[str]:
+    """Return the warnings about a recording that hold where it repeats: not those on its ends."""
+    if not recording.is_real:
+        return list(recording.warnings)
+    ends = edge_text(recording.path, recording.n_samples)
+    return [text for text in recording.warnings if text != ends]
 
 
 def mismatch(recording: Recording, sidecar: dict[str, Any]) -> str | None:

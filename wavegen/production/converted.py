@@ -1,0 +1,256 @@
+"""The sidecar of a stimulus that was converted: what stays, what changes, what is checked anew."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from fractions import Fraction
+from pathlib import Path
+from typing import Any
+
+from wavegen.core.errors import FileError, RecipeError, SignalError
+from wavegen.core.site import Note
+from wavegen.dsp.bursts import Bursts
+from wavegen.files.format import Recording
+from wavegen.laws.law import Law
+from wavegen.meters.seam import SeamFigure
+from wavegen.production.bench import PathLevel, refuse_overload
+from wavegen.production.export import ExportedFile
+from wavegen.production.prepare import prepare
+from wavegen.production.sidecar import (
+    file_row,
+    gaussian_reference,
+    grid_db,
+    law_document,
+    note_rows,
+    on_figures,
+    power_figures,
+    rounded,
+    seam_row,
+    versions,
+)
+from wavegen.production.verify import law_of, worst_verdict
+from wavegen.recipe.load import load_text
+from wavegen.stages.channel.gate import on_time
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Origin:
+    """What the recipe in a sidecar still tells of the loop that is converted.
+
+    Parameters
+    ----------
+    law : Law or None
+        Exact curve where there is one, and the rate is unchanged.
+    bursts : Bursts or None
+        When the loop is on, at its new rate; None if it is never off.
+    notes : tuple of str
+        What could not be carried over.
+    """
+
+    law: Law | None = None
+    bursts: Bursts | None = None
+    notes: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Change:
+    """What a conversion does to the samples.
+
+    Parameters
+    ----------
+    source : Recording
+        What was read.
+    sha512 : str
+        Of its data file.
+    rate_factor : Fraction
+        New rate over old.
+    gain_db : float
+        Power ratio, dB.
+    """
+
+    source: Recording
+    sha512: str
+    rate_factor: Fraction
+    gain_db: float
+
+    def document(self, earlier: dict[str, Any] | None) -> dict[str, Any]:
+        """Return it as JSON values, with what an earlier conversion did."""
+        source = self.source
+        return {
+            "from": source.path.name,
+            "format": source.format,
+            "datatype": source.datatype.name,
+            "sha512": self.sha512,
+            "sample_rate_hz": float(source.sample_rate_hz),
+            "n_samples": source.n_samples,
+            "rate_factor": str(self.rate_factor),
+            "gain_db": rounded(self.gain_db),
+            "before": earlier,
+        }
+
+
+def origin_of(document: dict[str, Any], *, folder: Path, rate_factor: Fraction) -> Origin:
+    """Read the recipe in a sidecar again, for what is compared anew.
+
+    Parameters
+    ----------
+    document : dict
+        The sidecar of the source.
+    folder : Path
+        Where its data files may be found.
+    rate_factor : Fraction
+        New rate over old.
+
+    Returns
+    -------
+    Origin
+    """
+    recipe = document["recipe"]
+    has_law, is_gated = document["law"] is not None, document["on_time"] is not None
+    notes = []
+    if has_law and rate_factor != 1:
+        notes.append("the law of the recipe is not compared after a change of rate")
+    if not is_gated and (not has_law or rate_factor != 1):
+        return Origin(notes=tuple(notes))
+    try:
+        loaded = load_text(
+            recipe["text"], name=recipe["name"], overrides=recipe["overrides"], folder=folder
+        )
+        prepared = prepare(loaded)
+        law = law_of(prepared)
+        bursts = on_time(prepared.built.signal)
+    except (RecipeError, FileError, SignalError) as error:
+        lost = [
+            word
+            for word, is_lost in (("law", has_law and rate_factor == 1), ("on-time", is_gated))
+            if is_lost
+        ]
+        notes.append(
+            f"the {' and the '.join(lost)} could not be carried over: the recipe in the sidecar "
+            f"cannot be built here ({error})"
+        )
+        return Origin(notes=tuple(notes))
+    for earlier in _earlier_factors(document):
+        rate_factor *= earlier
+    if rate_factor != 1:
+        return Origin(bursts=bursts.resampled(rate_factor) if bursts else None, notes=tuple(notes))
+    return Origin(law=law if has_law else None, bursts=bursts)
+
+
+def _earlier_factors(document: dict[str, Any]) -> list[Fraction]:
+    found = []
+    converted = document.get("converted")
+    while converted:
+        found.append(Fraction(converted["rate_factor"]))
+        converted = converted["before"]
+    return found
+
+
+def converted_document(
+    before: dict[str, Any],
+    file: ExportedFile,
+    change: Change,
+    *,
+    origin: Origin,
+    seam: SeamFigure,
+    notes: list[Note],
+) -> dict[str, Any]:
+    """Return the sidecar of a converted stimulus.
+
+    Parameters
+    ----------
+    before : dict
+        The sidecar of the source.
+    file : ExportedFile
+        What was written; everything measured is measured on its codes.
+    change : Change
+        What was done.
+    origin : Origin
+        From :func:`origin_of`.
+    seam : SeamFigure
+        Of the written codes.
+    notes : list of Note
+        What is doubtful about the conversion.
+
+    Returns
+    -------
+    dict
+        Valid by :func:`wavegen.production.sidecar.schema`.
+
+    Raises
+    ------
+    TargetMissed
+        A rating of the bench would be exceeded.
+    """
+    codes = file.channels[0]
+    duty = float(origin.bursts.duty) if origin.bursts else None
+    rate_hz = change.source.sample_rate_hz * change.rate_factor
+    cycle = before["loop"]["cycle_samples"] * change.rate_factor
+    return before | {
+        "versions": versions(),
+        "sample_rate_hz": float(rate_hz),
+        "sample_rate_exact_hz": str(rate_hz),
+        "n_samples": codes.statistics.n_samples,
+        "duration_s": float(codes.statistics.n_samples / rate_hz),
+        "loop": {"cycle_samples": cycle.numerator, "seam": seam_row(seam)},
+        "scaling": _scaling(before["scaling"], codes, change),
+        "second_channel": None,
+        "warnings": before["warnings"] + note_rows([n for n in notes if n.kind == "warning"]),
+        "notes": before["notes"] + note_rows([n for n in notes if n.kind == "info"]),
+        **power_figures(codes.statistics, codes.peak),
+        "on_time": on_figures(codes, duty),
+        "reference": gaussian_reference(grid_db(codes.statistics)),
+        "law": law_document(origin.law, worst_verdict(origin.law, [file])),
+        "bench": _bench(before["bench"], file),
+        "files": [file_row(file, [duty])],
+        "converted": change.document(before.get("converted")),
+    }
+
+
+def _scaling(before: dict[str, Any], codes: Any, change: Change) -> dict[str, Any]:
+    """Return where the peaks and the average stand now; rails after a change of rate unknown."""
+    peak_db = 10 * math.log10(codes.peak.power)
+    is_same_rate = change.rate_factor == 1
+    rails = {
+        key: rounded(before[key] + change.gain_db)
+        if is_same_rate and before[key] is not None
+        else None
+        for key in ("i_peak_dbfs", "q_peak_dbfs")
+    }
+    return {
+        "gain_db": rounded(before["gain_db"] + change.gain_db),
+        "peak_dbfs": rounded(peak_db),
+        "average_dbfs": rounded(codes.statistics.mean_db),
+        **rails,
+    }
+
+
+def _bench(before: dict[str, Any] | None, file: ExportedFile) -> dict[str, Any] | None:
+    """Return the levels along the path with the peak of what was written."""
+    if before is None:
+        return None
+    codes = file.channels[0]
+    is_burst = before["averaged_over"] == "burst" and codes.on_statistics is not None
+    statistics = codes.on_statistics if is_burst else codes.statistics
+    assert statistics is not None  # noqa: S101 - asked above
+    papr_db = 10 * math.log10(codes.peak.power) - statistics.mean_db
+    rows = [
+        row | {"peak_envelope_dbm": rounded(row["average_dbm"] + papr_db, 3)}
+        for row in before["path"]
+        if row.get("channel", 0) == 0
+    ]
+    refuse_overload(
+        [
+            PathLevel(
+                name=row["name"],
+                role=row["role"],
+                average_dbm=row["average_dbm"],
+                peak_envelope_dbm=row["peak_envelope_dbm"],
+                average_limit_dbm=row.get("average_limit_dbm"),
+                peak_limit_dbm=row.get("peak_limit_dbm"),
+            )
+            for row in rows
+        ]
+    )
+    return before | {"path": rows}

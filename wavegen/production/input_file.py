@@ -1,0 +1,176 @@
+"""A data file that is to be written anew: whether it is a loop, and what marks it has."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from fractions import Fraction
+from pathlib import Path
+
+from wavegen.core.errors import FileError
+from wavegen.core.progress import Progress, silent
+from wavegen.core.site import Note
+from wavegen.files import markers
+from wavegen.files.digest import sha512_of
+from wavegen.files.format import Annotation, ReadHints, Recording
+from wavegen.files.read import open_recording
+from wavegen.production.stimulus import Stimulus, listing, loop_warnings, mismatch
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class InputFile:
+    """What is read.
+
+    Parameters
+    ----------
+    recording : Recording
+        The file.
+    stimulus : Stimulus or None
+        Its sidecar, if the file is the loop that it describes; None for a recording.
+    sha512 : str
+        Of the data file.
+    notes : list of Note
+        What is doubtful; filled on.
+    """
+
+    recording: Recording
+    stimulus: Stimulus | None
+    sha512: str
+    notes: list[Note]
+
+    @property
+    def loops(self) -> bool:
+        """Whether the last sample is followed by the first."""
+        return self.stimulus is not None
+
+    @property
+    def stem(self) -> str:
+        """Name of the data file without its ending."""
+        return self.recording.path.stem
+
+    def warn(self, *texts: str) -> None:
+        """Take note of doubts."""
+        where = self.recording.path.name
+        self.notes.extend(Note(kind="warning", where=where, text=text) for text in texts)
+
+    def marks(self) -> tuple[Annotation, ...]:
+        """Return the markers of the file itself, else those in a file beside it.
+
+        Raises
+        ------
+        FileError
+            A file of markers lies there and cannot be read.
+        """
+        if self.recording.annotations:
+            return self.recording.annotations
+        stems = [self.stem]
+        if self.stimulus is not None:
+            stems.append(self.stimulus.path.name.removesuffix(".ccdf.json"))
+        for stem in stems:
+            path = self.recording.path.parent / f"{stem}{markers.SUFFIX}"
+            if path.is_file():
+                return markers.read_markers(path, n_samples=self.recording.n_samples)
+        return ()
+
+
+def open_input(
+    path: Path,
+    hints: ReadHints,
+    *,
+    output_rate_hz: Fraction | None = None,
+    progress: Progress = silent,
+) -> InputFile:
+    """Open a data file, and its sidecar if its bytes are those that it describes.
+
+    Parameters
+    ----------
+    path : Path
+        The file.
+    hints : ReadHints
+        What the user says about it.
+    output_rate_hz : Fraction, optional
+        Rate of the output, Hz: taken as that of a file that does not say its own.
+    progress : Progress
+        Told how far the hash has come.
+
+    Returns
+    -------
+    InputFile
+
+    Raises
+    ------
+    FileError
+        It cannot be read, or holds power alone.
+    """
+    stimulus = listing(path)
+    recording = stimulus.open(stimulus.items[0], hints) if stimulus else None
+    if recording is None:
+        recording = open_recording(path, _told_rate(path, hints, output_rate_hz))
+    if recording.is_power:
+        raise FileError(
+            where=str(path),
+            problem="holds power against time, without phase",
+            allowed="samples of I and Q, or real ones",
+            remedy="Measure it with `wavegen measure`.",
+        )
+    sha512 = sha512_of(recording.path, progress)
+    reason = _no_loop(recording, stimulus, sha512)
+    found = InputFile(
+        recording=recording, stimulus=None if reason else stimulus, sha512=sha512, notes=[]
+    )
+    found.warn(*(loop_warnings(recording) if found.loops else recording.warnings))
+    if reason:
+        found.warn(f"{reason}: it is converted as a recording, without a sidecar")
+    return found
+
+
+def _told_rate(path: Path, hints: ReadHints, rate_hz: Fraction | None) -> ReadHints:
+    """Return hints with the rate of the output for a file that does not say its own."""
+    if hints.sample_rate_hz is not None or rate_hz is None:
+        return hints
+    try:
+        open_recording(path, hints)
+    except FileError:
+        return replace(hints, sample_rate_hz=rate_hz)
+    return hints
+
+
+def _no_loop(recording: Recording, stimulus: Stimulus | None, sha512: str) -> str:
+    """Return why a file with a sidecar is not the loop that it describes; empty if it is."""
+    if stimulus is None:
+        return ""
+    item = stimulus.items[0]
+    if item["sha512"] != sha512:
+        return f"its bytes are not those that {stimulus.path.name} describes"
+    if mismatch(recording, stimulus.document) is not None:
+        return f"its length or rate is not that of {stimulus.path.name}"
+    if item["channels"] is not None:
+        return f"one of the two channels of {stimulus.path.name} is no stimulus of its own"
+    return ""
+
+
+def moved(
+    marks: tuple[Annotation, ...], factor: Fraction, n_samples: int
+) -> tuple[Annotation, ...]:
+    """Return markers on another axis, cut where it ends; those beyond it are left out.
+
+    Parameters
+    ----------
+    marks : tuple of Annotation
+        On the axis of the source.
+    factor : Fraction
+        New rate over old.
+    n_samples : int
+        Length of the new axis.
+    """
+    moved = []
+    for mark in marks:
+        start = math.floor(mark.start_sample * factor)
+        if not 0 <= start < n_samples:
+            continue
+        length = mark.n_samples
+        if length is not None:
+            stop = math.ceil((mark.start_sample + length) * factor)
+            length = max(min(stop, n_samples) - start, 1)
+        moved.append(replace(mark, start_sample=start, n_samples=length))
+    return tuple(moved)
