@@ -160,11 +160,9 @@ class DualRound(Signal):
         moved = arrays[1]
         if len(arrays) == 3 and self.factor:
             moved = ahead(moved, arrays[2], self.factor)
-        wanted = self.band.apply(moved, stop - start)
-        np.subtract(source, wanted, out=wanted)
         reach = self.band.half_length
-        wanted += moved[reach : reach + stop - start]
-        return excess_over(wanted, self.amplitude)
+        left = self.band.apply(moved, stop - start, base=source)
+        return excess_over(left, self.amplitude, plus=moved[reach : reach + stop - start])
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -191,9 +189,7 @@ class Corrected(Signal):
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Subtract what passes the band."""
-        change = self.band.apply(arrays[1], stop - start)
-        np.subtract(arrays[0], change, out=change)
-        return change
+        return self.band.apply(arrays[1], stop - start, base=arrays[0])
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

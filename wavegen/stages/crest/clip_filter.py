@@ -50,8 +50,11 @@ class ClipFilterRound(Signal):
         """Clip, filter the excess, subtract."""
         source = arrays[0]
         reach = self.band.half_length
-        out = self.band.apply(excess_over(source, self.amplitude), stop - start)
-        np.subtract(source[reach : source.size - reach], out, out=out)
+        out = self.band.apply(
+            excess_over(source, self.amplitude),
+            stop - start,
+            base=source[reach : source.size - reach],
+        )
         if self.gain != 1.0:
             flat = out.view(np.float32)
             np.multiply(flat, np.float32(self.gain), out=flat)

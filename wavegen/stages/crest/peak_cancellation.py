@@ -79,9 +79,8 @@ class CancellationPass(Signal):
         share = np.float32(1) - np.float32(self.amplitude) / np.sqrt(power[peaks])
         placed = np.zeros(source.size - 2 * self.reach, np.complex64)
         placed[peaks - self.reach] = source[peaks] * share
-        out = self.pulse.apply(placed, stop - start)
         halo = self.pulse.half_length + self.reach
-        np.subtract(source[halo : source.size - halo], out, out=out)
+        out = self.pulse.apply(placed, stop - start, base=source[halo : source.size - halo])
         if self.gain != 1.0:
             flat = out.view(np.float32)
             np.multiply(flat, np.float32(self.gain), out=flat)
