@@ -160,7 +160,7 @@ def _encode_strip(
             reading = meter.begin(source)
             reading.feed(strip[0], held)
             readings.append(reading)
-    codes = together[0] if len(together) == 1 else join_channels(*together[::-1])
+    codes = together[0] if len(together) == 1 else join_channels(*together)
     return codes, n_saturated, readings
 
 
