@@ -293,16 +293,16 @@ def receive_subcarriers(
     Raises
     ------
     SignalError
-        The transform would begin outside the clean part of the shortest prefix.
+        The transform would begin outside the shortest prefix.
     """
     grid: Grid = ideal.bodies  # type: ignore[attr-defined] # Subcarriers, which imports this
-    clean = min(layout.prefixes) - layout.edge
-    early = clean // 2 if early_samples is None else early_samples
-    if not 0 <= early <= clean:
+    longest = min(layout.prefixes)
+    early = (longest - layout.edge) // 2 if early_samples is None else early_samples
+    if not 0 <= early <= longest:
         raise SignalError(
             where="ofdm",
             problem=f"a transform {early} samples before the useful part of a symbol",
-            allowed=f"0 to {clean}: inside the shortest prefix, less its edge",
+            allowed=f"0 to {longest}: inside the shortest prefix",
             remedy="Choose a shorter window of timings.",
         )
     labels = labels_of(grid)

@@ -229,7 +229,7 @@ class Prefixed(Signal):
             How this signal stands in it.
         early_samples : int, optional
             How long before the useful part the transform begins; in the middle of what the edge
-            leaves of the shortest prefix if not given.
+            leaves of the shortest prefix if not given. Earlier ones meet the symbol before.
 
         Returns
         -------
@@ -238,7 +238,7 @@ class Prefixed(Signal):
         Raises
         ------
         SignalError
-            The transform would begin outside the clean part of the shortest prefix.
+            The transform would begin outside the shortest prefix.
         """
         return receive_subcarriers(
             conditioned,
