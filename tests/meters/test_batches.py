@@ -137,11 +137,15 @@ def test_several_records_as_one(band_noise):
     np.testing.assert_array_equal(same.counts, members[0].counts)
 
 
-def test_travels_between_processes(band_noise):
-    meter = pickle.loads(pickle.dumps(BatchedPowerMeter(where="x", loops=True)))
-    assert meter == BatchedPowerMeter(where="x", loops=True)
-    found = measure_batches(band_noise(5, 70_000, 0.3))
-    assert_same(found, pickle.loads(pickle.dumps(found)))
+def test_travels_between_processes(band_noise, held):
+    samples = band_noise(5, 70_000, 0.3)
+    reading = BatchedPowerMeter(loops=True).begin(held(samples))
+    reading.feed(0, samples[:30_001])
+    copy = pickle.loads(pickle.dumps(reading))  # noqa: S301 - our own
+    rest = BatchedPowerMeter(loops=True).begin(held(samples))
+    rest.feed(30_001, samples[30_001:])
+    copy.merge(rest)
+    assert_same(copy.result(), measure_batches(samples, loops=True))
 
 
 def test_faults_are_named(held):

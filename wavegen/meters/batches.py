@@ -25,7 +25,7 @@ from wavegen.dsp.pair_kernel import (
     tally_pairs,
 )
 from wavegen.dsp.power_bins import bin_of
-from wavegen.dsp.power_kernel import PowerTally, exact_powers
+from wavegen.dsp.power_kernel import PowerTally, exact_powers, numbered_powers
 from wavegen.meters.power import PowerReading
 from wavegen.meters.power_statistics import PowerStatistics
 
@@ -261,8 +261,10 @@ class BatchedPowerReading:
         self._meter = meter
         self._size = batch_length(n_samples)
         # Batches shorter than a cell come from records so short that they can be held whole.
-        self._power = _Counts(meter.where, max(self._size, CELL))
         self._held: list[Samples] | None = [] if self._size < CELL else None
+        self._power = (
+            PowerReading(meter.where) if self._size < CELL else _Counts(meter.where, self._size)
+        )
         self._first = self._last = np.zeros(0, np.complex64)
         self._pairs: tuple[NDArray[np.int64], int] = (np.zeros(0, np.int64), 0)
         self._squares: CellSums | None = None
@@ -381,7 +383,7 @@ class BatchedPowerReading:
         if self._held is not None:
             sums, rows = self._short(np.concatenate(self._held))
         else:
-            sums, rows = self._sums(), self._power.rows
+            sums, rows = self._sums(), getattr(self._power, "rows", {})
         pairs = self._pairs
         if self._meter.loops:
             joint = tally_pairs(np.concatenate([self._last, self._first]))
@@ -420,9 +422,21 @@ class BatchedPowerReading:
             [_in_rows(powers**order, self._size) for order in (1, 2, 3)],
             axis=1,
         )
-        short = _Counts(self._meter.where, self._size)
-        short.feed(0, samples)
-        return sums, short.rows
+        return sums, self._short_rows(samples)
+
+    def _short_rows(self, samples: Samples) -> dict[int, tuple[NDArray[np.int64], int]]:
+        """Return the counts of batches shorter than a cell, all on the same bins."""
+        number = numbered_powers(samples)[1]
+        used = np.flatnonzero(number >= 0)
+        if not used.size:
+            return {}
+        coarse = number[used] // FINE_PER_COARSE
+        first = int(coarse.min())
+        width = int(coarse.max()) + 1 - first
+        n_rows = -(-samples.size // self._size)
+        place = used // self._size * width + (coarse - first)
+        counts = np.bincount(place, minlength=n_rows * width).reshape(n_rows, width)
+        return {row: (counts[row], first) for row in range(n_rows)}
 
 
 def _in_rows(values: NDArray[np.float64], length: int) -> NDArray[np.float64]:

@@ -501,17 +501,14 @@ def _moment_rows(
 
 
 def _overshoot(row: LevelRow, tolerance_db: float) -> float:
-    """Return how many times a record's interval is wider than the room it would need."""
-    half = (row.high_db - row.low_db) / 2
-    centre = abs((row.high_db + row.low_db) / 2 - row.law_level_db) if math.isfinite(half) else 0.0
-    room = max(tolerance_db - centre, tolerance_db / 4)
-    return half / room
+    """Return how many times too far the worse end of an interval lies from the law."""
+    return max(row.high_db - row.law_level_db, row.law_level_db - row.low_db) / tolerance_db
 
 
 def _needed(sampled: SampledStatistics, overshoot: float, down_to: float) -> int | None:
     """Return about how many samples it takes: intervals shrink with the root of their number."""
     n_samples = sampled.statistics.n_samples
-    if math.isfinite(overshoot):
+    if math.isfinite(overshoot):  # what lies off centre shrinks likewise if the law holds
         return math.ceil(n_samples * max(overshoot, 1.0) ** 2)
     more = sampled.next_decade()
     if more is None:
