@@ -1,3 +1,5 @@
+import itertools
+
 import numpy as np
 import pytest
 
@@ -27,7 +29,7 @@ def test_sums_of_cells_do_not_depend_on_the_cut(n) -> None:
     for _ in range(20):
         parts = []
         edges = cut_at_random(rng, n, 6)
-        for low, high in zip(edges[:-1], edges[1:], strict=True):
+        for low, high in itertools.pairwise(edges):
             parts.append(GridSums())
             parts[-1].add(low, values[low:high])
         while len(parts) > 1:
@@ -59,7 +61,7 @@ def test_cells_cut_by_strips_are_put_together(n) -> None:
     for _ in range(40):
         parts = []
         edges = cut_at_random(rng, n, 5)
-        for low, high in zip(edges[:-1], edges[1:], strict=True):
+        for low, high in itertools.pairwise(edges):
             reading = Energy()
             middle = (low + high) // 2
             reading.feed(low, samples[low:middle])

@@ -9,7 +9,10 @@ from wavegen.meters.evm import EvmMeter, Paired, waveform_sums
 N = 6000
 
 
-def pair(seed, n=N, *, gain=0.9 * np.exp(0.2j), noise=0.1):
+GAIN = 0.9 * np.exp(0.2j)
+
+
+def pair(seed, n=N, *, gain=GAIN, noise=0.1):
     rng = np.random.default_rng(seed)
     sent = np.exp(2j * np.pi * rng.integers(0, 8, n) / 8) * rng.choice([0.5, 1.0], n)
     error = noise * (rng.standard_normal(n) + 1j * rng.standard_normal(n)) * np.sqrt(0.5)

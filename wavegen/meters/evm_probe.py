@@ -164,10 +164,10 @@ class EvmResult:
 
     def rows(self) -> tuple[tuple[str, str], ...]:
         """Return names and values, for tables of before and after."""
-        figures = self.classes if len(self.classes) > 1 else (self.overall,)
-        named = [(f"EVM {self.path} {item.name}", f"{item.percent:.3f} %") for item in figures]
-        alone = len(self.classes) == 1
-        return tuple(named if alone else [(f"EVM {self.path}", f"{self.percent:.3f} %"), *named])
+        rows = [(f"EVM {self.path}", f"{self.percent:.3f} %")]
+        if len(self.classes) > 1:
+            rows += [(f"EVM {self.path} {x.name}", f"{x.percent:.3f} %") for x in self.classes]
+        return tuple(rows)
 
     def table(self) -> Table:
         """Return every class, for people."""
