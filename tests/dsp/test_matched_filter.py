@@ -40,12 +40,13 @@ def test_agrees_with_the_definition(a, b) -> None:
     assert np.abs(found - expected).max() < tolerance * np.abs(expected).max()
 
 
-@pytest.mark.parametrize(("a", "b"), [(4, 1), (10, 3)])
-def test_any_cut_gives_the_same_bits(a, b) -> None:
+@pytest.mark.parametrize(("a", "b", "n_rows"), [(4, 1, 5), (10, 3, 5), (4, 1, 75), (5, 1, 90)])
+def test_any_cut_gives_the_same_bits(a, b, n_rows) -> None:
+    """Many rows too: they are transformed in groups."""
     rng = np.random.default_rng(1)
     pulse = RootRaisedCosine(roll_off=0.25, span_symbols=SPAN).design(Fraction(a, b))
     rows = plan_matched(pulse, n_samples=a, n_symbols=b, period_symbols=4096 * b)
-    count = 5 * rows.step + 3
+    count = n_rows * rows.step + 3
     first, last = rows.needs(0, count)
     raw = rng.standard_normal((last - first, 2)).astype(np.float32).view(np.complex64)[:, 0]
     whole = rows.receive(0, count, raw)

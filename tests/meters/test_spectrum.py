@@ -69,6 +69,14 @@ def test_a_line_keeps_its_power_and_place(window) -> None:
     assert found.density.max() == pytest.approx(0.25 / found.noise_bandwidth_hz, rel=1e-4)
 
 
+@pytest.mark.parametrize("n_fft", [48, 1000, 10_000, 20_000])
+def test_any_length_of_the_transform(n_fft) -> None:
+    """Segments are transformed in groups; the density of white noise is its power over the rate."""
+    found = spectrum_of(noise(5, 150_000), sample_rate_hz=RATE_HZ, n_fft=n_fft)
+    assert found.density.size == n_fft
+    assert found.total_power == pytest.approx(2, rel=0.02)
+
+
 def test_integral_is_the_mean_power() -> None:
     """A segment of a loop weighs all samples alike within 1 %."""
     samples = noise(3, 50_000)

@@ -98,6 +98,28 @@ def test_any_cut_gives_the_same_bits(case) -> None:
             assert np.array_equal(part, whole[np.arange(start, stop + 1) % received.n_samples])
 
 
+@pytest.mark.parametrize("n_fft", [64, 96, 1536, 5000, 1 << 17])
+def test_any_length_of_the_transform(n_fft) -> None:
+    """Symbols are transformed in groups; none may be lost at their ends."""
+    settings = Ofdm(
+        subcarrier_spacing_hz=Fraction(15000),
+        groups=(
+            Group(subcarriers=IndexSet.parse("-20..20"), constellation=Constellation.parse("qpsk")),
+        ),
+        cyclic_prefix=CyclicPrefix.parse("4 samples"),
+    )
+    rate = Fraction(15000) * n_fft
+    n_symbols = max(400_000 // n_fft, 5) + 3
+    site = Site(
+        sample_rate_hz=rate,
+        n_samples=settings.cycle(rate, "signal").n_samples * n_symbols,
+        seed=1,
+        label="x",
+        path="signal",
+    )
+    assert error(receive(settings.build(site))) < 1e-6
+
+
 def test_labels_say_what_is_where() -> None:
     reception = receive(build(symbols="1..3"))
     assert [item.name for item in reception.classes] == ["groups[0]", "groups[1]", "pilots[0]"]

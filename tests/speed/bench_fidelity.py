@@ -1,9 +1,9 @@
 """Speed of the fidelity meters, over the transforms that they contain.
 
-Run it: ``python tests/speed/bench_fidelity.py``. CPU time of the shortest of interleaved repeats, one
-thread. The spectrum is compared with its forward transforms, the EVM of OFDM with the one forward
-transform a symbol that a receiver needs, that of a single carrier with the transforms of its
-matched filter, and the cubic metric with ``np.sum`` over the same samples.
+Run it: ``python tests/speed/bench_fidelity.py``. CPU time of the shortest of interleaved repeats,
+one thread. The core of the spectrum are its forward transforms (six a sample at the default
+overlap), that of the EVM of OFDM the one forward transform a symbol that a receiver needs, that of
+a single carrier the transforms of its matched filter, that of the cubic metric ``np.sum``.
 """
 
 from __future__ import annotations

@@ -80,7 +80,7 @@ class MatchedRows:
         windows = np.lib.stride_tricks.sliding_window_view(samples, n_in)
         windows = windows[:: self.hop_cycles * self.n_samples]
         out = np.empty(stop - start, np.complex64)
-        most = max(BLOCK_SAMPLES // n_in, ROWS_AT_LEAST)
+        most = max(BLOCK_SAMPLES // n_in // ROWS_AT_LEAST, 1) * ROWS_AT_LEAST
         most = min(most, -(-windows.shape[0] // ROWS_AT_LEAST) * ROWS_AT_LEAST)
         work = np.empty((most, n_in), np.complex64)
         for first in range(0, windows.shape[0], most):

@@ -247,7 +247,7 @@ class SpectrumReading:
 
     def _transform(self, samples: Samples, starts: list[int]) -> None:
         n_fft = self._settings.n_fft
-        n_rows = max(BLOCK_SAMPLES // n_fft, ROWS_AT_LEAST)
+        n_rows = max(BLOCK_SAMPLES // n_fft // ROWS_AT_LEAST, 1) * ROWS_AT_LEAST
         work = np.empty(
             (min(n_rows, -(-len(starts) // ROWS_AT_LEAST) * ROWS_AT_LEAST), n_fft), np.complex64
         )

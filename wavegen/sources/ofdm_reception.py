@@ -84,7 +84,7 @@ class ReceivedSubcarriers(Signal):
         first, end = start // n_active, stop // n_active
         origin = self._start_of(first)
         out = np.empty((end - first, n_active), np.complex64)
-        most = max(FFT_SAMPLES // n_fft, FEWEST_ROWS)
+        most = max(FFT_SAMPLES // n_fft // FEWEST_ROWS, 1) * FEWEST_ROWS
         most = min(most, -(-out.shape[0] // FEWEST_ROWS) * FEWEST_ROWS)
         work = np.empty((most, n_fft), np.complex64)
         bins = self.indices % n_fft
