@@ -24,6 +24,7 @@ MOST_LISTED = 1 << 18
 
 _CELLS = 1 << 15
 _MARGIN = 48
+_ROWS = 64
 
 
 class Directional(Protocol):
@@ -160,7 +161,7 @@ class AngularSum:
     @cached_property
     def peak(self) -> float:
         """Highest envelope, or a bound 3e-7 above it: the reach in the farthest direction."""
-        angle: Reals = np.arange(1 << 12) * (2 * np.pi / (1 << 12))
+        angle = np.linspace(0.0, 2 * np.pi, 1 << 12, endpoint=False)
         reach = np.zeros(angle.size)
         for part, turn in self.parts:
             reach += part.reach(angle - turn)
@@ -171,18 +172,17 @@ class AngularSum:
         out = np.empty(t.size)
         start = 0
         while start < t.size:
-            n = self._n_angles(float(t[start:].max()))
-            rows = max(1, _CELLS // n)
-            part = t[start : start + rows]
-            n = self._n_angles(float(part.max()))
+            n = self._n_angles(float(t[start : start + _ROWS].max()))
+            part = t[start : start + max(1, min(_ROWS, _CELLS // n))]
             width = 2 * np.pi / self.symmetry
             if self.is_mirrored:
                 n = (n + 1) // 2
-                angle: Reals = (np.arange(n) + 0.5) * (width / 2 / n)
+                half = width / 2 / n
+                angle = np.linspace(half / 2, width / 2 - half / 2, n)
             else:
-                angle = np.arange(n) * (width / n)
-            out[start : start + rows] = self.directional(part, angle).real.mean(axis=1)
-            start += rows
+                angle = np.linspace(0.0, width, n, endpoint=False)
+            out[start : start + part.size] = self.directional(part, angle).real.mean(axis=1)
+            start += part.size
         return out
 
     def above(self, radius: Reals) -> Reals:

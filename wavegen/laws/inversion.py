@@ -5,20 +5,23 @@ from __future__ import annotations
 import math
 from collections.abc import Callable
 from dataclasses import dataclass
+from functools import lru_cache
+from typing import Protocol, runtime_checkable
 
 import numpy as np
 import scipy.special
 
-from wavegen.laws.law import Holds
+from wavegen.laws.law import Holds, Law
 from wavegen.laws.radial import RadialLaw
-from wavegen.laws.term import NoLaw, Reals, Term
+from wavegen.laws.term import NoLaw, Reals, Scaled, Term
 
 MOST_TERMS = 1 << 17
 """Terms of the series; beyond, the envelope is blurred by as little as they allow."""
 FIRST_TERMS = 256
+FEW_TERMS = 1 << 12
 NEGLIGIBLE = 1e-14
 """Characteristic functions below this times the root of the number of terms end the series."""
-EMPTY = 2e-13
+EMPTY = 1e-12
 """Probability left above the radius of the series, at most."""
 BLUR_DB = 2e-4
 """Blur that is accepted, dB of the mean's amplitude for one standard deviation."""
@@ -119,8 +122,16 @@ def law_of_characteristic(
         radius = min(peak * (1 + 1e-9), 1.5 * radius)
 
 
-def law_of_term(term: Term) -> RadialLaw | NoLaw:
-    """Return the law of one term by inversion of its characteristic function.
+@runtime_checkable
+class KnowsLaw(Protocol):
+    """A term that has a better way to its law than the series."""
+
+    def law(self) -> Law | NoLaw:
+        """Return the law."""
+
+
+def law_of_term(term: Term) -> Law | NoLaw:
+    """Return the law of one term: its own way, else by inversion of its function.
 
     Parameters
     ----------
@@ -129,8 +140,11 @@ def law_of_term(term: Term) -> RadialLaw | NoLaw:
 
     Returns
     -------
-    RadialLaw or NoLaw
+    Law or NoLaw
     """
+    inner = term.inner if isinstance(term, Scaled) else term  # levels are over the mean
+    if isinstance(inner, KnowsLaw):
+        return inner.law()
     return law_of_characteristic(
         term.characteristic,
         name=term.name,
@@ -141,6 +155,7 @@ def law_of_term(term: Term) -> RadialLaw | NoLaw:
     )
 
 
+@lru_cache(maxsize=2)
 def bessel_zeros(count: int) -> Reals:
     """Return the first zeros of ``J0``, shape (count,).
 
@@ -157,6 +172,7 @@ def bessel_zeros(count: int) -> Reals:
     zeros = b + 1 / (8 * b) - 124 / (3 * (8 * b) ** 3) + 120928 / (15 * (8 * b) ** 5)
     for _ in range(2):
         zeros += scipy.special.j0(zeros) / scipy.special.j1(zeros)
+    zeros.flags.writeable = False
     return np.asarray(zeros)
 
 
@@ -183,8 +199,10 @@ def series_of(
     pieces: list[Reals] = []
     count, block = 0, FIRST_TERMS
     left = math.inf
-    zeros = bessel_zeros(most_terms)
+    zeros = bessel_zeros(min(most_terms, FEW_TERMS))
     while count < most_terms:
+        if count + block > zeros.size:
+            zeros = bessel_zeros(most_terms)
         part = zeros[count : count + block]
         piece = characteristic(part / radius)
         pieces.append(piece)
@@ -194,7 +212,7 @@ def series_of(
             break
         block = max(FIRST_TERMS, count // 4)
     phi = np.concatenate(pieces)
-    a = zeros[:count]
+    a: Reals = zeros[:count]
     if left >= NEGLIGIBLE * math.sqrt(count):
         wanted = 2 * math.sqrt(math.log(left / 1e-14)) * radius / float(a[-1])
         if wanted > blur:

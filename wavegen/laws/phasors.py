@@ -128,7 +128,7 @@ def _three(radius: Reals, first: Reals, second: float, third: float) -> Reals:
     edges = np.stack([np.abs(radius - third), radius + third], axis=-1)
     angle, weight = _pieces(_angle_at(edges, first[..., None], second))
     pair = _joined(angle, first[..., None], second)
-    return np.sum(weight * share_above(radius[..., None], pair, third), axis=-1)
+    return np.asarray(np.sum(weight * share_above(radius[..., None], pair, third), axis=-1))
 
 
 def _four(radius: Reals, a: float, b: float, c: float, d: float) -> Reals:
@@ -141,7 +141,7 @@ def _four(radius: Reals, a: float, b: float, c: float, d: float) -> Reals:
     angle, weight = _pieces(_angle_at(edges, np.float64(a), b))
     pair = _joined(angle, np.float64(a), b)
     wide = np.broadcast_to(radius[:, None], pair.shape)
-    return np.sum(weight * _three(wide, pair, c, d), axis=-1)
+    return np.asarray(np.sum(weight * _three(wide, pair, c, d), axis=-1))
 
 
 def _joined(angle: Reals, first: Reals | np.float64, second: float) -> Reals:

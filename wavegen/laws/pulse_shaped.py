@@ -121,12 +121,21 @@ class PulseShapedTerm(BaseTerm):
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
     ) -> Complexes | None:
         """Return the two-dimensional function; None where a rotation turns it with the symbols."""
-        if _Plan(self).n_kinds > 1:
+        if self._plan.n_kinds > 1:
             return None
         out = np.zeros((t.size, angle_rad.size), np.complex128)
         for instant, share in self.instants(residue, modulus):
             out += share * instant.value.directional(t, angle_rad - instant.tilt_rad)
         return out
+
+    @cached_property
+    def _plan(self) -> _Plan:
+        return _Plan(self)
+
+    def kind(self, index: int) -> object:
+        """Return what is equal for indices of one two-dimensional function."""
+        a, b = self.ratio
+        return self._plan.at(Fraction(index * b % a, a))[0]
 
     def law(self) -> RadialLaw | NoLaw:
         """Return the law of the envelope: the mean over the instants."""
@@ -254,7 +263,7 @@ def _instants(
     a, b = term.ratio
     shares: dict[tuple[bytes, ...], float] = {}
     makers: dict[tuple[bytes, ...], Callable[[], Instant]] = {}
-    plan = _Plan(term)
+    plan = term._plan
     for phase, share in _phases(a, residue, modulus, b):
         key, maker = plan.at(phase)
         shares[key] = shares.get(key, 0.0) + share

@@ -4,12 +4,11 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from functools import cached_property
+from functools import cached_property, lru_cache
 
 import numpy as np
 import scipy.fft
 import scipy.special
-from numpy.typing import NDArray
 
 from wavegen.laws.cumulants import ORDER, count_large, cumulants, power_sums
 from wavegen.laws.term import Complexes, Reals
@@ -98,22 +97,32 @@ class Rail:
         return out
 
     def looked_up(self, t: Reals) -> Reals:
-        """Return :meth:`characteristic` from a table, good to 1e-14; ``t`` >= 0."""
+        """Return :meth:`characteristic` from a table, good to 1e-13; ``t`` >= 0."""
         if not self.peak:
             return np.ones(t.shape)
         step = _TABLE_STEP / self.peak
-        table = self._table_to(float(t.max(initial=0.0)) / step)
-        place = t / step
-        number = place.astype(np.int64)
-        return _lagrange(table, number, place - number)
+        powers = self._table_to(float(t.max(initial=0.0)) / step)
+        out = np.empty(t.shape)
+        flat_t, flat = t.reshape(-1), out.reshape(-1)
+        for low in range(0, flat.size, _CELLS):
+            place = flat_t[low : low + _CELLS] / step
+            number = place.astype(np.int64)
+            place -= number
+            value = powers[-1].take(number)
+            for row in powers[-2::-1]:
+                value *= place
+                value += row.take(number)
+            flat[low : low + _CELLS] = value
+        return out
 
     def _table_to(self, count: float) -> Reals:
-        """Return values at ``-3, -2, ...`` steps, to a power of two that is enough."""
+        """Return powers of the place in each step, shape (8, n_steps), up to enough steps."""
         size = 1 << max(10, math.ceil(math.log2(count + 8)))
         made = self._tables.get(size)
         if made is None:
-            places = np.abs(np.arange(-3, size + 5)) * (_TABLE_STEP / self.peak)
-            made = self._tables[size] = self.characteristic(places)
+            places: Reals = np.abs(np.arange(-3, size + 5)) * (_TABLE_STEP / self.peak)
+            windows = np.lib.stride_tricks.sliding_window_view(self.characteristic(places), 8)
+            made = self._tables[size] = np.ascontiguousarray((windows @ _through_eight().T).T)
         return made
 
     @cached_property
@@ -136,8 +145,7 @@ class Rail:
         pieces: list[Reals] = []
         count, block = 0, 512
         while count < MOST_POINTS:
-            places: Reals = spacing * np.arange(count, count + block)
-            piece = self.characteristic(places)
+            piece = self.characteristic(np.arange(count, count + block) * np.float64(spacing))
             pieces.append(piece)
             count += block
             if np.max(np.abs(piece)) < NEGLIGIBLE:
@@ -265,7 +273,20 @@ class RailPair:
 
     def _radial(self, highest: float) -> tuple[Reals, Reals]:
         """Return envelopes and their weights: good for ``t`` up to ``highest``."""
-        n = 64 * math.ceil((0.6 * (highest + self._band) * self.peak + 64) / 64)
+        wanted = 0.6 * (highest + self._band) * self.peak + 64
+        n = 64 << max(0, math.ceil(2 * math.log2(wanted / 64))) // 2
+        if n < wanted:
+            n = n * 3 // 2
+        made = self._radials.get(n)
+        if made is None:
+            made = self._radials[n] = self._radial_of(n)
+        return made
+
+    @cached_property
+    def _radials(self) -> dict[int, tuple[Reals, Reals]]:
+        return {}
+
+    def _radial_of(self, n: int) -> tuple[Reals, Reals]:
         nodes, weights = _legendre(n)
         radius = 0.5 * self.peak * (nodes + 1)
         angles, shares = _legendre(self._n_angles)
@@ -277,7 +298,8 @@ class RailPair:
             f = self.first.density(np.outer(part, np.cos(angle)))
             f *= self.second.density(np.outer(part, np.sin(angle)))
             around[low : low + rows] = f @ shares
-        return radius, 0.5 * self.peak * weights * radius * np.pi * around
+        share = weights * radius * around
+        return radius, share / share.sum()  # takes most of the interpolation's error of 1e-12 out
 
     @property
     def _band(self) -> float:
@@ -323,6 +345,7 @@ def _spread(rail: Rail, t: Reals) -> tuple[Reals, Reals]:
     return x, rail.peak * weights * rail.density(x)
 
 
+@lru_cache(maxsize=16)
 def _legendre(n: int) -> tuple[Reals, Reals]:
     """Return the nodes and weights of a Gauss-Legendre rule in panels of 64 on -1 ... 1."""
     size = 64
@@ -330,22 +353,16 @@ def _legendre(n: int) -> tuple[Reals, Reals]:
     nodes, weights = np.polynomial.legendre.leggauss(size)
     middle = (2 * np.arange(panels) + 1) / panels - 1
     return (
-        (middle[:, None] + nodes / panels).ravel(),
+        np.asarray((middle[:, None] + nodes / panels).ravel()),
         np.tile(weights / panels, panels),
     )
 
 
-def _lagrange(table: Reals, number: NDArray[np.int64], u: Reals) -> Reals:
-    """Return the polynomial through eight entries, -3 ... 4 from a place (entry 3 is place 0)."""
-    offsets = range(-3, 5)
-    out = np.zeros(u.shape)
-    for one in offsets:
-        weight = np.ones(u.shape)
-        for other in offsets:
-            if other != one:
-                weight *= (u - other) / (one - other)
-        out += weight * table.take(number + (one + 3))
-    return out
+@lru_cache(maxsize=1)
+def _through_eight() -> Reals:
+    """Return what turns eight entries, -3 ... 4, into coefficients of powers, shape (8, 8)."""
+    places = np.arange(-3.0, 5.0)
+    return np.asarray(np.linalg.inv(np.vander(places, increasing=True)))
 
 
 def _hermite(place: Reals, values: Reals, slopes: Reals) -> Reals:

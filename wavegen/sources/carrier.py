@@ -11,8 +11,10 @@ import numpy as np
 
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Cycle, Site
+from wavegen.laws.composite import LineTerm
 from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.law import Law
+from wavegen.laws.term import Term
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -59,3 +61,7 @@ class Carrier:
     def law(self, site: Site) -> Law:
         """Return the law of a constant envelope."""
         return ConstantLaw()
+
+    def term(self, site: Site) -> Term:
+        """Return what the carrier is to a composite: known at all times."""
+        return LineTerm.of(cmath.exp(1j * math.radians(self.phase_deg)))

@@ -18,6 +18,7 @@ from wavegen.dsp.overlap_save import Filtered, folded_energy
 from wavegen.dsp.windows import STOPBAND_DB, design_lowpass, kaiser_transition
 from wavegen.laws.gaussian import GaussianLaw
 from wavegen.laws.law import Law
+from wavegen.laws.term import GaussianTerm, Term
 
 LONGEST_HALF_LENGTH = 125_000
 """Longest filter taken on, taps each side of its middle: transforms of 2^19 then."""
@@ -127,6 +128,10 @@ class Noise:
     def law(self, site: Site) -> Law:
         """Return the law of complex Gaussian noise, over seeds."""
         return GaussianLaw()
+
+    def term(self, site: Site) -> Term:
+        """Return what the noise is to a composite."""
+        return GaussianTerm(data=frozenset({site.label}))
 
     def _edge(self, site: Site) -> float:
         """Return the edge to use, or complain about what cannot be filtered."""

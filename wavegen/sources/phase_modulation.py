@@ -23,8 +23,11 @@ from wavegen.dsp.phase_pulses import (
     soqpsk_tg_phase,
 )
 from wavegen.dsp.phase_tables import states_of
+from wavegen.laws.composite import ConstantEnvelopeTerm
 from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw, Term
+from wavegen.sources.carrier_law import SHORTEST_PERIOD, finite_pattern
 from wavegen.sources.data.random import Random
 from wavegen.sources.phase_signal import PhaseSignal, cell_of
 from wavegen.sources.phase_symbols import (
@@ -212,6 +215,23 @@ class PhaseModulation:
     def law(self, site: Site) -> Law:
         """Return the law of a constant envelope."""
         return ConstantLaw()
+
+    def term(self, site: Site) -> Term | NoLaw:
+        """Return what the carrier is to a composite: of constant envelope.
+
+        Notes
+        -----
+        No law for data that repeat soon: beside another part its phase is no random one then.
+        """
+        repeats = finite_pattern(self.data, site.folder)
+        if repeats is not None and repeats[0] < SHORTEST_PERIOD:
+            return NoLaw(reason=f"finite pattern: {repeats[1]} repeats after {repeats[0]} bits")
+        stream = getattr(self.data, "share", None) or site.label
+        return ConstantEnvelopeTerm(
+            name=self.scheme.replace("_", " "),
+            data=frozenset({stream if repeats is None else repeats[1]}),
+            lowest_probability=0.0 if repeats is None else 10 / repeats[0],
+        )
 
     def _index(self) -> Fraction:
         if self.h is not None:

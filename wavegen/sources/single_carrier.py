@@ -23,6 +23,9 @@ from wavegen.dsp.pulse import Pulse, PulseSettings, Stretched, residual_evm_perc
 from wavegen.dsp.pulse_shaping import Shaper, plan_shaping
 from wavegen.dsp.pulses.root_raised_cosine import RootRaisedCosine
 from wavegen.dsp.pulses.taps import MOST_TAPS, Taps
+from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw, Term
+from wavegen.sources.carrier_law import carrier_law, carrier_term
 from wavegen.sources.carrier_reception import JoinedRails, match
 from wavegen.sources.data.random import Random
 from wavegen.sources.differential import integrate, phase_steps
@@ -184,6 +187,19 @@ class SingleCarrier:
             pulse=pulse,
             ratio=(n_samples, n_symbols),
         )
+
+    def law(self, site: Site) -> Law | NoLaw:
+        """Return the law of the envelope at the instants that samples fall on.
+
+        Notes
+        -----
+        Over seeds for independent symbols; the exact curve for a short pattern.
+        """
+        return carrier_law(self, site)
+
+    def term(self, site: Site) -> Term | NoLaw:
+        """Return what the carrier is to a composite."""
+        return carrier_term(self, site)
 
     def _symbols(self, site: Site, period: int) -> Symbols:
         """Return the points sent, encoded and turned."""

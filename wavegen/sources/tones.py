@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Annotated, Literal
 
@@ -23,9 +23,12 @@ from wavegen.dsp.phases import (
     rudin_shapiro_phases,
     schroeder_phases,
 )
+from wavegen.laws.composite import LinesTerm
 from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.law import Law
 from wavegen.laws.periodic import LARGEST_SPAN, PeriodicLaw
+from wavegen.laws.phasors import phasor_law
+from wavegen.laws.term import NoLaw, Term
 from wavegen.sources.tones_signal import sum_tones
 
 Phases = Literal["equal", "random", "newman", "schroeder", "rudin_shapiro"]
@@ -152,6 +155,30 @@ class Tones:
             n_instants=site.n_samples // math.gcd(common, site.n_samples),
             name=f"{lines.bins.size} tones, own period",
         )
+
+    def ensemble(self, site: Site) -> Law | NoLaw:
+        """Return the law over random phases, which is that of no one loop.
+
+        Raises
+        ------
+        RecipeError
+            As in :meth:`build`.
+
+        Notes
+        -----
+        For comparison alone: a comb is one realisation, and its own law is :meth:`law`. 64 equal
+        tones stand 2.6 to 18.1 dB over the mean for 0.1 % of the time, by their phases; the
+        ensemble's 8.3 dB describes none of them.
+        """
+        lines = plan_lines(self, replace(site, notes=[]))
+        name = f"random-phase ensemble of {lines.bins.size} tones"
+        return phasor_law(np.abs(lines.amplitudes), name=name)
+
+    def term(self, site: Site) -> Term:
+        """Return what the tones are to a composite: known at each sample."""
+        lines = plan_lines(self, replace(site, notes=[]))
+        values = [complex(value) for value in lines.amplitudes]
+        return LinesTerm.of(lines.bins.tolist(), values, n_samples=site.n_samples)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)

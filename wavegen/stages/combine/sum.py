@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import cmath
 import math
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import cached_property
 from typing import Annotated, Any
@@ -16,6 +16,8 @@ from wavegen.core.registry import Member
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
 from wavegen.core.units import format_hz
+from wavegen.laws.composite import Placed, combine_terms
+from wavegen.laws.term import NoLaw, Term
 
 CELL_SAMPLES = 1 << 12
 """Grid of the phase: exact at each cell's start, one ramp within; 32 kB of samples."""
@@ -188,6 +190,39 @@ class Sum:
                 for number, part in enumerate(self.parts)
             ),
         )
+
+    def term(self, site: Site, terms: list[Term]) -> Term | NoLaw:
+        """Return what the sum is to its law, or to a sum around it.
+
+        Parameters
+        ----------
+        site : Site
+            Where it is built; takes no notes.
+        terms : list of Term
+            Those of the parts behind their stages, in the order of ``parts``.
+
+        Returns
+        -------
+        Term or NoLaw
+            No law where parts share data or are tied in phase: see
+            :func:`wavegen.laws.composite.combine_terms`.
+
+        Raises
+        ------
+        RecipeError
+            As in :meth:`combine`.
+        """
+        quiet = replace(site, notes=[])
+        placed = [
+            Placed(
+                term=term,
+                gain=10 ** (part.level_db / 20),
+                turn_rad=math.radians(math.fmod(part.phase_deg, 360)),
+                n_cycles=_snap(quiet, number, part.frequency_offset_hz),
+            )
+            for number, (part, term) in enumerate(zip(self.parts, terms, strict=True))
+        ]
+        return combine_terms(placed, n_samples=site.n_samples)
 
 
 def _snap(site: Site, number: int, offset_hz: Fraction) -> int:
