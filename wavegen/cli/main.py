@@ -27,6 +27,7 @@ VERBS = Registry(
     "verb",
     {
         "make": "wavegen.cli.make:Make",
+        "predict": "wavegen.cli.predict:Predict",
         "measure": "wavegen.cli.measure:Measure",
         "check": "wavegen.cli.check:Check",
         "show": "wavegen.cli.show:Show",

@@ -88,25 +88,56 @@ def prepare(loaded: LoadedRecipe) -> Prepared:
     RecipeError
         What cannot be honoured, at ``file:line:column``.
     """
-    each = {"signal": loaded}
-    if loaded.recipe.second_channel is not None:
-        each["second_channel.signal"] = _alone(loaded)
-    notes: list[Note] = []
     try:
-        check_names({path: channel.recipe.signal for path, channel in each.items()})
-        cycle = _common([_cycle_of(channel, path) for path, channel in each.items()])
-        recipe = loaded.recipe
-        n_samples, rounded = loop_length(recipe.duration, cycle, recipe.sample_rate_hz)
-        notes += rounded
-        made = [
-            _build(channel, path, cycle.n_samples, n_samples, notes)
-            for path, channel in each.items()
-        ]
+        cycle, sites = find_loop(loaded)
+        made = [_build(channel, cycle.n_samples, site) for channel, site in sites]
     except RecipeError as error:
         raise loaded.resolve(error) from error
     if len(made) == 1:
         return made[0]
     return replace(made[0], second=_at_level(made[1], loaded))
+
+
+def find_loop(loaded: LoadedRecipe) -> tuple[Cycle, list[tuple[LoadedRecipe, Site]]]:
+    """Find the loop of a recipe, and where each of its channels is built.
+
+    Parameters
+    ----------
+    loaded : LoadedRecipe
+        A checked recipe.
+
+    Returns
+    -------
+    cycle : Cycle
+        Shortest loop of all channels.
+    sites : list of (LoadedRecipe, Site)
+        Each channel as a recipe of its own, and its site; all share the list of notes.
+
+    Raises
+    ------
+    RecipeError
+        What cannot be honoured, at its path in the recipe.
+    """
+    each = {"signal": loaded}
+    if loaded.recipe.second_channel is not None:
+        each["second_channel.signal"] = _alone(loaded)
+    check_names({path: channel.recipe.signal for path, channel in each.items()})
+    cycle = _common([_cycle_of(channel, path) for path, channel in each.items()])
+    recipe = loaded.recipe
+    n_samples, notes = loop_length(recipe.duration, cycle, recipe.sample_rate_hz)
+    sites = [
+        Site(
+            sample_rate_hz=recipe.sample_rate_hz,
+            n_samples=n_samples,
+            seed=recipe.seed,
+            label=path,
+            path=path,
+            folder=loaded.folder,
+            notes=notes,
+        )
+        for path in each
+    ]
+    return cycle, list(zip(each.values(), sites, strict=True))
 
 
 def _alone(loaded: LoadedRecipe) -> LoadedRecipe:
@@ -161,22 +192,12 @@ def _common(cycles: list[Cycle]) -> Cycle:
     )
 
 
-def _build(
-    loaded: LoadedRecipe, path: str, cycle_samples: int, n_samples: int, notes: list[Note]
-) -> Prepared:
-    recipe = loaded.recipe
-    site = Site(
-        sample_rate_hz=recipe.sample_rate_hz,
-        n_samples=n_samples,
-        seed=recipe.seed,
-        label=path,
-        path=path,
-        folder=loaded.folder,
-        notes=notes,
+def _build(loaded: LoadedRecipe, cycle_samples: int, site: Site) -> Prepared:
+    built = build(loaded.recipe.signal, loaded.recipe.stages, site)
+    refuse_too_large(built, site.path)
+    return Prepared(
+        loaded=loaded, built=built, cycle_samples=cycle_samples, notes=site.notes, site=site
     )
-    built = build(recipe.signal, recipe.stages, site)
-    refuse_too_large(built, path)
-    return Prepared(loaded=loaded, built=built, cycle_samples=cycle_samples, notes=notes, site=site)
 
 
 def refuse_too_large(built: Built, path: str = "signal") -> None:

@@ -8,15 +8,6 @@ from typing import Any
 from wavegen.core.table import Table
 from wavegen.core.units import format_hz, format_s
 
-_PERCENT = {
-    0.1: "10 %",
-    0.01: "1 %",
-    1e-3: "0.1 %",
-    1e-4: "0.01 %",
-    1e-5: "0.001 %",
-    1e-6: "0.0001 %",
-}
-
 NO_PEAK = "none: a power series has no phase"
 
 
@@ -28,7 +19,7 @@ def percent(probability: float) -> str:
     >>> percent(0.001)
     '0.1 %'
     """
-    return _PERCENT.get(probability) or f"{100 * probability:g} %"
+    return f"{100 * probability:.10f}".rstrip("0").rstrip(".") + " %"
 
 
 def fixed(value: float, unit: str) -> str:
