@@ -141,3 +141,11 @@ def test_table_names_what_it_is() -> None:
     rows = dict(spectrum_of(noise(1, 8192), sample_rate_hz=RATE_HZ).table().rows)
     assert rows["sample rate"] == "1 MHz"
     assert "kaiser" in rows["resolution"]
+
+
+@pytest.mark.parametrize("n", [1000, 4097, 20_003])
+def test_segments_of_a_loop_are_spread_evenly(n) -> None:
+    grid = SpectrumMeter(n_fft=64).begin(described(n))._grid
+    starts = np.array([grid.start(number) for number in range(grid.count + 1)])
+    assert starts[-1] == n  # over the seam as elsewhere
+    assert np.ptp(np.diff(starts)) <= 1
