@@ -128,8 +128,8 @@ def merge_bands(bands: Iterable[Band], *, gap: float) -> tuple[Band, ...]:
 
     Examples
     --------
-    >>> merge_bands([Band(0.3, 0.4), Band(-0.1, 0.2), Band(0.42, 0.45)], gap=0.05)
-    (Band(low=-0.1, high=0.2), Band(low=0.3, high=0.45))
+    >>> merge_bands([Band(0.25, 0.375), Band(-0.125, 0.0), Band(0.4375, 0.5)], gap=0.125)
+    (Band(low=-0.125, high=0.0), Band(low=0.25, high=0.5))
     """
     turned = [(band.low - math.floor(band.low + 0.5), band.width) for band in bands]
     joined: list[Band] = []
@@ -200,7 +200,7 @@ def design_pulse(
     widened: float = 0.0,
     stopband_db: float = STOPBAND_DB,
 ) -> Taps:
-    """Design a pulse whose spectrum is the shape of a signal's power spectrum inside some bands.
+    """Design a pulse whose power spectrum has the shape of a signal's inside some bands.
 
     Parameters
     ----------
@@ -227,6 +227,6 @@ def design_pulse(
         inside |= (place - band.low + widened) % 1.0 < band.width + 2 * widened
     half = min(half_length, n // 2 - 1)
     aim = stopband_db + _MARGIN_DB
-    pulse = scipy.fft.ifft(np.where(inside, spectrum, 0.0))
+    pulse = scipy.fft.ifft(np.where(inside, np.sqrt(spectrum), 0.0))
     taps = pulse[np.arange(-half, half + 1)] * kaiser_window(half, kaiser_beta(aim))
     return np.asarray(taps / taps[half].real)

@@ -26,6 +26,8 @@ TRIAL_SAMPLES = 1 << 18
 """Samples on which a method is tried; a loop up to this whole."""
 TRIAL_STRETCH = 1 << 15
 """One stretch of a longer loop, at least."""
+SHORTEST_STRETCH = 1 << 12
+"""One stretch of a gated loop, at least: it lasts as long as the shortest burst."""
 POINTS_OF_BAND = 16
 """Grid on which the peak between samples is read, over the width of the band."""
 TOLERANCE = 2e-4
@@ -146,7 +148,8 @@ class Pilot:
         for start, stop in self.stretches:
             got = evaluate({self.source: (start, stop), signal: (start - reach, stop + reach)})
             wide = got[signal]
-            before, after = got[self.source], wide[reach : wide.size - reach]
+            after = wide[reach : wide.size - reach]
+            before = after if signal is self.source else got[self.source]
             is_on = slice(None) if self.bursts is None else self.bursts.is_on(start, stop)
             x, y = before[is_on].astype(np.complex128), after[is_on].astype(np.complex128)
             sums.append(
@@ -206,6 +209,8 @@ def look(source: Signal, *, oversampling: float, halo: int) -> Pilot | None:
     stretches: tuple[Range, ...] = ((0, n),)
     if n > TRIAL_SAMPLES:
         length = min(max(TRIAL_STRETCH, 2 * halo), TRIAL_SAMPLES)
+        if bursts is not None:  # a stretch begins with a burst: no longer than it lasts
+            length = max(min(length, bursts.shortest_samples), SHORTEST_STRETCH)
         stretches = tuple(
             (start, start + length)
             for start in _spread(source, bursts, max(TRIAL_SAMPLES // length, 2))

@@ -100,8 +100,8 @@ class PeakCancellation:
     passes : int
         How often peaks are looked for and cancelled; 1 to 32. Each costs a pair of transforms.
     pulse : {"spectrum", "band"}
-        A pulse with the shape of the signal's own power spectrum, so that every carrier of a
-        composite bears its share; or one that is flat over the bands.
+        A pulse whose power spectrum has the shape of the signal's own, so that every carrier of
+        a composite bears its share; or one that is flat over the bands.
     passbands : tuple of Passband
         Bands of the signal, where distortion is allowed; found on the signal if not given.
     transition_hz : Fraction, optional

@@ -28,7 +28,7 @@ from wavegen.stages.crest.passband import filled_band
 
 DEFAULT_PER_BAND = 2.0
 """Length of the window, where none is given, over the reciprocal of the bandwidth."""
-DEFAULT_SUPPRESSION_DB = 40.0
+DEFAULT_SUPPRESSION_DB = 50.0
 LONGEST_HALF_LENGTH = 1 << 12
 PASSES = 2
 """Looks for the highest samples of each peak; what still stands above after them (flanks of a
@@ -156,7 +156,7 @@ class PeakWindowing:
         price of EVM.
     suppression_db : float, optional
         Kaiser: side lobes of the window's spectrum, dB; Gaussian: how far its ends lie under
-        its middle, dB. 21 to 120; 40 if not given; a Hann window has none.
+        its middle, dB. 21 to 120; 50 if not given; a Hann window has none.
 
     Notes
     -----
