@@ -50,12 +50,26 @@ def reason(settings):
 def test_what_has_no_law_says_so_by_name():
     assert "DFT-spread" in reason(ofdm(group(spreading="dft")))
     assert "bpsk" in reason(ofdm(group(constellation="bpsk")))
-    assert "20 subcarriers" in reason(ofdm(group("1..20")))
-    # 60 subcarriers, one of which has nearly all the power.
-    assert "subcarriers" in reason(ofdm(group("1..60"), group("61", level_db=40.0)))
+    assert "lattices" in reason(ofdm(group("1..4")))
     assert "finite pattern" in reason(ofdm(group(data=Pattern(bits=BitText("1100")))))
     pn = PseudoRandom(sequence="pn23")
     assert "the same pn23" in reason(ofdm(group("-50..-1", data=pn), group("1..50", data=pn)))
+
+
+def test_few_subcarriers_are_gone_through_sample_by_sample():
+    few = ofdm(group("1..24", "64qam"))
+    assert "24 subcarriers" in few.term(site(few)).reason
+    law = few.law(site(few))
+    # E x^2 = 2 + k4 / N: 2 int x P(p > x) dx by Simpson's rule.
+    x = np.linspace(0, 40, 4001)
+    weights = np.r_[1, np.tile([4, 2], 1999), 4, 1] / 300
+    above = law.ccdf(10 * np.log10(np.maximum(x, 1e-30)))
+    assert np.sum(weights * above) == pytest.approx(1, abs=1e-6)
+    k4 = np.mean(np.abs(Constellation.parse("64qam").points) ** 4) - 2
+    assert 2 * np.sum(weights * x * above) == pytest.approx(2 + k4 / 24, abs=1e-5)
+    # One subcarrier with nearly all the power leaves few, too, whatever their number is.
+    loud = ofdm(group("1..60"), group("61", level_db=20.0))
+    assert "of 3 subcarriers" in loud.term(site(loud)).reason
 
 
 def test_a_pseudo_random_sequence_serves_down_to_its_length():

@@ -174,7 +174,8 @@ class Ofdm:
 
     def law(self, site: Site) -> Law | NoLaw:
         """Return the law of the envelope over seeds; none by name where there is none."""
-        return ofdm_law(self.term(site))
+        layout = self._lay_out(site.sample_rate_hz, site.path)
+        return ofdm_law(self, site, layout, self._n_frame)
 
     def symbol_papr_law(self, site: Site) -> LevelCrossing | NoLaw:
         """Return the law of the PAPR per symbol, which is not that of the envelope."""

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from typing import Protocol
 
 import numpy as np
@@ -17,6 +17,12 @@ from wavegen.laws.mixture import KnownAmplitudes, MixedTail
 from wavegen.laws.papr_symbol import LevelCrossing
 from wavegen.laws.radial import RadialLaw, Tail
 from wavegen.laws.term import NoLaw
+from wavegen.sources.ofdm_instants import (
+    MOST_SUBCARRIERS,
+    Carriers,
+    Instants,
+    law_of_instants,
+)
 from wavegen.sources.ofdm_layout import Layout
 from wavegen.sources.ofdm_moments import Drawn, Moments, OfdmTerm, moments_of
 from wavegen.sources.ofdm_parts import Group, Pilots, part_of_group, part_of_pilots
@@ -42,6 +48,17 @@ class Settings(Protocol):
     @property
     def half_subcarrier_shift(self) -> bool:
         """Whether every subcarrier stands half a spacing higher."""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Laid:
+    """What settings come to."""
+
+    term: OfdmTerm
+    on: NDArray[np.bool_]
+    scale: float
+    uneven: str | None
+    """Why the data are not isotropic."""
 
 
 def ofdm_term(settings: Settings, site: Site, layout: Layout, n_frame: int) -> OfdmTerm | NoLaw:
@@ -70,6 +87,13 @@ def ofdm_term(settings: Settings, site: Site, layout: Layout, n_frame: int) -> O
     RecipeError
         As raised by a group or an entry of pilots.
     """
+    laid = _lay(settings, site, layout, n_frame)
+    if isinstance(laid, NoLaw):
+        return laid
+    return NoLaw(reason=laid.uneven) if laid.uneven else laid.term
+
+
+def _lay(settings: Settings, site: Site, layout: Layout, n_frame: int) -> _Laid | NoLaw:
     quiet = replace(site, notes=[])
     groups = [
         part_of_group(quiet, f"groups[{i}]", x, n_frame) for i, x in enumerate(settings.groups)
@@ -81,13 +105,11 @@ def ofdm_term(settings: Settings, site: Site, layout: Layout, n_frame: int) -> O
     data = _data_of(settings.groups, site)
     if isinstance(data, NoLaw):
         return data
+    if any(group.spreading is not None for group in settings.groups):
+        return NoLaw(reason="DFT-spread subcarriers have no law")
     scale = 1 / math.sqrt(mean_power(layout, parts, is_shifted=is_shifted))
     moments, on, clock = moments_of(layout, parts, is_shifted=is_shifted, scale=scale)
     drawn = [_drawn_of(settings.groups, row, scale) for row in on]
-    for state in drawn:
-        reason = _unlawful(settings.groups, state)
-        if reason:
-            return NoLaw(reason=reason)
     names = dict.fromkeys(group.constellation.name for group in settings.groups)
     has_known = any(m.known is not None for m in moments)
     made = OfdmTerm(
@@ -103,15 +125,70 @@ def ofdm_term(settings: Settings, site: Site, layout: Layout, n_frame: int) -> O
         moments=tuple(moments),
         drawn=tuple(drawn),
     )
-    return replace(made, clock_samples=1) if made.is_uniform else made
+    term = replace(made, clock_samples=1) if made.is_uniform else made
+    reasons = (_uneven(settings.groups, state) for state in drawn)
+    return _Laid(term=term, on=on, scale=scale, uneven=next(filter(None, reasons), None))
 
 
-def ofdm_law(term: OfdmTerm | NoLaw) -> Law | NoLaw:
+def ofdm_law(settings: Settings, site: Site, layout: Layout, n_frame: int) -> Law | NoLaw:
     """Return the law of an OFDM signal on its own.
 
     Parameters
     ----------
-    term : OfdmTerm or NoLaw
+    settings, site, layout, n_frame
+        As in :func:`ofdm_term`.
+
+    Returns
+    -------
+    Law or NoLaw
+
+    Notes
+    -----
+    Where the data are not isotropic the two-dimensional function is averaged over the samples of
+    a symbol: :mod:`wavegen.sources.ofdm_instants`.
+    """
+    laid = _lay(settings, site, layout, n_frame)
+    if isinstance(laid, NoLaw):
+        return laid
+    if not laid.uneven:
+        return law_of_moments(laid.term)
+    n_most = sum(len(group.subcarriers) for group in settings.groups)
+    used = [k for group in settings.groups for k in group.subcarriers.indices]
+    is_flat = any(_is_on_a_line(group.constellation.points) for group in settings.groups)
+    if n_most > MOST_SUBCARRIERS or is_flat or not all(laid.term.drawn):
+        return NoLaw(reason=laid.uneven)
+    shift = 0.5 if settings.half_subcarrier_shift else 0.0
+    carriers = [
+        tuple(
+            Carriers(
+                turns=(np.array(group.subcarriers.indices) + shift) / layout.n_fft,
+                phases=np.angle(group.rotation.over(len(group.subcarriers))),
+                points=(group.constellation.points - _mean(group.constellation.points))
+                * (10 ** (group.level_db / 20) * laid.scale),
+            )
+            for group, is_on in zip(settings.groups, row, strict=False)
+            if is_on
+        )
+        for row in laid.on
+    ]
+    span = max(used) - min(used) + 1
+    instants = Instants.of(laid.term.moments, carriers, n_fft=layout.n_fft, span=span)
+    if instants is None:
+        return NoLaw(reason=laid.uneven)
+    return law_of_instants(
+        instants,
+        name=laid.term.name,
+        peak=laid.term.peak,
+        lowest_probability=laid.term.lowest_probability,
+    )
+
+
+def law_of_moments(term: OfdmTerm) -> Law | NoLaw:
+    """Return the law of what is isotropic about what is known.
+
+    Parameters
+    ----------
+    term : OfdmTerm
         From :func:`ofdm_term`.
 
     Returns
@@ -123,8 +200,6 @@ def ofdm_law(term: OfdmTerm | NoLaw) -> Law | NoLaw:
     Moments without data (pilots alone, silent symbols) are counted as they are. The others are
     inverted together where their data have about the same power.
     """
-    if isinstance(term, NoLaw):
-        return term
     n_all = sum(moments.count for moments in term.moments)
     weights: list[float] = []
     tails: list[Tail] = []
@@ -219,12 +294,16 @@ def _mean(points: NDArray[np.complex128]) -> complex:
     return mean if abs(mean) > _ROUNDING else 0j
 
 
-def _unlawful(groups: Sequence[Group], state: Sequence[Drawn]) -> str | None:
+def _is_on_a_line(points: NDArray[np.complex128]) -> bool:
+    """Return whether points lie on a line, as those of BPSK: their sums are lattices on it."""
+    centred = points - points.mean()
+    return bool(abs(np.mean(centred**2)) > (1 - _ROUNDING) * np.mean(np.abs(centred) ** 2))
+
+
+def _uneven(groups: Sequence[Group], state: Sequence[Drawn]) -> str | None:
     """Return why the data of a state are not isotropic, or None."""
     for group in groups:
         points = group.constellation.points - _mean(group.constellation.points)
-        if group.spreading is not None and np.abs(points).max() > _ROUNDING:
-            return "DFT-spread subcarriers have no law"
         skew = max(abs(np.mean(points**2)), abs(np.mean(points**3)))
         if skew > _ROUNDING:
             name = group.constellation.name

@@ -64,6 +64,8 @@ class Moments:
         The stretch, counted from there.
     known : complex128 array, shape (high - low,), or None
         What is known of the samples: pilots, and the mean of data. None for zero.
+    prefix : int
+        Prefix of the symbols, samples.
     """
 
     sources: tuple[tuple[int, float], ...]
@@ -71,6 +73,7 @@ class Moments:
     low: int
     high: int
     known: Complexes | None
+    prefix: int = 0
 
     @property
     def count(self) -> int:
@@ -164,6 +167,7 @@ def _of_kind(
                 low=low,
                 high=high,
                 known=some if some.any() else None,
+                prefix=prefix,
             )
         )
     return made

@@ -1,0 +1,136 @@
+import math
+from fractions import Fraction
+
+import numpy as np
+import pytest
+
+from wavegen.core.site import Site
+from wavegen.laws.term import NoLaw
+from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.ofdm import Ofdm
+from wavegen.sources.ofdm_instants import Carriers, Instants, law_of_instants, same_points
+from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
+from wavegen.sources.ofdm_moments import Moments
+from wavegen.sources.ofdm_parts import Group, Pilots
+from wavegen.sources.subcarriers import IndexSet, PilotValues
+
+QPSK = np.exp(0.5j * np.pi * (np.arange(4) + 0.5))
+T = np.linspace(0.2, 9, 12)
+ANGLE = np.array([0.1, 1.0, 2.5])
+
+
+def carriers_of(count, n_fft, points=QPSK):
+    return Carriers(
+        turns=np.arange(count) / n_fft,
+        phases=np.zeros(count),
+        points=np.asarray(points) / math.sqrt(count * np.mean(np.abs(points) ** 2)),
+    )
+
+
+def instants_of(carriers, n_fft):
+    moments = Moments(
+        sources=((0, 1.0),), starts=np.zeros(1, np.int64), low=0, high=n_fft, known=None
+    )
+    return Instants.of([moments], [(carriers,)], n_fft=n_fft, span=carriers.turns.size)
+
+
+@pytest.mark.parametrize("name", ["bpsk", "qpsk", "16qam", "8psk", "32qam"])
+def test_the_factor_is_the_mean_over_the_points(name):
+    points = Constellation.parse(name).points
+    carriers = carriers_of(3, 16, points)
+    want = np.ones((T.size, ANGLE.size), complex)
+    for turn in carriers.turns:
+        turned = carriers.points * np.exp(2j * np.pi * turn * 5) * 0.8
+        along = np.real(turned[:, None] * np.exp(-1j * ANGLE))
+        want *= np.exp(1j * np.multiply.outer(T, along)).mean(axis=1)
+    assert carriers.factor(T, ANGLE, 5.0, 0.8) == pytest.approx(want, abs=1e-13)
+
+
+def test_points_without_opposites():
+    carriers = carriers_of(2, 16, [1, -0.5 + 0.5j, -0.5 - 0.5j])
+    value = carriers.factor(T, ANGLE, 1.0, 1.0)
+    assert np.abs(value.imag).max() > 0.01
+    assert same_points(carriers.points, carriers.points[::-1])
+    assert not same_points(carriers.points, -carriers.points)
+
+
+def test_samples_that_look_alike_are_gone_through_once():
+    # A quarter turn and the mirror image: 0 ... 8 of 64.
+    found = instants_of(carriers_of(10, 64), 64)
+    assert found.weights.size == 9
+    assert found.weights.sum() == pytest.approx(1)
+    # 8PSK too; BPSK repeats after half a turn; what crowds is thinned out.
+    assert instants_of(carriers_of(10, 64, [1, -1]), 64).weights.size == 17
+    assert instants_of(carriers_of(10, 4096), 4096).weights.size == 17
+
+
+def test_the_average_is_that_of_every_sample():
+    n_fft, carriers = 64, carriers_of(10, 64)
+    angle = np.arange(256) * (2 * np.pi / 256)
+    want = np.mean([carriers.factor(T, angle, n, 1.0).mean(axis=1) for n in range(n_fft)], axis=0)
+    assert instants_of(carriers, n_fft).characteristic(T) == pytest.approx(want, abs=1e-12)
+
+
+def test_ten_qpsk_subcarriers_by_enumeration():
+    """All 4^9 symbols that begin with one phase, at all different samples: exact.
+
+    Exact levels come in steps of the lattices: 0.03 dB, about twice what the law says of itself.
+    """
+    n_fft = 64
+    instants = instants_of(carriers_of(10, n_fft), n_fft)
+    law = law_of_instants(instants, name="ten", peak=math.sqrt(10), accuracy_db=0.02)
+    powers = []
+    for n in range(n_fft // 4):
+        x = np.ones(1, complex)
+        for k in range(1, 10):
+            turned = np.exp(0.5j * np.pi * np.arange(4) + 2j * np.pi * k * n / n_fft)
+            x = np.add.outer(x, turned).ravel()
+        powers.append(np.abs(x) ** 2 / 10)
+    power = np.sort(np.concatenate(powers))[::-1]
+    for probability in (0.1, 0.01, 1e-3, 1e-4):
+        exact_db = 10 * math.log10(power[int(probability * power.size)])
+        assert float(law.level_db(probability)) == pytest.approx(exact_db, abs=0.03)
+
+
+def test_lattices_have_no_law():
+    instants = instants_of(carriers_of(3, 16), 16)
+    found = law_of_instants(instants, name="three", peak=math.sqrt(3))
+    assert isinstance(found, NoLaw)
+    assert "lattices" in found.reason
+
+
+def test_36_subcarriers_with_prefix_edge_and_pilots_in_a_recipe():
+    settings = Ofdm(
+        subcarrier_spacing_hz=Fraction(15000),
+        groups=(
+            Group(
+                subcarriers=IndexSet.parse("-18..-1, 1..18"),
+                constellation=Constellation.parse("qpsk"),
+            ),
+        ),
+        pilots=(Pilots(subcarriers=IndexSet.parse("19..21"), values=PilotValues.parse([1, -1])),),
+        cyclic_prefix=CyclicPrefix.parse("8 samples"),
+        edge_window=Stretch.parse("4 samples"),
+    )
+    site = Site(sample_rate_hz=Fraction(15000) * 64, n_samples=72, seed=1, label="a", path="signal")
+    law = settings.law(site)
+    assert not isinstance(law, NoLaw), law.reason
+    assert isinstance(settings.term(site), NoLaw)
+    rng = np.random.default_rng(5)
+    n = 40_000
+    grid = np.zeros((n + 1, 64), complex)
+    used = np.r_[-18:0, 1:19]
+    grid[:, used] = QPSK[rng.integers(4, size=(n + 1, 36))]
+    grid[:, [19, 20, 21]] = (1, -1, 1)
+    body = np.fft.ifft(grid, axis=1) * 64
+    symbol = np.concatenate((body[:, -8:], body), axis=1)
+    w = 0.5 - 0.5 * np.cos(np.pi * (np.arange(4) + 0.5) / 4)
+    symbol[1:, :4] = w * symbol[1:, :4] + (1 - w) * body[:-1, :4]
+    power = np.abs(symbol[1:]) ** 2
+    power /= power.mean()
+    for level_db in (-10.0, 0.0, 4.0, 7.0, 8.5):
+        want = float(law.ccdf(level_db))
+        by_symbol = (power > 10 ** (level_db / 10)).mean(axis=1)
+        sigma = by_symbol.std() / math.sqrt(n)
+        # Below the mean the lattices at 4 samples of 64 show: 1 % of their probability.
+        assert by_symbol.mean() == pytest.approx(want, abs=4 * sigma + 1e-3 * (level_db < 0))
