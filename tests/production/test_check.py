@@ -44,6 +44,49 @@ def test_as_it_was_made_nothing_is_measured(made, monkeypatch):
     assert json.loads(json.dumps(document, allow_nan=False)) == document
 
 
+def test_files_are_read_as_loops(made, monkeypatch):
+    write(made, codes(made) // 2)
+    seen = []
+
+    def measure(subject, **options):
+        seen.append((subject.loops, sorted(options)))
+        return {**find_stimulus(made).document}
+
+    monkeypatch.setattr(room, "measure", measure)
+    assert first(made)["verdict"] == "match"
+    assert seen == [(True, ["progress", "workers"])]
+
+
+TWO_CHANNELS = """\
+second_channel: {signal: {kind: tones, count: 8, spacing: 10 kHz, phases: newman}}
+output: {iq: [{format: raw, datatype: ci16_le}]}
+"""
+
+
+class TestTwoChannels:
+    @pytest.fixture
+    def folder(self, lab, tmp_path):
+        return lab.make(lab.NOISE + TWO_CHANNELS, tmp_path).folder
+
+    @pytest.mark.parametrize("channel", [0, 1])
+    def test_each_is_compared_with_its_own_figures(self, folder, channel):
+        assert check(find_stimulus(folder))["verdict"] == "match"
+        path = folder / "case.ci16_le"
+        rails = np.fromfile(path, "<i2").reshape(-1, 4)
+        rails[0, 0] += 1
+        rails.tofile(path)
+        (row,) = check(find_stimulus(folder))["files"]
+        assert (row["verdict"], row["hash"]) == ("match", "differs")
+        rails[:, 2 * channel : 2 * channel + 2] //= 2
+        rails.tofile(path)
+        (row,) = check(find_stimulus(folder))["files"]
+        assert row["verdict"] == "differ"
+        verdicts = [one["verdict"] for one in row["channels"]]
+        assert verdicts == ["differ", "match"][:: 1 if channel == 0 else -1]
+        assert row["mean_difference_db"] == pytest.approx(-6.02, abs=0.01)
+        assert all(reason.startswith(f"channel {channel}: ") for reason in row["reasons"])
+
+
 def test_a_data_file_stands_for_itself(made):
     (made / "case.cf32_le").unlink()
     assert check(find_stimulus(made / "case.sigmf-data"))["verdict"] == "match"

@@ -196,6 +196,11 @@ def test_a_gated_stimulus_keeps_its_on_time(lab, tmp_path):
         made.files[0], tmp_path / "b", format="npy", sample_rate_hz=Fraction(8_000_000)
     ).document
     assert twice["on_time"]["duty"] == 0.25
+    marks = [
+        np.genfromtxt(folder / f"{name}.markers.csv", int, delimiter=",", skip_header=1)[:, :2]
+        for folder, name in ((made.folder, "case"), (tmp_path / "b" / "case-npy", "case-npy"))
+    ]
+    np.testing.assert_array_equal(marks[1], 2 * marks[0])
     assert twice["on_time"]["mean_dbfs"] == pytest.approx(
         made.document["on_time"]["mean_dbfs"], abs=0.05
     )
@@ -254,6 +259,39 @@ def test_a_recording(recording, tmp_path):
     done = run(done.files[0], tmp_path / "b", format="wav", sample_rate_hz=Fraction(1_500_000))
     assert done.document["n_samples"] == 7500
     assert any("ends" in note["text"] for note in done.document["warnings"])
+
+
+def test_a_recording_does_not_go_round(tmp_path):
+    """A tone of 2.5 cycles would jump at a seam: read cyclically it peaks 1 dB higher there."""
+    path = tmp_path / "tone.cf32_le"
+    (0.5 * np.exp(2j * np.pi * 2.5 * np.arange(1000) / 1000)).astype("<c8").tofile(path)
+    hints = ReadHints(sample_rate_hz=Fraction(1000))
+    for number, wanted in enumerate(({}, {"peak_dbfs": -6.0206})):
+        done = run(path, tmp_path / str(number), hints, format="sigmf", **wanted)
+        assert done.document["peak_between_samples_dbfs"] == pytest.approx(-6.02, abs=0.01)
+        assert done.document["converted"]["gain_db"] == pytest.approx(0, abs=0.01)
+
+
+def test_a_stimulus_of_real_samples_goes_round(lab, tmp_path):
+    real = "output: {iq: [{format: wav, datatype: ri16_le, real: {centre: 1 MHz}}]}\n"
+    made = lab.make(lab.SINGLE.replace("1 MHz,", "0.5 MHz,") + real, tmp_path / "a")
+    done = run(made.files[0], tmp_path / "b", format="sigmf", datatype="cf32_le")
+    assert done.document["loop"]["seam"]["is_clean"]
+    assert done.document["warnings"] == made.document["warnings"]
+    for key in ("mean_dbfs", "peak_dbfs", "papr_between_samples_db"):
+        assert done.document[key] == pytest.approx(made.document[key], abs=1e-3)
+    assert check(find_stimulus(done.folder))["verdict"] == "match"
+
+
+def test_one_of_two_channels_is_a_recording(lab, tmp_path):
+    second = "second_channel: {signal: {kind: noise, bandwidth: 1 MHz}}\n"
+    made = lab.make(lab.TONES + second, tmp_path / "a")
+    with pytest.raises(FileError, match="channel"):
+        run(made.files[0], tmp_path / "b", format="wav")
+    done = run(made.files[0], tmp_path / "b", ReadHints(channel=1), format="wav")
+    assert done.document["is"] == "a recording"
+    figures = made.document["files"][0]["channels"][1]
+    assert done.document["papr_db"] == figures["papr_db"]
 
 
 def test_real_samples_become_their_envelope(tmp_path):

@@ -97,8 +97,33 @@ def test_a_sidecar(made):
     assert found["papr_db"] == made.document["papr_db"]
     assert [item["is_there"] for item in found["files"]] == [True, True]
     made.files[1].unlink()
+    assert len(made.document["files"][1]["all_names"]) == 1
     found = show_sidecar(find_stimulus(made.folder))
     assert [item["is_there"] for item in found["files"]] == [True, False]
+
+
+def test_half_of_a_pair_is_missing(lab, tmp_path):
+    made = lab.make(lab.TONES, tmp_path)
+    made.files[1].unlink()
+    (item,) = show_sidecar(find_stimulus(made.folder))["files"]
+    assert (item["name"], item["is_there"]) == ("case.sigmf-data", False)
+
+
+@pytest.mark.parametrize("form", ["raw", "sigmf"])
+def test_two_channels(lab, tmp_path, form):
+    second = "second_channel: {signal: {kind: noise, bandwidth: 1 MHz}}\n"
+    made = lab.make(lab.TONES + second + f"output: {{iq: [{form}]}}\n", tmp_path)
+    figures = made.document["files"][0]["channels"]
+    for hints, channel in ((NO_HINTS, 0), (ReadHints(channel=1), 1)):
+        found = show_recording(made.files[0], hints)
+        assert (found["n_channels"], found["channel"]) == (2, channel)
+        assert found["level"]["papr_db"] == figures[channel]["papr_db"]
+    find_stimulus(made.folder).path.unlink()
+    if form == "sigmf":
+        found = show_recording(made.files[0], NO_HINTS)
+        assert (found["n_channels"], found["channel"], found["is"]) == (2, 0, "recording")
+    with pytest.raises(FileError):
+        show_recording(made.files[0], ReadHints(channel=2))
 
 
 def test_what_is_a_sidecar_or_a_curve(made, tmp_path):
