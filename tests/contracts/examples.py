@@ -31,10 +31,10 @@ from wavegen.stages.channel.scale import Scale
 from wavegen.stages.combine.sum import Part, Sum
 from wavegen.stages.crest.clip import Clip
 from wavegen.stages.crest.clip_filter import ClipFilter
-from wavegen.stages.crest.passband import Passband
 from wavegen.stages.crest.peak_cancellation import PeakCancellation
 from wavegen.stages.crest.peak_windowing import PeakWindowing
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.passband import Passband
 
 RATE_HZ = Fraction(1_000_000)
 LOOP_SAMPLES = 40_000

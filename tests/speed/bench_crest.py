@@ -23,10 +23,10 @@ from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.dual_projection import Corrected, DualRound, HeldBelow
 from wavegen.dsp.overlap_save import BLOCK_SAMPLES, ROWS_AT_LEAST
 from wavegen.stages.crest.clip_filter import ClipFilter, ClipFilterRound
-from wavegen.stages.crest.passband import Passband
 from wavegen.stages.crest.peak_cancellation import CancellationPass, PeakCancellation
 from wavegen.stages.crest.peak_windowing import PeakWindowed, PeakWindowing
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.passband import Passband
 
 RATE_HZ = Fraction(1_000_000)
 LOOP = 1 << 21

@@ -26,10 +26,10 @@ from wavegen.core.signal import Signal
 from wavegen.core.site import Site
 from wavegen.core.timespan import TimeSpan
 from wavegen.stages.crest.clip_filter import ClipFilter
-from wavegen.stages.crest.passband import Passband
 from wavegen.stages.crest.peak_cancellation import PeakCancellation
 from wavegen.stages.crest.peak_windowing import PeakWindowing
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.passband import Passband
 
 RATE_HZ = Fraction(1_000_000)
 EARLIER = {

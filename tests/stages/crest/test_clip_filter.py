@@ -11,7 +11,7 @@ from wavegen.core.timespan import TimeSpan
 from wavegen.sources.noise import Noise
 from wavegen.stages.channel.gate import Gate, on_time
 from wavegen.stages.crest.clip_filter import ClipFilter
-from wavegen.stages.crest.passband import Passband
+from wavegen.stages.passband import Passband
 
 N = 1 << 16
 

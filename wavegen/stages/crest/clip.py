@@ -17,8 +17,8 @@ from wavegen.laws.law import Law
 from wavegen.laws.mapped import clip_law
 from wavegen.laws.operations import EnvelopeTerm
 from wavegen.laws.term import NoLaw, Term
+from wavegen.stages.ceiling import PILOT_SAMPLES, STRETCH_SAMPLES, pilot_power
 from wavegen.stages.channel.gate import on_time
-from wavegen.stages.crest.ceiling import PILOT_SAMPLES, STRETCH_SAMPLES, pilot_power
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 128 kB between."""

@@ -19,8 +19,8 @@ from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.envelope_excess import excess_over
-from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.crest.passband import Passband, filled_band
+from wavegen.stages.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.passband import Passband, filled_band
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

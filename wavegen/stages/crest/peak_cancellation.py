@@ -19,8 +19,8 @@ from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.envelope_excess import local_peaks, power_of
 from wavegen.dsp.occupied_bands import design_pulse
-from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.crest.passband import Passband, filled_band
+from wavegen.stages.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.passband import Passband, filled_band
 
 LONGEST_LOBE = 64
 """Samples compared on each side of a peak, at most."""

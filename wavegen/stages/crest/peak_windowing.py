@@ -23,8 +23,8 @@ from wavegen.core.timespan import TimeSpan
 from wavegen.core.units import QuantityError, format_s
 from wavegen.dsp.envelope_excess import local_peaks, shortfall_of
 from wavegen.dsp.windows import kaiser_beta, kaiser_window
-from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.crest.passband import filled_band
+from wavegen.stages.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.passband import filled_band
 
 DEFAULT_PER_BAND = 2.0
 """Length of the window, where none is given, over the reciprocal of the bandwidth."""

@@ -17,8 +17,8 @@ from annotated_types import Ge, Gt, Le
 from wavegen.core.signal import Signal
 from wavegen.core.site import Site
 from wavegen.dsp.dual_projection import hold_below, project
-from wavegen.stages.crest.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.crest.passband import Passband, filled_band
+from wavegen.stages.ceiling import look, reduce_to, refuse_zero
+from wavegen.stages.passband import Passband, filled_band
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

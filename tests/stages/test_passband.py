@@ -10,7 +10,7 @@ from wavegen.dsp.occupied_bands import WHOLE
 from wavegen.sources.carrier import Carrier
 from wavegen.sources.noise import Noise
 from wavegen.stages.combine.sum import Part, Sum
-from wavegen.stages.crest.passband import NARROWEST_TRANSITION, Passband, filled_band
+from wavegen.stages.passband import NARROWEST_TRANSITION, Passband, filled_band
 
 N = 1 << 16
 

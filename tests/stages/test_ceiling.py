@@ -6,7 +6,7 @@ import pytest
 from wavegen.core.errors import RecipeError
 from wavegen.core.render import samples_of
 from wavegen.core.site import Site
-from wavegen.stages.crest.ceiling import (
+from wavegen.stages.ceiling import (
     PILOT_SAMPLES,
     TRIAL_SAMPLES,
     find_amplitude,
