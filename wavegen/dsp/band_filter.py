@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -16,6 +17,9 @@ from wavegen.dsp.overlap_save import (
     fft_length,
     filter_response,
 )
+
+CHUNK_SAMPLES = 1 << 17
+"""Samples transformed in one chunk: what goes on between transforms stays near the core."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -54,6 +58,18 @@ class BandFilter:
     def _response(self) -> NDArray[np.float32]:
         """The real response, each bin twice: once for each rail; shape (2 n_fft,)."""
         return np.repeat(filter_response(self.taps, self.n_fft).real, 2)
+
+    def chunks(self, n_out: int) -> Iterator[tuple[int, int]]:
+        """Yield ranges of whole rows whose intermediate results stay in cache.
+
+        Parameters
+        ----------
+        n_out : int
+            Samples wanted, from the grid on.
+        """
+        length = max(CHUNK_SAMPLES // self.n_fft, ROWS_AT_LEAST) * self.hop
+        for low in range(0, n_out, length):
+            yield low, min(low + length, n_out)
 
     def apply(self, samples: Samples, n_out: int, *, base: Samples | None = None) -> Samples:
         """Filter a stretch that begins on the grid, and subtract it from another if given.

@@ -157,12 +157,17 @@ class DualRound(Signal):
         source = arrays[0]
         if len(arrays) == 1:
             return excess_over(source, self.amplitude)
-        moved = arrays[1]
-        if len(arrays) == 3 and self.factor:
-            moved = ahead(moved, arrays[2], self.factor)
         reach = self.band.half_length
-        left = self.band.apply(moved, stop - start, base=source)
-        return excess_over(left, self.amplitude, plus=moved[reach : reach + stop - start])
+        out = np.empty(stop - start, np.complex64)
+        for low, high in self.band.chunks(out.size):
+            moved = arrays[1][low : high + 2 * reach]
+            if len(arrays) == 3 and self.factor:
+                moved = ahead(moved, arrays[2][low : high + 2 * reach], self.factor)
+            left = self.band.apply(moved, high - low, base=source[low:high])
+            out[low:high] = excess_over(
+                left, self.amplitude, plus=moved[reach : reach + high - low]
+            )
+        return out
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -50,14 +50,15 @@ class ClipFilterRound(Signal):
         """Clip, filter the excess, subtract."""
         source = arrays[0]
         reach = self.band.half_length
-        out = self.band.apply(
-            excess_over(source, self.amplitude),
-            stop - start,
-            base=source[reach : source.size - reach],
-        )
-        if self.gain != 1.0:
-            flat = out.view(np.float32)
-            np.multiply(flat, np.float32(self.gain), out=flat)
+        out = np.empty(stop - start, np.complex64)
+        for low, high in self.band.chunks(out.size):
+            piece = source[low : high + 2 * reach]
+            made = self.band.apply(
+                excess_over(piece, self.amplitude), high - low, base=piece[reach : -reach or None]
+            )
+            np.multiply(
+                made.view(np.float32), np.float32(self.gain), out=out[low:high].view(np.float32)
+            )
         return out
 
 
