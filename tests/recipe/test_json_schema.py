@@ -281,6 +281,12 @@ def test_notations_describe_themselves_or_pass(tables, members):
     assert "does not describe itself. Read anything." in described
 
 
+@pytest.mark.parametrize(("delays", "is_right"), [("[1 us, 2 ns]", True), ("[1 us, 2]", False)])
+def test_units_inside_lists(tables, delays, is_right):
+    text = f"{HEAD}signal: {{kind: carrier, symbol_rate: 1 MHz, delays: {delays}}}\n"
+    assert is_valid(Draft202012Validator(recipe_schema(tables)), text) == is_right
+
+
 def test_a_default_kind_may_be_left_out(tables):
     validator = Draft202012Validator(recipe_schema(tables))
     for data, is_right in (
