@@ -161,6 +161,18 @@ def test_moments_and_their_intervals(study):
     assert held >= 33
 
 
+def test_error_of_the_second_moment(study):
+    """sqrt(32/3 / n) at L = 4, the mean's part taken off.
+
+    ``p^2 - 4 p + 2`` is twice the Laguerre polynomial of degree 2, whose covariance is the fourth
+    power of the correlation ``sinc(k/4)``; these add up to 2/3 of 4 (derivation). With the part
+    of the mean left in it would be 2.6 times as much.
+    """
+    record = sampled(study.Noise().record(np.random.default_rng(5), 1 << 18))
+    expected = (32 / 3 / (1 << 18)) ** 0.5
+    assert record.moment(2).standard_error == pytest.approx(expected, rel=0.27)
+
+
 def test_mean_interval(study):
     """The mean of a flat band of a quarter of the rate has n / 4 independent samples."""
     record = sampled(study.Noise().record(np.random.default_rng(5), 1 << 18))
@@ -179,7 +191,10 @@ def test_a_level_that_drifts_is_told_and_widens(study):
     wide, narrow = (
         np.subtract(*np.flip(record.mean_interval_db())) for record in (drifting, steady)
     )
-    assert wide > 5 * narrow
+    assert narrow < 0.1
+    # Power from 0.64 to 1.44 scatters by 0.23, so that 64 batches seem to give the mean to
+    # 0.5 dB from end to end; batches that follow one another are worth but a few of 64.
+    assert wide > 1.5
 
 
 def test_constant_envelope_and_clipped_wall(study):

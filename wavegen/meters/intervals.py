@@ -216,15 +216,18 @@ class SampledStatistics:
         worth = variance / (np.maximum(runs[ends], 1) * np.maximum(sizes, 1) ** 2)
         return max(float(worth[0]), 1.0), max(float(worth[1]), 1.0)
 
-    def _run_sizes(self, power: NDArray[np.float64]) -> tuple[NDArray[np.float64], ...]:
+    def _run_sizes(
+        self, power: NDArray[np.float64], *, fewest: int = 1
+    ) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Return the mean size of runs above and below powers, two arrays of shape (n_powers,).
 
-        Read at the edges of bins and interpolated; beyond the last run it is that of the last.
+        Read at the edges of bins that have the fewest runs wanted, and interpolated; beyond
+        them, where the sizes shrink slowly, it is that of the last.
         """
         runs, edges = self._edge_runs, self.batches.edges
         above = self.batches.above(edges).sum(axis=1)
-        used = runs >= 1
-        if not np.any(used):
+        used = runs >= min(fewest, runs.max())
+        if not runs.max() >= 1:
             whole = np.full(power.shape, float(self.statistics.n_samples))
             return whole, whole
         over = np.interp(power, edges[used], (above / np.maximum(runs, 1))[used])
@@ -296,7 +299,8 @@ class SampledStatistics:
         share = np.where(is_below, n_samples - above, above) / n_samples
         if self.says_nothing:
             return _Events(share=share, number=share, scale=share, is_below=is_below)
-        over, under = self._run_sizes(power)
+        # The last few runs tell their size no better than their number.
+        over, under = self._run_sizes(power, fewest=RESOLVING_RUNS)
         size = np.where(is_below, under, over)
         high_worth, low_worth = self._worth_of_a_run
         worth = np.where(is_below, low_worth, high_worth)
@@ -311,6 +315,13 @@ class SampledStatistics:
                 number[many] = share[many] ** 2 / variance
         number[~np.isfinite(number)] = 0.0
         return _Events(share=share, number=number, scale=scale, is_below=is_below)
+
+    def event_samples(self, level_db: ArrayLike) -> NDArray[np.float64]:
+        """Return for how many samples beyond a level one independent event counts, shape (n,).
+
+        The variance of a share q of ``n_samples`` is ``q * event_samples / n_samples``.
+        """
+        return np.asarray(self._events(level_db).scale * self.statistics.n_samples)
 
     def level_interval(
         self, probability: ArrayLike, *, confidence: float = CONFIDENCE
