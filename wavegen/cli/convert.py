@@ -18,10 +18,10 @@ class Convert:
     summary = "write a data file in another format, datatype, level or rate"
     description = (
         "Write a data file anew, to OUT/NAME/. A stimulus stays the loop that its sidecar\n"
-        "describes: it is written with a new sidecar, measured on the new codes. Any other\n"
-        "file is a recording. --sample-rate is the rate of the output; a file that does not\n"
-        "say its own rate is taken to have it already, unless --input-sample-rate says\n"
-        "another."
+        "describes: it is written with a new sidecar, measured on the new codes. Any\n"
+        "other file is a recording. --sample-rate is the rate of the output; a file that\n"
+        "does not say its own rate is taken to have it already, unless\n"
+        "--input-sample-rate says another."
     )
 
     @staticmethod

@@ -17,9 +17,9 @@ class Show:
     summary = "show what a file, a sidecar or a recipe says about itself"
     description = (
         "Show format, rate, length and level as a file's header or sidecar says, and\n"
-        "whether its bytes are those that were described; the loop, the roundings and the\n"
-        "parts of a recipe; the summary of a sidecar, or of the folder it is in; the range\n"
-        "of a CCDF curve. Nothing is measured (see `wavegen measure`) or rendered."
+        "whether its bytes are those that were described; the loop, the roundings and\n"
+        "the parts of a recipe; the summary of a sidecar, or of the folder it is in; the\n"
+        "range of a CCDF curve. Nothing is measured (see `wavegen measure`) or rendered."
     )
 
     @staticmethod
