@@ -188,16 +188,36 @@ def tally_pairs(samples: Samples) -> PairTally:
     rest = samples[n_cells * CELL :]
     if not rest.size:
         return body
-    # From the last sample of the cells, for the pair that crosses into the rest.
-    pairs = tally_pairs_by_numpy(samples[n_cells * CELL - 1 :])
     last = tally_pairs_by_numpy(rest)
-    counts, first = added(counts, first, pairs.counts, pairs.first_bin)
+    counts, first = added(counts, first, last.counts, last.first_bin)
+    edge = n_cells * CELL
+    counts, first = added(counts, first, *joint(samples[edge - 1 : edge + 1]))
     return PairTally(
         counts=counts,
         first_bin=first,
         squares=np.concatenate([squares, last.squares]),
         cubes=np.concatenate([cubes, last.cubes]),
     )
+
+
+def joint(samples: Samples) -> tuple[NDArray[np.int64], int]:
+    """Return the count of the one pair that two samples make.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (2,)
+        The last of one stretch and the first of the next.
+
+    Returns
+    -------
+    counts : int64 array, shape (1,) or (0,)
+        Empty where one is exactly zero.
+    first_bin : int
+    """
+    lower = int(numbered_powers(samples)[1].min())
+    if lower < 0:
+        return np.zeros(0, np.int64), 0
+    return np.ones(1, np.int64), lower // FINE_PER_COARSE
 
 
 def added(

@@ -22,6 +22,7 @@ from wavegen.dsp.pair_kernel import (
     added,
     coarse_edges,
     coarsened,
+    joint,
     tally_pairs,
 )
 from wavegen.dsp.power_bins import bin_of
@@ -322,8 +323,7 @@ class BatchedPowerReading:
             found = tally_pairs(piece)
             self._pairs = added(*self._pairs, found.counts, found.first_bin)
             if low:
-                joint = tally_pairs(samples[low - 1 : low + 1])
-                self._pairs = added(*self._pairs, joint.counts, joint.first_bin)
+                self._pairs = added(*self._pairs, *joint(samples[low - 1 : low + 1]))
             if whole:
                 squares.add_cells(found.squares, empty)
                 cubes.add_cells(found.cubes, empty)
@@ -337,8 +337,7 @@ class BatchedPowerReading:
         if not self._first.size:
             self._first = sample.copy()
         elif self._held is None:
-            joint = tally_pairs(np.concatenate([self._last, sample]))
-            self._pairs = added(*self._pairs, joint.counts, joint.first_bin)
+            self._pairs = added(*self._pairs, *joint(np.concatenate([self._last, sample])))
 
     def merge(self, following: Self) -> None:
         """Append the reading of the stretch that starts where this one ends."""
@@ -386,8 +385,7 @@ class BatchedPowerReading:
             sums, rows = self._sums(), getattr(self._power, "rows", {})
         pairs = self._pairs
         if self._meter.loops:
-            joint = tally_pairs(np.concatenate([self._last, self._first]))
-            pairs = added(*pairs, joint.counts, joint.first_bin)
+            pairs = added(*pairs, *joint(np.concatenate([self._last, self._first])))
         counts, first_bin = _stacked(rows, n_measured.size)
         row, place = added(np.zeros(counts.shape[1], np.int64), first_bin, *pairs)
         return BatchedStatistics(
