@@ -14,6 +14,7 @@ import numpy as np
 import scipy.fft
 import scipy.special
 
+from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.inversion import law_of_characteristic
 from wavegen.laws.law import Law
 from wavegen.laws.periodic import PeriodicLaw
@@ -22,6 +23,8 @@ from wavegen.laws.term import BaseTerm, Complexes, NoLaw, Reals, Scaled, Term
 
 HIGHEST_ORDER = 24
 """Multiples of the phases that are looked at: what ties only higher ones does not matter."""
+LONGEST_SERIES = 1 << 13
+"""Terms of the series of parts with data: each costs more than the one before."""
 MOST_RESIDUES = 64
 """Common time indices that are told apart."""
 MOST_STATES = 32
@@ -95,6 +98,10 @@ class LineTerm(BaseTerm):
         along = np.real(self.value * np.exp(-1j * angle_rad))
         return np.asarray(np.exp(1j * np.outer(t, along)))
 
+    def law(self) -> Law:
+        """Return the law of a constant envelope."""
+        return ConstantLaw()
+
 
 @dataclass(frozen=True, eq=False, kw_only=True)
 class ConstantEnvelopeTerm(BaseTerm):
@@ -111,6 +118,10 @@ class ConstantEnvelopeTerm(BaseTerm):
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
     ) -> None:
         """Return None: how its phase is spread is not told."""
+
+    def law(self) -> Law:
+        """Return the law of a constant envelope."""
+        return ConstantLaw()
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -257,6 +268,7 @@ class ProductTerm(BaseTerm):
             mean_power=self.mean_power,
             peak=self.peak,
             lowest_probability=self.lowest_probability,
+            most_terms=LONGEST_SERIES,
         )
 
 
@@ -328,6 +340,18 @@ class TiedTerm(BaseTerm):
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1
     ) -> None:
         """Return None: its directions are not told."""
+
+    def law(self) -> Law | NoLaw:
+        """Return the law by a series that is not too long."""
+        return law_of_characteristic(
+            self.characteristic,
+            name=self.name,
+            holds=self.holds,
+            mean_power=self.mean_power,
+            peak=self.peak,
+            lowest_probability=self.lowest_probability,
+            most_terms=LONGEST_SERIES // 2,
+        )
 
 
 def combine_terms(parts: Sequence[Placed], *, n_samples: int) -> Term | NoLaw:

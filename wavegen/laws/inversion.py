@@ -21,6 +21,8 @@ FIRST_TERMS = 256
 FEW_TERMS = 1 << 12
 NEGLIGIBLE = 1e-14
 """Characteristic functions below this times the root of the number of terms end the series."""
+SLIGHT = 1e-10
+"""Functions below this at the end of the longest series are left: some 1e-12 of probability."""
 EMPTY = 1e-12
 """Probability left above the radius of the series, at most."""
 BLUR_DB = 2e-4
@@ -213,7 +215,7 @@ def series_of(
         block = max(FIRST_TERMS, count // 4)
     phi = np.concatenate(pieces)
     a: Reals = zeros[:count]
-    if left >= NEGLIGIBLE * math.sqrt(count):
+    if left >= SLIGHT:
         wanted = 2 * math.sqrt(math.log(left / 1e-14)) * radius / float(a[-1])
         if wanted > blur:
             return NoLaw(

@@ -47,8 +47,9 @@ class ListedLaw:
         return float(to_db(self.powers[-1]))
 
     def ccdf(self, level_db: ArrayLike) -> NDArray[np.float64]:
-        """Return the share of the samples above a level (dB over the mean)."""
-        above = self.powers.size - np.searchsorted(self.powers, from_db(level_db), side="right")
+        """Return the share of the samples above a level; within 1e-12 of it is not above."""
+        level = from_db(level_db) * (1 + 1e-12)
+        above = self.powers.size - np.searchsorted(self.powers, level, side="right")
         return np.asarray(above / self.powers.size)
 
     def level_db(self, probability: ArrayLike) -> NDArray[np.float64]:
