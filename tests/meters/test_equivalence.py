@@ -181,6 +181,27 @@ def test_wrong_process(study):
     assert found.difference.deviation_db < -1
 
 
+def test_off_most_of_the_time(study):
+    """On for 5 % of the time there is no level at 10 %; on the rest is agreed."""
+    samples = study.PROCESSES.Noise().record(np.random.default_rng(11), 1 << 21)
+    is_on = np.arange(samples.size) // 64 % 20 == 7
+    record = SampledStatistics.of(measure_batches(np.where(is_on, samples, np.complex64(0))))
+
+    class Gated(GaussianLaw):
+        def ccdf(self, level_db):
+            return 0.05 * super().ccdf(np.asarray(level_db) + 10 * np.log10(0.05))
+
+        def level_db(self, probability):
+            share = np.minimum(np.asarray(probability) / 0.05, 1)
+            level = super().level_db(share) - 10 * np.log10(0.05)
+            return np.where(share < 1, level, -np.inf)
+
+    found = compare_with_law(record, Gated())
+    assert found.verdict != "differs"
+    assert max(row.probability for row in found.levels) == pytest.approx(10**-1.5)
+    assert compare_with_law(record, Gated(), down_to=1e-2).verdict == "agrees"
+
+
 def test_slack_is_forgiven(study):
     record = study.sampled(study.PROCESSES.Noise(), 2, 1 << 20, lambda x: study.compressed(x, 0.3))
     assert find_difference(record, LAW) is not None

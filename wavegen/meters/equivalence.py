@@ -249,6 +249,19 @@ def _tests(down_to: float, false_alarm: float) -> tuple[NDArray[np.float64], NDA
     return np.concatenate([decades, between]), np.concatenate([each, np.full(between.size, rest)])
 
 
+def _finite(
+    law: Curve, down_to: float, false_alarm: float
+) -> tuple[NDArray[np.float64], NDArray[np.float64], NDArray[np.float64]]:
+    """Return probabilities, shares and levels, but for those at which the law is switched off.
+
+    A signal that is on for 5 % of the time has no level at 10 %: zeros are no level.
+    """
+    asked, share = _tests(down_to, false_alarm)
+    level = np.asarray(law.level_db(asked), np.float64)
+    used = np.isfinite(level)
+    return asked[used], share[used], level[used]
+
+
 def _moment_share(down_to: float, false_alarm: float) -> float:
     _, between = probabilities_of(down_to)
     return false_alarm * (1 - DECADES_SHARE) / (between.size + 2)
@@ -290,8 +303,7 @@ def find_difference(
     if sampled.says_nothing:
         return None
     found: list[tuple[float, Difference]] = []
-    asked, share = _tests(down_to, false_alarm)
-    level = np.asarray(law.level_db(asked), np.float64)
+    asked, share, level = _finite(law, down_to, false_alarm)
     for alarm in np.unique(share):
         here = np.flatnonzero(share == alarm)
         low, _ = sampled.ccdf_interval(level[here] + slack_db, confidence=1 - alarm)
@@ -431,9 +443,10 @@ def compare_with_law(
     )
     widths = [_overshoot(row, tolerance_db) for row in levels]
     verdict: Verdict = "differs" if difference else "undecided"
-    if difference is None and all(row.is_within for row in levels):
+    if difference is None and levels and all(row.is_within for row in levels):
         verdict = "agrees"
-    widest = int(np.argmax(widths))
+    is_open = verdict == "undecided" and bool(levels)
+    widest = int(np.argmax(widths)) if widths else 0
     return Comparison(
         verdict=verdict,
         difference=difference,
@@ -441,10 +454,10 @@ def compare_with_law(
         down_to=down_to,
         levels=levels,
         moments=_moment_rows(sampled, law, down_to, false_alarm),
-        widest_at=levels[widest].probability if verdict == "undecided" else None,
+        widest_at=levels[widest].probability if is_open else None,
         needed_samples=(
             _needed(sampled, law, levels[widest], tolerance_db, _joint(len(levels)))
-            if verdict == "undecided"
+            if is_open
             else None
         ),
     )
@@ -459,10 +472,9 @@ def _level_rows(
     slack_db: float,
     false_alarm: float,
 ) -> tuple[LevelRow, ...]:
-    asked, share = _tests(down_to, false_alarm)
+    asked, share, wanted = _finite(law, down_to, false_alarm)
     place = np.argsort(-asked)
-    asked, share = asked[place], share[place]
-    wanted = np.asarray(law.level_db(asked), np.float64)
+    asked, share, wanted = asked[place], share[place], wanted[place]
     joint = _joint(asked.size)
     seen = sampled.levels(asked, confidence=joint)
     _, most = sampled.ccdf_interval(wanted + tolerance_db, confidence=joint)
@@ -486,7 +498,7 @@ def _level_rows(
 
 def _joint(n_levels: int) -> float:
     """Return the confidence of each of so many intervals that hold together."""
-    return 1 - (1 - AGREEMENT) / n_levels
+    return 1 - (1 - AGREEMENT) / max(n_levels, 1)
 
 
 def _sigmas_to_find(alarm: float) -> float:
