@@ -5,7 +5,8 @@ from wavegen.laws.cumulants import ORDER, SMALL, count_large, cumulants, power_s
 
 
 @pytest.mark.parametrize(
-    "values", [[-1.0, 1.0], [-1, -1 / 3, 1 / 3, 1], np.cos(np.arange(8) * np.pi / 4 + 0.1), [1, 0.2]]
+    "values",
+    [[-1.0, 1.0], [-1, -1 / 3, 1 / 3, 1], np.cos(np.arange(8) * np.pi / 4 + 0.1), [1, 0.2]],
 )
 def test_the_series_is_good_where_arguments_are_small(values):
     values = np.array(values, float)

@@ -51,9 +51,11 @@ def test_a_rice_tail_against_marcum_q_in_thirty_digits():
     x = float(from_db(law.level_db(1e-9)))
     with mpmath.workdps(30):
         tail = mpmath.quad(
-            lambda y: (1 + k)
-            * mpmath.exp(-k - (1 + k) * y)
-            * mpmath.besseli(0, 2 * mpmath.sqrt(k * (1 + k) * y)),
+            lambda y: (
+                (1 + k)
+                * mpmath.exp(-k - (1 + k) * y)
+                * mpmath.besseli(0, 2 * mpmath.sqrt(k * (1 + k) * y))
+            ),
             [x, x + 1, x + 6],
         )
     assert float(tail) == pytest.approx(1e-9, rel=1e-3)  # 0.5 % is 0.001 dB

@@ -86,7 +86,7 @@ def test_density_and_series_agree(levels, roll_off):
     """Two roads to one law, to 1e-9: the integral over one rail, and the Fourier-Bessel series."""
     pair = RailPair(first=rail(levels, roll_off), second=rail(levels, roll_off))
     shared = {"name": "x", "holds": "over seeds", "peak": pair.peak}
-    power = float(np.sum(pair.first.taps ** 2))
+    power = float(np.sum(pair.first.taps**2))
     one = RadialLaw(**shared, mean_power=power, radius=pair.peak, tail=pair)
     other = law_of_characteristic(pair.characteristic, mean_power=power, **shared)
     p = np.array([0.9, 0.1, 1e-2, 1e-4, 1e-6, 1e-9])

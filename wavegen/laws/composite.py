@@ -429,11 +429,17 @@ def _gathered(envelope: Reals) -> tuple[Reals, Reals]:
     ordered = np.sort(envelope)
     if ordered.size <= MOST_ENVELOPES:
         return ordered, np.full(ordered.size, 1 / ordered.size)
-    # Pairs at mean +- deviation keep three moments of each group of neighbours.
-    groups = np.array_split(ordered, MOST_ENVELOPES // 2)
-    centre = np.array([group.mean() for group in groups])
-    spread = np.array([group.std() for group in groups])
-    share = np.array([group.size for group in groups]) / (2 * ordered.size)
+    # Pairs at mean +- deviation keep three moments of what lies in each interval.
+    n_bins = MOST_ENVELOPES // 2
+    place = np.minimum((ordered * (n_bins / ordered[-1])).astype(np.int64), n_bins - 1)
+    counts = np.bincount(place, minlength=n_bins)
+    used = counts > 0
+    counts = counts[used]
+    starts = np.concatenate([[0], np.cumsum(counts)[:-1]])
+    centre = np.add.reduceat(ordered, starts) / counts
+    rest = ordered - np.repeat(centre, counts)
+    spread = np.sqrt(np.add.reduceat(rest**2, starts) / counts)
+    share = counts / (2 * ordered.size)
     return np.concatenate([centre - spread, centre + spread]), np.concatenate([share, share])
 
 

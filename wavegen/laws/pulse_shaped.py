@@ -346,7 +346,8 @@ def _key(taps: Reals) -> bytes:
 
 def _rails(points: Complexes) -> tuple[float, tuple[Reals, Reals] | None]:
     """Return the tilt at which points pair the levels of two symmetric rails, and the levels."""
-    tilts = [0.0, float(np.angle(points[np.argmax(np.abs(points))])), np.pi / 4]
+    corner = float(np.angle(points[np.argmax(np.abs(points))]))
+    tilts = [0.0, np.pi / 4, corner, corner - np.pi / 4]
     for tilt in tilts:
         turned = points * np.exp(-1j * tilt)
         real, imaginary = turned.real.round(9) + 0.0, turned.imag.round(9) + 0.0
