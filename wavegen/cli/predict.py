@@ -14,8 +14,8 @@ class Predict:
 
     summary = "say what a recipe's power statistics must be, without a sample"
     description = (
-        "Print the levels that mathematics gives for a recipe at 10 % ... 1e-9, and the highest\n"
-        "peak that can occur. What has no law says so by name."
+        "Print the levels that mathematics gives for a recipe at 10 % ... 1e-9, and the\n"
+        "highest peak that can occur. What has no law says so by name."
     )
 
     @staticmethod
