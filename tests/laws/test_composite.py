@@ -168,7 +168,7 @@ def test_an_offset_of_the_symbol_rate_is_enumerated():
 
 def test_even_distances_of_three_carriers_are_not_free():
     """Harmonics 4, -8, 4 hold still: the three phases move as one."""
-    parts = [{"term": qpsk(name), "n_cycles": k * FREE} for name, k in zip("abc", (-1, 0, 1))]
+    parts = [{"term": qpsk(name), "n_cycles": k * FREE} for k, name in enumerate("abc", -1)]
     made = combine(*parts)
     free = np.mean([qpsk("a").characteristic(T, residue=n, modulus=4) ** 3 for n in range(4)], 0)
     got = made.characteristic(T)

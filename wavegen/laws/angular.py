@@ -174,7 +174,7 @@ class AngularSum:
         while start < t.size:
             n = self._n_angles(float(t[start : start + _ROWS].max()))
             part = t[start : start + max(1, min(_ROWS, _CELLS // n))]
-            width = 2 * np.pi / self.symmetry
+            width = 2 * np.pi / self._fold
             if self.is_mirrored:
                 n = (n + 1) // 2
                 half = width / 2 / n
@@ -224,8 +224,13 @@ class AngularSum:
             weights = np.multiply.outer(weights, inner[1]).ravel()
         return ListedEnvelope.of(values, weights)
 
+    @property
+    def _fold(self) -> int:
+        """Return the fold of the function's real part: opposite directions are conjugates."""
+        return self.symmetry * (1 + self.symmetry % 2)
+
     def _n_angles(self, highest: float) -> int:
-        return int((1.1 * highest * self.peak + _MARGIN) / self.symmetry) + 2
+        return int((1.1 * highest * self.peak + _MARGIN) / self._fold) + 2
 
     def directional(self, t: Reals, angle_rad: Reals) -> Complexes:
         """Return ``E[exp(j t Re(x exp(-j angle)))]``, shape (t.size, angle.size)."""
