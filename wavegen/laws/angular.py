@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 from functools import cached_property
-from typing import Protocol
+from typing import Protocol, Self
 
 import numpy as np
 
@@ -25,6 +25,8 @@ MOST_LISTED = 1 << 18
 _CELLS = 1 << 15
 _MARGIN = 48
 _ROWS = 64
+_PLACES = 1e8
+"""Points closer than 1 over this are taken for one."""
 
 
 class Directional(Protocol):
@@ -65,6 +67,68 @@ class ListedEnvelope:
         """Return ``P(R > r)`` of a flat array of radii; equal to within 1e-12 counts as equal."""
         place = np.searchsorted(self.envelope, radius * (1 + 1e-12), side="right")
         return self.over.take(place)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MirroredGrid:
+    """Points that are their own mirror images about both axes, by columns.
+
+    Parameters
+    ----------
+    columns : tuple of (tuple of (float, float), tuple of (float, float))
+        For all columns of the same points: distance and weight of each column, then those of the
+        points in them. Weights add up to 1 over all products.
+    """
+
+    columns: tuple[tuple[tuple[tuple[float, float], ...], tuple[tuple[float, float], ...]], ...]
+
+    @classmethod
+    def of(cls, points: Complexes) -> Self | None:
+        """Return the columns, None where points have no mirror images or share few columns."""
+        places = [
+            (round(float(x) * _PLACES), round(float(y) * _PLACES))
+            for x, y in zip(points.real, points.imag, strict=True)
+        ]
+        keys = set(places)
+        is_mirrored = all((-x, y) in keys and (x, -y) in keys for x, y in keys)
+        if not is_mirrored or len(keys) != points.size:
+            return None
+        columns: dict[int, float] = {}
+        rows: dict[int, float] = {}
+        members: dict[int, set[int]] = {}
+        for point, (x, y) in zip(points, places, strict=True):
+            columns[abs(x)] = abs(float(point.real))
+            rows[abs(y)] = abs(float(point.imag))
+            members.setdefault(abs(x), set()).add(abs(y))
+        if 2 * (len(columns) + len(rows)) > points.size // 2:
+            return None
+        alike: dict[frozenset[int], list[int]] = {}
+        for x, ys in members.items():
+            alike.setdefault(frozenset(ys), []).append(x)
+        made = tuple(
+            (
+                tuple((columns[x], (2.0 if x else 1.0) / points.size) for x in sorted(xs)),
+                tuple((rows[y], 2.0 if y else 1.0) for y in sorted(ys)),
+            )
+            for ys, xs in alike.items()
+        )
+        return cls(columns=made)
+
+    def mean(self, across: Reals, up: Reals) -> Reals:
+        """Return the mean of ``exp(j (x across + y up))`` over the points."""
+        total = np.zeros(across.shape)
+        cosines: dict[float, Reals] = {}
+        for columns, points in self.columns:
+            inner = np.zeros(across.shape)
+            for y, weight in points:
+                if y not in cosines:
+                    cosines[y] = np.cos(y * up)
+                inner += weight * cosines[y]
+            outer = np.zeros(across.shape)
+            for x, weight in columns:
+                outer += weight * np.cos(x * across)
+            total += outer * inner
+        return total
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -129,6 +193,11 @@ class PointGroup:
                 total *= sum(np.exp(scaled * one) for one in along) / along.shape[0]
             return total
         real = np.exp(exponent.real)
+        if self._grid is not None:
+            across, up = np.cos(angle_rad), np.sin(angle_rad)
+            for tap in taps[:n_large]:
+                real *= self._grid.mean((t * tap)[:, None] * across, (t * tap)[:, None] * up)
+            return real.astype(np.complex128)
         along = along[np.angle(points * np.exp(-1e-3j)) >= 0]  # one of each pair
         for tap in taps[:n_large]:
             scaled = (t * tap)[:, None]
@@ -138,6 +207,10 @@ class PointGroup:
             real *= factor
             real /= along.shape[0]
         return real.astype(np.complex128)
+
+    @cached_property
+    def _grid(self) -> MirroredGrid | None:
+        return MirroredGrid.of(self.points / np.abs(self.points).max())
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -166,7 +166,8 @@ class Rail:
         phi = self._lines / reach
         count = phi.size
         t = math.pi / reach * np.arange(count)
-        n = 2 * scipy.fft.next_fast_len(OVERSAMPLING * count)
+        heard = int(np.flatnonzero(np.abs(phi) > 1e-6 * phi[0])[-1])
+        n = 2 * scipy.fft.next_fast_len(max(count, OVERSAMPLING * min(count, 2 * heard)))
         half = n // 2 + 1
         # f(x) = (1/2 + sum_j phi_j cos(t_j x)) / reach: Fourier series over 2 reach
         density = scipy.fft.irfft(0.5 * phi, n, norm="forward")[:half]
