@@ -44,6 +44,9 @@ scatter it too much."""
 _SLOPE_STEP = 0.05
 """Half the step of ln x over which the density is taken: 0.2 dB."""
 _DRIFT_SIGMAS = 3.0
+LONG_BATCH = 1024
+"""Samples from which a batch counts as longer than the memory of a signal, unless its neighbours
+clearly say otherwise; of shorter batches any likeness of neighbours is believed."""
 _GRID_STEP_DB = 0.02
 _ROOM_DB = 0.1
 
@@ -165,7 +168,12 @@ class SampledStatistics:
         About 0 for a stationary record much longer than its memory; towards 1 where the level
         drifts over the record, or the batches are shorter than the memory.
         """
-        return float(_neighbours(self._relative_excess[np.newaxis])[0])
+        return float(_neighbours(self._relative_excess[np.newaxis], _DRIFT_SIGMAS)[0])
+
+    @property
+    def _doubt(self) -> float:
+        """How many standard errors a correlation of neighbours must have to be believed."""
+        return 0.0 if self.batches.batch_samples < LONG_BATCH else _DRIFT_SIGMAS
 
     def _variance(self, influence: NDArray[np.float64]) -> NDArray[np.float64]:
         """Return the variance of means over the record, shape (n,).
@@ -178,7 +186,7 @@ class SampledStatistics:
         n_samples, n_batches = self.statistics.n_samples, self.degrees + 1
         sums = np.sum(influence * influence, axis=1)
         plain = sums * n_batches / max(n_batches - 1, 1) / float(n_samples) ** 2
-        memory = _neighbours(influence)
+        memory = _neighbours(influence, self._doubt)
         return np.asarray(plain * (1 + memory) / (1 - memory))
 
     def _shares(self, power: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -499,13 +507,13 @@ class _Events:
     is_below: NDArray[np.bool_]
 
 
-def _neighbours(influence: NDArray[np.float64]) -> NDArray[np.float64]:
-    """Return the correlation of neighbouring batches, shape (n,); 0 unless significant."""
+def _neighbours(influence: NDArray[np.float64], sigmas: float) -> NDArray[np.float64]:
+    """Return the correlation of neighbouring batches, shape (n,); 0 unless it is certain."""
     n_batches = influence.shape[1]
     sums = np.sum(influence * influence, axis=1)
     products = np.sum(influence[:, 1:] * influence[:, :-1], axis=1)
     found = products / np.where(sums > 0, sums, 1.0)
-    is_certain = found > _DRIFT_SIGMAS / max(n_batches, 1) ** 0.5
+    is_certain = found > sigmas / max(n_batches, 1) ** 0.5
     return np.asarray(np.where(is_certain, np.minimum(found, 0.98), 0.0))
 
 
