@@ -11,6 +11,7 @@ from wavegen.laws.composite import (
     LineTerm,
     Placed,
     ProductTerm,
+    TiedTerm,
     combine_terms,
 )
 from wavegen.laws.constant import ConstantLaw
@@ -164,6 +165,36 @@ def test_an_offset_of_the_symbol_rate_is_enumerated():
         two = two * np.exp(1j * np.outer(T, np.cos(angle - np.pi / 2 * n)))
         want += two.real.mean(axis=1) / 4
     np.testing.assert_allclose(made.characteristic(T), want, atol=1e-12)
+
+
+class Known(BaseTerm):
+    """Known values in turn."""
+
+    values = np.array([1, 1j, 0.5, 2 - 1j])
+
+    def directional(self, t, angle_rad, *, residue=0, modulus=1):
+        assert modulus == self.clock_samples
+        return np.exp(1j * np.outer(t, np.real(self.values[residue] * np.exp(-1j * angle_rad))))
+
+
+def test_phases_turn_with_the_index():
+    """A line an eighth of a turn a sample beside four known values: eight sums in turn."""
+    known = Known(name="known", clock_samples=4, symmetry=1)
+    made = TiedTerm(
+        name="x",
+        peak=4.0,
+        clock_samples=4,
+        symmetry=1,
+        factors=(known, LineTerm.of(1 + 0j)),
+        steps=(0, 1),
+        turns=(1, 8),
+    )
+    n = np.arange(8)
+    sums = np.abs(Known.values[n % 4] + np.exp(2j * np.pi * n / 8))
+    want = scipy.special.j0(np.outer(T, sums))
+    np.testing.assert_allclose(made.characteristic(T), want.mean(axis=1), atol=1e-13)
+    got = made.characteristic(T, residue=1, modulus=4)
+    np.testing.assert_allclose(got, want[:, 1::4].mean(axis=1), atol=1e-13)
 
 
 def test_even_distances_of_three_carriers_are_not_free():
