@@ -20,12 +20,13 @@ sample_rate: 61.44 MHz
 duration: {duration} ms
 signal:
   kind: ofdm
-  subcarrier_spacing: 30 kHz
+  subcarrier_spacing: 15 kHz
   groups:
     - {{subcarriers: "-600..-1, 1..600", constellation: 64qam}}
   cyclic_prefix: [160/2048, 6 x 144/2048]
+  edge_window: 72/2048
 """
-N_FFT = 2048
+N_FFT = 4096
 SHARE = 2048 * 7 / (160 + 6 * 144 + 7 * 2048)
 """Of the samples, those that come out of an inverse FFT."""
 
@@ -125,7 +126,7 @@ def ask(*arguments: str) -> str:
 def main() -> None:
     """Print all ratios."""
     with tempfile.TemporaryDirectory(dir=Path.cwd()) as name:
-        print(ask("child", name, "400"))
+        print(ask("child", name, "1600"))
         one, two = (
             min(float(ask("workers", n, cores)) for _ in range(3))
             for n, cores in (("1", "0"), ("2", "0,1"))

@@ -14,6 +14,8 @@ from wavegen.dsp.cell_sums import CELL
 from wavegen.meters.peak import Located, peak_between_samples
 
 _BLOCK = 256 * CELL
+_CRESTS = 16
+"""Cells of highest envelope in which a first peak of each rail is looked for."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -68,7 +70,7 @@ def rail_peaks(signal: Signal, statistics: Located, *, loops: bool = True) -> Ra
     Parameters
     ----------
     signal : Signal
-        What was measured, cheap to read again: it is read once over.
+        What was measured, cheap to read again.
     statistics : Located
         Tells where it starts and how long it is.
     loops : bool
@@ -80,40 +82,60 @@ def rail_peaks(signal: Signal, statistics: Located, *, loops: bool = True) -> Ra
 
     Notes
     -----
-    The search is that of :func:`wavegen.meters.peak.peak_between_samples`, on each rail alone.
+    The search is that of :func:`wavegen.meters.peak.peak_between_samples`, on each rail alone. A
+    rail never exceeds the envelope: cells whose envelope lies too low for the rail's peak are
+    left out, so that little of the signal is read again.
     """
-    first, last = statistics.start, statistics.start + statistics.n_samples
-    n_cells = (last - 1) // CELL - first // CELL + 1
-    maxima = np.zeros((2, n_cells))
-    for block in range(first // _BLOCK * _BLOCK, last, _BLOCK):
-        start, stop = max(block, first), min(block + _BLOCK, last)
-        samples = evaluate({signal: (start, stop)})[signal]
-        edges = np.arange(-(-(start + 1) // CELL) * CELL, stop, CELL) - start
-        cuts = np.concatenate(([0], edges)).astype(np.intp)
-        low = start // CELL - first // CELL
-        for row, values in enumerate((samples.real, samples.imag)):
-            found = np.maximum.reduceat(np.abs(values), cuts).astype(np.float64) ** 2
-            maxima[row, low : low + found.size] = found
+    lowest = _rails_at_crests(signal, statistics)
     powers = []
-    for row, name in enumerate(("i", "q")):
-        peak = float(maxima[row].max())
-        if not peak:
-            powers.append(0.0)
+    for name, found in zip(("i", "q"), lowest, strict=True):
+        power, place = found
+        if not power:
+            powers.append(_whole(signal, statistics, name))
             continue
-        rail = Rail(
-            sample_rate_hz=signal.sample_rate_hz,
-            n_samples=signal.n_samples,
-            inputs=(signal,),
-            mean_power=None,
-            rail="i" if name == "i" else "q",
-        )
-        cell = int(maxima[row].argmax())
         located = _Found(
-            start=first,
+            start=statistics.start,
             n_samples=statistics.n_samples,
-            peak=peak,
-            peak_index=max(first, (first // CELL + cell) * CELL),
-            cell_maxima=maxima[row],
+            peak=power,
+            peak_index=place,
+            cell_maxima=statistics.cell_maxima,
         )
-        powers.append(peak_between_samples(rail, located, loops=loops).power)
+        powers.append(peak_between_samples(_rail(signal, name), located, loops=loops).power)
     return RailPeaks(i=powers[0], q=powers[1])
+
+
+def _rail(signal: Signal, name: str) -> Rail:
+    return Rail(
+        sample_rate_hz=signal.sample_rate_hz,
+        n_samples=signal.n_samples,
+        inputs=(signal,),
+        mean_power=None,
+        rail="i" if name == "i" else "q",
+    )
+
+
+def _rails_at_crests(signal: Signal, statistics: Located) -> list[tuple[float, int]]:
+    """Return the largest square of each rail, and its index, in the cells of highest envelope."""
+    first, last = statistics.start, statistics.start + statistics.n_samples
+    highest = np.argsort(-statistics.cell_maxima, kind="stable")[:_CRESTS]
+    best = [(0.0, first), (0.0, first)]
+    for cell in sorted(int(number) for number in highest):
+        start = max((first // CELL + cell) * CELL, first)
+        samples = evaluate({signal: (start, min((start // CELL + 1) * CELL, last))})[signal]
+        for row, values in enumerate((samples.real, samples.imag)):
+            index = int(np.argmax(np.abs(values)))
+            best[row] = max(
+                best[row], (float(values[index]) ** 2, start + index), key=lambda one: one[0]
+            )
+    return best
+
+
+def _whole(signal: Signal, statistics: Located, name: str) -> float:
+    """Return the largest square of a rail that is zero where the envelope is highest."""
+    first, last = statistics.start, statistics.start + statistics.n_samples
+    largest = 0.0
+    for start in range(first, last, _BLOCK):
+        samples = evaluate({signal: (start, min(start + _BLOCK, last))})[signal]
+        values = samples.real if name == "i" else samples.imag
+        largest = max(largest, float(np.max(np.abs(values))) ** 2)
+    return largest

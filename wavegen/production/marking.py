@@ -8,7 +8,7 @@ from wavegen.files.markers import Kind, marker
 from wavegen.production.prepare import Prepared
 from wavegen.stages.channel.gate import on_time
 
-MOST_MARKERS = 10_000
+MOST_MARKERS = 1000
 """More of one kind are left out, with a note: markers are for people and triggers."""
 
 
