@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import re
-from dataclasses import replace
 from typing import Any
 
 from wavegen.core.site import Site
@@ -11,7 +10,7 @@ from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
 from wavegen.laws.term import NoLaw, Term
 from wavegen.production.graph import is_combiner
-from wavegen.stages.chain import HasLaw, HasTerm, rates_of, source_site
+from wavegen.stages.chain import chain_law, chain_term, source_site
 
 
 def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | NoLaw:
@@ -31,14 +30,7 @@ def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | N
         What has no law says so by name.
     """
     law = _law_of(settings, source_site(stages, site))
-    rates = rates_of(stages, site.sample_rate_hz)
-    for number, stage in enumerate(stages):
-        if isinstance(law, NoLaw):
-            return law
-        if not isinstance(stage, HasLaw):
-            return NoLaw(reason=f"{_name(stage)} has no law")
-        law = stage.law(_site_at(site, rates[number + 1], f"stages[{number}]"), law)
-    return law
+    return chain_law(stages, site, law, "stages")
 
 
 def _law_of(settings: Any, site: Site) -> Law | NoLaw:
@@ -60,28 +52,13 @@ def _term_of(settings: Any, site: Site) -> Term | NoLaw:
     for number, part in enumerate(settings.parts):
         path = f"{site.path}.parts[{number}]"
         here = site.at(f"{path}.signal", part.name or path)
-        found = _term_of(part.signal, source_site(part.stages, here))
-        rates = rates_of(part.stages, site.sample_rate_hz)
-        for index, stage in enumerate(part.stages):
-            if isinstance(found, NoLaw):
-                break
-            if isinstance(stage, HasTerm):
-                found = stage.term(
-                    _site_at(here, rates[index + 1], f"{path}.stages[{index}]"), found
-                )
-            else:
-                found = NoLaw(reason=f"{_name(stage)} in a sum has no law")
+        source = _term_of(part.signal, source_site(part.stages, here))
+        found = chain_term(part.stages, here, source, f"{path}.stages")
         if isinstance(found, NoLaw):
             return found
         terms.append(found)
     combined: Term | NoLaw = settings.term(site, terms)
     return combined
-
-
-def _site_at(site: Site, rate: Any, path: str) -> Site:
-    """Return the site of a stage: its own rate, a loop of the same duration."""
-    n_samples = site.n_samples * rate / site.sample_rate_hz
-    return replace(site, sample_rate_hz=rate, n_samples=int(n_samples), path=path)
 
 
 def _name(settings: Any) -> str:
