@@ -19,6 +19,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.errors import SignalError
 from wavegen.core.signal import Samples
+from wavegen.dsp.code_kernel import round_and_hold
 
 Codes = NDArray[Any]
 """Sample codes, shape (n_samples, 2): column 0 is I, column 1 is Q. Real ones have one column;
@@ -325,7 +326,8 @@ def encode(samples: Samples, datatype: Datatype, out: Codes | None = None) -> tu
             work += offset
         if not (work.min() >= low and work.max() <= high):
             if not np.isfinite(part).all():
-                raise _not_finite(part, start, datatype.n_rails)
+                first = start + int(np.argmin(np.isfinite(part)))
+                raise _not_finite(first // datatype.n_rails)
             np.rint(work, out=work)
             n_saturated += int(np.count_nonzero(work < low) + np.count_nonzero(work > high))
             np.clip(work, low, high, out=work)
@@ -336,14 +338,64 @@ def encode(samples: Samples, datatype: Datatype, out: Codes | None = None) -> tu
     return codes.reshape(-1, datatype.n_rails), n_saturated
 
 
-def _not_finite(part: NDArray[np.float32], start: int, n_rails: int) -> SignalError:
-    first = (start + int(np.argmin(np.isfinite(part)))) // n_rails
+def _not_finite(first: int) -> SignalError:
     return SignalError(
         where=f"sample {first} of the block",
         problem="is not a finite number",
         allowed="finite samples",
         remedy="Find the stage that made it, or write a float datatype.",
     )
+
+
+def encode_held(samples: Samples, datatype: Datatype, gain: float) -> tuple[Codes, int, Samples]:
+    """Scale and round samples to codes, and say what the codes stand for.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n_samples,)
+        Given up by the caller: the memory is used again for the result.
+    datatype : Datatype
+        What is written; a complex one.
+    gain : float
+        Amplitude factor to full scale 1.0, applied in float32.
+
+    Returns
+    -------
+    codes, n_saturated
+        As of :func:`encode`.
+    held : complex64 array, shape (n_samples,)
+        As :func:`decode` reads the codes.
+
+    Raises
+    ------
+    SignalError
+        As :func:`encode`.
+    """
+    factor = np.float32(gain)
+    if not _fits_kernel(datatype):
+        with np.errstate(invalid="ignore"):  # what is not finite is told by name
+            samples *= factor
+        codes, n_saturated = encode(samples, datatype)
+        return codes, n_saturated, decode(codes, datatype)
+    rails = np.ascontiguousarray(samples, np.complex64).view(np.float32)
+    words = np.empty(rails.size, np.int16)
+    n_saturated, bad = round_and_hold(
+        rails,
+        words,
+        gain=factor,
+        full_scale=datatype.full_scale,
+        lowest=datatype.lowest,
+        highest=datatype.highest,
+        shift=datatype.shift,
+    )
+    if bad >= 0:
+        raise _not_finite(bad // datatype.n_rails)
+    return words.reshape(-1, datatype.n_rails), n_saturated, rails.view(np.complex64)
+
+
+def _fits_kernel(datatype: Datatype) -> bool:
+    """Return whether the rails are 16-bit integers in this machine's byte order."""
+    return datatype.dtype == np.dtype(np.int16) and not datatype.offset and not datatype.is_real
 
 
 def decode(codes: Codes, datatype: Datatype) -> Samples:

@@ -17,7 +17,14 @@ from wavegen.core.render import Meter, Reading, Tap, render, samples_of
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.dsp.bursts import Bursts
 from wavegen.files.analytic import analytic_loop
-from wavegen.files.datatypes import Codes, Datatype, decode, encode, join_channels, quantised
+from wavegen.files.datatypes import (
+    Codes,
+    Datatype,
+    encode,
+    encode_held,
+    join_channels,
+    quantised,
+)
 from wavegen.files.format import FileFacts, Format
 from wavegen.files.real_if import real_if
 from wavegen.meters.gated import GatedPowerMeter
@@ -148,18 +155,17 @@ def _encode_strip(
         source = channel.signal
         is_leaf = not source.inputs
         samples = source.compute(*strip) if is_leaf else samples_of(source, *strip)
-        with np.errstate(invalid="ignore"):  # what is not finite is told by name, below
-            samples *= gain
-        codes, n_cut = encode(samples, datatype)
+        if datatype.is_real:  # its envelope is measured when all of it is there
+            with np.errstate(invalid="ignore"):  # what is not finite is told by name
+                codes, n_cut = encode(samples * gain, datatype)
+        else:
+            codes, n_cut, held = encode_held(samples, datatype, float(gain))
+            for meter in channel.meters:
+                reading = meter.begin(source)
+                reading.feed(strip[0], held)
+                readings.append(reading)
         together.append(codes)
         n_saturated += n_cut
-        if datatype.is_real:
-            continue
-        held = decode(codes, datatype)
-        for meter in channel.meters:
-            reading = meter.begin(source)
-            reading.feed(strip[0], held)
-            readings.append(reading)
     codes = together[0] if len(together) == 1 else join_channels(*together)
     return codes, n_saturated, readings
 
