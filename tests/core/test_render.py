@@ -297,7 +297,7 @@ class TestStripLength:
         return signal
 
     def test_a_shallow_graph_gets_the_plain_length(self):
-        assert strip_length(self.described(depth=1, step=4_096)) == STRIP_SAMPLES == 1 << 20
+        assert strip_length(self.described(depth=1, step=4_096)) == STRIP_SAMPLES == 1 << 19
 
     def test_a_deep_graph_gets_eight_times_its_steps(self):
         length = strip_length(self.described(depth=20, step=8_000))
@@ -310,7 +310,7 @@ class TestStripLength:
         assert length * 2 * 8 * IN_FLIGHT_STRIPS <= IN_FLIGHT_BYTES
 
     def test_the_deepest_chain_counts_not_the_sum_over_branches(self):
-        deep = self.described(depth=10, step=8_000)
+        deep = self.described(depth=10, step=4_000)
         both = Signal(sample_rate_hz=Fraction(1), n_samples=1 << 30, inputs=(deep, deep, deep))
         assert strip_length(both) == strip_length(deep) == STRIP_SAMPLES
 

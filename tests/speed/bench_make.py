@@ -27,6 +27,7 @@ signal:
   edge_window: 72/2048
 """
 N_FFT = 4096
+REPEATS = 5
 SHARE = 2048 * 7 / (160 + 6 * 144 + 7 * 2048)
 """Of the samples, those that come out of an inverse FFT."""
 
@@ -68,7 +69,7 @@ def child(folder: Path, duration_ms: int) -> None:
     signal = prepare(loaded).built.signal
     tap = Tap(name="power", signal=signal, meter=PowerMeter())
     figures: dict[str, list[complex]] = {"rendered, metered": [], "to SigMF": []}
-    for _ in range(3):
+    for _ in range(REPEATS):
         bare = bare_fft_s(signal.n_samples)
         start = cpu_s()
         render(signal, taps=(tap,), workers=1)
@@ -81,7 +82,7 @@ def child(folder: Path, duration_ms: int) -> None:
         best = min(ratios, key=lambda ratio: ratio.real + ratio.imag)
         print(
             f"{name}: {best.real + best.imag:.2f} times the bare inverse FFTs in CPU time, of it "
-            f"{best.imag:.2f} in the system (files; best of 3)"
+            f"{best.imag:.2f} in the system (files; best of {REPEATS})"
         )
 
 
@@ -128,7 +129,7 @@ def main() -> None:
     with tempfile.TemporaryDirectory(dir=Path.cwd()) as name:
         print(ask("child", name, "1600"))
         one, two = (
-            min(float(ask("workers", n, cores)) for _ in range(3))
+            min(float(ask("workers", n, cores)) for _ in range(REPEATS))
             for n, cores in (("1", "0"), ("2", "0,1"))
         )
         print(f"two workers over one (pinned to one core), rendering: {one / two:.2f}")
