@@ -10,6 +10,7 @@ import numpy as np
 import scipy.fft
 from annotated_types import Ge, Le
 
+from wavegen.core.index_set import IndexSet, SymbolSet
 from wavegen.core.registry import Member
 from wavegen.core.site import Note, Site
 from wavegen.sources.data.random import Random
@@ -18,7 +19,7 @@ from wavegen.sources.ofdm_carried import Carried, Pinned
 from wavegen.sources.ofdm_power import Part
 from wavegen.sources.ofdm_schedule import present
 from wavegen.sources.rotation import Rotation
-from wavegen.sources.subcarriers import IndexSet, PilotValues, SymbolSet
+from wavegen.sources.subcarriers import PilotValues
 
 Level = Annotated[float, Ge(-100), Le(100)]
 NO_ROTATION = Rotation(Fraction(0))

@@ -10,7 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.errors import RecipeError
-from wavegen.sources.subcarriers import SymbolSet
+from wavegen.core.index_set import SymbolSet
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
