@@ -2,6 +2,7 @@ import numpy as np
 import pytest
 
 from wavegen.core.errors import SignalError
+from wavegen.dsp.bursts import raised_cosine_ramp
 from wavegen.meters.seam import FLOOR_DBC, seam_figure
 
 
@@ -92,3 +93,15 @@ def test_shorter_stretch_on_demand(held, band_noise):
     found = seam_figure(held(band_noise(5, 1 << 17, 0.3)), stretch_samples=5000)
     assert found.stretch_samples == 4096
     assert found.is_clean
+
+
+def test_a_single_burst_that_begins_at_the_seam_is_no_break(held, band_noise):
+    n, on = 15_360, 3_840
+    ramp = raised_cosine_ramp(64)
+    gate = np.zeros(n)
+    gate[:on] = np.concatenate([ramp, np.ones(on - 128), ramp[::-1]])
+    samples = band_noise(6, n, 0.25) * gate
+    assert seam_figure(held(samples), cycle_samples=n).is_clean
+    cut = np.roll(samples, -30)  # half of the ramp up is lost
+    cut[-30:] = 0
+    assert not seam_figure(held(cut), cycle_samples=n).is_clean

@@ -34,6 +34,15 @@ _MAIN_LOBE_BINS = 7
 _FEWEST_BINS = 1 / 64
 _QUIETEST = 1 / 10
 _SMOOTHED_BINS = 65
+_LONGEST_SEARCHED = 1 << 22
+"""Loops up to this are looked through for steps of the envelope; 20 ms at most."""
+_STEP_CELL = 64
+_N_STEPS = 4
+_STEP_NEPER = 2 * 2.3
+"""A cell of 64 samples with a hundred times the power of the one before."""
+STEP_MARGIN_DB = 20.0
+"""Where the signal is switched at the seam: how wide a ramp's spectrum is depends on the samples
+that it happens to stand on, by ten decibels, and there are few others to compare with."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -60,6 +69,8 @@ class SeamFigure:
         then nothing can be told, and ``is_clean`` is True though not tested.
     n_same_place : int
         Of these, how many stand where the seam does relative to the symbols.
+    margin_db : float
+        How far the seam of a loop that closes may stand above the largest of the others, dB.
     """
 
     at_seam_dbc: float
@@ -70,6 +81,7 @@ class SeamFigure:
     stretch_samples: int
     n_stretches: int
     n_same_place: int
+    margin_db: float = MARGIN_DB
 
     @property
     def excess_db(self) -> float:
@@ -85,8 +97,8 @@ class SeamFigure:
 
     @property
     def is_clean(self) -> bool:
-        """True if the seam exceeds the rest by 3 dB at most, or lies below the floor."""
-        return self.excess_db <= MARGIN_DB or self.at_seam_dbc < self.floor_dbc
+        """True if the seam exceeds the rest by the margin at most, or lies below the floor."""
+        return self.excess_db <= self.margin_db or self.at_seam_dbc < self.floor_dbc
 
 
 def seam_figure(
@@ -105,6 +117,8 @@ def seam_figure(
     cycle_samples : int, optional
         After so many samples the symbols stand as before. The other stretches stand at multiples
         of it as far as there are any; what is missing of twenty is spread evenly over the loop.
+        Where there is none, four more stand at the envelope's largest steps, lest a burst that
+        begins at the seam be taken for a break of it.
     stretch_samples : int
         Longest stretch; shortened to a quarter of the loop (a power of two).
     floor_dbc : float
@@ -135,6 +149,11 @@ def seam_figure(
     if not has_room:
         length = SHORTEST_STRETCH
     same, others = _places(n, length, cycle_samples if has_room else None, has_room=has_room)
+    margin_db = MARGIN_DB
+    if has_room and not same and n <= _LONGEST_SEARCHED:
+        steps, is_switched = _steps(signal, length)
+        others += steps
+        margin_db = STEP_MARGIN_DB if is_switched else MARGIN_DB
     spectra = np.stack([_spectrum(signal, place, length) for place in (0, *same, *others)])
     seam, interior = spectra[0], spectra[1:] if has_room else spectra[:1]
     mean = interior.mean(axis=0)
@@ -161,6 +180,7 @@ def seam_figure(
                 stretch_samples=length,
                 n_stretches=len(same) + len(others),
                 n_same_place=len(same),
+                margin_db=margin_db,
             )
         )
     heard = [figure for figure in figures if figure.at_seam_dbc >= floor_dbc]
@@ -182,6 +202,32 @@ def _places(
     missing = N_STRETCHES - len(same)
     spread = np.linspace(length, n - length, missing) if missing else np.zeros(0)
     return same, [int(place) for place in spread]
+
+
+def _steps(signal: Signal, length: int) -> tuple[list[int], bool]:
+    """Return where the envelope changes most, and whether the signal is switched at the seam.
+
+    The places lie apart from each other and clear of the seam.
+    """
+    n = signal.n_samples
+    samples = evaluate({signal: (0, n)})[signal]
+    starts = np.arange(0, n - _STEP_CELL + 1, _STEP_CELL)
+    power = np.add.reduceat(samples.real**2 + samples.imag**2, starts, dtype=np.float64)
+    least = 1e-12 * float(power.max(initial=0.0)) or 1.0
+    level = np.log(np.maximum(power, least))
+    change = np.abs(np.diff(level))
+    place = starts[1:]
+    at_seam = np.abs(np.diff(np.concatenate([level[-3:], level[:3]])))
+    found: list[int] = []
+    for k in np.argsort(-change, kind="stable"):
+        centre = int(place[k])
+        if not length <= centre <= n - length:
+            continue
+        if all(abs(centre - other) >= length // 4 for other in found):
+            found.append(centre)
+            if len(found) == _N_STEPS:
+                break
+    return found, bool(at_seam.max() > _STEP_NEPER)
 
 
 def _spectrum(signal: Signal, centre: int, length: int) -> NDArray[np.float64]:
