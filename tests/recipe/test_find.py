@@ -63,3 +63,11 @@ def test_what_is_missing_names_the_nearest(name: str, guess: str | None) -> None
 def test_a_checkout_has_its_recipes_beside_the_package() -> None:
     assert shipped_folder().name == "recipes"
     assert shipped_folder().is_dir()
+
+
+def test_a_name_without_its_ending_beside_the_file_is_told(folder: Path, tmp_path: Path) -> None:
+    (tmp_path / "mine.yaml").write_text("wavegen: 1\n")
+    with pytest.raises(RecipeError) as caught:
+        find_recipe("mine")
+    assert caught.value.where == "mine"
+    assert "mine.yaml" in caught.value.remedy

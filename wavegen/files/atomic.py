@@ -214,7 +214,15 @@ class Drafts:
     def _make_folder(self) -> None:
         missing = [path for path in (self.folder, *self.folder.parents) if not path.exists()]
         for path in reversed(missing):
-            path.mkdir(exist_ok=True)
+            try:
+                path.mkdir(exist_ok=True)
+            except FileNotFoundError as error:  # some file systems say so of what they refuse
+                raise FileError(
+                    where=str(path),
+                    problem="this folder cannot be made",
+                    allowed="folders on a file system that takes new ones",
+                    remedy="Choose another output folder.",
+                ) from error
             self._made.append(path)
 
     def _unmake_folder(self) -> None:

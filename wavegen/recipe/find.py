@@ -41,16 +41,29 @@ def find_recipe(name_or_path: str | Path) -> Path:
         Neither; the nearest shipped name is given.
     """
     path = Path(name_or_path)
-    try:
-        if path.is_file():
-            return path
-    except (OSError, ValueError):  # too long or with a zero byte: no such file
-        pass
+    if is_file(path):
+        return path
     shipped = {name: found for name, _, found in shipped_recipes()}
     wanted = str(name_or_path).removesuffix(".yaml")
     if wanted in shipped:
         return shipped[wanted]
+    beside = path.with_name(f"{path.name}.yaml") if path.name else path
+    if is_file(beside):
+        raise RecipeError(
+            where=wanted[:200],
+            problem="is neither a path nor a shipped recipe",
+            allowed="a path, or the name of a shipped recipe",
+            remedy=f"Did you mean {beside}?",
+        )
     raise _no_such(str(name_or_path), shipped, "a path, or a shipped recipe: ", "Check the path.")
+
+
+def is_file(path: Path) -> bool:
+    """Return whether there is such a file; what cannot be a name is none."""
+    try:
+        return path.is_file()
+    except (OSError, ValueError):  # too long or with a zero byte
+        return False
 
 
 def find_shipped(name: str) -> Path:

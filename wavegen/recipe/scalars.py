@@ -85,8 +85,16 @@ def refuse_odd_number(text: str) -> None:
 _ODD = tuple(
     (re.compile(pattern), problem, remedy)
     for pattern, problem, remedy in (
-        (r"[-+]?0[oO]?[0-9]+", "may be read as octal", "Write it in decimal, no leading zero."),
-        (r"[-+]?0[xXbB][0-9a-fA-F]*", "is not decimal", "Write it in decimal."),
+        (
+            r"[-+]?0[oO]?[0-9]+",
+            "may be read as octal",
+            "Write it in decimal, no leading zero; in quotes if digits are meant.",
+        ),
+        (
+            r"[-+]?0[xXbB][0-9a-fA-F]*",
+            "is not decimal",
+            "Write it in decimal, or in quotes if text is meant.",
+        ),
         (r"[-+]?[0-9]+(?::[0-9.]+)+", "is a time of day to some", "Write one decimal number."),
         (r"[-+]?[0-9]+(?:[_,'][0-9]+)+(?:\.[0-9]+)?", "groups its digits", "Leave them ungrouped."),
         (r"[-+]?\.[0-9]+(?:[eE].*)?", "starts with the point", "Write a 0 before the point."),
