@@ -65,7 +65,8 @@ def test_a_checkout_has_its_recipes_beside_the_package() -> None:
     assert shipped_folder().is_dir()
 
 
-def test_a_name_without_its_ending_beside_the_file_is_told(folder: Path, tmp_path: Path) -> None:
+@pytest.mark.usefixtures("folder")
+def test_a_name_without_its_ending_beside_the_file_is_told(tmp_path: Path) -> None:
     (tmp_path / "mine.yaml").write_text("wavegen: 1\n")
     with pytest.raises(RecipeError) as caught:
         find_recipe("mine")
