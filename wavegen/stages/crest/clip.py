@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Annotated
+from typing import Annotated, ClassVar
 
 import numpy as np
 from annotated_types import Ge, Le
@@ -19,6 +19,7 @@ from wavegen.laws.operations import EnvelopeTerm
 from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.ceiling import PILOT_SAMPLES, STRETCH_SAMPLES, pilot_power
 from wavegen.stages.channel.gate import on_time
+from wavegen.stages.searchable import Searchable
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 128 kB between."""
@@ -140,6 +141,8 @@ class Clip:
         (at 0 dB nothing would be left of the envelope). Of a gated signal, over the mean of
         the on-time, ramps excluded.
     """
+
+    search: ClassVar[Searchable] = Searchable()
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
 

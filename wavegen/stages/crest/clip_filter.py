@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Annotated
+from typing import Annotated, ClassVar
 
 import numpy as np
 from annotated_types import Ge, Gt, Le
@@ -21,6 +21,7 @@ from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.envelope_excess import excess_over
 from wavegen.stages.ceiling import look, reduce_to, refuse_zero
 from wavegen.stages.passband import Passband, filled_band
+from wavegen.stages.searchable import Choice, Searchable
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -79,6 +80,10 @@ class ClipFilter:
     transition_hz : Fraction, optional
         Width of each edge of the bands, outside them, Hz.
     """
+
+    search: ClassVar[Searchable] = Searchable(
+        choices=(Choice(field="rounds", values=(1, 2, 4, 8, 16, 32)),), pairs="rounds"
+    )
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     rounds: Annotated[int, Ge(1), Le(64)] = 8

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Annotated, Literal
+from typing import Annotated, ClassVar, Literal
 
 import numpy as np
 from annotated_types import Ge, Gt, Le
@@ -21,6 +21,7 @@ from wavegen.dsp.envelope_excess import local_peaks, power_of
 from wavegen.dsp.occupied_bands import design_pulse
 from wavegen.stages.ceiling import look, reduce_to, refuse_zero
 from wavegen.stages.passband import Passband, filled_band
+from wavegen.stages.searchable import Choice, Searchable
 
 LONGEST_LOBE = 64
 """Samples compared on each side of a peak, at most."""
@@ -107,6 +108,14 @@ class PeakCancellation:
     transition_hz : Fraction, optional
         Width of each edge of the bands, outside them, Hz.
     """
+
+    search: ClassVar[Searchable] = Searchable(
+        choices=(
+            Choice(field="passes", values=(1, 2, 4, 8, 16, 32)),
+            Choice(field="pulse", values=("spectrum", "band"), is_ordered=False),
+        ),
+        pairs="passes",
+    )
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     passes: Annotated[int, Ge(1), Le(32)] = 4

@@ -11,7 +11,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Annotated, Literal
+from typing import Annotated, ClassVar, Literal
 
 import numpy as np
 from annotated_types import Ge, Le
@@ -25,6 +25,7 @@ from wavegen.dsp.envelope_excess import local_peaks, shortfall_of
 from wavegen.dsp.windows import kaiser_beta, kaiser_window
 from wavegen.stages.ceiling import look, reduce_to, refuse_zero
 from wavegen.stages.passband import filled_band
+from wavegen.stages.searchable import Choice, Searchable
 
 DEFAULT_PER_BAND = 2.0
 """Length of the window, where none is given, over the reciprocal of the bandwidth."""
@@ -162,6 +163,18 @@ class PeakWindowing:
     -----
     The band is left: what is pressed down spreads over about the reciprocal of the length.
     """
+
+    search: ClassVar[Searchable] = Searchable(
+        choices=(
+            Choice(
+                field="length",
+                values=(1.1, 1.5, 2, 2.5, 3, 3.5, 4, 5, 6, 8),
+                in_reciprocal_bands=True,
+            ),
+            Choice(field="suppression_db", values=(21.0, 30.0, 40.0, 50.0, 60.0, 80.0)),
+            Choice(field="window", values=("kaiser", "gaussian"), is_ordered=False),
+        ),
+    )
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     window: Literal["kaiser", "gaussian", "hann"] = "kaiser"

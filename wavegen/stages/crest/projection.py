@@ -10,7 +10,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from typing import Annotated
+from typing import Annotated, ClassVar
 
 from annotated_types import Ge, Gt, Le
 
@@ -19,6 +19,7 @@ from wavegen.core.site import Site
 from wavegen.dsp.dual_projection import hold_below, project
 from wavegen.stages.ceiling import look, reduce_to, refuse_zero
 from wavegen.stages.passband import Passband, filled_band
+from wavegen.stages.searchable import Choice, Searchable
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -38,6 +39,10 @@ class Projection:
     transition_hz : Fraction, optional
         Width of each edge of the bands, outside them, Hz.
     """
+
+    search: ClassVar[Searchable] = Searchable(
+        choices=(Choice(field="rounds", values=(10, 20, 50)),), pairs="rounds"
+    )
 
     ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     rounds: Annotated[int, Ge(1), Le(200)] = 20
