@@ -11,6 +11,7 @@ METERS = Registry(
         "mean": "wavegen.meters.mean:MeanMeter",
         "burst_powers": "wavegen.meters.burst_powers:BurstPowerMeter",
         "record": "wavegen.meters.record:RecordMeter",
+        "envelope": "wavegen.meters.envelope:EnvelopeMeter",
         "spectrum": "wavegen.meters.spectrum:SpectrumMeter",
         "cubic": "wavegen.meters.cubic:CubicMeter",
         "evm": "wavegen.meters.evm:EvmMeter",

@@ -1,0 +1,119 @@
+"""Power spectral density as a picture, with channels and a mask."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+from numpy.typing import NDArray
+
+from wavegen.meters.spectrum import Spectrum
+from wavegen.reports.figures.look import (
+    INK,
+    REFERENCE,
+    SHADE,
+    condensed,
+    draw,
+    legend,
+    new_figure,
+    stroke,
+)
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
+
+_UNITS = ((1e9, "GHz"), (1e6, "MHz"), (1e3, "kHz"), (1.0, "Hz"))
+_MOST_POINTS = 2000
+_DEEPEST_DB = 130.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Channel:
+    """A channel to shade.
+
+    Parameters
+    ----------
+    name : str
+        Written above it.
+    low_hz, high_hz : float
+        Its edges.
+    """
+
+    name: str
+    low_hz: float
+    high_hz: float
+
+
+def frequency_unit(span_hz: float) -> tuple[float, str]:
+    """Return the unit in which a span is a number of one to three digits.
+
+    Examples
+    --------
+    >>> frequency_unit(15.36e6)
+    (1000000.0, 'MHz')
+    """
+    return next((unit for unit in _UNITS if span_hz >= unit[0]), _UNITS[-1])
+
+
+def spectrum_figure(
+    spectra: Sequence[tuple[str, Spectrum]],
+    *,
+    title: str,
+    channels: Sequence[Channel] = (),
+    mask: tuple[NDArray[np.float64], NDArray[np.float64]] | None = None,
+) -> Figure:
+    """Draw densities over the total power of each.
+
+    Parameters
+    ----------
+    spectra : sequence of (name, Spectrum)
+        At least one.
+    title : str
+        Heading.
+    channels : sequence of Channel
+        Shaded.
+    mask : (frequencies in Hz, limits in dBc/Hz), optional
+        Drawn as a limit.
+
+    Returns
+    -------
+    Figure
+    """
+    figure, (axes,) = new_figure(title)
+    widest = max(spectrum.sample_rate_hz for _, spectrum in spectra)
+    unit, unit_name = frequency_unit(widest / 2)
+    top = -np.inf
+    for number, (name, spectrum) in enumerate(spectra):
+        density = condensed(spectrum.density, _MOST_POINTS) / spectrum.total_power
+        level = 10 * np.log10(np.maximum(density, 1e-30))
+        draw(
+            axes,
+            condensed(spectrum.frequencies_hz, _MOST_POINTS) / unit,
+            level,
+            stroke(number),
+            label=f"{name}, resolution {spectrum.noise_bandwidth_hz / 1e3:.3g} kHz",
+        )
+        top = max(top, float(level.max()))
+    for channel in channels:
+        axes.axvspan(channel.low_hz / unit, channel.high_hz / unit, facecolor=SHADE, zorder=0)
+        axes.annotate(
+            channel.name,
+            ((channel.low_hz + channel.high_hz) / 2 / unit, 1.0),
+            xycoords=("data", "axes fraction"),
+            xytext=(0, -3),
+            textcoords="offset points",
+            ha="center",
+            va="top",
+            fontsize=10,
+            color=INK,
+        )
+    if mask is not None:
+        draw(axes, mask[0] / unit, mask[1], REFERENCE, label="limit")
+    axes.set_xlim(-widest / 2 / unit, widest / 2 / unit)
+    axes.set_ylim(max(axes.get_ylim()[0], top - _DEEPEST_DB), top + 12)
+    axes.set_xlabel(f"frequency from the centre, {unit_name}")
+    axes.set_ylabel("power density over the total power, dBc/Hz")
+    legend(axes, place="lower center")
+    return figure
