@@ -17,3 +17,7 @@ def test_ends_and_what_it_claims():
     assert law.level_db(1.0) == -math.inf
     assert law.peak_db == math.inf
     assert law.holds == "over seeds"
+
+
+def test_moments_are_factorials():
+    assert [GaussianLaw().moment(k) for k in (1, 2, 3)] == [1, 2, 6]

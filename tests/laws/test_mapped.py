@@ -23,6 +23,8 @@ def test_a_rising_curve_moves_every_level():
     assert law.ccdf(level_db) == pytest.approx(want, rel=1e-6)
     assert law.level_db(want) == pytest.approx(level_db, abs=1e-8)
     assert law.peak_db == math.inf
+    assert law.moment(2) == pytest.approx(24 / 4, rel=1e-8)  # E p^4 / (E p^2)^2
+    assert law.moment(3) == pytest.approx(720 / 8, rel=1e-4)  # E p^6: cut off at the reach
 
 
 def test_a_falling_curve_turns_the_distribution_over():
@@ -71,6 +73,7 @@ def test_nothing_to_clip():
 
 def test_a_gate_without_ramps_raises_levels_by_the_duty():
     law = GatedLaw(source=GaussianLaw(), duty_fully_on=0.125, ramp=NOTHING)
+    assert law.moment(3) == pytest.approx(6 * 8**2, rel=1e-12)  # 6 d / d^3
     on = GaussianLaw().level_db([0.1, 1e-3, 1e-8])
     assert law.level_db([0.0125, 1.25e-4, 1.25e-9]) == pytest.approx(
         on + 10 * math.log10(8), abs=1e-9
@@ -82,6 +85,9 @@ def test_a_gate_without_ramps_raises_levels_by_the_duty():
 def test_ramps_are_counted_as_they_are():
     ramp = np.array([0.25, 0.5])
     law = GatedLaw(source=ConstantLaw(), duty_fully_on=0.5, ramp=ramp, ramp_share=0.2)
+    for order in (2, 3):
+        whole = 0.5 + 0.2 * np.mean(ramp ** (2 * order))
+        assert law.moment(order) == pytest.approx(whole / law.mean**order, rel=3e-3)
     assert law.mean == pytest.approx(0.5 + 0.1 * (0.0625 + 0.25))
     just_below = 10 * np.log10(np.array([0.0625, 0.25, 1.0]) / law.mean) - 1e-6
     assert law.ccdf(just_below) == pytest.approx([0.7, 0.6, 0.5])

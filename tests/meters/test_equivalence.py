@@ -19,7 +19,6 @@ from wavegen.meters.equivalence import (
     alarm_of_a_decade,
     compare_with_law,
     find_difference,
-    law_moment,
     probabilities_of,
 )
 from wavegen.meters.intervals import SampledStatistics
@@ -222,17 +221,6 @@ def test_peak_over_the_highest_possible():
 
 
 class TestMoments:
-    def test_of_a_law_from_its_curve(self):
-        assert law_moment(LAW, 2)[0] == pytest.approx(2, rel=1e-5)
-        assert law_moment(LAW, 3)[0] == pytest.approx(6, rel=1e-5)
-
-    def test_of_a_law_that_states_them(self):
-        class Stating(GaussianLaw):
-            def moment(self, order):
-                return {2: 2.0, 3: 6.0}[order]
-
-        assert law_moment(Stating(), 3) == (6.0, 0.0)
-
     def test_what_the_curve_hardly_shows(self, long):
         """A law with 3 % more third moment than the record's process, levels alike."""
 

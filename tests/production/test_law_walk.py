@@ -7,6 +7,8 @@ from wavegen.core.site import Site
 from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.term import NoLaw
 from wavegen.production.law_walk import law_of_recipe
+from wavegen.production.prepare import find_loop
+from wavegen.recipe.load import load_text
 
 SITE = Site(sample_rate_hz=Fraction(8), n_samples=80, seed=1, label="signal", path="signal")
 
@@ -77,3 +79,26 @@ def test_a_source_without_a_law_is_named_in_words():
 @dataclass(frozen=True)
 class TwoWordsSource:
     pass
+
+
+SUM = """\
+wavegen: 1
+sample_rate: 8 MHz
+duration: 1 ms
+signal:
+  kind: sum
+  parts:
+    - {frequency_offset: -1 MHz, signal: {kind: noise, bandwidth: 1 MHz}}
+    - {frequency_offset: 1 MHz, signal: {kind: carrier}}
+stages: [{kind: peak_windowing, ceiling: 6 dB}]
+"""
+
+
+def test_a_sum_that_ends_in_a_mute_stage_is_not_computed(monkeypatch):
+    def refuse(term):
+        raise AssertionError(term)
+
+    monkeypatch.setattr("wavegen.production.law_walk.law_of_term", refuse)
+    loaded = load_text(SUM, name="case")
+    found = law_of_recipe(loaded.recipe.signal, loaded.recipe.stages, find_loop(loaded)[1][0][1])
+    assert found == NoLaw(reason="complex Gaussian + carrier, then peak windowing, has no law")

@@ -1,7 +1,8 @@
-"""Time that the law of each shipped recipe takes.
+"""Time that `predict` takes for each shipped recipe.
 
 Run it: ``python tests/speed/bench_laws.py [NAME ...]``. Aim: about 2 s each, of CPU time on one
-core, levels at 10 % ... 1e-9 included.
+core: the law, its levels at 10 % ... 1e-9 and its curve on a 0.05 dB grid; beside it the time of
+the moments, which verdicts ask for.
 """
 
 from __future__ import annotations
@@ -10,13 +11,13 @@ import argparse
 import time
 from pathlib import Path
 
-from wavegen.laws.term import NoLaw
+from wavegen.laws.moments import moment_of
 from wavegen.production.law_walk import law_of_recipe
-from wavegen.production.prepare import prepare
+from wavegen.production.predict import predict
+from wavegen.production.prepare import find_loop
 from wavegen.recipe.load import load_recipe
 
 RECIPES = Path(__file__).parents[2] / "recipes"
-PROBABILITIES = [10.0**-decade for decade in range(1, 10)]
 AIM_S = 2.0
 
 
@@ -27,16 +28,22 @@ def main():
     names = parser.parse_args().names or sorted(path.stem for path in RECIPES.glob("*.yaml"))
     for name in names:
         loaded = load_recipe(RECIPES / f"{name}.yaml")
-        site = prepare(loaded).site
         start = time.process_time()
-        law = law_of_recipe(loaded.recipe.signal, loaded.recipe.stages, site)
-        if isinstance(law, NoLaw):
-            print(f"{name:28s}         no law: {law.reason}")
-            continue
-        levels = law.level_db(PROBABILITIES)
+        found = predict(loaded)
         seconds = time.process_time() - start
         flag = " (over the aim)" if seconds > AIM_S else ""
-        print(f"{name:28s} {seconds:6.2f} s  {levels[3]:6.3f} dB at 0.01 %  {law.name}{flag}")
+        if found["law"] is None:
+            print(f"{name:31s} {seconds:5.2f} s  no law: {found['no_law']}{flag}")
+            continue
+        law = law_of_recipe(loaded.recipe.signal, loaded.recipe.stages, find_loop(loaded)[1][0][1])
+        start = time.process_time()
+        second, third = (moment_of(law, order)[0] for order in (2, 3))
+        moments = time.process_time() - start
+        level_db = {row["probability"]: row["level_db"] for row in found["law"]["levels"]}[1e-4]
+        print(
+            f"{name:31s} {seconds:5.2f} s, moments {moments:5.2f} s  {level_db:6.3f} dB at 0.01 %  "
+            f"{second:.4f} {third:.4f}  {law.name}{flag}"
+        )
 
 
 if __name__ == "__main__":

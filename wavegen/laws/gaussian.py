@@ -39,3 +39,7 @@ class GaussianLaw:
         asked = checked_probability(probability)
         with np.errstate(divide="ignore"):
             return to_db(np.abs(np.log(asked)))
+
+    def moment(self, order: int) -> float:
+        """Return ``E[p^k] / E[p]^k``: ``k!``."""
+        return float(math.factorial(order))

@@ -18,6 +18,7 @@ from wavegen.laws.term import NoLaw, Reals, Scaled, Term
 MOST_TERMS = 1 << 17
 """Terms of the series; beyond, the envelope is blurred by as little as they allow."""
 FIRST_TERMS = 256
+NEXT_TERMS = 64
 FEW_TERMS = 1 << 12
 NEGLIGIBLE = 1e-14
 """Characteristic functions below this times the root of the number of terms end the series."""
@@ -212,7 +213,7 @@ def series_of(
         left = float(np.max(np.abs(piece)))
         if left < NEGLIGIBLE * math.sqrt(count):
             break
-        block = max(FIRST_TERMS, count // 4)
+        block = max(NEXT_TERMS, count // 8)
     phi = np.concatenate(pieces)
     a: Reals = zeros[:count]
     if left >= SLIGHT:

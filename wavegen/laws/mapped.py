@@ -13,6 +13,7 @@ from numpy.typing import ArrayLike, NDArray
 from wavegen.laws.law import Holds, Law, from_db, to_db
 from wavegen.laws.level_search import level_by_halving
 from wavegen.laws.memoryless import Curve
+from wavegen.laws.moments import moment_of
 from wavegen.laws.panels import nodes_of, panel_edges, slopes_at_nodes
 from wavegen.laws.term import NoLaw
 
@@ -63,13 +64,25 @@ class MappedLaw:
     @cached_property
     def mean(self) -> float:
         """Mean power of the output over that of the input."""
+        return self._mean_of(1)
+
+    def moment(self, order: int) -> float:
+        """Return ``E[p^k] / E[p]^k`` of the output."""
+        return self._mean_of(order) / self.mean**order
+
+    def _mean_of(self, order: int) -> float:
+        """Return the mean of a power of the output's power."""
+
+        def raised(amplitude: Reals) -> Reals:
+            return self._power(amplitude) ** order
+
         edges = panel_edges(0.0, self._reach, n_panels=_PANELS, kinks=self.kinks)
         nodes, weights = nodes_of(edges)
-        slopes = slopes_at_nodes(self._power(nodes), edges)
+        slopes = slopes_at_nodes(raised(nodes), edges)
         above = self.source.ccdf(to_db(nodes**2))
-        start = float(self._power(np.zeros(1))[0])
+        start = float(raised(np.zeros(1))[0])
         steps = np.array([kink for kink in self.kinks if 0 < kink < self._reach])
-        jumps = self._power(steps * (1 + _NEXT)) - self._power(steps * (1 - _NEXT))
+        jumps = raised(steps * (1 + _NEXT)) - raised(steps * (1 - _NEXT))
         jumped = math.fsum(jumps * self.source.ccdf(to_db(steps**2)))
         return start + jumped + math.fsum((slopes * above * weights).ravel())
 
@@ -322,6 +335,12 @@ class GatedLaw:
     def peak_db(self) -> float:
         """Highest level that can occur, dB over the mean of the whole."""
         return self.source.peak_db - float(to_db(self.mean))
+
+    def moment(self, order: int) -> float:
+        """Return ``E[p^k] / E[p]^k`` of the whole, from that of the on-time."""
+        ramps = float(np.mean(self.ramp ** (2 * order))) if self.ramp.size else 0.0
+        share = self.duty_fully_on + self.ramp_share * ramps
+        return share * moment_of(self.source, order)[0] / self.mean**order
 
     def ccdf(self, level_db: ArrayLike) -> Reals:
         """Return the probability that the power is above a level (dB over the mean)."""

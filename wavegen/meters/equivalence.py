@@ -11,13 +11,14 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Any, Literal, Protocol
+from typing import Literal
 
 import numpy as np
 import scipy.special
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
 from wavegen.core.errors import ArgumentsError
+from wavegen.laws.moments import Curve, moment_of
 from wavegen.meters.intervals import SampledStatistics
 
 Verdict = Literal["agrees", "differs", "undecided"]
@@ -40,24 +41,7 @@ MOMENT_EVENTS = 4000
 rest on a few peaks, and a record without these underrates the error as well: with 2044 samples 13
 of 6000 raised a false alarm."""
 _SLOPE_STEP_DB = 0.05
-_MOMENT_GRID_DB = 0.005
-_LOWEST_DB = -60.0
-_RAREST = 1e-13
 _DB = 10 / math.log(10)
-
-
-class Curve(Protocol):
-    """What is needed of a law; see :class:`wavegen.laws.law.Law`."""
-
-    @property
-    def peak_db(self) -> float:
-        """Highest level that can occur, dB over the mean."""
-
-    def ccdf(self, level_db: ArrayLike) -> NDArray[np.float64]:
-        """Return ``P(p > level)``."""
-
-    def level_db(self, probability: ArrayLike) -> NDArray[np.float64]:
-        """Return the level at a probability, dB over the mean."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -329,7 +313,7 @@ def _moment_differences(
 ) -> list[tuple[float, Difference]]:
     found = []
     for order in (2, 3):
-        wanted, own_slack = law_moment(law, order)
+        wanted, own_slack = moment_of(law, order)
         slack = max(own_slack, order * (slack_db - SLACK_DB) / _DB) * wanted
         seen = sampled.moment(order, confidence=1 - alarm)
         if seen.standard_error**2 * MOMENT_EVENTS > wanted**2:
@@ -351,40 +335,6 @@ def _peak_difference(
     if excess > slack_db + (most_db - statistics.mean_db):
         return [(math.inf, Difference(kind="peak", deviation_db=excess))]
     return []
-
-
-def law_moment(law: Curve, order: int) -> tuple[float, float]:
-    """Return ``E[p^k] / E[p]^k`` of a law, and its relative error.
-
-    Parameters
-    ----------
-    law : Curve
-        If it has a method ``moment(order)``, that is asked, and is taken as exact.
-    order : int
-        k.
-
-    Returns
-    -------
-    value : float
-    error : float
-        0 if exact; else that of a level that is good to 0.001 dB.
-
-    Notes
-    -----
-    ``E[x^k] = k integral of x^(k-1) P(p > x) dx``, by the trapezoidal rule over levels.
-    """
-    method: Any = getattr(law, "moment", None)
-    if method is not None:
-        return float(method(order)), 0.0
-    top = min(float(law.peak_db), float(law.level_db(_RAREST))) + _MOMENT_GRID_DB
-    count = math.ceil((top - _LOWEST_DB) / _MOMENT_GRID_DB) + 1
-    level = np.linspace(_LOWEST_DB, top, count)
-    x = 10 ** (level / 10)
-    beyond = law.ccdf(level)
-    first, wanted = (
-        float(x[0] ** k + np.trapezoid(k * x**k * beyond, level) / _DB) for k in (1, order)
-    )
-    return wanted / first**order, order * 0.001 / _DB
 
 
 def compare_with_law(
@@ -512,7 +462,7 @@ def _moment_rows(
     rows = []
     factor = _sigmas_to_find(_moment_share(down_to, false_alarm))
     for seen in sampled.moments():
-        wanted, slack = law_moment(law, seen.order)
+        wanted, slack = moment_of(law, seen.order)
         error = seen.standard_error / wanted
         is_judged = error**2 * MOMENT_EVENTS <= 1 and not sampled.says_nothing
         rows.append(

@@ -6,11 +6,14 @@ import re
 from typing import Any
 
 from wavegen.core.site import Site
+from wavegen.laws.constant import ConstantLaw
 from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
+from wavegen.laws.radial import RadialLaw
+from wavegen.laws.tabulated import tabulated
 from wavegen.laws.term import NoLaw, Term
 from wavegen.production.graph import is_combiner
-from wavegen.stages.chain import chain_law, chain_term, source_site
+from wavegen.stages.chain import HasLaw, chain_law, chain_term, source_site
 
 
 def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | NoLaw:
@@ -29,7 +32,15 @@ def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | N
     Law or NoLaw
         What has no law says so by name.
     """
-    law = _law_of(settings, source_site(stages, site))
+    here = source_site(stages, site)
+    mute = next((stage for stage in stages if not isinstance(stage, HasLaw)), None)
+    if mute is not None and is_combiner(settings):  # the law of a sum would be computed in vain
+        term = _term_of(settings, here)
+        named = term if isinstance(term, NoLaw) else ConstantLaw(name=term.name)
+        return chain_law((mute,), site, named, "stages")
+    law = _law_of(settings, here)
+    if isinstance(law, RadialLaw):
+        law = tabulated(law)
     return chain_law(stages, site, law, "stages")
 
 
