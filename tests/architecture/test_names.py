@@ -18,7 +18,10 @@ from wavegen.stages import COMBINERS, STAGES
 
 ROOT = Path(__file__).parents[2]
 
-DIMENSIONLESS = {"roll_off", "taps", "multiple", "bt", "h"}
+DIMENSIONLESS = {
+    *("roll_off", "taps", "multiple", "bt", "h"),
+    *("smoothness", "am_am", "am_pm", "small_signal", "asymptote"),
+}
 """Fields of settings that are numbers without a unit, by nature."""
 
 COVERED_BY: dict[str, str] = {}

@@ -3,6 +3,7 @@
 from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
+from pathlib import Path
 from typing import Any
 
 from wavegen.core.signal import Signal
@@ -34,6 +35,13 @@ from wavegen.stages.crest.clip_filter import ClipFilter
 from wavegen.stages.crest.peak_cancellation import PeakCancellation
 from wavegen.stages.crest.peak_windowing import PeakWindowing
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.device.generalised_memory_polynomial import GeneralisedMemoryPolynomial
+from wavegen.stages.device.ghorbani import Ghorbani
+from wavegen.stages.device.measured_amplifier import MeasuredAmplifier
+from wavegen.stages.device.memory_polynomial import MemoryPolynomial
+from wavegen.stages.device.modified_rapp import ModifiedRapp
+from wavegen.stages.device.rapp import Rapp
+from wavegen.stages.device.saleh import Saleh
 from wavegen.stages.passband import Passband
 
 RATE_HZ = Fraction(1_000_000)
@@ -266,6 +274,11 @@ def _stage(settings: Any, site: Site, source: Signal) -> Signal:
     return built
 
 
+def _device(name: str) -> str:
+    """Return the path of measured points or coefficients of an invented amplifier."""
+    return str(Path(__file__).parents[1] / "stages" / "device" / "data" / name)
+
+
 def _combine(settings: Any, site: Site, source: Signal) -> Signal:
     built: Signal = settings.combine(site, [source] * len(settings.parts))
     return built
@@ -334,6 +347,52 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
         ),
         StageExample(settings=Gate(pattern="1101", slot=TimeSpan.parse("7 samples")), build=_stage),
     ),
+    "generalised_memory_polynomial": (
+        StageExample(
+            settings=GeneralisedMemoryPolynomial(
+                path=_device("crossed.json"), input_back_off_db=15.0
+            ),
+            build=_stage,
+            identity=GeneralisedMemoryPolynomial(path=_device("gain.json"), input_back_off_db=15.0),
+        ),
+    ),
+    "ghorbani": (
+        StageExample(
+            settings=Ghorbani(input_back_off_db=10.0),
+            build=_stage,
+            identity=Ghorbani(
+                am_am=(1.0, 1.0, 1.0, 0.0),
+                am_pm=(0.0, 1.0, 0.0, 0.0),
+                input_back_off_db=200.0,
+                back_off_from="compression",
+            ),
+        ),
+    ),
+    "measured_amplifier": (
+        StageExample(
+            settings=MeasuredAmplifier(path=_device("amplifier.csv"), input_power_dbm=-6.0),
+            build=_stage,
+            identity=MeasuredAmplifier(path=_device("linear.csv"), input_power_dbm=0.0),
+        ),
+        StageExample(
+            settings=MeasuredAmplifier(path=_device("amplifier.csv"), input_back_off_db=8.0),
+            build=_stage,
+        ),
+    ),
+    "memory_polynomial": (
+        StageExample(
+            settings=MemoryPolynomial(path=_device("aligned.csv"), input_back_off_db=15.0),
+            build=_stage,
+            identity=MemoryPolynomial(path=_device("gain.csv"), input_back_off_db=15.0),
+        ),
+    ),
+    "modified_rapp": (
+        StageExample(
+            settings=ModifiedRapp(input_back_off_db=8.0, back_off_from="compression"),
+            build=_stage,
+            identity=ModifiedRapp(input_back_off_db=200.0),
+        ),
+    ),
     "peak_cancellation": (
         StageExample(
             settings=PeakCancellation(ceiling_db=5.0, passes=2),
@@ -365,6 +424,13 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             identity=Projection(ceiling_db=60.0),
         ),
     ),
+    "rapp": (
+        StageExample(
+            settings=Rapp(smoothness=2.0, input_back_off_db=6.0),
+            build=_stage,
+            identity=Rapp(input_back_off_db=200.0),
+        ),
+    ),
     "resample": (
         StageExample(
             settings=Resample(input_rate_hz=Fraction(625_000)),
@@ -372,6 +438,13 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             identity=Resample(input_rate_hz=RATE_HZ),
         ),
         StageExample(settings=Resample(input_rate_hz=Fraction(3_000_000)), build=_stage),
+    ),
+    "saleh": (
+        StageExample(
+            settings=Saleh(input_back_off_db=10.0),
+            build=_stage,
+            identity=Saleh(input_back_off_db=200.0),
+        ),
     ),
     "scale": (
         StageExample(settings=Scale(gain_db=-3.0), build=_stage, identity=Scale(gain_db=0.0)),

@@ -7,14 +7,28 @@ STAGES = Registry(
     {
         "clip": "wavegen.stages.crest.clip:Clip",
         "clip_filter": "wavegen.stages.crest.clip_filter:ClipFilter",
+        "constellation_extension": (
+            "wavegen.stages.crest.constellation_extension:ConstellationExtension"
+        ),
         "delay": "wavegen.stages.channel.delay:Delay",
         "filter": "wavegen.stages.channel.filter:Filter",
         "gate": "wavegen.stages.channel.gate:Gate",
+        "generalised_memory_polynomial": (
+            "wavegen.stages.device.generalised_memory_polynomial:GeneralisedMemoryPolynomial"
+        ),
+        "ghorbani": "wavegen.stages.device.ghorbani:Ghorbani",
+        "measured_amplifier": "wavegen.stages.device.measured_amplifier:MeasuredAmplifier",
+        "memory_polynomial": "wavegen.stages.device.memory_polynomial:MemoryPolynomial",
+        "modified_rapp": "wavegen.stages.device.modified_rapp:ModifiedRapp",
         "peak_cancellation": "wavegen.stages.crest.peak_cancellation:PeakCancellation",
         "peak_windowing": "wavegen.stages.crest.peak_windowing:PeakWindowing",
         "projection": "wavegen.stages.crest.projection:Projection",
+        "rapp": "wavegen.stages.device.rapp:Rapp",
         "resample": "wavegen.stages.channel.resample:Resample",
+        "saleh": "wavegen.stages.device.saleh:Saleh",
         "scale": "wavegen.stages.channel.scale:Scale",
+        "selected_mapping": "wavegen.stages.crest.selected_mapping:SelectedMapping",
+        "tone_reservation": "wavegen.stages.crest.tone_reservation:ToneReservation",
     },
 )
 

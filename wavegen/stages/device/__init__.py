@@ -1,0 +1,1 @@
+"""Models of amplifiers: what the device under test does to a stimulus."""

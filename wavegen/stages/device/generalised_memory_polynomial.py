@@ -1,0 +1,66 @@
+"""Amplifier with memory: a polynomial with envelopes that lag or lead the sample."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Annotated
+
+from annotated_types import Ge, Le, MinLen
+
+from wavegen.core.signal import Signal
+from wavegen.core.site import Site
+from wavegen.stages.coefficients import CROSSED, read_coefficients
+from wavegen.stages.polynomial import PolynomialBackOffFrom, drive_polynomial
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class GeneralisedMemoryPolynomial:
+    """Settings of a generalised memory polynomial.
+
+    Parameters
+    ----------
+    path : str
+        Coefficients, CSV or JSON, relative to the recipe: ``order,delay,lag,re,im``, where a
+        positive lag takes an earlier envelope.
+        A comment ``# sample_rate: 122.88 MHz`` (or a key in JSON) says which samples the delays
+        count; ``largest_amplitude`` up to which input amplitude the model is known (1 if not
+        said).
+    input_back_off_db : float
+        How far the mean input power (of a gated signal: of its on-time) stands below the
+        reference, dB.
+    back_off_from : {"full_scale", "compression"}
+        The reference at the input: the largest amplitude, or the 1 dB compression point of a
+        carrier of constant amplitude.
+
+    Notes
+    -----
+    ``y[n] = sum c_pqm x[n - q] |x[n - q - m]|^(p - 1)`` over orders ``p``, delays ``q`` and lags
+    ``m`` (0 aligned, above lagging, below leading): D. R. Morgan, Z. Ma, J. Kim, M. G. Zierdt,
+    J. Pastalan, "A generalized memory polynomial model for digital predistortion of RF power
+    amplifiers", IEEE Trans. Signal Process. 54(10), 2006.
+    Beyond the largest amplitude nothing is extrapolated: a signal that peaks there is
+    refused. The output has the mean power of the input; the gain that was undone is told. A
+    model with memory leaves no law.
+    """
+
+    path: Annotated[str, MinLen(1)]
+    input_back_off_db: Annotated[float, Ge(-20), Le(200)]
+    back_off_from: PolynomialBackOffFrom = "full_scale"
+
+    def build(self, site: Site, source: Signal) -> Signal:
+        """Return the signal behind the amplifier at the mean power it had.
+
+        Raises
+        ------
+        FileError
+            As raised by :func:`wavegen.stages.coefficients.read_coefficients`.
+        RecipeError
+            As raised by :func:`wavegen.stages.polynomial.drive_polynomial`.
+        """
+        return drive_polynomial(
+            site,
+            source,
+            read_coefficients(site.folder / self.path, CROSSED),
+            back_off_db=self.input_back_off_db,
+            back_off_from=self.back_off_from,
+        )
