@@ -98,7 +98,7 @@ def level_table(document: dict[str, Any]) -> Table:
     if on_time:
         columns["over on-time mean"] = _levels(on_time, document)
     columns["complex Gaussian"] = [
-        fixed(_gaussian_db(row["probability"]), "dB") for row in document["levels"]
+        fixed(complex_gaussian_db(row["probability"]), "dB") for row in document["levels"]
     ]
     if law:
         exact = {row["probability"]: row["level_db"] for row in law["levels"]}
@@ -131,7 +131,7 @@ def law_table(law: dict[str, Any], *, title: str) -> Table:
         (
             percent(row["probability"]),
             fixed(row["level_db"], "dB"),
-            fixed(_gaussian_db(row["probability"]), "dB"),
+            fixed(complex_gaussian_db(row["probability"]), "dB"),
         )
         for row in law["levels"]
     ]
@@ -145,7 +145,8 @@ def law_table(law: dict[str, Any], *, title: str) -> Table:
     )
 
 
-def _gaussian_db(probability: float) -> float:
+def complex_gaussian_db(probability: float) -> float:
+    """Return the level that a complex Gaussian signal exceeds with a probability, dB."""
     return 10 * math.log10(-math.log(probability))
 
 

@@ -109,7 +109,7 @@ def ccdf_figure(
     figure, (axes,) = new_figure(title)
     first = curves[0]
     seen = first.probability[first.probability > 0]
-    floor = least or 10.0 ** np.floor(np.log10(max(float(seen.min(initial=1.0)), 1e-9)))
+    floor = least or min(10.0 ** np.floor(np.log10(max(float(seen.min(initial=1.0)), 1e-9))), 0.01)
     for curve, style in zip(curves, _strokes(curves), strict=True):
         drawn = curve.probability > 0
         draw(axes, curve.level_db[drawn], curve.probability[drawn], style, label=curve.name)

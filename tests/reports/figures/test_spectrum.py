@@ -1,0 +1,30 @@
+"""Picture of a spectrum."""
+
+import numpy as np
+import pytest
+
+from wavegen.meters.spectrum import spectrum_of
+from wavegen.reports.figures.spectrum import Channel, frequency_unit, spectrum_figure
+
+
+def test_unit_suits_the_span():
+    assert frequency_unit(5e5)[1] == "kHz"
+    assert frequency_unit(2e9)[1] == "GHz"
+
+
+def test_density_channels_and_mask_are_drawn():
+    rng = np.random.default_rng(1)
+    noise = (rng.standard_normal(1 << 15) + 1j * rng.standard_normal(1 << 15)).astype(np.complex64)
+    spectrum = spectrum_of(noise, sample_rate_hz=1e6, n_fft=256)
+    figure = spectrum_figure(
+        [("noise", spectrum)],
+        title="T",
+        channels=[Channel(name="carrier", low_hz=-1e5, high_hz=1e5)],
+        mask=(np.array([-5e5, 5e5]), np.array([-50.0, -50.0])),
+    )
+    axes = figure.axes[0]
+    density = axes.lines[0].get_ydata()
+    assert density.mean() == pytest.approx(-60, abs=0.3)  # 0 dB over 1 MHz
+    assert [text.get_text() for text in axes.texts] == ["carrier"]
+    assert len(axes.lines) == 2
+    assert axes.get_xlabel().endswith("kHz")

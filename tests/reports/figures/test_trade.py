@@ -1,0 +1,26 @@
+"""Pictures of a trade-off and of a device."""
+
+import numpy as np
+
+from wavegen.reports.figures.trade import Front, front_figure, gain_figure
+
+
+def test_points_are_joined_in_the_order_of_evm():
+    evm = np.array([5.0, 1.0, 3.0])
+    front = Front(name="clip", evm_percent=evm, level_db=9 - 0.3 * evm)
+    figure = front_figure(
+        [front], title="T", level_name="level, dB", bound=front, evm_limit_percent=4.0
+    )
+    axes = figure.axes[0]
+    assert list(axes.lines[0].get_xdata()) == [1, 3, 5]
+    assert list(axes.lines[1].get_xdata()) == [5, 1, 3]
+    assert "limit" in axes.get_xlabel()
+
+
+def test_gain_with_and_without_interval():
+    rows = [{"input_db": x, "gain_db": -0.1 * x} for x in range(5)]
+    assert len(gain_figure(rows, title="T").axes[0].collections) == 0
+    rows = [row | {"low_db": row["gain_db"] - 1, "high_db": row["gain_db"] + 1} for row in rows]
+    figure = gain_figure(rows, title="T", compression_db=3.0)
+    assert len(figure.axes[0].collections) == 1
+    assert "3.00 dB" in figure.axes[0].texts[0].get_text()
