@@ -60,6 +60,29 @@ def dump(settings: Any, *, tables: Tables = TABLES) -> str:
     return "".join(f"{line}\n" for line in _block(_settings(settings, tables, ""), ""))
 
 
+def stage_text(stage: Any, *, tables: Tables = TABLES) -> str:
+    """Write a stage as a flow mapping on one line: ``{kind: clip, ceiling: 7 dB}``.
+
+    Parameters
+    ----------
+    stage : settings dataclass
+        A member of the table of stages.
+    tables : mapping
+        Where its ``kind:`` is looked up.
+
+    Returns
+    -------
+    str
+
+    Raises
+    ------
+    RecipeError
+        A value that no recipe can hold.
+    """
+    kind = kind_of_class(tables, ("stage",), type(stage))
+    return _flow({"kind": kind, **_settings(stage, tables, "stage")})
+
+
 def _settings(settings: Any, tables: Tables, path: str) -> dict[str, object]:
     written: dict[str, object] = {}
     for key, (item, hint) in fields_of(type(settings)).items():
