@@ -29,6 +29,7 @@ VERBS = Registry(
         "make": "wavegen.cli.make:Make",
         "predict": "wavegen.cli.predict:Predict",
         "measure": "wavegen.cli.measure:Measure",
+        "fidelity": "wavegen.cli.fidelity:Fidelity",
         "check": "wavegen.cli.check:Check",
         "show": "wavegen.cli.show:Show",
         "convert": "wavegen.cli.convert:Convert",
