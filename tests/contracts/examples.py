@@ -32,9 +32,12 @@ from wavegen.stages.channel.scale import Scale
 from wavegen.stages.combine.sum import Part, Sum
 from wavegen.stages.crest.clip import Clip
 from wavegen.stages.crest.clip_filter import ClipFilter
+from wavegen.stages.crest.constellation_extension import ConstellationExtension
 from wavegen.stages.crest.peak_cancellation import PeakCancellation
 from wavegen.stages.crest.peak_windowing import PeakWindowing
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.crest.selected_mapping import SelectedMapping
+from wavegen.stages.crest.tone_reservation import ToneReservation
 from wavegen.stages.device.generalised_memory_polynomial import GeneralisedMemoryPolynomial
 from wavegen.stages.device.ghorbani import Ghorbani
 from wavegen.stages.device.measured_amplifier import MeasuredAmplifier
@@ -261,12 +264,15 @@ class StageExample:
         The same at zero strength: its output is its input, bit for bit.
     is_measured : bool
         Whether the mean power behind it has no closed form.
+    source : settings, optional
+        What it is built on; noise if not given.
     """
 
     settings: Any
     build: Callable[[Any, Site, Signal], Signal]
     identity: Any = None
     is_measured: bool = False
+    source: Any = None
 
 
 def _stage(settings: Any, site: Site, source: Signal) -> Signal:
@@ -283,6 +289,47 @@ def _combine(settings: Any, site: Site, source: Signal) -> Signal:
     built: Signal = settings.combine(site, [source] * len(settings.parts))
     return built
 
+
+SYMBOLS = Ofdm(
+    subcarrier_spacing_hz=Fraction(15_625),
+    groups=(
+        Group(
+            subcarriers=IndexSet.parse("-7..-3, -1, 1..3, 5..7"),
+            constellation=Constellation.parse("16qam"),
+        ),
+    ),
+    cyclic_prefix=CyclicPrefix.parse(["6 samples", "2 x 5 samples"]),
+    edge_window=Stretch.parse("3 samples"),
+)
+"""OFDM that fills a quarter of the FFT, with two free subcarriers."""
+FRAMED = Ofdm(
+    subcarrier_spacing_hz=Fraction(15_625),
+    groups=(
+        Group(
+            subcarriers=IndexSet.parse("-18..17"),
+            constellation=Constellation.parse("qpsk"),
+            symbols=SymbolSet.parse("0, 2"),
+            level_db=3.0,
+        ),
+        Group(
+            subcarriers=IndexSet.parse("-12..-1"),
+            constellation=Constellation.parse("8psk"),
+            symbols=SymbolSet.parse("1"),
+            rotation=Rotation.parse("pi/8"),
+        ),
+    ),
+    pilots=(
+        Pilots(
+            subcarriers=IndexSet.parse("0..15 by 3"),
+            values=PilotValues.parse({"random": "qpsk"}),
+            symbols=SymbolSet.parse("1"),
+        ),
+    ),
+    cyclic_prefix=CyclicPrefix.parse("1/8"),
+    frame_symbols=4,
+    half_subcarrier_shift=True,
+)
+"""OFDM with a schedule, a silent symbol in each frame and a shift, in two thirds of the FFT."""
 
 STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
     "clip": (
@@ -303,6 +350,19 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
                 transition_hz=Fraction(50_000),
             ),
             build=_stage,
+        ),
+    ),
+    "constellation_extension": (
+        StageExample(
+            settings=ConstellationExtension(ceiling_db=5.0),
+            build=_stage,
+            identity=ConstellationExtension(ceiling_db=60.0),
+            source=SYMBOLS,
+        ),
+        StageExample(
+            settings=ConstellationExtension(ceiling_db=7.0, rounds=2),
+            build=_stage,
+            source=FRAMED,
         ),
     ),
     "delay": (
@@ -423,6 +483,13 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             build=_stage,
             identity=Projection(ceiling_db=60.0),
         ),
+        StageExample(
+            settings=Projection(ceiling_db=5.0, rounds=6),
+            build=_stage,
+            identity=Projection(ceiling_db=60.0),
+            source=SYMBOLS,
+        ),
+        StageExample(settings=Projection(ceiling_db=6.0, rounds=3), build=_stage, source=FRAMED),
     ),
     "rapp": (
         StageExample(
@@ -449,6 +516,15 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
     "scale": (
         StageExample(settings=Scale(gain_db=-3.0), build=_stage, identity=Scale(gain_db=0.0)),
     ),
+    "selected_mapping": (
+        StageExample(
+            settings=SelectedMapping(candidates=4),
+            build=_stage,
+            identity=SelectedMapping(candidates=1),
+            source=SYMBOLS,
+        ),
+        StageExample(settings=SelectedMapping(candidates=3), build=_stage, source=FRAMED),
+    ),
     "sum": (
         StageExample(
             settings=Sum(
@@ -460,6 +536,19 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             ),
             build=_combine,
             identity=Sum(parts=(Part(signal=None),)),
+        ),
+    ),
+    "tone_reservation": (
+        StageExample(
+            settings=ToneReservation(ceiling_db=5.0, count=2),
+            build=_stage,
+            identity=ToneReservation(ceiling_db=60.0, count=2),
+            source=SYMBOLS,
+        ),
+        StageExample(
+            settings=ToneReservation(ceiling_db=7.0, subcarriers=IndexSet.parse("19, -21, -20")),
+            build=_stage,
+            source=FRAMED,
         ),
     ),
 }

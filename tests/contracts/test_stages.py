@@ -16,15 +16,20 @@ from wavegen.stages.chain import chain_cycle, source_site
 N_SAMPLES = 40_009
 
 
-def length_of(contract, settings, n_samples=N_SAMPLES):
-    """Return a loop of whole cycles of the stage, at least as long."""
-    cycle = chain_cycle(Cycle(n_samples=1), [settings], contract.examples.RATE_HZ, "stages")
+def length_of(contract, example, n_samples=N_SAMPLES):
+    """Return a loop of whole cycles of stage and source, at least as long."""
+    rate = contract.examples.RATE_HZ
+    own = example.source.cycle(rate, "signal") if example.source else Cycle(n_samples=1)
+    cycle = chain_cycle(own, [example.settings], rate, "stages")
     return -(-n_samples // cycle.n_samples) * cycle.n_samples
 
 
-def source_of(contract, settings, n_samples=N_SAMPLES, bandwidth_hz=250_000):
-    """Return noise at the rate, and on the loop, that the stage wants before it."""
-    site = source_site([settings], contract.site(length_of(contract, settings, n_samples)))
+def source_of(contract, example, n_samples=N_SAMPLES, bandwidth_hz=250_000):
+    """Return noise, or what the example wants, at the rate and on the loop before the stage."""
+    loop = contract.site(length_of(contract, example, n_samples))
+    site = source_site([example.settings], loop)
+    if example.source is not None:
+        return example.source.build(site)
     bandwidth = min(Fraction(bandwidth_hz), site.sample_rate_hz)
     return Noise(bandwidth_hz=bandwidth).build(site)
 
@@ -37,13 +42,13 @@ def site_of(contract, source, **change):
 
 def build(contract, example, settings=None, *, source=None):
     settings = settings or example.settings
-    source = source or source_of(contract, settings)
+    source = source or source_of(contract, dataclasses.replace(example, settings=settings))
     return example.build(settings, site_of(contract, source), source)
 
 
 @pytest.fixture(scope="module")
 def source(contract, stage_example):
-    return source_of(contract, stage_example.settings)
+    return source_of(contract, stage_example)
 
 
 @pytest.fixture(scope="module")
@@ -60,7 +65,7 @@ def test_every_member_has_an_example_of_its_own_class(contract):
 
 
 def test_form(contract, stage_example, built):
-    n_samples = length_of(contract, stage_example.settings)
+    n_samples = length_of(contract, stage_example)
     contract.check_form(built, n_samples=n_samples, rate_hz=contract.examples.RATE_HZ)
 
 
@@ -102,7 +107,9 @@ def test_zero_strength_is_identity(contract, stage_example):
         ]
         assert shown, f"no example of {kind.__name__} shows it at zero strength"
         return
-    source = source_of(contract, stage_example.identity)
+    source = source_of(
+        contract, dataclasses.replace(stage_example, settings=stage_example.identity)
+    )
     same = build(contract, stage_example, stage_example.identity, source=source)
     assert samples_of(same).tobytes() == samples_of(source).tobytes()
     assert same.mean_power == source.mean_power
@@ -132,7 +139,7 @@ def test_the_data_come_from_the_source_alone(contract, stage_example, source, bu
 
 @pytest.mark.parametrize("n_samples", [1, 5, 4_096])
 def test_short_loops(contract, stage_example, n_samples):
-    source = source_of(contract, stage_example.settings, n_samples, bandwidth_hz=10**9)
+    source = source_of(contract, stage_example, n_samples, bandwidth_hz=10**9)
     signal = build(contract, stage_example, source=source)
     contract.check_cuts(signal)
     assert np.isfinite(samples_of(signal)).all()

@@ -8,10 +8,15 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 
+from wavegen.core.index_set import IndexSet
 from wavegen.core.render import samples_of
 from wavegen.core.rng import random_words, stream_key
 from wavegen.core.signal import Signal
 from wavegen.core.site import Site
+from wavegen.dsp.arrival import Arrival
+from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.ofdm import Group, Ofdm
+from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 
 RATE_HZ = Fraction(1_000_000)
 
@@ -139,4 +144,41 @@ def reduction():
         change_dbc=change_dbc,
         change_spectrum=change_spectrum,
         evm_percent=evm_percent,
+    )
+
+
+def built_ofdm(subcarriers, constellation="qpsk", *, n_symbols=28, fft_samples=256, **fields):
+    """Return OFDM behind a prefix of a sixteenth with an edge of half of that, and its site."""
+    group = Group(
+        subcarriers=IndexSet.parse(subcarriers), constellation=Constellation.parse(constellation)
+    )
+    usual = {
+        "subcarrier_spacing_hz": RATE_HZ / fft_samples,
+        "groups": (group,),
+        "cyclic_prefix": CyclicPrefix.parse("1/16"),
+        "edge_window": Stretch.parse("1/32"),
+    }
+    settings = Ofdm(**usual | fields)
+    cycle = settings.cycle(RATE_HZ, "signal")
+    n_samples = cycle.n_samples * -(-n_symbols // cycle.n_symbols)
+    return settings.build(site(n_samples, path="signal"))
+
+
+def subcarriers_of(signal):
+    """Return what a receiver finds and what was sent, shape (n_symbols, n_active) each."""
+    reception = signal.receive(signal, Arrival(n_samples=signal.n_samples))
+    both = samples_of(reception.received), samples_of(reception.ideal)
+    return tuple(each.reshape(-1, reception.n_columns).astype(np.complex128) for each in both)
+
+
+def bodies_of(signal):
+    """Return the bins of each useful symbol by a transform of the test's own, (n, n_fft)."""
+    rows = samples_of(signal.bodies).reshape(-1, signal.layout.n_fft).astype(np.complex128)
+    return np.fft.fft(rows, axis=1) / signal.layout.n_fft
+
+
+@pytest.fixture(scope="session")
+def ofdm():
+    return SimpleNamespace(
+        build=built_ofdm, reduce=reduce, subcarriers=subcarriers_of, bins=bodies_of
     )

@@ -93,7 +93,7 @@ def project_rows(
     ----------
     rows : complex64 array, shape (n_rows, n_fft)
         Each row is one period; four or more a call are fastest. Not changed.
-    response : float32 array, shape (n_fft,)
+    response : float32 array, shape (n_fft,) or (n_rows, n_fft)
         What may be changed of each bin: 1 inside the band, 0 outside.
     amplitude : float
         Ceiling of every envelope.
@@ -106,21 +106,50 @@ def project_rows(
         Owned by the caller. In the band; the ceiling is passed by a little, the less the more
         rounds (0.1 dB after 20 at 4 times the band).
     """
+    lines = correcting_lines(rows, response=response, amplitude=amplitude, n_rounds=n_rounds)
+    made = np.asarray(scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True))
+    made += rows
+    return made
+
+
+def correcting_lines(
+    rows: NDArray[np.complex64],
+    *,
+    response: NDArray[np.float32],
+    amplitude: float,
+    n_rounds: int,
+) -> NDArray[np.complex64]:
+    """Return what :func:`project_rows` adds to each row, as its bins.
+
+    Parameters
+    ----------
+    rows, response, amplitude, n_rounds
+        As there.
+
+    Returns
+    -------
+    complex64 array, shape (n_rows, n_fft)
+        On the scale of ``fft(row) / n_fft``; owned by the caller.
+    """
+    twice = np.repeat(response, 2, axis=-1)  # once for each rail
 
     def in_band(states: NDArray[np.complex64]) -> NDArray[np.complex64]:
-        lines = np.asarray(scipy.fft.fft(states, axis=1))
-        lines *= response
-        made: NDArray[np.complex64] = np.asarray(scipy.fft.ifft(lines, axis=1, overwrite_x=True))
-        return made
+        lines = np.asarray(scipy.fft.fft(states, axis=1, norm="forward"))
+        flat = lines.view(np.float32)
+        np.multiply(flat, twice, out=flat)
+        return lines
 
     state = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
     before = np.zeros_like(state)
     for factor in momentum(n_rounds)[1:]:
-        moved = ahead(state, before, factor)
-        before = state
-        moved += rows - in_band(moved)
-        state = excess_over(moved.reshape(-1), amplitude).reshape(rows.shape)
-    return np.asarray(rows - in_band(state))
+        moved = ahead(state, before, factor) if factor else state
+        back = scipy.fft.ifft(in_band(moved), axis=1, norm="forward", overwrite_x=True)
+        left = np.subtract(rows, back, out=np.asarray(back))
+        before, spent = state, before
+        state = excess_over(left.reshape(-1), amplitude, plus=moved.reshape(-1), out=spent)
+        state = state.reshape(rows.shape)
+    lines = in_band(state)
+    return np.negative(lines, out=lines)
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -45,7 +45,13 @@ def power_of(samples: Samples, *, out: NDArray[np.float32] | None = None) -> NDA
     return power
 
 
-def excess_over(samples: Samples, amplitude: float, *, plus: Samples | None = None) -> Samples:
+def excess_over(
+    samples: Samples,
+    amplitude: float,
+    *,
+    plus: Samples | None = None,
+    out: Samples | None = None,
+) -> Samples:
     """Return what a polar clip takes away: ``x (1 - A / |x|)`` where ``|x| > A``, else zero.
 
     Parameters
@@ -56,6 +62,8 @@ def excess_over(samples: Samples, amplitude: float, *, plus: Samples | None = No
         Largest envelope let through, ``A``.
     plus : complex64 array, shape (n,), optional
         Added to the samples first; not changed.
+    out : complex64 array of n, optional
+        Where it goes, in any shape; contiguous.
 
     Returns
     -------
@@ -68,14 +76,15 @@ def excess_over(samples: Samples, amplitude: float, *, plus: Samples | None = No
     [(1.5+2j), 0j]
     """
     kernel = _compile()
+    made = np.empty(samples.size, np.complex64) if out is None else out.reshape(-1)
     if kernel is None:
-        return excess_by_numpy(samples, amplitude, plus=plus)
-    out = np.empty(samples.size, np.complex64)
+        made[:] = excess_by_numpy(samples, amplitude, plus=plus)
+        return made
     first = np.ascontiguousarray(samples).view(np.float32)
     second = _NONE if plus is None else np.ascontiguousarray(plus).view(np.float32)
     limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
-    kernel(first, second, limit, top, out.view(np.float32))
-    return out
+    kernel(first, second, limit, top, made.view(np.float32))
+    return made
 
 
 def excess_by_numpy(samples: Samples, amplitude: float, *, plus: Samples | None = None) -> Samples:

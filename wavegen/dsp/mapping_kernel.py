@@ -92,6 +92,30 @@ def write_values(
             rows[where, stretch] = values[:, columns]
 
 
+def read_values(rows: Samples, *, bins: NDArray[np.uint32]) -> Samples:
+    """Return columns ``bins`` of rows: the reverse of :func:`write_values`.
+
+    Parameters
+    ----------
+    rows : complex64 array, shape (n_rows, n_fft)
+        Not changed.
+    bins : uint32 array, shape (n,)
+        Columns, below ``n_fft``.
+
+    Returns
+    -------
+    complex64 array, shape (n_rows, n)
+        Owned by the caller.
+    """
+    stretches = _slices(bins.tobytes())
+    if len(stretches) > _MOST_SLICES:
+        return np.take(rows, bins, axis=1)
+    values = np.empty((rows.shape[0], bins.size), np.complex64)
+    for columns, stretch in stretches:
+        values[:, columns] = rows[:, stretch]
+    return values
+
+
 @lru_cache(maxsize=64)
 def _slices(bins: bytes) -> tuple[tuple[slice, slice], ...]:
     return slices_of(np.frombuffer(bins, np.uint32).tolist())

@@ -10,6 +10,7 @@ import numpy as np
 import scipy.fft
 from numpy.typing import NDArray
 
+from wavegen.dsp.symbol_rows import half_turn
 from wavegen.sources.ofdm_layout import Layout
 from wavegen.sources.ofdm_schedule import Presence, states
 
@@ -43,11 +44,6 @@ class Part:
         """Mean power of a symbol over the frame."""
         power = self.variance + float(np.sum(np.abs(self.expected) ** 2))
         return power * self.presence.n_on / self.presence.on.size
-
-
-def half_turn(n_fft: int) -> NDArray[np.complex128]:
-    """Return ``exp(j pi n / n_fft)``: a shift by half a subcarrier over a useful symbol."""
-    return np.asarray(np.exp(1j * np.pi / n_fft * np.arange(n_fft)), np.complex128)
 
 
 def mean_power(layout: Layout, parts: Sequence[Part], *, is_shifted: bool = False) -> float:

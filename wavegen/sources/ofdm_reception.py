@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.errors import SignalError
 from wavegen.core.signal import Range, Samples, Signal
+from wavegen.core.symbol_bodies import Undo
 from wavegen.dsp.arrival import Arrival, bring_back
 from wavegen.sources.ofdm_carried import Carried, Pinned
 from wavegen.sources.ofdm_layout import Layout
@@ -270,6 +271,7 @@ def receive_subcarriers(
     points: Signal | None,
     is_shifted: bool,
     early_samples: int | None,
+    undone_by: tuple[Undo, ...] = (),
 ) -> Reception:
     """Return the subcarriers sent and received; see ``Prefixed.receive``.
 
@@ -289,6 +291,8 @@ def receive_subcarriers(
         Whether every subcarrier stands half a spacing higher.
     early_samples : int or None
         How long before the useful part the transform begins.
+    undone_by : tuple of Undo
+        What is taken back of what stages did to the symbols, in this order.
 
     Raises
     ------
@@ -306,7 +310,7 @@ def receive_subcarriers(
             remedy="Choose a shorter window of timings.",
         )
     labels = labels_of(grid)
-    received = ReceivedSubcarriers(
+    received: Signal = ReceivedSubcarriers(
         sample_rate_hz=ideal.sample_rate_hz,
         n_samples=ideal.n_samples,
         step=ideal.step,
@@ -318,6 +322,8 @@ def receive_subcarriers(
         on=None if (labels >= 0).all() else labels >= 0,
         is_shifted=is_shifted,
     )
+    for one in undone_by:
+        received = one.undo(received)
     return Reception(
         received=received,
         ideal=ideal,

@@ -2,20 +2,22 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
+from typing import Self
 
 import numpy as np
 import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
+from wavegen.core.symbol_bodies import Undo
 from wavegen.dsp.arrival import Arrival
 from wavegen.dsp.mapping_kernel import write_values
+from wavegen.dsp.symbol_rows import half_turn
 from wavegen.sources.ofdm_carried import Carried, Drawn, Pinned
 from wavegen.sources.ofdm_layout import Layout
-from wavegen.sources.ofdm_power import half_turn
-from wavegen.sources.ofdm_reception import receive_subcarriers
+from wavegen.sources.ofdm_reception import labels_of, receive_subcarriers
 from wavegen.sources.ofdm_schedule import states
 from wavegen.sources.reception import Reception
 
@@ -81,6 +83,11 @@ class SymbolBodies(Signal):
         for part, is_on in zip(self.pinned, on.T, strict=True):
             grids[np.ix_(is_on, part.bins)] = part.values
         return grids, numbers
+
+    @cached_property
+    def on(self) -> NDArray[np.bool_]:
+        """Whether each subcarrier is on in each symbol of the frame, (n_frame, n_active)."""
+        return labels_of(self) >= 0
 
     @cached_property
     def turn(self) -> Samples:
@@ -209,12 +216,38 @@ class Prefixed(Signal):
     is_shifted : bool
         Whether subcarriers stand half a spacing higher: what goes on beyond a useful symbol, on
         either side, is then its other end with the sign changed.
+    undone_by : tuple of Undo
+        What a receiver takes back of what stages did to the bodies, the last first.
     """
 
     layout: Layout
-    ideal: Signal
+    ideal: Subcarriers
     points: Signal | None = None
     is_shifted: bool = False
+    undone_by: tuple[Undo, ...] = ()
+
+    @property
+    def bodies(self) -> Signal:
+        """Useful parts of the symbols: those of the source, or what stages made of them."""
+        return self.inputs[0]
+
+    @property
+    def grid(self) -> SymbolBodies:
+        """What the source puts on its subcarriers."""
+        return self.ideal.bodies
+
+    def with_bodies(self, bodies: Signal, *, undo: Undo | None = None) -> Self:
+        """Return the same with other bodies; what was sent stays the reference of EVM.
+
+        Parameters
+        ----------
+        bodies : Signal
+            Of the same length and mean power.
+        undo : Undo, optional
+            What a receiver takes back before it compares.
+        """
+        more = () if undo is None else (undo,)
+        return replace(self, inputs=(bodies,), undone_by=(*more, *self.undone_by))
 
     def receive(
         self, conditioned: Signal, arrival: Arrival, *, early_samples: int | None = None
@@ -248,6 +281,7 @@ class Prefixed(Signal):
             points=self.points,
             is_shifted=self.is_shifted,
             early_samples=early_samples,
+            undone_by=self.undone_by,
         )
 
     @cached_property

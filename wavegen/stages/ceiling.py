@@ -246,8 +246,9 @@ def find_amplitude(pilot: Pilot, ceiling_db: float, process: Process) -> Found |
     Notes
     -----
     ``a - ceiling r(a)``, with ``a`` the amplitude squared and ``r`` the mean of the output, both
-    over the mean of the input, is not negative at ``a = ceiling`` and nearly linear below:
-    secant steps from there end after three or four trials.
+    over the mean of the input, is nearly linear: secant steps from ``a = ceiling`` end after three
+    or four trials. Methods whose steps jump with the amplitude are held in a bracket, halved at
+    every third trial; at a jump the side is taken on which the ceiling holds.
     """
     ceiling = 10 ** (ceiling_db / 10)
 
@@ -256,14 +257,21 @@ def find_amplitude(pilot: Pilot, ceiling_db: float, process: Process) -> Found |
 
     share = ceiling
     last_share = last_excess = math.nan
-    for _ in range(MOST_TRIALS):
+    low, high = 0.0, math.inf
+    for number in range(MOST_TRIALS):
         excess = share - ceiling * trial(share).mean_ratio
         if abs(excess) <= TOLERANCE * share:
+            break
+        low, high = (low, share) if excess > 0 else (share, high)
+        if high - low <= TOLERANCE / 4 * low:  # a jump: the side on which the ceiling holds
+            share = low
             break
         slope = (excess - last_excess) / (share - last_share) if share != last_share else 1.0
         step = excess / slope if slope > 0.02 else excess  # the first has no slope: NaN
         last_share, last_excess = share, excess
         share = max(share - step, share / 4)
+        if low and high < math.inf and (number % 3 == 2 or not low < share < high):
+            share = (low + high) / 2
         if share < 1e-4:
             return None
     else:

@@ -9,18 +9,17 @@ as it was.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from fractions import Fraction
 from typing import Annotated, ClassVar
 
 import numpy as np
-from annotated_types import Ge, Gt, Le
+from annotated_types import Ge, Le
 
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.envelope_excess import excess_over
-from wavegen.stages.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.passband import Passband, filled_band
+from wavegen.stages.in_band import InBand, Method, reduce_in_band, repeat_rounds
+from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
 
 
@@ -64,7 +63,7 @@ class ClipFilterRound(Signal):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class ClipFilter:
+class ClipFilter(InBand):
     """Settings of repeated clipping and filtering.
 
     Parameters
@@ -73,22 +72,19 @@ class ClipFilter:
         Where every round clips, over the mean power of the output, dB; 0.1 to 60. Of a gated
         signal, over the mean of the on-time. Filtering lets peaks grow back: the more rounds,
         the less.
-    rounds : int
-        How often it is clipped and filtered; 1 to 64. Each costs a pair of transforms.
     passbands : tuple of Passband
         Bands of the signal, where distortion is allowed; found on the signal if not given.
     transition_hz : Fraction, optional
         Width of each edge of the bands, outside them, Hz.
+    rounds : int
+        How often it is clipped and filtered; 1 to 64. Each costs a pair of transforms.
     """
 
     search: ClassVar[Searchable] = Searchable(
         choices=(Choice(field="rounds", values=(1, 2, 4, 8, 16, 32)),), pairs="rounds"
     )
 
-    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     rounds: Annotated[int, Ge(1), Le(64)] = 8
-    passbands: tuple[Passband, ...] = ()
-    transition_hz: Annotated[Fraction, Gt(0)] | None = None
 
     def build(self, site: Site, source: Signal) -> Signal:
         """Return the signal after all rounds, at the mean power it had before.
@@ -112,29 +108,29 @@ class ClipFilter:
             The source is zero, a passband lies outside the sampled band, or no amplitude gives
             the ceiling.
         """
-        filled = filled_band(
-            site, source, passbands=self.passbands, transition_hz=self.transition_hz
-        )
-        if filled is None:
-            raise refuse_zero(site, self.ceiling_db)
-        band = filled.band_filter
 
-        def process(amplitude: float, gain: float) -> Signal:
-            made = source
-            for number in range(self.rounds):
-                is_last = number + 1 == self.rounds
-                made = ClipFilterRound(
-                    sample_rate_hz=source.sample_rate_hz,
-                    n_samples=source.n_samples,
-                    step=band.hop,
-                    inputs=(made,),
-                    mean_power=source.mean_power if is_last else None,
-                    amplitude=amplitude,
-                    band=band,
-                    gain=gain if is_last else 1.0,
-                )
-            return made
+        def method(filled: FilledBand) -> Method:
+            band = filled.band_filter
 
-        action = f"clips {self.rounds} times" if self.rounds > 1 else "clips once"
-        pilot = look(source, oversampling=filled.oversampling, halo=self.rounds * band.half_length)
-        return reduce_to(site, pilot, self.ceiling_db, process, action) or source
+            def process(amplitude: float, gain: float) -> Signal:
+                def one(source: Signal, *, mean_power: float | None, gain: float) -> Signal:
+                    return ClipFilterRound(
+                        sample_rate_hz=source.sample_rate_hz,
+                        n_samples=source.n_samples,
+                        step=band.hop,
+                        inputs=(source,),
+                        mean_power=mean_power,
+                        amplitude=amplitude,
+                        band=band,
+                        gain=gain,
+                    )
+
+                return repeat_rounds(source, self.rounds, one, gain)
+
+            return Method(
+                process=process,
+                action=f"clips {self.rounds} times" if self.rounds > 1 else "clips once",
+                halo=self.rounds * band.half_length,
+            )
+
+        return reduce_in_band(site, source, self, method)

@@ -8,19 +8,18 @@ neighbours alone, so that strips need no history.
 from __future__ import annotations
 
 from dataclasses import dataclass
-from fractions import Fraction
 from typing import Annotated, ClassVar, Literal
 
 import numpy as np
-from annotated_types import Ge, Gt, Le
+from annotated_types import Ge, Le
 
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
 from wavegen.dsp.envelope_excess import local_peaks, power_of
 from wavegen.dsp.occupied_bands import design_pulse
-from wavegen.stages.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.passband import Passband, filled_band
+from wavegen.stages.in_band import InBand, Method, reduce_in_band, repeat_rounds
+from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
 
 LONGEST_LOBE = 64
@@ -89,7 +88,7 @@ class CancellationPass(Signal):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class PeakCancellation:
+class PeakCancellation(InBand):
     """Settings of peak cancellation.
 
     Parameters
@@ -98,15 +97,15 @@ class PeakCancellation:
         Where each peak is brought down to, over the mean power of the output, dB; 0.1 to 60. Of
         a gated signal, over the mean of the on-time. Pulses add up, so that some peaks stay
         above: the more passes, the fewer.
+    passbands : tuple of Passband
+        Bands of the signal, where distortion is allowed; found on the signal if not given.
+    transition_hz : Fraction, optional
+        Width of each edge of the bands, outside them, Hz.
     passes : int
         How often peaks are looked for and cancelled; 1 to 32. Each costs a pair of transforms.
     pulse : {"spectrum", "band"}
         A pulse whose power spectrum has the shape of the signal's own, so that every carrier of
         a composite bears its share; or one that is flat over the bands.
-    passbands : tuple of Passband
-        Bands of the signal, where distortion is allowed; found on the signal if not given.
-    transition_hz : Fraction, optional
-        Width of each edge of the bands, outside them, Hz.
     """
 
     search: ClassVar[Searchable] = Searchable(
@@ -117,11 +116,8 @@ class PeakCancellation:
         pairs="passes",
     )
 
-    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     passes: Annotated[int, Ge(1), Le(32)] = 4
     pulse: Literal["spectrum", "band"] = "spectrum"
-    passbands: tuple[Passband, ...] = ()
-    transition_hz: Annotated[Fraction, Gt(0)] | None = None
 
     def build(self, site: Site, source: Signal) -> Signal:
         """Return the signal after all passes, at the mean power it had before.
@@ -145,42 +141,46 @@ class PeakCancellation:
             The source is zero, a passband lies outside the sampled band, or no amplitude gives
             the ceiling.
         """
-        filled = filled_band(
-            site, source, passbands=self.passbands, transition_hz=self.transition_hz
-        )
-        if filled is None:
-            raise refuse_zero(site, self.ceiling_db)
+
+        def method(filled: FilledBand) -> Method:
+            pulse = self._pulse_for(filled)
+            reach = half_lobe(pulse)
+
+            def process(amplitude: float, gain: float) -> Signal:
+                def one(source: Signal, *, mean_power: float | None, gain: float) -> Signal:
+                    return CancellationPass(
+                        sample_rate_hz=source.sample_rate_hz,
+                        n_samples=source.n_samples,
+                        step=pulse.hop,
+                        inputs=(source,),
+                        mean_power=mean_power,
+                        amplitude=amplitude,
+                        pulse=pulse,
+                        reach=reach,
+                        gain=gain,
+                    )
+
+                return repeat_rounds(source, self.passes, one, gain)
+
+            times = f"in {self.passes} passes" if self.passes > 1 else "once"
+            return Method(
+                process=process,
+                action=f"cancels peaks {times}",
+                halo=self.passes * (pulse.half_length + reach),
+            )
+
+        return reduce_in_band(site, source, self, method)
+
+    def _pulse_for(self, filled: FilledBand) -> BandFilter:
+        """Return the pulse, 1 in its middle."""
         band = filled.band_filter
         if self.pulse == "spectrum" and band.half_length:
-            taps = design_pulse(
-                filled.spectrum,
-                filled.bands,
-                half_length=band.half_length,
-                widened=filled.transition / 2,
-            )
-        else:
-            taps = band.taps / band.taps[band.half_length].real
-        pulse = BandFilter(taps)
-        reach = half_lobe(pulse)
-
-        def process(amplitude: float, gain: float) -> Signal:
-            made = source
-            for number in range(self.passes):
-                is_last = number + 1 == self.passes
-                made = CancellationPass(
-                    sample_rate_hz=source.sample_rate_hz,
-                    n_samples=source.n_samples,
-                    step=pulse.hop,
-                    inputs=(made,),
-                    mean_power=source.mean_power if is_last else None,
-                    amplitude=amplitude,
-                    pulse=pulse,
-                    reach=reach,
-                    gain=gain if is_last else 1.0,
+            return BandFilter(
+                design_pulse(
+                    filled.spectrum,
+                    filled.bands,
+                    half_length=band.half_length,
+                    widened=filled.transition / 2,
                 )
-            return made
-
-        times = f"in {self.passes} passes" if self.passes > 1 else "once"
-        halo = self.passes * (pulse.half_length + reach)
-        pilot = look(source, oversampling=filled.oversampling, halo=halo)
-        return reduce_to(site, pilot, self.ceiling_db, process, f"cancels peaks {times}") or source
+            )
+        return BandFilter(band.taps / band.taps[band.half_length].real)

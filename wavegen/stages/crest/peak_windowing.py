@@ -23,8 +23,8 @@ from wavegen.core.timespan import TimeSpan
 from wavegen.core.units import QuantityError, format_s
 from wavegen.dsp.envelope_excess import local_peaks, shortfall_of
 from wavegen.dsp.windows import kaiser_beta, kaiser_window
-from wavegen.stages.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.passband import filled_band
+from wavegen.stages.in_band import InBand, Method, reduce_in_band
+from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
 
 DEFAULT_PER_BAND = 2.0
@@ -220,27 +220,30 @@ class PeakWindowing:
             The source is zero, no amplitude gives the ceiling, or the window is longer than
             8193 samples.
         """
-        filled = filled_band(site, source)
-        if filled is None:
-            raise refuse_zero(site, self.ceiling_db)
-        half = self._half_length(site, source, filled.oversampling)
-        window = window_of(self.window, half, self.suppression_db or DEFAULT_SUPPRESSION_DB)
 
-        def process(amplitude: float, gain: float) -> Signal:
-            return PeakWindowed(
-                sample_rate_hz=source.sample_rate_hz,
-                n_samples=source.n_samples,
-                inputs=(source,),
-                mean_power=source.mean_power,
-                amplitude=amplitude,
-                window=window,
-                gain=gain,
+        def method(filled: FilledBand) -> Method:
+            half = self._half_length(site, source, filled.oversampling)
+            suppression_db = self.suppression_db or DEFAULT_SUPPRESSION_DB
+            window = window_of(self.window, half, suppression_db)
+
+            def process(amplitude: float, gain: float) -> Signal:
+                return PeakWindowed(
+                    sample_rate_hz=source.sample_rate_hz,
+                    n_samples=source.n_samples,
+                    inputs=(source,),
+                    mean_power=source.mean_power,
+                    amplitude=amplitude,
+                    window=window,
+                    gain=gain,
+                )
+
+            return Method(
+                process=process,
+                action=f"presses peaks down with a {self.window} window of {window.size} samples",
+                halo=(2 * PASSES + 1) * half,
             )
 
-        action = f"presses peaks down with a {self.window} window of {window.size} samples"
-        halo = (2 * PASSES + 1) * half
-        pilot = look(source, oversampling=filled.oversampling, halo=halo)
-        return reduce_to(site, pilot, self.ceiling_db, process, action) or source
+        return reduce_in_band(site, source, InBand(ceiling_db=self.ceiling_db), method)
 
     def _half_length(self, site: Site, source: Signal, oversampling: float) -> int:
         rate = source.sample_rate_hz

@@ -1,29 +1,98 @@
 """Least-distortion projection: the nearest signal under a ceiling, changed in its band only.
 
 The dual problem is solved by accelerated proximal steps (:mod:`wavegen.dsp.dual_projection`, with
-its sources); a last, smooth gain makes the ceiling hold at every sample. One ceiling for the whole
-signal is the right problem: of all signals that differ from the source inside its bands only and
-keep below that ceiling this one has the least error.
+its sources). One ceiling for the whole signal is the right problem: of all signals that differ from
+the source inside its bands only and keep below that ceiling this one has the least error. OFDM is
+projected symbol by symbol, on its own subcarriers, before prefix and window; any other waveform as
+a stream. A last step makes the ceiling hold: on symbols a few steps down what is still above
+(:mod:`wavegen.dsp.peak_descent`), on streams a smooth gain.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from fractions import Fraction
-from typing import Annotated, ClassVar
+from functools import cached_property
+from typing import Annotated, ClassVar, Literal
 
-from annotated_types import Ge, Gt, Le
+import numpy as np
+from annotated_types import Ge, Le
+from numpy.typing import NDArray
 
-from wavegen.core.signal import Signal
+from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Site
-from wavegen.dsp.dual_projection import hold_below, project
-from wavegen.stages.ceiling import look, reduce_to, refuse_zero
-from wavegen.stages.passband import Passband, filled_band
+from wavegen.core.symbol_bodies import HasBodies
+from wavegen.core.units import QuantityError
+from wavegen.dsp.dual_projection import correcting_lines, hold_below, project
+from wavegen.dsp.mapping_kernel import read_values
+from wavegen.dsp.peak_descent import descend
+from wavegen.stages.in_band import InBand, Method, reduce_in_band
+from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
+from wavegen.stages.symbol_bodies import Reworked, reduce_symbols, symbols_of
+
+LAST_STEPS = 2
+"""Steps that bring down what the rounds leave above: to 0.001 dB after 20 rounds."""
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class ProjectedSymbols(Reworked):
+    """Symbols under a ceiling, changed on the subcarriers that are on and nowhere else.
+
+    Parameters
+    ----------
+    indices : intp array, shape (n_active,)
+        Subcarriers in use.
+    on : bool array, shape (n_frame, n_active)
+        Which of them are on in each symbol of the frame.
+    amplitude : float
+        Ceiling of the envelope, before the gain.
+    n_rounds : int
+        Accelerated steps.
+    """
+
+    indices: NDArray[np.intp]
+    on: NDArray[np.bool_]
+    amplitude: float
+    n_rounds: int
+
+    @cached_property
+    def _responses(self) -> NDArray[np.float32]:
+        """Band of each symbol of the frame, shape (n_frame, n_points)."""
+        made = np.zeros((self.on.shape[0], self.view.n_points), np.float32)
+        made[:, self.view.bins(self.indices)] = self.on
+        return made
+
+    def rework(self, rows: Samples, first: int) -> Samples:
+        """Project; then go down what is left, and hold each symbol below the ceiling."""
+        view, bins = self.view, self.view.bins(self.indices)
+        points = view.finer(rows)
+        frame = np.arange(first, first + rows.shape[0]) % self.on.shape[0]
+        every = self.on.all()
+        lines = correcting_lines(
+            points,
+            response=self._responses[0] if every else self._responses[frame],
+            amplitude=self.amplitude,
+            n_rounds=self.n_rounds,
+        )
+        change = read_values(lines, bins=bins)
+        points += view.inverse(lines)
+        on = self.on[frame]
+        change += descend(
+            points,
+            bins=bins,
+            amplitude=self.amplitude,
+            n_rounds=LAST_STEPS,
+            rule=None if every else lambda moves: np.multiply(moves, on),
+        )
+        made = view.samples(change, self.indices)
+        made += rows
+        highest = np.maximum(view.peaks(points), np.float32(self.amplitude**2))
+        made *= (np.float32(self.amplitude) / np.sqrt(highest))[:, None]
+        return made
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Projection:
+class Projection(InBand):
     """Settings of a least-distortion projection.
 
     Parameters
@@ -31,23 +100,44 @@ class Projection:
     ceiling_db : float
         Highest envelope power of the output, at its samples, over its mean power, dB; 0.1 to
         60. Of a gated signal, over the mean of the on-time.
+    passbands : tuple of Passband
+        Bands of a waveform, where distortion is allowed; found on the signal if not given.
+    transition_hz : Fraction, optional
+        Width of each edge of the bands of a waveform, outside them, Hz.
     rounds : int
         Accelerated steps, each a pair of transforms; 1 to 200. At 4 times the band 20 come
         within 0.05 dB of the optimum, 50 within 0.02 dB; at 8 times about twice as many.
-    passbands : tuple of Passband
-        Bands of the signal, where distortion is allowed; found on the signal if not given.
-    transition_hz : Fraction, optional
-        Width of each edge of the bands, outside them, Hz.
+    acts_on : {"symbols", "waveform"}, optional
+        Symbols of OFDM before prefix and window, on their own subcarriers; or the waveform in its
+        bands. If not given: symbols where the signal is OFDM whose waveform nothing has changed
+        and no band is stated, else the waveform.
+    per_band : int
+        Points over the band on which peaks of symbols are seen, at least; 1 to 16. A waveform is
+        seen on its samples.
     """
 
     search: ClassVar[Searchable] = Searchable(
         choices=(Choice(field="rounds", values=(10, 20, 50)),), pairs="rounds"
     )
 
-    ceiling_db: Annotated[float, Ge(0.1), Le(60)]
     rounds: Annotated[int, Ge(1), Le(200)] = 20
-    passbands: tuple[Passband, ...] = ()
-    transition_hz: Annotated[Fraction, Gt(0)] | None = None
+    acts_on: Literal["symbols", "waveform"] | None = None
+    per_band: Annotated[int, Ge(1), Le(16)] = 4
+
+    def __post_init__(self) -> None:
+        """Refuse bands where subcarriers are the band."""
+        key = "passbands" if self.passbands else "transition"
+        if self.acts_on == "symbols" and self._has_bands:
+            raise QuantityError(
+                problem="symbols are changed on their own subcarriers: no band is filtered",
+                allowed="passbands and transition with acts_on: waveform",
+                remedy="Remove it, or let it act on the waveform.",
+                key=key,
+            )
+
+    @property
+    def _has_bands(self) -> bool:
+        return bool(self.passbands) or self.transition_hz is not None
 
     def build(self, site: Site, source: Signal) -> Signal:
         """Return the projected signal, at the mean power it had before.
@@ -55,8 +145,8 @@ class Projection:
         Parameters
         ----------
         site : Site
-            Where it is built. Told of the band, the ceiling over the mean of the input, the
-            change of mean power that is undone, and the peaks between samples.
+            Where it is built. Told of the band or the points, the ceiling over the mean of the
+            input, the change of mean power that is undone, and the peaks between samples.
         source : Signal
             What is reduced; parts of it are read here.
 
@@ -68,28 +158,55 @@ class Projection:
         Raises
         ------
         RecipeError
-            The source is zero, a passband lies outside the sampled band, or no amplitude gives
-            the ceiling.
+            The source is zero, a passband lies outside the sampled band, no amplitude gives the
+            ceiling, or symbols are asked for where there are none.
         """
-        filled = filled_band(
-            site, source, passbands=self.passbands, transition_hz=self.transition_hz
-        )
-        if filled is None:
-            raise refuse_zero(site, self.ceiling_db)
-        band = filled.band_filter
-        half = max(band.half_length, 1)
+        is_waveform = self._has_bands or not isinstance(source, HasBodies)
+        if self.acts_on == "symbols" or (self.acts_on is None and not is_waveform):
+            return self._of_symbols(site, source)
 
-        def process(amplitude: float, gain: float) -> Signal:
-            made = project(source, band=band, amplitude=amplitude, n_rounds=self.rounds)
-            return hold_below(
-                made,
-                amplitude=amplitude,
-                gain=gain,
-                half_length=half,
-                mean_power=source.mean_power,
+        def method(filled: FilledBand) -> Method:
+            band = filled.band_filter
+            half = max(band.half_length, 1)
+
+            def process(amplitude: float, gain: float) -> Signal:
+                made = project(source, band=band, amplitude=amplitude, n_rounds=self.rounds)
+                return hold_below(
+                    made,
+                    amplitude=amplitude,
+                    gain=gain,
+                    half_length=half,
+                    mean_power=source.mean_power,
+                )
+
+            return Method(
+                process=process,
+                action=f"projects in {self.rounds} rounds",
+                halo=(self.rounds + 2) * half,
             )
 
-        action = f"projects in {self.rounds} rounds"
-        halo = (self.rounds + 2) * half
-        pilot = look(source, oversampling=filled.oversampling, halo=halo)
-        return reduce_to(site, pilot, self.ceiling_db, process, action) or source
+        return reduce_in_band(site, source, self, method)
+
+    def _of_symbols(self, site: Site, source: Signal) -> Signal:
+        symbols = symbols_of(site, source, per_band=self.per_band)
+        grid, bodies = symbols.grid, symbols.source.bodies
+
+        def rework(amplitude: float, gain: float) -> Signal:
+            return ProjectedSymbols(
+                sample_rate_hz=bodies.sample_rate_hz,
+                n_samples=bodies.n_samples,
+                step=grid.n_fft,
+                inputs=(bodies,),
+                mean_power=bodies.mean_power,
+                view=symbols.view,
+                gain=gain,
+                indices=grid.indices,
+                on=grid.on,
+                amplitude=amplitude,
+                n_rounds=self.rounds,
+            )
+
+        action = f"projects symbols in {self.rounds} rounds"
+        return reduce_symbols(
+            site, source, symbols, ceiling_db=self.ceiling_db, rework=rework, action=action
+        )
