@@ -22,10 +22,12 @@ ALLOWED = {
     "jsonschema": ("wavegen.files.sigmf_meta", "wavegen.production.*"),
     "rich": ("wavegen.cli.*",),
     "matplotlib": ("wavegen.reports.*",),
+    "jinja2": ("wavegen.reports.*",),
+    "markupsafe": ("wavegen.reports.*",),
 }
 """Library -> modules that may import it; everything else comes from Python itself."""
 
-INSIDE_FUNCTIONS_ONLY = {"matplotlib", "jsonschema", "numba", "soundfile"}
+INSIDE_FUNCTIONS_ONLY = {"matplotlib", "jinja2", "markupsafe", "jsonschema", "numba", "soundfile"}
 """What is dear to load, or an extra, or needs a system library: loaded when it is needed."""
 
 LIGHT = ("wavegen", "wavegen.core.errors", "wavegen.core.registry", "wavegen.core.progress")

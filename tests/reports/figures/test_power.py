@@ -30,7 +30,7 @@ def test_ccdf_figure_shows_what_it_is_given():
     assert axes.get_ylabel()
     texts = [item.get_text() for item in axes.texts]
     assert "8.39 dB" in texts
-    assert len(axes.collections) == 1
+    assert len(axes.collections) == 1  # the interval
     dashes = {str(line.get_linestyle()) for line in axes.lines if line.get_label()[0] != "_"}
     assert len(dashes) == 2
     (second,) = axes.child_axes
@@ -53,3 +53,8 @@ def test_density_figure_has_two_labelled_panels():
     left, right = figure.axes
     assert "1/dB" in left.get_ylabel()
     assert "CDF" in right.get_ylabel()
+
+
+def test_levels_that_are_given_are_written_as_they_are():
+    figure = ccdf_figure([curve()], title="T", marks=[(0.01, 7.654)])
+    assert [item.get_text() for item in figure.axes[0].texts] == ["7.65 dB"]

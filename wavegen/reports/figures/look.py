@@ -22,7 +22,7 @@ FAINT = "#c9d1d8"
 SHADE = "#eef1f3"
 SIZE_INCHES = (8.0, 5.4)
 FORMATS = ("svg", "png")
-INSTALL = 'pip install "wavegen[figures]"'
+INSTALL = 'pip install "wavegen[reports]"'
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -97,7 +97,7 @@ def new_figure(title: str, *, n_panels: int = 1) -> tuple[Figure, Sequence[Axes]
         raise ArgumentsError(
             where="--figures",
             problem="figures need Matplotlib, which is not installed",
-            allowed="an installation with the extra `figures`",
+            allowed="an installation with the extra `reports`",
             remedy=f"Run: {INSTALL}",
         ) from error
     width, height = SIZE_INCHES
@@ -140,7 +140,7 @@ def condensed(values: NDArray[np.float64], most: int) -> NDArray[np.float64]:
     return np.asarray(values[:whole].reshape(-1, factor).mean(axis=1))
 
 
-def rendered(figure: Figure, form: str) -> bytes:
+def rendered(figure: Figure, form: str, *, salt: str = "wavegen") -> bytes:
     """Return a figure as the bytes of a file: the same figure, the same bytes.
 
     Parameters
@@ -149,13 +149,18 @@ def rendered(figure: Figure, form: str) -> bytes:
         As made here.
     form : {"svg", "png"}
         Format.
+    salt : str
+        Marks of figures that will stand in one page differ by it.
     """
     import matplotlib as mpl
 
-    settings: dict[Any, Any] = {"svg.hashsalt": "wavegen", "svg.fonttype": "none"}
+    settings: dict[Any, Any] = {"svg.hashsalt": salt, "svg.fonttype": "none"}
     metadata: dict[str, Any] = {"Date": None} if form == "svg" else {"Software": None}
     held = io.BytesIO()
     with mpl.rc_context(settings):
+        if figure.get_layout_engine() is not None:  # laid out anew, panels would move
+            figure.draw_without_rendering()
+            figure.set_layout_engine("none")
         figure.savefig(held, format=form, dpi=150, metadata=metadata)
     return held.getvalue()
 

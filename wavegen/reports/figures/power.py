@@ -86,6 +86,7 @@ def ccdf_figure(
     curves: Sequence[CcdfCurve],
     *,
     title: str,
+    marks: Sequence[tuple[float, float]] | None = None,
     mean_dbm: float | None = None,
     least: float | None = None,
 ) -> Figure:
@@ -94,9 +95,11 @@ def ccdf_figure(
     Parameters
     ----------
     curves : sequence of CcdfCurve
-        The first is what the figure is about; its levels at 10 % ... 0.0001 % are written in.
+        The first is what the figure is about.
     title : str
         Heading.
+    marks : sequence of (probability, level in dB), optional
+        Levels written in; read off the first curve at 10 % ... 0.0001 % unless given.
     mean_dbm : float, optional
         Mean power of the first, dBm: then a second axis tells levels in dBm.
     least : float, optional
@@ -123,12 +126,14 @@ def ccdf_figure(
                 linewidth=0,
                 label=f"{curve.name}, 95 % interval",
             )
-    _mark_levels(axes, first, floor)
+    for chosen, level in _marks_of(first) if marks is None else marks:
+        if chosen > floor:
+            _mark(axes, chosen, level)
     axes.set_yscale("log")
     axes.set_ylim(floor, 1.0)
     axes.yaxis.set_major_formatter(lambda value, _: percent(value))
     axes.grid(visible=True, which="minor", axis="y", color="#e7ebee", linewidth=0.5)
-    top = [level for curve in curves if (level := curve.level_at(floor)) is not None]
+    top = [end for curve in curves if (end := curve.level_at(floor)) is not None]
     ends = [float(first.level_db[first.probability > 0].max(initial=0.0)), *top]
     axes.set_xlim(min(_LOWEST_DB, min(ends) - 1), max(*ends, 3.0) + 1.0)
     axes.set_xlabel("level above the mean power, dB")
@@ -147,21 +152,25 @@ def ccdf_figure(
     return figure
 
 
-def _mark_levels(axes: Axes, curve: CcdfCurve, floor: float) -> None:
-    for probability in MARKED:
-        level = curve.level_at(probability)
-        if level is None or probability <= floor:
-            continue
-        axes.plot([level], [probability], marker="o", markersize=6, color=INK, linestyle="none")
-        axes.annotate(
-            f"{level:.2f} dB",
-            (level, probability),
-            xytext=(8, 5),
-            textcoords="offset points",
-            fontsize=11,
-            color=INK,
-            bbox={"boxstyle": "square,pad=0.1", "facecolor": "white", "edgecolor": "none"},
-        )
+def _marks_of(curve: CcdfCurve) -> list[tuple[float, float]]:
+    return [
+        (probability, level)
+        for probability in MARKED
+        if (level := curve.level_at(probability)) is not None
+    ]
+
+
+def _mark(axes: Axes, probability: float, level: float) -> None:
+    axes.plot([level], [probability], marker="o", markersize=6, color=INK, linestyle="none")
+    axes.annotate(
+        f"{level:.2f} dB",
+        (level, probability),
+        xytext=(8, 5),
+        textcoords="offset points",
+        fontsize=11,
+        color=INK,
+        bbox={"boxstyle": "square,pad=0.1", "facecolor": "white", "edgecolor": "none"},
+    )
 
 
 def density_figure(
@@ -195,7 +204,7 @@ def density_figure(
         ),
         (right, level, share, "share of time below the level (CDF)"),
     ):
-        draw(axes, place, drawn, stroke(0))
+        draw(axes, place, drawn, stroke(0), label=name.partition(" (")[0])
         axes.fill_between(place, drawn, color=stroke(0).colour, alpha=0.08, linewidth=0)
         axes.set_xlabel("level above the mean power, dB")
         axes.set_ylabel(name)

@@ -1,0 +1,1 @@
+"""Report pages: one HTML file each, that opens without a network and prints on A4."""
