@@ -15,6 +15,7 @@ from wavegen.meters.gated import GatedPowerMeter
 from wavegen.meters.power import PowerMeter
 from wavegen.sources.carrier import Carrier
 from wavegen.sources.noise import Noise
+from wavegen.stages import STAGES
 from wavegen.stages.chain import build_chain, chain_law, chain_term
 from wavegen.stages.channel.delay import Delay
 from wavegen.stages.channel.filter import Filter
@@ -159,3 +160,24 @@ def test_terms_of_parts():
     assert chain_term((kept, HALF_SAMPLE), SITE, noise, "stages") is noise
     keyed = Keyed(name="keyed", clock_samples=2)
     assert isinstance(chain_term((kept,), SITE, keyed, "stages"), NoLaw)
+
+
+CREST = {kind: target for kind, target in STAGES.items() if ".crest." in target}
+NEEDED = {"tone_reservation": {"count": 2}, "selected_mapping": {}}
+"""Settings beside a ceiling."""
+
+
+@pytest.mark.parametrize("kind", CREST)
+def test_crest_reduction_but_for_a_clip_has_no_law_and_says_so_by_name(kind):
+    fields = NEEDED.get(kind, {}) | ({} if kind == "selected_mapping" else {"ceiling_db": 6.0})
+    stages = [STAGES.load(kind)(**fields)]
+    law = chain_law(stages, SITE, GAUSSIAN, "stages")
+    term = chain_term(stages, SITE, GaussianTerm(mean_power=1.0), "stages")
+    if kind == "clip":
+        assert not isinstance(law, NoLaw)
+        return
+    for found in (law, term):
+        assert isinstance(found, NoLaw)
+        assert kind.replace("_", " ") in found.reason
+    scaled = chain_law([*stages, Scale(gain_db=-1.0)], SITE, GAUSSIAN, "stages")
+    assert scaled == law

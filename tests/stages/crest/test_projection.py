@@ -1,10 +1,18 @@
+from fractions import Fraction
+
 import numpy as np
 import pytest
 
+from wavegen.core.index_set import IndexSet, SymbolSet
 from wavegen.core.render import samples_of
+from wavegen.core.symbol_bodies import HasBodies
+from wavegen.core.units import QuantityError
+from wavegen.sources.mapping.constellation import Constellation
+from wavegen.sources.ofdm import Group
 from wavegen.stages.channel.gate import on_time
 from wavegen.stages.crest.clip_filter import ClipFilter
 from wavegen.stages.crest.projection import Projection
+from wavegen.stages.passband import Passband
 
 N = 1 << 15
 
@@ -64,3 +72,65 @@ def test_it_is_on_when_its_source_is(reduction, bench):
 def test_a_low_peak_is_left(reduction, source):
     ceiling_db = reduction.papr_db(source.samples) + 0.01
     assert reduction.build(Projection(ceiling_db=ceiling_db), source)[0] is source
+
+
+@pytest.fixture(scope="module")
+def symbols(ofdm):
+    return ofdm.build("-32..-1, 1..32", "64qam")
+
+
+@pytest.mark.parametrize("rounds", [1, 6, 20])
+@pytest.mark.parametrize("ceiling_db", [4.5, 7.0])
+def test_the_ceiling_of_symbols_holds_behind_prefix_and_window(
+    ofdm, reduction, symbols, ceiling_db, rounds
+):
+    """Edges that overlap are means of two symbols: no sample of theirs stands higher."""
+    signal, notes = ofdm.reduce(Projection(ceiling_db=ceiling_db, rounds=rounds), symbols)
+    samples = samples_of(signal)
+    assert reduction.papr_db(samples) == pytest.approx(ceiling_db, abs=0.004)
+    bodies = signal.bodies
+    assert np.max(np.abs(samples)) <= bodies.amplitude * bodies.gain * (1 + 6e-7)
+    assert np.mean(np.abs(samples.astype(np.complex128)) ** 2) == pytest.approx(
+        np.mean(np.abs(samples_of(symbols).astype(np.complex128)) ** 2), rel=1e-5
+    )
+    (note,) = [note for note in notes if note.where.endswith("ceiling")]
+    assert f"projects symbols in {rounds} rounds" in note.text
+    assert f"{reduction.papr_db(samples):.2f} dB at the peak there" in note.text
+
+
+def test_symbols_change_on_their_subcarriers_only(ofdm, symbols):
+    signal, _ = ofdm.reduce(Projection(ceiling_db=5.0), symbols)
+    bins = ofdm.bins(signal)
+    total = np.sum(np.abs(bins) ** 2)
+    bins[:, symbols.grid.indices] = 0
+    assert 10 * np.log10(np.sum(np.abs(bins) ** 2) / total) < -120
+
+
+def test_scheduled_symbols_change_where_they_are_on(ofdm):
+    parts = {"subcarriers": IndexSet.parse("-32..-1"), "constellation": Constellation.parse("qpsk")}
+    others = parts | {"subcarriers": IndexSet.parse("1..32")}
+    groups = (
+        Group(**parts, symbols=SymbolSet.parse("0, 1")),
+        Group(**others, symbols=SymbolSet.parse("1, 2")),
+    )
+    source = ofdm.build("0", groups=groups, frame_symbols=4)
+    bins = ofdm.bins(ofdm.reduce(Projection(ceiling_db=5.0, rounds=8), source)[0])
+    assert np.max(np.abs(bins[0::4, 1:128])) < 1e-5
+    assert np.max(np.abs(bins[2::4, 128:])) < 1e-5
+    assert not bins[3::4].any()
+    assert np.min(np.abs(bins[1::4, 1:33])) > 1e-3
+
+
+def test_which_of_both_it_acts_on(ofdm, symbols):
+    band = (Passband(low_hz=Fraction(-130_000), high_hz=Fraction(130_000)),)
+    for settings, is_symbols in (
+        (Projection(ceiling_db=6.0, rounds=2), True),
+        (Projection(ceiling_db=6.0, rounds=2, passbands=band), False),
+        (Projection(ceiling_db=6.0, rounds=2, transition_hz=Fraction(20_000)), False),
+        (Projection(ceiling_db=6.0, rounds=2, acts_on="waveform"), False),
+    ):
+        signal, _ = ofdm.reduce(settings, symbols)
+        assert isinstance(signal, HasBodies) == is_symbols
+    with pytest.raises(QuantityError) as caught:
+        Projection(ceiling_db=6.0, passbands=band, acts_on="symbols")
+    assert caught.value.key == "passbands"
