@@ -1,0 +1,1 @@
+"""Curve against curve: stimulus and field, input and output of a device."""
