@@ -9,7 +9,7 @@ from wavegen.core.units import QuantityError
 from wavegen.recipe.dump import dump
 from wavegen.recipe.format_request import FormatRequest
 from wavegen.recipe.load import load_text
-from wavegen.recipe.settings import Bench, Duration, Extent, Output, PathStage
+from wavegen.recipe.settings import Duration, Extent, Output
 from wavegen.recipe.tables import Tables
 
 
@@ -63,37 +63,6 @@ def test_durations_that_make_no_sense(value: object, key: str) -> None:
 
 def test_bounds_in_other_units_are_left_to_whoever_knows_the_rate() -> None:
     Duration.parse({"at": "10 ms", "least": "99999999 samples"})
-
-
-def stages(*roles: str | None) -> tuple[PathStage, ...]:
-    return tuple(PathStage(name=f"s{i}", role=role) for i, role in enumerate(roles))  # type: ignore[arg-type]
-
-
-def test_a_bench_has_one_device() -> None:
-    Bench(average_power_at_device_dbm=-10, path=stages(None, "device", "load"))
-    for roles in [(), ("cable",), ("device", "device")]:
-        with pytest.raises(QuantityError) as caught:
-            Bench(average_power_at_device_dbm=-10, path=stages(*roles))
-        assert caught.value.key == "path"
-
-
-def test_the_bench_of_a_recipe(head: str, tables: Tables) -> None:
-    text = f"""{head}signal: {{kind: choosy}}
-bench:
-  average_power_at_device: -10 dBm
-  averaged_over: burst
-  path:
-    - {{name: cable, gain: -1.2 dB, peak_limit: 33 dBm}}
-    - {{name: amplifier, role: device, gain: 30 dB, average_limit: 20 dBm}}
-"""
-    bench = load_text(text, tables=tables).recipe.bench
-    assert bench is not None
-    assert bench.average_power_at_device_dbm == -10
-    assert bench.averaged_over == "burst"
-    assert bench.impedance_ohm == 50
-    assert bench.path[0].peak_limit_dbm == 33
-    assert bench.path[1].average_limit_dbm == 20
-    assert bench.path[1].role == "device"
 
 
 def test_an_output_without_a_word() -> None:

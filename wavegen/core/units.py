@@ -89,6 +89,7 @@ DIMENSIONS: dict[str, Dimension] = {
         Dimension("_deg", "deg", {"deg": Fraction(1), "°": Fraction(1)}, "45 deg"),
         Dimension("_percent", "%", {"%": Fraction(1)}, "5 %"),
         Dimension("_ppm", "ppm", {"ppm": Fraction(1)}, "20 ppm"),
+        Dimension("_j", "J", _powers("J", "mu\u00b5\u03bcnp"), "2 uJ"),
         Dimension("_ohm", "ohm", {"ohm": Fraction(1), "Ω": Fraction(1)}, "50 ohm"),
         Dimension(
             "_samples", "samples", {"samples": Fraction(1), "sample": Fraction(1)}, "16 samples"

@@ -117,7 +117,7 @@ def _on_times(
 ) -> tuple[tuple[float, float], ...]:
     if bursts is None:
         return ()
-    found = []
+    found: list[tuple[float, float]] = []
     for start, stop in bursts.within(0, n_samples):
         if len(found) == _MOST_BURSTS:
             return ()

@@ -11,6 +11,7 @@ from annotated_types import Ge, Gt, Le, MinLen
 
 from wavegen.core.registry import Member, nearest
 from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity, split_quantity
+from wavegen.recipe.bench import Bench
 from wavegen.recipe.exact import write_quantity
 from wavegen.recipe.format_request import FormatRequest
 
@@ -171,76 +172,6 @@ class Duration:
 
 
 _DURATION_KEYS = ("at", "multiple", "least", "most")
-
-Role = Literal[
-    "generator",
-    "cable",
-    "driver",
-    "attenuator",
-    "coupler",
-    "device",
-    "load",
-    "sensor",
-    "analyser",
-]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class PathStage:
-    """One piece of hardware between the generator and whatever ends the path.
-
-    Parameters
-    ----------
-    name : str
-        What messages and the sidecar call it.
-    role : str, optional
-        What it is; exactly one stage of a path is the ``device``.
-    gain_db : float
-        Output over input power, dB; negative where it loses.
-    average_limit_dbm, peak_limit_dbm : float, optional
-        Ratings at its input, dBm: of average power and of peak envelope power.
-    """
-
-    name: str
-    role: Role | None = None
-    gain_db: float = 0.0
-    average_limit_dbm: float | None = None
-    peak_limit_dbm: float | None = None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Bench:
-    """The powers on the bench, from which every rating in the path is checked.
-
-    Parameters
-    ----------
-    average_power_at_device_dbm : float
-        Average power at the input of the device, dBm.
-    averaged_over : {"period", "burst"}
-        Whether that is the average over the whole loop or while a burst is on.
-    impedance_ohm : float
-        Of the system, ohm.
-    path : tuple of PathStage
-        From the generator on, in order.
-    """
-
-    average_power_at_device_dbm: float
-    averaged_over: Literal["period", "burst"] = "period"
-    impedance_ohm: Annotated[float, Gt(0)] = 50.0
-    path: Annotated[tuple[PathStage, ...], MinLen(1)]
-
-    def __post_init__(self) -> None:
-        """Refuse a path without exactly one device."""
-        count = sum(stage.role == "device" for stage in self.path)
-        if count != 1:
-            raise QuantityError(
-                problem=f"{count or 'no'} stages of the path have the role device",
-                allowed="exactly one",
-                remedy="Give role: device to the stage that is tested."
-                if not count
-                else "Keep role: device on the stage that is tested; call the others driver.",
-                key="path",
-            )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
