@@ -102,7 +102,7 @@ def test_only_the_on_time_counts(band_noise, held, n):
     is_on = bursts.is_on(0, n)
     size = found.batches.batch_samples
     expected = np.add.reduceat(is_on.astype(int), np.arange(0, n, size))
-    assert found.batches.n_measured.tolist() == expected.tolist()
+    assert found.batches.n_measured.tolist() == expected[expected > 0].tolist()
     assert found.batches.sums[:, 0].sum() == pytest.approx(found.statistics.mean * is_on.sum())
 
 

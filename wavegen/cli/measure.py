@@ -1,57 +1,62 @@
-"""`wavegen measure`: the power statistics of a file or a recipe."""
+"""`wavegen measure`: the power statistics of files or of a recipe."""
 
 from __future__ import annotations
 
 import argparse
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.measure_options import (
+    add_gate,
+    add_levels,
+    add_part,
+    add_sensor,
+    settings_of,
+)
 from wavegen.cli.options import (
     add_overrides,
     add_reading,
     add_workers,
     hints_of,
     is_recipe,
-    level_dbm,
-    place,
     refuse_reading,
 )
 from wavegen.core.errors import ArgumentsError
+
+if TYPE_CHECKING:
+    from wavegen.production.measure_settings import MeasureSettings
+
+DONE, UNDECIDED = 0, 6
 
 
 class Measure:
     """The verb ``measure``."""
 
-    summary = "measure the power statistics of a file or a recipe"
+    summary = "measure the power statistics of files or of a recipe"
     description = (
-        "Measure mean, peaks and the CCDF of a recording, of a stimulus file, or of what\n"
-        "a recipe would make. A file with a sidecar is a loop; any other is a recording\n"
-        "unless --loop or --period says otherwise."
+        "Measure mean, peaks and the CCDF of recordings, of stimulus files, or of what a\n"
+        "recipe would make. A file with a sidecar is a loop; any other is a recording\n"
+        "unless --loop or --period says otherwise. Two statements are made: what these\n"
+        "samples are, exactly; and what is known of the process that they sample, in\n"
+        "intervals. Several files count as one population. Exit status 6 if none of the\n"
+        "levels asked for with --at is resolved."
     )
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
         parser.add_argument(
-            "subject", metavar="FILE|RECIPE", help="a data file, or a recipe by file or name"
+            "subjects",
+            nargs="+",
+            metavar="FILE|RECIPE",
+            help="data files of one sample rate, or one recipe by file or name",
         )
         add_reading(parser)
-        parser.add_argument(
-            "--reference-level",
-            type=level_dbm,
-            metavar="LEVEL",
-            help="power at 0 dBFS, such as -20dBm",
-        )
-        parser.add_argument(
-            "--from", dest="first", metavar="AT", help="first sample: 10ms or 4096samples"
-        )
-        parser.add_argument("--to", dest="stop", metavar="AT", help="where to stop (not included)")
-        loops = parser.add_mutually_exclusive_group()
-        loops.add_argument("--loop", action="store_true", help="the file repeats as a whole")
-        loops.add_argument(
-            "--period", metavar="N", help="it repeats after this time or number of samples"
-        )
+        add_part(parser)
+        add_levels(parser)
+        add_gate(parser)
+        add_sensor(parser)
         add_overrides(parser)
         add_workers(parser)
 
@@ -61,40 +66,57 @@ class Measure:
         from wavegen.core.allocation import keep_large_blocks
 
         keep_large_blocks()
+        settings = settings_of(arguments)
         progress = ConsoleProgress()
         try:
-            if is_recipe(arguments.subject):
-                document = _recipe(arguments, progress)
+            if any(is_recipe(subject) for subject in arguments.subjects):
+                document = _recipe(arguments, settings, progress)
             else:
-                document = _file(arguments, progress)
+                document = _files(arguments, settings, progress)
         finally:
             progress.close()
         if arguments.json:
             console.document(document)
         else:
             show(document, console)
-        return 0
+        return status_of(document, arguments.at)
 
 
-def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
+def status_of(document: dict[str, Any], asked: list[float]) -> int:
+    """Return 6 where levels were asked for and the data are too few for any of them."""
+    if document["is"] == "this loop" or not asked:
+        return DONE
+    resolved = [row["resolved"] for row in document["levels"] if row["probability"] in asked]
+    return DONE if any(resolved) else UNDECIDED
+
+
+def _recipe(
+    arguments: argparse.Namespace, settings: MeasureSettings, progress: ConsoleProgress
+) -> dict[str, Any]:
     from wavegen.production.measure import measure_recipe
     from wavegen.production.prepare import prepare
     from wavegen.recipe.find import find_recipe
     from wavegen.recipe.load import load_recipe
 
     problem = "a recipe is measured as the whole loop that it makes"
+    if len(arguments.subjects) > 1:
+        raise ArgumentsError(
+            where=next(item for item in arguments.subjects if is_recipe(item)),
+            problem="is a recipe, and other things are to be measured with it",
+            allowed="one recipe, or data files as one population",
+            remedy="Measure it by itself.",
+        )
     refuse_reading(argparse.Namespace(**vars(arguments) | {"channel": None}), problem)
-    for option in ("reference_level", "first", "stop", "period", "loop"):
+    for option in ("reference_level", "first", "stop", "period", "loop", "remove_dc", "marker"):
         given = getattr(arguments, option)
         if given is not None and given is not False:
             name = {"first": "from", "stop": "to"}.get(option, option.replace("_", "-"))
-            raise ArgumentsError(
-                where=f"--{name}",
-                problem=problem,
-                allowed="this option with a data file",
-                remedy="Leave it out, or change the recipe with --set.",
-            )
-    loaded = load_recipe(find_recipe(arguments.subject), overrides=tuple(arguments.overrides))
+            raise _misfit(where=f"--{name}", problem=problem)
+    if settings.gate is not None and settings.gate.by == "markers":
+        text = "a recipe has no markers: its own gate is shown anyway"
+        raise _misfit(where="--gate markers", problem=text)
+    (subject,) = arguments.subjects
+    loaded = load_recipe(find_recipe(subject), overrides=tuple(arguments.overrides))
     channels = prepare(loaded).channels
     chosen = arguments.channel
     if (chosen is None and len(channels) > 1) or not 0 <= (chosen or 0) < len(channels):
@@ -105,16 +127,26 @@ def _recipe(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[st
             allowed="one at a time: " + ("0 or 1" if len(channels) > 1 else "0"),
             remedy="Add --channel 0, or another." if len(channels) > 1 else "Leave it out.",
         )
-    document = measure_recipe(channels[chosen or 0], workers=arguments.workers, progress=progress)
+    document = measure_recipe(
+        channels[chosen or 0], settings=settings, workers=arguments.workers, progress=progress
+    )
     return document | ({"channel": chosen} if len(channels) > 1 else {})
 
 
-def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str, Any]:
-    from wavegen.core.excerpt import excerpt
-    from wavegen.files.analytic import edge_text, looped
-    from wavegen.files.read import open_recording
-    from wavegen.production.measure import Subject, completed_hints, measure
-    from wavegen.production.stimulus import mismatch, sidecar_of
+def _misfit(*, where: str, problem: str) -> ArgumentsError:
+    return ArgumentsError(
+        where=where,
+        problem=problem,
+        allowed="this option with a data file",
+        remedy="Leave it out, or change the recipe with --set.",
+    )
+
+
+def _files(
+    arguments: argparse.Namespace, settings: MeasureSettings, progress: ConsoleProgress
+) -> dict[str, Any]:
+    from wavegen.production.measure import measure
+    from wavegen.production.subject_files import FilePart, open_subject
 
     if arguments.overrides:
         raise ArgumentsError(
@@ -123,76 +155,31 @@ def _file(arguments: argparse.Namespace, progress: ConsoleProgress) -> dict[str,
             allowed="--set with a recipe",
             remedy="Leave it out.",
         )
-    hints = hints_of(arguments)
-    recording = open_recording(Path(arguments.subject), hints)
-    sidecar = sidecar_of(recording)
-    if sidecar is not None:
-        name = recording.path.name
-        entry = next(item for item in sidecar["files"] if item["name"] == name)
-        completed = completed_hints(entry, recording, hints)
-        if completed is not hints:
-            recording = open_recording(Path(arguments.subject), completed)
-    warnings = list(recording.warnings)
-    if sidecar is not None:
-        other = mismatch(recording, sidecar)
-        if other is not None:
-            sidecar = None
-            warnings.append(other)
-    rate_hz, n_samples = recording.sample_rate_hz, recording.n_samples
-    first = place(arguments.first, rate_hz, "--from") or 0
-    stop = place(arguments.stop, rate_hz, "--to")
-    period = place(arguments.period, rate_hz, "--period")
-    is_cut = first > 0 or stop is not None or period is not None
-    stop = n_samples if stop is None else stop
-    if period is not None:
-        stop = min(stop, first + period)
-    if not 0 <= first < stop <= n_samples or (period is not None and stop - first < period):
-        raise ArgumentsError(
-            where="--from/--to/--period",
-            problem=f"samples {first} to {stop} are asked of {n_samples}",
-            allowed=f"a stretch inside 0 to {n_samples} samples that is not empty",
-            remedy="Correct the limits.",
-        )
-    loops = arguments.loop or period is not None or (sidecar is not None and not is_cut)
-    if loops and recording.is_real:  # what follows the end is known
-        ends = edge_text(recording.path, recording.n_samples)
-        warnings = [text for text in warnings if text != ends]
-    subject = Subject(
-        name=recording.path.name,
-        signal=looped(recording, first, stop) if loops else excerpt(recording.signal, first, stop),
-        loops=loops,
-        cycle_samples=sidecar["loop"]["cycle_samples"] if sidecar and not is_cut else None,
-        reference_level_dbm=recording.reference_level_dbm,
-        is_power=recording.is_power,
+    part = FilePart(
+        first=arguments.first,
+        stop=arguments.stop,
+        period=arguments.period,
+        loops=arguments.loop,
     )
-    document = measure(subject, workers=arguments.workers, progress=progress)
-    document |= {
-        "file_format": recording.format,
-        "datatype": recording.datatype.label,
-        "is_real": recording.is_real,
-    }
-    if recording.n_channels > 1:
-        document["channel"] = recording.channel
-    document["warnings"] = [
-        {"kind": "warning", "where": str(recording.path), "text": text} for text in warnings
+    hints = hints_of(arguments)
+    reads_markers = settings.gate is not None and settings.gate.by == "markers"
+    subjects = [
+        open_subject(Path(name), hints, part, reads_markers=reads_markers)
+        for name in arguments.subjects
     ]
-    return document
+    return measure(*subjects, settings=settings, workers=arguments.workers, progress=progress)
 
 
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one measurement."""
     from wavegen.production.sidecar import SAFETY
-    from wavegen.reports.tables import level_table, summary_table
+    from wavegen.reports.measurement import lines, tables
 
     for note in (*document.get("rounded", ()), *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
-    kind = ""
-    if "file_format" in document:
-        coded = "power series" if document["is_power"] else document["datatype"]
-        kind = f"{document['file_format']} {coded}, "
-    if "channel" in document:
-        kind += f"channel {document['channel']}, "
-    console.table(summary_table(document, title=f"{document['name']} ({kind}{document['is']})"))
-    console.table(level_table(document))
+    for table in tables(document):
+        console.table(table)
+    for line in lines(document):
+        console.line(line)
     if "mean_dbm" in document:
         console.line(SAFETY)

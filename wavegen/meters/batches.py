@@ -41,10 +41,11 @@ class Batches:
     Parameters
     ----------
     batch_samples : int
-        Length, a power of two: at least 64 whole ones fit in, less than 128. What is left at
-        the end is a batch of its own.
+        Length, a power of two: at least 64 whole ones fit in, less than 128; of gated records
+        the longest of which 64 hold some on-time. What is left at the end is one of its own.
     n_measured : int64 array, shape (n_batches,)
-        Samples that count in each: all, or those of the on-time.
+        Samples that count in each: all, or those of the on-time; batches without any are left
+        out.
     sums : float64 array, shape (n_batches, 3)
         Of ``p``, ``p^2`` and ``p^3``.
     counts : int64 array, shape (n_batches, n_bins)
@@ -213,6 +214,40 @@ def batch_length(n_samples: int) -> int:
     return 1 << max((n_samples // FEWEST_BATCHES).bit_length() - 1, 0)
 
 
+def gated_batch_length(n_samples: int, bursts: Bursts) -> int:
+    """Return the longest batch of which 64 hold some on-time.
+
+    Parameters
+    ----------
+    n_samples : int
+        Length of the record.
+    bursts : Bursts
+        When it is on.
+
+    Returns
+    -------
+    int
+        A power of two; never below a cell where records of this length have longer batches, lest
+        the record must be held, so that fewer than 64 may be on.
+    """
+    size = batch_length(n_samples)
+    least = min(size, CELL)
+    if bursts.period_samples <= size:
+        return size
+    inset = bursts.ramp_samples
+    runs = np.array(list(bursts.within(0, n_samples, inset=inset)), np.int64).reshape(-1, 2)
+    while size > least and _n_touched(runs, size) < FEWEST_BATCHES:
+        size //= 2
+    return size
+
+
+def _n_touched(runs: NDArray[np.int64], size: int) -> int:
+    """Return how many batches hold a part of a run."""
+    first, last = runs[:, 0] // size, (runs[:, 1] - 1) // size
+    shared = np.count_nonzero(first[1:] == last[:-1])
+    return int(np.sum(last - first + 1)) - int(shared)
+
+
 class _Counts(PowerReading):
     """A power reading that keeps apart what lies in each batch."""
 
@@ -260,7 +295,11 @@ class BatchedPowerReading:
 
     def __init__(self, meter: BatchedPowerMeter, n_samples: int) -> None:
         self._meter = meter
-        self._size = batch_length(n_samples)
+        self._size = (
+            batch_length(n_samples)
+            if meter.bursts is None
+            else gated_batch_length(n_samples, meter.bursts)
+        )
         # Batches shorter than a cell come from records so short that they can be held whole.
         self._held: list[Samples] | None = [] if self._size < CELL else None
         self._power = (
@@ -386,6 +425,11 @@ class BatchedPowerReading:
         pairs = self._pairs
         if self._meter.loops:
             pairs = added(*pairs, *joint(np.concatenate([self._last, self._first])))
+        if self._meter.bursts is not None:  # of what is never on nothing is kept
+            is_on = n_measured > 0
+            number = np.cumsum(is_on) - 1
+            rows = {int(number[k]): row for k, row in rows.items() if is_on[k]}
+            n_measured, sums = n_measured[is_on], sums[is_on]
         counts, first_bin = _stacked(rows, n_measured.size)
         row, place = added(np.zeros(counts.shape[1], np.int64), first_bin, *pairs)
         return BatchedStatistics(

@@ -7,8 +7,10 @@ does. *Small* is -40 dB: an error of that size is 1 % EVM and moves no level by 
 from __future__ import annotations
 
 import math
+from collections.abc import Mapping
 from concurrent.futures import Executor
 from dataclasses import dataclass
+from typing import Any, Self
 
 import numpy as np
 from numpy.typing import NDArray
@@ -80,6 +82,87 @@ class RecordCheck:
     n_codes: int | None
 
 
+@dataclass(frozen=True, eq=False, slots=True, kw_only=True)
+class FaultSearch:
+    """A search for faults, to go along with other meters in one pass over a record.
+
+    Parameters
+    ----------
+    signal : Signal
+        The samples, full scale 1.0.
+    seen : Stretches
+        What up to 2048 stretches of it say.
+    taps : tuple of Tap
+        To be rendered; :meth:`result` takes what they read.
+    n_rails : int
+        1 for a file of real samples.
+    """
+
+    signal: Signal
+    seen: Stretches
+    taps: tuple[Tap, ...]
+    n_rails: int
+
+    @classmethod
+    def of(
+        cls,
+        signal: Signal,
+        *,
+        loops: bool = False,
+        code_scale: float | None = None,
+        n_rails: int = 2,
+    ) -> Self:
+        """Look at stretches of a record and return the search in all of it.
+
+        Parameters
+        ----------
+        signal, loops, code_scale, n_rails
+            As in :func:`check_record`.
+        """
+        seen = look_at_stretches(signal)
+        record = RecordMeter(offset=seen.offset, code_scale=code_scale, n_rails=n_rails)
+        return cls(
+            signal=signal,
+            seen=seen,
+            taps=(
+                Tap(name="record", signal=signal, meter=record),
+                breaks_tap(signal, loops=loops),
+            ),
+            n_rails=n_rails,
+        )
+
+    def result(self, read: Mapping[str, Any]) -> RecordCheck:
+        """Return what was found.
+
+        Parameters
+        ----------
+        read : mapping
+            Results of the taps, by their names.
+        """
+        figures: RecordFigures = read["record"]
+        faults: list[Fault] = [
+            *_not_finite(figures),
+            *_start(figures),
+            *_tail(figures),
+            *_clipping(figures),
+        ]
+        offset, offset_dbc, dc = _dc(figures, self.seen)
+        imbalance, unequal = _imbalance(self.seen, self.n_rails)
+        noise_db, n_codes, coarse = _quantisation(figures)
+        faults += [*dc, *unequal, *coarse, *level_faults(figures)]
+        if read["breaks"] is not None:
+            faults += splices(self.signal, self.taps[1].signal, read["breaks"], figures)
+        return RecordCheck(
+            faults=tuple(faults),
+            offset=offset,
+            offset_dbc=offset_dbc,
+            gain_imbalance_db=imbalance[0] if imbalance else None,
+            phase_imbalance_deg=imbalance[1] if imbalance else None,
+            quantisation_db=noise_db,
+            n_codes=n_codes,
+        )
+
+
 def check_record(
     signal: Signal,
     *,
@@ -114,41 +197,16 @@ def check_record(
     FileError
         The file cannot be read to its end.
     """
-    seen = look_at_stretches(signal)
-    record = RecordMeter(offset=seen.offset, code_scale=code_scale, n_rails=n_rails)
-    taps = [Tap(name="record", signal=signal, meter=record)]
-    breaks = breaks_tap(signal, loops=loops)
-    taps.append(breaks)
+    search = FaultSearch.of(signal, loops=loops, code_scale=code_scale, n_rails=n_rails)
     read = render(
         signal,
-        taps=tuple(taps),
+        taps=search.taps,
         workers=workers,
         executor=executor,
         progress=progress,
         task="faults",
     )
-    figures: RecordFigures = read["record"]
-    faults: list[Fault] = [
-        *_not_finite(figures),
-        *_start(figures),
-        *_tail(figures),
-        *_clipping(figures),
-    ]
-    offset, offset_dbc, dc = _dc(figures, seen)
-    imbalance, unequal = _imbalance(seen, n_rails)
-    noise_db, n_codes, coarse = _quantisation(figures)
-    faults += [*dc, *unequal, *coarse, *level_faults(figures)]
-    if read["breaks"] is not None:
-        faults += splices(signal, breaks.signal, read["breaks"], figures)
-    return RecordCheck(
-        faults=tuple(faults),
-        offset=offset,
-        offset_dbc=offset_dbc,
-        gain_imbalance_db=imbalance[0] if imbalance else None,
-        phase_imbalance_deg=imbalance[1] if imbalance else None,
-        quantisation_db=noise_db,
-        n_codes=n_codes,
-    )
+    return search.result(read)
 
 
 def code_scale(recording: Recording) -> float | None:

@@ -315,7 +315,8 @@ class SampledStatistics:
         n_runs = share * n_samples / size
         scale = size * worth / n_samples
         number = n_runs / worth
-        many = np.flatnonzero(n_runs >= min(MANY_RUNS, float(self._edge_runs.max())))
+        is_many = n_runs >= min(MANY_RUNS, float(self._edge_runs.max()))
+        many = np.flatnonzero(is_many & (share > 0))  # a constant envelope has no run at all
         if many.size:
             variance = self._shares(power[many])
             scale[many] = variance / share[many]

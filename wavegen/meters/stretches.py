@@ -39,6 +39,9 @@ class Stretches:
         Power of the strongest spectral line other than at 0 Hz, 0 if there is none.
     n_stretches : int
         How many were looked at.
+    flat_bandwidth : float
+        Width of a flat band whose spectrum is spread as far about its middle (root of 12 times
+        the root-mean-square), cycles per sample; 0 where it is not known.
     """
 
     offset: complex
@@ -46,6 +49,7 @@ class Stretches:
     pseudo_sigma: float
     strongest_line: float
     n_stretches: int
+    flat_bandwidth: float = 0.0
 
 
 def look_at_stretches(signal: Signal) -> Stretches:
@@ -107,6 +111,7 @@ def look_at_stretches(signal: Signal) -> Stretches:
         pseudo_sigma=sigma,
         strongest_line=_line(spectrum / max(n_read, 1), window),
         n_stretches=n_read,
+        flat_bandwidth=_flat_bandwidth(spectrum),
     )
 
 
@@ -155,3 +160,19 @@ def _line(spectrum: Floats, window: Floats) -> float:
     is_line[[0, 1, 2, -1, -2]] = False
     # A comb finer than the stretch can tell shows a ripple: its lines are as strong as its bins.
     return float(power[is_line].max()) if is_line.any() else 0.0
+
+
+def _flat_bandwidth(spectrum: Floats) -> float:
+    """Return the width of a flat band of the same spread, cycles per sample.
+
+    The window spreads each line by a variance of a third of a bin squared (Hann: weights 1/6,
+    2/3, 1/6), which is taken off.
+    """
+    total, n = float(spectrum.sum()), spectrum.size
+    if not total > 0:
+        return 0.0
+    turn = np.exp(2j * np.pi * np.arange(n) / n)
+    middle = float(np.angle(np.sum(spectrum * turn))) / (2 * np.pi)
+    away = (np.arange(n) / n - middle + 0.5) % 1.0 - 0.5
+    variance = float(np.sum(spectrum * away**2)) / total - 1 / (3 * n * n)
+    return float(np.sqrt(12 * max(variance, 0.0)))
