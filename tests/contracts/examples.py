@@ -30,6 +30,13 @@ from wavegen.stages.channel.gate import Gate
 from wavegen.stages.channel.resample import Resample
 from wavegen.stages.channel.scale import Scale
 from wavegen.stages.combine.sum import Part, Sum
+from wavegen.stages.converter.clock_jitter import ClockJitter
+from wavegen.stages.converter.dc_offset import DcOffset
+from wavegen.stages.converter.hold_droop import HoldDroop
+from wavegen.stages.converter.iq_imbalance import IqImbalance
+from wavegen.stages.converter.path_response import PathResponse
+from wavegen.stages.converter.phase_noise import PhaseMask, PhaseNoise
+from wavegen.stages.converter.quantise import Quantise
 from wavegen.stages.crest.clip import Clip
 from wavegen.stages.crest.clip_filter import ClipFilter
 from wavegen.stages.crest.constellation_extension import ConstellationExtension
@@ -266,6 +273,10 @@ class StageExample:
         Whether the mean power behind it has no closed form.
     source : settings, optional
         What it is built on; noise if not given.
+    is_random : bool
+        Whether the stage draws words of its own, by seed, name and place.
+    has_zero_strength : bool
+        Whether there are settings that change nothing: rounding always does.
     """
 
     settings: Any
@@ -273,6 +284,8 @@ class StageExample:
     identity: Any = None
     is_measured: bool = False
     source: Any = None
+    is_random: bool = False
+    has_zero_strength: bool = True
 
 
 def _stage(settings: Any, site: Site, source: Signal) -> Signal:
@@ -280,9 +293,9 @@ def _stage(settings: Any, site: Site, source: Signal) -> Signal:
     return built
 
 
-def _device(name: str) -> str:
-    """Return the path of measured points or coefficients of an invented amplifier."""
-    return str(Path(__file__).parents[1] / "stages" / "device" / "data" / name)
+def _device(name: str, shelf: str = "device") -> str:
+    """Return the path of measured points or coefficients of an invented amplifier or path."""
+    return str(Path(__file__).parents[1] / "stages" / shelf / "data" / name)
 
 
 def _combine(settings: Any, site: Site, source: Signal) -> Signal:
@@ -336,6 +349,14 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
         StageExample(settings=Clip(ceiling_db=5.0), build=_stage, identity=Clip(ceiling_db=60.0)),
         StageExample(settings=Clip(ceiling_db=0.5), build=_stage),
     ),
+    "clock_jitter": (
+        StageExample(
+            settings=ClockJitter(rms_s=2e-8, centre_hz=Fraction(300_000)),
+            build=_stage,
+            identity=ClockJitter(rms_s=0.0),
+            is_random=True,
+        ),
+    ),
     "clip_filter": (
         StageExample(
             settings=ClipFilter(ceiling_db=5.0, rounds=3),
@@ -363,6 +384,13 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             settings=ConstellationExtension(ceiling_db=7.0, rounds=2),
             build=_stage,
             source=FRAMED,
+        ),
+    ),
+    "dc_offset": (
+        StageExample(
+            settings=DcOffset(level_db=-20.0, phase_deg=30.0),
+            build=_stage,
+            identity=DcOffset(level_db=-200.0),
         ),
     ),
     "delay": (
@@ -428,6 +456,24 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             ),
         ),
     ),
+    "hold_droop": (
+        StageExample(
+            settings=HoldDroop(),
+            build=_stage,
+            identity=HoldDroop(converter_rate_hz=Fraction(10**11)),
+            is_measured=True,
+        ),
+        StageExample(
+            settings=HoldDroop(inverse=True, band_hz=Fraction(400_000)),
+            build=_stage,
+            is_measured=True,
+        ),
+    ),
+    "iq_imbalance": (
+        StageExample(
+            settings=IqImbalance(gain_db=1.0, phase_deg=-3.0), build=_stage, identity=IqImbalance()
+        ),
+    ),
     "measured_amplifier": (
         StageExample(
             settings=MeasuredAmplifier(path=_device("amplifier.csv"), input_power_dbm=-6.0),
@@ -451,6 +497,14 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             settings=ModifiedRapp(input_back_off_db=8.0, back_off_from="compression"),
             build=_stage,
             identity=ModifiedRapp(input_back_off_db=200.0),
+        ),
+    ),
+    "path_response": (
+        StageExample(
+            settings=PathResponse(path=_device("path.csv", "converter"), inverse=True),
+            build=_stage,
+            identity=PathResponse(path=_device("flat.csv", "converter")),
+            is_measured=True,
         ),
     ),
     "peak_cancellation": (
@@ -477,6 +531,16 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
         ),
         StageExample(settings=PeakWindowing(ceiling_db=7.0, window="hann"), build=_stage),
     ),
+    "phase_noise": (
+        StageExample(
+            settings=PhaseNoise(
+                mask=PhaseMask.parse([["100 Hz", "-50 dBc/Hz"], ["10 kHz", "-80 dBc/Hz"]])
+            ),
+            build=_stage,
+            identity=PhaseNoise(mask=PhaseMask.parse([["1 kHz", "-300 dBc/Hz"]])),
+            is_random=True,
+        ),
+    ),
     "projection": (
         StageExample(
             settings=Projection(ceiling_db=5.0, rounds=4, transition_hz=Fraction(20_000)),
@@ -490,6 +554,14 @@ STAGE_EXAMPLES: dict[str, tuple[StageExample, ...]] = {
             source=SYMBOLS,
         ),
         StageExample(settings=Projection(ceiling_db=6.0, rounds=3), build=_stage, source=FRAMED),
+    ),
+    "quantise": (
+        StageExample(
+            settings=Quantise(bits=8, full_scale_db=9.0),
+            build=_stage,
+            is_measured=True,
+            has_zero_strength=False,
+        ),
     ),
     "rapp": (
         StageExample(

@@ -15,14 +15,15 @@ from numpy.typing import NDArray
 
 from wavegen.core.errors import FileError
 from wavegen.core.signal import Signal
-from wavegen.core.site import Note, Site
+from wavegen.core.site import Site
 from wavegen.core.units import QuantityError, format_hz
 from wavegen.dsp.overlap_save import Filtered
-from wavegen.dsp.pilot import N_STRETCHES, STRETCH_SAMPLES, is_whole, power_gain
+from wavegen.dsp.pilot import power_gain
 from wavegen.dsp.windows import STOPBAND_DB, design_bandpass, design_lowpass, kaiser_transition
 from wavegen.laws.law import Law
 from wavegen.laws.operations import filtered_law, filtered_term
 from wavegen.laws.term import NoLaw, Term
+from wavegen.stages.linear import SILENT_DB, tell_power
 
 Filter_ = NDArray[np.float64] | NDArray[np.complex128]
 
@@ -32,8 +33,6 @@ LONGEST_HALF_LENGTH = 125_000
 """Longest designed filter, taps each side of its middle: transforms of 2^19 then."""
 DEFAULT_TRANSITION = Fraction(1, 20)
 """Width of each edge over the width of the band where it is not given."""
-SILENT_DB = -100.0
-"""A filter that leaves less of a signal than this has probably missed its band."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -280,7 +279,7 @@ class Filter:
             taps = np.append(given, np.zeros(1 - given.size % 2))
             taps = taps if taps.imag.any() else taps.real
         gain = power_gain(source, taps)
-        self._tell(site, source, gain)
+        tell_power(site, source, gain, is_undone=self.keep_mean)
         if not self.keep_mean:
             return Filtered.of(source, taps, lag=lag)
         if gain is None or gain < 10 ** (SILENT_DB / 10):
@@ -349,25 +348,3 @@ class Filter:
             stopband_width=reach,
             stopband_db=self.stopband_db,
         )
-
-    def _tell(self, site: Site, source: Signal, gain: float | None) -> None:
-        origin = (
-            "the whole loop"
-            if is_whole(source)
-            else f"{N_STRETCHES} stretches of {STRETCH_SAMPLES} samples"
-        )
-        gain_db = 10 * math.log10(gain) if gain else -math.inf
-        done = ", which is undone" if self.keep_mean else ""
-        if gain_db > SILENT_DB:
-            note = Note(
-                kind="info",
-                where=site.path,
-                text=f"the mean power changes by {gain_db:+.3f} dB{done}; found on {origin}",
-            )
-        else:
-            note = Note(
-                kind="warning",
-                where=site.path,
-                text=f"next to nothing of the signal passes; found on {origin}",
-            )
-        site.notes.append(note)
