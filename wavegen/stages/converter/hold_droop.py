@@ -30,8 +30,8 @@ TOLERANCE = 1e-6
 LONGEST = 1 << 11
 NEGLIGIBLE = 1e-8
 """A droop below this is lost in float32."""
-DOUBTFUL_SHARE = 1e-6
-"""Power beyond the band worth a warning: an EVM of 0.1 %."""
+DOUBTFUL_SHARE = 1e-4
+"""Power beyond the band worth a warning: more than the noise of good converters."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
