@@ -7,6 +7,8 @@ from wavegen.dsp.envelope_excess import (
     excess_over,
     local_peaks,
     power_of,
+    row_peaks,
+    row_peaks_by_numpy,
     shortfall_of,
 )
 
@@ -70,3 +72,19 @@ def test_dilation_is_the_maximum_of_a_window(samples, reach):
     values = power_of(samples[:500])
     windows = np.lib.stride_tricks.sliding_window_view(values, 2 * reach + 1)
     assert np.array_equal(dilate(values, reach), windows.max(axis=1))
+
+
+@pytest.mark.parametrize("n", [1, 7, 8, 1001])
+def test_the_highest_power_of_each_row(samples, n):
+    rows = samples[: 5 * n].reshape(5, n)
+    got = row_peaks(rows)
+    assert got.tobytes() == row_peaks_by_numpy(rows).tobytes()
+    assert got == pytest.approx(np.max(np.abs(rows) ** 2, axis=1), rel=1e-6)
+
+
+def test_the_excess_goes_where_it_is_told(samples):
+    room = np.empty((7, samples.size // 7), np.complex64)
+    some = samples[: room.size]
+    got = excess_over(some, 1.5, out=room)
+    assert np.shares_memory(got, room)
+    assert room.tobytes() == excess_over(some, 1.5).tobytes()

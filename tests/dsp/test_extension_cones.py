@@ -1,7 +1,7 @@
 import numpy as np
 import pytest
 
-from wavegen.dsp.extension_cones import cones_of, into_cones
+from wavegen.dsp.extension_cones import cones_of, into_cones, into_cones_by_numpy
 from wavegen.sources.mapping.constellation import Constellation
 
 NAMES = ["bpsk", "qpsk", "8psk", "16qam", "32qam", "64qam", "16apsk 3/4"]
@@ -49,7 +49,6 @@ def test_outer_points_move_and_inner_ones_do_not(name, n_moving):
 
 
 def test_edges_go_straight_out_and_corners_into_a_quarter():
-    points = np.array([3 + 3j, 3 + 1j, 1 + 1j] + [a + 1j * b for a in (-3, -1) for b in (-3, -1)])
     points = np.array([a + 1j * b for a in (-3, -1, 1, 3) for b in (-3, -1, 1, 3)])
     cones = cones_of(points)
     edge, corner = int(np.argmax(points == 3 + 1j)), int(np.argmax(points == 3 + 3j))
@@ -71,3 +70,12 @@ def test_equal_points_do_not_count():
     assert np.allclose(cones.axis, [1, 1, -1, -1], atol=1e-6)
     assert np.allclose(cones.sine, 1)
     assert not cones_of(np.array([1, 1], complex)).axis.any()
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_compiled_loop_and_numpy_give_the_same_bits(name):
+    points = Constellation.parse(name).points
+    wanted, allowed = moved_at_random(points)
+    numbers = np.broadcast_to(np.arange(points.size), wanted.shape)
+    cones = cones_of(points).of(numbers)
+    assert np.array_equal(into_cones_by_numpy(wanted, cones), allowed)

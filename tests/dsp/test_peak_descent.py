@@ -3,7 +3,14 @@ import pytest
 
 from wavegen.dsp import peak_descent
 from wavegen.dsp.envelope_excess import excess_over
-from wavegen.dsp.peak_descent import advance, advance_by_numpy, descend, steps_by_numpy, steps_of
+from wavegen.dsp.peak_descent import (
+    Excess,
+    advance,
+    advance_by_numpy,
+    descend,
+    steps_by_numpy,
+    steps_of,
+)
 
 N = 256
 BINS = np.r_[-32:0, 1:33]
@@ -51,7 +58,7 @@ def test_every_round_leaves_less_above():
 def test_steps_that_would_raise_it_are_halved():
     """A step 30 times too long: what it would bring above is more than what it takes."""
     rows = rows_of(8)
-    excess = excess_over(rows.reshape(-1), 1.5).reshape(rows.shape)
+    excess = Excess.of(rows, 1.5)
     moved = rows_of(8, seed=5)
     steps = np.full(8, 30, np.float32)
     before = energy(rows, 1.5)
@@ -63,27 +70,52 @@ def test_steps_that_would_raise_it_are_halved():
 
 
 def test_the_step_is_the_best_to_first_order():
-    """On two samples, one above: ``|3 - s| = 2`` at ``s = 1``."""
-    excess = np.array([[1, 0]], np.complex64)
-    moved = np.array([[-1, 5]], np.complex64)
+    """On two samples, one above: ``|4 - 2 s| = 2`` at ``s = 1``."""
+    excess = Excess.of(np.array([[4, 0]], np.complex64), 2.0)
+    assert excess.samples.tolist() == [[2, 0]]
+    assert (excess.counts.tolist(), excess.places[0, 0], excess.energies.tolist()) == ([1], 0, [4])
+    moved = np.array([[-2, 5]], np.complex64)
     assert steps_of(moved, excess).tolist() == [1.0]
     assert steps_of(-moved, excess).tolist() == [0.0]
-    assert steps_of(moved, np.zeros_like(excess)).tolist() == [0.0]
+    assert steps_of(moved, Excess.of(np.zeros((1, 2), np.complex64), 2.0)).tolist() == [0.0]
+
+
+def fields_of(excess):
+    first = [excess.places[k, :count] for k, count in enumerate(excess.counts)]
+    return [excess.samples, np.concatenate(first), excess.counts, excess.energies]
 
 
 @pytest.mark.parametrize("amplitude", [0.9, 1.6, 3.9])
 def test_compiled_loops_and_numpy_give_the_same_bits(amplitude):
-    rows, moved = rows_of(7), rows_of(7, seed=9)
-    excess = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
-    steps = steps_of(moved, excess)
-    assert steps.tobytes() == steps_by_numpy(moved, excess).tobytes()
-    steps[1:4] = [0.3, 40, 0]
-    first = rows.copy(), moved, steps.copy(), amplitude, excess.copy()
-    second = rows.copy(), moved, steps.copy(), amplitude, excess.copy()
-    advance(*first)
-    advance_by_numpy(*second)
-    for a, b in zip(first, second, strict=True):
-        assert np.asarray(a).tobytes() == np.asarray(b).tobytes()
+    moved = rows_of(7, seed=9)
+    results = []
+    for steps_in_use, advance_in_use in ((steps_of, advance), (steps_by_numpy, advance_by_numpy)):
+        rows, excess = rows_of(7), Excess.of(rows_of(7), amplitude)
+        steps = steps_in_use(moved, excess)
+        found = steps.tobytes()
+        steps[1:4] = [0.3, 40, 0]
+        advance_in_use(rows, moved, steps, amplitude, excess)
+        results.append([found, *(x.tobytes() for x in (rows, steps, *fields_of(excess)))])
+    assert results[0] == results[1]
+
+
+def test_what_stands_above_is_what_a_clip_takes():
+    rows = rows_of(5)
+    for amplitude in (0.5, 1.5, 9.0):
+        want = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
+        excess = Excess.of(rows.copy(), amplitude)
+        assert np.array_equal(excess.samples, want)
+        assert excess.energies == pytest.approx(energy(rows, amplitude), rel=1e-6)
+        assert np.array_equal(excess.counts, np.count_nonzero(want, axis=1))
+
+
+def test_a_sample_that_loses_its_excess_in_rounding():
+    amplitude = 1.0
+    just = np.nextafter(np.float32(1), np.float32(2))
+    rows = np.array([[just, 0.5, 2.0]], np.complex64)
+    moved = np.array([[-1, 0, -1]], np.complex64)
+    excess = Excess.of(rows, amplitude)
+    assert steps_of(moved, excess).tobytes() == steps_by_numpy(moved, excess).tobytes()
 
 
 def test_rows_do_not_know_each_other():

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 from numpy.typing import NDArray
@@ -107,16 +109,66 @@ def into_cones(moves: Samples, cones: Cones) -> Samples:
     >>> np.round(moved, 5).tolist()
     [(2+1j), 3j, 0j]
     """
-    turned = moves * np.conj(cones.axis)
-    along, aside = turned.real, np.abs(turned.imag)
-    on_edge = along * cones.cosine
-    on_edge += aside * cones.sine
-    np.maximum(on_edge, 0, out=on_edge)
-    is_inside = aside * cones.cosine <= along * cones.sine
-    made = np.empty_like(turned)
-    np.multiply(on_edge, cones.cosine, out=made.real)
-    np.multiply(on_edge, cones.sine, out=made.imag)
-    np.copysign(made.imag, turned.imag, out=made.imag)
-    np.copyto(made, turned, where=is_inside)
-    made *= cones.axis
+    kernel = _compile()
+    if kernel is None:
+        return into_cones_by_numpy(moves, cones)
+    made = np.empty_like(moves)
+    planes = (moves, cones.axis, made)
+    flat = [np.ascontiguousarray(each).reshape(-1).view(np.float32) for each in planes]
+    kernel(*flat, cones.cosine.reshape(-1), cones.sine.reshape(-1))
     return made
+
+
+def into_cones_by_numpy(moves: Samples, cones: Cones) -> Samples:
+    """Do what :func:`into_cones` does, without a compiler; same parameters, same bits."""
+    real, imag = cones.axis.real, cones.axis.imag
+    along = moves.real * real + moves.imag * imag
+    across = moves.imag * real - moves.real * imag
+    aside = np.abs(across)
+    reach = np.maximum(along * cones.cosine + aside * cones.sine, np.float32(0))
+    is_inside = aside * cones.cosine <= along * cones.sine
+    along = np.where(is_inside, along, reach * cones.cosine)
+    across = np.where(is_inside, across, np.copysign(reach * cones.sine, across))
+    made = np.empty_like(moves)
+    made.real = along * real - across * imag
+    made.imag = along * imag + across * real
+    return made
+
+
+@cache
+def _compile() -> Callable[..., None] | None:
+    """Return the compiled loop, or None where numba is missing or switched off."""
+    try:
+        import numba
+    except ImportError:
+        return None
+    if getattr(numba.config, "DISABLE_JIT", False):
+        return None
+    line = numba.types.Array(numba.types.float32, 1, "C")
+    held = numba.types.Array(numba.types.float32, 1, "C", readonly=True)
+    signature = numba.types.void(held, held, line, held, held)
+    try:
+        return numba.njit(signature, nogil=True, cache=True)(_into)
+    except RuntimeError:  # no folder can be written for the cache
+        return numba.njit(signature, nogil=True)(_into)
+
+
+def _into(
+    moves: NDArray[np.float32],
+    axis: NDArray[np.float32],
+    made: NDArray[np.float32],
+    cosine: NDArray[np.float32],
+    sine: NDArray[np.float32],
+) -> None:
+    zero = np.float32(0)
+    for k in range(cosine.size):
+        real, imag = axis[2 * k], axis[2 * k + 1]
+        along = moves[2 * k] * real + moves[2 * k + 1] * imag
+        across = moves[2 * k + 1] * real - moves[2 * k] * imag
+        aside = np.abs(across)
+        if aside * cosine[k] > along * sine[k]:
+            reach = max(along * cosine[k] + aside * sine[k], zero)
+            along = reach * cosine[k]
+            across = np.copysign(reach * sine[k], across)
+        made[2 * k] = along * real - across * imag
+        made[2 * k + 1] = along * imag + across * real

@@ -18,14 +18,16 @@ memory; this step is a derivation, and checked against a general solver).
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import dataclass
 from functools import cache
+from typing import Any
 
 import numpy as np
 import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
-from wavegen.dsp.envelope_excess import excess_over
+from wavegen.dsp.envelope_excess import excess_over, power_of
 from wavegen.dsp.mapping_kernel import read_values, write_values
 
 MOST_HALVINGS = 10
@@ -33,6 +35,40 @@ MOST_HALVINGS = 10
 
 Rule = Callable[[Samples], Samples]
 """From a wanted change of lines, shape (n_rows, n_lines), to the nearest one allowed."""
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Excess:
+    """What stands above the amplitude.
+
+    Parameters
+    ----------
+    samples : complex64 array, shape (n_rows, n)
+        0 where nothing does.
+    places : int32 array, shape (n_rows, n)
+        First of each row, rising, where something does.
+    counts : int64 array, shape (n_rows,)
+        How many places.
+    energies : float64 array, shape (n_rows,)
+        Sum of the squares.
+    """
+
+    samples: Samples
+    places: NDArray[np.int32]
+    counts: NDArray[np.int64]
+    energies: NDArray[np.float64]
+
+    @classmethod
+    def of(cls, rows: Samples, amplitude: float) -> Excess:
+        """Return the excess of rows, shape (n_rows, n)."""
+        made = cls(
+            samples=np.empty_like(rows),
+            places=np.empty(rows.shape, np.int32),
+            counts=np.empty(rows.shape[0], np.int64),
+            energies=np.full(rows.shape[0], np.inf),
+        )
+        advance(rows, rows, np.zeros(rows.shape[0], np.float32), amplitude, made)
+        return made
 
 
 def descend(
@@ -65,31 +101,32 @@ def descend(
         ``rows`` have gained the inverse transform of it, unscaled.
     """
     change = np.zeros((rows.shape[0], bins.size), np.complex64)
-    excess = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
+    excess = Excess.of(rows, amplitude)
     for _ in range(n_rounds):
-        if not excess.any():
+        if not excess.counts.any():
             break
-        lines = scipy.fft.fft(excess, axis=1, norm="forward")
+        lines = scipy.fft.fft(excess.samples, axis=1, norm="forward")
         wanted = read_values(np.asarray(lines, np.complex64), bins=bins)
         np.negative(wanted, out=wanted)
         move = wanted if rule is None else rule(wanted)
-        placed = np.zeros_like(rows)
-        write_values(placed, move, bins=bins)
-        moved = scipy.fft.ifft(placed, axis=1, norm="forward", overwrite_x=True)
-        steps = steps_of(np.asarray(moved, np.complex64), excess)
-        advance(rows, np.asarray(moved, np.complex64), steps, amplitude, excess)
+        lines[:] = 0
+        write_values(lines, move, bins=bins)
+        moved = scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True)
+        moved = np.asarray(moved, np.complex64)
+        steps = steps_of(moved, excess)
+        advance(rows, moved, steps, amplitude, excess)
         change += steps[:, None] * move
     return change
 
 
-def steps_of(moved: Samples, excess: Samples) -> NDArray[np.float32]:
+def steps_of(moved: Samples, excess: Excess) -> NDArray[np.float32]:
     """Return how far each row should go.
 
     Parameters
     ----------
     moved : complex64 array, shape (n_rows, n)
         Change of the samples by a step of 1.
-    excess : complex64 array, shape (n_rows, n)
+    excess : Excess
         What stands above the amplitude.
 
     Returns
@@ -101,15 +138,17 @@ def steps_of(moved: Samples, excess: Samples) -> NDArray[np.float32]:
     if kernels is None:
         return steps_by_numpy(moved, excess)
     out = np.empty(moved.shape[0], np.float32)
-    kernels[0](moved.view(np.float32), excess.view(np.float32), out)
+    planes = moved.view(np.float32), excess.samples.view(np.float32)
+    kernels[0](planes, excess.places, excess.counts, out)
     return out
 
 
-def steps_by_numpy(moved: Samples, excess: Samples) -> NDArray[np.float32]:
+def steps_by_numpy(moved: Samples, excess: Excess) -> NDArray[np.float32]:
     """Do what :func:`steps_of` does, without a compiler; same parameters, same bits."""
     out = np.zeros(moved.shape[0], np.float32)
-    for row, (m, e) in enumerate(zip(moved, excess, strict=True)):
-        above = np.flatnonzero((e.real != 0) | (e.imag != 0))
+    for row, (m, e) in enumerate(zip(moved, excess.samples, strict=True)):
+        above = excess.places[row, : excess.counts[row]]
+        above = above[e[above] != 0]  # a sample just above may lose its excess in rounding
         real, imag = e.real[above].astype(np.float64), e.imag[above].astype(np.float64)
         along = m.real[above] * real + m.imag[above] * imag
         square = real * real + imag * imag
@@ -121,7 +160,7 @@ def steps_by_numpy(moved: Samples, excess: Samples) -> NDArray[np.float32]:
 
 
 def advance(
-    rows: Samples, moved: Samples, steps: NDArray[np.float32], amplitude: float, excess: Samples
+    rows: Samples, moved: Samples, steps: NDArray[np.float32], amplitude: float, excess: Excess
 ) -> None:
     """Go steps that make the excess smaller, and find the excess there.
 
@@ -135,40 +174,42 @@ def advance(
         Of each row; halved, or set to 0, where the energy of the excess would not fall.
     amplitude : float
         Ceiling of the envelope.
-    excess : complex64 array, shape (n_rows, n)
+    excess : Excess
         That of ``rows``, then of what they become.
     """
     kernels = _compile()
     if kernels is None:
         advance_by_numpy(rows, moved, steps, amplitude, excess)
         return
-    flat = rows.view(np.float32), moved.view(np.float32), excess.view(np.float32)
-    kernels[1](*flat, steps, amplitude)
+    planes = rows.view(np.float32), moved.view(np.float32), excess.samples.view(np.float32)
+    kernels[1](planes, steps, (excess.places, excess.counts, excess.energies), amplitude)
 
 
 def advance_by_numpy(
-    rows: Samples, moved: Samples, steps: NDArray[np.float32], amplitude: float, excess: Samples
+    rows: Samples, moved: Samples, steps: NDArray[np.float32], amplitude: float, excess: Excess
 ) -> None:
     """Do what :func:`advance` does, without a compiler; same parameters, same bits."""
+    limit = np.float32(amplitude * amplitude)
     for number, (row, move) in enumerate(zip(rows, moved, strict=True)):
-        if steps[number] == 0:
+        before = excess.energies[number]
+        if steps[number] == 0 and before < np.inf:
             continue
-        before = _energy(excess[number])
         for _ in range(MOST_HALVINGS):
             made = row.view(np.float32) + move.view(np.float32) * steps[number]
-            left = excess_over(made.view(np.complex64), amplitude)
-            if _energy(left) < before:
+            above = np.flatnonzero(power_of(made.view(np.complex64)) > limit)
+            left = excess_over(made.view(np.complex64)[above], amplitude)
+            square = left.real.astype(np.float64) ** 2 + left.imag.astype(np.float64) ** 2
+            energy = float(np.cumsum(square)[-1]) if above.size else 0.0
+            if energy < before:
                 row.view(np.float32)[...] = made
-                excess[number] = left
+                excess.samples[number] = 0
+                excess.samples[number, above] = left
+                excess.places[number, : above.size] = above
+                excess.counts[number], excess.energies[number] = above.size, energy
                 break
             steps[number] *= np.float32(0.5)
         else:
             steps[number] = 0
-
-
-def _energy(samples: Samples) -> float:
-    square = samples.real.astype(np.float64) ** 2 + samples.imag.astype(np.float64) ** 2
-    return float(np.cumsum(square)[-1])
 
 
 @cache
@@ -180,11 +221,16 @@ def _compile() -> tuple[Callable[..., None], Callable[..., None]] | None:
         return None
     if getattr(numba.config, "DISABLE_JIT", False):
         return None
-    f32, f64, void = numba.types.float32, numba.types.float64, numba.types.void
-    plane, line = numba.types.Array(f32, 2, "C"), numba.types.Array(f32, 1, "C")
-    kinds = (void(plane, plane, line), void(plane, plane, plane, line, f64))
+    kinds: Any = numba.types
+    plane, line = kinds.Array(kinds.float32, 2, "C"), kinds.Array(kinds.float32, 1, "C")
+    places, counts = kinds.Array(kinds.int32, 2, "C"), kinds.Array(kinds.int64, 1, "C")
+    state = kinds.Tuple((places, counts, kinds.Array(kinds.float64, 1, "C")))
+    signatures = (
+        kinds.void(kinds.UniTuple(plane, 2), places, counts, line),
+        kinds.void(kinds.UniTuple(plane, 3), line, state, kinds.float64),
+    )
     loops: tuple[Callable[..., None], ...] = (_steps, _advance)
-    pairs = list(zip(kinds, loops, strict=True))
+    pairs = list(zip(signatures, loops, strict=True))
     try:
         made = [numba.njit(kind, nogil=True, cache=True)(loop) for kind, loop in pairs]
     except RuntimeError:  # no folder can be written for the cache
@@ -193,14 +239,19 @@ def _compile() -> tuple[Callable[..., None], Callable[..., None]] | None:
 
 
 def _steps(
-    moved: NDArray[np.float32], excess: NDArray[np.float32], out: NDArray[np.float32]
+    planes: tuple[NDArray[np.float32], NDArray[np.float32]],
+    places: NDArray[np.int32],
+    counts: NDArray[np.int64],
+    out: NDArray[np.float32],
 ) -> None:
-    for row in range(moved.shape[0]):
+    moved, excess = planes
+    for row in range(out.size):
         rise, width = 0.0, 0.0
-        for k in range(0, moved.shape[1], 2):
+        for number in range(counts[row]):
+            k = 2 * places[row, number]
             real, imag = np.float64(excess[row, k]), np.float64(excess[row, k + 1])
             square = real * real + imag * imag
-            if square > 0.0:
+            if square > 0.0:  # a sample just above has lost its excess in rounding
                 along = np.float64(moved[row, k]) * real + np.float64(moved[row, k + 1]) * imag
                 rise += along
                 width += along * along / square
@@ -208,37 +259,50 @@ def _steps(
 
 
 def _advance(
-    rows: NDArray[np.float32],
-    moved: NDArray[np.float32],
-    excess: NDArray[np.float32],
+    planes: tuple[NDArray[np.float32], NDArray[np.float32], NDArray[np.float32]],
     steps: NDArray[np.float32],
+    state: tuple[NDArray[np.int32], NDArray[np.int64], NDArray[np.float64]],
     amplitude: float,
 ) -> None:
+    rows, moved, excess = planes
+    places, counts, energies = state
     limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
-    one = np.float32(1)
-    left = np.empty(rows.shape[1], np.float32)
+    one, half = np.float32(1), np.float32(0.5)
+    n = rows.shape[1] // 2
+    made, power = np.empty(2 * n, np.float32), np.empty(n, np.float32)
+    found = np.empty(n, np.int32)
     for row in range(rows.shape[0]):
-        step, before = steps[row], 0.0
-        for k in range(0, rows.shape[1], 2):
-            real, imag = np.float64(excess[row, k]), np.float64(excess[row, k + 1])
-            before += real * real + imag * imag
-        halvings = 0
-        while step > 0:
-            after = 0.0
-            for k in range(0, rows.shape[1], 2):
-                real = rows[row, k] + moved[row, k] * step
-                imag = rows[row, k + 1] + moved[row, k + 1] * step
-                power = real * real + imag * imag
-                left[k] = left[k + 1] = np.float32(0)
-                if power > limit:
-                    share = one - top / np.sqrt(power)
-                    left[k], left[k + 1] = real * share, imag * share
-                    after += np.float64(left[k]) ** 2 + np.float64(left[k + 1]) ** 2
-            if after < before:
-                for k in range(rows.shape[1]):
-                    rows[row, k] += moved[row, k] * step
-                    excess[row, k] = left[k]
+        step, before = steps[row], energies[row]
+        if step == 0 and before < np.inf:
+            continue
+        is_taken = False
+        for _ in range(MOST_HALVINGS):
+            for k in range(2 * n):
+                made[k] = rows[row, k] + moved[row, k] * step
+            for k in range(n):
+                power[k] = made[2 * k] * made[2 * k] + made[2 * k + 1] * made[2 * k + 1]
+            count, energy = 0, 0.0
+            for k in range(n):
+                if power[k] > limit:
+                    found[count] = k
+                    count += 1
+                    share = one - top / np.sqrt(power[k])
+                    real, imag = made[2 * k] * share, made[2 * k + 1] * share
+                    energy += np.float64(real) * real + np.float64(imag) * imag
+            if energy < before:
+                is_taken = True
                 break
-            halvings += 1
-            step = step * np.float32(0.5) if halvings < MOST_HALVINGS else np.float32(0)
-        steps[row] = step
+            step *= half
+        if not is_taken:
+            steps[row] = 0
+            continue
+        steps[row], counts[row], energies[row] = step, count, energy
+        for k in range(2 * n):
+            rows[row, k] = made[k]
+            excess[row, k] = np.float32(0)
+        for number in range(count):
+            k = found[number]
+            places[row, number] = k
+            share = one - top / np.sqrt(power[k])
+            excess[row, 2 * k] = made[2 * k] * share
+            excess[row, 2 * k + 1] = made[2 * k + 1] * share

@@ -11,7 +11,7 @@ import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
-from wavegen.dsp.envelope_excess import power_of
+from wavegen.dsp.envelope_excess import row_peaks
 from wavegen.dsp.mapping_kernel import write_values
 from wavegen.dsp.overlap_save import BLOCK_SAMPLES, ROWS_AT_LEAST
 
@@ -171,4 +171,4 @@ class SymbolRows:
 
     def peaks(self, points: Samples) -> NDArray[np.float32]:
         """Return the highest power of each row, shape (n_rows,)."""
-        return np.asarray(np.max(power_of(points.reshape(-1)).reshape(points.shape), axis=1))
+        return row_peaks(points)

@@ -71,12 +71,19 @@ class Sequences:
         made[0] = 1
         return made
 
+    def all_of(self, number: int, symbols: NDArray[np.intp]) -> Samples:
+        """Return the factors of one candidate for several symbols, (n, n_active) or (n_active,)."""
+        found: Samples = self.factors[number]
+        if not self.is_data.all():
+            found = np.where(self.is_data[symbols % self.is_data.shape[0]], found, np.complex64(1))
+        return found
+
     def of(self, numbers: NDArray[np.intp], symbols: NDArray[np.intp]) -> Samples:
         """Return the factors of symbols that took some candidates, shape (n, n_active)."""
-        found = self.factors[numbers]
+        found: Samples = self.factors[numbers]
         if not self.is_data.all():
-            found = np.where(self.is_data[symbols % self.is_data.shape[0]], found, 1)
-        return np.asarray(found, np.complex64)
+            found = np.where(self.is_data[symbols % self.is_data.shape[0]], found, np.complex64(1))
+        return found
 
 
 def _is_data(grid: Grid) -> NDArray[np.bool_]:
@@ -120,10 +127,10 @@ class CandidateChoice(Signal):
             sent = read_values(lines, bins=(self.sequences.indices % view.n_fft).astype(np.uint32))
             best = view.peaks(view.finer(rows[low:high]))
             chosen = np.zeros(high - low, np.intp)
+            placed = np.empty((high - low, view.n_points), np.complex64)
             for number in range(1, self.sequences.n_candidates):
-                turned = sent * self.sequences.of(np.full(high - low, number), symbols)
-                placed = np.zeros((high - low, view.n_points), np.complex64)
-                write_values(placed, turned, bins=bins)
+                placed[:] = 0
+                write_values(placed, sent * self.sequences.all_of(number, symbols), bins=bins)
                 peaks = view.peaks(view.inverse(placed))
                 chosen[peaks < best] = number
                 np.minimum(best, peaks, out=best)
