@@ -20,7 +20,9 @@ from wavegen.sources.noise import Noise
 from wavegen.sources.ofdm import Group, Ofdm, Pilots
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.phase_modulation import PhaseModulation
+from wavegen.sources.recording import Recording
 from wavegen.sources.rotation import Rotation
+from wavegen.sources.shaped import LevelPoint, Shaped
 from wavegen.sources.single_carrier import SingleCarrier
 from wavegen.sources.subcarriers import IndexSet, PilotValues, SymbolSet
 from wavegen.sources.tones import Notch, Tone, Tones
@@ -89,6 +91,31 @@ SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
         SourceExample(settings=Noise(bandwidth_hz=Fraction(1_000_000))),
         SourceExample(settings=Noise(bandwidth_hz=Fraction(300_000))),
         SourceExample(settings=Noise(bandwidth_hz=Fraction(300_000)), least_samples=97),
+    ),
+    "recording": (
+        SourceExample(
+            settings=Recording(
+                path=str(Path(__file__).with_name("data") / "invented-field.ci8"),
+                format="ci8",
+                sample_rate_hz=RATE_HZ,
+            ),
+            is_random=False,
+            is_exact=True,
+            least_samples=5_000,
+        ),
+    ),
+    "shaped": (
+        SourceExample(
+            settings=Shaped(
+                points=(
+                    LevelPoint(probability_percent=60, level_db=-1.0),
+                    LevelPoint(probability_percent=1, level_db=5.9),
+                    LevelPoint(probability_percent=0.1, level_db=7.2),
+                ),
+                bandwidth_hz=Fraction(300_000),
+            ),
+            least_samples=97,
+        ),
     ),
     "ofdm": (
         SourceExample(

@@ -11,5 +11,7 @@ SOURCES = Registry(
         "tones": "wavegen.sources.tones:Tones",
         "noise": "wavegen.sources.noise:Noise",
         "carrier": "wavegen.sources.carrier:Carrier",
+        "recording": "wavegen.sources.recording:Recording",
+        "shaped": "wavegen.sources.shaped:Shaped",
     },
 )
