@@ -1,0 +1,40 @@
+"""Documents that show themselves."""
+
+import pytest
+
+from wavegen.core.table import Table
+from wavegen.reports.result import Result, text_of
+
+TABLE = Table(
+    title="A <title>",
+    headings=("what", "dB"),
+    rows=(("short", "1.00"), ("<b>longer</b>", "-10.25")),
+    right=frozenset({1}),
+)
+
+
+def result():
+    return Result({"levels": [{"probability": 0.1}]}, lambda: [TABLE], lambda: ["A & B."])
+
+
+def test_it_is_its_document():
+    assert result()["levels"] == [{"probability": 0.1}]
+    assert dict(result()) == {"levels": [{"probability": 0.1}]}
+    assert len(result()) == 1
+    with pytest.raises(KeyError):
+        result()["x"]
+
+
+def test_as_text_columns_are_aligned():
+    lines = text_of(TABLE).splitlines()
+    assert lines[2].index("1.00") + 4 == lines[3].index("-10.25") + 6
+    assert str(result()).endswith("A & B.")
+    assert repr(result()) == str(result())
+
+
+def test_in_a_notebook_everything_is_escaped():
+    shown = result()._repr_html_()
+    assert "<b>" not in shown
+    assert "&lt;b&gt;longer&lt;/b&gt;" in shown
+    assert "<p>A &amp; B.</p>" in shown
+    assert shown.count("<tr>") == 3
