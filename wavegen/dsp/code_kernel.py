@@ -12,6 +12,8 @@ from functools import cache
 import numpy as np
 from numpy.typing import NDArray
 
+from wavegen.dsp.compiled import compiled, numba_types
+
 _CELL = 2048
 """Rails looked at before they are overwritten."""
 
@@ -98,13 +100,9 @@ def round_and_hold_by_numpy(
 
 @cache
 def _compile() -> Callable[..., None] | None:
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    kinds = numba.types
     signature = kinds.void(
         kinds.Array(kinds.float32, 1, "C"),
         kinds.Array(kinds.int16, 1, "C"),
@@ -112,10 +110,7 @@ def _compile() -> Callable[..., None] | None:
         kinds.int64,
         kinds.Array(kinds.int64, 1, "C"),
     )
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_round)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_round)
+    return compiled(signature, _round)
 
 
 def _round(

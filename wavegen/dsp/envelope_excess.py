@@ -14,6 +14,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
+from wavegen.dsp.compiled import compiled, numba_types
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 64 kB of power."""
@@ -132,19 +133,13 @@ def excess_by_numpy(samples: Samples, amplitude: float, *, plus: Samples | None 
 @cache
 def _compile_peaks() -> Callable[..., None] | None:
     """Return the compiled loop, or None where numba is missing or switched off."""
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    f32 = numba.types.float32
-    held = numba.types.Array(f32, 2, "C", readonly=True)
-    signature = numba.types.void(held, numba.types.Array(f32, 1, "C"))
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_peaks)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_peaks)
+    f32 = kinds.float32
+    held = kinds.Array(f32, 2, "C", readonly=True)
+    signature = kinds.void(held, kinds.Array(f32, 1, "C"))
+    return compiled(signature, _peaks)
 
 
 def _peaks(rows: NDArray[np.float32], out: NDArray[np.float32]) -> None:
@@ -165,19 +160,13 @@ def _peaks(rows: NDArray[np.float32], out: NDArray[np.float32]) -> None:
 @cache
 def _compile() -> Callable[..., None] | None:
     """Return the compiled loop, or None where numba is missing or switched off."""
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    f32 = numba.types.float32
-    held = numba.types.Array(f32, 1, "C", readonly=True)
-    signature = numba.types.void(held, held, f32, f32, numba.types.Array(f32, 1, "C"))
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_excess)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_excess)
+    f32 = kinds.float32
+    held = kinds.Array(f32, 1, "C", readonly=True)
+    signature = kinds.void(held, held, f32, f32, kinds.Array(f32, 1, "C"))
+    return compiled(signature, _excess)
 
 
 def _excess(

@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
+from wavegen.dsp.compiled import compiled, numba_types
 
 TOLERANCE_RAD = 1e-4
 """Angles closer than this are the same: tables of points are in single precision."""
@@ -138,19 +139,13 @@ def into_cones_by_numpy(moves: Samples, cones: Cones) -> Samples:
 @cache
 def _compile() -> Callable[..., None] | None:
     """Return the compiled loop, or None where numba is missing or switched off."""
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    line = numba.types.Array(numba.types.float32, 1, "C")
-    held = numba.types.Array(numba.types.float32, 1, "C", readonly=True)
-    signature = numba.types.void(held, held, line, held, held)
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_into)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_into)
+    line = kinds.Array(kinds.float32, 1, "C")
+    held = kinds.Array(kinds.float32, 1, "C", readonly=True)
+    signature = kinds.void(held, held, line, held, held)
+    return compiled(signature, _into)
 
 
 def _into(

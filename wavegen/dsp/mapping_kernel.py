@@ -13,6 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
+from wavegen.dsp.compiled import compiled, numba_types
 
 _MOST_SLICES = 40
 """Up to here NumPy fills slice by slice; beyond, one scatter is faster."""
@@ -143,13 +144,9 @@ def slices_of(bins: list[int]) -> tuple[tuple[slice, slice], ...]:
 
 @cache
 def _compile() -> Callable[..., None] | None:
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    kinds = numba.types
     signatures = [
         kinds.void(
             kinds.Array(kinds.uint64, 2, "C"),
@@ -160,10 +157,7 @@ def _compile() -> Callable[..., None] | None:
         )
         for word in (kinds.uint8, kinds.uint16)
     ]
-    try:
-        return numba.njit(signatures, nogil=True, cache=True)(_write)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signatures, nogil=True)(_write)
+    return compiled(signatures, _write)
 
 
 def _write(

@@ -20,6 +20,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
 from wavegen.dsp.cell_sums import CELL, sum_cells
+from wavegen.dsp.compiled import compiled, numba_types
 from wavegen.dsp.power_bins import BINS_PER_OCTAVE, LOWEST_OCTAVE, bin_edges
 from wavegen.dsp.power_kernel import numbered_powers
 
@@ -278,21 +279,15 @@ def compiled_kernel() -> Callable[..., bool] | None:
 
 @cache
 def _compile() -> Callable[..., bool] | None:
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    f32, u32, f64 = numba.types.float32, numba.types.uint32, numba.types.float64
-    signature = numba.types.boolean(
-        numba.types.Array(f32, 1, "C", readonly=True),
-        *(numba.types.Array(kind, 1, "C") for kind in (u32, f32, u32, u32, f64, f64, f64)),
+    f32, u32, f64 = kinds.float32, kinds.uint32, kinds.float64
+    signature = kinds.boolean(
+        kinds.Array(f32, 1, "C", readonly=True),
+        *(kinds.Array(kind, 1, "C") for kind in (u32, f32, u32, u32, f64, f64, f64)),
     )
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_count)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_count)
+    return compiled(signature, _count)
 
 
 def _count(  # noqa: PLR0912, PLR0917 - one loop: what it calls is not inlined for sure

@@ -22,6 +22,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
 from wavegen.dsp.cell_sums import CELL, sum_cells
+from wavegen.dsp.compiled import compiled, numba_types
 from wavegen.dsp.power_bins import (
     BINS_PER_OCTAVE,
     LOWEST_OCTAVE,
@@ -365,27 +366,16 @@ def compiled_kernel() -> Callable[..., None] | None:
 
 @cache
 def _compile() -> Callable[..., None] | None:
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    f32, u32 = numba.types.float32, numba.types.uint32
-    f64, i64 = numba.types.float64, numba.types.int64
-    # One explicit signature, read-only input: without it, read-only and writable arrays would
-    # each compile a version of their own.
-    signature = numba.types.void(
-        numba.types.Array(f32, 1, "C", readonly=True),
-        *(
-            numba.types.Array(kind, 1, "C")
-            for kind in (u32, u32, f32, u32, f64, f64, f64, i64, f64)
-        ),
+    f32, u32 = kinds.float32, kinds.uint32
+    f64, i64 = kinds.float64, kinds.int64
+    signature = kinds.void(
+        kinds.Array(f32, 1, "C", readonly=True),
+        *(kinds.Array(kind, 1, "C") for kind in (u32, u32, f32, u32, f64, f64, f64, i64, f64)),
     )
-    try:
-        return numba.njit(signature, nogil=True, cache=True)(_count)
-    except RuntimeError:  # no folder can be written for the cache
-        return numba.njit(signature, nogil=True)(_count)
+    return compiled(signature, _count)
 
 
 def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not inlined for sure
