@@ -27,7 +27,7 @@ import numpy as np
 import scipy.special
 from numpy.typing import NDArray
 
-from wavegen.comparison.curves import Curve
+from wavegen.comparison.curves import Curve, ExactCurve, SampledCurve
 from wavegen.core.errors import ArgumentsError
 from wavegen.meters.intervals import RESOLVING_RUNS
 
@@ -47,7 +47,8 @@ SERIES = (5.0, 2.0, 1.0)
 FINE_PER_DECADE = 40
 FOUND = 0.8
 """How often records of the length said to be needed decide one row."""
-MOST_TIMES = 1e6
+MOST_TIMES = 1e4
+"""A record so many times longer than what there is cannot be foreseen from it."""
 _SLOPE_STEP_DB = 0.1
 
 
@@ -219,6 +220,13 @@ def compare(
         resolved_to=min(resolved, default=None),
         needed=_needed(first, second, rows, tolerance_db) if verdict == "undecided" else None,
     )
+
+
+def as_recorded(curve: Curve) -> Curve:
+    """Return a recording's curve as that of these samples alone, which is exact."""
+    if not isinstance(curve, SampledCurve):
+        return curve
+    return ExactCurve(source=curve.sampled.statistics)
 
 
 def combined(

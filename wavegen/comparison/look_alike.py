@@ -9,13 +9,15 @@ import scipy.optimize
 from numpy.typing import NDArray
 
 from wavegen.comparison.curves import Curve
-from wavegen.comparison.difference import probabilities
+from wavegen.comparison.difference import CONFIDENCE, probabilities
 from wavegen.comparison.familiar import FAMILIES, Family
 
 Reals = NDArray[np.float64]
 LISTED = 5
 NEAR_DB = 0.3
-"""A law this close at every level compared is said to be what the curve looks like."""
+"""A law this close to the intervals of all levels is said to be what the curve looks like."""
+FORGIVEN_DB = 0.5
+"""No interval counts as wider: a record too short to tell anything looks like what it is."""
 FITTED_DB = 0.1
 """What a fitted number must gain over a law without one to be listed before it."""
 REFINED_DB = 1.5
@@ -24,7 +26,7 @@ PLATEAU_DB = 8.0
 """Between on and off nothing happens over a range of levels at least this wide; the power of no
 familiar law has so wide a gap above its rarest 5 %."""
 _PLATEAU_FALL = 0.03
-_LONGEST_DUTY = 0.95
+_LONGEST_DUTY = 0.9
 _SHORTEST_DUTY = 0.002
 _GRID_DB = 0.25
 _LOWEST_DB, _HIGHEST_DB = -40.0, 15.0
@@ -46,6 +48,8 @@ class LookAlike:
         Curve less law, where that is largest.
     at_probability : float
         Where.
+    excess_db : float
+        Largest distance of the law from the interval of 95 % about the curve; 0 if it is in all.
     """
 
     family: Family
@@ -53,16 +57,18 @@ class LookAlike:
     duty: float
     largest_deviation_db: float
     at_probability: float
+    excess_db: float
 
     @property
-    def rank_db(self) -> float:
-        """Largest deviation; a law with a number to fit counts as further off."""
-        return abs(self.largest_deviation_db) + FITTED_DB * bool(self.family.parameter)
+    def rank(self) -> tuple[float, float]:
+        """Largest excess, then deviation; a law with a number to fit counts as further off."""
+        fitted_db = FITTED_DB * bool(self.family.parameter)
+        return self.excess_db + fitted_db, abs(self.largest_deviation_db)
 
     @property
     def is_near(self) -> bool:
         """Whether the curve may be said to look like it."""
-        return abs(self.largest_deviation_db) <= NEAR_DB
+        return self.excess_db <= NEAR_DB
 
 
 def look_alikes(curve: Curve, *, lowest: float) -> tuple[LookAlike, ...]:
@@ -87,12 +93,18 @@ def look_alikes(curve: Curve, *, lowest: float) -> tuple[LookAlike, ...]:
         if lowest / on > 0.1:
             continue
         asked = probabilities(lowest / on)
-        level = curve.level_db(asked * on) + 10 * np.log10(on)
+        shift_db = 10 * np.log10(on)
+        level = curve.level_db(asked * on) + shift_db
         if not np.isfinite(level).all():
             continue
-        found += [_nearest(family, level, asked, on) for family in FAMILIES]
+        low, high = curve.level_interval(asked * on, confidence=CONFIDENCE)
+        reach = (
+            np.minimum(level - low - shift_db, FORGIVEN_DB),
+            np.minimum(high + shift_db - level, FORGIVEN_DB),
+        )
+        found += [_nearest(family, level, reach, asked, on) for family in FAMILIES]
     best: dict[str, LookAlike] = {}
-    for item in sorted(found, key=lambda one: one.rank_db):
+    for item in sorted(found, key=lambda one: one.rank):
         best.setdefault(item.family.name, item)
     return tuple(best.values())[:LISTED]
 
@@ -118,7 +130,9 @@ def plateau_duty(curve: Curve) -> float | None:
     return float(share[(place + last[place]) // 2])
 
 
-def _nearest(family: Family, level: Reals, asked: Reals, duty: float) -> LookAlike:
+def _nearest(
+    family: Family, level: Reals, reach: tuple[Reals, Reals], asked: Reals, duty: float
+) -> LookAlike:
     def worst(value: float) -> float:
         return float(np.max(np.abs(level - family.levels(value, asked))))
 
@@ -142,4 +156,5 @@ def _nearest(family: Family, level: Reals, asked: Reals, duty: float) -> LookAli
         duty=duty,
         largest_deviation_db=float(deviation[at]),
         at_probability=float(asked[at] * duty),
+        excess_db=float(np.maximum(deviation - reach[0], -deviation - reach[1]).max(initial=0.0)),
     )
