@@ -35,9 +35,9 @@ def test_columns_are_found_by_heading_else_by_order(tmp_path, text):
 @pytest.mark.parametrize(
     ("text", "words"),
     [
-        ("frequency_hz,phase\n1,2\n", "magnitude not"),
-        ("frequency_ghz,magnitude_db\n1,2\n", "frequency not"),
-        ("frequency_hz,f_hz,magnitude_db\n1,2,3\n", "frequency twice"),
+        ("frequency_hz,phase\n1,2\n", "no column magnitude"),
+        ("frequency_ghz,magnitude_db\n1,2\n", "no column frequency"),
+        ("frequency_hz,f_hz,magnitude_db\n1,2,3\n", "2 columns frequency"),
         ("1,2,3\n", "3 columns and no headings"),
         ("frequency_hz,magnitude_db\n1,2\n", "1 rows"),
         ("frequency_hz,magnitude_db\n1,nan\n2,3\n", ""),

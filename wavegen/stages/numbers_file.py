@@ -89,8 +89,8 @@ def _find(
         if (key := _plain(heading.name, heading.unit)) in wanted
     ]
     if len(places) != 1:
-        many = "twice" if places else "not"
-        raise fault(path, f"names the column {column.names[0]} {many}", columns)
+        count = f"{len(places)} columns" if places else "no column"
+        raise fault(path, f"has {count} {column.names[0]}", columns)
     return places[0]
 
 

@@ -16,7 +16,8 @@ from wavegen.dsp.monotone_cubic import MonotoneCubic
 from wavegen.laws.law import Law
 from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.amplifier import Amplifier, BackOffFrom, Complexes, Reals
-from wavegen.stages.drive import BackedOff, drive, driven_law, driven_term
+from wavegen.stages.drive import BackedOff, drive
+from wavegen.stages.driven_law import driven_law, driven_term
 from wavegen.stages.numbers_file import Column, fault, read_columns
 
 COLUMNS = (
