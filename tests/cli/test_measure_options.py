@@ -73,6 +73,7 @@ def test_everything_asked():
         *("--video-bandwidth", "5MHz", "--video-shape", "brick-wall", "--sensor-rate", "1MHz"),
     )
     assert settings.probabilities == (1e-5, 0.05)
+    assert not parsed("--no-faults").finds_faults
     assert settings.above[0].unit == "dB"
     assert settings.removes_offset
     assert settings.shows_rf

@@ -7,7 +7,7 @@ import pytest
 from wavegen.core.evaluate import evaluate
 from wavegen.core.render import samples_of
 from wavegen.core.signal import Signal
-from wavegen.dsp.differences import FourthDifference
+from wavegen.dsp.differences import DifferenceHeights, FourthDifference
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -53,3 +53,16 @@ def test_the_cut_changes_no_bit():
     whole = samples_of(signal)
     for low, high in ((0, 1), (1, 3), (5, 2999), (2998, 3000)):
         assert evaluate({signal: (low, high)})[signal].tobytes() == whole[low:high].tobytes()
+
+
+@pytest.mark.parametrize("loops", [False, True])
+@pytest.mark.parametrize("n", [5000, 4096, 1500])
+def test_heights_are_the_largest_of_each_cell(loops, n):
+    samples = np.random.default_rng(2).standard_normal(n)
+    samples[1200] = np.nan
+    source = held(samples)
+    power = np.abs(samples_of(FourthDifference.of(source, loops=loops))) ** 2
+    heights = DifferenceHeights.of(source, loops=loops)
+    cells = np.concatenate([power, np.zeros(-n % 1024)]).reshape(-1, 1024)
+    assert samples_of(heights).real == pytest.approx(cells.max(axis=1), rel=1e-5)
+    assert evaluate({heights: (1, 2)})[heights][0] == samples_of(heights)[1]

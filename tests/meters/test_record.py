@@ -32,13 +32,19 @@ def test_sums_codes_and_runs(held, samples, codes):
     got = look(held, samples, offset=offset, code_scale=32768.0)
     body = samples[N_HEAD:].astype(np.complex128) - offset
     real, imag = body.real, body.imag
-    want = [part.sum() for part in (np.ones(body.size), real, imag, real**2, imag**2, real * imag)]
-    assert got.cells.sum(axis=0) == pytest.approx(want, rel=1e-9)
+    want = [
+        body.size,
+        samples[N_HEAD:].real.sum(dtype=float),
+        samples[N_HEAD:].imag.sum(dtype=float),
+    ]
+    assert got.cells.sum(axis=0)[:3] == pytest.approx(want, rel=1e-9)
+    # Powers are taken in float32, which is good to 6e-8 each.
+    assert got.cells[:, 3].sum() == pytest.approx((real**2 + imag**2).sum(), rel=1e-7)
     power = np.abs(samples.astype(np.complex128)) ** 2
-    assert got.total_power == pytest.approx(power.sum(), rel=1e-9)
-    assert got.peak == pytest.approx(power.max(), rel=1e-12)
+    assert got.total_power == pytest.approx(power.sum(), rel=1e-7)
+    assert got.peak == pytest.approx(power.max(), rel=2e-7)
     assert (got.nearest, got.furthest) == pytest.approx(
-        ((np.abs(body) ** 2).min(), (np.abs(body) ** 2).max()), rel=1e-9
+        ((np.abs(body) ** 2).min(), (np.abs(body) ** 2).max()), rel=1e-6
     )
     for rail, (values, counts) in enumerate(got.rails):
         found = np.unique(codes[:, rail], return_counts=True)

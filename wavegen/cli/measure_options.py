@@ -151,6 +151,11 @@ def add_levels(parser: argparse.ArgumentParser) -> None:
     group.add_argument(
         "--remove-dc", action="store_true", help="take a DC offset off first, and say how large"
     )
+    group.add_argument(
+        "--no-faults",
+        action="store_true",
+        help="do not look for faults of a recording, which takes half of the time",
+    )
 
 
 def add_gate(parser: argparse.ArgumentParser) -> None:
@@ -269,6 +274,7 @@ def settings_of(arguments: argparse.Namespace) -> MeasureSettings:
         gate=_gate_of(arguments),
         sensor=_sensor_of(arguments),
         removes_offset=arguments.remove_dc,
+        finds_faults=not arguments.no_faults,
         shows_rf=arguments.rf,
     )
 

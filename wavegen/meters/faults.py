@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from wavegen.core.progress import Progress, silent
 from wavegen.core.render import Tap, render
 from wavegen.core.signal import Signal
+from wavegen.dsp.differences import FourthDifference
 from wavegen.files.format import Recording
 from wavegen.meters.fault import Fault, stretch_text
 from wavegen.meters.record import RecordFigures, RecordMeter
@@ -94,6 +95,8 @@ class FaultSearch:
         What up to 2048 stretches of it say.
     taps : tuple of Tap
         To be rendered; :meth:`result` takes what they read.
+    loops : bool
+        Whether the last sample is followed by the first.
     n_rails : int
         1 for a file of real samples.
     """
@@ -101,6 +104,7 @@ class FaultSearch:
     signal: Signal
     seen: Stretches
     taps: tuple[Tap, ...]
+    loops: bool
     n_rails: int
 
     @classmethod
@@ -128,6 +132,7 @@ class FaultSearch:
                 Tap(name="record", signal=signal, meter=record),
                 breaks_tap(signal, loops=loops),
             ),
+            loops=loops,
             n_rails=n_rails,
         )
 
@@ -151,7 +156,8 @@ class FaultSearch:
         noise_db, n_codes, coarse = _quantisation(figures)
         faults += [*dc, *unequal, *coarse, *level_faults(figures)]
         if read["breaks"] is not None:
-            faults += splices(self.signal, self.taps[1].signal, read["breaks"], figures)
+            breaks = FourthDifference.of(self.signal, loops=self.loops)
+            faults += splices(self.signal, breaks, read["breaks"], figures)
         return RecordCheck(
             faults=tuple(faults),
             offset=offset,
@@ -419,9 +425,8 @@ def _dc(figures: RecordFigures, seen: Stretches) -> tuple[complex, float, list[F
     n = float(total[0])
     if not n:
         return seen.offset, -math.inf, []
-    shift = complex(total[1], total[2]) / n
-    offset = seen.offset + shift
-    signal_power = float(total[3] + total[4]) / n - abs(shift) ** 2
+    offset = complex(total[1], total[2]) / n
+    signal_power = float(total[3]) / n - abs(offset - figures.offset) ** 2
     power = abs(offset) ** 2
     if not signal_power > 0:
         return offset, (math.inf if power else -math.inf), []
@@ -485,7 +490,8 @@ def _quantisation(
         return None, None, []
     codes = np.unique(np.concatenate([values for values, _ in figures.rails]))
     total = figures.cells.sum(axis=0)
-    power = float(total[3] + total[4] - (total[1] ** 2 + total[2] ** 2) / total[0]) / total[0]
+    mean = complex(total[1], total[2]) / total[0]
+    power = float(total[3]) / total[0] - abs(mean - figures.offset) ** 2
     if not power > 0:
         return None, int(codes.size), []
     step = math.gcd(*(int(code) for code in np.diff(codes))) if codes.size > 1 else 1

@@ -31,6 +31,7 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.cell_sums import CELL
+from wavegen.dsp.record_kernel import high_places
 
 POINTS_PER_SAMPLE = 16
 HALF_LENGTH = 64
@@ -273,19 +274,19 @@ def _search(samples: Samples, start: int, best: _Best, searched: float) -> _Best
         Power, over the best, from which a sample's neighbourhood is looked at.
     """
     n = samples.size - 2 * HALF_LENGTH
-    power = _power(samples[HALF_LENGTH : HALF_LENGTH + n + 1])
-    near = np.maximum(power[:-1], power[1:])
-    places = np.flatnonzero(near >= np.float32(best.power * searched))
+    inner = samples[HALF_LENGTH : HALF_LENGTH + n + 1]
+    places, near = high_places(inner, np.float32(best.power * searched))
     if not places.size:
         return best
-    rough = np.maximum(_halfway(samples, places, n), near[places])
-    places = _largest(places, rough, at_least=best.power * _COARSE, most=_MOST_COARSE)
+    rough = np.maximum(_halfway(samples, places, n), near)
+    kept = _largest(rough, at_least=best.power * _COARSE, most=_MOST_COARSE)
+    places, near = places[kept], near[kept]
     if not places.size:
         return best
     quarters = _interpolate(samples, places, range(4, POINTS_PER_SAMPLE, 4))
-    fine = np.maximum(quarters.max(axis=1), near[places])
+    fine = np.maximum(quarters.max(axis=1), near)
     floor = max(best.power, float(fine.max())) * _FINE
-    places = _largest(places, fine, at_least=floor, most=_MOST_FINE)
+    places = places[_largest(fine, at_least=floor, most=_MOST_FINE)]
     if not places.size:
         return best
     points = _interpolate(samples, places, range(1, POINTS_PER_SAMPLE))
@@ -298,10 +299,8 @@ def _power(samples: Samples) -> NDArray[np.float32]:
     return samples.real * samples.real + samples.imag * samples.imag
 
 
-def _largest(
-    places: NDArray[np.intp], values: NDArray[np.floating], *, at_least: float, most: int
-) -> NDArray[np.intp]:
-    """Return the places with the largest values, rising; of equals, the earlier."""
+def _largest(values: NDArray[np.floating], *, at_least: float, most: int) -> NDArray[np.intp]:
+    """Return the indices of the largest values, rising; of equals, the earlier."""
     chosen = np.flatnonzero(values >= at_least)
     if chosen.size > most:
         among = values[chosen]
@@ -309,7 +308,7 @@ def _largest(
         above = np.flatnonzero(among > bound)
         equal = np.flatnonzero(among == bound)[: most - above.size]
         chosen = chosen[np.sort(np.concatenate([above, equal]))]
-    return places[chosen]
+    return chosen
 
 
 def _halfway(samples: Samples, places: NDArray[np.intp], n: int) -> NDArray[np.float32]:

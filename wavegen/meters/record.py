@@ -10,20 +10,32 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples, Signal
+from wavegen.dsp.cell_sums import CELL
+from wavegen.dsp.record_kernel import (
+    FLOAT_SHIFT,
+    N_FLOAT_CODES,
+    count_codes,
+    glance,
+    longest_repeat,
+    sum_rails,
+    sum_rails_by_numpy,
+)
 
 Floats = NDArray[np.float64]
 Indices = NDArray[np.int64]
 N_HEAD = 64
 """Samples at the start that are kept, and left out of the sums: records begin with fill words
 and start-up."""
-N_SUMS = 6
+N_SUMS = 4
 FINEST_CODES = 1 << 15
 """Codes to full scale up to which each is counted; finer ones are counted by octaves."""
 _CELLS_AT_LEAST = 256
 _LONGEST_CELL = 1 << 12
 _SHORTEST_CELL = 1 << 4
-_FLOAT_SHIFT = 14
 _BLOCK = 1 << 14
+"""Samples looked at in turn: 128 kB, which stay in the cache."""
+_MOST_FRESH = 1 << 31
+"""Samples after which counts of 32 bits are added up."""
 
 
 def cell_length(n_samples: int) -> int:
@@ -55,9 +67,9 @@ class RecordFigures:
         Largest ``|x|^2``, head included.
     nearest, furthest : float
         Least and largest ``|x - offset|^2`` outside the head.
-    cells : float64 array, shape (n_cells, 6)
-        Of each cell of ``cell_samples``: count, sums of I, Q, I I, Q Q and I Q, about the offset
-        and without the head.
+    cells : float64 array, shape (n_cells, 4)
+        Of each cell of ``cell_samples``: count, sums of I, of Q and of ``|x - offset|^2``,
+        without the head.
     cell_samples : int
         Length of a cell.
     code_scale : float or None
@@ -106,13 +118,8 @@ class _Runs:
 
     @classmethod
     def of(cls, samples: Samples) -> Self:
-        n = samples.size
-        cuts = np.flatnonzero(samples[1:] != samples[:-1]) + 1
-        if not cuts.size:
-            return cls(n, complex(samples[0]), complex(samples[-1]), n, n, 0)
-        between = int(np.diff(cuts).max()) if cuts.size > 1 else 0
-        first, last = int(cuts[0]), n - int(cuts[-1])
-        return cls(n, complex(samples[0]), complex(samples[-1]), first, last, between)
+        repeats = longest_repeat(samples)
+        return cls(samples.size, complex(samples[0]), complex(samples[-1]), *repeats)
 
     def append(self, other: _Runs) -> None:
         if not self.n or not other.n:
@@ -167,7 +174,9 @@ class RecordReading:
         self._furthest = 0.0
         self._open: list[tuple[int, Samples]] = []
         self._cells: list[tuple[int, Floats]] = []
-        self._counts: list[NDArray[np.int64]] = []
+        self._counts = np.zeros((0, 0), np.int64)
+        self._fresh = np.zeros((0, 0), np.uint32)
+        self._n_fresh = 0
         self._n_fill = 0
         self._first_fill = -1
         self._runs = _Runs()
@@ -178,8 +187,18 @@ class RecordReading:
             return
         if self._start < 0:
             self._start = start
-        good = np.isfinite(samples)
-        if not good.all():
+        samples = np.asarray(samples, np.complex64)
+        low = 0
+        while low < samples.size:
+            high = min(low + _BLOCK - (start + low) % _BLOCK, samples.size)
+            self._take(start + low, samples[low:high])
+            low = high
+
+    def _take(self, start: int, samples: Samples) -> None:
+        """Take in samples of one block of the absolute grid."""
+        seen = glance(samples)
+        if seen.has_bad:
+            good = np.isfinite(samples)
             bad = np.flatnonzero(~good)
             self._n_bad += bad.size
             if self._first_bad < 0:
@@ -195,9 +214,9 @@ class RecordReading:
             power = np.abs(head.astype(np.complex128)) ** 2
             self._head_power += float(power.sum())
             self._peak = max(self._peak, float(power.max()))
-        self._fill(start, samples)
-        for first in range(0, samples.size, _BLOCK):
-            self._count(samples[first : first + _BLOCK])
+        if seen.has_lowest:
+            self._fill(start, samples)
+        self._count(samples)
         self._add(start + n_head, samples[n_head:])
 
     def merge(self, following: Self) -> None:
@@ -220,27 +239,27 @@ class RecordReading:
         self._nearest = min(self._nearest, following._nearest)
         self._furthest = max(self._furthest, following._furthest)
         self._runs.append(following._runs)
-        self._counts = (
-            [mine + its for mine, its in zip(self._counts, following._counts, strict=True)]
-            if self._counts
-            else following._counts
-        )
+        self._settle()
+        following._settle()
+        self._counts = self._counts + following._counts if self._counts.size else following._counts
+        self._fresh = self._fresh if self._fresh.size else following._fresh
         self._open.extend(following._open)
         self._cells.extend(following._cells)
         self._close()
 
     def result(self) -> RecordFigures:
         """Return what was seen."""
+        self._settle()
         self._close(everything=True)
         parts = [sums for _, sums in sorted(self._cells, key=itemgetter(0))]
         cells = np.concatenate([np.zeros((0, N_SUMS)), *parts])
         offset = self._meter.offset
         body = cells.sum(axis=0)
+        # |x|^2 = |x - o|^2 + 2 Re(x o*) - |o|^2, summed.
         body_power = float(
             body[3]
-            + body[4]
             + 2 * (offset.real * body[1] + offset.imag * body[2])
-            + abs(offset) ** 2 * body[0]
+            - abs(offset) ** 2 * body[0]
         )
         return RecordFigures(
             n_samples=self._n,
@@ -281,28 +300,27 @@ class RecordReading:
 
     def _count(self, samples: Samples) -> None:
         """Count the values of each rail."""
-        rails = (samples.real, samples.imag)[: self._meter.n_rails]
-        if not self._counts:
-            size = 2 * FINEST_CODES + 1 if self._scale else 1 << (32 - _FLOAT_SHIFT)
-            self._counts = [np.zeros(size, np.int64) for _ in rails]
-        for counts, rail in zip(self._counts, rails, strict=True):
-            if self._scale:
-                codes = rail * np.float32(self._scale)
-                np.rint(codes, out=codes)
-                codes += np.float32(FINEST_CODES)
-                if codes.min() < 0 or codes.max() > 2 * FINEST_CODES:
-                    np.clip(codes, 0, 2 * FINEST_CODES, out=codes)
-                place = codes.astype(np.int64)
-            else:
-                bits = np.ascontiguousarray(rail, np.float32).view(np.uint32)
-                place = (bits >> np.uint32(_FLOAT_SHIFT)).astype(np.int64)
-            np.add(counts, np.bincount(place, minlength=counts.size), out=counts)
+        if not self._counts.size:
+            size = 2 * FINEST_CODES + 1 if self._scale else N_FLOAT_CODES
+            self._counts = np.zeros((self._meter.n_rails, size), np.int64)
+            self._fresh = np.zeros(self._counts.shape, np.uint32)
+        count_codes(samples, self._fresh, self._scale)
+        self._n_fresh += samples.size
+        if self._n_fresh >= _MOST_FRESH:
+            self._settle()
+
+    def _settle(self) -> None:
+        """Add what was counted in 32 bits to what 64 bits hold."""
+        if self._n_fresh:
+            self._counts += self._fresh
+            self._fresh[:] = 0
+            self._n_fresh = 0
 
     def _values(self, counts: NDArray[np.int64]) -> tuple[Floats, Indices]:
         found = np.flatnonzero(counts)
         if self._scale:
             return (found - FINEST_CODES).astype(np.float64), counts[found]
-        bits = (found.astype(np.uint32) << np.uint32(_FLOAT_SHIFT)).view(np.float32)
+        bits = (found.astype(np.uint32) << np.uint32(FLOAT_SHIFT)).view(np.float32)
         order = np.argsort(bits, kind="stable")
         return bits[order].astype(np.float64), counts[found][order]
 
@@ -327,19 +345,19 @@ class RecordReading:
         self._close()
 
     def _sum(self, start: int, rows: Samples) -> None:
-        real, imag = rows.real.astype(np.float64), rows.imag.astype(np.float64)
-        self._peak = max(self._peak, float((real * real + imag * imag).max()))
-        real -= self._meter.offset.real
-        imag -= self._meter.offset.imag
-        squares = (real * real, imag * imag)
-        distance = squares[0] + squares[1]
-        self._nearest = min(self._nearest, float(distance.min()))
-        self._furthest = max(self._furthest, float(distance.max()))
-        parts = (real, imag, *squares, real * imag)
-        sums = np.empty((rows.shape[0], N_SUMS))
-        sums[:, 0] = rows.shape[1]
-        for k, part in enumerate(parts):
-            sums[:, k + 1] = part.sum(axis=1)
+        """Sum cells, shape (n_rows, length); whole ones from 1024 samples by compiled loops."""
+        n_rows, length = rows.shape
+        if length % CELL:
+            found = [sum_rails_by_numpy(row, self._meter.offset) for row in rows]
+        else:
+            found = [sum_rails(rows.reshape(-1), self._meter.offset)]
+        sums = np.empty((n_rows, N_SUMS))
+        sums[:, 0] = length
+        parts = np.concatenate([part.sums for part in found]).reshape(n_rows, -1, N_SUMS - 1)
+        sums[:, 1:] = _tree(parts)
+        self._nearest = min(self._nearest, *(part.nearest for part in found))
+        self._furthest = max(self._furthest, *(part.furthest for part in found))
+        self._peak = max(self._peak, *(part.peak for part in found))
         self._cells.append((start, sums))
 
     def _close(self, *, everything: bool = False) -> None:
@@ -359,6 +377,15 @@ class RecordReading:
                 self._sum(number * self._cell, joined[None, :])
             else:
                 self._open.extend(parts)
+
+
+def _tree(parts: Floats) -> Floats:
+    """Return sums over the middle axis, which holds some 1024-sample cells, two by two."""
+    while parts.shape[1] > 1:
+        if parts.shape[1] % 2:
+            parts = np.concatenate([parts, np.zeros_like(parts[:, :1])], axis=1)
+        parts = parts[:, 0::2] + parts[:, 1::2]
+    return parts[:, 0]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

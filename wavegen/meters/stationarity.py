@@ -13,10 +13,8 @@ from wavegen.core.evaluate import evaluate
 from wavegen.core.render import Tap
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.cell_sums import CELL
-from wavegen.dsp.differences import FourthDifference
+from wavegen.dsp.differences import DifferenceHeights
 from wavegen.meters.fault import Fault
-from wavegen.meters.power import PowerReading
-from wavegen.meters.power_statistics import PowerStatistics
 from wavegen.meters.record import RecordFigures
 
 SURE_SIGMA = 6.0
@@ -48,14 +46,15 @@ def breaks_tap(signal: Signal, *, loops: bool) -> Tap:
     Returns
     -------
     Tap
-        Its result is the power statistics of the fourth difference, None where nothing changes.
+        Its result is the largest power of the fourth difference in each cell of 1024 samples,
+        float64 array, shape (n_cells,); None where nothing changes.
     """
-    breaks = FourthDifference.of(signal, loops=loops)
+    breaks = DifferenceHeights.of(signal, loops=loops)
     return Tap(name="breaks", signal=breaks, meter=_BreakMeter())
 
 
 def batches_of(figures: RecordFigures) -> NDArray[np.float64]:
-    """Return the cells added up to 64 to 127 batches of equal count, shape (n_batches, 6)."""
+    """Return the cells added up to 64 to 127 batches of equal count, shape (n_batches, 4)."""
     cells = figures.cells[figures.cells[:, 0] > 0.5 * figures.cell_samples]
     while cells.shape[0] >= 2 * _N_BATCHES:
         cells = cells[: cells.shape[0] // 2 * 2]
@@ -68,7 +67,7 @@ def level_faults(figures: RecordFigures) -> list[Fault]:
     batches = batches_of(figures)
     if batches.shape[0] < 16:
         return []
-    power = (batches[:, 3] + batches[:, 4]) / batches[:, 0]
+    power = batches[:, 3] / batches[:, 0]
     top = float(np.quantile(power, 0.9))
     is_on = power > top / 4
     if is_on.mean() < 0.9:  # bursts: their levels are told one by one
@@ -146,11 +145,10 @@ def _step(level: NDArray[np.float64]) -> tuple[int, float, float] | None:
 def splices(
     signal: Signal,
     breaks: Signal,
-    statistics: PowerStatistics,
+    maxima: NDArray[np.float64],
     figures: RecordFigures,
 ) -> list[Fault]:
     """Find breaks of the waveform: few cells of the fourth difference far over the rest."""
-    maxima = statistics.cell_maxima
     order = np.argsort(-maxima, kind="stable")[: MOST_SPLICES * 2 + 2]
     ranked = maxima[order]
     if maxima.size < 4 * MOST_SPLICES:
@@ -161,7 +159,7 @@ def splices(
         return []
     places: list[int] = []
     for cell in np.sort(order[:n_high]).tolist():
-        start = max((statistics.start // CELL + cell) * CELL, statistics.start)
+        start = cell * CELL
         stop = min(start + CELL, signal.n_samples)
         power = np.abs(evaluate({breaks: (start, stop)})[breaks]) ** 2
         place = start + int(np.argmax(power))
@@ -222,19 +220,20 @@ class _BreakMeter:
 
 
 class _Breaks:
-    """A power reading whose result is None where there is no power."""
+    """Heights of the fourth difference, cell by cell."""
 
     def __init__(self) -> None:
-        self._power = PowerReading("fourth difference")
+        self._parts: list[NDArray[np.float32]] = []
 
     def feed(self, start: int, samples: Samples) -> None:
-        """Take in samples whose first has index ``start``."""
-        self._power.feed(start, samples)
+        """Take in the heights of cells whose first has index ``start``."""
+        self._parts.append(samples.real.copy())
 
     def merge(self, following: Self) -> None:
         """Append the reading of the stretch that starts where this one ends."""
-        self._power.merge(following._power)
+        self._parts.extend(following._parts)
 
-    def result(self) -> PowerStatistics | None:
-        """Return the statistics."""
-        return self._power.result() if self._power.peak > 0 else None
+    def result(self) -> NDArray[np.float64] | None:
+        """Return the heights; None where nothing changes."""
+        heights = np.concatenate(self._parts).astype(np.float64)
+        return heights if heights.max() > 0 else None

@@ -53,7 +53,7 @@ class Stretches:
 
 
 def look_at_stretches(signal: Signal) -> Stretches:
-    """Transform up to 2048 stretches of 512 samples, spread evenly over a record.
+    """Transform up to 2048 stretches of 512 samples, in 128 places spread evenly over a record.
 
     Parameters
     ----------
@@ -117,17 +117,15 @@ def look_at_stretches(signal: Signal) -> Stretches:
 
 def _rows(signal: Signal, count: int, length: int) -> list[NDArray[np.complex128]]:
     """Return groups of stretches, shape (n, length); those that are not finite are left out."""
+    n_groups = -(-count // _ROWS_TOGETHER)
     n_places = signal.n_samples // length
-    starts = [place * n_places // count * length for place in range(count)]
     groups = []
-    for first in range(0, count, _ROWS_TOGETHER):
-        group = starts[first : first + _ROWS_TOGETHER]
-        if group[-1] + length - group[0] == len(group) * length:  # side by side
-            rows = evaluate({signal: (group[0], group[-1] + length)})[signal].reshape(-1, length)
-        else:
-            rows = np.stack(
-                [evaluate({signal: (start, start + length)})[signal] for start in group]
-            )
+    for group in range(n_groups):
+        # Side by side within a group: one read of the file each.
+        first = group * n_places // n_groups
+        last = min(first + _ROWS_TOGETHER, (group + 1) * n_places // n_groups)
+        span = (first * length, last * length)
+        rows = evaluate({signal: span})[signal].reshape(-1, length)
         rows = rows[np.isfinite(rows).all(axis=1)]
         if rows.size:
             groups.append(rows.astype(np.complex128))
