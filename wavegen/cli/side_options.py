@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.measure_options import add_gate, add_part, settings_of
+from wavegen.cli.measure_options import add_gate, add_levels, add_part, add_sensor, settings_of
 from wavegen.cli.options import (
     add_overrides,
     add_reading,
@@ -20,10 +20,6 @@ from wavegen.core.errors import ArgumentsError
 if TYPE_CHECKING:
     from wavegen.comparison.sides import SideSettings
     from wavegen.production.measure_settings import GateSettings
-
-
-_OTHER_SETTINGS = ("video_bandwidth", "video_shape", "sensor_rate")
-"""What a measurement can be asked for besides, and a comparison cannot."""
 
 
 def count(text: str) -> int:
@@ -158,9 +154,11 @@ def side_of(arguments: argparse.Namespace, side: str, subject: str) -> SideSetti
 
 
 def _gate_of(mine: argparse.Namespace) -> GateSettings | None:
-    nothing_else: dict[str, Any] = dict.fromkeys(_OTHER_SETTINGS)
-    nothing_else |= {"at": [], "above": [], "rf": False}
-    return settings_of(argparse.Namespace(**nothing_else, **vars(mine))).gate
+    """Return the gate, as a measurement that is asked for nothing else reads it."""
+    plain = argparse.ArgumentParser(add_help=False)
+    for declare in (add_levels, add_gate, add_sensor):
+        declare(plain)
+    return settings_of(argparse.Namespace(**vars(plain.parse_args([])) | vars(mine))).gate
 
 
 def refuse_stray_overrides(
