@@ -273,6 +273,19 @@ SOURCE_EXAMPLES: dict[str, tuple[SourceExample, ...]] = {
         ),
         SourceExample(
             settings=Tones(
+                phases="optimised",
+                tones=(
+                    Tone(frequency_offset_hz=Fraction(-123_400), phase_deg=10.0),
+                    Tone(frequency_offset_hz=Fraction(-100_000), level_db=-3.0),
+                    Tone(frequency_offset_hz=Fraction(5_000)),
+                    Tone(frequency_offset_hz=Fraction(60_000)),
+                ),
+            ),
+            is_random=False,
+            is_exact=True,
+        ),
+        SourceExample(
+            settings=Tones(
                 tones=(
                     Tone(frequency_offset_hz=Fraction(-123_400), phase_deg=10.0),
                     Tone(frequency_offset_hz=Fraction(77_700), level_db=-6.0, phase_deg=0.0),
