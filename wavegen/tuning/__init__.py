@@ -1,0 +1,1 @@
+"""The walk of `tune`: recipe and limits, search, tuned recipe."""
