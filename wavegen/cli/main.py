@@ -30,6 +30,7 @@ VERBS = Registry(
         "predict": "wavegen.cli.predict:Predict",
         "measure": "wavegen.cli.measure:Measure",
         "fidelity": "wavegen.cli.fidelity:Fidelity",
+        "tune": "wavegen.cli.tune:Tune",
         "match": "wavegen.cli.match:Match",
         "check": "wavegen.cli.check:Check",
         "show": "wavegen.cli.show:Show",
