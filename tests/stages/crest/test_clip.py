@@ -1,4 +1,5 @@
 import math
+import re
 from fractions import Fraction
 
 import numpy as np
@@ -202,3 +203,16 @@ def test_of_a_gated_signal_the_ceiling_is_over_the_on_time(duration):
     before = np.abs(samples_of(gated))[bursts.is_on(0, duration)] ** 2
     assert on.mean() == pytest.approx(before.mean(), rel=0.01)
     assert not power[20_000:60_000].any()
+
+
+def test_the_error_told_is_that_of_the_waveform_beside_the_gaussian_one(bench):
+    """2e5 samples: the clips of 2 % of them are counted to 2 %, their error to half of that."""
+    source, site = bench.gaussian(200_000), bench.site(200_000)
+    signal = Clip(ceiling_db=6.0).build(site, source)
+    x, y = (samples_of(each).astype(np.complex128) for each in (source, signal))
+    gain = np.vdot(x, y) / np.vdot(x, x)
+    error = 100 * np.sqrt(np.mean(np.abs(y / gain - x) ** 2) / np.mean(np.abs(x) ** 2))
+    text = site.notes[-1].text
+    told, gaussian = map(float, re.findall(r"([0-9.]+) %", text)[-2:])
+    assert told == pytest.approx(error, abs=0.006)
+    assert told == pytest.approx(gaussian, rel=0.03)

@@ -12,6 +12,7 @@ from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
+from wavegen.dsp.clipped_gaussian import clip_gaussian
 from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
 from wavegen.laws.mapped import clip_law
@@ -37,12 +38,21 @@ class ClipLevel:
         Mean power before and after clipping at ``power``, before anything is scaled back.
     share_clipped : float
         Fraction of samples above ``power``.
+    gain : float
+        Amplitude of the input in the output before anything is scaled back, least squares.
     """
 
     power: float
     input_mean: float
     output_mean: float
     share_clipped: float
+    gain: float
+
+    @property
+    def fitted_error(self) -> float:
+        """RMS error of the waveform, the gain fitted, over RMS of the input."""
+        left = self.output_mean / self.input_mean - self.gain**2
+        return math.sqrt(max(left, 0.0)) / self.gain
 
 
 def find_clip_level(pilot: list[NDArray[np.float32]], ceiling: float) -> ClipLevel | None:
@@ -80,11 +90,25 @@ def find_clip_level(pilot: list[NDArray[np.float32]], ceiling: float) -> ClipLev
         excess = power - ceiling * after
         slope = 1 - ceiling * share
         if excess <= 1e-7 * power:
-            return ClipLevel(power=power, input_mean=mean, output_mean=after, share_clipped=share)
+            kept = [_kept(piece, limit) for piece in pilot]
+            return ClipLevel(
+                power=power,
+                input_mean=mean,
+                output_mean=after,
+                share_clipped=share,
+                gain=math.fsum(kept) / count / mean,
+            )
         step = excess / slope if slope > 0 else power
         if step >= power * (1 - 1e-12):
             return None
         power -= step
+
+
+def _kept(power: NDArray[np.float32], limit: np.float32) -> float:
+    """Return the sum of products of input and output: ``p`` below the limit, else ``A sqrt p``."""
+    above = power[power > limit].astype(np.float64)
+    whole = float(power.sum(dtype=np.float64))
+    return whole - math.fsum((float(above.sum()), -math.sqrt(limit) * float(np.sqrt(above).sum())))
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -153,7 +177,8 @@ class Clip:
         ----------
         site : Site
             Where it is built. Told the clip ratio over the mean of the input, the change of
-            mean power that is undone, and the share of samples clipped.
+            mean power that is undone, the share of samples clipped, and the error beside that of
+            a clipped complex Gaussian signal.
         source : Signal
             What is clipped. Its period is read here (up to 2^22 samples whole, else 64
             stretches of 2^16) to find the clip amplitude.
@@ -203,7 +228,9 @@ class Clip:
             site,
             f"clips at {ratio_db:.3f} dB over the mean of its input, found on {origin}: "
             f"{level.share_clipped:.3%} of the samples; "
-            f"the change of mean power, {change_db:.4f} dB, is undone",
+            f"the change of mean power, {change_db:.4f} dB, is undone; error of the waveform, the "
+            f"gain fitted, {100 * level.fitted_error:.2f} %, of a complex Gaussian one "
+            f"{100 * clip_gaussian(level.power / level.input_mean).fitted_error:.2f} %",
         )
         return Clipped(
             sample_rate_hz=source.sample_rate_hz,
