@@ -70,6 +70,7 @@ def test_everything_asked():
         *("--at", "1e-5", "--at", "5%", "--above", "3dB", "--rf", "--remove-dc", "--gate", "auto"),
         *("--threshold=-10dB", "--hysteresis", "2dB", "--dead-time", "1us", "--guard", "2us"),
         *("--shortest-burst", "3us", "--gate-window", "4us", "--bursts", "each"),
+        *("--edges", "crossing"),
         *("--video-bandwidth", "5MHz", "--video-shape", "brick-wall", "--sensor-rate", "1MHz"),
     )
     assert settings.probabilities == (1e-5, 0.05)
@@ -79,6 +80,7 @@ def test_everything_asked():
     assert settings.shows_rf
     gate = settings.gate
     assert (gate.by, gate.threshold_db, gate.hysteresis_db, gate.each) == ("level", -10, 2, True)
+    assert gate.edges == "crossing"
     times = (gate.dead_time, gate.guard, gate.shortest, gate.window)
     assert [str(item) for item in times] == ["1 us", "2 us", "3 us", "4 us"]
     assert settings.sensor.shape == "brick_wall"

@@ -201,6 +201,11 @@ def add_gate(parser: argparse.ArgumentParser) -> None:
         "samples, the first that tells on from off)",
     )
     group.add_argument(
+        "--edges",
+        choices=("moved", "crossing"),
+        help="auto: moved inwards for what the window adds (default), or where it crosses",
+    )
+    group.add_argument(
         "--guard",
         type=span,
         metavar="TIME",
@@ -247,6 +252,7 @@ _NEEDS = {
     "dead_time": ("--gate auto", "auto"),
     "shortest_burst": ("--gate auto", "auto"),
     "gate_window": ("--gate auto", "auto"),
+    "edges": ("--gate auto", "auto"),
     "marker": ("--gate markers", "markers"),
     "slot": ("--gate with a pattern", "pattern"),
     "gate_delay": ("--gate with a pattern", "pattern"),
@@ -300,6 +306,7 @@ def _gate_of(arguments: argparse.Namespace) -> GateSettings | None:
         window=arguments.gate_window,
         threshold_db=arguments.threshold,
         hysteresis_db=arguments.hysteresis,
+        edges=arguments.edges or "moved",
         dead_time=arguments.dead_time,
         shortest=arguments.shortest_burst,
         guard=arguments.guard,

@@ -41,6 +41,8 @@ class GateSettings:
         As in :class:`wavegen.meters.burst_search.BurstSearch`; the guard holds for all three.
     threshold_db, hysteresis_db : float or None
         As there.
+    edges : {"moved", "crossing"}
+        As there.
     label : str
         Of the markers that count; all if empty.
     pattern : str
@@ -57,6 +59,7 @@ class GateSettings:
     window: TimeSpan | None = None
     threshold_db: float | None = None
     hysteresis_db: float | None = None
+    edges: Literal["moved", "crossing"] = "moved"
     dead_time: TimeSpan | None = None
     shortest: TimeSpan | None = None
     guard: TimeSpan | None = None

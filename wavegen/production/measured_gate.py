@@ -101,6 +101,7 @@ def find_gate(
         dead_time_samples=rounded_samples(gate.dead_time, rate_hz, "--dead-time"),
         shortest_samples=rounded_samples(gate.shortest, rate_hz, "--shortest-burst"),
         guard_samples=guard,
+        edges=gate.edges,
     )
     return find_bursts(
         signal,
