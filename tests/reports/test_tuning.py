@@ -37,9 +37,21 @@ DOCUMENT = {
     "confirmation": CONFIRMED,
     "device": None,
     "methods": [
-        {"method": "clip_filter", "state": "kept", "best": BEST, "reason": ""},
-        {"method": "clip", "state": "missed", "best": {**BEFORE, "method": "clip"}, "reason": ""},
-        {"method": "tone_reservation", "state": "unsuited", "best": None, "reason": "no tones"},
+        {"method": "clip_filter", "state": "kept", "best": BEST, "reason": "", "is_cut": True},
+        {
+            "method": "clip",
+            "state": "missed",
+            "best": {**BEFORE, "method": "clip"},
+            "reason": "",
+            "is_cut": False,
+        },
+        {
+            "method": "tone_reservation",
+            "state": "unsuited",
+            "best": None,
+            "reason": "no tones",
+            "is_cut": False,
+        },
     ],
 }
 
@@ -49,7 +61,7 @@ def test_one_row_a_method_and_one_before():
     assert "0.01 %" in table.title
     assert [row[0] for row in table.rows] == [
         "as it is",
-        "clip filter: ceiling 5.625 dB, rounds 16",
+        "clip filter (cut short): ceiling 5.625 dB, rounds 16",
         "clip (not kept)",
     ]
     assert table.rows[1][1:] == ("5.68", "7.86", "69.5", "-0.02", "16", "3.98")
@@ -75,6 +87,7 @@ def test_what_is_said_of_the_best():
     said = " ".join(outcome_words(DOCUMENT))
     assert "5.68 dB instead of 9.66 dB" in said
     assert "0.02 dB below" in said
+    assert "goes on from here" in said
     assert "Confirmed on other data (4 seeds" in said
     assert "(5.66 to open)" in said
 

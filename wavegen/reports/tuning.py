@@ -37,7 +37,7 @@ def method_table(document: dict[str, Any], *, title: str) -> Table:
 
 
 def _name(item: dict[str, Any]) -> str:
-    mark = _MARKS[item["state"]]
+    mark = _MARKS[item["state"]] or ("cut short" if item["is_cut"] else "")
     name: str = item["method"].replace("_", " ")
     return f"{name} ({mark})" if mark else name
 
@@ -83,6 +83,11 @@ def outcome_words(document: dict[str, Any]) -> list[str]:
     if best is None:
         return [*said, *_infeasible(document)]
     said.append(_best_words(document, best))
+    if any(item["is_cut"] for item in document["methods"]):
+        said.append(
+            "The time was over before all settings were searched (cut short, unfinished): with "
+            "more --seconds and --overwrite the same command goes on from here."
+        )
     if document["reference"] is not None and best["over_bound_db"] is not None:
         reference = document["reference"]
         rounds = reference["settings"].get("rounds")

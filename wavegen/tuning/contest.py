@@ -160,7 +160,7 @@ class Contest:
             return MethodResult(kind=kind, state="unsuited", reason=space)
         best = self.trials.best(kind, guard_db=self.goal.guard_db) or self.trials.best(kind)
         if best is not None:
-            return MethodResult(kind=kind, state="kept", best=best)
+            return MethodResult(kind=kind, state="kept", best=best, is_cut=is_cut)
         tried = self.trials.of(kind)
         made = [item for item in tried if not item.fault]
         if tried and not made:
@@ -169,6 +169,7 @@ class Contest:
             kind=kind,
             state="unfinished" if is_cut else "missed",
             best=min(made, key=self.trials.limits.shortage_db, default=None),
+            is_cut=is_cut,
         )
 
 

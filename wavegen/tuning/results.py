@@ -32,12 +32,15 @@ class MethodResult:
         Of least cost, else nearest to the limits.
     reason : str
         Why it is unsuited.
+    is_cut : bool
+        Whether the time was over before all its settings were searched.
     """
 
     kind: str
     state: State
     best: Evaluation | None = None
     reason: str = ""
+    is_cut: bool = False
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -165,6 +168,7 @@ class Tuned:
             "method": item.kind,
             "state": item.state,
             "reason": item.reason,
+            "is_cut": item.is_cut,
             "best": None if item.best is None else self.row(item.best),
         }
 
