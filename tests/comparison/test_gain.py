@@ -4,6 +4,7 @@ import pytest
 from wavegen.comparison.curves import ExactCurve
 from wavegen.comparison.gain import (
     GainPoints,
+    SmallSignal,
     compression,
     fit_rapp,
     gain_points,
@@ -11,11 +12,6 @@ from wavegen.comparison.gain import (
     small_signal,
 )
 from wavegen.meters.power import measure_samples
-
-
-def rapp(samples, smoothness=2.0, saturation=1.0):
-    ratio = np.abs(samples) / saturation
-    return (samples / (1 + ratio ** (2 * smoothness)) ** (0.5 / smoothness)).astype(np.complex64)
 
 
 def rapp_gain_db(input_db, smoothness=2.0):
@@ -40,7 +36,7 @@ def driven(noise):
     return driven
 
 
-def test_a_loop_through_a_device_is_exact(driven):
+def test_a_loop_through_a_device_is_exact(driven, rapp):
     samples = driven(1 << 17, 9.0)
     source, mean_db = loop(samples)
     output, _ = loop(rapp(samples))
@@ -57,7 +53,7 @@ def test_a_loop_through_a_device_is_exact(driven):
     assert point.output_db == pytest.approx(point.input_db - 1, abs=0.02)
 
 
-def test_different_captures_have_intervals_that_hold(driven, on_scale):
+def test_different_captures_have_intervals_that_hold(driven, on_scale, rapp):
     """Twenty pairs of 2^16 samples: 95 % intervals, so a mean share within 0.90 to 1.
 
     A P1dB interval that misses in three or more of twenty has a chance of 7.5 %; four, 1.6 %.
@@ -95,7 +91,7 @@ def test_expansion_is_no_compression(driven):
     assert compression(found, small_signal(found, mean_db=mean_db), fall_db=1.0) is None
 
 
-def test_a_rapp_curve_is_found_again(driven):
+def test_a_rapp_curve_is_found_again(driven, rapp):
     samples = driven(1 << 17, 6.0)
     source, mean_db = loop(samples)
     output, _ = loop(3 * rapp(samples, smoothness=3.0))
@@ -135,3 +131,17 @@ def test_a_fall_at_the_last_point_leaves_the_upper_end_open():
     assert point.input_db == pytest.approx(8.7, abs=0.05)
     assert point.high_db == np.inf
     assert point.low_db < 8.2
+
+
+def test_a_fall_below_the_first_point_leaves_the_lower_end_open():
+    level = np.arange(0.0, 10.0)
+    gain = -0.3 * level
+    found = GainPoints(
+        probability=np.logspace(-0.5, -4, 10),
+        input_db=level,
+        output_db=level + gain,
+        low_db=gain - 0.1,
+        high_db=gain + 0.1,
+    )
+    point = compression(found, SmallSignal(gain_db=2.0, error_db=0.0), fall_db=1.0)
+    assert (point.low_db, point.input_db) == (-np.inf, 0)

@@ -78,7 +78,7 @@ class Compression:
     input_db, output_db : float
         There, on the scales of the sides.
     low_db, high_db : float
-        Between these lies the input level; infinite where the data end first.
+        Between these lies the input level; infinite where the data begin or end first.
     """
 
     fall_db: float
@@ -232,12 +232,13 @@ def compression(points: GainPoints, small: SmallSignal, *, fall_db: float) -> Co
     up = points.gain_db + np.hypot(points.high_db - points.gain_db, small.error_db)
     down = points.gain_db - np.hypot(points.gain_db - points.low_db, small.error_db)
     low = _crossing(points.input_db, down, wanted)
+    is_below = down[0] <= wanted  # it lies under the lowest point
     high = _crossing(points.input_db, up, wanted)
     return Compression(
         fall_db=fall_db,
         input_db=level,
         output_db=level + wanted,
-        low_db=level if low is None else min(low, level),
+        low_db=-np.inf if is_below or low is None else min(low, level),
         high_db=np.inf if high is None else max(high, level),
     )
 

@@ -14,7 +14,7 @@ _LISTED_LOOKS = 3
 
 def match_tables(document: dict[str, Any]) -> list[Table]:
     """Return the tables of a match, in the order of reading."""
-    found = [_sides(document, ("stimulus", "field")), _levels(document)]
+    found = [sides_table(document, ("stimulus", "field")), _levels(document)]
     if document["looks_like"]:
         found.append(_looks(document))
     return found
@@ -76,7 +76,8 @@ def _plain(value: float) -> str:
     return f"{round(value, 2) + 0.0:+.2f}"
 
 
-def _sides(document: dict[str, Any], names: tuple[str, str]) -> Table:
+def sides_table(document: dict[str, Any], names: tuple[str, str]) -> Table:
+    """Return both sides of a comparison, one a row."""
     rows = [(side_name, *_side_row(document[side_name])) for side_name in names]
     return Table(title="Compared", headings=("side", "name", "is", "mean"), rows=tuple(rows))
 
