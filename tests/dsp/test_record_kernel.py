@@ -130,6 +130,16 @@ def test_sums(rng, n_cells):
     assert found.furthest == pytest.approx(far.max(), rel=1e-6)
 
 
+@pytest.mark.parametrize("scale", [1e-25, 1e25])
+def test_sums_on_any_scale(rng, scale):
+    samples = (noise(rng, 2 * CELL) * np.float32(scale)).astype(np.complex64)
+    found, twin = kernel.sum_rails(samples, 0j), kernel.sum_rails_by_numpy(samples, 0j)
+    np.testing.assert_array_equal(found.sums, twin.sums)
+    power = np.abs(samples.astype(np.complex128)) ** 2
+    np.testing.assert_allclose(found.sums[:, 2], power.reshape(2, -1).sum(axis=1), rtol=1e-9)
+    assert found.peak == pytest.approx(power.max(), rel=1e-9)
+
+
 @pytest.mark.parametrize("n", SIZES)
 def test_how_high_the_fourth_difference_stands(rng, n):
     samples = noise(rng, n + 4)

@@ -26,6 +26,7 @@ _INFINITE = 0x7F800000
 _MINUS_INFINITE = 0xFF800000
 _LOWEST = 0xBF800000
 """Float32 bits of infinity, minus infinity and -1."""
+_LEAST_PLAIN, _ABOVE_PLAIN = 2.0**-80, 2.0**80
 _SHORTEST = 64
 """Fewer samples are not worth a call of a compiled loop."""
 
@@ -177,13 +178,36 @@ def sum_rails(samples: Samples, offset: complex) -> RailSums:
         work.power, work.power.view(np.uint32), work.far, work.far.view(np.uint32), work.wide,
     )  # fmt: skip
     nearest, furthest, peak = extremes.tolist()
+    if not _is_plain(peak, samples):
+        return _sum_wide(samples, offset)
     return RailSums(sums=sums, nearest=nearest, furthest=furthest, peak=peak)
 
 
 def sum_rails_by_numpy(samples: Samples, offset: complex) -> RailSums:
     """Do as :func:`sum_rails` in plain NumPy."""
-    power, far = _power(samples), _power(samples - np.complex64(offset))
+    with np.errstate(over="ignore", under="ignore"):
+        power, far = _power(samples), _power(samples - np.complex64(offset))
+    if not _is_plain(float(power.max()), samples):
+        return _sum_wide(samples, offset)
     parts = (samples.real, samples.imag, far)
+    return RailSums(
+        sums=np.stack([sum_cells(part) for part in parts], axis=1),
+        nearest=float(far.min()),
+        furthest=float(far.max()),
+        peak=float(power.max()),
+    )
+
+
+def _is_plain(peak: float, samples: Samples) -> bool:
+    """Return whether float32 holds the powers; of silence it does."""
+    return _LEAST_PLAIN < peak < _ABOVE_PLAIN or (peak == 0 and not samples.any())
+
+
+def _sum_wide(samples: Samples, offset: complex) -> RailSums:
+    """Do as :func:`sum_rails` with powers in float64, for samples on an odd scale."""
+    wide = samples.astype(np.complex128)
+    power, far = (part.real**2 + part.imag**2 for part in (wide, wide - offset))
+    parts = (wide.real, wide.imag, far)
     return RailSums(
         sums=np.stack([sum_cells(part) for part in parts], axis=1),
         nearest=float(far.min()),
