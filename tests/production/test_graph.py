@@ -3,6 +3,7 @@ import pytest
 
 from wavegen.core.errors import RecipeError
 from wavegen.core.render import samples_of
+from wavegen.meters.evm_probe import measure_evm
 from wavegen.production.graph import check_names, shortest_cycle
 from wavegen.production.prepare import prepare
 
@@ -133,3 +134,45 @@ def test_prepare_resolves_errors_to_the_line(lab):
     with pytest.raises(RecipeError) as caught:
         prepare(lab.load(text))
     assert caught.value.where.startswith("case.yaml:3:")
+
+
+OFDM = (
+    "{kind: ofdm, subcarrier_spacing: 15.625 kHz, cyclic_prefix: 1/16, "
+    'groups: [{subcarriers: "-20..-1, 1..20", constellation: qpsk}]}'
+)
+
+
+def test_methods_on_symbols_act_inside_a_sum_under_the_stages_of_their_part(lab):
+    stage = "stages: [{kind: selected_mapping, candidates: 4}]"
+    first, second = (
+        lab.prepared(
+            lab.HEAD
+            + parts(
+                f"name: a, frequency_offset: 703.125 kHz, signal: {OFDM}{more}",
+                "signal: {kind: carrier}",
+            )
+        ).built
+        for more in ("", f", {stage}")
+    )
+    assert not np.array_equal(*(samples_of(each.parts[0].signal) for each in (first, second)))
+    (result,) = measure_evm(second.signal)
+    assert result.path == "parts[0]"
+    assert result.percent < 0.01  # the carrier is orthogonal: 45 spacings away
+
+
+@pytest.mark.parametrize(
+    ("text", "word"),
+    [
+        (parts(f"signal: {OFDM}", "signal: {kind: carrier}"), "a sum"),
+        (f"signal: {OFDM}\n", "changed the waveform"),
+        ("signal: {kind: carrier}\n", "has none"),
+    ],
+)
+def test_methods_on_symbols_are_refused_elsewhere_at_their_line(lab, text, word):
+    before = "{kind: clip, ceiling: 5 dB}, " if "changed" in word else ""
+    stages = f"stages: [{before}{{kind: constellation_extension, ceiling: 6 dB}}]\n"
+    with pytest.raises(RecipeError) as caught:
+        lab.prepared(lab.HEAD + text + stages)
+    assert f"stages[{int(bool(before))}].kind" in caught.value.where
+    assert "case.yaml:" in caught.value.where
+    assert word in caught.value.problem

@@ -4,8 +4,8 @@ The dual problem is solved by accelerated proximal steps (:mod:`wavegen.dsp.dual
 its sources). One ceiling for the whole signal is the right problem: of all signals that differ from
 the source inside its bands only and keep below that ceiling this one has the least error. OFDM is
 projected symbol by symbol, on its own subcarriers, before prefix and window; any other waveform as
-a stream. A last step makes the ceiling hold: on symbols a few steps down what is still above
-(:mod:`wavegen.dsp.peak_descent`), on streams a smooth gain.
+a stream. A last step makes the ceiling hold: a gain for each symbol (0.1 dB at most after 20
+rounds, which adds 0.3 % to the error), a smooth one on streams.
 """
 
 from __future__ import annotations
@@ -24,14 +24,10 @@ from wavegen.core.symbol_bodies import HasBodies
 from wavegen.core.units import QuantityError
 from wavegen.dsp.dual_projection import correcting_lines, hold_below, project
 from wavegen.dsp.mapping_kernel import read_values
-from wavegen.dsp.peak_descent import descend
 from wavegen.stages.in_band import InBand, Method, reduce_in_band
 from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
 from wavegen.stages.symbol_bodies import Reworked, reduce_symbols, symbols_of
-
-LAST_STEPS = 2
-"""Steps that bring down what the rounds leave above: to 0.001 dB after 20 rounds."""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -63,27 +59,18 @@ class ProjectedSymbols(Reworked):
         return made
 
     def rework(self, rows: Samples, first: int) -> Samples:
-        """Project; then go down what is left, and hold each symbol below the ceiling."""
-        view, bins = self.view, self.view.bins(self.indices)
+        """Project; then lower each symbol by what the rounds have left above the ceiling."""
+        view = self.view
         points = view.finer(rows)
         frame = np.arange(first, first + rows.shape[0]) % self.on.shape[0]
-        every = self.on.all()
         lines = correcting_lines(
             points,
-            response=self._responses[0] if every else self._responses[frame],
+            response=self._responses[0] if self.on.all() else self._responses[frame],
             amplitude=self.amplitude,
             n_rounds=self.n_rounds,
         )
-        change = read_values(lines, bins=bins)
+        change = read_values(lines, bins=view.bins(self.indices))
         points += view.inverse(lines)
-        on = self.on[frame]
-        change += descend(
-            points,
-            bins=bins,
-            amplitude=self.amplitude,
-            n_rounds=LAST_STEPS,
-            rule=None if every else lambda moves: np.multiply(moves, on),
-        )
         made = view.samples(change, self.indices)
         made += rows
         highest = np.maximum(view.peaks(points), np.float32(self.amplitude**2))
