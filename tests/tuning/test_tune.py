@@ -1,14 +1,19 @@
 """The walk: a small cell tuned, gone on with, shortened, on fixed data."""
 
 import json
+from types import SimpleNamespace
 
 import pytest
 
 from wavegen.core.errors import ArgumentsError, FileError, RecipeError
 from wavegen.recipe.load import load_recipe, load_text
+from wavegen.tuning.confirm import Confirmation, Interval
+from wavegen.tuning.contest import Contest
 from wavegen.tuning.limits import Limits
 from wavegen.tuning.request import TuneRequest
-from wavegen.tuning.tune import LONGEST_SAMPLES, refuse_existing, shortened, tune
+from wavegen.tuning.search import Goal
+from wavegen.tuning.space import space_of
+from wavegen.tuning.tune import LONGEST_SAMPLES, confirmed, refuse_existing, shortened, tune
 
 REQUEST = TuneRequest(
     limits=Limits(evm_percent=8.0), probability=1e-2, methods=("clip_filter",), seconds=30.0
@@ -169,3 +174,53 @@ def test_what_is_refused(done, tmp_path):
     with pytest.raises(RecipeError) as refused:
         tune(broken, REQUEST, out=tmp_path)
     assert "--set" in refused.value.where or "cell.yaml" in refused.value.where
+
+
+def confirmation(margin):
+    around = Interval(mean=margin, low=margin - 0.3, high=margin + 0.3)
+    verdict = "confirmed" if around.low >= 0 else "undecided"
+    return Confirmation(
+        verdict=verdict, seeds=(1,), level_db=around, evm_percent=around, margin_db=around,
+        aclr_db=None,
+    )  # fmt: skip
+
+
+def test_more_margin_is_taken_in_hand_until_other_data_confirm(begun, made):
+    trials, _ = begun()
+    contest = Contest(
+        trials=trials,
+        spaces={"clip_filter": space_of("clip_filter", None, band_hz=1e6, highest_db=11.0)},
+        goal=Goal(),
+    )
+    (result,) = contest.run(made.evaluation(level_db=9.5, percent=0.0), share=1.0)
+    first = trials.limits.margin_db(result.best)
+    shop = SimpleNamespace(
+        confirm=lambda best, _stage: confirmation(trials.limits.margin_db(best) - 0.2),
+        request=SimpleNamespace(limits=trials.limits, seconds=100.0),
+    )
+    best, found = confirmed(shop, None, contest, result.best)
+    assert found.verdict == "confirmed"
+    # 0.2 dB are lost on other data and the interval reaches 0.3 dB lower
+    assert 0.5 <= trials.limits.margin_db(best) <= 0.5 + 0.02 + 0.11
+    assert first < 0.2
+
+
+def test_behind_an_amplifier_less_drive_does_it(begun, made):
+    trials, _ = begun()
+    asked = []
+
+    def repeat(lower, _stage):
+        asked.append(lower.input_dbm)
+        return lower, None
+
+    best = made.evaluation(input_dbm=-5.0, output_dbm=24.0)
+    shop = SimpleNamespace(
+        confirm=lambda best, _stage: confirmation(-5.0 - best.input_dbm),
+        request=SimpleNamespace(limits=trials.limits, seconds=100.0),
+    )
+    contest = SimpleNamespace(stage_of=lambda _: None)
+    best, found = confirmed(shop, SimpleNamespace(repeat=repeat), contest, best)
+    assert asked[0] == pytest.approx(-5.16)
+    assert len(asked) == 3
+    assert best.input_dbm == asked[-1]
+    assert found.verdict in {"confirmed", "undecided"}

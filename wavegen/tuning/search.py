@@ -100,11 +100,7 @@ class _Bracket:
                 return None
             if max(below.hits, above.hits) > 2:
                 return (below.at + above.at) / 2
-            # The side that stayed is weighed less the longer it stays (Illinois).
-            weigh_low = 0.5 ** max(above.hits - 1, 0)
-            weigh_high = 0.5 ** max(below.hits - 1, 0)
-            low, high = below.excess * weigh_low, above.excess * weigh_high
-            place = below.at - low * width / (high - low)
+            place = below.at - below.excess * width / (above.excess - below.excess)
             return min(max(place, below.at + width / 10), above.at - width / 10)
         if below.at is not None:
             step = min(max(-below.excess / self.slope * 1.2, 0.02), self.step)
@@ -147,8 +143,8 @@ def lowest_ceiling(
 
     Notes
     -----
-    Regula falsi with the Illinois weights inside a bracket, halving where it drags; before there
-    is a bracket, steps by the slope known so far.
+    Regula falsi inside a bracket, halving where one side stays for long; before there is a bracket,
+    steps by the slope known so far.
     """
     bracket = _Bracket(low, high)
     best: Outcome | None = None

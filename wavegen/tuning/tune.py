@@ -233,7 +233,7 @@ def _search(
         best = methods[0].best if methods[0].state == "kept" else None
         confirmation = None
         if best is not None:
-            best, confirmation = _confirmed(shop, bench, contest, best)
+            best, confirmation = confirmed(shop, bench, contest, best)
             methods[0] = replace(methods[0], best=best)
         reference = None
         if best is not None and shop.amplifier is None:
@@ -268,10 +268,29 @@ def _reference(trials: Trials, space: Space | str, best: Evaluation) -> Referenc
     )
 
 
-def _confirmed(
+def confirmed(
     shop: Workshop, bench: AnyRig, contest: Contest, best: Evaluation
 ) -> tuple[Evaluation, Confirmation]:
-    """Try the best on other data, and with more margin in hand while it does not hold there."""
+    """Try the best on other data, and with more margin in hand while it does not hold there.
+
+    Parameters
+    ----------
+    shop : Workshop
+        Sets up other data.
+    bench : Rig or AmplifiedRig
+        On the data of the search.
+    contest : Contest
+        Its methods.
+    best : Evaluation
+        What was found.
+
+    Returns
+    -------
+    best : Evaluation
+        What was tried last.
+    confirmation : Confirmation
+        Of that.
+    """
     limits = shop.request.limits
     found = shop.confirm(best, contest.stage_of(best))
     for _ in range(MOST_CONFIRMATIONS - 1):
