@@ -157,7 +157,7 @@ def test_methods_on_symbols_act_inside_a_sum_under_the_stages_of_their_part(lab)
     assert not np.array_equal(*(samples_of(each.parts[0].signal) for each in (first, second)))
     (result,) = measure_evm(second.signal)
     assert result.path == "parts[0]"
-    assert result.percent < 0.01  # the carrier is orthogonal: 45 spacings away
+    assert result.percent < 1  # of the carrier, nearly on the grid; not turned back: over 100 %
 
 
 @pytest.mark.parametrize(
