@@ -9,8 +9,10 @@ from wavegen.core.render import Tap, render
 from wavegen.dsp.bursts import Bursts
 from wavegen.meters import METERS
 from wavegen.meters.batches import (
+    FEWEST_BATCHES,
     BatchedPowerMeter,
     batch_length,
+    gated_batch_length,
     in_pairs,
     measure_batches,
     pooled,
@@ -104,6 +106,36 @@ def test_only_the_on_time_counts(band_noise, held, n):
     expected = np.add.reduceat(is_on.astype(int), np.arange(0, n, size))
     assert found.batches.n_measured.tolist() == expected[expected > 0].tolist()
     assert found.batches.sums[:, 0].sum() == pytest.approx(found.statistics.mean * is_on.sum())
+
+
+@pytest.mark.parametrize(
+    ("n", "runs", "size"),
+    [
+        (1 << 20, ((0, 1 << 20),), 1 << 14),
+        (1 << 20, ((1 << 10, 1 << 18),), 1 << 12),  # a quarter of the time
+        (1 << 20, ((500, 66_036),), 1 << 10),  # 65536 samples: 64 or 65 cells
+        (1 << 20, ((0, 5000),), 1 << 10),  # a cell at least, or the record would be held
+        (6400, ((0, 640), (3000, 3640)), 16),
+        (1 << 20, ((0, 10), (100_000, 100_010)), 1 << 10),
+    ],
+)
+def test_batches_of_gated_records_are_64_that_are_on(n, runs, size):
+    assert gated_batch_length(n, Bursts(period_samples=n, runs=runs)) == size
+
+
+def test_a_gate_of_short_periods_leaves_batches_as_they_are():
+    bursts = Bursts(period_samples=100, runs=((0, 3),))
+    assert gated_batch_length(1 << 20, bursts) == 1 << 14
+
+
+def test_a_long_burst_in_a_longer_record_has_its_own_batches(band_noise, held):
+    samples = band_noise(3, 200_000, 0.25)
+    bursts = Bursts(period_samples=200_000, runs=((50_000, 120_000),))
+    found = rendered(held(samples), BatchedPowerMeter(bursts=bursts), 30_000).batches
+    assert FEWEST_BATCHES <= found.n_batches < 2 * FEWEST_BATCHES
+    assert found.n_measured.sum() == 70_000
+    alone = measure_batches(samples[50_000:120_000]).batches
+    assert found.above([1.0]).sum() == pytest.approx(alone.above([1.0]).sum())
 
 
 def test_batches_in_pairs_are_those_of_twice_the_length(band_noise):

@@ -42,9 +42,10 @@ def test_levels_with_intervals(sample):
 
 
 def test_a_record_that_says_nothing(samples):
-    short = SampledStatistics.of(measure_batches(samples[:40]))
+    short = SampledStatistics.of(measure_batches(samples[:60]))
+    assert short.levels_resolved([0.5]).all()  # clusters enough, but no batches
     found = rows.process_rows(
-        short, n_samples=40, n_turns=None, sample_rate_hz=1e6, probabilities=(0.1,)
+        short, n_samples=60, n_turns=None, sample_rate_hz=1e6, probabilities=(0.5,)
     )
     assert "too short" in found["says"]
     assert found["next_decade"] is None

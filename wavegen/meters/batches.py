@@ -231,7 +231,7 @@ def gated_batch_length(n_samples: int, bursts: Bursts) -> int:
         the record must be held, so that fewer than 64 may be on.
     """
     size = batch_length(n_samples)
-    least = min(size, CELL)
+    least = CELL if size >= CELL else 1
     if bursts.period_samples <= size:
         return size
     inset = bursts.ramp_samples
