@@ -4,6 +4,7 @@ from fractions import Fraction
 import numpy as np
 import pytest
 
+from wavegen.comparison import spectra
 from wavegen.comparison.curves import ExactCurve
 from wavegen.comparison.sides import Side
 from wavegen.comparison.spectra import (
@@ -99,3 +100,18 @@ def test_no_samples_no_spectrum(side):
         side_spectrum(Side(name="x", is_="a curve", curve=ExactCurve(source=GaussianLaw()))) is None
     )
     assert side_spectrum(side(is_power=True)) is None
+
+
+def test_long_records_are_looked_at_here_and_there(side, monkeypatch):
+    whole = side_spectrum(side())
+    monkeypatch.setattr(spectra, "LONG_RECORD", N // 2)
+    monkeypatch.setattr(spectra, "STRETCH_SAMPLES", 1 << 13)
+    parts = side_spectrum(side())
+    assert parts.occupied.width_hz == pytest.approx(whole.occupied.width_hz, rel=0.02)
+    assert parts.spectrum.total_power == pytest.approx(whole.spectrum.total_power, rel=0.1)
+    half = side()
+    half.signal.samples[N // 2 :] = 0
+    assert side_spectrum(half).occupied.width_hz == pytest.approx(2e5, rel=0.05)
+    half.signal.samples[:] = 0
+    with pytest.raises(SignalError):
+        side_spectrum(half)

@@ -2,15 +2,18 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.comparison.sides import Side
 from wavegen.core.errors import SignalError
+from wavegen.core.excerpt import excerpt
 from wavegen.core.progress import Progress, silent
-from wavegen.core.render import Tap, render
+from wavegen.core.render import Tap, render, samples_of
+from wavegen.core.signal import Signal
 from wavegen.core.units import format_hz
 from wavegen.meters.occupied_bandwidth import OccupiedBandwidth, occupied_bandwidth
 from wavegen.meters.spectrum import Spectrum, SpectrumMeter
@@ -20,9 +23,10 @@ Reals = NDArray[np.float64]
 LONGEST_FFT = 4096
 SHORTEST_FFT = 64
 FEWEST_SEGMENTS = 8
-LONG_RECORD = 1 << 22
-"""From here on segments do not overlap: there are a thousand of them anyway, and the file is read
-at its own speed."""
+LONG_RECORD = 1 << 23
+N_STRETCHES, STRETCH_SAMPLES = 32, 1 << 17
+"""Of a longer record so many stretches, spread evenly, are looked at, a thousand segments in all:
+the spectrum of a gigabyte then costs no more than that of 32 MB."""
 N_BANDS = 40
 """Bands over the occupied width in which the densities are compared."""
 ALIKE = 0.8
@@ -106,17 +110,38 @@ def side_spectrum(
     if signal is None or side.is_power or signal.n_samples < SHORTEST_FFT * FEWEST_SEGMENTS:
         return None
     n_fft = 1 << min(signal.n_samples // FEWEST_SEGMENTS, LONGEST_FFT).bit_length() - 1
-    meter = SpectrumMeter(
-        n_fft=n_fft,
-        loops=side.loops,
-        where=side.name,
-        overlap=0.0 if signal.n_samples >= LONG_RECORD else 0.75,
-    )
-    tap = Tap(name="spectrum", signal=signal, meter=meter)
-    spectrum: Spectrum = render(
-        signal, taps=(tap,), workers=workers, progress=progress, task=f"spectrum of {side.name}"
-    )["spectrum"]
+    options: dict[str, Any] = {"n_fft": n_fft, "where": side.name, "overlap": 0.5}
+    if signal.n_samples <= LONG_RECORD:
+        meter = SpectrumMeter(loops=side.loops, **options)
+        tap = Tap(name="spectrum", signal=signal, meter=meter)
+        spectrum: Spectrum = render(
+            signal, taps=(tap,), workers=workers, progress=progress, task=f"spectrum of {side.name}"
+        )["spectrum"]
+    else:
+        spectrum = _of_stretches(signal, SpectrumMeter(loops=False, **options))
     return SideSpectrum(spectrum=spectrum, occupied=occupied_bandwidth(spectrum))
+
+
+def _of_stretches(signal: Signal, meter: SpectrumMeter) -> Spectrum:
+    """Return the mean spectrum of stretches spread over a signal; silent ones add nothing."""
+    found = []
+    for number in range(N_STRETCHES):
+        start = number * (signal.n_samples - STRETCH_SAMPLES) // (N_STRETCHES - 1)
+        part = excerpt(signal, start, start + STRETCH_SAMPLES)
+        samples = samples_of(part)
+        if samples.any():
+            reading = meter.begin(part)
+            reading.feed(0, samples)
+            found.append(reading.result())
+    if not found:
+        raise SignalError(
+            where=meter.where,
+            problem="is silent wherever it was looked at",
+            allowed="a signal with power",
+            remedy="Check the level, or take the part of it that is on with --from and --to.",
+        )
+    density = sum(item.density for item in found) / N_STRETCHES
+    return replace(found[0], density=np.asarray(density))
 
 
 def spectrum_difference(first: SideSpectrum, second: SideSpectrum) -> SpectrumDifference:
