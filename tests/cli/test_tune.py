@@ -85,6 +85,19 @@ def test_standards_reserve_and_their_channels(call, recipe):
     assert document["best"]["evm_percent"] <= 6.4
 
 
+def test_the_mask_of_the_recipe_is_kept(call, recipe):
+    mask = (
+        "mask: {points: [{offset: 700 kHz, level: -28 dB}, {offset: 3 MHz, level: -40 dB}], "
+        "measurement_bandwidth: 60 kHz}\n"
+    )
+    said = call("tune", recipe(CELL + mask, "pier.yaml"), "--method", "clip", "--json")
+    document = said.json()
+    assert document["limits"]["keeps_mask"]
+    found = document["best"] or document["nearest"]
+    assert (found["mask_margin_db"] >= 0) == (said.status == 0)
+    assert document["best"]["binding"] == "mask"
+
+
 def test_an_interruption_says_what_is_kept(call, recipe, monkeypatch):
     def interrupt(*_, **__):
         raise KeyboardInterrupt

@@ -84,3 +84,14 @@ def test_a_fault_says_where():
     with pytest.raises(RecipeError) as refused:
         recipe_fidelity(load_text(bad, name="cell"))
     assert refused.value.where.startswith("cell.yaml:")
+
+
+def test_the_recipe_has_a_mask_of_its_own():
+    text = CELL + (
+        "mask: {points: [{offset: 1 MHz, level: -30 dB}, {offset: 3 MHz, level: -40 dB}], "
+        "measurement_bandwidth: 100 kHz}\n"
+    )
+    own = recipe_fidelity(load_text(text)).before.fidelity.mask
+    given = recipe_fidelity(load_text(CELL), FidelityRequest(mask=MASK)).before.fidelity.mask
+    assert own == given
+    assert recipe_fidelity(load_text(CELL)).before.fidelity.mask is None

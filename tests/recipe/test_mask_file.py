@@ -3,6 +3,8 @@
 import pytest
 
 from wavegen.core.errors import FileError
+from wavegen.recipe.dump import dump
+from wavegen.recipe.load import load_text
 from wavegen.recipe.mask_file import LARGEST_BYTES, load_mask
 
 MASK = """# Of the weir link.
@@ -54,3 +56,14 @@ def test_no_file_and_no_text(tmp_path):
     (tmp_path / "binary").write_bytes(b"\xff\xfe\x00")
     with pytest.raises(FileError):
         load_mask(tmp_path / "binary")
+
+
+def test_a_recipe_writes_the_same_points():
+    text = (
+        "wavegen: 1\nsample_rate: 4 MHz\nduration: 2 ms\nsignal: {kind: carrier}\n"
+        "mask: {points: [{offset: 10 MHz, level: -30 dB}, {offset: 20 MHz, level: -50 dB}], "
+        "measurement_bandwidth: 100 kHz}\n"
+    )
+    recipe = load_text(text).recipe
+    assert recipe.mask.points[1].level_db == -50
+    assert load_text(dump(recipe)).recipe == recipe

@@ -105,7 +105,8 @@ def add_fidelity(parser: argparse.ArgumentParser) -> None:
         "--mask",
         type=Path,
         metavar="FILE",
-        help="spectral mask: YAML with points, measurement_bandwidth, reference, both_sides",
+        help="spectral mask instead of the recipe's: YAML with points, measurement_bandwidth, "
+        "reference, both_sides",
     )
 
 

@@ -101,7 +101,7 @@ class Tune:
         from wavegen.tuning.tune import tune
 
         loaded = load_recipe(find_recipe(arguments.recipe), overrides=tuple(arguments.overrides))
-        limits = limits_of(arguments)
+        limits = limits_of(arguments, has_mask=loaded.recipe.mask is not None)
         fidelity = request_of(
             arguments, limits=None, has_spread=False, must_hold=arguments.aclr_limit is not None
         )
@@ -153,8 +153,8 @@ def status_of(tuned: Tuned) -> int:
     return {"undecided": UNDECIDED, "missed": MISSED}.get(verdict, 0)
 
 
-def limits_of(arguments: argparse.Namespace) -> Limits:
-    """Return the limits that the options set.
+def limits_of(arguments: argparse.Namespace, *, has_mask: bool) -> Limits:
+    """Return the limits that the options, or a recipe with a mask, set.
 
     Raises
     ------
@@ -185,7 +185,7 @@ def limits_of(arguments: argparse.Namespace) -> Limits:
         reserve_percent=arguments.evm_reserve,
         aclr_db=arguments.aclr_limit,
         keeps_channel_limits=arguments.aclr_limit is None and arguments.channels is not None,
-        keeps_mask=arguments.mask is not None,
+        keeps_mask=has_mask or arguments.mask is not None,
     )
 
 

@@ -49,13 +49,18 @@ class FidelityRequest:
     must_hold : bool
         Whether channels that the sample rate does not hold are an error; else they are left out.
     mask : SpectralMask or None
-        None: none.
+        None: that of the recipe, if it has one.
     """
 
     evm: EvmSettings = field(default_factory=EvmSettings)
     channels: ChannelRequest = field(default_factory=ChannelRequest)
     must_hold: bool = False
     mask: SpectralMask | None = None
+
+
+def with_mask(request: FidelityRequest, loaded: LoadedRecipe) -> FidelityRequest:
+    """Return a request with the recipe's mask where it has none of its own."""
+    return request if request.mask is not None else replace(request, mask=loaded.recipe.mask)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -189,7 +194,7 @@ def recipe_fidelity(
         The sample rate does not hold the channels or the mask.
     """
     keep_large_blocks()
-    asked = request or FidelityRequest()
+    asked = with_mask(request or FidelityRequest(), loaded)
     try:
         _, sites = find_loop(loaded)
         channel, site = sites[0]

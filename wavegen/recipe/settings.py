@@ -11,6 +11,7 @@ from annotated_types import Ge, Gt, Le, MinLen
 
 from wavegen.core.registry import Member, nearest
 from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity, split_quantity
+from wavegen.meters.mask import SpectralMask
 from wavegen.recipe.bench import Bench
 from wavegen.recipe.exact import write_quantity
 from wavegen.recipe.format_request import FormatRequest
@@ -271,6 +272,9 @@ class Recipe:
         What the signal passes through, in order.
     second_channel : SecondChannel, optional
         A second waveform, coherent with the first: every file then holds two channels.
+    mask : SpectralMask, optional
+        Limits of the spectrum, around the middle of the band that the signal fills; measured by
+        ``fidelity``, kept by ``tune``.
     bench : Bench, optional
         Powers and ratings on the bench; with two channels each has such a path, and the average
         power is that of the first.
@@ -286,5 +290,6 @@ class Recipe:
     signal: Annotated[Any, Member(("signal",))]
     stages: tuple[Annotated[Any, Member(("stage",))], ...] = ()
     second_channel: SecondChannel | None = None
+    mask: SpectralMask | None = None
     bench: Bench | None = None
     output: Output = Output()

@@ -13,7 +13,13 @@ from wavegen.core.signal import Signal
 from wavegen.core.site import StageSettings
 from wavegen.meters.evm_probe import EvmResult
 from wavegen.production.chain_cut import ChainCut, cut_chain
-from wavegen.production.fidelity import FidelityPlan, FidelityRequest, plan_fidelity, ratio_db
+from wavegen.production.fidelity import (
+    FidelityPlan,
+    FidelityRequest,
+    plan_fidelity,
+    ratio_db,
+    with_mask,
+)
 from wavegen.production.figures import Figures, measure_figures
 from wavegen.recipe.dump import stage_text
 from wavegen.recipe.load import LoadedRecipe
@@ -210,7 +216,7 @@ def set_up(
         yield Rig(
             cut=here,
             clean=clean,
-            plan=plan_fidelity(here.site, clean, request),
+            plan=plan_fidelity(here.site, clean, with_mask(request, loaded)),
             probability=probability,
             workers=workers,
         )
