@@ -67,3 +67,16 @@ def test_other_phases_give_another_loop_of_the_same_statistics():
     )
     likeness = abs(np.vdot(one.samples, two.samples)) / N
     assert likeness < 0.05
+
+
+def test_only_what_a_gate_keeps_follows_the_envelope():
+    within = np.arange(N) % 4096 < 1100
+    wanted = np.sort(clipped_envelopes()[:: N // within.sum()][: within.sum()])
+    found = shape_envelope(flat_band(0.25), wanted, phases=phases(), within=within)
+    assert found.level_error_db < 0.05
+    have = np.sort(np.abs(found.samples[within].astype(np.complex128)))
+    have /= np.sqrt(np.mean(have**2))
+    wanted = wanted / np.sqrt(np.mean(wanted**2))
+    for share in (0.5, 0.1, 0.01):
+        k = int((1 - share) * wanted.size)
+        assert abs(20 * np.log10(have[k] / wanted[k])) < 0.06

@@ -16,6 +16,7 @@ from wavegen.sources.shaped import (
     LONGEST_SAMPLES,
     LevelPoint,
     Shaped,
+    Window,
     flat_density,
     quantiles,
     read_density,
@@ -158,3 +159,20 @@ def test_a_spectrum_must_rise_in_frequency(tmp_path):
     path.write_text("frequency_hz,density_db\n2,0\n1,0\n")
     with pytest.raises(FileError):
         read_density(path, np.array([0.0]))
+
+
+def test_what_a_gate_keeps_follows_the_curve(site):
+    window = Window(period_samples=8_000, first_samples=50, stop_samples=2_050)
+    settings = Shaped(points=POINTS, bandwidth_hz=Fraction(5_000_000), within=window)
+    assert settings.cycle(site.sample_rate_hz, "signal").n_samples == 8_000
+    samples = samples_of(settings.build(site)).reshape(-1, 8_000)[:, 50:2_050]
+    power = np.sort(np.abs(samples.astype(np.complex128)).ravel() ** 2)
+    power /= power.mean()
+    for point in POINTS[:-2]:
+        k = int(power.size * (1 - point.probability_percent / 100))
+        assert 10 * np.log10(power[k]) == pytest.approx(point.level_db, abs=0.06)
+
+
+def test_a_window_that_is_none_is_refused():
+    with pytest.raises(QuantityError):
+        Window(period_samples=10, first_samples=5, stop_samples=5)

@@ -32,6 +32,7 @@ VERBS = Registry(
         "fidelity": "wavegen.cli.fidelity:Fidelity",
         "tune": "wavegen.cli.tune:Tune",
         "match": "wavegen.cli.match:Match",
+        "shape": "wavegen.cli.shape:Shape",
         "gain-curve": "wavegen.cli.gain_curve:GainCurve",
         "check": "wavegen.cli.check:Check",
         "show": "wavegen.cli.show:Show",

@@ -277,7 +277,7 @@ def settings_of(arguments: argparse.Namespace) -> MeasureSettings:
     return MeasureSettings(
         probabilities=tuple(arguments.at),
         above=tuple(asked),
-        gate=_gate_of(arguments),
+        gate=gate_of(arguments),
         sensor=_sensor_of(arguments),
         removes_offset=arguments.remove_dc,
         finds_faults=not arguments.no_faults,
@@ -285,7 +285,14 @@ def settings_of(arguments: argparse.Namespace) -> MeasureSettings:
     )
 
 
-def _gate_of(arguments: argparse.Namespace) -> GateSettings | None:
+def gate_of(arguments: argparse.Namespace) -> GateSettings | None:
+    """Return the gate that the options of :func:`add_gate` ask for.
+
+    Raises
+    ------
+    ArgumentsError
+        Options that do not go together.
+    """
     from wavegen.production.measure_settings import NO_TIME, GateSettings
 
     how = arguments.gate

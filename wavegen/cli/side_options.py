@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.measure_options import add_gate, add_levels, add_part, add_sensor, settings_of
+from wavegen.cli.measure_options import add_gate, add_part, gate_of
 from wavegen.cli.options import (
     add_overrides,
     add_reading,
@@ -19,7 +19,6 @@ from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
     from wavegen.comparison.sides import SideSettings
-    from wavegen.production.measure_settings import GateSettings
 
 
 def count(text: str) -> int:
@@ -145,20 +144,12 @@ def side_of(arguments: argparse.Namespace, side: str, subject: str) -> SideSetti
         is_recipe=recipe,
         hints=hints_of(mine),
         part=FilePart(first=mine.first, stop=mine.stop, period=mine.period, loops=bool(mine.loop)),
-        gate=_gate_of(mine),
+        gate=gate_of(mine),
         removes_offset=bool(mine.remove_dc),
         overrides=tuple(mine.overrides) if recipe else (),
         curve_samples=mine.curve_samples,
         reading_db=mine.reading or 0.0,
     )
-
-
-def _gate_of(mine: argparse.Namespace) -> GateSettings | None:
-    """Return the gate, as a measurement that is asked for nothing else reads it."""
-    plain = argparse.ArgumentParser(add_help=False)
-    for declare in (add_levels, add_gate, add_sensor):
-        declare(plain)
-    return settings_of(argparse.Namespace(**vars(plain.parse_args([])) | vars(mine))).gate
 
 
 def refuse_stray_overrides(

@@ -56,6 +56,34 @@ class LevelPoint:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Window:
+    """The part of each period that follows the curve: what a gate will keep.
+
+    Parameters
+    ----------
+    period_samples : int
+        It repeats after so many; a whole number of periods is a loop.
+    first_samples, stop_samples : int
+        From which sample of the period to which (not included).
+    """
+
+    period_samples: Annotated[int, Ge(1)]
+    first_samples: Annotated[int, Ge(0)] = 0
+    stop_samples: Annotated[int, Ge(1)]
+
+    def __post_init__(self) -> None:
+        """Refuse a part that is none."""
+        if not self.first_samples < self.stop_samples <= self.period_samples:
+            raise QuantityError(
+                problem=f"it runs from {self.first_samples} to {self.stop_samples} of "
+                f"{self.period_samples} samples",
+                allowed="a part of the period that is not empty",
+                remedy="Correct first and stop.",
+                key="stop",
+            )
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Shaped:
     """Settings of a waveform that is known by its spectrum and its CCDF alone.
 
@@ -73,6 +101,8 @@ class Shaped:
     edge_fraction : float
         Of a flat spectrum: width of each edge over the bandwidth, half of it outside; the
         density falls as a raised cosine.
+    within : Window, optional
+        The part of the time that follows the curve, over its own mean; all of it if not given.
 
     Notes
     -----
@@ -86,6 +116,7 @@ class Shaped:
     spectrum: str | None = None
     bandwidth_hz: Annotated[Fraction, Gt(0)] | None = None
     edge_fraction: Annotated[float, Ge(0), Le(1)] = 0.05
+    within: Window | None = None
 
     def __post_init__(self) -> None:
         """Refuse two curves or two spectra, and points that are no CCDF."""
@@ -120,8 +151,8 @@ class Shaped:
             )
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
-        """Return one sample: it is made to fit any loop."""
-        return Cycle(n_samples=1)
+        """Return one sample, or the period of what it follows: it is made to fit any loop."""
+        return Cycle(n_samples=self.within.period_samples if self.within else 1)
 
     def build(self, site: Site) -> Signal:
         """Return the signal; unit mean power.
@@ -155,10 +186,20 @@ class Shaped:
                 remedy="Shorten the duration.",
             )
         amplitudes = self._amplitudes(site)
-        envelopes, moved_db = quantiles(self._curve(site), n)
+        within = self._within(n)
+        envelopes, moved_db = quantiles(self._curve(site), int(within.sum()))
         if abs(moved_db) > MOVED_DB:
             _note_moved(site, moved_db)
-        return _shaped(amplitudes.tobytes(), envelopes.tobytes(), site.seed, site.label)
+        return _shaped(
+            amplitudes.tobytes(), envelopes.tobytes(), within.tobytes(), site.seed, site.label
+        )
+
+    def _within(self, n: int) -> NDArray[np.bool_]:
+        if self.within is None:
+            return np.ones(n, np.bool_)
+        place = np.arange(n) % self.within.period_samples
+        first, stop = self.within.first_samples, self.within.stop_samples
+        return np.asarray((place >= first) & (place < stop))
 
     def _curve(self, site: Site) -> Curve:
         if self.curve is None:
@@ -210,13 +251,14 @@ def _told(site: Site, key: str, read: Callable[[], Found]) -> Found:
 
 
 @lru_cache(maxsize=2)
-def _shaped(amplitudes: bytes, envelopes: bytes, seed: int, label: str) -> Result:
+def _shaped(amplitudes: bytes, envelopes: bytes, within: bytes, seed: int, label: str) -> Result:
     wanted = np.frombuffer(amplitudes, np.float64)
     words = random_bytes(stream_key(seed, label), 0, 4 * wanted.size).view("<u4")
     return shape_envelope(
         wanted,
         np.frombuffer(envelopes, np.float64),
         phases=words * (2 * np.pi / 2**32),
+        within=np.frombuffer(within, np.bool_),
     )
 
 

@@ -1,0 +1,129 @@
+"""Stimuli in the shape of a field signal."""
+
+from fractions import Fraction
+from pathlib import Path
+
+import numpy as np
+import pytest
+
+from wavegen.comparison.shape import ShapeSettings, shape
+from wavegen.comparison.sides import SideSettings
+from wavegen.core.errors import ArgumentsError, FileError
+from wavegen.core.timespan import TimeSpan
+from wavegen.files.format import ReadHints
+from wavegen.production.measure_settings import GateSettings
+from wavegen.recipe.load import load_recipe
+
+N = 1 << 15
+RATE = Fraction(1_000_000)
+
+
+def clipped(seed=3, n=N):
+    """A field signal of ours: noise in 30 % of the rate, clipped, and filtered again."""
+    rng = np.random.default_rng(seed)
+    band = np.abs(np.fft.fftfreq(n)) < 0.15
+    spectrum = band * (rng.standard_normal(n) + 1j * rng.standard_normal(n))
+    x = np.fft.ifft(spectrum)
+    x /= np.sqrt(np.mean(np.abs(x) ** 2))
+    x /= np.maximum(np.abs(x) / 10 ** (4 / 20), 1)
+    x = np.fft.ifft(np.fft.fft(x) * band)
+    return 0.1 * x / np.sqrt(np.mean(np.abs(x) ** 2))
+
+
+def written(path: Path, samples) -> SideSettings:
+    codes = np.rint(np.stack([samples.real, samples.imag], 1) * 32768).astype("<i2")
+    codes.tofile(path)
+    return SideSettings(
+        subject=str(path),
+        hints=ReadHints(format="ci16_le", sample_rate_hz=RATE),
+        removes_offset=True,
+    )
+
+
+def settings(**more) -> ShapeSettings:
+    short = TimeSpan(Fraction(N), "samples")
+    return ShapeSettings(**({"name": "twin", "title": "A twin", "duration": short} | more))
+
+
+def test_levels_and_spectrum_are_followed(tmp_path):
+    field = written(tmp_path / "field.ci16", clipped())
+    document = shape(field, settings(), out=tmp_path / "out")
+    assert document["verdict"] == "match"
+    assert document["largest_difference_db"] < 0.05
+    # forty bands of ten bins, 32 independent segments: one in forty is off by three sigma, 0.7 dB
+    assert abs(document["spectrum"]["largest_difference_db"]) < 1
+    assert document["gate"] is None
+    folder = tmp_path / "out" / "twin"
+    names = {path.name for path in folder.iterdir()}
+    assert {"twin.yaml", "twin.curve.csv", "twin.spectrum.csv", "twin.ccdf.json"} <= names
+    made = np.fromfile(folder / "twin.sigmf-data", "<i2").reshape(-1, 2) @ np.array([1, 1j])
+    likeness = abs(np.vdot(made, clipped())) / np.linalg.norm(made) / np.linalg.norm(clipped())
+    assert likeness < 0.05  # none of the content
+
+
+def test_the_recipe_makes_it_again(tmp_path):
+    shape(written(tmp_path / "field.ci16", clipped()), settings(), out=tmp_path)
+    loaded = load_recipe(tmp_path / "twin" / "twin.yaml")
+    assert loaded.recipe.title == "A twin"
+    assert type(loaded.recipe.signal).__name__ == "Shaped"
+
+
+def test_an_offset_and_fill_words_are_no_part_of_it(tmp_path):
+    samples = clipped() + 0.05
+    samples[:4] = -1 - 1j
+    document = shape(written(tmp_path / "field.ci16", samples), settings(), out=tmp_path)
+    assert document["skipped_samples"] == 4
+    clean = shape(written(tmp_path / "clean.ci16", clipped()), settings(name="clean"), out=tmp_path)
+    levels = [
+        {row["probability"]: row["field_db"] for row in item["levels"]}
+        for item in (document, clean)
+    ]
+    assert levels[0][0.01] == pytest.approx(levels[1][0.01], abs=0.03)
+
+
+def test_on_times_are_followed_and_gated(tmp_path):
+    gate = (np.arange(N) % 4096 < 1024).astype(float)
+    field = written(tmp_path / "field.ci16", clipped() * gate)
+    gated = SideSettings(subject=field.subject, hints=field.hints, gate=GateSettings(by="level"))
+    document = shape(gated, settings(), out=tmp_path / "out")
+    assert document["gate"]["period_samples"] == 4096
+    assert document["gate"]["duty"] == pytest.approx(0.25, abs=0.02)
+    assert document["verdict"] == "match"
+
+
+def test_a_curve_needs_a_bandwidth_and_a_rate(tmp_path):
+    level = np.arange(-20, 10, 0.1)
+    rows = "\n".join(f"{x:.2f},{np.exp(-(10 ** (x / 10))):.8g}" for x in level)
+    path = tmp_path / "curve.csv"
+    path.write_text(f"# n_samples: 100000\nlevel_db,ccdf\n{rows}\n")
+    bare = SideSettings(subject=str(path))
+    with pytest.raises(ArgumentsError) as caught:
+        shape(bare, settings(bandwidth_hz=Fraction(300_000)), out=tmp_path / "out")
+    assert "--sample-rate" in caught.value.where
+    document = shape(
+        bare,
+        settings(bandwidth_hz=Fraction(300_000), sample_rate_hz=RATE),
+        out=tmp_path / "out",
+    )
+    assert document["verdict"] == "match"
+    assert document["spectrum"] is None
+
+
+def test_what_no_signal_has_ends_at_the_nearest(tmp_path):
+    steady = 0.3 * np.exp(2j * np.pi * 0.11 * np.arange(N))
+    field = written(tmp_path / "field.ci16", steady)
+    document = shape(field, settings(bandwidth_hz=Fraction(300_000)), out=tmp_path / "out")
+    assert document["verdict"] == "differ"
+    assert document["largest_difference_db"] > 0.05
+    assert (tmp_path / "out" / "twin" / "twin.sigmf-data").exists()
+
+
+def test_nothing_that_exists_is_lost_and_nothing_is_left(tmp_path):
+    field = written(tmp_path / "field.ci16", clipped())
+    folder = tmp_path / "out" / "twin"
+    folder.mkdir(parents=True)
+    (folder / "twin.sigmf-data").write_text("mine")
+    with pytest.raises(FileError):
+        shape(field, settings(), out=tmp_path / "out")
+    assert [path.name for path in folder.iterdir()] == ["twin.sigmf-data"]
+    assert (folder / "twin.sigmf-data").read_text() == "mine"

@@ -1,0 +1,417 @@
+"""A stimulus with the spectrum and the power statistics of the field, and none of its content."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass, replace
+from fractions import Fraction
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import scipy.fft
+
+from wavegen.comparison.curves import ExactCurve, PointsCurve
+from wavegen.comparison.difference import (
+    HIGHEST,
+    DifferenceRow,
+    as_recorded,
+    compare,
+    probabilities,
+)
+from wavegen.comparison.match import row_document
+from wavegen.comparison.sides import CURVE_FORMAT, LOOP, Side, SideSettings, open_side
+from wavegen.comparison.spectra import SideSpectrum, side_spectrum, spectrum_difference
+from wavegen.core.errors import ArgumentsError, SignalError, WavegenError
+from wavegen.core.progress import Progress, silent
+from wavegen.core.timespan import TimeSpan
+from wavegen.core.units import format_hz
+from wavegen.files.atomic import Drafts
+from wavegen.files.faults import told
+from wavegen.meters.equivalence import check_tolerance
+from wavegen.production.make import Made, make
+from wavegen.production.measure_settings import MeasureSettings, whole_samples
+from wavegen.production.measured_signal import measure_signal
+from wavegen.production.show import is_curve
+from wavegen.production.sidecar import FORMAT
+from wavegen.production.subject_files import open_subject
+from wavegen.recipe.load import load_recipe
+
+TOLERANCE_DB = 0.05
+MOST_SAMPLES = 1 << 20
+"""Length of the loop unless another is asked for, or the field is shorter."""
+FEWEST_SAMPLES = 1 << 17
+"""A loop of a short field is longer: the last levels of few samples come in large steps."""
+_EVENTS = 10
+_ALWAYS = 0.01
+_POINTS = 1500
+_HIGHEST = 0.9999
+_RAMP_OVER_BANDWIDTH = 4
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class ShapeSettings:
+    """What is wanted of the stimulus.
+
+    Parameters
+    ----------
+    name : str
+        Of the recipe, and of everything made from it.
+    title : str
+        Of the recipe.
+    seed : int
+        Another seed gives another stimulus with the same statistics.
+    duration : TimeSpan or None
+        Length of the loop; as long as the field, 2^17 samples at least and 2^20 at most, if not
+        given.
+    bandwidth_hz : Fraction or None
+        A flat spectrum in place of the field's.
+    sample_rate_hz : Fraction or None
+        Of a field that is only a curve.
+    tolerance_db : float
+        What a level may be off by.
+    """
+
+    name: str
+    title: str
+    seed: int = 1
+    duration: TimeSpan | None = None
+    bandwidth_hz: Fraction | None = None
+    sample_rate_hz: Fraction | None = None
+    tolerance_db: float = TOLERANCE_DB
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Gate:
+    """The on-times of the field, made regular."""
+
+    period_samples: int
+    on_samples: int
+    ramp_samples: int
+
+
+def shape(
+    field: SideSettings,
+    settings: ShapeSettings,
+    *,
+    out: Path,
+    overwrite: bool = False,
+    workers: int = 1,
+    progress: Progress = silent,
+) -> dict[str, Any]:
+    """Make a stimulus with the field's spectrum and CCDF, and compare both.
+
+    Parameters
+    ----------
+    field : SideSettings
+        A recording, stimulus or recipe; or a curve, with a bandwidth and a sample rate. With a
+        gate the on-time is followed, and a regular gate of the same duty is put on top.
+    settings : ShapeSettings
+        What is wanted.
+    out : Path
+        Everything goes to ``out/NAME``: the recipe, the curve and the spectrum that it follows,
+        the files and their sidecar.
+    overwrite : bool
+        Whether files that exist are replaced.
+    workers, progress
+        As in :func:`wavegen.core.render.render`.
+
+    Returns
+    -------
+    dict
+        JSON values. ``verdict`` is ``match`` if every level down to the last that both sides
+        resolve lies within the tolerance, else ``differ``: the files are the nearest found.
+
+    Raises
+    ------
+    ArgumentsError
+        What is missing to make samples of a curve, or a length that cannot be.
+    SignalError
+        A field without phase or spectrum where no bandwidth is given.
+    FileError, RecipeError
+        As raised while reading and making.
+
+    Notes
+    -----
+    See :mod:`wavegen.dsp.shaped_envelope`.
+    """
+    check_tolerance(settings.tolerance_db)
+    field, skipped = _after_opening(field, workers=workers, progress=progress)
+    side = open_side(field, workers=workers, progress=progress)
+    spectrum = None
+    if settings.bandwidth_hz is None:
+        spectrum = side_spectrum(side, workers=workers, progress=progress)
+        if spectrum is None:
+            raise SignalError(
+                where=side.name,
+                problem="has no spectrum that could be followed",
+                allowed="samples with their phase, or a bandwidth",
+                remedy="Give --bandwidth.",
+            )
+    rate_hz = _rate(side, settings)
+    gate = _gate(side, rate_hz, spectrum, settings)
+    n_samples = _length(side, settings, rate_hz, gate)
+    made = _make(
+        _recipe(settings, rate_hz, n_samples, gate),
+        _curve_text(side, n_samples),
+        None if spectrum is None else _spectrum_text(spectrum),
+        settings,
+        out=out,
+        overwrite=overwrite,
+        workers=workers,
+        progress=progress,
+    )
+    stimulus = _stimulus_side(made, is_gated=gate is not None, workers=workers, progress=progress)
+    return _document(
+        side, stimulus, spectrum, made, settings, gate=gate, skipped=skipped, workers=workers
+    )
+
+
+def _after_opening(
+    field: SideSettings, *, workers: int, progress: Progress
+) -> tuple[SideSettings, int]:
+    """Leave out fill words and start-up, where the part was not chosen; return how many."""
+    path = Path(field.subject)
+    is_told = field.is_recipe or field.part.is_cut or field.hints.format == CURVE_FORMAT
+    if is_told or not path.is_file() or path.name.lower().endswith(".ccdf.json") or is_curve(path):
+        return field, 0
+    subject = open_subject(path, field.hints, field.part)
+    if subject.is_described or subject.loops:
+        return field, 0
+    wanted = MeasureSettings(states_process=False)
+    found = measure_signal(subject, wanted, workers=workers, progress=progress)
+    faults = found.check.faults if found.check else ()
+    stop = max(
+        (fault.stop_sample or 0 for fault in faults if fault.kind in {"fill", "start_up"}),
+        default=0,
+    )
+    if not stop or stop > subject.signal.n_samples // 2:
+        return field, 0
+    part = replace(field.part, first=TimeSpan(Fraction(stop), "samples"))
+    return replace(field, part=part), stop
+
+
+def _rate(side: Side, settings: ShapeSettings) -> Fraction:
+    if side.signal is not None and not side.is_power:
+        return side.signal.sample_rate_hz
+    if settings.sample_rate_hz is None or settings.bandwidth_hz is None:
+        raise ArgumentsError(
+            where="--bandwidth/--sample-rate",
+            problem=f"{side.name} tells levels alone",
+            allowed="a bandwidth and a sample rate for it",
+            remedy="Give both, such as --bandwidth 5MHz --sample-rate 20MHz.",
+        )
+    return settings.sample_rate_hz
+
+
+def _gate(
+    side: Side, rate_hz: Fraction, spectrum: SideSpectrum | None, settings: ShapeSettings
+) -> _Gate | None:
+    """Return a regular gate with the duty and the mean spacing of the field's bursts."""
+    if side.bursts is None or side.signal is None or side.duty is None:
+        return None
+    runs = side.bursts.runs
+    period = max(round(side.signal.n_samples / len(runs)), 4)
+    width = float(settings.bandwidth_hz or (spectrum.occupied.width_hz if spectrum else rate_hz))
+    ramp = max(round(_RAMP_OVER_BANDWIDTH * float(rate_hz) / width), 1)
+    on = min(round(side.duty * period) + 2 * ramp, period - 1)
+    return _Gate(period_samples=period, on_samples=on, ramp_samples=min(ramp, (on - 1) // 2))
+
+
+def _length(side: Side, settings: ShapeSettings, rate_hz: Fraction, gate: _Gate | None) -> int:
+    if settings.duration is not None:
+        wanted = whole_samples(settings.duration, rate_hz, "--duration")
+    else:
+        own = side.signal.n_samples if side.signal is not None else MOST_SAMPLES
+        wanted = min(max(own, FEWEST_SAMPLES), MOST_SAMPLES)
+        if gate is None:  # a length that transforms fast
+            size = wanted
+            while scipy.fft.next_fast_len(size) != size:
+                size -= 1
+            return size
+    if gate is None:
+        return wanted
+    return max(wanted // gate.period_samples, 1) * gate.period_samples
+
+
+def _curve_text(side: Side, n_samples: int) -> str:
+    """Return the curve to follow: rising levels, down to the rarest that either side holds."""
+    own = side.n_samples or n_samples
+    rarest = 1 / max(own, 2)
+    if isinstance(side.curve, PointsCurve):
+        level, share = side.curve.levels, side.curve.probabilities
+        kept = (share > 0) & (share < 1)
+        level, share = level[kept], share[kept]
+    else:
+        low = 1 - np.geomspace(1 - _HIGHEST, 0.5, _POINTS // 3)
+        share = np.concatenate([low, np.geomspace(0.5, rarest, _POINTS)[1:]])
+        level = np.asarray(side.curve.level_db(share), np.float64)
+    rows = [f"# n_samples: {own}", "level_db,ccdf"]
+    last = -math.inf
+    for at, probability in zip(level, share, strict=True):
+        if np.isfinite(at) and at > last + 1e-6:
+            rows.append(f"{at:.6f},{probability:.10g}")
+            last = at
+    return "\n".join(rows) + "\n"
+
+
+def _spectrum_text(found: SideSpectrum) -> str:
+    spectrum = found.spectrum
+    # the band repeats after the sample rate: its lower end stands at the upper one too
+    places = [*spectrum.frequencies_hz, spectrum.sample_rate_hz / 2]
+    level = [*spectrum.dbc_per_hz, spectrum.dbc_per_hz[0]]
+    rows = ["# density over the total power, dBc/Hz", "frequency_hz,density_db"]
+    rows += [f"{place:.3f},{value:.4f}" for place, value in zip(places, level, strict=True)]
+    return "\n".join(rows) + "\n"
+
+
+def _recipe(settings: ShapeSettings, rate_hz: Fraction, n_samples: int, gate: _Gate | None) -> str:
+    lines = [
+        "wavegen: 1",
+        f"title: {_quoted(settings.title)}",
+        "# The spectrum and the power statistics of a field signal, none of its content.",
+        f"seed: {settings.seed}",
+        f"sample_rate: {format_hz(rate_hz)}",
+        f"duration: {n_samples} samples",
+        "signal:",
+        "  kind: shaped",
+        f"  curve: {settings.name}.curve.csv",
+    ]
+    if settings.bandwidth_hz is not None:
+        lines.append(f"  bandwidth: {format_hz(settings.bandwidth_hz)}")
+    else:
+        lines.append(f"  spectrum: {settings.name}.spectrum.csv")
+    if gate is not None:
+        duty = Fraction(100 * gate.on_samples, gate.period_samples)
+        period, ramp = gate.period_samples, gate.ramp_samples
+        first, stop = ramp, gate.on_samples - ramp
+        lines.append(
+            f"  within: {{period: {period} samples, first: {first} samples, stop: {stop} samples}}"
+        )
+        lines.append("stages:")
+        lines.append(
+            f"  - {{kind: gate, duty: {duty} %, period: {period} samples, ramp: {ramp} samples}}"
+        )
+    return "\n".join(lines) + "\n"
+
+
+def _quoted(text: str) -> str:
+    inside = text.replace("\\", "\\\\").replace('"', '\\"')
+    return '"' + "".join(c for c in inside if c.isprintable()) + '"'
+
+
+def _make(
+    recipe: str,
+    curve: str,
+    spectrum: str | None,
+    settings: ShapeSettings,
+    *,
+    out: Path,
+    overwrite: bool,
+    workers: int,
+    progress: Progress,
+) -> Made:
+    """Write what the recipe needs, then make it; take it back if that fails."""
+    folder = out / settings.name
+    texts = {f"{settings.name}.yaml": recipe, f"{settings.name}.curve.csv": curve}
+    if spectrum is not None:
+        texts[f"{settings.name}.spectrum.csv"] = spectrum
+    fresh = [name for name in texts if not (folder / name).exists()]
+    with Drafts(folder, overwrite=overwrite) as drafts:
+        for name, text in texts.items():
+            draft = drafts.add(name)
+            with told(draft):
+                draft.write_text(text, encoding="utf-8")
+    try:
+        loaded = load_recipe(folder / f"{settings.name}.yaml")
+        return make(loaded, out=out, overwrite=overwrite, workers=workers, progress=progress)
+    except (WavegenError, KeyboardInterrupt):
+        for name in fresh:
+            (folder / name).unlink(missing_ok=True)
+        if not any(folder.iterdir()):
+            folder.rmdir()
+        raise
+
+
+def _stimulus_side(made: Made, *, is_gated: bool, workers: int, progress: Progress) -> Side:
+    """Measure what was made; of a gated one the on-time, as its recipe has it."""
+    subject = open_subject(made.folder / made.document["files"][0]["name"])
+    wanted = MeasureSettings(states_process=False, finds_faults=False)
+    found = measure_signal(subject, wanted, workers=workers, progress=progress)
+    statistics = found.statistics
+    if is_gated and found.gate is not None and found.gate.on is not None:
+        statistics = found.gate.on.statistics
+    return Side(
+        name=subject.name,
+        is_=LOOP,
+        curve=ExactCurve(source=statistics),
+        n_samples=statistics.n_samples,
+        signal=found.signal,
+        loops=True,
+    )
+
+
+def _least(side: Side, stimulus: Side) -> float:
+    """Return the least usual probability that both sides resolve; 1 % is looked at anyway."""
+    counts = [item.n_samples for item in (side, stimulus) if item.n_samples]
+    rarest = min(max((_EVENTS / count for count in counts), default=1e-4), HIGHEST)
+    asked = probabilities(float(f"{rarest:.3g}"))
+    resolved = asked[side.curve.is_resolved(asked)]
+    return float(resolved.min(initial=max(_ALWAYS, asked.min())))
+
+
+def _document(
+    side: Side,
+    stimulus: Side,
+    spectrum: SideSpectrum | None,
+    made: Made,
+    settings: ShapeSettings,
+    *,
+    gate: _Gate | None,
+    skipped: int,
+    workers: int,
+) -> dict[str, Any]:
+    least = _least(side, stimulus)
+    found = compare(
+        as_recorded(stimulus.curve),
+        as_recorded(side.curve),
+        tolerance_db=settings.tolerance_db,
+        down_to=least,
+    )
+    rows: tuple[DifferenceRow, ...] = found.rows
+    differences = [abs(row.difference_db) for row in rows]
+    largest = max(differences, default=math.inf)
+    own = side_spectrum(stimulus, workers=workers) if spectrum is not None else None
+    between = None if own is None or spectrum is None else spectrum_difference(own, spectrum)
+    is_met = largest <= settings.tolerance_db
+    return {
+        "format": f"{FORMAT}.shape",
+        "version": 1,
+        "verdict": "match" if is_met else "differ",
+        "name": settings.name,
+        "folder": str(made.folder),
+        "recipe": f"{settings.name}.yaml",
+        "files": made.document["files"],
+        "tolerance_db": settings.tolerance_db,
+        "down_to": least,
+        "largest_difference_db": largest if math.isfinite(largest) else None,
+        "levels": [row_document(row) for row in rows],
+        "levels_are": "of the on-time" if gate else "of all of the time",
+        "spectrum": None
+        if between is None
+        else {
+            "largest_difference_db": between.largest_db,
+            "occupied_bandwidth_hz": between.second.occupied.width_hz,
+        },
+        "gate": None
+        if gate is None
+        else {
+            "period_samples": gate.period_samples,
+            "duty": gate.on_samples / gate.period_samples,
+            "is": "regular, with the duty and the mean spacing of the field's bursts",
+        },
+        "field": side.name,
+        "skipped_samples": skipped,
+        "warnings": [*made.document["warnings"]]
+        + [{"kind": "warning", "where": side.name, "text": text} for text in side.warnings],
+    }
