@@ -1,5 +1,6 @@
 import argparse
 import json
+import math
 
 import pytest
 
@@ -29,6 +30,7 @@ def test_a_cell_is_tuned(call, recipe, tmp_path):
     assert "clip filter" in said.out
     assert "as it is" in said.out
     assert "onfirmed on other data" in said.out
+    assert "between samples" in said.err
     assert max(map(len, said.out.splitlines())) <= 80
     found = load_recipe(tmp_path / "output" / "pier" / "pier-tuned.yaml")
     assert "# leaves room" in found.text
@@ -96,6 +98,26 @@ def test_the_mask_of_the_recipe_is_kept(call, recipe):
     found = document["best"] or document["nearest"]
     assert (found["mask_margin_db"] >= 0) == (said.status == 0)
     assert document["best"]["binding"] == "mask"
+
+
+def test_the_highest_power_behind_an_amplifier(call, recipe, tmp_path):
+    rows = [f"{x},{x + 30 - 5 * math.log10(1 + 10 ** (x / 5)):.4f},0" for x in range(-30, 13, 3)]
+    (tmp_path / "amp.csv").write_text(
+        "\n".join(["input_dbm,output_dbm,phase_deg", *rows]) + "\n", encoding="utf-8"
+    )
+    said = call(
+        "tune", recipe(CELL, "pier.yaml"), "--evm-limit", "8%", "--aclr-limit", "33dB", *ONE,
+        "--device", "amp.csv", "--json", "--seconds", "12",
+    )  # fmt: skip
+    document = said.json()
+    best = document["best"]
+    assert best["output_dbm"] > document["before"]["output_dbm"]
+    assert best["gained_db"] == pytest.approx(
+        best["output_dbm"] - document["before"]["output_dbm"], abs=1e-3
+    )
+    assert best["evm_percent"] <= 8
+    assert best["aclr_db"] >= 33
+    assert document["confirmation"]["output_dbm"] == pytest.approx(best["output_dbm"], abs=0.1)
 
 
 def test_an_interruption_says_what_is_kept(call, recipe, monkeypatch):

@@ -27,7 +27,12 @@ CONFIRMED = {
 DOCUMENT = {
     "objective": "level_db",
     "probability": 1e-4,
-    "limits": {"told": "EVM up to 8 %"},
+    "limits": {
+        "told": "EVM up to 8 %",
+        "aclr_db": None,
+        "keeps_channel_limits": False,
+        "keeps_mask": False,
+    },
     "channels": "NR BS FR1, 20 MHz",
     "before": BEFORE,
     "best": BEST,
@@ -122,3 +127,17 @@ def test_why_a_method_asked_for_was_left_out():
 def test_settings_as_recipes_name_them():
     told = settings_words({"ceiling_db": 6.0, "length": "500 ns", "suppression_db": None})
     assert told == "ceiling 6 dB, length 500 ns"
+
+
+def test_nothing_gained():
+    assert "Nothing is gained" not in " ".join(outcome_words(DOCUMENT))
+    document = {**DOCUMENT, "best": {**BEST, "gained_db": -0.01}}
+    assert "Nothing is gained" in " ".join(outcome_words(document))
+
+
+def test_neighbours_that_nothing_keeps_clear():
+    document = {**DOCUMENT, "best": {**BEST, "aclr_db": 27.5}}
+    assert "falls from 69.5 to 27.5 dB" in " ".join(outcome_words(document))
+    kept = {**document, "limits": {**DOCUMENT["limits"], "aclr_db": 25.0}}
+    assert "falls" not in " ".join(outcome_words(kept))
+    assert "falls" not in " ".join(outcome_words(DOCUMENT))

@@ -7,6 +7,8 @@ from typing import Any
 from wavegen.core.table import Table
 from wavegen.reports.tables import percent
 
+WORSE_DB = 3.0
+"""From here on a fall of ACLR is told where nothing limits it."""
 _MARKS = {"kept": "", "missed": "not kept", "unfinished": "unfinished", "unsuited": "unsuited"}
 
 
@@ -83,6 +85,9 @@ def outcome_words(document: dict[str, Any]) -> list[str]:
     if best is None:
         return [*said, *_infeasible(document)]
     said.append(_best_words(document, best))
+    if best["gained_db"] <= 0:
+        said.append("Nothing is gained by it: the signal as it is does as well within the limits.")
+    said += _neighbour_words(document, best)
     if any(item["is_cut"] for item in document["methods"]):
         said.append(
             "The time was over before all settings were searched (cut short, unfinished): with "
@@ -101,6 +106,21 @@ def outcome_words(document: dict[str, Any]) -> list[str]:
     if document["confirmation"] is not None:
         said.append(confirmation_words(document))
     return said
+
+
+def _neighbour_words(document: dict[str, Any], best: dict[str, Any]) -> list[str]:
+    """Say that the adjacent channels suffer where nothing keeps them clear."""
+    limits, before = document["limits"], document["before"]["aclr_db"]
+    is_kept = (
+        limits["aclr_db"] is not None or limits["keeps_channel_limits"] or limits["keeps_mask"]
+    )
+    if is_kept or before is None or best["aclr_db"] > before - WORSE_DB:
+        return []
+    text = (
+        f"Nothing limits the adjacent channels: ACLR falls from {before:.1f} to "
+        f"{best['aclr_db']:.1f} dB. Give --aclr-limit to keep them clear."
+    )
+    return [text]
 
 
 def _best_words(document: dict[str, Any], best: dict[str, Any]) -> str:

@@ -17,7 +17,8 @@ from wavegen.tuning.space import CEILING, REFERENCE, Space, searchable_kinds
 from wavegen.tuning.trials import OutOfTime, Trials
 
 START_BELOW_DB = 3.0
-"""A first ceiling stands so far under the level of the untouched signal."""
+"""A first ceiling stands so far under the level of the untouched signal; half as far where an
+amplifier adds its own distortion."""
 
 
 def chosen_kinds(asked: Sequence[str]) -> tuple[str, ...]:
@@ -80,7 +81,7 @@ class Contest:
             The best first.
         """
         trials = self.trials
-        start_db = before.level_db - START_BELOW_DB
+        start_db = before.level_db - START_BELOW_DB * (1.0 if self.is_monotone else 0.5)
         cost: dict[str, float] = {}
         unfinished: set[str] = set()
         usable = {kind: space for kind, space in self.spaces.items() if isinstance(space, Space)}

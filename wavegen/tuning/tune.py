@@ -242,6 +242,9 @@ def _search(
         channels = "" if rig.plan.channels is None else rig.plan.channels.name
         notes += rig.plan.notes
         stage = None if best is None else contest.stage_of(best)
+        if stage is not None:
+            path = f"stages[{shop.place[0]}]"
+            notes += [note for note in rig.cut.build(stage)[1] if note.where.startswith(path)]
     tuned = Tuned(
         loaded=shop.loaded,
         request=request,
