@@ -6,9 +6,7 @@ from wavegen.comparison.curves import (
     PointsCurve,
     SampledCurve,
     ScaleStatistics,
-    check_over_mean,
 )
-from wavegen.core.errors import FileError
 from wavegen.laws.gaussian import GaussianLaw
 from wavegen.meters.batches import measure_batches
 from wavegen.meters.intervals import SampledStatistics
@@ -102,24 +100,3 @@ def test_points_of_a_loop_are_exact_down_to_their_end():
     exact = PointsCurve(levels=curve.level_db, probabilities=curve.probability, is_exact=True)
     assert exact.level_db([0.5, 1e-6]) == pytest.approx([0, 0], abs=0.06)
     assert not exact.event_samples(0.1).any()
-
-
-@pytest.mark.parametrize(
-    ("level_db", "probability", "is_refused"),
-    [
-        (np.arange(-20.0, 10), LAW.ccdf(np.arange(-20.0, 10)), False),
-        (np.arange(-20.0, 10), LAW.ccdf(np.arange(-20.0, 10)) / 100, True),  # percent of percent
-        (np.arange(-20.0, 10) + 3, LAW.ccdf(np.arange(-20.0, 10)), True),  # over something else
-        (np.arange(-20.0, 10) - 40, LAW.ccdf(np.arange(-20.0, 10)), True),  # dBm
-        (LAW.level_db(DECADES), DECADES, False),  # four points tell little, and refuse little
-        (LAW.level_db(DECADES) + 20, DECADES, True),
-    ],
-)
-def test_levels_that_cannot_be_over_the_mean_are_refused(level_db, probability, is_refused):
-    if not is_refused:
-        check_over_mean("x.csv", level_db, probability)
-        return
-    with pytest.raises(FileError) as caught:
-        check_over_mean("x.csv", level_db, probability)
-    assert caught.value.where == "x.csv"
-    assert "mean" in caught.value.problem

@@ -1,3 +1,5 @@
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
@@ -47,6 +49,12 @@ def test_rows_rise(gain):
         assert (np.diff(table.input_dbm) > 0).all()
         assert (np.diff(table.output_dbm) >= 0).all()
         assert table.is_fit == by_fit
+
+
+def test_rows_rise_where_the_gain_at_low_levels_is_unsure(gain):
+    off = replace(gain.small, gain_db=gain.small.gain_db + 6)
+    table = table_of(replace(gain, small=off), by_fit=False)
+    assert (np.diff(table.output_dbm) >= 0).all()
 
 
 def test_what_is_relative_says_so_and_files_are_kept(gain, tmp_path):

@@ -137,6 +137,8 @@ def test_a_curve_without_a_count_is_matched_where_its_points_reach():
     assert found.resolved_to == pytest.approx(0.01)
     assert found.needed is None
     assert compare(GAUSSIAN, curve, down_to=0.01).verdict == "match"
+    # Its points go on to 1e-3 and agree, but may be those of one sample.
+    assert compare(GAUSSIAN, curve, down_to=0.002).verdict == "undecided"
 
 
 def test_a_wall_stands_where_it_is():

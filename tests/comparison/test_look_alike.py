@@ -34,6 +34,13 @@ def test_noise_is_gaussian_and_no_more_is_fitted():
     assert abs(first.largest_deviation_db) < 1e-9
 
 
+def test_a_number_that_gains_nothing_is_not_fitted():
+    """A ceiling at 9.6 dB stands 0.04 dB below the level at 0.01 %: none is as good."""
+    first = nearest(clip_law(GaussianLaw(), 9.6))
+    assert first.family.name == "complex Gaussian"
+    assert abs(first.largest_deviation_db) > 0.01
+
+
 def test_a_ceiling_is_found():
     first = nearest(clip_law(GaussianLaw(), 7.3))
     assert first.family.parameter == "ceiling_db"

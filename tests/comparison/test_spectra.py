@@ -69,6 +69,10 @@ def test_equal_densities_differ_by_their_own_noise(side):
     assert not spectrum_warnings((side(), side()), found)
 
 
+def test_densities_are_compared_centre_on_centre(side):
+    assert abs(difference(side(centre_hz=1e5), side()).largest_db) < 1.2
+
+
 def test_a_tilt_is_seen(side):
     first, second = side(), side()
     samples = second.signal.samples

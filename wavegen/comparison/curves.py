@@ -14,15 +14,10 @@ import numpy as np
 import scipy.special
 from numpy.typing import ArrayLike, NDArray
 
-from wavegen.core.errors import FileError
 from wavegen.dsp.monotone_cubic import MonotoneCubic
 from wavegen.meters.intervals import RESOLVING_RUNS, SampledStatistics
 
 Reals = NDArray[np.float64]
-_DB = 10 / np.log(10)
-MEAN_MARGIN_DB = 0.25
-"""How far the mean that a curve of points allows may lie from 0 dB before it is refused: twice
-what a reading to 0.1 dB can be off."""
 
 
 class Curve(Protocol):
@@ -270,43 +265,3 @@ class PointsCurve:
         """Return 1: the samples are taken as independent; 0 where their number is not stated."""
         is_told = self.n_samples is not None and not self.is_exact
         return np.full(np.atleast_1d(probability).shape, 1.0 if is_told else 0.0)
-
-
-def check_over_mean(where: str, levels_db: Reals, probabilities: Reals) -> None:
-    """Refuse points that cannot be levels over a mean power.
-
-    Parameters
-    ----------
-    where : str
-        The file.
-    levels_db, probabilities : float64 arrays, shape (n_points,)
-        As in :class:`PointsCurve`.
-
-    Raises
-    ------
-    FileError
-        The mean of every distribution that goes through the points lies above or below 0 dB.
-
-    Notes
-    -----
-    ``E[p] = integral of P(p > x) dx``, and P falls: between two points it is at most the higher
-    probability and at least the lower one. Below the first point it is at most 1, beyond the
-    last nothing bounds the power unless its probability is small: up to 1 % there may stand 6 dB
-    higher at most, which moves the mean by 4 % of it.
-    """
-    power = np.exp(levels_db / _DB)
-    steps = np.diff(power)
-    least = power[0] * probabilities[0] + float(np.sum(steps * probabilities[1:]))
-    most = power[0] + float(np.sum(steps * probabilities[:-1]))
-    ends = float(probabilities[-1])
-    most = most + 4 * ends * float(power[-1]) if ends <= 0.01 else np.inf
-    low_db, high_db = (float(_DB * np.log(max(x, 1e-30))) for x in (least, most))
-    if low_db <= MEAN_MARGIN_DB and high_db >= -MEAN_MARGIN_DB:
-        return
-    words = f"at least {low_db:.2f}" if low_db > 0 else f"at most {high_db:.2f}"
-    raise FileError(
-        where=where,
-        problem=f"the mean of a power with these probabilities is {words} dB on its own scale",
-        allowed="levels over the mean power, whose mean is 0 dB",
-        remedy="Check the unit of the probability (percent or fraction), and what levels are over.",
-    )

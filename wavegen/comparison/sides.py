@@ -11,16 +11,14 @@ import numpy as np
 from wavegen.comparison.curves import (
     Curve,
     ExactCurve,
-    PointsCurve,
     SampledCurve,
     ScaleStatistics,
-    check_over_mean,
 )
-from wavegen.core.errors import ArgumentsError, FileError, SignalError
+from wavegen.comparison.printed_curves import loop_curve, read_points
+from wavegen.core.errors import ArgumentsError, SignalError
 from wavegen.core.progress import Progress, silent
 from wavegen.core.signal import Signal
 from wavegen.dsp.bursts import Bursts
-from wavegen.files.curve import read_curve
 from wavegen.files.format import ReadHints
 from wavegen.laws.term import NoLaw
 from wavegen.meters.batches import BatchedStatistics
@@ -32,7 +30,6 @@ from wavegen.production.measured_rows import fault_rows, fault_text
 from wavegen.production.measured_signal import MeasuredSignal, measure_signal, on_peak_db
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.show import is_curve, is_sidecar
-from wavegen.production.sidecar import GRID_STEP_DB
 from wavegen.production.stimulus import find_stimulus
 from wavegen.production.subject import Subject
 from wavegen.production.subject_files import WHOLE_FILE, FilePart, open_subject
@@ -45,7 +42,6 @@ LAW, GENERATED = "the law of a recipe", "the loop that a recipe makes"
 SIDECAR, POINTS = "a sidecar", "a CCDF curve by its points"
 CURVE_FORMAT = "curve"
 """Format by which a table without headings is read as a curve."""
-FEWEST_POINTS = 4
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -356,13 +352,7 @@ def _sidecar_side(settings: SideSettings, path: Path) -> Side:
         figures = document["on_time"]
         if figures is None:
             raise _misfit(settings, "--gate", "has no on-time apart", "--gate with a gated loop")
-    ccdf = figures["ccdf"]
-    curve = PointsCurve(
-        levels=np.array(ccdf["level_db"]),
-        probabilities=np.array(ccdf["probability"]),
-        reading_db=GRID_STEP_DB / 2,
-        is_exact=True,
-    )
+    curve = loop_curve(figures["ccdf"]["level_db"], figures["ccdf"]["probability"])
     return Side(
         name=path.name,
         is_=f"{SIDECAR}: {document['title'] or document['recipe']['name']}, {LOOP}",
@@ -381,17 +371,8 @@ def _points_side(settings: SideSettings, path: Path) -> Side:
     _refuse_samples(settings, "is a curve by its points, without samples")
     if settings.gate is not None:
         raise _misfit(settings, "--gate", "is a curve by its points", "--gate with samples")
-    found = read_curve(path)
-    used = np.unique(found.probability[found.probability > 0])
-    if used.size < FEWEST_POINTS:
-        raise FileError(
-            where=str(path),
-            problem=f"has {used.size} different probabilities above 0",
-            allowed=f"{FEWEST_POINTS} points or more to compare a curve by",
-            remedy="Export more points of the curve.",
-        )
-    check_over_mean(str(path), found.level_db, found.probability)
-    n_samples = settings.curve_samples or found.n_samples
+    curve = read_points(path, n_samples=settings.curve_samples, reading_db=settings.reading_db)
+    n_samples = curve.n_samples
     told = (
         f"its uncertainty is that of {n_samples} independent samples"
         if n_samples
@@ -400,12 +381,7 @@ def _points_side(settings: SideSettings, path: Path) -> Side:
     return Side(
         name=path.name,
         is_=POINTS,
-        curve=PointsCurve(
-            levels=found.level_db,
-            probabilities=found.probability,
-            n_samples=n_samples,
-            reading_db=settings.reading_db,
-        ),
+        curve=curve,
         n_samples=n_samples,
         warnings=(told,),
     )
