@@ -145,8 +145,9 @@ def correcting_lines(
         moved = ahead(state, before, factor) if factor else state
         back = scipy.fft.ifft(in_band(moved), axis=1, norm="forward", overwrite_x=True)
         left = np.subtract(rows, back, out=np.asarray(back))
+        left += moved
         before, spent = state, before
-        state = excess_over(left.reshape(-1), amplitude, plus=moved.reshape(-1), out=spent)
+        state = excess_over(left.reshape(-1), amplitude, out=spent)
         state = state.reshape(rows.shape)
     lines = in_band(state)
     return np.negative(lines, out=lines)
@@ -193,9 +194,8 @@ class DualRound(Signal):
             if len(arrays) == 3 and self.factor:
                 moved = ahead(moved, arrays[2][low : high + 2 * reach], self.factor)
             left = self.band.apply(moved, high - low, base=source[low:high])
-            out[low:high] = excess_over(
-                left, self.amplitude, plus=moved[reach : reach + high - low]
-            )
+            left += moved[reach : reach + high - low]
+            excess_over(left, self.amplitude, out=out[low:high])
         return out
 
 

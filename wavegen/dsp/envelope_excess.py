@@ -18,7 +18,6 @@ from wavegen.dsp.compiled import compiled, numba_types
 
 BLOCK_SAMPLES = 1 << 14
 """Samples worked on at once: 128 kB in, 128 kB out, 64 kB of power."""
-_NONE = np.empty(0, np.float32)
 
 
 def power_of(samples: Samples, *, out: NDArray[np.float32] | None = None) -> NDArray[np.float32]:
@@ -76,7 +75,6 @@ def excess_over(
     samples: Samples,
     amplitude: float,
     *,
-    plus: Samples | None = None,
     out: Samples | None = None,
 ) -> Samples:
     """Return what a polar clip takes away: ``x (1 - A / |x|)`` where ``|x| > A``, else zero.
@@ -87,8 +85,6 @@ def excess_over(
         Not changed.
     amplitude : float
         Largest envelope let through, ``A``.
-    plus : complex64 array, shape (n,), optional
-        Added to the samples first; not changed.
     out : complex64 array of n, optional
         Where it goes, in any shape; contiguous.
 
@@ -105,23 +101,20 @@ def excess_over(
     kernel = _compile()
     made = np.empty(samples.size, np.complex64) if out is None else out.reshape(-1)
     if kernel is None:
-        made[:] = excess_by_numpy(samples, amplitude, plus=plus)
+        made[:] = excess_by_numpy(samples, amplitude)
         return made
     first = np.ascontiguousarray(samples).view(np.float32)
-    second = _NONE if plus is None else np.ascontiguousarray(plus).view(np.float32)
     limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
-    kernel(first, second, limit, top, made.view(np.float32))
+    kernel(first, limit, top, made.view(np.float32))
     return made
 
 
-def excess_by_numpy(samples: Samples, amplitude: float, *, plus: Samples | None = None) -> Samples:
+def excess_by_numpy(samples: Samples, amplitude: float) -> Samples:
     """Do what :func:`excess_over` does, without a compiler; same parameters, same bits."""
     out = np.zeros(samples.size, np.complex64)
     limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
     for low in range(0, samples.size, BLOCK_SAMPLES):
         block = samples[low : low + BLOCK_SAMPLES]
-        if plus is not None:
-            block = block + plus[low : low + BLOCK_SAMPLES]
         power = power_of(block)
         above = np.flatnonzero(power > limit)
         if above.size:
@@ -165,24 +158,19 @@ def _compile() -> Callable[..., None] | None:
         return None
     f32 = kinds.float32
     held = kinds.Array(f32, 1, "C", readonly=True)
-    signature = kinds.void(held, held, f32, f32, kinds.Array(f32, 1, "C"))
+    signature = kinds.void(held, f32, f32, kinds.Array(f32, 1, "C"))
     return compiled(signature, _excess)
 
 
 def _excess(
     samples: NDArray[np.float32],
-    plus: NDArray[np.float32],
     limit: np.float32,
     top: np.float32,
     out: NDArray[np.float32],
 ) -> None:
-    has_plus = plus.size > 0
     one = np.float32(1)
     for k in range(samples.size // 2):
         real, imag = samples[2 * k], samples[2 * k + 1]
-        if has_plus:
-            real += plus[2 * k]
-            imag += plus[2 * k + 1]
         power = real * real + imag * imag
         if power > limit:
             share = one - top / np.sqrt(power)

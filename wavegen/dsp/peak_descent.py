@@ -20,13 +20,13 @@ from __future__ import annotations
 from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cache
-from typing import Any
 
 import numpy as np
 import scipy.fft
 from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
+from wavegen.dsp.compiled import compiled, numba_types
 from wavegen.dsp.envelope_excess import excess_over, power_of
 from wavegen.dsp.mapping_kernel import read_values, write_values
 
@@ -215,27 +215,15 @@ def advance_by_numpy(
 @cache
 def _compile() -> tuple[Callable[..., None], Callable[..., None]] | None:
     """Return the compiled loops, or None where numba is missing or switched off."""
-    try:
-        import numba
-    except ImportError:
+    kinds = numba_types()
+    if kinds is None:
         return None
-    if getattr(numba.config, "DISABLE_JIT", False):
-        return None
-    kinds: Any = numba.types
     plane, line = kinds.Array(kinds.float32, 2, "C"), kinds.Array(kinds.float32, 1, "C")
     places, counts = kinds.Array(kinds.int32, 2, "C"), kinds.Array(kinds.int64, 1, "C")
     state = kinds.Tuple((places, counts, kinds.Array(kinds.float64, 1, "C")))
-    signatures = (
-        kinds.void(kinds.UniTuple(plane, 2), places, counts, line),
-        kinds.void(kinds.UniTuple(plane, 3), line, state, kinds.float64),
-    )
-    loops: tuple[Callable[..., None], ...] = (_steps, _advance)
-    pairs = list(zip(signatures, loops, strict=True))
-    try:
-        made = [numba.njit(kind, nogil=True, cache=True)(loop) for kind, loop in pairs]
-    except RuntimeError:  # no folder can be written for the cache
-        made = [numba.njit(kind, nogil=True)(loop) for kind, loop in pairs]
-    return made[0], made[1]
+    steps = kinds.void(kinds.UniTuple(plane, 2), places, counts, line)
+    onwards = kinds.void(kinds.UniTuple(plane, 3), line, state, kinds.float64)
+    return compiled(steps, _steps), compiled(onwards, _advance)
 
 
 def _steps(
