@@ -52,7 +52,8 @@ def _imports(node, *, is_inside):
             yield Import(child.module, child.lineno, is_inside, names)
         else:
             is_function = isinstance(child, ast.FunctionDef | ast.AsyncFunctionDef | ast.Lambda)
-            yield from _imports(child, is_inside=is_inside or is_function)
+            is_never_run = isinstance(child, ast.If) and ast.unparse(child.test) == "TYPE_CHECKING"
+            yield from _imports(child, is_inside=is_inside or is_function or is_never_run)
 
 
 def read_module(path, name=None):

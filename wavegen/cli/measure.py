@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -22,10 +23,13 @@ from wavegen.cli.options import (
     is_recipe,
     refuse_reading,
 )
+from wavegen.cli.report_options import add_reports, are_wanted, report_measurement
 from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
     from wavegen.production.measure_settings import MeasureSettings
+    from wavegen.production.subject import Subject
+    from wavegen.production.views import Views
 
 DONE, UNDECIDED = 0, 6
 
@@ -57,6 +61,7 @@ class Measure:
         add_levels(parser)
         add_gate(parser)
         add_sensor(parser)
+        add_reports(parser)
         add_overrides(parser)
         add_workers(parser)
 
@@ -67,18 +72,25 @@ class Measure:
 
         keep_large_blocks()
         settings = settings_of(arguments)
+        are_wanted(arguments)
         progress = ConsoleProgress()
         try:
             if any(is_recipe(subject) for subject in arguments.subjects):
-                document = _recipe(arguments, settings, progress)
+                document, subjects = _recipe(arguments, settings, progress)
             else:
-                document = _files(arguments, settings, progress)
+                document, subjects = _files(arguments, settings, progress)
+            said: list[str] = []
+            if are_wanted(arguments):
+                views = _views(arguments, subjects, progress)
+                said = report_measurement(arguments, document, views)
         finally:
             progress.close()
         if arguments.json:
             console.document(document)
         else:
             show(document, console)
+            for line in said:
+                console.line(line)
         return status_of(document, arguments.at)
 
 
@@ -90,13 +102,34 @@ def status_of(document: dict[str, Any], asked: list[float]) -> int:
     return DONE if any(resolved) else UNDECIDED
 
 
+def _views(
+    arguments: argparse.Namespace, subjects: Sequence[Subject], progress: ConsoleProgress
+) -> Views | None:
+    """Return the material for pictures of one subject; of several there is no one signal."""
+    if len(subjects) != 1 or subjects[0].is_power:
+        return None
+    from wavegen.production.views import views_of
+
+    subject = subjects[0]
+    return views_of(
+        subject.signal,
+        loops=subject.loops,
+        graph=subject.signal if is_recipe(arguments.subjects[0]) else None,
+        bursts=subject.bursts,
+        workers=arguments.workers,
+        progress=progress,
+    )
+
+
 def _recipe(
     arguments: argparse.Namespace, settings: MeasureSettings, progress: ConsoleProgress
-) -> dict[str, Any]:
+) -> tuple[dict[str, Any], list[Subject]]:
     from wavegen.production.measure import measure_recipe
     from wavegen.production.prepare import prepare
+    from wavegen.production.subject import Subject
     from wavegen.recipe.find import find_recipe
     from wavegen.recipe.load import load_recipe
+    from wavegen.stages.channel.gate import on_time
 
     problem = "a recipe is measured as the whole loop that it makes"
     if len(arguments.subjects) > 1:
@@ -127,10 +160,13 @@ def _recipe(
             allowed="one at a time: " + ("0 or 1" if len(channels) > 1 else "0"),
             remedy="Add --channel 0, or another." if len(channels) > 1 else "Leave it out.",
         )
+    prepared = channels[chosen or 0]
     document = measure_recipe(
-        channels[chosen or 0], settings=settings, workers=arguments.workers, progress=progress
+        prepared, settings=settings, workers=arguments.workers, progress=progress
     )
-    return document | ({"channel": chosen} if len(channels) > 1 else {})
+    signal = prepared.built.signal
+    seen = Subject(name=loaded.name, signal=signal, loops=True, bursts=on_time(signal))
+    return document | ({"channel": chosen} if len(channels) > 1 else {}), [seen]
 
 
 def _misfit(*, where: str, problem: str) -> ArgumentsError:
@@ -144,7 +180,7 @@ def _misfit(*, where: str, problem: str) -> ArgumentsError:
 
 def _files(
     arguments: argparse.Namespace, settings: MeasureSettings, progress: ConsoleProgress
-) -> dict[str, Any]:
+) -> tuple[dict[str, Any], list[Subject]]:
     from wavegen.production.measure import measure
     from wavegen.production.subject_files import FilePart, open_subject
 
@@ -167,7 +203,8 @@ def _files(
         open_subject(Path(name), hints, part, reads_markers=reads_markers)
         for name in arguments.subjects
     ]
-    return measure(*subjects, settings=settings, workers=arguments.workers, progress=progress)
+    document = measure(*subjects, settings=settings, workers=arguments.workers, progress=progress)
+    return document, subjects
 
 
 def show(document: dict[str, Any], console: Console) -> None:

@@ -20,6 +20,7 @@ from wavegen.cli.options import (
     tolerance_db,
     whole,
 )
+from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
 from wavegen.core.errors import ArgumentsError
 
 MOST_SEED = 2**63 - 1
@@ -68,6 +69,7 @@ class Shape:
             help="what a level may be off by (default: 0.05dB)",
         )
         parser.add_argument("--keep-dc", action="store_true", help="follow a DC offset too")
+        add_reports(parser, has_overwrite=True)
         add_workers(parser)
         add_overrides(parser)
         add_reading(parser)
@@ -79,6 +81,7 @@ class Shape:
         """Shape a stimulus and print how near it came."""
         from wavegen.comparison.shape import TOLERANCE_DB, ShapeSettings, shape
 
+        are_wanted(arguments)
         field = _field(arguments)
         name = arguments.name or f"{Path(field.subject).name.partition('.')[0]}-shaped"
         _check_name(name)
@@ -101,12 +104,15 @@ class Shape:
                 workers=arguments.workers,
                 progress=progress,
             )
+            said = report_comparison(arguments, document) if are_wanted(arguments) else []
         finally:
             progress.close()
         if arguments.json:
             console.document(document)
         else:
             show(document, console)
+            for line in said:
+                console.line(line)
         return STATUS[document["verdict"]]
 
 

@@ -9,6 +9,7 @@ METERS = Registry(
         "gated_power": "wavegen.meters.gated:GatedPowerMeter",
         "batched_power": "wavegen.meters.batches:BatchedPowerMeter",
         "mean": "wavegen.meters.mean:MeanMeter",
+        "opening": "wavegen.meters.opening:OpeningMeter",
         "burst_powers": "wavegen.meters.burst_powers:BurstPowerMeter",
         "record": "wavegen.meters.record:RecordMeter",
         "envelope": "wavegen.meters.envelope:EnvelopeMeter",

@@ -15,15 +15,15 @@ from wavegen.reports.figures.time import envelope_figure, seam_picture
 from wavegen.reports.tables import percent, seam_words
 
 
-def pictures_of(document: dict[str, Any], views: Views, *, title: str) -> list[Picture]:
+def pictures_of(document: dict[str, Any], views: Views | None, *, title: str) -> list[Picture]:
     """Return every picture that a document and its views hold.
 
     Parameters
     ----------
     document : dict
         Of a stimulus (its sidecar) or of a measurement.
-    views : Views
-        The rest of the material.
+    views : Views or None
+        The rest of the material; None where there is no one signal.
     title : str
         Heading of each.
 
@@ -41,6 +41,8 @@ def pictures_of(document: dict[str, Any], views: Views, *, title: str) -> list[P
     found = [_ccdf(document, title)]
     if "pdf" in document:
         found.append(_density(document, title))
+    if views is None:
+        return found
     found.append(_envelope(views, title))
     if views.spectrum is not None:
         found.append(_spectrum(views.spectrum, title))

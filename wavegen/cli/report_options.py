@@ -1,0 +1,136 @@
+"""Pictures and report pages, on verbs that print a document."""
+
+from __future__ import annotations
+
+import argparse
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from wavegen.core.errors import ArgumentsError
+
+if TYPE_CHECKING:
+    from wavegen.production.views import Views
+    from wavegen.reports.figures.picture import Picture
+    from wavegen.reports.pages.page import Page
+
+PAGE_SUFFIXES = (".html", ".htm")
+
+
+def add_reports(parser: argparse.ArgumentParser, *, has_overwrite: bool = False) -> None:
+    """Declare where pictures and a report page go.
+
+    Parameters
+    ----------
+    parser : ArgumentParser
+        Of a verb.
+    has_overwrite : bool
+        Whether it declares ``--overwrite`` itself.
+    """
+    group = parser.add_argument_group("pictures and a report page")
+    group.add_argument(
+        "--figures", type=Path, metavar="DIR", help="write pictures there, as SVG and PNG"
+    )
+    group.add_argument(
+        "--report", type=Path, metavar="FILE.html", help="write a page that opens in any browser"
+    )
+    if not has_overwrite:
+        group.add_argument("--overwrite", action="store_true", help="replace files that exist")
+
+
+def are_wanted(arguments: argparse.Namespace) -> bool:
+    """Return whether anything is to be drawn.
+
+    Raises
+    ------
+    ArgumentsError
+        A page that is no HTML file by its name.
+    """
+    page = arguments.report
+    if page is not None and page.suffix.lower() not in PAGE_SUFFIXES:
+        raise ArgumentsError(
+            where="--report",
+            problem=f"{str(page)[:100]} does not end in .html",
+            allowed="the name of an HTML file",
+            remedy="Write it like --report link.html.",
+        )
+    return arguments.figures is not None or page is not None
+
+
+def write_reports(
+    arguments: argparse.Namespace, pictures: Sequence[Picture], page: Page, *, stem: str
+) -> list[str]:
+    """Write what the options ask for, and return the sentences that say so.
+
+    Parameters
+    ----------
+    arguments : Namespace
+        With the options of :func:`add_reports`.
+    pictures : sequence of Picture
+        Of the document.
+    page : Page
+        Made of the same pictures.
+    stem : str
+        What pictures are called.
+
+    Raises
+    ------
+    FileError
+        A file exists, or cannot be written.
+    ArgumentsError
+        What draws is not installed.
+    """
+    from wavegen.reports.written import write_page, write_pictures
+
+    said = []
+    if arguments.figures is not None:
+        names = write_pictures(pictures, arguments.figures, stem, overwrite=arguments.overwrite)
+        said.append(f"{len(names)} pictures in {arguments.figures}.")
+    if arguments.report is not None:
+        write_page(page, arguments.report, overwrite=arguments.overwrite)
+        said.append(f"Report: {arguments.report}.")
+    return said
+
+
+def report_measurement(
+    arguments: argparse.Namespace, document: dict[str, Any], views: Views | None
+) -> list[str]:
+    """Draw a measurement; see :func:`write_reports`."""
+    from wavegen.reports.figures.stimulus import pictures_of
+    from wavegen.reports.pages.stimulus import measurement_page
+
+    pictures = pictures_of(document, views, title=document["name"])
+    page = measurement_page(document, pictures)
+    return write_reports(arguments, pictures, page, stem=stem_of(document["name"]))
+
+
+def report_comparison(arguments: argparse.Namespace, document: dict[str, Any]) -> list[str]:
+    """Draw a match, a shaped stimulus, a device or a tuning; see :func:`write_reports`."""
+    from wavegen.reports.figures import compared as figures
+    from wavegen.reports.pages import compared as pages
+
+    kind = document["format"].rpartition(".")[2]
+    draw, write = {
+        "match": (figures.match_pictures, pages.match_page),
+        "shape": (figures.shape_pictures, pages.shape_page),
+        "gain_curve": (figures.gain_pictures, pages.gain_page),
+        "tuning": (figures.tune_pictures, pages.tune_page),
+    }[kind]
+    pictures = draw(document)
+    page = write(document, pictures)
+    return write_reports(arguments, pictures, page, stem=stem_of(document.get("name") or kind))
+
+
+def stem_of(name: str) -> str:
+    """Return a name that a file can have.
+
+    Examples
+    --------
+    >>> stem_of("field run/7.sigmf-data")
+    '7'
+    >>> stem_of("2 files")
+    '2_files'
+    """
+    last = name.replace("\\", "/").rpartition("/")[2].partition(".")[0]
+    kept = "".join(c if c.isalnum() or c in "-_" else "_" for c in last)
+    return kept[:80] or "figures"
