@@ -150,6 +150,23 @@ def test_a_gate_leaves_the_on_time(made, recipe):
     assert sides[0].duty == pytest.approx(0.25, abs=0.02)  # less a guard at both ends
 
 
+def test_bursts_each_over_its_own_mean(recorded, noise):
+    """Half of the bursts 20 dB down: over the common mean they widen the curve."""
+    samples = noise(1 << 15)
+    place = np.arange(1 << 15) % 8192
+    samples[place % 2048 < 1024] = 0
+    samples[place >= 4096] *= 0.1
+    settings = recorded(samples)
+    threshold = {"by": "level", "threshold_db": -35.0}
+    pooled = open_side(SideSettings(**settings, gate=GateSettings(**threshold)))
+    each = open_side(SideSettings(**settings, gate=GateSettings(**threshold, each=True)))
+    wanted_db = float(GaussianLaw().level_db(0.1))
+    assert each.curve.level_db(0.1) == pytest.approx(wanted_db, abs=0.3)
+    assert pooled.curve.level_db(0.1) > wanted_db + 1
+    assert each.mean_db == pytest.approx(pooled.mean_db)
+    assert each.scale_curve is None
+
+
 def test_no_bursts_to_compare(recorded):
     with pytest.raises(SignalError) as caught:
         open_side(SideSettings(**recorded(np.ones(1 << 14)), gate=AUTO))

@@ -92,8 +92,8 @@ def add_sides(parser: argparse.ArgumentParser, sides: tuple[str, str]) -> None:
         Names of the sides: ``--gate`` holds for both, ``--field-gate`` for the field alone.
     """
     parser.epilog = (
-        f"Each option of the groups above may be given for one side alone: --{sides[0]}-gate,\n"
-        f"--{sides[1]}-format and so on; it then wins over the one for both."
+        "Each option of the groups above may be given for one side alone:\n"
+        f"--{sides[0]}-gate, --{sides[1]}-format and so on; it then wins over the one for both."
     )
     _declare(parser)
     for side in sides:

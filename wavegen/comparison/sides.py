@@ -218,21 +218,21 @@ def measured_side(
     if not gated and subject.bursts is not None:
         subject = _ungated(subject)
     found = measure_signal(subject, wanted, workers=workers, progress=progress)
-    statistics, batched, bursts = _of_interest(found, gated=gated)
+    statistics, batched, bursts = _of_interest(found, gate=settings.gate)
     warnings = list(subject.warnings)
     faults = _told(found, settings) if not subject.is_described else []
     warnings += [fault_text(row) for row in faults]
     level_dbm = subject.reference_level_dbm
     shift_db = statistics.mean_db + (level_dbm or 0.0)
     low_db = high_db = shift_db
-    exact = ExactCurve(source=statistics)
-    curve: Curve = exact
+    curve: Curve = ExactCurve(source=statistics)
     scale: Curve = ExactCurve(source=statistics, shift_db=shift_db)
     if batched is not None:
         sampled = SampledStatistics.of(batched)
         curve = SampledCurve(sampled=sampled)
         scale = SampledCurve(sampled=ScaleStatistics.of(batched), shift_db=shift_db)
         low_db, high_db = (x + (level_dbm or 0.0) for x in sampled.mean_interval_db())
+    levelled = _levelled_curve(found)
     peak_db = statistics.peak_db
     if gated:
         between = on_peak_db(found)
@@ -242,8 +242,8 @@ def measured_side(
     return Side(
         name=subject.name,
         is_=kind or (LOOP if subject.loops else RECORDING),
-        curve=curve,
-        scale_curve=scale,
+        curve=levelled or curve,
+        scale_curve=None if levelled else scale,  # bursts brought to one level have none
         mean_db=shift_db,
         mean_low_db=low_db,
         mean_high_db=high_db,
@@ -279,22 +279,32 @@ def _told(found: MeasuredSignal, settings: SideSettings) -> list[dict[str, Any]]
 
 
 def _of_interest(
-    found: MeasuredSignal, *, gated: bool
+    found: MeasuredSignal, *, gate: GateSettings | None
 ) -> tuple[PowerStatistics, BatchedStatistics | None, Bursts | None]:
     """Return statistics, batches of a recording, and bursts, of what is compared."""
-    if not gated:
+    if gate is None:
         return found.statistics, found.part.whole if found.part else None, None
-    gate = found.gate
-    if gate is None or gate.on is None:
-        reason = gate.found.reason if gate else "there are none"
+    seen = found.gate
+    if seen is None or seen.on is None:
+        reason = seen.found.reason if seen else "there are none"
         raise SignalError(
             where=found.subject.name,
             problem=f"has no bursts to compare: {reason}",
             allowed="a signal that is switched on and off, with --gate",
             remedy="Leave --gate out for this side, or help with --threshold.",
         )
-    recorded = None if found.subject.loops else gate.on
-    return gate.on.statistics, recorded, gate.found.bursts
+    recorded = None if found.subject.loops else seen.on
+    return seen.on.statistics, recorded, seen.found.bursts
+
+
+def _levelled_curve(found: MeasuredSignal) -> Curve | None:
+    """Return the curve of bursts each over its own mean, None unless that was asked for."""
+    levelled = found.gate.levelled if found.gate else None
+    if levelled is None:
+        return None
+    if found.subject.loops:
+        return ExactCurve(source=levelled.statistics)
+    return SampledCurve(sampled=SampledStatistics.of(levelled))
 
 
 # Recipes ----------------------------------------------------------------------------------
