@@ -27,6 +27,8 @@ def room_of(target):
 
 
 def complaints(module):
+    if not module.room:  # the Python interface stands right of all rooms
+        return
     for item in module.imports:
         where = f"{module.path.name}:{item.line} imports {item.target}"
         if item.target == "wavegen":
@@ -54,8 +56,8 @@ def test_imports_go_left_only(house):
 
 def test_rooms_init_hold_a_docstring_and_tables_only(house):
     for module in house.modules:
-        if module.path.name != "__init__.py":
-            continue
+        if module.path.name != "__init__.py" or not module.room:
+            continue  # the package itself names its verbs, which load when they are asked for
         assert ast.get_docstring(module.tree), module.name
         for node in module.tree.body[1:]:
             is_table = isinstance(node, ast.Assign | ast.AnnAssign)
