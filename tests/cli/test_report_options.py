@@ -3,6 +3,7 @@
 import argparse
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 from wavegen.cli.main import run
@@ -41,3 +42,26 @@ def test_nothing_is_drawn_unasked():
 )
 def test_names_that_files_can_have(name, stem):
     assert stem_of(name) == stem
+
+
+@pytest.fixture
+def pair(tmp_path):
+    rng = np.random.default_rng(7)
+    names = []
+    for name in ("in", "out"):
+        noise = rng.standard_normal(1 << 15) + 1j * rng.standard_normal(1 << 15)
+        path = tmp_path / f"{name}.cf32"
+        (0.1 * noise).astype("<c8").tofile(path)
+        names.append(str(path))
+    return [*names, "--format", "cf32_le", "--sample-rate", "1MHz"]
+
+
+@pytest.mark.parametrize(("verb", "name"), [("match", "ccdf"), ("gain-curve", "gain")])
+def test_comparisons_are_drawn(verb, name, pair, tmp_path, capsys):
+    words = [verb, *pair, "--figures", str(tmp_path / "f"), "--report", str(tmp_path / "r.html")]
+    assert run(words) in {0, 5, 6}
+    said = capsys.readouterr().out
+    assert "Report: " in said.replace("\n", " ")
+    assert any(f".{name}.svg" in path.name for path in (tmp_path / "f").iterdir())
+    assert "picture-" + name in (tmp_path / "r.html").read_text()
+    assert run(words) == 4

@@ -10,6 +10,7 @@ from wavegen.cli.check import STATUS
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.measure_options import probability
 from wavegen.cli.options import add_workers, tolerance_db
+from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
 from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
 from wavegen.core.errors import ArgumentsError
 
@@ -62,6 +63,7 @@ class GainCurve:
         parser.add_argument(
             "--overwrite", action="store_true", help="replace a file that exists already"
         )
+        add_reports(parser, has_overwrite=True)
         add_workers(parser)
         add_sides(parser, SIDES)
 
@@ -75,11 +77,15 @@ class GainCurve:
             side_of(arguments, "output", arguments.output),
         )
         refuse_stray_overrides(arguments, sides)
-        if arguments.model is None and (arguments.overwrite or arguments.model_from != "points"):
+        draws = are_wanted(arguments)
+        writes = draws or arguments.model is not None
+        if (arguments.overwrite and not writes) or (
+            arguments.model is None and arguments.model_from != "points"
+        ):
             raise ArgumentsError(
                 where="--overwrite/--model-from",
                 problem="no file is written",
-                allowed="these together with --model",
+                allowed="these together with --model (or --overwrite with --report or --figures)",
                 remedy="Add --model device.csv, or leave them out.",
             )
         tolerance, down_to = arguments.tolerance, arguments.down_to
@@ -93,12 +99,15 @@ class GainCurve:
         progress = ConsoleProgress()
         try:
             document = gain_curve(*sides, settings, workers=arguments.workers, progress=progress)
+            said = report_comparison(arguments, document) if draws else []
         finally:
             progress.close()
         if arguments.json:
             console.document(document)
         else:
             show(document, console)
+            for line in said:
+                console.line(line)
         return STATUS[document["verdict"]]
 
 

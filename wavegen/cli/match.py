@@ -9,6 +9,7 @@ from wavegen.cli.check import STATUS
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.measure_options import probability
 from wavegen.cli.options import add_workers, tolerance_db
+from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
 from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
 
 SIDES = ("stimulus", "field")
@@ -45,6 +46,7 @@ class Match:
             metavar="PROBABILITY",
             help="least probability compared (default: 0.01%%)",
         )
+        add_reports(parser)
         add_workers(parser)
         add_sides(parser, SIDES)
 
@@ -53,6 +55,7 @@ class Match:
         """Compare and print."""
         from wavegen.comparison.match import DEFAULT, MatchSettings, match
 
+        are_wanted(arguments)
         sides = (
             side_of(arguments, "stimulus", arguments.stimulus),
             side_of(arguments, "field", arguments.field),
@@ -66,12 +69,15 @@ class Match:
         progress = ConsoleProgress()
         try:
             document = match(*sides, settings, workers=arguments.workers, progress=progress)
+            said = report_comparison(arguments, document) if are_wanted(arguments) else []
         finally:
             progress.close()
         if arguments.json:
             console.document(document)
         else:
             show(document, console)
+            for line in said:
+                console.line(line)
         return STATUS[document["verdict"]]
 
 
