@@ -88,3 +88,30 @@ def test_a_sidecar_with_levels_of_another_kind(call, made):
     document["files"][0]["levels"] = "none"
     path.write_text(json.dumps(document))
     assert call("check", made).status == 4
+
+
+def test_a_law_is_asked_again(call, recipe):
+    noise = ("--set", "signal={kind: noise, bandwidth: 1 MHz}")
+    call("make", recipe(), *noise)
+    said = call("check", "output/pier", "--law-tolerance", "1dB", "--down-to", "1%")
+    assert said.status == 0
+    words = " ".join(said.out.split())
+    assert "against its law, measured: agrees within 1 dB down to 1 %" in words
+    assert "as its sidecar says" in " ".join(call("check", "output/pier").out.split())
+
+
+def test_5_where_a_file_differs_from_its_law(call, recipe, tmp_path):
+    call(
+        "make",
+        recipe(),
+        "--set",
+        "signal={kind: noise, bandwidth: 1 MHz}",
+        "--set",
+        "duration=20 ms",
+    )
+    path = tmp_path / "output" / "pier" / "pier.sigmf-data"
+    codes = np.fromfile(path, "<i2")
+    np.clip(codes, -4000, 4000).tofile(path)
+    said = call("check", "output/pier", "--tolerance", "20dB", "--json")
+    assert said.json()["differs_from_law"]
+    assert said.status == 5

@@ -13,6 +13,7 @@ from wavegen.cli import main
 from wavegen.cli.main import STATUS, VERBS, join_negative, parser, run, status_of
 from wavegen.core import errors
 from wavegen.core.errors import WavegenError
+from wavegen.production.judgement import Judgement
 
 COMMAND = "import sys; from wavegen.cli.main import run; sys.exit(run())"
 
@@ -116,10 +117,11 @@ def test_5_a_rating_would_be_exceeded(call, recipe, texts, tmp_path):
 
 
 def test_5_a_file_that_differs_from_its_law_is_kept(call, recipe, tmp_path, monkeypatch):
-    monkeypatch.setattr("wavegen.production.make.worst_verdict", lambda *_: "differs")
+    differs = Judgement(verdict="differs", statement="differs: by a fault of the test")
+    monkeypatch.setattr("wavegen.production.make.judge_files", lambda *_: [differs])
     said = call("make", recipe())
     assert said.status == 5
-    assert "DIFFERS FROM" in said.out
+    assert "DIFFERS FROM it: by a fault" in said.out
     assert (tmp_path / "output" / "pier" / "pier.sigmf-data").is_file()
 
 

@@ -170,3 +170,46 @@ def test_ceilings_near_both_ends(call, recipe, texts, ceiling):
     said = call("make", recipe(text + f"stages: [{{kind: clip, ceiling: {ceiling}}}]\n"), "--json")
     assert said.status == 0, said.err
     assert said.json()["papr_db"] < float(ceiling[:-3]) + 0.01
+
+
+NOISE = ("--set", "signal={kind: noise, bandwidth: 1 MHz}")
+
+
+def test_a_process_is_shown_beside_its_law(call, recipe):
+    said = call("make", recipe(), *NOISE, "--tolerance", "1dB", "--down-to", "1%")
+    assert said.status == 0
+    assert "process, 95 % jointly" in said.out
+    assert "agrees with it within 1 dB down to 1 %" in " ".join(said.out.split())
+    assert max(map(len, said.out.splitlines())) <= 80
+
+
+def test_no_law_is_told_by_name(call, recipe):
+    stages = ("--set", "stages=[{kind: filter, bandwidth: 500 kHz}]")
+    said = call("make", recipe(), *stages)
+    assert said.status == 0
+    assert "No law: " in said.out
+
+
+def test_the_best_of_several_seeds(call, recipe):
+    said = call("make", recipe(), *NOISE, "--best-of", "4", "--down-to", "1%")
+    assert said.status == 0
+    assert "of 1 to 4: its levels lie within" in " ".join(said.out.split())
+    document = call(
+        "make", recipe(), *NOISE, "--best-of", "4", "--down-to", "1%", "--overwrite", "--json"
+    ).json()
+    assert document["best_of"]["n_tried"] == 4
+    assert document["seed"] == document["best_of"]["chosen_seed"]
+
+
+def test_the_best_of_what_is_alike_is_refused(call, recipe, tmp_path):
+    said = call("make", recipe(), "--best-of", "4")
+    assert said.status == 2
+    assert "--best-of" in said.err
+    assert not (tmp_path / "output").exists()
+
+
+@pytest.mark.parametrize(
+    "given", [("--tolerance", "0dB"), ("--down-to", "50%"), ("--best-of", "1")]
+)
+def test_questions_that_mean_nothing(call, recipe, given):
+    assert call("make", recipe(), *given).status == 2

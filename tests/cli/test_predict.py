@@ -22,3 +22,21 @@ def test_a_recipe_that_is_missing(call):
 def test_overrides_count(call, recipe):
     said = call("predict", recipe(), "--set", "signal={kind: tones, count: 2, spacing: 1 MHz}")
     assert "3.01 dB" in said.out
+
+
+def test_how_long_a_loop_must_be(call, recipe):
+    noise = ("--set", "signal={kind: noise, bandwidth: 1 MHz}")
+    said = call("predict", recipe(), *noise, "--fault", "0.1dB", "--at", "0.1%")
+    assert "is found in 80 % of loops of about" in " ".join(said.out.split())
+    assert max(map(len, said.out.splitlines())) <= 80
+    document = call(
+        "predict", recipe(), *noise, "--fault", "0.2dB", "--at", "0.1%", "--json"
+    ).json()
+    assert 3e5 < document["fault"]["n_samples"] < 7e5
+    assert "any loop shows it" in call("predict", recipe(), "--fault", "1dB", "--at", "1%").out
+
+
+def test_a_fault_needs_its_probability(call, recipe):
+    said = call("predict", recipe(), "--fault", "0.1dB")
+    assert said.status == 2
+    assert "--at" in said.err

@@ -114,3 +114,18 @@ def test_no_probability_stands_above_the_reach():
     pair = RailPair(first=rail(QPSK), second=rail(QPSK))
     assert pair.reach(np.array([np.pi / 4]))[0] == pytest.approx(pair.peak)
     assert pair.above(np.array([pair.peak]))[0] == pytest.approx(0, abs=1e-12)
+
+
+def test_both_ways_to_the_characteristic_function_agree(monkeypatch):
+    """By radii, and by angles where densities are too sharp for radii."""
+    t = np.linspace(0.0, 40.0, 50)
+    taps = np.array([0.9, 0.31, -0.22, 0.17, 0.11, -0.09, 0.05, 0.04, 0.03, 0.02])
+    levels = np.array([-3.0, -1, 1, 3]) / np.sqrt(10)
+
+    def pair():
+        return RailPair(first=Rail(taps=taps, levels=levels), second=Rail(taps=taps, levels=levels))
+
+    by_radii = pair().characteristic(t)
+    monkeypatch.setattr("wavegen.laws.rails.MOST_NODES", 0)
+    monkeypatch.setattr(RailPair, "_radial", None)
+    np.testing.assert_allclose(pair().characteristic(t), by_radii, atol=1e-11)

@@ -4,6 +4,7 @@ from fractions import Fraction
 import pytest
 
 from wavegen.files.read import open_recording
+from wavegen.laws.term import NoLaw
 from wavegen.production.converted import Change, origin_of
 
 GATE = "stages: [{kind: gate, duty: 25 %, period: 0.5 ms}]\n"
@@ -26,7 +27,7 @@ def test_the_law_is_left_at_another_rate(lab, tmp_path):
     origin = origin_of(
         document(lab, tmp_path, lab.TONES), folder=tmp_path, rate_factor=Fraction(3, 2)
     )
-    assert origin.law is None
+    assert "change of rate" in origin.law.reason
     assert len(origin.notes) == 1
 
 
@@ -58,7 +59,8 @@ def test_nothing_is_built_where_nothing_is_asked(lab, tmp_path):
     found = document(lab, tmp_path, lab.SINGLE)
     found["recipe"]["text"] = "nonsense"
     origin = origin_of(found | {"law": None}, folder=tmp_path, rate_factor=Fraction(1))
-    assert (origin.law, origin.bursts, origin.notes) == (None, None, ())
+    assert isinstance(origin.law, NoLaw)
+    assert (origin.bursts, origin.notes) == (None, ())
 
 
 @pytest.mark.parametrize("earlier", [None, {"before": None}])

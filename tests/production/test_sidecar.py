@@ -99,6 +99,7 @@ def test_the_top_level_repeats_the_first_file(made, source):
         "align",
         "real",
         "channels",
+        "against_law",
     }:
         assert document[key] == first[key], key
 
@@ -115,7 +116,8 @@ def test_what_was_made_and_how(made):
     assert document["loop"]["cycle_samples"] == 4
     assert document["loop"]["seam"]["is_clean"]
     assert document["scaling"]["peak_dbfs"] == pytest.approx(-1, abs=1e-6)
-    assert document["law"] is None
+    assert document["law"]["verdict"] == "undecided"  # 2000 symbols
+    assert document["no_law"] is None
     assert "exposure" in document["safety"]
 
 

@@ -1,16 +1,20 @@
-from dataclasses import replace
 from types import SimpleNamespace
 
 import numpy as np
 import pytest
 
 from wavegen.files.datatypes import CF32_LE, CI8, CI16_LE
-from wavegen.laws.constant import ConstantLaw
-from wavegen.laws.gaussian import GaussianLaw
 from wavegen.meters.power import measure_samples
-from wavegen.production.verify import compare_with_law, law_levels, law_of, worst_verdict
+from wavegen.production.judgement import law_of
+from wavegen.production.verify import compare_with_loop, law_levels, rounding_reach
 
 TONES = "signal: {kind: tones, count: 8, spacing: 10 kHz, phases: newman}\n"
+
+
+def compare_with_law(law, file):
+    verdict, deviation = compare_with_loop(law, file.statistics, file.datatype)
+    assert bool(deviation) == (verdict == "differs")
+    return verdict
 
 
 def levels_of(file, level_db):
@@ -91,31 +95,17 @@ def test_a_single_spike_is_seen(lab):
         assert compare_with_law(law(lab), as_file(samples)) == verdict
 
 
-def test_no_law_is_undecided():
-    assert compare_with_law(None, as_file(np.ones(10))) == "undecided"
+def test_what_gives_a_difference_away_is_told(lab):
+    spike = tones(NEWMAN)
+    spike[np.argmax(np.abs(spike))] *= 1.02
+    statistics = as_file(spike).statistics
+    assert "peak stands +0.1" in compare_with_loop(law(lab), statistics, CF32_LE)[1]
+    fuller = tones(NEWMAN)
+    fuller[np.abs(fuller) < np.median(np.abs(fuller))] *= 1.1  # the mean rises, no peak does
+    said = compare_with_loop(law(lab), as_file(fuller).statistics, CF32_LE)[1]
+    assert "the law says" in said
 
 
-def test_one_file_that_differs_is_enough():
-    good, bad = as_file(np.ones(1000)), as_file(tones(NEWMAN))
-    assert worst_verdict(ConstantLaw(), [good, good]) == "agrees"
-    assert worst_verdict(ConstantLaw(), [good, bad]) == "differs"
-    assert worst_verdict(None, [good]) == "undecided"
-
-
-def test_law_of_takes_only_what_holds_for_every_loop(lab):
-    assert law_of(lab.prepared(lab.CARRIER)).holds == "every loop"
-    assert law_of(lab.prepared(lab.SINGLE)) is None
-    assert law_of(lab.prepared(lab.NOISE)) is None
-    staged = lab.TONES + "stages: [{kind: clip, ceiling: 2 dB}]\n"
-    assert law_of(lab.prepared(staged)) is None
-    assert GaussianLaw().holds == "over seeds"
-
-
-def test_a_file_that_differs_from_its_law_is_kept_and_told(lab, tmp_path, monkeypatch):
-    other = law(lab, "equal")
-    monkeypatch.setattr("wavegen.production.make.law_of", lambda _: other)
-    made = lab.make(lab.TONES, tmp_path)
-    assert made.differs
-    assert made.document["law"]["verdict"] == "differs"
-    assert all(path.is_file() for path in made.files)
-    assert not replace(made, document=made.document | {"law": None}).differs
+def test_reach_of_rounding():
+    assert rounding_reach(CI8) == pytest.approx(np.sqrt(0.5) / 128)
+    assert rounding_reach(CF32_LE) == 0

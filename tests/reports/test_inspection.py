@@ -2,6 +2,7 @@ from wavegen.reports.inspection import (
     check_table,
     converted_words,
     facts_table,
+    law_lines,
     listed_files,
     tree_table,
     verdict_words,
@@ -142,3 +143,16 @@ def test_files_of_a_recipe_and_of_a_sidecar():
     assert asked.rows == (("run", "wav cf32_le"),)
     there = listed_files({"is": "sidecar", "files": [item | {"name": "a", "is_there": False}]})
     assert there.rows == (("a", "wav cf32_le", "MISSING"),)
+
+
+def test_each_file_against_its_law():
+    rows = [{"verdict": "agrees", "statement": "agrees within 1 dB down to 1 %"}, None]
+    files = [
+        {"name": "a", "against_law": {"from": "measured", "channels": rows[:1]}},
+        {"name": "b", "against_law": {"from": "as its sidecar says", "channels": rows}},
+        {"name": "c", "against_law": None},
+    ]
+    assert law_lines({"files": files}) == [
+        "a: against its law, measured: agrees within 1 dB down to 1 %.",
+        "b, channel 0: against its law, as its sidecar says: agrees within 1 dB down to 1 %.",
+    ]

@@ -3,14 +3,17 @@ import pytest
 from wavegen.reports.tables import (
     bench_table,
     channel_table,
+    fault_words,
     file_table,
     fixed,
     law_words,
     length_words,
     level_table,
     percent,
+    process_table,
     seam_words,
     summary_table,
+    verdict_lines,
 )
 
 LEVELS = [
@@ -103,6 +106,53 @@ def test_verdicts(verdict, words):
     assert "8 tones" in said
     assert words in said
     assert ("400 different instants" in said) == (verdict != "undecided")
+
+
+def test_a_verdict_is_told_in_the_words_of_its_statement():
+    law = {"name": "x", "verdict": "differs", "statement": "differs: level at 1 %: +0.3 dB"}
+    assert law_words(law) == "Law: x; the file DIFFERS FROM it: level at 1 %: +0.3 dB."
+    law = {"name": "x", "verdict": "agrees", "statement": "agrees within 0.2 dB down to 1 %"}
+    assert law_words(law) == "Law: x; the file agrees with it within 0.2 dB down to 1 %."
+
+
+def test_what_is_said_of_the_verdict():
+    law = {"name": "x", "verdict": "agrees", "statement": "agrees at every level"}
+    second = {"law": None, "no_law": "y has no law"}
+    best = {
+        "first_seed": 3, "n_tried": 5, "chosen_seed": 6, "down_to": 0.01,
+        "deviation_db": 0.0314, "median_deviation_db": 0.1,
+    }  # fmt: skip
+    files = [
+        {"name": "a", "against_law": {"verdict": "agrees", "statement": "agrees at every level"}},
+        {"name": "b", "against_law": {"verdict": "differs", "statement": "differs: a fault"}},
+    ]
+    document = {"law": law, "second_channel": second, "best_of": best, "files": files}
+    lines = verdict_lines(document)
+    assert lines[0].startswith("Seed 6 of 3 to 7: its levels lie within 0.031 dB")
+    assert lines[1:] == [law_words(law), "Channel 1: No law: y has no law.", "b: differs: a fault."]
+    plain = {"law": None, "no_law": "z has no law", "files": files[:1]}
+    assert verdict_lines(plain) == ["No law: z has no law."]
+
+
+def test_the_process_beside_the_loop():
+    row = {
+        "probability": 10**-1.5, "law_db": 5.0, "level_db": 5.1, "low_db": 4.9, "high_db": None,
+        "is_within": False, "detectable_db": None,
+    }  # fmt: skip
+    table = process_table({"of": "all of the time", "compared": [row]})
+    assert table.rows == (("3.16 %", "5.00 dB", "5.10 dB", "4.90 dB to open", ""),)
+    assert process_table({"of": "x", "compared": []}) is None
+    assert process_table(None) is None
+
+
+def test_the_length_that_shows_a_fault():
+    fault = {
+        "fault_db": 0.1, "probability": 1e-3, "found_in": 0.8, "n_samples": 1_234_567,
+        "duration_s": 0.0123,
+    }  # fmt: skip
+    said = fault_words(fault)
+    assert "0.1 dB at 0.1 % is found in 80 % of loops of about 1200000 samples (12 ms)" in said
+    assert "any loop" in fault_words(fault | {"n_samples": None})
 
 
 def test_the_bench():

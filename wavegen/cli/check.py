@@ -8,6 +8,7 @@ from typing import Any
 
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import add_workers, tolerance_db
+from wavegen.cli.question_options import add_question, question_of
 
 STATUS = {"match": 0, "differ": 5, "undecided": 6}
 UNREADABLE = 4
@@ -19,8 +20,9 @@ class Check:
     summary = "check a stimulus against its sidecar"
     description = (
         "Check that files are still what their sidecar says: by their SHA-512, and where\n"
-        "that differs, by measuring them as a loop. A folder or a sidecar stands for all\n"
-        "files that it lists, a data file for itself. Exit status: 0 match, 5 differ,\n"
+        "that differs, by measuring them as a loop; and how they compare with the law of\n"
+        "their recipe. A folder or a sidecar stands for all files that it lists, a data\n"
+        "file for itself. Exit status: 0 match, 5 differ (from the sidecar or the law),\n"
         "6 undecided, 4 if a file is missing or cannot be read."
     )
 
@@ -37,6 +39,7 @@ class Check:
             default=None,
             help="largest difference that matches (default: 0.05dB, more than rounding makes)",
         )
+        add_question(parser, tolerance="--law-tolerance", is_stated=True)
         add_workers(parser)
 
     @staticmethod
@@ -53,6 +56,7 @@ class Check:
             document = check(
                 find_stimulus(arguments.stimulus),
                 tolerance_db=TOLERANCE_DB if arguments.tolerance is None else arguments.tolerance,
+                question=question_of(arguments.law_tolerance, arguments.down_to),
                 workers=arguments.workers,
                 progress=progress,
             )
@@ -65,12 +69,14 @@ class Check:
         for row in document["files"]:
             if not row["is_readable"]:
                 console.fail("; ".join(row["reasons"]))
-        return STATUS[document["verdict"]] if document["is_complete"] else UNREADABLE
+        if not document["is_complete"]:
+            return UNREADABLE
+        return STATUS["differ" if document["differs_from_law"] else document["verdict"]]
 
 
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one check."""
-    from wavegen.reports.inspection import check_table, verdict_words
+    from wavegen.reports.inspection import check_table, law_lines, verdict_words
 
     for row in document["files"]:
         for warning in row["warnings"]:
@@ -79,4 +85,6 @@ def show(document: dict[str, Any], console: Console) -> None:
     for row in document["files"]:
         for reason in row["reasons"] if row["is_readable"] else ():
             console.line(f"{row['name']}: {reason}.")
+    for line in law_lines(document):
+        console.line(line)
     console.line(verdict_words(document))

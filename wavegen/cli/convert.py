@@ -99,7 +99,7 @@ class Convert:
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one conversion."""
     from wavegen.reports.inspection import converted_words
-    from wavegen.reports.tables import file_table, law_words, level_table, summary_table
+    from wavegen.reports.tables import file_table, level_table, summary_table, verdict_lines
 
     for note in document["warnings"]:
         console.warn(f"{note['where']}: {note['text']}")
@@ -108,7 +108,8 @@ def show(document: dict[str, Any], console: Console) -> None:
     console.line(f"Converted {converted_words(document['converted'])}.")
     console.table(summary_table(document, title=f"{name} ({kind})"))
     console.table(level_table(document))
-    if document["law"]:
-        console.line(law_words(document["law"]))
+    if document.get("is") != "a recording":
+        for line in verdict_lines(document):
+            console.line(line)
     console.line(f"In {document['folder']}:")
     console.table(file_table(document))

@@ -8,6 +8,7 @@ from typing import Any
 
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import add_overrides, add_workers
+from wavegen.cli.question_options import add_question, tries
 from wavegen.core.errors import ArgumentsError
 
 DIFFERS = 5
@@ -33,6 +34,14 @@ class Make:
             "--out", type=Path, default=Path("output"), metavar="DIR", help="default: output"
         )
         parser.add_argument("--overwrite", action="store_true", help="replace files that exist")
+        add_question(parser)
+        parser.add_argument(
+            "--best-of",
+            type=tries,
+            metavar="K",
+            default=1,
+            help="try K seeds and make the loop whose levels lie nearest the law",
+        )
         add_overrides(parser)
         add_workers(parser)
 
@@ -42,6 +51,7 @@ class Make:
         from wavegen.core.allocation import keep_large_blocks
 
         keep_large_blocks()
+        from wavegen.production.judgement import Question
         from wavegen.production.make import make
         from wavegen.recipe.find import find_recipe
         from wavegen.recipe.load import load_recipe
@@ -60,6 +70,8 @@ class Make:
                     recipe,
                     out=arguments.out,
                     overwrite=arguments.overwrite,
+                    question=Question(tolerance_db=arguments.tolerance, down_to=arguments.down_to),
+                    best_of=arguments.best_of,
                     workers=arguments.workers,
                     progress=progress,
                 )
@@ -99,9 +111,10 @@ def show(document: dict[str, Any], console: Console) -> None:
         bench_table,
         channel_table,
         file_table,
-        law_words,
         level_table,
+        process_table,
         summary_table,
+        verdict_lines,
     )
 
     for note in (*document["rounded"], *document["warnings"]):
@@ -110,13 +123,14 @@ def show(document: dict[str, Any], console: Console) -> None:
     title = document["title"] or document["recipe"]["name"]
     console.table(summary_table(document, title=title))
     console.table(level_table(document))
-    if document["law"]:
-        console.line(law_words(document["law"]))
+    against = process_table(document["law"])
+    if against:
+        console.table(against)
+    for line in verdict_lines(document):
+        console.line(line)
     channels = channel_table(document)
     if channels:
         console.table(channels)
-        if document["second_channel"]["law"]:
-            console.line(f"Channel 1: {law_words(document['second_channel']['law'])}")
     bench = bench_table(document)
     if bench:
         console.table(bench)

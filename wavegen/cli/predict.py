@@ -6,7 +6,9 @@ import argparse
 from typing import Any
 
 from wavegen.cli.console import Console
-from wavegen.cli.options import add_overrides
+from wavegen.cli.measure_options import probability
+from wavegen.cli.options import add_overrides, ratio_db
+from wavegen.core.errors import ArgumentsError
 
 
 class Predict:
@@ -15,13 +17,26 @@ class Predict:
     summary = "say what a recipe's power statistics must be, without a sample"
     description = (
         "Print the levels that mathematics gives for a recipe at 10 % ... 1e-9, and the\n"
-        "highest peak that can occur. What has no law says so by name."
+        "highest peak that can occur. What has no law says so by name. With --fault and\n"
+        "--at, say how long a loop must be for its verdict to find such a fault."
     )
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
         parser.add_argument("recipe", metavar="RECIPE", help="a file, or a shipped recipe's name")
+        parser.add_argument(
+            "--fault",
+            type=ratio_db,
+            metavar="LEVEL",
+            help="say how long a loop must be to show that a level is off by this; needs --at",
+        )
+        parser.add_argument(
+            "--at",
+            type=probability,
+            metavar="P",
+            help="probability of the level with the fault, such as 0.1%%",
+        )
         add_overrides(parser)
 
     @staticmethod
@@ -31,8 +46,16 @@ class Predict:
         from wavegen.recipe.find import find_recipe
         from wavegen.recipe.load import load_recipe
 
+        if (arguments.fault is None) != (arguments.at is None):
+            raise ArgumentsError(
+                where="--fault and --at",
+                problem="one of the two is missing",
+                allowed="both or none",
+                remedy="Write --fault 0.1dB --at 0.1%.",
+            )
+        fault = None if arguments.fault is None else (arguments.fault, arguments.at)
         loaded = load_recipe(find_recipe(arguments.recipe), overrides=tuple(arguments.overrides))
-        document = predict(loaded)
+        document = predict(loaded, fault=fault)
         if arguments.json:
             console.document(document)
         else:
@@ -42,7 +65,7 @@ class Predict:
 
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one prediction."""
-    from wavegen.reports.tables import law_table
+    from wavegen.reports.tables import fault_words, law_table
 
     for note in (*document["rounded"], *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
@@ -51,3 +74,5 @@ def show(document: dict[str, Any], console: Console) -> None:
         console.line(f"{title}: no law. {document['no_law']}.")
         return
     console.table(law_table(document["law"], title=title))
+    if document["fault"]:
+        console.line(fault_words(document["fault"]))

@@ -18,6 +18,9 @@ MOST_ATOMS = 1 << 13
 MOST_POINTS = 1 << 17
 """Points of a rail's characteristic function; one that has not fallen by then is blurred."""
 NEGLIGIBLE = 1e-14
+MOST_NODES = 1 << 22
+"""Places in the plane at which densities are taken; where they are so sharp that it would take
+more, the characteristic function is averaged over the angle instead."""
 OVERSAMPLING = 8
 _SMALLEST = 1e-13
 _BLOCK = 1 << 12
@@ -262,9 +265,11 @@ class RailPair:
         if not self.second.peak and not self.first.is_listed:
             x, weight = _spread(self.first, t)
             return scipy.special.j0(np.outer(t, x)) @ weight
-        if self.first.is_listed or self.second.is_listed:
+        highest = float(t.max(initial=0.0))
+        is_fine = self._n_radii(highest) * self._n_angles > MOST_NODES
+        if self.first.is_listed or self.second.is_listed or is_fine:
             return self._averaged(t)
-        x, weight = self._radial(float(t.max(initial=0.0)))
+        x, weight = self._radial(highest)
         out = np.empty(t.size)
         rows = max(1, (1 << 20) // x.size)
         for low in range(0, t.size, rows):
@@ -272,12 +277,15 @@ class RailPair:
             out[part] = scipy.special.j0(np.outer(t[part], x)) @ weight
         return out
 
-    def _radial(self, highest: float) -> tuple[Reals, Reals]:
-        """Return envelopes and their weights: good for ``t`` up to ``highest``."""
+    def _n_radii(self, highest: float) -> int:
+        """Return how many envelopes are good for ``t`` up to ``highest``."""
         wanted = 0.6 * (highest + self._band) * self.peak + 64
         n = 64 << max(0, math.ceil(2 * math.log2(wanted / 64))) // 2
-        if n < wanted:
-            n = n * 3 // 2
+        return n * 3 // 2 if n < wanted else n
+
+    def _radial(self, highest: float) -> tuple[Reals, Reals]:
+        """Return envelopes and their weights: good for ``t`` up to ``highest``."""
+        n = self._n_radii(highest)
         made = self._radials.get(n)
         if made is None:
             made = self._radials[n] = self._radial_of(n)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from contextlib import suppress
 from typing import Any, Literal
 
 from wavegen.core.errors import FileError, SignalError
@@ -11,7 +12,9 @@ from wavegen.core.units import format_hz
 from wavegen.files.analytic import looped
 from wavegen.files.digest import sha512_of
 from wavegen.files.format import ReadHints, Recording
+from wavegen.production.judgement import Question
 from wavegen.production.measure import Subject, measure
+from wavegen.production.referee import Referee, law_verdicts_of
 from wavegen.production.sidecar import FORMAT
 from wavegen.production.stimulus import Stimulus, loop_warnings
 
@@ -45,10 +48,11 @@ def check(
     stimulus: Stimulus,
     *,
     tolerance_db: float = TOLERANCE_DB,
+    question: Question | None = None,
     workers: int = 1,
     progress: Progress = silent,
 ) -> dict[str, Any]:
-    """Compare the files of a stimulus with what its sidecar says of them.
+    """Compare the files of a stimulus with what its sidecar says of them, and with their law.
 
     Parameters
     ----------
@@ -56,6 +60,8 @@ def check(
         Its sidecar, and which of its files are meant.
     tolerance_db : float
         Largest difference of a level that still matches, dB; at least 0.
+    question : Question, optional
+        What *agrees with the law* means; as the sidecar says if not given.
     workers, progress
         As in :func:`wavegen.core.render.render`.
 
@@ -64,7 +70,8 @@ def check(
     dict
         JSON values: one entry for each file, and the verdict of all: ``differ`` if one differs,
         else ``undecided`` if one is. ``is_complete`` is False where a file is missing or cannot
-        be read.
+        be read. ``against_law`` of each file says how it compares with the law of its recipe, and
+        ``differs_from_law`` whether one does.
 
     Notes
     -----
@@ -72,12 +79,24 @@ def check(
     measured then. Any other is read as a loop, and its mean, peaks, PAPR and the levels of its
     CCDF are compared. A loop's figures are exact, but a level with fewer than ten samples beyond
     it hangs on those few: it is ``undecided``, and so is the file if only such levels differ.
+
+    The law is that of the recipe in the sidecar. What equal bytes came to stands there already,
+    unless another question is asked; everything else is judged from the file.
     """
+    referee = Referee.of(stimulus, question, workers=workers, progress=progress)
     files = [
-        check_file(stimulus, item, tolerance_db=tolerance_db, workers=workers, progress=progress)
+        check_file(
+            stimulus,
+            item,
+            tolerance_db=tolerance_db,
+            referee=referee,
+            workers=workers,
+            progress=progress,
+        )
         for item in stimulus.items
     ]
     verdicts = [row["verdict"] for row in files]
+    law_verdicts = [verdict for row in files for verdict in law_verdicts_of(row)]
     return {
         "format": f"{FORMAT}.check",
         "version": 1,
@@ -87,6 +106,7 @@ def check(
         "verdict": _worst(verdicts),
         "is_complete": all(row["is_readable"] for row in files),
         "tolerance_db": tolerance_db,
+        "differs_from_law": "differs" in law_verdicts,
         "files": files,
     }
 
@@ -101,6 +121,7 @@ def check_file(
     item: dict[str, Any],
     *,
     tolerance_db: float,
+    referee: Referee,
     workers: int = 1,
     progress: Progress = silent,
 ) -> dict[str, Any]:
@@ -114,6 +135,8 @@ def check_file(
         The entry.
     tolerance_db, workers, progress
         As in :func:`check`.
+    referee : Referee
+        Judges it by its law.
 
     Returns
     -------
@@ -135,6 +158,7 @@ def check_file(
         "papr_difference_db": None,
         "levels": [],
         "channels": None,
+        "against_law": None,
         "warnings": [],
     }
     path = stimulus.path.parent / item["name"]
@@ -150,7 +174,10 @@ def check_file(
     facts = _other_facts(recording, stimulus.document, item)
     if facts:
         return row | {"verdict": "differ", "compared_by": "facts", "reasons": facts}
-    if is_equal and recording.datatype.name == item["datatype"]:
+    is_same = is_equal and recording.datatype.name == item["datatype"]
+    with suppress(SignalError, FileError):  # what cannot be measured is told below
+        row["against_law"] = referee.judge(item, recordings, is_same=is_same)
+    if is_same:
         return row | _SAME
     stated = item["channels"] or [item]
     found = [

@@ -34,8 +34,10 @@ from wavegen.production.converted import Change, Origin, converted_document, ori
 from wavegen.production.doubts import doubts_of_files
 from wavegen.production.export import STRIP_SAMPLES, Channel, ExportedFile, Written, export
 from wavegen.production.input_file import InputFile, moved, open_input
+from wavegen.production.judgement import data_samples_of
 from wavegen.production.resampling import loop_at_rate, recording_at_rate
-from wavegen.production.sidecar import FORMAT, as_csv, as_json, file_row, note_rows
+from wavegen.production.sidecar import FORMAT, as_csv, as_json, note_rows
+from wavegen.production.stimulus_document import file_row
 
 _MOST_DB = 300
 """Beyond, float32 samples run out of range."""
@@ -159,7 +161,13 @@ def convert(
             signal = _to_scratch(signal, stack, drafts.folder, workers, progress)
         gain = _gain(signal, wanted, workers, progress, loops=source.loops)
         file = export(
-            [Channel(signal=signal, bursts=origin.bursts)],
+            [
+                Channel(
+                    signal=signal,
+                    bursts=origin.bursts,
+                    data_samples=data_samples_of(origin.law, signal, workers=workers),
+                )
+            ],
             gain=gain,
             form=form,
             facts=facts,

@@ -13,15 +13,16 @@ from wavegen.core.site import Note
 from wavegen.dsp.bursts import Bursts
 from wavegen.files.format import Recording
 from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw
 from wavegen.meters.seam import SeamFigure
 from wavegen.production.bench import PathLevel, refuse_overload
 from wavegen.production.export import ExportedFile
+from wavegen.production.judgement import DEFAULT, judge, law_of
+from wavegen.production.law_rows import law_document, process_rows
 from wavegen.production.prepare import prepare
 from wavegen.production.sidecar import (
-    file_row,
     gaussian_reference,
     grid_db,
-    law_document,
     note_rows,
     on_figures,
     power_figures,
@@ -29,9 +30,11 @@ from wavegen.production.sidecar import (
     seam_row,
     versions,
 )
-from wavegen.production.verify import law_of, worst_verdict
+from wavegen.production.stimulus_document import file_row
 from wavegen.recipe.load import load_text
 from wavegen.stages.channel.gate import on_time
+
+NO_RECIPE = NoLaw(reason="the file has no recipe")
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -40,15 +43,15 @@ class Origin:
 
     Parameters
     ----------
-    law : Law or None
-        Exact curve where there is one, and the rate is unchanged.
+    law : Law or NoLaw
+        What the power statistics must be; none by name after a change of rate.
     bursts : Bursts or None
         When the loop is on, at its new rate; None if it is never off.
     notes : tuple of str
         What could not be carried over.
     """
 
-    law: Law | None = None
+    law: Law | NoLaw = NO_RECIPE
     bursts: Bursts | None = None
     notes: tuple[str, ...] = ()
 
@@ -111,8 +114,12 @@ def origin_of(document: dict[str, Any], *, folder: Path, rate_factor: Fraction) 
     notes = []
     if has_law and rate_factor != 1:
         notes.append("the law of the recipe is not compared after a change of rate")
+    if has_law and rate_factor != 1:
+        none = NoLaw(reason="the law of the recipe is not compared after a change of rate")
+    else:
+        none = NoLaw(reason=document["no_law"] or "the law could not be carried over")
     if not is_gated and (not has_law or rate_factor != 1):
-        return Origin(notes=tuple(notes))
+        return Origin(law=none, notes=tuple(notes))
     try:
         loaded = load_text(
             recipe["text"], name=recipe["name"], overrides=recipe["overrides"], folder=folder
@@ -130,12 +137,13 @@ def origin_of(document: dict[str, Any], *, folder: Path, rate_factor: Fraction) 
             f"the {' and the '.join(lost)} could not be carried over: the recipe in the sidecar "
             f"cannot be built here ({error})"
         )
-        return Origin(notes=tuple(notes))
+        return Origin(law=none, notes=tuple(notes))
     for earlier in _earlier_factors(document):
         rate_factor *= earlier
     if rate_factor != 1:
-        return Origin(bursts=bursts.resampled(rate_factor) if bursts else None, notes=tuple(notes))
-    return Origin(law=law if has_law else None, bursts=bursts)
+        moved = bursts.resampled(rate_factor) if bursts else None
+        return Origin(law=none, bursts=moved, notes=tuple(notes))
+    return Origin(law=law if has_law else none, bursts=bursts)
 
 
 def _earlier_factors(document: dict[str, Any]) -> list[Fraction]:
@@ -185,6 +193,7 @@ def converted_document(
     """
     codes = file.channels[0]
     duty = float(origin.bursts.duty) if origin.bursts else None
+    judgement = judge(origin.law, codes, file.datatype, DEFAULT)
     rate_hz = change.source.sample_rate_hz * change.rate_factor
     cycle = before["loop"]["cycle_samples"] * change.rate_factor
     return before | {
@@ -201,9 +210,11 @@ def converted_document(
         **power_figures(codes.statistics, codes.peak),
         "on_time": on_figures(codes, duty),
         "reference": gaussian_reference(grid_db(codes.statistics)),
-        "law": law_document(origin.law, worst_verdict(origin.law, [file])),
+        "process": process_rows(codes),
+        "law": law_document(origin.law, judgement),
+        "no_law": origin.law.reason if isinstance(origin.law, NoLaw) else None,
         "bench": _bench(before["bench"], file),
-        "files": [file_row(file, [duty])],
+        "files": [file_row(file, [duty], [judgement])],
         "converted": change.document(before.get("converted")),
     }
 

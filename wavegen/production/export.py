@@ -27,7 +27,9 @@ from wavegen.files.datatypes import (
 )
 from wavegen.files.format import FileFacts, Format
 from wavegen.files.real_if import real_if
+from wavegen.meters.batches import BatchedPowerMeter, BatchedStatistics
 from wavegen.meters.gated import GatedPowerMeter
+from wavegen.meters.opening import OpeningMeter
 from wavegen.meters.peak import BetweenSamplesPeak, peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
 
@@ -67,11 +69,14 @@ class ChannelCodes:
         Of the codes.
     on_statistics : PowerStatistics or None
         Of the codes while the signal is on, ramps excluded; None if it is never off.
+    sampled : BatchedStatistics or None
+        Of one period of the data, where that was asked for; of its on-time if it is ever off.
     """
 
     statistics: PowerStatistics
     peak: BetweenSamplesPeak
     on_statistics: PowerStatistics | None = None
+    sampled: BatchedStatistics | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -130,18 +135,38 @@ class Channel:
         The loop, a leaf whose ranges can be read.
     bursts : Bursts or None
         When it is on; then the on-time is measured too.
+    data_samples : int or None
+        Samples after which its data come round again; then the batches of so many are kept, from
+        which follows how sure its figures are of the process. None: they are not asked for.
     """
 
     signal: Signal
     bursts: Bursts | None = None
+    data_samples: int | None = None
 
     @property
     def meters(self) -> tuple[Meter, ...]:
-        """What measures its codes."""
+        """What measures its codes: all of them, those of the on-time, one period of the data."""
         every: Meter = PowerMeter(where=WHERE)
-        if self.bursts is None:
-            return (every,)
-        return (every, GatedPowerMeter(bursts=self.bursts, where=WHERE))
+        on_time = () if self.bursts is None else (GatedPowerMeter(bursts=self.bursts, where=WHERE),)
+        if self.data_samples is None:
+            return (every, *on_time)
+        batched = BatchedPowerMeter(where=WHERE, loops=True, bursts=self.bursts)
+        if self.data_samples < self.signal.n_samples:
+            return (every, *on_time, OpeningMeter(meter=batched, n_samples=self.data_samples))
+        return (batched,) if self.bursts is None else (every, batched)
+
+    def codes(self, readings: Iterator[Any], written: Signal, *, loops: bool) -> ChannelCodes:
+        """Return what the meters read, and the peak of what was written."""
+        found = [next(readings) for _ in self.meters]
+        sampled = None if self.data_samples is None else found[-1]
+        plain = [item.statistics if isinstance(item, BatchedStatistics) else item for item in found]
+        return ChannelCodes(
+            statistics=plain[0],
+            peak=peak_between_samples(written, plain[0], loops=loops),
+            on_statistics=None if self.bursts is None else plain[1],
+            sampled=sampled,
+        )
 
 
 def _encode_strip(
@@ -297,12 +322,7 @@ def _measured(
             for number, meter in enumerate(channel.meters)
         )
         figures = iter(render(written, taps=taps, workers=workers).values())
-    statistics: PowerStatistics = next(figures)
-    return ChannelCodes(
-        statistics=statistics,
-        peak=peak_between_samples(written, statistics, loops=loops),
-        on_statistics=None if channel.bursts is None else next(figures),
-    )
+    return channel.codes(figures, written, loops=loops)
 
 
 def brief(statistics: PowerStatistics, peak: BetweenSamplesPeak) -> dict[str, object]:

@@ -22,6 +22,7 @@ from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
 from wavegen.files.format import FileFacts, Format, distinct_stems
 from wavegen.production.bench import PathLevel, path_levels, refuse_overload
+from wavegen.production.best_loop import best_loop
 from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
 from wavegen.production.export import Channel, ExportedFile, export
 from wavegen.production.intermediate import (
@@ -30,17 +31,19 @@ from wavegen.production.intermediate import (
     snapped_centre,
     spectrum_of,
 )
+from wavegen.production.judgement import (
+    DEFAULT,
+    Question,
+    check_question,
+    data_samples_of,
+    judge_files,
+    law_of,
+)
 from wavegen.production.marking import markers_of
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
-from wavegen.production.sidecar import (
-    MadeChannel,
-    as_csv,
-    as_json,
-    describe,
-    stimulus_document,
-)
-from wavegen.production.verify import law_of, worst_verdict
+from wavegen.production.sidecar import as_csv, as_json, describe
+from wavegen.production.stimulus_document import MadeChannel, stimulus_document
 from wavegen.production.waveform import Waveform, render_loop
 from wavegen.recipe.load import LoadedRecipe
 
@@ -87,6 +90,8 @@ def make(
     *,
     out: Path,
     overwrite: bool = False,
+    question: Question = DEFAULT,
+    best_of: int = 1,
     workers: int = 1,
     executor: Executor | None = None,
     progress: Progress = silent,
@@ -101,6 +106,10 @@ def make(
         Files go to ``out/NAME/``, NAME the recipe file's stem.
     overwrite : bool
         Whether files that exist are replaced.
+    question : Question
+        What *agrees* means, and how far down.
+    best_of : int
+        Seeds that are tried, from that of the recipe on; the loop nearest the law is made.
     workers : int
         Threads, or strips in flight where ``executor`` is given.
     executor : concurrent.futures.Executor, optional
@@ -114,6 +123,8 @@ def make(
 
     Raises
     ------
+    ArgumentsError
+        A question that means nothing, or no law to be near to.
     RecipeError
         What cannot be honoured.
     FileError
@@ -122,7 +133,20 @@ def make(
         A rating of the bench would be exceeded; nothing is written.
     """
     keep_large_blocks()
+    check_question(question)
+    tried = None
+    if best_of > 1:
+        found = best_loop(
+            loaded,
+            n_tries=best_of,
+            down_to=question.down_to,
+            workers=workers,
+            executor=executor,
+            progress=progress,
+        )
+        loaded, tried = found.loaded, found.rows
     prepared = prepare(loaded)
+    laws = [law_of(channel) for channel in prepared.channels]
     with Drafts(out / loaded.name, overwrite=overwrite) as drafts:
         targets = plan_files(prepared, drafts)
         sidecar = drafts.add(f"{loaded.name}.ccdf.json")
@@ -147,20 +171,26 @@ def make(
             prepared.notes.extend(_doubts_of_folding(loaded, waveforms, targets))
             levels = bench_levels(loaded, waveforms)
             refuse_overload(levels)
-            files = [_export(target, waveforms, gain, workers, progress) for target in targets]
-        prepared.notes.extend(doubts_of_files(files))
-        channels = []
-        for number, channel in enumerate(prepared.channels):
-            law = law_of(channel)
-            channels.append(
-                MadeChannel(
-                    prepared=channel,
-                    waveform=waveforms[number],
-                    law=law,
-                    verdict=worst_verdict(law, files, number),
+            written = [
+                Channel(
+                    signal=waveform.signal,
+                    bursts=waveform.bursts,
+                    data_samples=data_samples_of(law, waveform.signal, workers=workers),
                 )
+                for waveform, law in zip(waveforms, laws, strict=True)
+            ]
+            files = [_export(target, written, gain, workers, progress) for target in targets]
+        prepared.notes.extend(doubts_of_files(files))
+        channels = [
+            MadeChannel(
+                prepared=channel,
+                waveform=waveforms[number],
+                law=laws[number],
+                judgements=tuple(judge_files(laws[number], files, number, question)),
             )
-        document = stimulus_document(channels, files=files, gain=gain, levels=levels)
+            for number, channel in enumerate(prepared.channels)
+        ]
+        document = stimulus_document(channels, files=files, gain=gain, levels=levels, best_of=tried)
         texts = {sidecar: as_json(document), curve: as_csv(document)}
         texts[marks] = markers.markers_text(targets[0].facts.annotations)
         for path, text in texts.items():
@@ -234,13 +264,13 @@ def bench_levels(loaded: LoadedRecipe, waveforms: Sequence[Waveform]) -> list[Pa
 
 def _export(
     target: Target,
-    waveforms: Sequence[Waveform],
+    channels: Sequence[Channel],
     gain: float,
     workers: int,
     progress: Progress,
 ) -> ExportedFile:
     return export(
-        [Channel(signal=waveform.signal, bursts=waveform.bursts) for waveform in waveforms],
+        channels,
         gain=gain,
         form=target.form,
         facts=target.facts,

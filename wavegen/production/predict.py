@@ -4,38 +4,35 @@ from __future__ import annotations
 
 from typing import Any
 
-import numpy as np
-from numpy.typing import NDArray
-
 from wavegen.core.errors import RecipeError
-from wavegen.laws.law import Law
 from wavegen.laws.term import NoLaw
+from wavegen.production.fault_length import fault_rows
 from wavegen.production.graph import build
+from wavegen.production.law_rows import curve_rows, level_grid
 from wavegen.production.law_walk import law_of_recipe
 from wavegen.production.prepare import find_loop
 from wavegen.production.sidecar import (
     FORMAT,
-    GRID_STEP_DB,
-    LOWEST_PROBABILITY,
     gaussian_reference,
     note_rows,
-    rounded,
     versions,
 )
 from wavegen.recipe.load import LoadedRecipe
 from wavegen.stages.chain import source_site
 
 PROBABILITIES = tuple(10.0**-k for k in range(1, 10))
-LOWEST_DB = -30.0
 
 
-def predict(loaded: LoadedRecipe) -> dict[str, Any]:
+def predict(loaded: LoadedRecipe, *, fault: tuple[float, float] | None = None) -> dict[str, Any]:
     """Return the law of a recipe as JSON values.
 
     Parameters
     ----------
     loaded : LoadedRecipe
         A checked recipe.
+    fault : (float, float), optional
+        Shift of a level, dB, and the probability at which it is taken: then it is said how long
+        a loop must be to show it.
 
     Returns
     -------
@@ -44,6 +41,8 @@ def predict(loaded: LoadedRecipe) -> dict[str, Any]:
 
     Raises
     ------
+    ArgumentsError
+        A fault that nobody can look for.
     RecipeError
         What cannot be honoured, at ``file:line:column``.
     """
@@ -53,9 +52,13 @@ def predict(loaded: LoadedRecipe) -> dict[str, Any]:
         site = sites[0][1]
         build(recipe.signal, (), source_site(recipe.stages, site))  # refuses what cannot be made
         law = law_of_recipe(recipe.signal, recipe.stages, site)
+        whole = build(recipe.signal, recipe.stages, site).signal if fault else None
     except RecipeError as error:
         raise loaded.resolve(error) from error
-    found = None if isinstance(law, NoLaw) else law_curve(law)
+    asked = None
+    if fault is not None and whole is not None and not isinstance(law, NoLaw):
+        asked = fault_rows(law, whole, fault_db=fault[0], probability=fault[1])
+    found = None if isinstance(law, NoLaw) else curve_rows(law, PROBABILITIES)
     return {
         "format": f"{FORMAT}.prediction",
         "version": 1,
@@ -66,32 +69,9 @@ def predict(loaded: LoadedRecipe) -> dict[str, Any]:
         "duration_s": float(site.n_samples / recipe.sample_rate_hz),
         "law": found,
         "no_law": law.reason if isinstance(law, NoLaw) else None,
-        "reference": gaussian_reference(grid(12.0)),
+        "fault": asked,
+        "reference": gaussian_reference(level_grid(12.0)),
         "rounded": note_rows([note for note in site.notes if note.kind == "rounded"]),
         "warnings": note_rows([note for note in site.notes if note.kind == "warning"]),
         "versions": versions(),
-    }
-
-
-def grid(top_db: float) -> NDArray[np.float64]:
-    """Return levels from -30 dB to just over a level, 0.05 dB apart."""
-    count = int(np.ceil((top_db - LOWEST_DB) / GRID_STEP_DB)) + 2
-    steps: NDArray[np.float64] = np.arange(count, dtype=np.float64)
-    return LOWEST_DB + GRID_STEP_DB * steps
-
-
-def law_curve(law: Law) -> dict[str, Any]:
-    """Return a law's levels at 10 % ... 1e-9, its highest peak, and its curve."""
-    highest = float(law.level_db(LOWEST_PROBABILITY))
-    level = grid(highest)
-    return {
-        "name": law.name,
-        "holds": law.holds,
-        "peak_db": rounded(law.peak_db, 4),
-        "levels": [
-            {"probability": q, "level_db": rounded(float(law.level_db(q)), 4)}
-            for q in PROBABILITIES
-        ],
-        "level_db": [round(float(x), 2) for x in level],
-        "probability": [float(x) for x in law.ccdf(level)],
     }

@@ -1,8 +1,7 @@
-"""What was written against what mathematics says of the recipe."""
+"""What was written against a law that holds for every loop."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from typing import Any, Literal
 
 import numpy as np
@@ -10,10 +9,7 @@ from numpy.typing import NDArray
 
 from wavegen.files.datatypes import Datatype
 from wavegen.laws.law import Law
-from wavegen.laws.term import NoLaw
 from wavegen.meters.power import PowerStatistics
-from wavegen.production.export import ExportedFile
-from wavegen.production.prepare import Prepared
 
 Verdict = Literal["agrees", "differs", "undecided"]
 
@@ -26,44 +22,25 @@ DEEPEST_DB = -20.0
 """Levels below this are not compared: there a code is a large part of the envelope."""
 
 
-def law_of(prepared: Prepared) -> Law | None:
-    """Return the exact law of a recipe's loop, None where there is none yet.
+def compare_with_loop(
+    law: Law, statistics: PowerStatistics, datatype: Datatype
+) -> tuple[Verdict, str]:
+    """Return whether codes follow a law that holds for every loop.
 
     Parameters
     ----------
-    prepared : Prepared
-        A recipe of one source without stages has the source's law.
+    law : Law
+        Of the loop itself.
+    statistics : PowerStatistics
+        Of the codes of all of it.
+    datatype : Datatype
+        How they were rounded.
 
     Returns
     -------
-    Law or None
-        Only laws that hold for every loop: what holds over seeds needs an interval to judge.
-    """
-    recipe = prepared.loaded.recipe
-    law_method: Any = getattr(recipe.signal, "law", None)
-    if recipe.stages or law_method is None:
-        return None
-    law: Law | NoLaw | None = law_method(prepared.site)
-    if law is None or isinstance(law, NoLaw):
-        return None
-    return law if law.holds == "every loop" else None
-
-
-def compare_with_law(law: Law | None, file: ExportedFile, channel: int = 0) -> Verdict:
-    """Return whether a file's codes follow a law that holds for every loop.
-
-    Parameters
-    ----------
-    law : Law or None
-        None gives ``undecided``.
-    file : ExportedFile
-        What was written.
-    channel : int
-        Which of its channels.
-
-    Returns
-    -------
-    {"agrees", "differs", "undecided"}
+    verdict : {"agrees", "differs"}
+    deviation : str
+        What gives a difference away; empty if there is none.
 
     Notes
     -----
@@ -71,18 +48,25 @@ def compare_with_law(law: Law | None, file: ExportedFile, channel: int = 0) -> V
     it (:func:`law_levels`), widened by what a loop of few samples can differ from the continuous
     curve (``sampling_slack`` of the law). No sample may stand over the law's peak by more.
     """
-    if law is None:
-        return "undecided"
-    statistics = file.channels[channel].statistics
+    lowest_peak, _ = law_levels(datatype, statistics, np.array([statistics.papr_db]))
+    if lowest_peak[0] > law.peak_db:
+        over_db = statistics.papr_db - law.peak_db
+        return "differs", f"its peak stands {over_db:+.3f} dB over the highest that the law allows"
     top = max(law.peak_db, statistics.papr_db) + 1.0
     level = np.arange(DEEPEST_DB, top, 0.05)
-    below, above = law_levels(file.datatype, statistics, level)
+    below, above = law_levels(datatype, statistics, level)
     measured = statistics.ccdf(level)
     fewest = law.ccdf(above) - sampling_slack(law, above) - ROUNDOFF
     most = law.ccdf(below) + sampling_slack(law, below) + ROUNDOFF
-    is_inside = bool(np.all((measured >= fewest) & (measured <= most)))
-    lowest_peak, _ = law_levels(file.datatype, statistics, np.array([statistics.papr_db]))
-    return "agrees" if is_inside and lowest_peak[0] <= law.peak_db else "differs"
+    beyond = np.maximum(fewest - measured, measured - most)
+    worst = int(np.argmax(beyond))
+    if beyond[worst] <= 0:
+        return "agrees", ""
+    exact = float(law.ccdf(level[worst]))
+    return "differs", (
+        f"{100 * measured[worst]:.4g} % of it stand over {level[worst]:.2f} dB, "
+        f"the law says {100 * exact:.4g} %"
+    )
 
 
 def sampling_slack(law: Law, level_db: NDArray[np.float64]) -> NDArray[np.float64]:
@@ -94,20 +78,29 @@ def sampling_slack(law: Law, level_db: NDArray[np.float64]) -> NDArray[np.float6
     return slack
 
 
-def worst_verdict(law: Law | None, files: Sequence[ExportedFile], channel: int = 0) -> Verdict:
-    """Return ``differs`` if one of the files differs, else how the first compares.
+def rounding_reach(datatype: Datatype) -> float:
+    """Return how far rounding to codes can move an envelope, full scale 1.
 
     Parameters
     ----------
-    law : Law or None
-        None gives ``undecided``.
-    files : sequence of ExportedFile
-        At least one.
-    channel : int
-        Which of their channels the law is of.
+    datatype : Datatype
+        Of the codes.
+
+    Returns
+    -------
+    float
+        0 of floats.
+
+    Notes
+    -----
+    Half a code on each rail is 0.71 codes at most. Of real samples the envelope moves by half a
+    code in phase and, in quadrature, by what the quadrature filter makes of uniform errors of the
+    samples around: a sum of many, with a standard deviation of ``1 / sqrt(12)`` of a code, taken
+    at six times that.
     """
-    verdicts = [compare_with_law(law, file, channel) for file in files]
-    return "differs" if "differs" in verdicts else verdicts[0]
+    if not datatype.is_integer:
+        return 0.0
+    return float(np.sqrt(0.25 + 36 / 12 if datatype.is_real else 0.5)) / datatype.full_scale
 
 
 def law_levels(
@@ -131,16 +124,11 @@ def law_levels(
 
     Notes
     -----
-    Rounding moves an envelope by half a code on each rail, 0.71 codes, at most. It moves the RMS
-    value by no more (triangle inequality), and so the mean that levels are over. To this come
-    0.01 dB for the histogram's bins and the arithmetic.
-
-    Of real samples the envelope moves by half a code in phase and, in quadrature, by what the
-    quadrature filter makes of uniform errors of the samples around: a sum of many, with a
-    standard deviation of ``1 / sqrt(12)`` of a code, taken at six times that.
+    Rounding moves an envelope by :func:`rounding_reach` at most. It moves the RMS value by no
+    more (triangle inequality), and so the mean that levels are over. To this come 0.01 dB for the
+    histogram's bins and the arithmetic.
     """
-    code = 1 / datatype.full_scale if datatype.is_integer else 0.0
-    reach = code * (np.sqrt(0.25 + 36 / 12) if datatype.is_real else np.sqrt(0.5))
+    reach = rounding_reach(datatype)
     envelope = 10 ** ((statistics.mean_db + level_db) / 20)
     rms = 10 ** (statistics.mean_db / 20)
     below = _db_amplitude((envelope - reach) / (rms + reach)) - TOLERANCE_DB

@@ -42,6 +42,21 @@ def _difference(value_db: float | None) -> str:
     return "" if value_db is None else f"{round(value_db, 3) + 0.0:+.3f} dB"
 
 
+def law_lines(document: dict[str, Any]) -> list[str]:
+    """Say how each file compares with the law of its recipe."""
+    lines = []
+    for row in document["files"]:
+        found = row["against_law"]
+        for number, item in enumerate(found["channels"] if found else ()):
+            if item is not None:
+                channel = f", channel {number}" if len(found["channels"]) > 1 else ""
+                lines.append(
+                    f"{row['name']}{channel}: against its law, {found['from']}: "
+                    f"{item['statement']}."
+                )
+    return lines
+
+
 def verdict_words(document: dict[str, Any]) -> str:
     """Say what a check came to."""
     if document["verdict"] == "differ":

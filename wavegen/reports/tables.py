@@ -19,7 +19,7 @@ def percent(probability: float) -> str:
     >>> percent(0.001)
     '0.1 %'
     """
-    return f"{100 * probability:.10f}".rstrip("0").rstrip(".") + " %"
+    return f"{100 * float(f'{probability:.3g}'):.10f}".rstrip("0").rstrip(".") + " %"
 
 
 def fixed(value: float, unit: str) -> str:
@@ -46,12 +46,66 @@ def length_words(duration_s: float, n_samples: int) -> str:
 
 def law_words(law: dict[str, Any]) -> str:
     """Say how a file compares with its law."""
+    verdict = law["verdict"]
     instants = law.get("n_instants")
     where = f", at the {instants} different instants of this loop" if instants else ""
-    verb = {"agrees": "agrees with", "differs": "DIFFERS FROM"}.get(law["verdict"])
+    detail = law.get("statement", verdict).removeprefix(verdict)
+    verb = {"agrees": "agrees with it", "differs": "DIFFERS FROM it"}.get(verdict)
     if verb is None:
-        return f"Law: {law['name']}; there is not enough to tell whether the file follows it."
-    return f"Law: {law['name']}; the file {verb} it{where}."
+        said = "there is not enough to tell whether the file follows it"
+        return f"Law: {law['name']}; {said}{detail}."
+    return f"Law: {law['name']}; the file {verb}{detail}{where}."
+
+
+def verdict_lines(document: dict[str, Any]) -> list[str]:
+    """Say how a stimulus compares with its law, or why it has none, and how its seed was chosen."""
+    lines = []
+    best = document.get("best_of")
+    if best:
+        last = best["first_seed"] + best["n_tried"] - 1
+        lines.append(
+            f"Seed {best['chosen_seed']} of {best['first_seed']} to {last}: its levels lie within "
+            f"{best['deviation_db']:.3f} dB of the law's down to {percent(best['down_to'])}; "
+            f"half of these seeds reach {best['median_deviation_db']:.3f} dB."
+        )
+    second = document.get("second_channel")
+    for name, part in (("", document), ("Channel 1: ", second)):
+        if not part:
+            continue
+        no_law = part.get("no_law") or "none is known"
+        lines.append(name + (law_words(part["law"]) if part["law"] else f"No law: {no_law}."))
+    if document["law"]:
+        for item in document["files"][1:]:
+            against = item.get("against_law")
+            if against and against["statement"] != document["law"]["statement"]:
+                lines.append(f"{item['name']}: {against['statement']}.")
+    return lines
+
+
+def process_table(law: dict[str, Any] | None) -> Table | None:
+    """Return the levels of the process behind a loop against its law; None where none is judged."""
+    if not law or not law.get("compared"):
+        return None
+    rows = tuple(
+        (
+            percent(row["probability"]),
+            _level(row["law_db"]),
+            _level(row["level_db"]),
+            f"{_level(row['low_db'])} to {_level(row['high_db'])}",
+            "" if row["detectable_db"] is None else f"{row['detectable_db']:.2f} dB",
+        )
+        for row in law["compared"]
+    )
+    return Table(
+        title=f"The process that this loop samples ({law['of']})",
+        headings=("probability", "law", "this loop", "process, 95 % jointly", "finds a fault of"),
+        rows=rows,
+        right=frozenset(range(5)),
+    )
+
+
+def _level(level_db: float | None) -> str:
+    return "open" if level_db is None else fixed(level_db, "dB")
 
 
 def summary_table(document: dict[str, Any], *, title: str) -> Table:
@@ -142,6 +196,19 @@ def law_table(law: dict[str, Any], *, title: str) -> Table:
         headings=("probability", "level over mean", "complex Gaussian"),
         rows=tuple(rows),
         right=frozenset({0, 1, 2}),
+    )
+
+
+def fault_words(fault: dict[str, Any]) -> str:
+    """Say how long a loop must be to show a fault."""
+    what = f"A fault of {fault['fault_db']:g} dB at {percent(fault['probability'])}"
+    if fault["n_samples"] is None:
+        return f"{what}: any loop shows it, since all are alike."
+    length = float(f"{fault['n_samples']:.2g}")
+    duration_s = float(f"{fault['duration_s']:.2g}")
+    return (
+        f"{what} is found in {100 * fault['found_in']:g} % of loops of about {length:.0f} samples "
+        f"({format_s(duration_s)}), off-times included."
     )
 
 
