@@ -148,9 +148,9 @@ def is_recipe(subject: str) -> bool:
         return False
     if is_there or path.suffix or len(path.parts) > 1:
         return False
-    from wavegen.recipe.find import shipped_recipes
+    from wavegen.recipe.find import shipped_paths
 
-    return any(name == subject for name, _, _ in shipped_recipes())
+    return subject in shipped_paths()
 
 
 def rate(text: str) -> Fraction:

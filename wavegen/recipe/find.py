@@ -18,9 +18,14 @@ def shipped_folder() -> Path:
     return inside if inside.is_dir() else package.parent / "recipes"
 
 
+def shipped_paths() -> dict[str, Path]:
+    """Return the path of every shipped recipe, by name: none is read."""
+    return {path.stem: path for path in sorted(shipped_folder().glob("*.yaml"))}
+
+
 def shipped_recipes() -> list[tuple[str, str, Path]]:
     """Return name, title and path of every shipped recipe, by name."""
-    return [(path.stem, _title(path), path) for path in sorted(shipped_folder().glob("*.yaml"))]
+    return [(name, _title(path), path) for name, path in shipped_paths().items()]
 
 
 def find_recipe(name_or_path: str | Path) -> Path:
@@ -43,7 +48,7 @@ def find_recipe(name_or_path: str | Path) -> Path:
     path = Path(name_or_path)
     if is_file(path):
         return path
-    shipped = {name: found for name, _, found in shipped_recipes()}
+    shipped = shipped_paths()
     wanted = str(name_or_path).removesuffix(".yaml")
     if wanted in shipped:
         return shipped[wanted]
@@ -83,7 +88,7 @@ def find_shipped(name: str) -> Path:
     RecipeError
         No recipe of that name is shipped; the nearest name is given.
     """
-    shipped = {known: found for known, _, found in shipped_recipes()}
+    shipped = shipped_paths()
     wanted = name.removesuffix(".yaml")
     if wanted in shipped:
         return shipped[wanted]
