@@ -76,7 +76,11 @@ def test_made_measured_and_told(name, tmp_path, monkeypatch, capsys):
     if name in SHORTER:
         assert not [note for note in document["rounded"] if note["where"] == "duration"]
     if document["law"]:
-        assert document["law"]["verdict"] == "agrees"
+        # A loop follows its own law exactly; of a process a short one may be too little to tell.
+        is_process = document["law"]["about"] == "the process it samples"
+        assert document["law"]["verdict"] in {"agrees", *(["undecided"] if is_process else [])}
+    else:
+        assert document["no_law"]
     for item in document["files"]:
         found = codes(folder / item["name"], item)
         for samples, figures in zip(found, channels_of(item), strict=True):
