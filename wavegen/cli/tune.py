@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any
 from wavegen.cli.console import WIDTH, Console
 from wavegen.cli.fidelity import add_fidelity, request_of
 from wavegen.cli.options import add_overrides, add_workers, positive, ratio_db
+from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
 from wavegen.core.errors import ArgumentsError
 from wavegen.core.units import DIMENSIONS, QuantityError, parse_quantity
 
@@ -88,6 +89,7 @@ class Tune:
             "--out", type=Path, default=Path("output"), metavar="DIR", help="default: output"
         )
         parser.add_argument("--overwrite", action="store_true", help="replace files that exist")
+        add_reports(parser, has_overwrite=True)
         add_fidelity(parser)
         add_overrides(parser)
         add_workers(parser)
@@ -100,6 +102,7 @@ class Tune:
         from wavegen.tuning.request import TuneRequest
         from wavegen.tuning.tune import tune
 
+        are_wanted(arguments)
         loaded = load_recipe(find_recipe(arguments.recipe), overrides=tuple(arguments.overrides))
         limits = limits_of(arguments, has_mask=loaded.recipe.mask is not None)
         fidelity = request_of(
@@ -138,10 +141,13 @@ class Tune:
             **tuned.document(),
             "evaluations": [item.row() for item in tuned.evaluations],
         }
+        said = report_comparison(arguments, document) if are_wanted(arguments) else []
         if arguments.json:
             console.document(document)
         else:
             show(document, console, asked=frozenset(arguments.method))
+            for line in said:
+                console.line(line)
         return status_of(tuned)
 
 
