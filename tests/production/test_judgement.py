@@ -92,7 +92,8 @@ def test_a_gated_signal_is_judged_by_its_on_time():
     found = judge(gated, codes(noise(2_000_000), is_gated=True), CF32_LE, DEFAULT)
     assert (found.verdict, found.of) == ("agrees", ON_TIME)
     found = judge(GaussianLaw(), codes(noise(1000), is_gated=True), CF32_LE, DEFAULT)
-    assert found.verdict == "undecided"  # its on-time has no law
+    assert found.verdict == "undecided"
+    assert "law of the on-time is not known" in found.statement
     steady = GatedLaw(source=ConstantLaw(), duty_fully_on=0.5, ramp=np.empty(0))
     found = judge(steady, codes(noise(1000), is_gated=True), CF32_LE, DEFAULT)
     assert (found.verdict, found.about) == ("undecided", "this loop")
