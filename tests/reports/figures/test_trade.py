@@ -5,15 +5,15 @@ import numpy as np
 from wavegen.reports.figures.trade import Front, front_figure, gain_figure
 
 
-def test_points_are_joined_in_the_order_of_evm():
-    evm = np.array([5.0, 1.0, 3.0])
-    front = Front(name="clip", evm_percent=evm, level_db=9 - 0.3 * evm)
+def test_points_that_nothing_beats_are_joined_in_the_order_of_evm():
+    evm = np.array([5.0, 1.0, 3.0, 4.0])
+    front = Front(name="clip", evm_percent=evm, level_db=np.array([7.5, 8.7, 8.1, 8.3]))
     figure = front_figure(
         [front], title="T", level_name="level, dB", bound=front, evm_limit_percent=4.0
     )
     axes = figure.axes[0]
     assert list(axes.lines[0].get_xdata()) == [1, 3, 5]
-    assert list(axes.lines[1].get_xdata()) == [5, 1, 3]
+    assert list(axes.lines[1].get_xdata()) == [5, 1, 3, 4]
     assert "limit" in axes.get_xlabel()
 
 

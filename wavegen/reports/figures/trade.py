@@ -31,6 +31,15 @@ class Front:
     evm_percent: NDArray[np.float64]
     level_db: NDArray[np.float64]
 
+    @property
+    def best(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+        """EVM and level of the settings that no other one beats in both, by EVM."""
+        order = np.lexsort((self.level_db, self.evm_percent))
+        evm, level = self.evm_percent[order], self.level_db[order]
+        before = np.concatenate([[np.inf], np.minimum.accumulate(level)[:-1]])
+        kept = level < before
+        return evm[kept], level[kept]
+
 
 def front_figure(
     fronts: Sequence[Front],
@@ -45,7 +54,7 @@ def front_figure(
     Parameters
     ----------
     fronts : sequence of Front
-        Methods; their points are joined in the order of EVM.
+        Methods; points that no other one of the method beats are joined.
     title, level_name : str
         Heading, and which level it is.
     bound : Front, optional
@@ -59,9 +68,8 @@ def front_figure(
     """
     figure, (axes,) = new_figure(title)
     for number, front in enumerate(fronts):
-        order = np.argsort(front.evm_percent)
         style = stroke(number)
-        draw(axes, front.evm_percent[order], front.level_db[order], style, label=front.name)
+        draw(axes, *front.best, style, label=front.name)
         axes.plot(
             front.evm_percent,
             front.level_db,
@@ -71,8 +79,7 @@ def front_figure(
             color=style.colour,
         )
     if bound is not None:
-        order = np.argsort(bound.evm_percent)
-        draw(axes, bound.evm_percent[order], bound.level_db[order], REFERENCE, label=bound.name)
+        draw(axes, *bound.best, REFERENCE, label=bound.name)
     if evm_limit_percent is not None:
         right = max(axes.get_xlim()[1], evm_limit_percent * 1.1)
         axes.axvspan(evm_limit_percent, right, facecolor=SHADE, zorder=0)
