@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import argparse
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import add_overrides, add_workers
 from wavegen.cli.question_options import add_question, tries
 from wavegen.core.errors import ArgumentsError
+
+if TYPE_CHECKING:
+    from wavegen.reports.stimulus_reports import Wanted
 
 DIFFERS = 5
 
@@ -42,6 +45,23 @@ class Make:
             default=1,
             help="try K seeds and make the loop whose levels lie nearest the law",
         )
+        parser.add_argument(
+            "--accept-risk",
+            action="append",
+            default=[],
+            metavar="STAGE.RATING",
+            help="let this one rating of the bench be exceeded, such as cable.peak_limit; recorded",
+        )
+        group = parser.add_argument_group("beside the files")
+        group.add_argument(
+            "--figures", action="store_true", help="pictures of the stimulus, as SVG and PNG"
+        )
+        group.add_argument("--report", action="store_true", help="a page that opens in any browser")
+        group.add_argument(
+            "--bench-sheet",
+            action="store_true",
+            help="a page to take to the bench: what to set, levels, ratings, order of work",
+        )
         add_overrides(parser)
         add_workers(parser)
 
@@ -56,11 +76,19 @@ class Make:
         from wavegen.recipe.find import find_recipe
         from wavegen.recipe.load import load_recipe
 
+        if arguments.figures or arguments.report or arguments.bench_sheet:
+            from wavegen.reports.stimulus_reports import refuse_beforehand, write_stimulus_reports
+
         loaded = [
             load_recipe(find_recipe(name), overrides=tuple(arguments.overrides))
             for name in arguments.recipes
         ]
         refuse_same_name([recipe.name for recipe in loaded])
+        wanted = _wanted(arguments)
+        if wanted is not None:
+            for recipe in loaded:
+                folder = arguments.out / recipe.name
+                refuse_beforehand(recipe, wanted, folder, overwrite=arguments.overwrite)
         documents = []
         differs = False
         progress = ConsoleProgress()
@@ -72,9 +100,19 @@ class Make:
                     overwrite=arguments.overwrite,
                     question=Question(tolerance_db=arguments.tolerance, down_to=arguments.down_to),
                     best_of=arguments.best_of,
+                    accepted_risks=arguments.accept_risk,
                     workers=arguments.workers,
                     progress=progress,
                 )
+                beside = []
+                if wanted is not None:
+                    beside = write_stimulus_reports(
+                        made,
+                        wanted,
+                        overwrite=arguments.overwrite,
+                        workers=arguments.workers,
+                        progress=progress,
+                    )
             finally:
                 progress.close()
             differs = differs or made.differs
@@ -82,9 +120,20 @@ class Make:
             documents.append(document)
             if not arguments.json:
                 show(document, console)
+                if beside:
+                    console.line(f"Beside them: {', '.join(beside)}.")
         if arguments.json:
             console.document(documents[0] if len(documents) == 1 else documents)
         return DIFFERS if differs else 0
+
+
+def _wanted(arguments: argparse.Namespace) -> Wanted | None:
+    """Return what is to be written beside the files, None if nothing is."""
+    if not (arguments.figures or arguments.report or arguments.bench_sheet):
+        return None
+    from wavegen.reports.stimulus_reports import Wanted
+
+    return Wanted(figures=arguments.figures, report=arguments.report, sheet=arguments.bench_sheet)
 
 
 def refuse_same_name(names: list[str]) -> None:

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Collection, Sequence
 from dataclasses import dataclass
+from typing import Any
 
 from wavegen.core.errors import ArgumentsError, TargetMissed
 from wavegen.recipe.bench import Bench, PathStage
@@ -196,7 +197,7 @@ def path_levels(
     return levels
 
 
-def _allowances(bench: Bench) -> dict[str, float | None]:
+def _allowances(bench: Bench) -> dict[str, Any]:
     average = bench.level_uncertainty_db
     return {
         "average_allowance_db": average or None,

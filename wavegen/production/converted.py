@@ -237,6 +237,11 @@ def _scaling(before: dict[str, Any], codes: Any, change: Change) -> dict[str, An
     }
 
 
+def _no_limits(row: dict[str, Any]) -> dict[str, Any]:
+    """Return the ratings that every place is asked for, where a row leaves them out."""
+    return {key: None for key in ("average_limit_dbm", "peak_limit_dbm") if key not in row}
+
+
 def _bench(before: dict[str, Any] | None, file: ExportedFile) -> dict[str, Any] | None:
     """Return the levels along the path with the peak of what was written."""
     if before is None:
@@ -246,22 +251,16 @@ def _bench(before: dict[str, Any] | None, file: ExportedFile) -> dict[str, Any] 
     statistics = codes.on_statistics if is_burst else codes.statistics
     assert statistics is not None  # noqa: S101 - asked above
     papr_db = 10 * math.log10(codes.peak.power) - statistics.mean_db
-    rows = [
-        row | {"peak_envelope_dbm": rounded(row["average_dbm"] + papr_db, 3)}
-        for row in before["path"]
-        if row.get("channel", 0) == 0
-    ]
-    refuse_overload(
-        [
-            PathLevel(
-                name=row["name"],
-                role=row["role"],
-                average_dbm=row["average_dbm"],
-                peak_envelope_dbm=row["peak_envelope_dbm"],
-                average_limit_dbm=row.get("average_limit_dbm"),
-                peak_limit_dbm=row.get("peak_limit_dbm"),
-            )
-            for row in rows
-        ]
-    )
+    rows = []
+    for row in before["path"]:
+        if row.get("channel", 0) != 0:
+            continue
+        peak_dbm = rounded(row["average_dbm"] + papr_db, 3)
+        moved = {"peak_envelope_dbm": peak_dbm}
+        if "mixer_peak_dbm" in row:
+            rise = peak_dbm - row["peak_envelope_dbm"]
+            moved["mixer_peak_dbm"] = rounded(row["mixer_peak_dbm"] + rise, 3)
+        rows.append({key: value for key, value in (row | moved).items() if key != "channel"})
+    levels = [PathLevel(**row, **_no_limits(row), number=n) for n, row in enumerate(rows)]
+    refuse_overload(levels, accepted=before.get("accepted_risks", ()))
     return before | {"path": rows}

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import hashlib
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 from concurrent.futures import Executor
 from contextlib import ExitStack
 from dataclasses import dataclass
@@ -21,7 +21,13 @@ from wavegen.files import FORMATS, markers
 from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
 from wavegen.files.format import FileFacts, Format, distinct_stems
-from wavegen.production.bench import PathLevel, path_levels, refuse_overload
+from wavegen.production.bench import (
+    PathLevel,
+    check_risks,
+    generator_level,
+    path_levels,
+    refuse_overload,
+)
 from wavegen.production.best_loop import best_loop
 from wavegen.production.doubts import doubts_of_files, doubts_of_mean, refuse_unresolved
 from wavegen.production.export import Channel, ExportedFile, export
@@ -60,11 +66,14 @@ class Made:
         Every file, sidecars last.
     document : dict
         The sidecar.
+    loaded : LoadedRecipe
+        What was made: with the seed that was kept, where several were tried.
     """
 
     folder: Path
     files: tuple[Path, ...]
     document: dict[str, Any]
+    loaded: LoadedRecipe
 
     @property
     def differs(self) -> bool:
@@ -92,6 +101,7 @@ def make(
     overwrite: bool = False,
     question: Question = DEFAULT,
     best_of: int = 1,
+    accepted_risks: Collection[str] = (),
     workers: int = 1,
     executor: Executor | None = None,
     progress: Progress = silent,
@@ -110,6 +120,8 @@ def make(
         What *agrees* means, and how far down.
     best_of : int
         Seeds that are tried, from that of the recipe on; the loop nearest the law is made.
+    accepted_risks : collection of str
+        Ratings of the bench, as ``cable.peak_limit``, that may be exceeded; it is recorded.
     workers : int
         Threads, or strips in flight where ``executor`` is given.
     executor : concurrent.futures.Executor, optional
@@ -124,7 +136,7 @@ def make(
     Raises
     ------
     ArgumentsError
-        A question that means nothing, or no law to be near to.
+        A question that means nothing, no law to be near to, or no such rating.
     RecipeError
         What cannot be honoured.
     FileError
@@ -134,6 +146,7 @@ def make(
     """
     keep_large_blocks()
     check_question(question)
+    check_risks(accepted_risks, loaded.recipe.bench)
     tried = None
     if best_of > 1:
         found = best_loop(
@@ -170,7 +183,7 @@ def make(
             _refuse_unresolved(loaded, waveforms, gain, targets)
             prepared.notes.extend(_doubts_of_folding(loaded, waveforms, targets))
             levels = bench_levels(loaded, waveforms)
-            refuse_overload(levels)
+            exceeded = refuse_overload(levels, accepted=accepted_risks)
             written = [
                 Channel(
                     signal=waveform.signal,
@@ -190,7 +203,9 @@ def make(
             )
             for number, channel in enumerate(prepared.channels)
         ]
-        document = stimulus_document(channels, files=files, gain=gain, levels=levels, best_of=tried)
+        document = stimulus_document(
+            channels, files=files, gain=gain, levels=levels, exceeded=exceeded, best_of=tried
+        )
         texts = {sidecar: as_json(document), curve: as_csv(document)}
         texts[marks] = markers.markers_text(targets[0].facts.annotations)
         for path, text in texts.items():
@@ -199,7 +214,12 @@ def make(
     names = [name for target in targets for name in target.names]
     names += [f"{loaded.name}{end}" for end in (".ccdf.json", ".ccdf.csv", markers.SUFFIX)]
     folder = out / loaded.name
-    return Made(folder=folder, files=tuple(folder / name for name in names), document=document)
+    return Made(
+        folder=folder,
+        files=tuple(folder / name for name in names),
+        document=document,
+        loaded=loaded,
+    )
 
 
 def _scratch(channel: Prepared, folder: Path) -> Scratch:
@@ -250,16 +270,18 @@ def bench_levels(loaded: LoadedRecipe, waveforms: Sequence[Waveform]) -> list[Pa
         return []
     over = bench.averaged_over
     means = [waveform.mean_over_db(over) for waveform in waveforms]
-    return [
-        level
-        for number, waveform in enumerate(waveforms)
-        for level in path_levels(
+    found = []
+    for number, waveform in enumerate(waveforms):
+        levels = path_levels(
             bench,
             waveform.papr_over(over),
             over_first_db=means[number] - means[0],
             channel=number if len(waveforms) > 1 else None,
+            burst_s=waveform.longest_burst_s,
+            burst_over_average_db=waveform.mean_over_db("burst") - means[number],
         )
-    ]
+        found += [generator_level(bench, levels), *levels]
+    return found
 
 
 def _export(

@@ -74,6 +74,7 @@ def stimulus_document(
     files: Sequence[ExportedFile],
     gain: float,
     levels: Sequence[PathLevel],
+    exceeded: Sequence[str] = (),
     best_of: dict[str, Any] | None = None,
 ) -> dict[str, Any]:
     """Return the sidecar of a stimulus as JSON values.
@@ -89,6 +90,8 @@ def stimulus_document(
         Amplitude factor from unit mean power to full scale, of both channels.
     levels : sequence of PathLevel
         Along the bench's path; empty without a bench.
+    exceeded : sequence of str
+        Ratings that are exceeded, and accepted.
     best_of : dict, optional
         How its seed was chosen among several.
 
@@ -139,7 +142,9 @@ def stimulus_document(
         "law": law_document(channels[0].law, worst(channels[0].judgements)),
         "no_law": channels[0].no_law,
         "best_of": best_of,
-        "bench": bench_rows(levels, recipe.bench.averaged_over if recipe.bench else "period"),
+        "bench": bench_rows(
+            levels, recipe.bench.averaged_over if recipe.bench else "period", exceeded
+        ),
         "files": [
             file_row(item, duties, [channel.judgements[number] for channel in channels])
             for number, item in enumerate(files)
@@ -195,18 +200,23 @@ def part_rows(prepared: Prepared, waveform: Waveform) -> list[dict[str, Any]]:
     ]
 
 
-def bench_rows(levels: Sequence[PathLevel], averaged_over: str) -> dict[str, Any] | None:
+def bench_rows(
+    levels: Sequence[PathLevel], averaged_over: str, exceeded: Sequence[str] = ()
+) -> dict[str, Any] | None:
     """Return the levels along the path, None without a bench."""
     if not levels:
         return None
     rows = []
     for level in levels:
+        if level.number is None:  # the generator's output, which has a place only if it is rated
+            continue
         row = {k: v for k, v in asdict(level).items() if v is not None and k != "number"}
         rows.append({k: rounded(v, 3) if isinstance(v, float) else v for k, v in row.items()})
     return {
         "levels_are": "at the input of each place",
         "averaged_over": averaged_over,
         "path": rows,
+        "accepted_risks": list(exceeded),
     }
 
 

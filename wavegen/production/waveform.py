@@ -59,6 +59,14 @@ class Waveform:
     bursts: Bursts | None = None
     on_statistics: PowerStatistics | None = None
 
+    @property
+    def longest_burst_s(self) -> float | None:
+        """Longest on-time, s; None if it is on all the time."""
+        if self.bursts is None:
+            return None
+        longest = max(stop - start for start, stop in self.bursts.runs)
+        return float(longest / self.signal.sample_rate_hz)
+
     def papr_over(self, mean_of: Literal["period", "burst"]) -> float:
         """Return the peak between samples over the mean of the loop or of the on-time, dB."""
         return 10 * math.log10(self.peak.power) - self.mean_over_db(mean_of)
