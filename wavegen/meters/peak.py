@@ -31,6 +31,7 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.cell_sums import CELL
+from wavegen.dsp.highest import highest
 from wavegen.dsp.record_kernel import high_places
 
 POINTS_PER_SAMPLE = 16
@@ -212,8 +213,8 @@ def filled_fraction(signal: Signal, statistics: Located, *, loops: bool = True) 
     n = statistics.n_samples
     if not loops and n < _STRETCH:
         return 1.0
-    highest = np.argsort(-statistics.cell_maxima, kind="stable")[:_STRETCHES]
-    centres = [statistics.start // CELL * CELL + int(cell) * CELL for cell in highest]
+    highest_cells = highest(statistics.cell_maxima, _STRETCHES)
+    centres = [statistics.start // CELL * CELL + int(cell) * CELL for cell in highest_cells]
     centres += [statistics.start + n * i // _STRETCHES for i in range(_STRETCHES)]
     window = np.kaiser(_STRETCH, _KAISER_BETA).astype(np.float32)
     spectrum = np.zeros(_STRETCH)
@@ -244,18 +245,17 @@ def _blocks(statistics: Located, searched: float, *, loops: bool) -> list[tuple[
     maxima = statistics.cell_maxima
     # A place belongs to the sample before it: a cell's last place may owe its height to the next.
     beyond = maxima[0] if loops else 0.0
-    reach = np.maximum(maxima, np.append(maxima[1:], beyond))
-    hopeful = reach >= statistics.peak * searched
     blocks: list[tuple[int, int, float]] = []
     per_block = _BLOCK // CELL
     for block in range(first_cell // per_block, (first_cell + maxima.size - 1) // per_block + 1):
         low = max(block * per_block - first_cell, 0)
         high = min((block + 1) * per_block - first_cell, maxima.size)
-        cells = np.flatnonzero(hopeful[low:high]) + low
+        after = maxima[high : high + 1] if high < maxima.size else [beyond]
+        reach = np.maximum(maxima[low:high], np.concatenate([maxima[low + 1 : high], after]))
+        cells = np.flatnonzero(reach >= statistics.peak * searched) + low
         if cells.size:
             start, stop = cells[0] + first_cell, cells[-1] + first_cell + 1
-            largest = float(reach[low:high].max())
-            blocks.append((int(start) * CELL, int(stop) * CELL, largest))
+            blocks.append((int(start) * CELL, int(stop) * CELL, float(reach.max())))
     return sorted(blocks, key=lambda item: (-item[2], item[0]))
 
 

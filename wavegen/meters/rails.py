@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.cell_sums import CELL
+from wavegen.dsp.highest import highest
 from wavegen.meters.peak import Located, peak_between_samples
 
 _BLOCK = 256 * CELL
@@ -117,9 +118,9 @@ def _rail(signal: Signal, name: str) -> Rail:
 def _rails_at_crests(signal: Signal, statistics: Located) -> list[tuple[float, int]]:
     """Return the largest square of each rail, and its index, in the cells of highest envelope."""
     first, last = statistics.start, statistics.start + statistics.n_samples
-    highest = np.argsort(-statistics.cell_maxima, kind="stable")[:_CRESTS]
+    highest_cells = highest(statistics.cell_maxima, _CRESTS)
     best = [(0.0, first), (0.0, first)]
-    for cell in sorted(int(number) for number in highest):
+    for cell in sorted(int(number) for number in highest_cells):
         start = max((first // CELL + cell) * CELL, first)
         samples = evaluate({signal: (start, min((start // CELL + 1) * CELL, last))})[signal]
         for row, values in enumerate((samples.real, samples.imag)):

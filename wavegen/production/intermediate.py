@@ -14,6 +14,7 @@ from wavegen.core.signal import Signal
 from wavegen.core.site import Note
 from wavegen.core.units import format_hz
 from wavegen.dsp.cell_sums import CELL
+from wavegen.dsp.highest import highest
 from wavegen.dsp.windows import kaiser_window
 from wavegen.files.analytic import PASSBAND_EDGE
 from wavegen.meters.peak import Located
@@ -103,8 +104,8 @@ def spectrum_of(signal: Signal, statistics: Located) -> NDArray[np.float64]:
         spread evenly and 16 at the highest cells.
     """
     n = signal.n_samples
-    highest = np.argsort(-statistics.cell_maxima, kind="stable")[:_HIGHEST]
-    centres = [int(cell) * CELL + CELL // 2 for cell in highest]
+    highest_cells = highest(statistics.cell_maxima, _HIGHEST)
+    centres = [int(cell) * CELL + CELL // 2 for cell in highest_cells]
     centres += [n * number // _EVEN for number in range(_EVEN)]
     window = kaiser_window(_STRETCH // 2, _KAISER_BETA)[:_STRETCH].astype(np.float32)
     power = np.zeros(_STRETCH)
