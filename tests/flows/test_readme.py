@@ -1,6 +1,7 @@
 """What README.md says is what the program does."""
 
 import re
+import runpy
 import shlex
 from pathlib import Path
 
@@ -91,3 +92,14 @@ def test_no_word_of_the_output_is_promised_in_vain():
     project = (ROOT / "pyproject.toml").read_text(encoding="utf-8")
     for extra in ("compiled", "dev"):
         assert re.search(rf"^{extra} = \[", project, re.MULTILINE)
+
+
+def test_the_examples_in_python_run(tmp_path, monkeypatch, capsys):
+    monkeypatch.chdir(tmp_path)
+    for name in ("make", "measure", "match"):
+        script = tmp_path / f"{name}.py"
+        script.write_text(block(f"python {name}"), encoding="utf-8")
+        runpy.run_path(str(script))
+    said = capsys.readouterr().out
+    assert "PAPR" in said
+    assert said.rstrip().endswith("match")

@@ -19,7 +19,13 @@ from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Cycle, Note, Site, samples_per
 from wavegen.core.units import QuantityError, format_hz
 from wavegen.dsp.arrival import Arrival
-from wavegen.dsp.pulse import Pulse, PulseSettings, Stretched, residual_evm_percent
+from wavegen.dsp.pulse import (
+    Pulse,
+    PulseSettings,
+    Stretched,
+    mean_energy,
+    residual_evm_percent,
+)
 from wavegen.dsp.pulse_shaping import Shaper, plan_shaping
 from wavegen.dsp.pulses.root_raised_cosine import RootRaisedCosine
 from wavegen.dsp.pulses.taps import MOST_TAPS, Taps
@@ -33,6 +39,7 @@ from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.reception import Reception, SymbolClass
 from wavegen.sources.rotation import Rotation
 from wavegen.sources.small_file import read_numbers
+from wavegen.sources.worst_run import Planted, peak_db, worst_run
 
 DOUBTFUL_EVM_PERCENT = 0.1
 """A cut pulse that leaves more interference than this is worth a warning."""
@@ -77,6 +84,9 @@ class SingleCarrier:
         rotation of ``pi/4``, QPSK is pi/4-DQPSK. The points must lie on one circle at equal
         distances. Where the data of a loop do not add up to whole turns, its last symbol makes
         up for it, which is noted; random data are drawn as phases and always close.
+    worst_case : bool
+        Whether the run of symbols with the highest peak that the carrier can have stands in the
+        middle of the loop: random data, neither staggered nor differential.
 
     Notes
     -----
@@ -95,6 +105,7 @@ class SingleCarrier:
     rotation: Rotation | None = None
     stagger: bool = False
     differential: bool = False
+    worst_case: bool = False
 
     def __post_init__(self) -> None:
         """Refuse what has no meaning together."""
@@ -106,6 +117,13 @@ class SingleCarrier:
                     remedy=f"Remove stagger or {key}.",
                     key="stagger",
                 )
+        if self.worst_case and (self.stagger or self.differential):
+            raise QuantityError(
+                problem="worst_case is asked together with stagger or differential",
+                allowed="carriers whose symbols are the points of their data",
+                remedy="Remove worst_case, or the other.",
+                key="worst_case",
+            )
 
     def cycle(self, sample_rate_hz: Fraction, path: str) -> Cycle:
         """Return the shortest loop: the fewest samples that hold whole symbols and turns."""
@@ -174,6 +192,8 @@ class SingleCarrier:
         n_samples, n_symbols = samples_per(rate_of_axis, site.sample_rate_hz)
         self._check(site, pulse, n_symbols)
         ideal = self._symbols(site, site.n_samples * b // a)
+        if self.worst_case:
+            ideal = self._with_worst_run(site, ideal, pulse, (a, b))
         inputs: tuple[Signal, ...] = (ideal,)
         if self.stagger:
             pulse = Stretched.of(pulse)
@@ -242,6 +262,37 @@ class SingleCarrier:
             numbers=numbers,
             rotation=self.rotation,
         )
+
+    def _with_worst_run(
+        self, site: Site, ideal: Symbols, pulse: Pulse, ratio: tuple[int, int]
+    ) -> Symbols:
+        length = 2 * pulse.span_symbols + 1
+        if not isinstance(self.data, Random) or ideal.n_samples < 2 * length:
+            is_random = isinstance(self.data, Random)
+            raise site.error(
+                key="worst_case",
+                problem=f"a run of {length} symbols in a loop of {ideal.n_samples}"
+                if is_random
+                else "a pattern would be broken by it",
+                allowed="random data, in loops of twice the run",
+                remedy="Lengthen the loop." if is_random else "Remove worst_case or the data.",
+            )
+        turn = 0.0 if self.rotation is None else 2 * math.pi * float(self.rotation.turns)
+        run = worst_run(
+            pulse,
+            ideal.constellation.points,
+            ratio=ratio,
+            n_symbols=ideal.n_samples,
+            turn_rad=turn,
+        )
+        mean = mean_energy(pulse, per_symbol=ratio[0], period_symbols=ideal.n_samples)
+        text = (
+            f"the highest peak that the carrier can have, {peak_db(run.amplitude, mean):.2f} dB "
+            f"over its mean, stands at sample {run.sample}: {length} symbols from symbol "
+            f"{run.first} on are no random data."
+        )
+        site.notes.append(Note(kind="info", where=f"{site.path}.worst_case", text=text))
+        return replace(ideal, numbers=Planted(numbers=ideal.numbers, run=run))
 
     def _check(self, site: Site, pulse: Pulse, n_symbols: int) -> None:
         rate, symbol_rate = site.sample_rate_hz, self.symbol_rate_hz
