@@ -2,6 +2,7 @@ import json
 
 import pytest
 
+from wavegen.cli.main import run
 from wavegen.cli.make import refuse_same_name
 from wavegen.core.errors import ArgumentsError
 
@@ -213,3 +214,15 @@ def test_the_best_of_what_is_alike_is_refused(call, recipe, tmp_path):
 )
 def test_questions_that_mean_nothing(call, recipe, given):
     assert call("make", recipe(), *given).status == 2
+
+
+def test_pictures_a_page_and_a_bench_sheet_on_request(tmp_path, capsys):
+    words = ["make", "ferry-two-carriers", "--set", "duration=1 ms", "--out", str(tmp_path)]
+    assert run([*words, "--report", "--bench-sheet"]) == 0
+    said = capsys.readouterr().out
+    assert "ferry-two-carriers.bench.html" in said.replace("\n", "").replace(" ", "")
+    folder = tmp_path / "ferry-two-carriers"
+    assert (folder / "ferry-two-carriers.report.html").is_file()
+    assert run([*words, "--report"]) == 4
+    assert run([*words, "--overwrite", "--accept-risk", "cable.average_limit"]) == 2
+    assert "cable.peak_limit" in capsys.readouterr().err

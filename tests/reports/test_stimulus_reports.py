@@ -1,0 +1,84 @@
+"""What is written beside a stimulus."""
+
+import json
+
+import pytest
+
+from wavegen.core.errors import ArgumentsError, FileError, TargetMissed
+from wavegen.production.make import make
+from wavegen.recipe.load import load_text
+from wavegen.reports.stimulus_reports import (
+    Wanted,
+    refuse_beforehand,
+    without_reduction,
+    write_stimulus_reports,
+)
+
+RECIPE = """\
+wavegen: 1
+title: A carrier with a bench
+sample_rate: 4 MHz
+duration: 2000 symbols
+signal:
+  kind: single_carrier
+  constellation: qpsk
+  symbol_rate: 1 MHz
+  pulse: {kind: root_raised_cosine, roll_off: 0.22}
+stages:
+  - {kind: clip, ceiling: 3 dB}
+"""
+BENCH = """\
+bench:
+  average_power_at_device: -20 dBm
+  generator: {clock_most: 100 MHz, word_bits: 14}
+  path:
+    - {name: cable, gain: -1 dB, peak_limit: -18 dBm}
+    - {name: amplifier, role: device, gain: 30 dB}
+"""
+ALL = Wanted(figures=True, report=True, sheet=True)
+
+
+def loaded(bench=BENCH):
+    return load_text(RECIPE + bench, name="car")
+
+
+def test_everything_beside_the_files(tmp_path):
+    made = make(loaded(), out=tmp_path, accepted_risks=["cable.peak_limit"])
+    names = write_stimulus_reports(made, ALL)
+    assert {"car.bench.html", "car.report.html", "car.ccdf.svg", "car.constellation.png"} <= set(
+        names
+    )
+    assert all((made.folder / name).is_file() for name in names)
+    sheet = (made.folder / "car.bench.html").read_text()
+    assert "the file without crest-factor reduction is loaded" in sheet
+    assert "EXCEEDED" in sheet
+    report = (made.folder / "car.report.html").read_text()
+    assert "Order of work" in report
+    assert made.document["files"][0]["sha512"] in report
+
+
+def test_an_accepted_risk_is_recorded_and_no_other_is_taken(tmp_path):
+    with pytest.raises(TargetMissed):
+        make(loaded(), out=tmp_path)
+    assert not (tmp_path / "car").exists()
+    with pytest.raises(ArgumentsError):
+        make(loaded(), out=tmp_path, accepted_risks=["amplifier.peak_limit"])
+    made = make(loaded(), out=tmp_path, accepted_risks=["cable.peak_limit"])
+    kept = json.loads((made.folder / "car.ccdf.json").read_text())
+    assert kept["bench"]["accepted_risks"] == ["cable.peak_limit"]
+
+
+def test_what_cannot_be_written_is_refused_beforehand(tmp_path):
+    with pytest.raises(ArgumentsError) as caught:
+        refuse_beforehand(loaded(""), ALL, tmp_path, overwrite=False)
+    assert caught.value.where == "--bench-sheet"
+    (tmp_path / "car.report.html").write_text("mine")
+    with pytest.raises(FileError):
+        refuse_beforehand(loaded(), ALL, tmp_path, overwrite=False)
+    refuse_beforehand(loaded(), ALL, tmp_path, overwrite=True)
+
+
+def test_a_recipe_without_its_crest_reduction():
+    assert without_reduction(loaded()) is not None
+    plain = load_text(RECIPE.partition("stages:")[0], name="car")
+    assert without_reduction(plain) is None
