@@ -46,3 +46,20 @@ def test_nothing():
     total, maxima = CellSums(7).total()
     assert total == 0.0
     assert maxima.size == 0
+
+
+def test_whole_cells_can_be_taken_away():
+    rng = np.random.default_rng(4)
+    sums, maxima = rng.random(11), rng.random(11)
+    cells = CellSums(0)
+    cells.add_cells(sums[:6], maxima[:6])
+    cells.add_cells(sums[6:], maxima[6:])
+    cells.add_powers(np.full(100, 2.0))
+    taken = cells.take(4)
+    assert taken.tolist() == sums[:8].tolist()
+    left = cells.cells()
+    assert left[0].tolist() == [*sums[8:], 200.0]
+    assert left[1].tolist() == [*maxima[8:], 2.0]
+    assert (cells.start, cells.stop) == (8 * 1024, 11 * 1024 + 100)
+    assert cells.take(4).size == 0
+    assert CellSums(5).take(1).size == 0

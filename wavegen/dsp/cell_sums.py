@@ -100,6 +100,19 @@ class CellSums:
         for powers in following._tail:
             self.add_powers(powers)
 
+    def take(self, multiple: int) -> NDArray[np.float64]:
+        """Return sums of the first whole cells, as many times ``multiple`` as there are; drop them.
+
+        Of a stretch that starts on the grid; it starts behind them afterwards.
+        """
+        count = sum(item.size for item in self._sums) // multiple * multiple
+        if self.start % CELL or not count:
+            return np.zeros(0)
+        sums, maxima = np.concatenate(self._sums), np.concatenate([np.zeros(0), *self._maxima])
+        self._sums, self._maxima = [sums[count:].copy()], [maxima[count:].copy()]
+        self.start += count * CELL
+        return sums[:count]
+
     def cells(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Return sum and largest power of each cell of the grid, from that of the first sample."""
         sums, maxima = list(self._sums), list(self._maxima)

@@ -282,6 +282,40 @@ class _Counts(PowerReading):
             self.add_row(batch, *row)
 
 
+class _RowSums:
+    """Sums of cells, made those of batches as soon as all cells of one are there.
+
+    Parameters
+    ----------
+    start : int
+        Index of the first sample.
+    length : int
+        Cells of a batch.
+
+    Notes
+    -----
+    Only the stretch that starts a record does so: the batches of others may be cut.
+    """
+
+    def __init__(self, start: int, length: int) -> None:
+        self.cells = CellSums(start)
+        self._length = length
+        self._is_first = start == 0
+        self._rows: list[NDArray[np.float64]] = []
+
+    def append(self, following: _RowSums) -> None:
+        """Append the stretch that starts where this one ends."""
+        self.cells.append(following.cells)
+        if self._is_first:
+            whole = self.cells.take(self._length)
+            if whole.size:
+                self._rows.append(_in_rows(whole, self._length))
+
+    def rows(self) -> NDArray[np.float64]:
+        """Return the sum of each batch."""
+        return np.concatenate([*self._rows, _in_rows(self.cells.cells()[0], self._length)])
+
+
 class BatchedPowerReading:
     """Running power statistics and batches of one stretch.
 
@@ -307,8 +341,8 @@ class BatchedPowerReading:
         )
         self._first = self._last = np.zeros(0, np.complex64)
         self._pairs: tuple[NDArray[np.int64], int] = (np.zeros(0, np.int64), 0)
-        self._squares: CellSums | None = None
-        self._cubes: CellSums | None = None
+        self._squares: _RowSums | None = None
+        self._cubes: _RowSums | None = None
         self._on: dict[int, int] = {}
 
     def feed(self, start: int, samples: Samples) -> None:
@@ -337,8 +371,9 @@ class BatchedPowerReading:
             self._held.append(samples.copy())
             return
         if self._squares is None or self._cubes is None:
-            self._squares, self._cubes = CellSums(start), CellSums(start)
-        self._add_pieces(start, samples, self._squares, self._cubes)
+            length = self._size // CELL
+            self._squares, self._cubes = _RowSums(start, length), _RowSums(start, length)
+        self._add_pieces(start, samples, self._squares.cells, self._cubes.cells)
 
     def _count_on(self, start: int, count: int, is_on: NDArray[np.bool_] | None) -> None:
         """Count the samples measured in each batch."""
@@ -447,11 +482,10 @@ class BatchedPowerReading:
 
     def _sums(self) -> NDArray[np.float64]:
         """Return the sums of the first three powers in batches of whole cells."""
-        readings = (self._power.cells, self._squares, self._cubes)
-        return np.stack(
-            [_in_rows(cells.cells()[0], self._size // CELL) for cells in readings if cells],
-            axis=1,
-        )
+        if not self._power.cells or self._squares is None or self._cubes is None:
+            return np.zeros((0, 3))
+        powers = _in_rows(self._power.cells.cells()[0], self._size // CELL)
+        return np.stack([powers, self._squares.rows(), self._cubes.rows()], axis=1)
 
     def _short(
         self, samples: Samples
