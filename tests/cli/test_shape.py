@@ -43,6 +43,8 @@ def test_a_field_becomes_a_stimulus(field, tmp_path, capsys):
         (["--bandwidth", "5"], 2),
         (["--tolerance", "0dB"], 2),
         (["--duration", "1.5samples"], 2),
+        (["--duration", "10samples"], 2),
+        (["--duration", "1e9samples"], 2),
         (["--set", "seed=2"], 2),
     ],
 )

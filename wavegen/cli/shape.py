@@ -31,13 +31,14 @@ class Shape:
 
     summary = "make a stimulus with a field signal's spectrum and power statistics"
     description = (
-        "Make a new stimulus with the spectrum and the CCDF of a field signal, and none of\n"
-        "its content. The field is a recording, a stimulus or a recipe; or a CCDF curve in\n"
-        "CSV, with --bandwidth and --sample-rate. A DC offset, fill words and start-up are\n"
-        "left out. With --gate the on-time is followed, and a regular gate of the same duty\n"
-        "goes on top. OUT/NAME/ gets the recipe (to edit and make again), the curve and the\n"
-        "spectrum that it follows, and what `wavegen make` writes. Exit status: 0 if every\n"
-        "level lies within the tolerance, else 5: then the files are the nearest found."
+        "Make a new stimulus with the spectrum and the CCDF of a field signal, and none\n"
+        "of its content. The field is a recording, a stimulus or a recipe; or a CCDF\n"
+        "curve in CSV, with --bandwidth and --sample-rate. A DC offset, fill words and\n"
+        "start-up are left out. With --gate the on-time is followed, and a regular gate\n"
+        "of the same duty goes on top. OUT/NAME/ gets the recipe (to edit and make\n"
+        "again), the curve and the spectrum that it follows, and what `wavegen make`\n"
+        "writes. Exit status: 0 if every level lies within the tolerance, else 5: then\n"
+        "the files are the nearest found."
     )
 
     @staticmethod

@@ -36,12 +36,14 @@ from wavegen.production.show import is_curve
 from wavegen.production.sidecar import FORMAT
 from wavegen.production.subject_files import open_subject
 from wavegen.recipe.load import load_recipe
+from wavegen.sources.shaped import LONGEST_SAMPLES
 
 TOLERANCE_DB = 0.05
 MOST_SAMPLES = 1 << 20
 """Length of the loop unless another is asked for, or the field is shorter."""
 FEWEST_SAMPLES = 1 << 17
 """A loop of a short field is longer: the last levels of few samples come in large steps."""
+SHORTEST_SAMPLES = 1024
 _EVENTS = 10
 _ALWAYS = 0.01
 _POINTS = 1500
@@ -151,6 +153,7 @@ def shape(
     rate_hz = _rate(side, settings)
     gate = _gate(side, rate_hz, spectrum, settings)
     n_samples = _length(side, settings, rate_hz, gate)
+    _check_length(n_samples)
     made = _make(
         _recipe(settings, rate_hz, n_samples, gate),
         _curve_text(side, n_samples),
@@ -232,6 +235,16 @@ def _length(side: Side, settings: ShapeSettings, rate_hz: Fraction, gate: _Gate 
     if gate is None:
         return wanted
     return max(wanted // gate.period_samples, 1) * gate.period_samples
+
+
+def _check_length(n_samples: int) -> None:
+    if not SHORTEST_SAMPLES <= n_samples <= LONGEST_SAMPLES:
+        raise ArgumentsError(
+            where="--duration",
+            problem=f"a loop of {n_samples} samples",
+            allowed=f"{SHORTEST_SAMPLES} to {LONGEST_SAMPLES} samples",
+            remedy="Choose another duration.",
+        )
 
 
 def _curve_text(side: Side, n_samples: int) -> str:
