@@ -113,22 +113,25 @@ class CellSums:
         self.start += count * CELL
         return sums[:count]
 
+    def sums(self) -> NDArray[np.float64]:
+        """Return the sum of each cell of the grid, from that of the first sample."""
+        ends = [np.concatenate(part) if part else None for part in (self._head, self._tail)]
+        head, tail = (np.zeros(0) if part is None else sum_cells(part) for part in ends)
+        return np.concatenate([head, *self._sums, tail])
+
+    def maxima(self) -> NDArray[np.float64]:
+        """Return the largest power of each cell of the grid, from that of the first sample."""
+        ends = [
+            np.concatenate(part).max(keepdims=True) if part else None
+            for part in (self._head, self._tail)
+        ]
+        head, tail = (np.zeros(0) if part is None else part for part in ends)
+        return np.concatenate([head, *self._maxima, tail])
+
     def cells(self) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
         """Return sum and largest power of each cell of the grid, from that of the first sample."""
-        sums, maxima = list(self._sums), list(self._maxima)
-        if self._head:
-            head = np.concatenate(self._head)
-            sums.insert(0, sum_cells(head))
-            maxima.insert(0, head.max(keepdims=True))
-        if self._tail:
-            tail = np.concatenate(self._tail)
-            sums.append(sum_cells(tail))
-            maxima.append(tail.max(keepdims=True))
-        if not sums:
-            return np.zeros(0), np.zeros(0)
-        return np.concatenate(sums), np.concatenate(maxima)
+        return self.sums(), self.maxima()
 
-    def total(self) -> tuple[float, NDArray[np.float64]]:
-        """Return the sum of all by a fixed pairwise tree, and the largest power of each cell."""
-        sums, maxima = self.cells()
-        return sum_tree(sums), maxima
+    def total(self) -> float:
+        """Return the sum of all by a fixed pairwise tree."""
+        return sum_tree(self.sums())

@@ -313,7 +313,7 @@ class _RowSums:
 
     def rows(self) -> NDArray[np.float64]:
         """Return the sum of each batch."""
-        return np.concatenate([*self._rows, _in_rows(self.cells.cells()[0], self._length)])
+        return np.concatenate([*self._rows, _in_rows(self.cells.sums(), self._length)])
 
 
 class BatchedPowerReading:
@@ -446,7 +446,7 @@ class BatchedPowerReading:
         if self._meter.bursts is not None:
             left_out = statistics.n_samples - n_on
             cells = self._power.cells
-            total = cells.total()[0] if cells else 0.0
+            total = cells.total() if cells else 0.0
             statistics = replace(
                 statistics,
                 n_samples=n_on,
@@ -484,7 +484,7 @@ class BatchedPowerReading:
         """Return the sums of the first three powers in batches of whole cells."""
         if not self._power.cells or self._squares is None or self._cubes is None:
             return np.zeros((0, 3))
-        powers = _in_rows(self._power.cells.cells()[0], self._size // CELL)
+        powers = _in_rows(self._power.cells.sums(), self._size // CELL)
         return np.stack([powers, self._squares.rows(), self._cubes.rows()], axis=1)
 
     def _short(

@@ -59,7 +59,7 @@ class GatedPowerReading:
         statistics = self._power.result()
         n_on = statistics.n_samples - self._n_left_out
         cells = self._power.cells
-        total = cells.total()[0] if cells else 0.0
+        total = cells.total() if cells else 0.0
         return replace(
             statistics,
             n_samples=n_on,

@@ -140,7 +140,7 @@ class PowerReading:
                 allowed="one sample or more",
                 remedy="Check the file, or the part of it that was asked for.",
             )
-        return self.cells.total()[0] / self.n_samples
+        return self.cells.total() / self.n_samples
 
     def result(self) -> PowerStatistics:
         """Return the statistics.
@@ -171,7 +171,7 @@ class PowerReading:
             top_powers=np.array(powers),
             top_counts=np.array([self._top[power] for power in powers], np.int64),
             start=self.cells.start,
-            cell_maxima=self.cells.total()[1],
+            cell_maxima=self.cells.maxima(),
         )
 
 
