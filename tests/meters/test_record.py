@@ -93,4 +93,12 @@ def test_all_alike(held):
 
 
 def test_cells_follow_the_length():
-    assert [cell_length(n) for n in (1, 100, 10_000, 10**6, 10**9)] == [16, 16, 32, 2048, 4096]
+    assert [cell_length(n) for n in (1, 100, 10_000, 10**6, 10**9)] == [16, 16, 32, 2048, 8192]
+
+
+@pytest.mark.parametrize("n", [1, 4095, 4096, 1 << 20, (1 << 29) - 1, 1 << 29, 10**10])
+def test_cells_are_neither_too_many_nor_too_long(n):
+    length = cell_length(n)
+    assert length & (length - 1) == 0
+    assert -(-n // length) <= 1 << 17
+    assert length <= 4096 or -(-n // length) > 1 << 15

@@ -43,6 +43,9 @@ def sum_tree(values: NDArray[np.float64]) -> float:
     return float(values[0]) if values.size else 0.0
 
 
+_MOST_SMALL = 64
+
+
 class CellSums:
     """Sums over cells of the absolute grid, from stretches cut anywhere.
 
@@ -64,6 +67,7 @@ class CellSums:
         self._tail: list[NDArray[np.float64]] = []
         self._sums: list[NDArray[np.float64]] = []
         self._maxima: list[NDArray[np.float64]] = []
+        self._n_small = 0
 
     @property
     def _first_edge(self) -> int:
@@ -81,15 +85,23 @@ class CellSums:
         if self.stop % CELL == 0 and self._tail:
             whole = np.concatenate(self._tail)
             self._tail = []
-            self._sums.append(sum_cells(whole))
-            self._maxima.append(whole.max(keepdims=True))
+            self._keep(sum_cells(whole), whole.max(keepdims=True))
 
     def add_cells(self, sums: NDArray[np.float64], maxima: NDArray[np.float64]) -> None:
         """Append whole cells; this stretch must end on the grid."""
         if sums.size:
-            self._sums.append(sums)
-            self._maxima.append(maxima)
+            self._keep(sums, maxima)
             self.stop += sums.size * CELL
+
+    def _keep(self, sums: NDArray[np.float64], maxima: NDArray[np.float64]) -> None:
+        """Append; many small arrays become one, lest they scatter over the memory."""
+        self._sums.append(sums)
+        self._maxima.append(maxima)
+        self._n_small += 1
+        if self._n_small == _MOST_SMALL:
+            for kept in (self._sums, self._maxima):
+                kept[-_MOST_SMALL:] = [np.concatenate(kept[-_MOST_SMALL:])]
+            self._n_small = 0
 
     def append(self, following: CellSums) -> None:
         """Append the stretch that starts where this one ends."""
@@ -110,6 +122,7 @@ class CellSums:
             return np.zeros(0)
         sums, maxima = np.concatenate(self._sums), np.concatenate([np.zeros(0), *self._maxima])
         self._sums, self._maxima = [sums[count:].copy()], [maxima[count:].copy()]
+        self._n_small = 0
         self.start += count * CELL
         return sums[:count]
 

@@ -31,6 +31,7 @@ FINEST_CODES = 1 << 15
 """Codes to full scale up to which each is counted; finer ones are counted by octaves."""
 _CELLS_AT_LEAST = 256
 _LONGEST_CELL = 1 << 12
+_MOST_CELLS = 1 << 17
 _SHORTEST_CELL = 1 << 4
 _BLOCK = 1 << 14
 """Samples looked at in turn: 128 kB, which stay in the cache."""
@@ -39,9 +40,14 @@ _MOST_FRESH = 1 << 31
 
 
 def cell_length(n_samples: int) -> int:
-    """Return the length of a cell of sums: 256 to 511 of them, up to 4096 samples each."""
+    """Return the length of a cell of sums: a power of two.
+
+    256 to 511 cells of up to 4096 samples each; of very long records longer ones, so that there
+    are never more than 131072.
+    """
     wanted = 1 << max(n_samples // _CELLS_AT_LEAST, 1).bit_length() - 1
-    return min(max(wanted, _SHORTEST_CELL), _LONGEST_CELL)
+    longest = max(_LONGEST_CELL, 1 << (max(n_samples - 1, 0) // _MOST_CELLS).bit_length())
+    return min(max(wanted, _SHORTEST_CELL), longest)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
