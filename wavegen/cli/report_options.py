@@ -44,7 +44,7 @@ def are_wanted(arguments: argparse.Namespace) -> bool:
     Raises
     ------
     ArgumentsError
-        A page that is no HTML file by its name.
+        A page that is no HTML file by its name, or what draws is not installed.
     """
     page = arguments.report
     if page is not None and page.suffix.lower() not in PAGE_SUFFIXES:
@@ -54,7 +54,12 @@ def are_wanted(arguments: argparse.Namespace) -> bool:
             allowed="the name of an HTML file",
             remedy="Write it like --report link.html.",
         )
-    return arguments.figures is not None or page is not None
+    if arguments.figures is None and page is None:
+        return False
+    from wavegen.reports.figures.look import check_installed
+
+    check_installed()
+    return True
 
 
 def write_reports(

@@ -16,6 +16,7 @@ from wavegen.production.subject_files import open_subject
 from wavegen.production.views import views_of
 from wavegen.recipe.load import LoadedRecipe
 from wavegen.reports import bench_sheet as sheets
+from wavegen.reports.figures.look import check_installed
 from wavegen.reports.figures.stimulus import pictures_of
 from wavegen.reports.pages.stimulus import stimulus_page
 from wavegen.reports.written import write_page, write_pictures
@@ -48,10 +49,11 @@ def refuse_beforehand(
     Raises
     ------
     ArgumentsError
-        A bench sheet of a recipe that has no bench.
+        A bench sheet of a recipe that has no bench, or what draws is not installed.
     FileError
         A page that exists.
     """
+    check_installed()
     if wanted.sheet and loaded.recipe.bench is None:
         raise ArgumentsError(
             where="--bench-sheet",

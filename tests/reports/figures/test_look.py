@@ -6,8 +6,10 @@ import numpy as np
 import pytest
 
 from wavegen.core.errors import ArgumentsError
+from wavegen.reports.figures import look
 from wavegen.reports.figures.look import (
     STROKES,
+    check_installed,
     condensed,
     draw,
     legend,
@@ -55,3 +57,13 @@ def test_condensed_keeps_the_mean():
     assert condensed(values, 2000) is not values
     assert condensed(values, 100).size == 100
     assert condensed(values, 100).mean() == values.mean()
+
+
+@pytest.mark.parametrize(("missing", "name"), [("matplotlib", "Matplotlib"), ("jinja2", "Jinja")])
+def test_what_is_missing_is_told_before_work_begins(monkeypatch, missing, name):
+    check_installed()
+    monkeypatch.setattr(look, "find_spec", lambda module: None if module == missing else object())
+    with pytest.raises(ArgumentsError) as caught:
+        check_installed()
+    assert name in caught.value.problem
+    assert "pip install" in caught.value.remedy

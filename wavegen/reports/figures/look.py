@@ -5,6 +5,7 @@ from __future__ import annotations
 import io
 from collections.abc import Sequence
 from dataclasses import dataclass
+from importlib.util import find_spec
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
@@ -109,6 +110,24 @@ def new_figure(title: str, *, n_panels: int = 1) -> tuple[Figure, Sequence[Axes]
     for axes in panels:
         plain(axes)
     return figure, panels
+
+
+def check_installed() -> None:
+    """Refuse to begin work whose pictures or pages could not be made in the end.
+
+    Raises
+    ------
+    ArgumentsError
+        Matplotlib or Jinja is not installed; says which command installs them.
+    """
+    for module, name in (("matplotlib", "Matplotlib"), ("jinja2", "Jinja")):
+        if find_spec(module) is None:
+            raise ArgumentsError(
+                where="--figures/--report",
+                problem=f"pictures and pages need {name}, which is not installed",
+                allowed="an installation with the extra `reports`",
+                remedy=f"Run: {INSTALL}",
+            )
 
 
 def plain(axes: Axes) -> None:
