@@ -49,16 +49,14 @@ def test_lengths_follow_the_band():
 
 
 def test_a_method_without_a_ceiling():
-    if "selected_mapping" not in searchable_kinds():
-        pytest.skip("no such method")
+    assert "selected_mapping" in searchable_kinds()
     space = space_of("selected_mapping", None, **BAND)
     assert not space.has_ceiling
     assert "ceiling_db" not in space.told(space.stage(space.start))
 
 
 def test_settings_that_a_search_cannot_choose():
-    if "tone_reservation" not in searchable_kinds():
-        pytest.skip("no such method")
+    assert "tone_reservation" in searchable_kinds()
     why = space_of("tone_reservation", None, **BAND)
     assert isinstance(why, str)
     assert "recipe" in why

@@ -7,10 +7,10 @@ from pathlib import Path
 from typing import Any
 
 from wavegen.cli.check import STATUS
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.measure_options import probability
 from wavegen.cli.options import add_workers, tolerance_db
-from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
+from wavegen.cli.report_options import add_reports, are_wanted, compared
 from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
 from wavegen.core.errors import ArgumentsError
 
@@ -96,18 +96,14 @@ class GainCurve:
             by_fit=arguments.model_from == "rapp",
             overwrite=arguments.overwrite,
         )
-        progress = ConsoleProgress()
-        try:
-            document = gain_curve(*sides, settings, workers=arguments.workers, progress=progress)
-            said = report_comparison(arguments, document) if draws else []
-        finally:
-            progress.close()
-        if arguments.json:
-            console.document(document)
-        else:
-            show(document, console)
-            for line in said:
-                console.line(line)
+        document = compared(
+            arguments,
+            console,
+            lambda progress: gain_curve(
+                *sides, settings, workers=arguments.workers, progress=progress
+            ),
+            show,
+        )
         return STATUS[document["verdict"]]
 
 

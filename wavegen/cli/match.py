@@ -6,10 +6,10 @@ import argparse
 from typing import Any
 
 from wavegen.cli.check import STATUS
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.measure_options import probability
 from wavegen.cli.options import add_workers, tolerance_db
-from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
+from wavegen.cli.report_options import add_reports, are_wanted, compared
 from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
 
 SIDES = ("stimulus", "field")
@@ -66,18 +66,12 @@ class Match:
             tolerance_db=DEFAULT.tolerance_db if tolerance is None else tolerance,
             down_to=DEFAULT.down_to if down_to is None else down_to,
         )
-        progress = ConsoleProgress()
-        try:
-            document = match(*sides, settings, workers=arguments.workers, progress=progress)
-            said = report_comparison(arguments, document) if are_wanted(arguments) else []
-        finally:
-            progress.close()
-        if arguments.json:
-            console.document(document)
-        else:
-            show(document, console)
-            for line in said:
-                console.line(line)
+        document = compared(
+            arguments,
+            console,
+            lambda progress: match(*sides, settings, workers=arguments.workers, progress=progress),
+            show,
+        )
         return STATUS[document["verdict"]]
 
 

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import argparse
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
@@ -124,6 +125,46 @@ def report_comparison(arguments: argparse.Namespace, document: dict[str, Any]) -
     pictures = draw(document)
     page = write(document, pictures)
     return write_reports(arguments, pictures, page, stem=stem_of(document.get("name") or kind))
+
+
+def compared(
+    arguments: argparse.Namespace,
+    console: Console,
+    work: Callable[[ConsoleProgress], dict[str, Any]],
+    show: Callable[[dict[str, Any], Console], None],
+) -> dict[str, Any]:
+    """Do the work of a comparing verb, draw what is asked for, and print it.
+
+    Parameters
+    ----------
+    arguments : Namespace
+        With the options of :func:`add_reports`.
+    console : Console
+        Where it is printed.
+    work : callable
+        Makes the document; told a progress.
+    show : callable
+        Prints a document for people.
+
+    Returns
+    -------
+    dict
+        The document.
+    """
+    draws = are_wanted(arguments)
+    progress = ConsoleProgress()
+    try:
+        document = work(progress)
+        said = report_comparison(arguments, document) if draws else []
+    finally:
+        progress.close()
+    if arguments.json:
+        console.document(document)
+        return document
+    show(document, console)
+    for line in said:
+        console.line(line)
+    return document
 
 
 def stem_of(name: str) -> str:

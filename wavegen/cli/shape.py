@@ -7,7 +7,7 @@ from pathlib import Path
 from typing import Any
 
 from wavegen.cli.check import STATUS
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.measure_options import add_gate, add_part, gate_of, span
 from wavegen.cli.options import (
     add_overrides,
@@ -20,7 +20,7 @@ from wavegen.cli.options import (
     tolerance_db,
     whole,
 )
-from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
+from wavegen.cli.report_options import add_reports, are_wanted, compared
 from wavegen.core.errors import ArgumentsError
 
 MOST_SEED = 2**63 - 1
@@ -95,25 +95,19 @@ class Shape:
             sample_rate_hz=field.hints.sample_rate_hz,
             tolerance_db=TOLERANCE_DB if arguments.tolerance is None else arguments.tolerance,
         )
-        progress = ConsoleProgress()
-        try:
-            document = shape(
+        document = compared(
+            arguments,
+            console,
+            lambda progress: shape(
                 field,
                 settings,
                 out=arguments.out,
                 overwrite=arguments.overwrite,
                 workers=arguments.workers,
                 progress=progress,
-            )
-            said = report_comparison(arguments, document) if are_wanted(arguments) else []
-        finally:
-            progress.close()
-        if arguments.json:
-            console.document(document)
-        else:
-            show(document, console)
-            for line in said:
-                console.line(line)
+            ),
+            show,
+        )
         return STATUS[document["verdict"]]
 
 
