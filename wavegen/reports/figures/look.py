@@ -23,7 +23,7 @@ FAINT = "#c9d1d8"
 SHADE = "#eef1f3"
 SIZE_INCHES = (8.0, 5.4)
 FORMATS = ("svg", "png")
-INSTALL = 'pip install "wavegen[reports]"'
+INSTALL = "pip install matplotlib jinja2"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
