@@ -409,15 +409,16 @@ def _count(  # noqa: PLR0912, PLR0915, PLR0917 - one loop: what it calls is not 
         first = cell * CELL
         size = min(CELL, n_samples - first)
         mine = parts[2 * first : 2 * (first + size)]
-        for i in range(size):
-            real = mine[2 * i]
-            imag = mine[2 * i + 1]
-            power[i] = real * real + imag * imag
         high = np.uint32(0)
         low = np.uint32(0xFFFFFFFF)
         for i in range(size):
-            high = max(high, bits[i])
-            low = min(low, bits[i])
+            real = mine[2 * i]
+            imag = mine[2 * i + 1]
+            of_one = real * real + imag * imag
+            power[i] = of_one
+            code = np.float32(of_one).view(np.uint32)
+            high = max(high, code)
+            low = min(low, code)
         if size == CELL and low >= np.uint32(_LEAST_PLAIN) and high < np.uint32(_ABOVE_PLAIN):
             number = np.int64((high + half_bin) >> np.uint32(14)) + _SHIFT
             if number > top:

@@ -7,6 +7,7 @@ band of the signal, where a stretch from anywhere else in the loop has next to n
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 import scipy.fft
@@ -234,9 +235,15 @@ def _spectrum(signal: Signal, centre: int, length: int) -> NDArray[np.float64]:
     """Return the windowed power spectrum of a stretch, shape (length,)."""
     wanted = (centre - length // 2, centre + length // 2)
     samples = evaluate({signal: wanted})[signal].astype(np.complex128)
-    window = np.kaiser(length + 1, KAISER_BETA)[:-1]
-    power: NDArray[np.float64] = np.abs(scipy.fft.fft(samples * window)) ** 2
+    power: NDArray[np.float64] = np.abs(scipy.fft.fft(samples * _window(length))) ** 2
     return power
+
+
+@cache
+def _window(length: int) -> NDArray[np.float64]:
+    """Return the window of every stretch of a length, shape (length,)."""
+    window: NDArray[np.float64] = np.kaiser(length + 1, KAISER_BETA)[:-1]
+    return window
 
 
 def _out_of_band(
