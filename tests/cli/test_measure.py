@@ -548,6 +548,9 @@ def test_what_a_sensor_would_read(call, noise):
     assert document["sensor"]["levels"][0]["shortfall_db"] > 1
     said = call("measure", path, *RATE, *options, "--video-shape", "brick-wall")
     assert "what a sensor of limited bandwidth reads" in said.out
+    first = document["sensor"]["levels"][0]
+    assert first["low_db"] < first["level_db"] < first["high_db"]
+    assert said.out.count("process, 95 %") == 2
     assert "brick wall" in " ".join(said.out.split())
 
 

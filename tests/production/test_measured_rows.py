@@ -119,6 +119,26 @@ def test_what_a_sensor_reads_low(samples):
     assert found["levels"][0]["shortfall_db"] == pytest.approx(0.0, abs=0.01)
     assert found["peak_shortfall_db"] == pytest.approx(0.0, abs=1e-4)
     assert rows.sensor_rows(seen, signal, SensorSettings(), (0.1,))["shape"] is None
+    assert "low_db" not in found["levels"][0]
+
+
+@pytest.mark.parametrize("loops", [False, True])
+def test_readings_carry_the_interval_of_the_process(samples, loops):
+    batched = measure_batches(samples)
+    found = rows.sensor_rows(
+        batched.statistics,
+        batched.statistics,
+        SensorSettings(video_bandwidth_hz=1e5),
+        (0.1, 0.01),
+        sample=SampledStatistics.of(batched),
+        loops=loops,
+    )
+    stated = found["process_levels"] if loops else found["levels"]
+    for row in stated:
+        assert row["low_db"] < row["level_db"] < row["high_db"]
+    assert ("low_db" in found["levels"][0]) == ("low" in found["ccdf"]) == (not loops)
+    assert found["confidence"] == 0.95
+    assert all("shortfall_db" in row for row in found["levels"])
 
 
 def test_no_symbols_no_rows():

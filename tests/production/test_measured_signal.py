@@ -76,6 +76,26 @@ def test_a_sensor_reads_over_the_true_mean(subject):
         measure_signal(item, fast)
 
 
+def test_readings_are_sampled_as_the_record_is(subject):
+    slow = SensorSettings(video_bandwidth_hz=2e5, sensor_rate_hz=Fraction(10**6))
+    settings = MeasureSettings(sensor=slow)
+    record = measure_signal(subject(), settings)
+    sampled = record.part.sensor
+    assert sampled.statistics.n_samples == record.sensor.n_samples < 8000
+    assert sampled.statistics.mean == record.statistics.mean
+    assert sampled.batches.sums[:, 0].sum() == pytest.approx(
+        record.statistics.mean * record.sensor.n_samples, rel=1e-9
+    )
+    loop = subject(loops=True)
+    loop.signal.samples[:] = np.tile(loop.signal.samples[:800], 10)
+    found = measure_signal(loop, settings)
+    times = found.sensor.n_samples / found.part.sensor.statistics.n_samples
+    assert times == pytest.approx(10, rel=0.02)
+    exact = MeasureSettings(sensor=slow, states_process=False)
+    assert measure_signal(subject(), exact).part is None
+    assert measure_signal(subject(every_loop="a law"), settings).part is None
+
+
 def test_the_peak_of_the_on_time_is_known_where_that_of_all_lies_in_it(subject):
     from wavegen.dsp.bursts import Bursts
 

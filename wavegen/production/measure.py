@@ -88,7 +88,7 @@ def measure(
     statistics = merged([item.statistics for item in found])
     peaks = [item.peak for item in found if item.peak is not None]
     peak = max(peaks, key=lambda item: item.power, default=None)
-    sample = sampled(found, on=False)
+    sample = sampled(found, "whole")
     asked = rows.asked_probabilities(settings.probabilities)
     rate_hz = first.signal.sample_rate_hz
     kinds = {LOOP if item.loops else RECORDING for item in subjects}
@@ -216,7 +216,12 @@ def _add_views(
     if settings.sensor is not None:
         seen = merged([item.sensor for item in found if item.sensor is not None])
         document["sensor"] = rows.sensor_rows(
-            replace(seen, mean=statistics.mean), statistics, settings.sensor, asked
+            replace(seen, mean=statistics.mean),
+            statistics,
+            settings.sensor,
+            asked,
+            sample=sampled(found, "sensor"),
+            loops=any(item.subject.loops for item in found),
         )
     if len(found) == 1:
         plan = first.subject.symbols

@@ -28,7 +28,7 @@ def on_time_rows(found: Sequence[MeasuredSignal], asked: Sequence[float]) -> dic
         )
         return {"is": first.found.label, "n_samples": 0, "reason": missing}
     statistics = merged([gate.on.statistics for gate in measured if gate.on])
-    sample = sampled(found, on=True)
+    sample = sampled(found, "on")
     label = first.found.label if len(found) == 1 else f"bursts of {len(found)} files"
     peak_db = max((on_peak_db(item) for item in found), default=math.nan)
     document: dict[str, Any] = {

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import replace
+from typing import Literal
 
 from wavegen.core.errors import ArgumentsError
 from wavegen.meters.batches import BatchedStatistics, pooled
@@ -71,11 +72,21 @@ def _on_scale_of(first: Subject, item: Subject) -> Subject:
     )
 
 
-def sampled(found: Sequence[MeasuredSignal], *, on: bool) -> SampledStatistics | None:
-    """Return what all subjects together tell of their process; None where one says nothing."""
+def sampled(
+    found: Sequence[MeasuredSignal], of: Literal["whole", "on", "sensor"]
+) -> SampledStatistics | None:
+    """Return what all subjects together tell of their process; None where one says nothing.
+
+    Parameters
+    ----------
+    found : sequence of MeasuredSignal
+        One or more.
+    of : {"whole", "on", "sensor"}
+        All of the time, the on-time, or what a sensor reads.
+    """
     parts: list[BatchedStatistics] = []
     for item in found:
-        part = None if item.part is None else (item.part.on if on else item.part.whole)
+        part: BatchedStatistics | None = None if item.part is None else getattr(item.part, of)
         if part is None:
             return None
         parts.append(part)

@@ -214,16 +214,35 @@ def sensor_rows(
     signal: PowerStatistics,
     sensor: SensorSettings,
     probabilities: Iterable[float],
+    *,
+    sample: SampledStatistics | None = None,
+    loops: bool = False,
 ) -> dict[str, Any]:
-    """Return what a sensor reads, and by how much it reads low."""
-    rate_hz = sensor.sensor_rate_hz
-    rows = exact_levels(seen, probabilities)
+    """Return what a sensor reads, and by how much it reads low.
+
+    Parameters
+    ----------
+    seen, signal : PowerStatistics
+        Of the readings, and of the signal itself.
+    sensor : SensorSettings
+        What the sensor is.
+    probabilities : iterable of float
+        Of the levels.
+    sample : SampledStatistics, optional
+        What the readings tell of the process: of a recording in ``levels`` and ``ccdf``, of a
+        loop in ``process_levels``.
+    loops : bool
+        Whether a loop is among what was measured.
+    """
+    rate_hz, asked = sensor.sensor_rate_hz, tuple(probabilities)
+    of_record = sample if not loops else None
+    rows = sampled_levels(of_record, asked) if of_record else exact_levels(seen, asked)
     for row in rows:
         true_db = float(signal.level_db(row["probability"]))
         row["shortfall_db"] = (
             None if row["level_db"] is None else rounded(true_db - row["level_db"], 4)
         )
-    return {
+    document = {
         "is": SENSOR,
         "video_bandwidth_hz": sensor.video_bandwidth_hz,
         "shape": sensor.shape if sensor.video_bandwidth_hz is not None else None,
@@ -232,8 +251,13 @@ def sensor_rows(
         "papr_db": rounded(seen.papr_db),
         "peak_shortfall_db": rounded(signal.papr_db - seen.papr_db, 4),
         "levels": rows,
-        "ccdf": curves(seen)["ccdf"],
+        "ccdf": sampled_curve(of_record) if of_record else curves(seen)["ccdf"],
     }
+    if sample is not None:
+        document["confidence"] = CONFIDENCE
+        if loops:
+            document["process_levels"] = sampled_levels(sample, asked)
+    return document
 
 
 def symbol_rows(

@@ -19,6 +19,7 @@ from wavegen.meters.peak import BetweenSamplesPeak, peak_between_samples
 from wavegen.meters.power import PowerMeter, PowerStatistics
 from wavegen.meters.repetition import data_period
 from wavegen.meters.sensor import sensor_view
+from wavegen.meters.sensor_sample import sample_by_sensor
 from wavegen.meters.symbol_papr import SymbolPaprMeter, SymbolPaprStatistics
 from wavegen.meters.useful_symbols import UsefulSymbols
 from wavegen.production.measure_settings import MeasureSettings, SensorSettings
@@ -46,11 +47,14 @@ class SampledPart:
         Of its on-time.
     n_samples : int
         Its length.
+    sensor : BatchedStatistics or None
+        What a sensor reads of it.
     """
 
     whole: BatchedStatistics
     on: BatchedStatistics | None
     n_samples: int
+    sensor: BatchedStatistics | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -165,6 +169,11 @@ def measure_signal(
         part = _one_period(signal, period, gate, where, how)
     if search is not None and check is None:
         check = search.result(read)
+    sensor = None
+    if settings.sensor is not None:
+        sensor, part = _by_sensor(
+            subject, signal, settings.sensor, mean=statistics.mean, part=part, how=how
+        )
     return MeasuredSignal(
         subject=subject,
         signal=signal,
@@ -175,7 +184,7 @@ def measure_signal(
         check=check,
         removed=check.offset if check and settings.removes_offset else 0j,
         bandwidth_hz=_bandwidth_hz(subject, search),
-        sensor=_by_sensor(subject, signal, statistics, settings.sensor, how),
+        sensor=sensor,
         symbols=tuple(read[tap.name] for tap in symbols),
     )
 
@@ -252,13 +261,13 @@ def _one_period(
 def _by_sensor(
     subject: Subject,
     signal: Signal,
-    statistics: PowerStatistics,
-    sensor: SensorSettings | None,
+    sensor: SensorSettings,
+    *,
+    mean: float,
+    part: SampledPart | None,
     how: dict[str, Any],
-) -> PowerStatistics | None:
+) -> tuple[PowerStatistics, SampledPart | None]:
     """Measure what a sensor would read; its mean is the signal's, which its filter keeps."""
-    if sensor is None:
-        return None
     view = sensor_view(
         signal,
         video_bandwidth_hz=sensor.video_bandwidth_hz,
@@ -266,10 +275,21 @@ def _by_sensor(
         shape=sensor.shape,
         loops=subject.loops,
     )
+    is_all = part is not None and part.n_samples == signal.n_samples
+    if part is not None:
+        once = view.n_samples
+        if not is_all:  # one data period of a loop
+            ratio = signal.sample_rate_hz / view.sample_rate_hz
+            once = math.ceil(part.n_samples / ratio)
+        sampled = sample_by_sensor(
+            view, n_readings=once, loops=subject.loops, mean=mean, where=subject.name, **how
+        )
+        part = replace(part, sensor=sampled)
+        if is_all:
+            return sampled.statistics, part
     tap = Tap(name="sensor", signal=view, meter=PowerMeter(where=subject.name))
     read = render(view, taps=(tap,), task="as the sensor sees it", **how)
-    found: PowerStatistics = read["sensor"]
-    return replace(found, mean=statistics.mean)
+    return replace(read["sensor"], mean=mean), part
 
 
 def on_peak_db(measured: MeasuredSignal) -> float:

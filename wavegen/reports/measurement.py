@@ -245,12 +245,13 @@ def _sensor(document: dict[str, Any]) -> list[Table]:
         settings.append(f"video bandwidth {width}, {sensor['shape'].replace('_', ' ')}")
     if sensor["sensor_rate_hz"] is not None:
         settings.append(f"readings at {format_hz(sensor['sensor_rate_hz'])}")
-    columns = {
-        "reading": _cells(rows, document | {"n_samples": sensor["n_samples"]}),
-        "reads low by": [
-            "" if row["shortfall_db"] is None else fixed(row["shortfall_db"], "dB") for row in rows
-        ],
-    }
+    columns = {"reading": _cells(rows, document | {"n_samples": sensor["n_samples"]})}
+    intervals = sensor.get("process_levels") or (rows if "low_db" in rows[0] else None)
+    if intervals:
+        columns["process, 95 %"] = [_interval(row) for row in intervals]
+    columns["reads low by"] = [
+        "" if row["shortfall_db"] is None else fixed(row["shortfall_db"], "dB") for row in rows
+    ]
     peak = f"its peak reads {sensor['peak_shortfall_db']:.2f} dB low"
     title = f"{sensor['is']} ({', '.join(settings)}); {peak}"
     return [_level_table(title, rows, columns)]
