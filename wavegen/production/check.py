@@ -40,6 +40,25 @@ _SAME: dict[str, Any] = {
 }
 """Equal bytes: no difference, and nothing to measure."""
 
+_MISSING: dict[str, Any] = {
+    "hash": "missing",
+    "verdict": "undecided",
+    "compared_by": None,
+    "is_readable": False,
+    "reasons": [],
+    "largest_difference_db": None,
+    "at_probability": None,
+    "mean_difference_db": None,
+    "peak_difference_db": None,
+    "peak_between_samples_difference_db": None,
+    "papr_difference_db": None,
+    "levels": [],
+    "channels": None,
+    "against_law": None,
+    "warnings": [],
+}
+"""Nothing known yet."""
+
 _PLAIN = ReadHints()
 _FIGURES = ("mean_dbfs", "peak_dbfs", "peak_between_samples_dbfs", "papr_db")
 
@@ -95,6 +114,7 @@ def check(
         )
         for item in stimulus.items
     ]
+    files += [_check_table(stimulus, item) for item in stimulus.document["side_information"] or ()]
     verdicts = [row["verdict"] for row in files]
     law_verdicts = [verdict for row in files for verdict in law_verdicts_of(row)]
     return {
@@ -143,24 +163,7 @@ def check_file(
     dict
         JSON values; differences are those of the file from the sidecar, dB.
     """
-    row: dict[str, Any] = {
-        "name": item["name"],
-        "hash": "missing",
-        "verdict": "undecided",
-        "compared_by": None,
-        "is_readable": False,
-        "reasons": [],
-        "largest_difference_db": None,
-        "at_probability": None,
-        "mean_difference_db": None,
-        "peak_difference_db": None,
-        "peak_between_samples_difference_db": None,
-        "papr_difference_db": None,
-        "levels": [],
-        "channels": None,
-        "against_law": None,
-        "warnings": [],
-    }
+    row = _MISSING | {"name": item["name"]}
     path = stimulus.path.parent / item["name"]
     try:
         is_equal = sha512_of(path, progress) == item["sha512"]
@@ -185,6 +188,20 @@ def check_file(
         for one, figures in zip(recordings, stated, strict=True)
     ]
     return row | _together(found)
+
+
+def _check_table(stimulus: Stimulus, item: dict[str, Any]) -> dict[str, Any]:
+    """Compare a table of side information with its entry: by its bytes alone."""
+    row = _MISSING | {"name": item["name"]}
+    try:
+        is_equal = sha512_of(stimulus.path.parent / item["name"]) == item["sha512"]
+    except FileError as error:
+        return row | {"reasons": [str(error)]}
+    row |= {"is_readable": True, "compared_by": "hash"}
+    if is_equal:
+        return row | {"hash": "equal", "verdict": "match"}
+    reasons = ["it is not the table that was written with the stimulus"]
+    return row | {"hash": "differs", "verdict": "differ", "reasons": reasons}
 
 
 def _hints(item: dict[str, Any]) -> list[ReadHints]:

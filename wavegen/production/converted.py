@@ -196,6 +196,7 @@ def converted_document(
     judgement = judge(origin.law, codes, file.datatype, DEFAULT)
     rate_hz = change.source.sample_rate_hz * change.rate_factor
     cycle = before["loop"]["cycle_samples"] * change.rate_factor
+    notes = [*notes, *_left_behind(before)]
     return before | {
         "versions": versions(),
         "sample_rate_hz": float(rate_hz),
@@ -205,6 +206,7 @@ def converted_document(
         "loop": {"cycle_samples": cycle.numerator, "seam": seam_row(seam)},
         "scaling": _scaling(before["scaling"], codes, change),
         "second_channel": None,
+        "side_information": None,
         "warnings": before["warnings"] + note_rows([n for n in notes if n.kind == "warning"]),
         "notes": before["notes"] + note_rows([n for n in notes if n.kind == "info"]),
         **power_figures(codes.statistics, codes.peak),
@@ -217,6 +219,15 @@ def converted_document(
         "files": [file_row(file, [duty], [judgement])],
         "converted": change.document(before.get("converted")),
     }
+
+
+def _left_behind(before: dict[str, Any]) -> list[Note]:
+    """Note the tables of side information, which stay beside the source."""
+    names = [item["name"] for item in before["side_information"] or ()]
+    if not names:
+        return []
+    text = f"receivers still need {' and '.join(names)}, which stay beside the source"
+    return [Note(kind="info", where="side_information", text=text)]
 
 
 def _scaling(before: dict[str, Any], codes: Any, change: Change) -> dict[str, Any]:

@@ -48,6 +48,7 @@ from wavegen.production.judgement import (
 from wavegen.production.marking import markers_of
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
+from wavegen.production.side_information import choice_taps, side_names, side_rows, side_tables
 from wavegen.production.sidecar import as_csv, as_json, describe
 from wavegen.production.stimulus_document import MadeChannel, stimulus_document
 from wavegen.production.waveform import Waveform, render_loop
@@ -165,6 +166,8 @@ def make(
         sidecar = drafts.add(f"{loaded.name}.ccdf.json")
         curve = drafts.add(f"{loaded.name}.ccdf.csv")
         marks = drafts.add(f"{loaded.name}{markers.SUFFIX}")
+        has_choices = any(choice_taps(channel.built.signal) for channel in prepared.channels)
+        beside = {name: drafts.add(name) for name in side_names(loaded.name) if has_choices}
         with ExitStack() as stack:
             waveforms = [
                 render_loop(
@@ -203,16 +206,26 @@ def make(
             )
             for number, channel in enumerate(prepared.channels)
         ]
+        choices = [one for waveform in waveforms for one in waveform.choices]
+        side_texts = dict(zip(beside, side_tables(choices), strict=False))
         document = stimulus_document(
-            channels, files=files, gain=gain, levels=levels, exceeded=exceeded, best_of=tried
+            channels,
+            files=files,
+            gain=gain,
+            levels=levels,
+            exceeded=exceeded,
+            best_of=tried,
+            side_information=side_rows(side_texts),
         )
         texts = {sidecar: as_json(document), curve: as_csv(document)}
         texts[marks] = markers.markers_text(targets[0].facts.annotations)
+        texts |= {beside[name]: text for name, text in side_texts.items()}
         for path, text in texts.items():
             with told(path):
-                path.write_text(text, encoding="utf-8")
+                path.write_text(text, encoding="utf-8", newline="\n")
     names = [name for target in targets for name in target.names]
     names += [f"{loaded.name}{end}" for end in (".ccdf.json", ".ccdf.csv", markers.SUFFIX)]
+    names += beside
     folder = out / loaded.name
     return Made(
         folder=folder,

@@ -254,6 +254,7 @@ def _fault_of(document: Any) -> str:
     fault = next(Draft202012Validator(schema()).iter_errors(_condensed(document)), None)
     if fault is None:
         names = [name for item in document["files"] for name in (item["name"], *item["all_names"])]
+        names += [item["name"] for item in document["side_information"] or ()]
         outside = next((name for name in names if not _is_plain(name)), None)
         return f"lists {outside[:60]!r}, which is no name beside it" if outside else ""
     return f"is no {FORMAT} sidecar: {fault.json_path}: {fault.message[:120]}"

@@ -76,6 +76,7 @@ def stimulus_document(
     levels: Sequence[PathLevel],
     exceeded: Sequence[str] = (),
     best_of: dict[str, Any] | None = None,
+    side_information: list[dict[str, Any]] | None = None,
 ) -> dict[str, Any]:
     """Return the sidecar of a stimulus as JSON values.
 
@@ -94,6 +95,8 @@ def stimulus_document(
         Ratings that are exceeded, and accepted.
     best_of : dict, optional
         How its seed was chosen among several.
+    side_information : list of dict, optional
+        Files beside it that a receiver needs.
 
     Returns
     -------
@@ -142,6 +145,7 @@ def stimulus_document(
         "law": law_document(channels[0].law, worst(channels[0].judgements)),
         "no_law": channels[0].no_law,
         "best_of": best_of,
+        "side_information": side_information,
         "bench": bench_rows(
             levels, recipe.bench.averaged_over if recipe.bench else "period", exceeded
         ),

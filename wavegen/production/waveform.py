@@ -20,6 +20,7 @@ from wavegen.meters.power import PowerMeter, PowerStatistics
 from wavegen.meters.rails import RailPeaks, rail_peaks
 from wavegen.meters.seam import SeamFigure, seam_figure
 from wavegen.production.graph import Built
+from wavegen.production.side_information import Choices, choice_taps, take_choices
 from wavegen.stages.channel.gate import on_time
 
 POWER = "power"
@@ -48,6 +49,8 @@ class Waveform:
         When the signal is on, if one gate decides that for all of it.
     on_statistics : PowerStatistics or None
         Of the on-time, ramps excluded.
+    choices : tuple of Choices
+        What stages of selected mapping chose.
     """
 
     signal: Signal
@@ -58,6 +61,7 @@ class Waveform:
     rails: RailPeaks
     bursts: Bursts | None = None
     on_statistics: PowerStatistics | None = None
+    choices: tuple[Choices, ...] = ()
 
     @property
     def longest_burst_s(self) -> float | None:
@@ -115,6 +119,7 @@ def render_loop(
     """
     taps = [Tap(name=POWER, signal=built.signal, meter=PowerMeter())]
     taps += [Tap(name=part.path, signal=part.signal, meter=MeanMeter()) for part in built.parts]
+    taps += choice_taps(built.signal)
     bursts = on_time(built.signal)
     if bursts is not None:
         meter = GatedPowerMeter(bursts=bursts)
@@ -138,5 +143,6 @@ def render_loop(
         rails=rail_peaks(stored, statistics),
         bursts=bursts,
         on_statistics=readings.pop(ON_TIME, None),
+        choices=take_choices(built.signal, readings),
         part_means=readings,
     )

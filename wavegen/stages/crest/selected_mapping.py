@@ -59,17 +59,22 @@ class Sequences:
         }
 
     @cached_property
-    def factors(self) -> Samples:
-        """Every sequence, shape (n_candidates, n_active): powers of j, indexed words of a stream.
+    def quarter_turns(self) -> NDArray[np.uint8]:
+        """Every sequence, shape (n_candidates, n_active): 0 ... 3, indexed words of a stream.
 
         The word of candidate ``u`` on the ``i``-th subcarrier is ``u n_active + i``, whatever the
         seed of the recipe: a receiver knows the sequences beforehand.
         """
         n = self.indices.size
         words = random_words(stream_key(0, STREAM), 0, self.n_candidates * n, period=1 << 62)
-        made: Samples = np.array([1, 1j, -1, -1j], np.complex64)[words & 3].reshape(-1, n)
-        made[0] = 1
-        return made
+        made = (words & 3).astype(np.uint8).reshape(-1, n)
+        made[0] = 0
+        return np.asarray(made)
+
+    @cached_property
+    def factors(self) -> Samples:
+        """Every sequence as powers of j, shape (n_candidates, n_active)."""
+        return np.array([1, 1j, -1, -1j], np.complex64)[self.quarter_turns]
 
     def all_of(self, number: int, symbols: NDArray[np.intp]) -> Samples:
         """Return the factors of one candidate for several symbols, (n, n_active) or (n_active,)."""
@@ -230,10 +235,13 @@ class TurnBack:
         On the axis of symbols.
     sequences : Sequences
         Candidates.
+    where : str
+        Path of the stage in the recipe.
     """
 
     choice: Signal
     sequences: Sequences
+    where: str
 
     def undo(self, subcarriers: Signal) -> Signal:
         """Return the subcarriers turned back."""
@@ -264,7 +272,8 @@ class SelectedMapping:
     -----
     No distortion and no power: the price is side information, the logarithm of ``candidates`` to
     base 2 in bits a symbol. The number chosen stands in :func:`chosen`; an EVM meter turns the
-    subcarriers back by it, as a receiver would. Pilots are not turned.
+    subcarriers back by it, as a receiver would, and files carry it beside them for receivers on a
+    bench. Pilots are not turned.
     """
 
     search: ClassVar[Searchable] = Searchable(
@@ -331,7 +340,7 @@ class SelectedMapping:
         tell_points(site, symbols)
         _tell(site, self.candidates, bodies, selected)
         made: Signal = symbols.source.with_bodies(  # type: ignore[assignment] # a Signal too
-            selected, undo=TurnBack(choice=choice, sequences=sequences)
+            selected, undo=TurnBack(choice=choice, sequences=sequences, where=site.path)
         )
         return made
 
