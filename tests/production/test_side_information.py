@@ -17,8 +17,8 @@ RATE = (
 OFDM = (
     "kind: ofdm, subcarrier_spacing: 15 kHz, cyclic_prefix: 1/8, frame: 3 symbols, "
     "groups: [{subcarriers: '-20..-1, 1..20', constellation: qpsk, symbols: '0, 2'}, "
-    "{subcarriers: '-20..-5, 5..20', constellation: 16qam, symbols: '1'}], "
-    "pilots: [{subcarriers: '-4, 4', values: [1, -1], symbols: '1'}]"
+    "{subcarriers: '-20..-5, 6..20', constellation: 16qam, symbols: '1'}], "
+    "pilots: [{subcarriers: '-4, 5', values: [1, -1], symbols: '1'}]"
 )
 STAGES = "stages: [{kind: selected_mapping, candidates: 5}]\n"
 SINGLE = f"wavegen: 1\nseed: 3\n{RATE}signal: {{{OFDM}}}\n"
@@ -84,7 +84,7 @@ def test_pilots_and_what_is_off_are_not_listed_as_turned(made):
     rows = table(turned.folder / "turned.sequences.csv")
     assert {row["frame_symbols"] for row in rows} == {"3"}
     where = {row["subcarrier"]: row["symbols"] for row in rows}
-    assert where["4"] == "0, 2"  # a pilot stands there in symbol 1
+    assert where["5"] == "0, 2"  # a pilot stands there in symbol 1
     assert where["3"] == "0, 2"  # nothing does
     assert where["7"] == "0..2"
     assert {row["quarter_turns"] for row in rows if row["candidate"] == "0"} == {"0"}
