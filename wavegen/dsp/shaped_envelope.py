@@ -91,7 +91,7 @@ def shape_envelope(
     places, levels = _levels_of(ranks)
     start = wanted * np.exp(1j * phases)
     samples: NDArray[np.complex128] = scipy.fft.ifft(start, overwrite_x=True)
-    before = samples
+    before = samples.copy()
     best: tuple[float, int, Samples] | None = None
     reference, since, rounds = np.inf, 0, 0
     is_kept = np.ones(n, np.bool_) if within is None else within
@@ -101,17 +101,21 @@ def shape_envelope(
         place = (np.arange(others.size) + 0.5) / others.size * ranks.size - 0.5
         parts.append((others, np.interp(place, np.arange(ranks.size), ranks)))
     while True:
-        error, place = _level_error(np.abs(samples[kept]), places, levels)
+        power = _power(samples)
+        error, place = _level_error(power[kept] if others.size else power, places, levels)
         if best is None or error < best[0]:
             best = (error, place, samples.astype(np.complex64))
         since = 0 if error < _GAIN * reference else since + 1
         reference = error if since == 0 else reference
         if rounds == most_rounds or best[0] <= NEAR_DB or since >= _PATIENCE:
             break
-        ahead = samples + min(rounds / (rounds + 3), _MOMENTUM) * (samples - before)
-        spectrum = scipy.fft.fft(_with_ranks(ahead, parts), overwrite_x=True)
+        before -= samples  # one step ahead; nothing else looks at it any more
+        before *= -min(rounds / (rounds + 3), _MOMENTUM)
+        before += samples
+        spectrum = scipy.fft.fft(_with_ranks(before, parts), overwrite_x=True)
         rounds += 1
-        before, samples = samples, scipy.fft.ifft(wanted * _phase(spectrum), overwrite_x=True)
+        _set_size(spectrum, wanted)
+        before, samples = samples, scipy.fft.ifft(spectrum, overwrite_x=True)
     error, place, found = best
     exact = scipy.fft.fft(_with_ranks(found.astype(np.complex128), parts), overwrite_x=True)
     beyond = float(np.sum(np.abs(exact[wanted == 0]) ** 2)) / (n * n)
@@ -131,21 +135,34 @@ def _with_ranks(
     """Give the envelope of each part wanted values by its ranks, the phases kept."""
     out = np.empty_like(samples)
     for places, ranks in parts:
-        part = samples[places]
-        envelope = np.abs(part)
+        part = samples[places] if len(parts) > 1 else samples
         values = np.empty(part.size)
-        values[np.argsort(envelope)] = ranks
-        turned = np.ones_like(part)
-        np.divide(part, envelope, out=turned, where=envelope > 0)
-        out[places] = turned * values
+        values[np.argsort(_power(part))] = ranks
+        if len(parts) == 1:
+            out[:] = part
+            _set_size(out, values)
+            continue
+        _set_size(part, values)
+        out[places] = part
     return out
 
 
-def _phase(spectrum: NDArray[np.complex128]) -> NDArray[np.complex128]:
-    size = np.abs(spectrum)
-    turned = np.ones_like(spectrum)
-    np.divide(spectrum, size, out=turned, where=size > 0)
-    return turned
+def _power(samples: NDArray[np.complex128]) -> NDArray[np.float64]:
+    out = np.square(samples.real)
+    out += np.square(samples.imag)
+    return out
+
+
+def _set_size(samples: NDArray[np.complex128], size: NDArray[np.float64]) -> None:
+    """Give samples magnitudes, the phases kept, in place; what is 0 gets phase 0."""
+    own = _power(samples)
+    np.sqrt(own, out=own)
+    is_zero = own == 0
+    if is_zero.any():
+        samples[is_zero], own[is_zero] = 1.0, 1.0
+    np.divide(size, own, out=own)
+    samples.real *= own
+    samples.imag *= own
 
 
 def _levels_of(ranks: NDArray[np.float64]) -> tuple[NDArray[np.intp], NDArray[np.float64]]:
@@ -158,10 +175,10 @@ def _levels_of(ranks: NDArray[np.float64]) -> tuple[NDArray[np.intp], NDArray[np
 
 
 def _level_error(
-    envelope: NDArray[np.float64], places: NDArray[np.intp], levels: NDArray[np.float64]
+    power: NDArray[np.float64], places: NDArray[np.intp], levels: NDArray[np.float64]
 ) -> tuple[float, int]:
-    rising = np.sort(envelope) / np.sqrt(np.mean(envelope**2))
-    difference = np.abs(_db(rising[places]) - levels)
+    rising = np.sqrt(np.sort(power)[places] / np.mean(power))
+    difference = np.abs(_db(rising) - levels)
     worst = int(np.argmax(difference))
     return float(difference[worst]), int(places[worst])
 

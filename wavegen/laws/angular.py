@@ -11,6 +11,7 @@ import numpy as np
 
 from wavegen.core.errors import SignalError
 from wavegen.laws.cumulants import ORDER, count_large, cumulants, power_sums
+from wavegen.laws.harmonics import REACH, harmonics_of
 from wavegen.laws.inversion import series_of
 from wavegen.laws.radial import Tail
 from wavegen.laws.term import Complexes, NoLaw, Reals
@@ -193,13 +194,16 @@ class PointGroup:
                 total *= sum(np.exp(scaled * one) for one in along) / along.shape[0]
             return total
         real = np.exp(exponent.real)
+        n_far = int(np.count_nonzero(np.abs(taps[:n_large]) * t.max(initial=0.0) > REACH))
+        if n_far < n_large:
+            harmonics_of(points).multiply(real, t, taps[n_far:n_large], angle_rad)
         if self._grid is not None:
             across, up = np.cos(angle_rad), np.sin(angle_rad)
-            for tap in taps[:n_large]:
+            for tap in taps[:n_far]:
                 real *= self._grid.mean((t * tap)[:, None] * across, (t * tap)[:, None] * up)
             return real.astype(np.complex128)
         along = along[np.angle(points * np.exp(-1e-3j)) >= 0]  # one of each pair
-        for tap in taps[:n_large]:
+        for tap in taps[:n_far]:
             scaled = (t * tap)[:, None]
             factor = np.cos(scaled * along[0])
             for one in along[1:]:

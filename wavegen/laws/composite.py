@@ -236,15 +236,36 @@ class ProductTerm(BaseTerm):
         """Return the product, averaged over the common indices that leave a residue."""
         common = math.lcm(self._common, math.gcd(modulus, self.clock_samples))
         step = math.gcd(modulus, common)
-        indices = range(residue % step, common, step)
+        cases = self._cases(residue % step, step, common)
         out = np.zeros(t.shape)
-        for index in indices:
-            one = np.ones(t.shape)
+        for index, count in cases:
+            one = np.full(t.shape, float(count))
             for term in self.factors:
                 shared = math.gcd(common, term.clock_samples)
                 one *= term.characteristic(t, residue=index % shared, modulus=shared)
             out += one
-        return out / len(indices)
+        return out / sum(count for _, count in cases)
+
+    def _cases(self, residue: int, step: int, common: int) -> list[tuple[int, int]]:
+        """Return the common indices of different functions, and how many are like each."""
+        found = self._known_cases.get((residue, step, common))
+        if found is None:
+            alike: dict[tuple[object, ...], list[int]] = {}
+            for index in range(residue, common, step):
+                kinds = tuple(
+                    _kind(term, index)
+                    if common % term.clock_samples == 0
+                    else index % math.gcd(common, term.clock_samples)
+                    for term in self.factors
+                )
+                alike.setdefault(kinds, []).append(index)
+            found = [(indices[0], len(indices)) for indices in alike.values()]
+            self._known_cases[residue, step, common] = found
+        return found
+
+    @cached_property
+    def _known_cases(self) -> dict[tuple[int, int, int], list[tuple[int, int]]]:
+        return {}
 
     def directional(
         self, t: Reals, angle_rad: Reals, *, residue: int = 0, modulus: int = 1

@@ -194,8 +194,8 @@ class PulseShapedTerm(BaseTerm):
             inside = (places >= 0) & (places < values.size)
             taps = np.where(inside, values[np.clip(places, 0, values.size - 1)], 0.0)
         else:
-            # Whole symbols exactly, where a pulse jumps.
-            instants = np.array([float(phase - int(number)) for number in numbers])
+            # One division of whole numbers: whole symbols exactly, where a pulse jumps.
+            instants = (phase.numerator - numbers * phase.denominator) / phase.denominator
             taps = self.pulse.values(instants)
         if numbers.size > self.period_symbols:
             folded = np.zeros(self.period_symbols)
@@ -359,7 +359,10 @@ class _Plan:
 
 def _pair(taps: Reals, real: Reals, imaginary: Reals) -> RailPair:
     """Return the rails of symbols that pair levels."""
-    return RailPair(first=Rail(taps=taps, levels=real), second=Rail(taps=taps, levels=imaginary))
+    first = Rail(taps=taps, levels=real)
+    if np.array_equal(real, imaginary):
+        return RailPair(first=first, second=first)  # computed once
+    return RailPair(first=first, second=Rail(taps=taps, levels=imaginary))
 
 
 def _key(taps: Reals) -> bytes:

@@ -11,6 +11,7 @@ import scipy.fft
 import scipy.special
 
 from wavegen.laws.cumulants import ORDER, count_large, cumulants, power_sums
+from wavegen.laws.harmonics import through_eight
 from wavegen.laws.term import Complexes, Reals
 
 MOST_ATOMS = 1 << 13
@@ -121,16 +122,18 @@ class Rail:
     def _table_to(self, count: float) -> Reals:
         """Return powers of the place in each step, shape (8, n_steps), up to enough steps."""
         size = 1 << max(10, math.ceil(math.log2(count + 8)))
-        made = self._tables.get(size)
-        if made is None:
-            places: Reals = np.abs(np.arange(-3, size + 5)) * (_TABLE_STEP / self.peak)
-            windows = np.lib.stride_tricks.sliding_window_view(self.characteristic(places), 8)
-            made = self._tables[size] = np.ascontiguousarray((windows @ _through_eight().T).T)
+        made = self._table[0] if self._table else np.zeros((8, 0))
+        if made.shape[1] < size:
+            places: Reals = np.abs(np.arange(made.shape[1] - 3, size + 5))
+            values = self.characteristic(places * (_TABLE_STEP / self.peak))
+            windows = np.lib.stride_tricks.sliding_window_view(values, 8)
+            made = np.concatenate([made, through_eight() @ windows.T], axis=1)
+            self._table[:] = [made]
         return made
 
     @cached_property
-    def _tables(self) -> dict[int, Reals]:
-        return {}
+    def _table(self) -> list[Reals]:
+        return []
 
     @cached_property
     def _cumulants(self) -> Reals:
@@ -298,8 +301,10 @@ class RailPair:
     def _radial_of(self, n: int) -> tuple[Reals, Reals]:
         nodes, weights = _legendre(n)
         radius = 0.5 * self.peak * (nodes + 1)
-        angles, shares = _legendre(self._n_angles)
-        angle = 0.25 * np.pi * (angles + 1)
+        # Equal rails are mirrored at 45 degrees.
+        n_mirrored = 2 if self.first is self.second else 1
+        angles, shares = _legendre(self._n_angles // n_mirrored)
+        angle = 0.25 * np.pi / n_mirrored * (angles + 1)
         around = np.empty(radius.size)
         rows = max(1, _CELLS // angle.size)
         for low in range(0, radius.size, rows):
@@ -365,13 +370,6 @@ def _legendre(n: int) -> tuple[Reals, Reals]:
         np.asarray((middle[:, None] + nodes / panels).ravel()),
         np.tile(weights / panels, panels),
     )
-
-
-@lru_cache(maxsize=1)
-def _through_eight() -> Reals:
-    """Return what turns eight entries, -3 ... 4, into coefficients of powers, shape (8, 8)."""
-    places = np.arange(-3.0, 5.0)
-    return np.asarray(np.linalg.inv(np.vander(places, increasing=True)))
 
 
 def _hermite(place: Reals, values: Reals, slopes: Reals) -> Reals:
