@@ -47,9 +47,37 @@ def test_short_recordings_are_undecided_and_it_is_said_how_much_more(written):
     assert found["resolved_to"] > 1e-4
     assert found["needed"]["more_field_samples"] > 1 << 15
     assert found["as_recorded"]["verdict"] == "differ"
-    assert "more would decide" in found["statement"]
+    assert found["needed"]["more_field_s"] == found["needed"]["more_field_samples"] / 1e6
+    assert found["needed"]["shows"] == "match"
+    assert "would show a match" in found["statement"]
     assert found["looks_like"] == []
     assert found["spectrum"]["field_occupied_hz"] == pytest.approx(247_500, rel=0.02)
+
+
+def test_records_may_be_compared_as_they_stand(written):
+    """Then nothing is left to chance: two short records of one process are different records."""
+    sides = written("one"), written("two")
+    found = match(*sides, MatchSettings(looks=False, is_of_records=True))
+    assert found["verdict"] == "differ"
+    assert found["statement"].startswith("differ: as recorded, one.cf32_le stands")
+    assert found["needed"] is None
+    assert all(row["low_db"] == row["high_db"] == row["difference_db"] for row in found["levels"])
+    assert found["as_recorded"]["difference_db"] == found["decisive"]["difference_db"]
+    same = match(sides[0], sides[0], MatchSettings(looks=False, is_of_records=True))
+    assert same["verdict"] == "match"
+    process = match(*sides, PLAIN)
+    assert process["verdict"] == "undecided"
+    assert process["compares"] != found["compares"]
+    assert process["statement"].startswith("undecided: as recorded one.cf32_le stands")
+
+
+def test_off_times_compared_as_if_they_were_signal_are_told_of(written, noise):
+    gated = noise(1 << 15)
+    gated.reshape(8, -1)[:, 1024:] *= 1e-3
+    found = match(written("gated", gated), written("steady"), PLAIN)
+    told = [row["text"] for row in found["warnings"] if row["where"] == "comparison"]
+    assert any("gated.cf32_le is on for 25 % of the time" in text for text in told)
+    assert not any("steady.cf32_le is on" in text for text in told)
 
 
 def test_means_are_compared_where_both_are_absolute(written, noise):

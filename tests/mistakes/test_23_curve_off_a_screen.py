@@ -12,6 +12,7 @@ import pytest
 from wavegen.comparison.curves import ExactCurve, PointsCurve
 from wavegen.comparison.difference import compare
 from wavegen.comparison.match import match
+from wavegen.comparison.needed_samples import needed_samples
 from wavegen.comparison.sides import SideSettings
 from wavegen.core.errors import FileError
 from wavegen.laws.gaussian import GaussianLaw
@@ -51,10 +52,11 @@ def test_its_tail_is_not_compared(screen):
 
 
 def test_without_a_count_only_ten_times_its_floor_is_compared(screen):
-    found = compare(STIMULUS, curve(screen, reading_db=0.05), down_to=2e-6)
+    field = curve(screen, reading_db=0.05)
+    found = compare(STIMULUS, field, down_to=2e-6)
     assert found.verdict == "undecided"
     assert found.resolved_to == pytest.approx(2e-5)
-    assert found.needed is None
+    assert needed_samples(STIMULUS, field, found) == ()
 
 
 def test_each_point_is_as_unsure_as_it_was_read(screen):

@@ -28,6 +28,10 @@ class Match:
         "undecided, and how many more samples would decide. Either is wrong in at most\n"
         "5 % of the cases. Exit status: 0 match, 5 differ, 6 undecided."
     )
+    examples = (
+        "wavegen match output/valley-cell-20mhz valley-cell-20mhz",
+        "wavegen match valley-cell-20mhz valley-cell-clipped --tolerance 0.5dB",
+    )
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -45,6 +49,11 @@ class Match:
             type=probability,
             metavar="PROBABILITY",
             help="least probability compared (default: 0.01%%)",
+        )
+        parser.add_argument(
+            "--as-recorded",
+            action="store_true",
+            help="compare recordings as they stand, exactly, not as samples of what was recorded",
         )
         add_reports(parser)
         add_workers(parser)
@@ -65,6 +74,7 @@ class Match:
         settings = MatchSettings(
             tolerance_db=DEFAULT.tolerance_db if tolerance is None else tolerance,
             down_to=DEFAULT.down_to if down_to is None else down_to,
+            is_of_records=arguments.as_recorded,
         )
         document = compared(
             arguments,

@@ -18,6 +18,7 @@ from wavegen.comparison.gain import (
     gain_points,
     small_signal,
 )
+from wavegen.comparison.needed_samples import Needed, needed_samples
 from wavegen.comparison.sides import Side
 from wavegen.comparison.spectra import SpectrumDifference
 from wavegen.core.errors import SignalError
@@ -50,6 +51,8 @@ class DeviceGain:
         A Rapp curve.
     linearity : Difference
         Of both curves over their own means.
+    needed : tuple of Needed
+        What would decide that, where it is undecided.
     spectra : SpectrumDifference or None
         Of both.
     alignment : Alignment or None
@@ -66,6 +69,7 @@ class DeviceGain:
     falls: tuple[Compression | None, ...]
     fit: RappFit | None
     linearity: Difference
+    needed: tuple[Needed, ...]
     spectra: SpectrumDifference | None
     alignment: Alignment | None
 
@@ -120,6 +124,7 @@ def device_gain(
             remedy="Take longer records, or curves that reach to lower probabilities.",
         )
     small = small_signal(points, mean_db=means[0])
+    linearity = compare(sides[0].curve, sides[1].curve, tolerance_db=tolerance_db, down_to=down_to)
     return DeviceGain(
         source=sides[0],
         output=sides[1],
@@ -130,12 +135,8 @@ def device_gain(
         small=small,
         falls=tuple(compression(points, small, fall_db=fall) for fall in FALLS_DB),
         fit=fit_rapp(points, small),
-        linearity=compare(
-            sides[0].curve,
-            sides[1].curve,
-            tolerance_db=tolerance_db,
-            down_to=down_to,
-        ),
+        linearity=linearity,
+        needed=needed_samples(sides[0].curve, sides[1].curve, linearity),
         spectra=spectra,
         alignment=align(*sides),
     )

@@ -24,12 +24,10 @@ from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-import scipy.special
 from numpy.typing import NDArray
 
 from wavegen.comparison.curves import Curve, ExactCurve, SampledCurve
 from wavegen.core.errors import ArgumentsError
-from wavegen.meters.intervals import RESOLVING_RUNS
 
 Verdict = Literal["match", "differ", "undecided"]
 Reals = NDArray[np.float64]
@@ -45,11 +43,6 @@ QUIET_DB = -20.0
 does not make two signals different."""
 SERIES = (5.0, 2.0, 1.0)
 FINE_PER_DECADE = 40
-FOUND = 0.8
-"""How often records of the length said to be needed decide one row."""
-MOST_TIMES = 1e4
-"""A record so many times longer than what there is cannot be foreseen from it."""
-_SLOPE_STEP_DB = 0.1
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -87,26 +80,6 @@ class DifferenceRow:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Needed:
-    """How much longer the sampled sides would have to be to decide.
-
-    Parameters
-    ----------
-    times : float
-        As a multiple of what there is.
-    at_probability : float
-        The level that asks for it.
-    first_samples, second_samples : int or None
-        How many more of each side; None of a side that more samples would not change.
-    """
-
-    times: float
-    at_probability: float
-    first_samples: int | None
-    second_samples: int | None
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
 class Difference:
     """How two curves compare.
 
@@ -128,8 +101,6 @@ class Difference:
         Its probability.
     resolved_to : float or None
         Least probability of a row that both sides resolve.
-    needed : Needed or None
-        Of an undecided one; None where no length can be foreseen.
     """
 
     verdict: Verdict
@@ -140,7 +111,6 @@ class Difference:
     largest_db: float | None
     largest_at: float | None
     resolved_to: float | None
-    needed: Needed | None
 
 
 def probabilities(down_to: float = DOWN_TO) -> Reals:
@@ -218,7 +188,6 @@ def compare(
         largest_db=largest_db,
         largest_at=largest_at,
         resolved_to=min(resolved, default=None),
-        needed=_needed(first, second, rows, tolerance_db) if verdict == "undecided" else None,
     )
 
 
@@ -337,72 +306,3 @@ def _largest(
     difference = levels[0] - levels[1]
     place = int(np.argmax(np.abs(difference)))
     return float(difference[place]), float(asked[place])
-
-
-def _needed(
-    first: Curve, second: Curve, rows: tuple[DifferenceRow, ...], tolerance_db: float
-) -> Needed | None:
-    """Return how much longer the records would have to be, as far as can be foreseen.
-
-    From what one event counts for and the slope of the curve: the standard error of a level is
-    ``sqrt(event_samples / (q n)) / slope``, and falls as the root of the length.
-    """
-    asked = np.array([row.probability for row in rows])
-    weights = [
-        side.event_samples(asked) / side.n_samples if side.n_samples else np.zeros(asked.shape)
-        for side in (first, second)
-    ]
-    slope = _slope(first, second, asked)
-    with np.errstate(divide="ignore", invalid="ignore"):
-        error = np.sqrt((weights[0] + weights[1]) / asked) / slope
-    lengths = [
-        _length_for_row(row, err, tolerance_db, len(rows))
-        for row, err in zip(rows, error, strict=True)
-    ]
-    resolving = RESOLVING_RUNS * np.maximum(weights[0], weights[1]) / asked
-    open_rows = [k for k, row in enumerate(rows) if row.verdict == "undecided"]
-    surely_out = [
-        k for k in open_rows if rows[k].low_db > tolerance_db or rows[k].high_db < -tolerance_db
-    ]
-    worst = (
-        min(surely_out, key=lambda k: lengths[k])
-        if surely_out
-        else max(open_rows, key=lambda k: max(lengths[k], resolving[k]))
-    )
-    times = max(lengths[worst], 0.0 if surely_out else float(resolving[worst]))
-    if not 0 < times < MOST_TIMES or not (weights[0].any() or weights[1].any()):
-        return None
-    times = max(times, 1.25)
-    more = [
-        math.ceil((times - 1) * side.n_samples) if weight.any() and side.n_samples else None
-        for side, weight in zip((first, second), weights, strict=True)
-    ]
-    return Needed(
-        times=times,
-        at_probability=rows[worst].probability,
-        first_samples=more[0],
-        second_samples=more[1],
-    )
-
-
-def _length_for_row(row: DifferenceRow, error_db: float, tolerance_db: float, n_rows: int) -> float:
-    """Return how many times longer the records must be for one row to be decided, in 80 %."""
-    spare = scipy.special.ndtri(FOUND)
-    size = abs(row.difference_db)
-    if size > tolerance_db and (row.low_db > 0 or row.high_db < 0):
-        sigmas = spare - scipy.special.ndtri(ERROR / n_rows)
-        return float((sigmas * error_db / (size - tolerance_db)) ** 2)
-    # A difference that may well be none is expected to be less than it looks.
-    expected = size if row.low_db > 0 or row.high_db < 0 else min(size, tolerance_db) / 2
-    room = max(tolerance_db - expected, tolerance_db / 100)
-    sigmas = spare - scipy.special.ndtri((1 - CONFIDENCE) / 2)
-    return float((sigmas * error_db / room) ** 2)
-
-
-def _slope(first: Curve, second: Curve, asked: Reals) -> Reals:
-    """Return ``-d ln q / d level``, per dB, of the side that rests on more samples."""
-    side = max((first, second), key=lambda s: math.inf if s.is_exact else (s.n_samples or 0))
-    level = np.maximum(side.level_db(asked), QUIET_DB)
-    above, below = side.ccdf(level + _SLOPE_STEP_DB), side.ccdf(level - _SLOPE_STEP_DB)
-    fall = (below - above) / (2 * _SLOPE_STEP_DB)
-    return np.asarray(np.maximum(fall / asked, 0.02))

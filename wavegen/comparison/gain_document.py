@@ -10,7 +10,7 @@ from wavegen.comparison.alignment import Alignment
 from wavegen.comparison.assumptions import doubts
 from wavegen.comparison.device_gain import DeviceGain
 from wavegen.comparison.gain import Compression, points_at, resolved_to
-from wavegen.comparison.match import needed_document, side_document
+from wavegen.comparison.match_document import figure, needed_documents, side_document
 from wavegen.production.sidecar import FORMAT, rounded, versions
 
 RULE_AT = 1e-4
@@ -25,6 +25,7 @@ def gain_document(found: DeviceGain, *, model: str | None) -> dict[str, Any]:
     first, third = (_compression_document(item, unit, origin_db) for item in found.falls)
     assumed = found.assumptions
     linearity = found.linearity
+    needed = needed_documents(found.needed, (found.source, found.output), ("input", "output"))
     warnings = [
         (side.name, text) for side in (found.source, found.output) for text in side.warnings
     ]
@@ -39,8 +40,9 @@ def gain_document(found: DeviceGain, *, model: str | None) -> dict[str, Any]:
         "statement": _statement(found),
         "tolerance_db": linearity.tolerance_db,
         "down_to": linearity.down_to,
-        "largest_difference_db": _figure(linearity.largest_db),
-        "needed": needed_document(linearity.needed) if linearity.needed else None,
+        "largest_difference_db": figure(linearity.largest_db),
+        "needed": needed[0] if needed else None,
+        "needed_otherwise": needed[1] if len(needed) > 1 else None,
         f"input_p1db_{unit}": first["input"] if first else None,
         f"input_p3db_{unit}": third["input"] if third else None,
         "compression": [item for item in (first, third) if item],
@@ -55,7 +57,7 @@ def gain_document(found: DeviceGain, *, model: str | None) -> dict[str, Any]:
         "expansion": _expansion(found, unit, origin_db),
         "levels": _level_rows(found),
         "rule_of_thumb": _rule(found),
-        "mean_change_db": _figure(_mean_compression(found)),
+        "mean_change_db": figure(_mean_compression(found)),
         "over_p1db": _over(found),
         "rapp": _rapp_document(found, origin_db, gain_zero_db),
         "aligned": _aligned_document(found.alignment),
@@ -71,10 +73,6 @@ def gain_document(found: DeviceGain, *, model: str | None) -> dict[str, Any]:
     }
 
 
-def _figure(value: float | None) -> float | None:
-    return None if value is None else rounded(value, 4)
-
-
 def _statement(found: DeviceGain) -> str:
     verdict, tolerance_db = found.linearity.verdict, found.linearity.tolerance_db
     names = f"{found.source.name} and {found.output.name}"
@@ -87,8 +85,8 @@ def _statement(found: DeviceGain) -> str:
         text = f"differ: the device {word}, by {abs(fall):.2f} dB at the highest level resolved"
     else:
         text = f"undecided: whether the device is linear within {tolerance_db:g} dB"
-        if found.linearity.needed is not None:
-            text += f" would take about {found.linearity.needed.times:.2g} times as many samples"
+        if found.needed:
+            text += f" would take about {found.needed[0].times:.2g} times as many samples"
         else:
             text += " cannot be told"
     if point is not None:

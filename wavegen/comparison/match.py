@@ -6,17 +6,27 @@ import math
 from dataclasses import dataclass
 from typing import Any
 
+from wavegen.comparison.curves import Curve
 from wavegen.comparison.difference import (
     DOWN_TO,
     TOLERANCE_DB,
     Difference,
-    DifferenceRow,
-    Needed,
     Verdict,
     as_recorded,
     compare,
 )
-from wavegen.comparison.look_alike import LookAlike, look_alikes
+from wavegen.comparison.look_alike import LookAlike, look_alikes, plateau_duty
+from wavegen.comparison.match_document import (
+    figure,
+    look_document,
+    needed_documents,
+    recorded_document,
+    row_document,
+    side_document,
+    spectrum_document,
+)
+from wavegen.comparison.match_words import called, statement
+from wavegen.comparison.needed_samples import needed_samples
 from wavegen.comparison.sides import Side, SideSettings, open_side
 from wavegen.comparison.spectra import (
     SpectrumDifference,
@@ -25,11 +35,12 @@ from wavegen.comparison.spectra import (
     spectrum_difference,
     spectrum_warnings,
 )
-from wavegen.comparison.starting_recipe import starting_recipe
 from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.progress import Progress, silent
 from wavegen.production.sidecar import FORMAT, rounded, versions
 
+PROCESSES = "loops as they are, recordings as samples of what was recorded"
+RECORDS = "both sides as recorded: these samples, not what they are samples of"
 QUIET = "levels below -20 dB count as -20 dB: how quiet an off-time is does not matter"
 
 
@@ -43,12 +54,16 @@ class MatchSettings:
         Largest difference of levels that still is a match.
     down_to : float
         Least probability compared.
+    is_of_records : bool
+        Whether recordings are compared as they stand, exactly, and not as samples of what was
+        recorded: each as if it were a loop. Points of a curve stay as unsure as they are.
     looks : bool
         Whether familiar laws near the field's curve are wanted.
     """
 
     tolerance_db: float = TOLERANCE_DB
     down_to: float = DOWN_TO
+    is_of_records: bool = False
     looks: bool = True
 
 
@@ -91,52 +106,46 @@ def match(
     first, second = (
         open_side(side, workers=workers, progress=progress) for side in (stimulus, field)
     )
-    found = compare(
-        first.curve, second.curve, tolerance_db=settings.tolerance_db, down_to=settings.down_to
-    )
-    recorded = compare(
-        as_recorded(first.curve),
-        as_recorded(second.curve),
-        tolerance_db=settings.tolerance_db,
-        down_to=settings.down_to,
-    )
-    reason = _fault_reason(first, second, recorded)
+    sides = first, second
+    recorded = _difference(as_recorded(first.curve), as_recorded(second.curve), settings)
+    found, plans = recorded, ()
+    if not settings.is_of_records:
+        found = _difference(first.curve, second.curve, settings)
+        plans = needed_samples(first.curve, second.curve, found)
+    reason = "" if settings.is_of_records else _fault_reason(sides, found, recorded)
     verdict: Verdict = "differ" if reason else found.verdict
-    spectra = _spectra((first, second), workers=workers, progress=progress)
+    said = reason or statement(found, recorded, plans, sides, is_of_records=settings.is_of_records)
+    needed = [] if reason else needed_documents(plans, sides, ("stimulus", "field"))
+    spectra = _spectra(sides, workers=workers, progress=progress)
     looks: tuple[LookAlike, ...] = ()
     if settings.looks:
         lowest = _lowest(second, settings.down_to)
         looks = look_alikes(second.curve, lowest=lowest) if lowest is not None else ()
     width_hz = spectra.second.occupied.width_hz if spectra else None
+    doubts = spectrum_warnings(sides, spectra) if spectra else []
     warnings = [
         (name, text)
-        for side, name in zip((first, second), _called(first, second), strict=True)
+        for side, name in zip(sides, called(*sides), strict=True)
         for text in side.warnings
-    ]
-    doubts = spectrum_warnings((first, second), spectra) if spectra else []
-    doubts += _gate_doubts(first, second)
-    warnings += [("comparison", text) for text in doubts]
+    ] + [("comparison", text) for text in [*doubts, *_gate_doubts(sides)]]
     return {
         "format": f"{FORMAT}.match",
         "version": 1,
         "verdict": verdict,
-        "statement": reason or statement(found, recorded, *_called(first, second)),
+        "statement": said,
+        "compares": RECORDS if settings.is_of_records else PROCESSES,
         "tolerance_db": found.tolerance_db,
         "down_to": found.down_to,
-        "largest_difference_db": _figure(found.largest_db),
+        "largest_difference_db": figure(found.largest_db),
         "largest_at": found.largest_at,
         "resolved_to": found.resolved_to,
         "decisive": row_document(found.decisive) if found.decisive else None,
         "levels": [row_document(row) for row in found.rows],
         "levels_are": f"over each side's own mean; {QUIET}",
         "mean_difference": _mean_difference(first, second),
-        "as_recorded": {
-            "is": "these samples alone, not what they are a sample of",
-            "verdict": recorded.verdict,
-            "largest_difference_db": _figure(recorded.largest_db),
-            "largest_at": recorded.largest_at,
-        },
-        "needed": needed_document(found.needed) if found.needed and not reason else None,
+        "as_recorded": recorded_document(recorded),
+        "needed": needed[0] if needed else None,
+        "needed_otherwise": needed[1] if len(needed) > 1 else None,
         "stimulus": side_document(first),
         "field": side_document(second),
         "spectrum": spectrum_document(spectra) if spectra else None,
@@ -146,71 +155,25 @@ def match(
     }
 
 
-def statement(found: Difference, recorded: Difference, first: str, second: str) -> str:
-    """Return the verdict as a sentence."""
-    reach = f"within {found.tolerance_db:g} dB down to {_percent(found.down_to)}"
-    row = found.decisive
-    if found.verdict == "match" or row is None:
-        return f"match: {first} and {second} agree {reach}"
-    if found.verdict == "differ":
-        side = "above" if row.difference_db > 0 else "below"
-        return (
-            f"differ: at {_percent(row.probability)} {first} stands "
-            f"{abs(row.difference_db):.2f} dB {side} {second}, surely between "
-            f"{_bound(row.widest_low_db)} and {_bound(row.widest_high_db)} dB"
-        )
-    text = f"undecided: whether {first} and {second} agree {reach} cannot be told"
-    if recorded.verdict == "differ" and recorded.largest_db is not None:
-        text += (
-            f"; as recorded they differ by up to {recorded.largest_db:+.2f} dB "
-            f"(at {_percent(recorded.largest_at or 0.0)}), "
-            "which records of one process this short may do"
-        )
-    if found.needed is None:
-        return text
-    more = [
-        f"{count:.2g} samples of {name}"
-        for count, name in (
-            (found.needed.first_samples, first),
-            (found.needed.second_samples, second),
-        )
-        if count is not None
-    ]
-    return f"{text}; about {' and '.join(more)} more would decide ({found.needed.times:.2g} times)"
+def _difference(first: Curve, second: Curve, settings: MatchSettings) -> Difference:
+    return compare(first, second, tolerance_db=settings.tolerance_db, down_to=settings.down_to)
 
 
-def _fault_reason(first: Side, second: Side, recorded: Difference) -> str:
+def _fault_reason(sides: tuple[Side, Side], found: Difference, recorded: Difference) -> str:
     """Return why fill words make two sides differ; empty if they do not.
 
     They are no part of the process that a recording samples, so that no interval about it
     allows for them.
     """
-    sides = (first, second)
     faulty = max(range(2), key=lambda k: sides[k].fault_db)
     lifted_db = sides[faulty].fault_db
     if recorded.verdict != "differ" or lifted_db <= recorded.tolerance_db:
         return ""
-    name = _called(first, second)[faulty]
-    largest = f"{recorded.largest_db:+.2f} dB" if recorded.largest_db is not None else "much"
+    largest = f" (by up to {found.largest_db:+.2f} dB)" if found.largest_db is not None else ""
     return (
-        f"differ: fill words lift the mean of {name} by {lifted_db:.2f} dB, so that its levels "
-        f"are off by as much (largest difference {largest}); leave them out with --from"
+        f"differ: fill words lift the mean of {called(*sides)[faulty]} by {lifted_db:.2f} dB, so "
+        f"that its levels are off by as much{largest}; leave them out with --from"
     )
-
-
-def _called(first: Side, second: Side) -> tuple[str, str]:
-    """Return what the sides are called: by their names where these tell them apart."""
-    if first.name != second.name:
-        return first.name, second.name
-    return "the stimulus", "the field"
-
-
-def _percent(probability: float) -> str:
-    return f"{100 * float(f'{probability:.2g}'):g} %"
-
-
-def _bound(level_db: float) -> str:
-    return f"{level_db:+.2f}" if math.isfinite(level_db) else "any"
 
 
 def _lowest(side: Side, down_to: float) -> float | None:
@@ -230,16 +193,26 @@ def _spectra(
     return found
 
 
-def _gate_doubts(first: Side, second: Side) -> list[str]:
-    """Return what a gate on one side alone makes doubtful."""
-    if (first.duty is None) == (second.duty is None):
+def _gate_doubts(sides: tuple[Side, Side]) -> list[str]:
+    """Return what is doubtful about off-times: compared on one side alone, or on both."""
+    if (sides[0].duty is None) != (sides[1].duty is None):
+        gated, whole = sides if sides[0].duty is not None else sides[::-1]
+        text = (
+            f"of {gated.name} the on-time is compared ({100 * (gated.duty or 0):.3g} % of the "
+            f"time), of {whole.name} all of the time"
+        )
+        return [text]
+    if sides[0].duty is not None:
         return []
-    gated, whole = (first, second) if first.duty is not None else (second, first)
-    text = (
-        f"of {gated.name} the on-time is compared ({100 * (gated.duty or 0):.3g} % of the time), "
-        f"of {whole.name} all of the time"
-    )
-    return [text]
+    texts = []
+    for side, name in zip(sides, called(*sides), strict=True):
+        on = plateau_duty(side.curve) if side.signal is not None else None
+        if on is not None:
+            texts.append(
+                f"{name} is on for {100 * on:.2g} % of the time only, and off-times are compared "
+                "with it: --gate auto compares the on-times alone"
+            )
+    return texts
 
 
 def _mean_difference(first: Side, second: Side) -> dict[str, Any] | None:
@@ -265,80 +238,3 @@ def _mean_difference(first: Side, second: Side) -> dict[str, Any] | None:
 
 def _or(value: float | None, other: float) -> float:
     return other if value is None else value
-
-
-# Documents --------------------------------------------------------------------------------
-
-
-def _figure(value: float | None) -> float | None:
-    return None if value is None else rounded(value, 4)
-
-
-def row_document(row: DifferenceRow) -> dict[str, Any]:
-    """Return one probability as JSON values; what is not finite is null."""
-    return {
-        "probability": row.probability,
-        "stimulus_db": rounded(row.first_db, 4),
-        "field_db": rounded(row.second_db, 4),
-        "difference_db": rounded(row.difference_db, 4),
-        "low_db": rounded(row.low_db, 4),
-        "high_db": rounded(row.high_db, 4),
-        "surely_low_db": rounded(row.widest_low_db, 4),
-        "surely_high_db": rounded(row.widest_high_db, 4),
-        "resolved": row.is_resolved,
-        "verdict": row.verdict,
-    }
-
-
-def needed_document(needed: Needed) -> dict[str, Any]:
-    """Return how much more is needed as JSON values."""
-    return {
-        "times": rounded(needed.times, 3),
-        "at_probability": needed.at_probability,
-        "more_stimulus_samples": needed.first_samples,
-        "more_field_samples": needed.second_samples,
-    }
-
-
-def side_document(side: Side) -> dict[str, Any]:
-    """Return what one side is as JSON values."""
-    unit = side.scale.lower()
-    return {
-        "name": side.name,
-        "is": side.is_,
-        "sample_rate_hz": side.sample_rate_hz,
-        "n_samples": side.n_samples,
-        "duty": side.duty,
-        f"mean_{unit}": _figure(side.mean_db),
-        f"mean_low_{unit}": _figure(side.mean_low_db),
-        f"mean_high_{unit}": _figure(side.mean_high_db),
-        f"peak_{unit}": _figure(side.peak_db),
-        "is_exact": side.curve.is_exact,
-    }
-
-
-def spectrum_document(found: SpectrumDifference) -> dict[str, Any]:
-    """Return two spectra beside each other as JSON values."""
-    return {
-        "stimulus_occupied_hz": rounded(found.first.occupied.width_hz, 1),
-        "field_occupied_hz": rounded(found.second.occupied.width_hz, 1),
-        "centre_offset_hz": rounded(found.offset_hz, 1),
-        "largest_difference_db": rounded(found.largest_db, 3),
-        "band_hz": [round(float(x), 1) for x in found.band_hz],
-        "difference_db": [round(float(x), 3) for x in found.difference_db],
-        "is": "power in each band over the total, stimulus less field, centre on centre",
-    }
-
-
-def look_document(item: LookAlike, width_hz: float | None) -> dict[str, Any]:
-    """Return a familiar law as JSON values, with a recipe to start from."""
-    parameter = item.family.parameter
-    return {
-        "law": item.family.name,
-        **({parameter: round(item.value, 2)} if parameter else {}),
-        "duty": round(item.duty, 4),
-        "largest_deviation_db": rounded(item.largest_deviation_db, 3),
-        "at_probability": item.at_probability,
-        "is_near": item.is_near,
-        "recipe": starting_recipe(item, width_hz=width_hz),
-    }

@@ -19,7 +19,7 @@ from wavegen.comparison.difference import (
     compare,
     probabilities,
 )
-from wavegen.comparison.match import row_document
+from wavegen.comparison.match_document import row_document
 from wavegen.comparison.sides import CURVE_FORMAT, LOOP, Side, SideSettings, open_side
 from wavegen.comparison.spectra import SideSpectrum, side_spectrum, spectrum_difference
 from wavegen.core.errors import ArgumentsError, SignalError, WavegenError
