@@ -203,6 +203,7 @@ class LinesTerm(BaseTerm):
             place,
             np.array(self.values),
             n_instants=self.clock_samples,
+            stride=self.spacing // math.gcd(self.spacing, self.n_samples),
             name=f"{len(self.bins)} tones, own period",
         )
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Self
 
@@ -22,6 +23,10 @@ class ListedLaw:
         Power of each sample over the mean, rising.
     name, holds
         As in :class:`wavegen.laws.law.Law`.
+    in_order : float64 array, shape (n_samples,)
+        The same, from index 0 of the loop on: whole periods of what repeats.
+    is_on : bool array, shape (n_samples,), or None
+        Where a gate is fully open; None where there is none.
 
     Examples
     --------
@@ -32,14 +37,43 @@ class ListedLaw:
 
     powers: NDArray[np.float64]
     name: str
+    in_order: NDArray[np.float64]
+    is_on: NDArray[np.bool_] | None = None
     holds: Holds = "every loop"
 
     @classmethod
     def of(cls, samples: Samples, *, name: str) -> Self:
         """Return the law of samples, not all zero."""
         wide = samples.astype(np.complex128)
-        powers = wide.real**2 + wide.imag**2
-        return cls(powers=np.sort(powers / powers.mean()), name=name)
+        return cls.of_powers(wide.real**2 + wide.imag**2, name=name)
+
+    @classmethod
+    def of_powers(
+        cls,
+        powers: NDArray[np.float64],
+        *,
+        name: str,
+        is_on: NDArray[np.bool_] | None = None,
+    ) -> Self:
+        """Return the law of samples of these powers, on any scale, not all zero."""
+        over_mean = powers / powers.mean()
+        return cls(powers=np.sort(over_mean), name=name, in_order=over_mean, is_on=is_on)
+
+    @property
+    def on_powers(self) -> NDArray[np.float64]:
+        """Powers over the mean of the time that a gate is fully open, in order."""
+        return self.in_order if self.is_on is None else self.in_order[self.is_on]
+
+    def through(
+        self, change: Callable[[NDArray[np.float64]], NDArray[np.float64]], *, name: str
+    ) -> Self:
+        """Return the law of what a change makes of each power, over the new mean."""
+        return self.of_powers(change(self.in_order), name=name, is_on=self.is_on)
+
+    def delayed(self, lag: int) -> Self:
+        """Return the law of the loop some whole samples later."""
+        is_on = None if self.is_on is None else np.roll(self.is_on, lag)
+        return self.of_powers(np.roll(self.in_order, lag), name=self.name, is_on=is_on)
 
     @property
     def peak_db(self) -> float:

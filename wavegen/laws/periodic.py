@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from typing import Self
 
@@ -37,6 +37,10 @@ class PeriodicLaw:
         None if not known.
     name : str
         What the law is called.
+    lines : (int64 array, complex128 array) or None
+        Harmonics from 0 on, and their amplitudes at unit mean power.
+    stride : int
+        Sample ``n`` of a loop falls on instant ``n stride`` modulo ``n_instants``.
 
     Notes
     -----
@@ -52,6 +56,8 @@ class PeriodicLaw:
     peak_power: float
     n_instants: int | None = None
     name: str = "its own period"
+    lines: tuple[NDArray[np.int64], NDArray[np.complex128]] | None = None
+    stride: int = 1
     holds: Holds = "every loop"
 
     @classmethod
@@ -61,6 +67,7 @@ class PeriodicLaw:
         amplitudes: NDArray[np.complex128],
         *,
         n_instants: int | None = None,
+        stride: int = 1,
         name: str = "its own period",
     ) -> Self:
         """Make the law of ``x(t) = sum_k a_k exp(2j pi h_k t)``, ``0 <= t < 1``.
@@ -71,7 +78,7 @@ class PeriodicLaw:
             Frequencies, cycles per period; each once. A common offset does not matter.
         amplitudes : complex128 array, shape (n_tones,)
             On any scale, not all zero.
-        n_instants : int, optional
+        n_instants, stride : int, optional
             See the class.
         name : str
             What the law is called.
@@ -104,7 +111,27 @@ class PeriodicLaw:
             peak_power=peak,
             n_instants=n_instants,
             name=name,
+            lines=(place, scaled),
+            stride=stride,
         )
+
+    def delayed(self, lag: int) -> Self:
+        """Return the law of the loop some whole samples later."""
+        if self.lines is None or not self.n_instants:
+            return self
+        place, amplitudes = self.lines
+        turns = place * (self.stride * lag % self.n_instants) % self.n_instants / self.n_instants
+        return replace(self, lines=(place, amplitudes * np.exp(-2j * np.pi * turns)))
+
+    def powers_at_instants(self) -> NDArray[np.float64] | None:
+        """Return the power over the mean at each index of a loop's period, None if not known."""
+        if self.lines is None or not self.n_instants:
+            return None
+        place, amplitudes = self.lines
+        spectrum = np.zeros(self.n_instants, np.complex128)
+        np.add.at(spectrum, place * (self.stride % self.n_instants) % self.n_instants, amplitudes)
+        wave = scipy.fft.ifft(spectrum, norm="forward", overwrite_x=True)
+        return np.asarray(wave.real**2 + wave.imag**2)
 
     @property
     def peak_db(self) -> float:

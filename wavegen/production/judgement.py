@@ -162,7 +162,10 @@ def judge(
     if isinstance(law, _EXACT) and law.holds == "every loop":
         return _of_loop(law, codes, datatype)
     if codes.sampled is None or law.holds == "every loop":
-        text = f"undecided: {law.name} follows no other loop than this one, and is not compared"
+        text = (
+            f"undecided: {law.name} is known over all timings alike, this loop has its own, and "
+            "too many samples to list them"
+        )
         return Judgement(verdict="undecided", statement=text, about=LOOP)
     return _of_process(law, codes, datatype, question)
 

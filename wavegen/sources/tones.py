@@ -145,6 +145,7 @@ class Tones:
             place // common,
             lines.amplitudes,
             n_instants=site.n_samples // math.gcd(common, site.n_samples),
+            stride=common // math.gcd(common, site.n_samples),
             name=f"{lines.bins.size} tones, own period",
         )
 

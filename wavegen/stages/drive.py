@@ -306,7 +306,7 @@ class BackedOff:
 
     def law(self, site: Site, source: Law) -> Law | NoLaw:
         """Return the law behind the amplifier."""
-        return driven_law(source, self.amplifier, self.rms(site))
+        return driven_law(source, self.amplifier, self.rms(site), n_samples=site.n_samples)
 
     def term(self, site: Site, source: Term) -> Term | NoLaw:
         """Return what a part of a composite is behind the amplifier."""

@@ -11,6 +11,7 @@ from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
 from wavegen.laws.mapped import GatedLaw, MappedLaw
 from wavegen.laws.operations import EnvelopeTerm
+from wavegen.laws.own_samples import LONGEST, bend_samples, own_samples
 from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.amplifier import Amplifier, Complexes, Reals
 
@@ -28,7 +29,9 @@ class GatedMappedLaw(MappedLaw):
     on_time: Law
 
 
-def driven_law(source: Law, amplifier: Amplifier, rms: float) -> Law | NoLaw:
+def driven_law(
+    source: Law, amplifier: Amplifier, rms: float, *, n_samples: int | None = None
+) -> Law | NoLaw:
     """Return the law behind an amplifier.
 
     Parameters
@@ -39,6 +42,9 @@ def driven_law(source: Law, amplifier: Amplifier, rms: float) -> Law | NoLaw:
         The model.
     rms : float
         RMS amplitude at its input; of a gated signal, of the on-time.
+    n_samples : int, optional
+        Samples of the loop; of no more than ``LONGEST`` all of them set the drive, and the law
+        may be that of the loop's own samples.
 
     Returns
     -------
@@ -47,7 +53,11 @@ def driven_law(source: Law, amplifier: Amplifier, rms: float) -> Law | NoLaw:
     """
     # Amplitudes of a law are over the RMS value of the whole: sqrt(mean) of the on-time's.
     factor = rms * math.sqrt(source.mean) if isinstance(source, GatedLaw) else rms
-    if factor * 10 ** (source.peak_db / 20) > amplifier.largest * (1 + 1e-6):
+    own = own_samples(source) if n_samples and n_samples <= LONGEST else None
+    peak = 10 ** (source.peak_db / 20)
+    if own is not None:
+        peak = math.sqrt(float(own.powers[-1] / own.on_powers.mean()))
+    if factor * peak > amplifier.largest * (1 + 1e-6):
         return NoLaw(
             reason=f"{source.name} has amplitudes beyond the largest input of {amplifier.name}"
         )
@@ -58,8 +68,10 @@ def driven_law(source: Law, amplifier: Amplifier, rms: float) -> Law | NoLaw:
 
     kinks = tuple(kink / factor for kink in amplifier.kinks)
     name = f"{source.name}, then {amplifier.name}"
+    if own is not None:
+        return bend_samples(own, curve, name=name)
     if isinstance(source, GatedLaw):
-        inner = driven_law(source.on_time, amplifier, rms)
+        inner = driven_law(source.on_time, amplifier, rms, n_samples=n_samples)
         if isinstance(inner, NoLaw):
             return inner
         return GatedMappedLaw(source=source, curve=curve, kinks=kinks, name=name, on_time=inner)

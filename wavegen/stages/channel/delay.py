@@ -16,6 +16,7 @@ from wavegen.dsp.overlap_save import Filtered
 from wavegen.dsp.pilot import power_beyond
 from wavegen.laws.law import Law
 from wavegen.laws.operations import DelayedTerm, filtered_law, filtered_term
+from wavegen.laws.own_samples import delayed_law
 from wavegen.laws.term import NoLaw, Term
 
 DOUBTFUL_SHARE = 1e-6
@@ -128,8 +129,9 @@ class Delay:
 
     def law(self, site: Site, source: Law) -> Law | NoLaw:
         """Return the law of the input behind whole samples; a part of one is a filter."""
-        if self.delay.samples(site.sample_rate_hz).denominator == 1:
-            return source
+        lag = self.delay.samples(site.sample_rate_hz)
+        if lag.denominator == 1:
+            return delayed_law(source, int(lag))
         return filtered_law(source, how="delayed by part of a sample")
 
     def term(self, site: Site, source: Term) -> Term | NoLaw:

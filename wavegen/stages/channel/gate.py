@@ -19,6 +19,7 @@ from wavegen.dsp.bursts import LONGEST_TABLE, Bursts, raised_cosine_ramp
 from wavegen.laws.law import Law
 from wavegen.laws.mapped import GatedLaw
 from wavegen.laws.operations import GatedTerm
+from wavegen.laws.own_samples import LONGEST, gate_samples, own_samples
 from wavegen.laws.term import NoLaw, Term
 
 NO_TIME = TimeSpan(Fraction(0), "samples")
@@ -237,6 +238,13 @@ class Gate:
         bursts = self._quiet_bursts(site)
         if bursts is None:
             return source
+        own = own_samples(source)
+        if own is not None and bursts.period_samples <= LONGEST:
+            ones = np.ones(bursts.period_samples, np.complex64)
+            gains = bursts.apply(ones, 0).real.astype(np.float64)
+            found = gate_samples(own, gains, bursts.is_on(0, bursts.period_samples))
+            if found is not None:
+                return found
         ramps = 2 * bursts.ramp_samples * len(bursts.runs)
         return GatedLaw(
             source=source,

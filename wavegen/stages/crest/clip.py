@@ -17,6 +17,7 @@ from wavegen.laws.inversion import law_of_term
 from wavegen.laws.law import Law
 from wavegen.laws.mapped import clip_law
 from wavegen.laws.operations import EnvelopeTerm
+from wavegen.laws.own_samples import clip_samples, own_samples
 from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.ceiling import PILOT_SAMPLES, STRETCH_SAMPLES, pilot_power
 from wavegen.stages.channel.gate import on_time
@@ -244,7 +245,11 @@ class Clip:
 
     def law(self, site: Site, source: Law) -> Law | NoLaw:
         """Return the law of the clipped signal from that of its input."""
-        return clip_law(source, self.ceiling_db)
+        # Where the clip amplitude is found on the whole loop, it is that of the loop's samples.
+        own = own_samples(source) if site.n_samples <= PILOT_SAMPLES else None
+        return (
+            clip_law(source, self.ceiling_db) if own is None else clip_samples(own, self.ceiling_db)
+        )
 
     def term(self, site: Site, source: Term) -> Term | NoLaw:
         """Return what a clipped part is to a composite: lawful if isotropic at all times."""

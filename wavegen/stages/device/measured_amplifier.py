@@ -142,7 +142,7 @@ class MeasuredAmplifier:
     def law(self, site: Site, source: Law) -> Law | NoLaw:
         """Return the law behind the amplifier; none where the input has no highest level."""
         amplifier, rms, _ = self._driven(site)
-        return driven_law(source, amplifier, rms)
+        return driven_law(source, amplifier, rms, n_samples=site.n_samples)
 
     def term(self, site: Site, source: Term) -> Term | NoLaw:
         """Return what a part of a composite is behind the amplifier."""
