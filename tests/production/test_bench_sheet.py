@@ -25,7 +25,11 @@ DOCUMENT = {
     "files": [{"name": "t.sigmf-data", "sha512": "ab", "bits": None, "datatype": "ci16_le"}],
 }
 FACTS = SheetFacts(
-    longest_burst_s=2.5e-4, last_sample_db=3.0, bandwidth_hz=10e6, unreduced_papr_db=14.0
+    longest_burst_s=2.5e-4,
+    first_sample_db=-20.0,
+    last_sample_db=3.0,
+    bandwidth_hz=10e6,
+    unreduced_papr_db=14.0,
 )
 
 
@@ -87,16 +91,101 @@ def test_what_the_generator_takes():
 
 def test_mistakes_sensor_and_time():
     found = sheet()
-    unreduced, held = found["mistakes"]
-    # the period's mean at the device is -26 dBm
+    confused, unreduced, highest, held = found["mistakes"]
+    # the period's mean at the device is -26 dBm, that of the burst -20, its peak -15; full scale
+    # lies 12 dB over the mean of the period
+    assert confused["average_dbm"] == pytest.approx(-8)
+    assert confused["peak_envelope_dbm"] == pytest.approx(-3)
+    assert unreduced["average_dbm"] == pytest.approx(-20)
     assert unreduced["peak_envelope_dbm"] == pytest.approx(-12)
-    assert unreduced["over_db"] == pytest.approx(3)
-    assert held["peak_envelope_dbm"] == pytest.approx(-23)
+    assert unreduced["over_peak_db"] == pytest.approx(3)
+    assert highest["average_dbm"] == highest["peak_envelope_dbm"] == pytest.approx(-15)
+    assert held["average_dbm"] == held["peak_envelope_dbm"] == pytest.approx(-23)
+    assert found["edges"] == {"first_dbm": pytest.approx(-46), "last_dbm": pytest.approx(-23)}
     assert not found["sensors"][0]["follows"]
     rows = {row["probability"]: row for row in found["averaging"]}
     assert rows[0.01]["at_least_s"] == pytest.approx(1e-4)
     assert rows[0.01]["is_held_by_loop"]
     assert not rows[1e-4]["is_held_by_loop"]
+
+
+RATED = (
+    PathStage(name="generator", role="generator", peak_limit_dbm=0.0),
+    PathStage(name="amplifier", role="device", gain_db=30.0, average_limit_dbm=-17.0),
+    PathStage(name="pad", role="attenuator", gain_db=-20.0, peak_limit_dbm=17.0),
+    PathStage(name="head", role="sensor", energy_limit_j=1e-6),
+    PathStage(name="box", role="analyser", input_attenuation_db=10, mixer_limit_dbm=-14.0),
+)
+
+
+def test_which_ratings_a_mistake_exceeds():
+    """At the device -20 dBm in the burst, peak -15: the head has -10 + 20 dB = -10 ... +10 dBm."""
+    found = sheet(path=RATED)
+    confused, unreduced, highest, held = found["mistakes"]
+    # 12 dB more: amplifier -8 > -17, pad's peak 15 + 12 = 27 > 17, mixer -15 + 10 - 10 + 12 = -3;
+    # the head has -10 dBm in 0.25 ms: 25 nJ, and 396 nJ with 12 dB more
+    assert confused["exceeds"] == [
+        "amplifier.average_limit",
+        "pad.peak_limit",
+        "box.mixer_limit",
+    ]
+    # a peak of -12: pad 18 > 17, mixer -12 > -14
+    assert unreduced["exceeds"] == ["pad.peak_limit", "box.mixer_limit"]
+    # an average of -15 > -17; no peak is higher than planned
+    assert highest["exceeds"] == ["amplifier.average_limit"]
+    assert held["exceeds"] == []
+
+
+def test_a_generator_in_the_path_has_an_output_alone():
+    found = sheet(path=RATED, generator=Generator(average_limit_dbm=10.0))
+    first, second = found["path"][:2]
+    assert (first["name"], first["at"]) == ("generator", "output")
+    assert second["name"] == "amplifier"
+    assert [item["name"] for item in first["ratings"]] == [
+        "generator.average_limit",
+        "generator.peak_limit",
+    ]
+
+
+def test_allowances_are_told_beside_the_margins():
+    found = sheet(path=RATED, level_uncertainty_db=0.5, overshoot_db=0.3)
+    assert found["allowances"] == {"level_uncertainty_db": 0.5, "overshoot_db": 0.3}
+    pad = found["path"][2]
+    (rating,) = pad["ratings"]
+    assert rating["allowance_db"] == pytest.approx(0.8)
+    assert rating["margin_db"] == pytest.approx(17 - 15 - 0.8)
+
+
+def test_a_mismatch_is_told_only_where_it_is_stated():
+    generator, cable, amplifier, *_ = sheet()["path"]
+    assert generator["worst_peak_v"] is None
+    assert cable["reflected_peak_dbm"] is None
+    # VSWR 3 sends a quarter of the peak of -15 dBm back
+    assert amplifier["reflected_peak_dbm"] == pytest.approx(-21.0206, abs=1e-4)
+
+
+def test_a_second_channel_lies_where_the_file_puts_it():
+    second = DOCUMENT | {"mean_dbfs": -15.0, "on_time": {"mean_dbfs": -10.0}, "channel": 1}
+    bench = Bench(average_power_at_device_dbm=-20.0, averaged_over="burst", path=PATH)
+    found = bench_sheet(bench, second, FACTS, first=DOCUMENT)
+    # the bursts of the first have -20 dBm, those of the second lie 4 dB lower
+    device = found["path"][2]
+    assert found["channel"] == 1
+    assert device["average_dbm"] == pytest.approx(-24)
+    assert device["peak_envelope_dbm"] == pytest.approx(-15)  # 9 dB over its burst
+    # full scale is the same power at both outputs
+    assert found["set"]["if_it_means_full_scale_dbm"] == pytest.approx(
+        sheet()["set"]["if_it_means_full_scale_dbm"]
+    )
+
+
+def test_accepted_risks_are_marked():
+    document = DOCUMENT | {"bench": {"accepted_risks": ["cable.peak_limit"]}}
+    path = (PathStage(name="cable", role="cable", gain_db=-1.0, peak_limit_dbm=-15.0), *PATH[1:])
+    bench = Bench(average_power_at_device_dbm=-20.0, averaged_over="burst", path=path)
+    (rating,) = bench_sheet(bench, document, FACTS)["path"][1]["ratings"]
+    assert rating["is_accepted"]
+    assert rating["margin_db"] == pytest.approx(-1)
 
 
 def test_facts_are_measured():
@@ -112,4 +201,5 @@ signal: {kind: noise, bandwidth: 2 MHz}
     assert facts.longest_burst_s is None
     assert facts.bandwidth_hz == pytest.approx(2e6, rel=0.2)
     assert 8 < facts.unreduced_papr_db < 13
+    assert facts.first_sample_db < 5.1
     assert facts.last_sample_db < 5.1

@@ -10,7 +10,7 @@ from wavegen.recipe.load import load_text
 from wavegen.reports.stimulus_reports import (
     Wanted,
     refuse_beforehand,
-    without_reduction,
+    without,
     write_stimulus_reports,
 )
 
@@ -79,6 +79,47 @@ def test_what_cannot_be_written_is_refused_beforehand(tmp_path):
 
 
 def test_a_recipe_without_its_crest_reduction():
-    assert without_reduction(loaded()) is not None
+    unreduced = without(loaded(), ("crest",))
+    assert unreduced is not None
+    assert unreduced.loaded.recipe.stages == ()
+    assert without(loaded(), ("device", "converter")) is None
     plain = load_text(RECIPE.partition("stages:")[0], name="car")
-    assert without_reduction(plain) is None
+    assert without(plain, ("crest",)) is None
+
+
+def test_the_reduction_is_shown_over_what_was_before(tmp_path):
+    made = make(loaded(""), out=tmp_path)
+    report = Wanted(report=True)
+    write_stimulus_reports(made, report)
+    page = (made.folder / "car.report.html").read_text()
+    assert page.count("before its peaks are reduced") >= 2  # CCDF and spectrum
+    assert "adjacent" in page
+
+
+TWO = """\
+second_channel:
+  level: -6 dB
+  signal:
+    kind: single_carrier
+    constellation: 8psk
+    symbol_rate: 1 MHz
+    pulse: {kind: root_raised_cosine, roll_off: 0.22}
+"""
+RAW = "output: {iq: [{format: raw, datatype: ci16_le}]}\n"
+
+
+def test_both_channels_of_a_file_that_does_not_tell_its_rate(tmp_path):
+    made = make(loaded(TWO + BENCH + RAW), out=tmp_path, accepted_risks=["cable.peak_limit"])
+    names = write_stimulus_reports(made, Wanted(figures=True, report=True, sheet=True))
+    both = {f"car.{kind}{end}.svg" for kind in ("ccdf", "spectrum") for end in ("", "-second")}
+    assert both <= set(names)
+    sheet = (made.folder / "car.bench.html").read_text()
+    assert "Levels, channel 0" in sheet
+    assert "Levels, channel 1" in sheet
+    # the second channel lies 6 dB lower everywhere; its average at the device is told so
+    document = made.document
+    over = document["files"][0]["channels"][1]["mean_dbfs"] - document["mean_dbfs"]
+    assert over == pytest.approx(-6, abs=0.1)
+    assert f"{-20 + over:.2f} dBm" in sheet
+    assert "EXCEEDED by" in sheet
+    assert ", accepted" in sheet

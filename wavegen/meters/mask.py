@@ -184,7 +184,7 @@ def check_mask(spectrum: Spectrum, mask: SpectralMask, *, centre_hz: float = 0.0
     ends = [(low, high) for side in sides for low, high in side if low[0] < high[0]]
     for (low, _), (high, _) in ends:
         spectrum.check_band(centre_hz + low - width / 2, centre_hz + high + width / 2, where="mask")
-    reference = _reference(spectrum, mask)
+    reference = reference_power(spectrum, mask)
     return MaskResult(
         segments=tuple(
             _segment(spectrum, low, high, width=width, reference=reference, centre_hz=centre_hz)
@@ -193,7 +193,16 @@ def check_mask(spectrum: Spectrum, mask: SpectralMask, *, centre_hz: float = 0.0
     )
 
 
-def _reference(spectrum: Spectrum, mask: SpectralMask) -> float:
+def reference_power(spectrum: Spectrum, mask: SpectralMask) -> float:
+    """Return the power that the levels of a mask are over.
+
+    Parameters
+    ----------
+    spectrum : Spectrum
+        Of the signal.
+    mask : SpectralMask
+        Says which power.
+    """
     if mask.reference == "total_power":
         return spectrum.total_power
     half = (spectrum.sample_rate_hz - mask.measurement_bandwidth_hz) / 2

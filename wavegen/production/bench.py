@@ -11,6 +11,22 @@ from wavegen.core.errors import ArgumentsError, TargetMissed
 from wavegen.recipe.bench import Bench, PathStage
 
 
+def engineering(value: float, unit: str) -> str:
+    """Write a value with three digits and a decimal prefix.
+
+    Examples
+    --------
+    >>> engineering(0.00398, "W"), engineering(19.95, "V"), engineering(0.0, "W")
+    ('3.98 mW', '19.9 V', '0 W')
+    """
+    if not value:
+        return f"0 {unit}"
+    digits = float(f"{value:.3g}")
+    power = min(max(math.floor(math.log10(abs(digits)) / 3), -4), 2)
+    prefix = {-4: "p", -3: "n", -2: "µ", -1: "m", 0: "", 1: "k", 2: "M"}[power]
+    return f"{digits / 1000.0**power:.3g} {prefix}{unit}"
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Rating:
     """A rating beside what it is to hold.
@@ -51,7 +67,7 @@ class Rating:
 
     def text(self, value: float) -> str:
         """Return a value in the rating's unit."""
-        return f"{value:.3g} J" if self.unit == "J" else f"{value:.2f} dBm"
+        return engineering(value, "J") if self.unit == "J" else f"{value:.2f} dBm"
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

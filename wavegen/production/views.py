@@ -12,12 +12,36 @@ from wavegen.core.render import Tap, render, samples_of
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.bursts import Bursts
 from wavegen.meters.envelope import Envelope, EnvelopeMeter
+from wavegen.meters.mask import SpectralMask
+from wavegen.meters.power import PowerMeter, PowerStatistics
 from wavegen.meters.spectrum import Spectrum, SpectrumMeter
 from wavegen.meters.symbol_clouds import SymbolCloud, symbol_clouds
+from wavegen.production.neighbours import spectrum_meter
+from wavegen.production.surroundings import ChannelView, Corners, Surroundings, mask_corners
 
 AROUND_SEAM = 120
 """Samples shown on each side of a loop's seam."""
 _MOST_BURSTS = 200
+_FEWEST_BINS = 32
+
+
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Before:
+    """A signal before what a recipe does to its peaks.
+
+    Parameters
+    ----------
+    name : str
+        As a legend has it: ``before its peaks are reduced``.
+    power : PowerStatistics
+        Of all of it.
+    spectrum : Spectrum or None
+        As of the signal itself.
+    """
+
+    name: str
+    power: PowerStatistics
+    spectrum: Spectrum | None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -38,6 +62,12 @@ class Views:
         When a gate is on, s; empty without a gate, or with more than 200 bursts.
     clouds : tuple of SymbolCloud
         Received symbols; empty where nothing has any, or what is received is not known.
+    channels : tuple of ChannelView
+        The carrier and its neighbours, where a recipe tells them.
+    mask : (frequencies in Hz, limits in dBc/Hz) or None
+        Of the recipe.
+    before : Before or None
+        The same signal before its peaks are reduced.
     """
 
     sample_rate_hz: float
@@ -46,6 +76,9 @@ class Views:
     around_seam: Samples | None
     on_times_s: tuple[tuple[float, float], ...] = ()
     clouds: tuple[SymbolCloud, ...] = ()
+    channels: tuple[ChannelView, ...] = ()
+    mask: Corners | None = None
+    before: Before | None = None
 
 
 def views_of(
@@ -54,6 +87,8 @@ def views_of(
     loops: bool,
     graph: Signal | None = None,
     bursts: Bursts | None = None,
+    mask: SpectralMask | None = None,
+    before: tuple[str, Signal] | None = None,
     workers: int = 1,
     progress: Progress = silent,
 ) -> Views:
@@ -66,9 +101,13 @@ def views_of(
     loops : bool
         Whether the last sample is followed by the first.
     graph : Signal, optional
-        The recipe's graph on the same axis, for the constellation.
+        The recipe's graph on the same axis, for constellation and channels.
     bursts : Bursts, optional
         When it is on.
+    mask : SpectralMask, optional
+        Of the recipe; drawn where there is a graph, whose band it stands around.
+    before : (str, Signal), optional
+        The same before its peaks are reduced, and what that is called.
     workers : int
         Threads.
     progress : Progress
@@ -83,33 +122,57 @@ def views_of(
     FileError, SignalError
         It cannot be read, or a sample is not finite.
     """
+    around = None if graph is None else Surroundings.of(graph)
+    meter = _spectrum_meter(signal, around, mask, loops=loops)
     taps = [Tap(name="envelope", signal=signal, meter=EnvelopeMeter())]
-    meter = _spectrum_meter(signal.n_samples, loops=loops)
     if meter is not None:
         taps.append(Tap(name="spectrum", signal=signal, meter=meter))
     found = render(
         signal, taps=tuple(taps), workers=workers, progress=progress, task="reading for pictures"
     )
-    half = min(AROUND_SEAM, signal.n_samples // 2)
-    around = None
-    if loops and half:
-        n = signal.n_samples
-        around = np.concatenate([samples_of(signal, n - half, n), samples_of(signal, 0, half)])
+    spectrum = found.get("spectrum")
     rate = float(signal.sample_rate_hz)
+    corners = None
+    if mask is not None and around is not None and spectrum is not None:
+        corners = mask_corners(mask, spectrum, centre_hz=around.band.centre_hz)
     return Views(
         sample_rate_hz=rate,
         envelope=found["envelope"],
-        spectrum=found.get("spectrum"),
-        around_seam=around,
+        spectrum=spectrum,
+        around_seam=_around_seam(signal) if loops else None,
         on_times_s=_on_times(bursts, signal.n_samples, rate),
         clouds=() if graph is None else _clouds(graph),
+        channels=around.channels(spectrum) if around and spectrum is not None else (),
+        mask=corners,
+        before=None if before is None else _before(*before, meter, workers, progress),
     )
 
 
-def _spectrum_meter(n_samples: int, *, loops: bool) -> SpectrumMeter | None:
+def _around_seam(signal: Signal) -> Samples | None:
+    half, n = min(AROUND_SEAM, signal.n_samples // 2), signal.n_samples
+    if not half:
+        return None
+    return np.concatenate([samples_of(signal, n - half, n), samples_of(signal, 0, half)])
+
+
+def _before(
+    name: str, signal: Signal, meter: SpectrumMeter | None, workers: int, progress: Progress
+) -> Before:
+    taps = [Tap(name="power", signal=signal, meter=PowerMeter())]
+    if meter is not None:
+        taps.append(Tap(name="spectrum", signal=signal, meter=meter))
+    found = render(signal, taps=tuple(taps), workers=workers, progress=progress, task=name)
+    return Before(name=name, power=found["power"], spectrum=found.get("spectrum"))
+
+
+def _spectrum_meter(
+    signal: Signal, around: Surroundings | None, mask: SpectralMask | None, *, loops: bool
+) -> SpectrumMeter | None:
     """Return a meter whose segments are short enough for several; None for a few samples."""
-    size = 1 << max(min(12, (n_samples // 8).bit_length() - 1), 0)
-    return SpectrumMeter(n_fft=size, overlap=0.75, loops=loops) if size >= 32 else None
+    size = 1 << max(min(12, (signal.n_samples // 8).bit_length() - 1), 0)
+    if around is not None:
+        size = max(size, min(spectrum_meter(signal, around.band.width_hz, mask).n_fft, 4 * size))
+    return SpectrumMeter(n_fft=size, overlap=0.75, loops=loops) if size >= _FEWEST_BINS else None
 
 
 def _on_times(

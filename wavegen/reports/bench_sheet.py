@@ -2,28 +2,14 @@
 
 from __future__ import annotations
 
-import math
+from collections.abc import Callable, Sequence
 from typing import Any
 
 from wavegen.core.table import Table
 from wavegen.core.units import format_hz, format_s
+from wavegen.production.bench import engineering
 from wavegen.reports.pages.page import Page, Section
 from wavegen.reports.tables import fixed, percent
-
-
-def engineering(value: float, unit: str) -> str:
-    """Write a value with three digits and a decimal prefix.
-
-    Examples
-    --------
-    >>> engineering(0.00398, "W"), engineering(19.95, "V"), engineering(0.0, "W")
-    ('3.98 mW', '19.9 V', '0 W')
-    """
-    if not value:
-        return f"0 {unit}"
-    power = min(max(math.floor(math.log10(abs(value)) / 3), -4), 2)
-    prefix = {-4: "p", -3: "n", -2: "µ", -1: "m", 0: "", 1: "k", 2: "M"}[power]
-    return f"{value / 1000.0**power:.3g} {prefix}{unit}"
 
 
 def setting_table(sheet: dict[str, Any]) -> Table:
@@ -40,7 +26,12 @@ def setting_table(sheet: dict[str, Any]) -> Table:
             ("average of the on-time there", fixed(wanted["average_over_burst_dbm"], "dBm"))
         )
     rows.append(("peak envelope power there", fixed(wanted["peak_envelope_dbm"], "dBm")))
-    return Table(title="At the generator's output", headings=("figure", "value"), rows=tuple(rows))
+    return Table(
+        title="At the generator's output",
+        headings=("figure", "value"),
+        rows=tuple(rows),
+        right=frozenset({1}),
+    )
 
 
 def power_table(sheet: dict[str, Any]) -> Table:
@@ -64,23 +55,35 @@ def power_table(sheet: dict[str, Any]) -> Table:
 
 
 def voltage_table(sheet: dict[str, Any]) -> Table:
-    """Return peak voltages, the worst ones too."""
+    """Return peak voltages, the worst ones too, and what comes back."""
     rows = tuple(
         (
             f"{place['name']}, {place['at']}",
             engineering(place["peak_v"], "V"),
-            engineering(place["worst_peak_v"], "V"),
+            _or_none(place["worst_peak_v"], lambda value: engineering(value, "V")),
             engineering(place["open_peak_v"], "V"),
-            "-" if place["reflected_dbm"] is None else fixed(place["reflected_dbm"], "dBm"),
+            _or_none(place["reflected_dbm"], lambda value: fixed(value, "dBm")),
+            _or_none(place["reflected_peak_dbm"], lambda value: fixed(value, "dBm")),
         )
         for place in sheet["path"]
     )
     return Table(
-        title=f"Peak voltages at {sheet['impedance_ohm']:g} ohm",
-        headings=("place", "matched", "stated mismatch", "open line", "reflected average"),
+        title=f"Peak voltages at {sheet['impedance_ohm']:g} ohm, and power that comes back",
+        headings=(
+            "place",
+            "matched",
+            "stated mismatch",
+            "open line",
+            "average back",
+            "peak back",
+        ),
         rows=rows,
-        right=frozenset({1, 2, 3, 4}),
+        right=frozenset({1, 2, 3, 4, 5}),
     )
+
+
+def _or_none(value: float | None, write: Callable[[float], str]) -> str:
+    return "not stated" if value is None else write(value)
 
 
 def rating_table(sheet: dict[str, Any]) -> Table | None:
@@ -89,8 +92,9 @@ def rating_table(sheet: dict[str, Any]) -> Table | None:
         (
             rating["name"],
             rating["value"],
+            fixed(rating["allowance_db"], "dB"),
             rating["limit"],
-            "EXCEEDED" if rating["margin_db"] < 0 else fixed(rating["margin_db"], "dB"),
+            _margin(rating),
         )
         for place in sheet["path"]
         for rating in place["ratings"]
@@ -98,11 +102,18 @@ def rating_table(sheet: dict[str, Any]) -> Table | None:
     if not rows:
         return None
     return Table(
-        title="Ratings (the margin has the allowances taken off)",
-        headings=("rating", "expected", "rated", "margin"),
+        title="Ratings, and what is left below each",
+        headings=("rating", "expected", "allowance", "rated", "margin"),
         rows=rows,
-        right=frozenset({1, 2, 3}),
+        right=frozenset({1, 2, 3, 4}),
     )
+
+
+def _margin(rating: dict[str, Any]) -> str:
+    if rating["margin_db"] >= 0:
+        return fixed(rating["margin_db"], "dB")
+    over = f"EXCEEDED by {fixed(-rating['margin_db'], 'dB')}"
+    return f"{over}, accepted" if rating["is_accepted"] else over
 
 
 def legality_table(sheet: dict[str, Any]) -> Table:
@@ -122,18 +133,49 @@ def legality_table(sheet: dict[str, Any]) -> Table:
     )
 
 
-def mistake_table(sheet: dict[str, Any]) -> Table | None:
+def mistake_table(sheet: dict[str, Any]) -> Table:
     """Return what the device would see if something went wrong."""
-    if not sheet["mistakes"]:
-        return None
     return Table(
-        title="At the device, if",
-        headings=("what goes wrong", "peak envelope", "over the planned peak"),
+        title="At the device, if something goes wrong",
+        headings=("what goes wrong", "average", "peak envelope", "over the planned", "exceeds"),
         rows=tuple(
-            (row["what"], fixed(row["peak_envelope_dbm"], "dBm"), fixed(row["over_db"], "dB"))
+            (
+                row["what"],
+                fixed(row["average_dbm"], "dBm"),
+                fixed(row["peak_envelope_dbm"], "dBm"),
+                f"{round(row['over_peak_db'], 2) + 0.0:+.2f} dB",
+                ", ".join(row["exceeds"]) or "no rating",
+            )
             for row in sheet["mistakes"]
         ),
-        right=frozenset({1, 2}),
+        right=frozenset({1, 2, 3}),
+    )
+
+
+def edge_words(sheet: dict[str, Any]) -> str:
+    """Say at which power a file begins and ends: a start or a stop is a step of that size."""
+    first, last = (
+        "nothing" if value is None else fixed(value, "dBm")
+        for value in (sheet["edges"]["first_dbm"], sheet["edges"]["last_dbm"])
+    )
+    return (
+        f"At the device the file begins at {first} and ends at {last}: a start or a stop while RF "
+        "is on is a step of that size. Start playing before RF is on, and stop after it is off."
+    )
+
+
+def allowance_words(sheet: dict[str, Any]) -> str:
+    """Say how much is kept free below the ratings."""
+    kept = sheet["allowances"]
+    level, over = kept["level_uncertainty_db"], kept["overshoot_db"]
+    if not level and not over:
+        return (
+            "No allowance is taken: bench.level_uncertainty and bench.overshoot of the recipe are "
+            "not given."
+        )
+    return (
+        f"Allowances: levels may lie {level:g} dB higher than they are set, and peaks overshoot by "
+        f"{over:g} dB; margins have them taken off."
     )
 
 
@@ -174,45 +216,64 @@ def tables(sheet: dict[str, Any]) -> list[Table]:
         power_table(sheet),
         rating_table(sheet),
         voltage_table(sheet),
-        legality_table(sheet),
         mistake_table(sheet),
+        legality_table(sheet),
         averaging_table(sheet),
     )
     return [table for table in found if table is not None]
 
 
-def sections(sheet: dict[str, Any]) -> list[Section]:
-    """Return a sheet as sections of a page."""
+def sections(found: Sequence[dict[str, Any]]) -> list[Section]:
+    """Return the sheets of all channels as sections of a page."""
     steps = [
         Table(
             title=title,
             headings=("", "step"),
-            rows=tuple((str(number), step) for number, step in enumerate(sheet[key], 1)),
+            rows=tuple((str(number), step) for number, step in enumerate(found[0][key], 1)),
             right=frozenset({0}),
         )
         for key, title in (("before", "To start"), ("after", "To stop"))
     ]
-    return [
-        Section(heading="Order of work", tables=tuple(steps)),
+    levels = [
         Section(
-            heading="Levels", paragraphs=tuple(sensor_words(sheet)), tables=tuple(tables(sheet))
-        ),
+            heading="Levels" + _of_channel(sheet),
+            paragraphs=(allowance_words(sheet), edge_words(sheet), *sensor_words(sheet)),
+            tables=tuple(tables(sheet)),
+        )
+        for sheet in found
     ]
+    return [Section(heading="Order of work", tables=tuple(steps)), *levels]
 
 
-def sheet_page(sheet: dict[str, Any]) -> Page:
-    """Return the page of a sheet."""
+def _of_channel(sheet: dict[str, Any]) -> str:
+    return "" if sheet["channel"] is None else f", channel {sheet['channel']}"
+
+
+def _setting_words(sheet: dict[str, Any]) -> str:
     wanted = sheet["set"]
+    return (
+        f"Set {wanted['if_it_means_rms_dbm']:.2f} dBm if the generator's setting is RMS, "
+        f"{wanted['if_it_means_full_scale_dbm']:.2f} dBm if it is full scale{_of_channel(sheet)}; "
+        f"the peak envelope power is then {wanted['peak_envelope_dbm']:.2f} dBm at its output."
+    )
+
+
+def sheet_page(found: Sequence[dict[str, Any]]) -> Page:
+    """Return the page of the sheets of all channels."""
+    first = found[0]
+    exceeded = [
+        f"{rating['name']} is exceeded{_of_channel(sheet)}: {rating['value']} expected, "
+        f"{rating['limit']} rated" + (", accepted by name" if rating["is_accepted"] else "")
+        for sheet in found
+        for place in sheet["path"]
+        for rating in place["ratings"]
+        if rating["margin_db"] < 0
+    ]
     return Page(
-        title=f"Bench sheet: {sheet['title']}",
-        summary=(
-            (
-                f"Set {wanted['if_it_means_rms_dbm']:.2f} dBm if the generator's setting is RMS, "
-                f"{wanted['if_it_means_full_scale_dbm']:.2f} dBm if it is full scale; the peak "
-                f"envelope power is then {wanted['peak_envelope_dbm']:.2f} dBm at its output."
-            ),
-        ),
-        cautions=tuple(sheet["cautions"]),
-        sections=tuple(sections(sheet)),
-        origin=(("file", sheet["file"]), ("SHA-512", sheet["sha512"])),
+        title=f"Bench sheet: {first['title']}",
+        summary=tuple(_setting_words(sheet) for sheet in found),
+        warnings=tuple(exceeded),
+        cautions=tuple(first["cautions"]),
+        sections=tuple(sections(found)),
+        origin=(("file", first["file"]), ("SHA-512", first["sha512"])),
     )

@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, replace
+from fractions import Fraction
 from typing import Any
 
 from wavegen.core.errors import ArgumentsError, FileError
 from wavegen.core.progress import Progress, silent
 from wavegen.core.signal import Signal
+from wavegen.files.format import ReadHints
 from wavegen.production.bench_sheet import bench_sheet, sheet_facts
+from wavegen.production.chain_cut import CONVERTER, CREST, DEVICE, shelf_of
 from wavegen.production.make import Made
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.subject_files import open_subject
@@ -17,13 +20,20 @@ from wavegen.production.views import views_of
 from wavegen.recipe.load import LoadedRecipe
 from wavegen.reports import bench_sheet as sheets
 from wavegen.reports.figures.look import check_installed
+from wavegen.reports.figures.picture import Picture
 from wavegen.reports.figures.stimulus import pictures_of
 from wavegen.reports.pages.stimulus import stimulus_page
 from wavegen.reports.written import write_page, write_pictures
 from wavegen.stages.channel.gate import on_time
 
 REPORT, SHEET = ".report.html", ".bench.html"
-_CREST = "wavegen.stages.crest."
+_SUFFIXES = ("", "-second")
+"""Behind the names of pictures of the first and the second channel."""
+_BEFORE = {
+    CREST: "before its peaks are reduced",
+    DEVICE: "before the device",
+    CONVERTER: "before the converter",
+}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -105,64 +115,141 @@ def write_stimulus_reports(
     ArgumentsError
         What draws is not installed.
     """
-    document, name = made.document, made.loaded.name
+    name = made.loaded.name
+    channels = _channels(made)
+    how: dict[str, Any] = {"workers": workers, "progress": progress}
     written: list[str] = []
-    sheet = None
-    prepared = prepare(made.loaded)
-    subject = open_subject(made.folder / document["files"][0]["name"])
+    found: list[dict[str, Any]] = []
     if wanted.sheet or (wanted.report and made.loaded.recipe.bench is not None):
-        sheet = _sheet(made, prepared, subject.signal, workers, progress)
-    if wanted.sheet and sheet is not None:
+        found = [_sheet(made, channel, how) for channel in channels]
+    if wanted.sheet and found:
         path = made.folder / f"{name}{SHEET}"
-        written.append(write_page(sheets.sheet_page(sheet), path, overwrite=overwrite))
+        written.append(write_page(sheets.sheet_page(found), path, overwrite=overwrite))
     if not (wanted.figures or wanted.report):
         return written
-    views = views_of(
-        subject.signal,
-        loops=True,
-        graph=prepared.built.signal,
-        bursts=on_time(prepared.built.signal),
-        workers=workers,
-        progress=progress,
-    )
-    pictures = pictures_of(document, views, title=document["title"] or name)
+    pictures = [item for channel in channels for item in _pictures(made, channel, how)]
     if wanted.figures:
         written += write_pictures(pictures, made.folder, name, overwrite=overwrite)
     if wanted.report:
-        page = stimulus_page(document, pictures)
-        if sheet is not None:
-            page = replace(page, sections=(*page.sections, *sheets.sections(sheet)))
+        page = stimulus_page(made.document, pictures)
+        if found:
+            page = replace(page, sections=(*page.sections, *sheets.sections(found)))
         path = made.folder / f"{name}{REPORT}"
         written.append(write_page(page, path, overwrite=overwrite))
     return written
 
 
-def _sheet(
-    made: Made, prepared: Prepared, signal: Signal, workers: int, progress: Progress
-) -> dict[str, Any]:
-    bench = made.loaded.recipe.bench
-    assert bench is not None  # noqa: S101 - asked by both callers
-    facts = sheet_facts(
-        signal,
-        mean_power=10 ** (made.document["mean_dbfs"] / 10),
-        bursts=on_time(prepared.built.signal),
-        unreduced=without_reduction(made.loaded),
-        workers=workers,
-        progress=progress,
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class _Channel:
+    """One channel of what was made.
+
+    Parameters
+    ----------
+    number, count : int
+        Which of how many.
+    document : dict
+        The sidecar, as it would be about this channel alone.
+    prepared : Prepared
+        Its recipe.
+    signal : Signal
+        Its samples in the first file.
+    """
+
+    number: int
+    count: int
+    document: dict[str, Any]
+    prepared: Prepared
+    signal: Signal
+
+
+def _channels(made: Made) -> list[_Channel]:
+    prepared = prepare(made.loaded).channels
+    entry = made.document["files"][0]
+    found = []
+    for number, channel in enumerate(prepared):
+        document = made.document
+        if number:
+            document = document | document["second_channel"] | entry["channels"][number]
+        if len(prepared) > 1:
+            document = document | {"channel": number}
+        hints = ReadHints(
+            datatype=entry["datatype"] if entry["format"] == "raw" else None,
+            sample_rate_hz=Fraction(document["sample_rate_exact_hz"]),
+            channel=number if len(prepared) > 1 else None,
+        )
+        subject = open_subject(made.folder / entry["name"], hints)
+        found.append(
+            _Channel(
+                number=number,
+                count=len(prepared),
+                document=document,
+                prepared=channel,
+                signal=subject.signal,
+            )
+        )
+    return found
+
+
+def _pictures(made: Made, channel: _Channel, how: dict[str, Any]) -> list[Picture]:
+    graph = channel.prepared.built.signal
+    views = views_of(
+        channel.signal,
+        loops=True,
+        graph=graph,
+        bursts=on_time(graph),
+        mask=made.loaded.recipe.mask,
+        before=_before(made.loaded, channel.prepared, channel.number),
+        **how,
     )
-    return bench_sheet(bench, made.document, facts)
+    title = made.document["title"] or made.loaded.name
+    if channel.count > 1:
+        title = f"Channel {channel.number}: {title}"
+    return pictures_of(channel.document, views, title=title, suffix=_SUFFIXES[channel.number])
 
 
-def without_reduction(loaded: LoadedRecipe) -> Signal | None:
-    """Return the signal of a recipe without crest-factor reduction, None if there is none in it.
+def _sheet(made: Made, channel: _Channel, how: dict[str, Any]) -> dict[str, Any]:
+    bench = made.loaded.recipe.bench
+    assert bench is not None  # noqa: S101 - asked by the caller
+    mean_db = channel.document["mean_dbfs"]
+    unreduced = without(made.loaded, (CREST,))
+    facts = sheet_facts(
+        channel.signal,
+        mean_power=10 ** (mean_db / 10),
+        bursts=on_time(channel.prepared.built.signal),
+        unreduced=None if unreduced is None else unreduced.channels[channel.number].built.signal,
+        **how,
+    )
+    return bench_sheet(bench, channel.document, facts, first=made.document)
+
+
+def _before(loaded: LoadedRecipe, channel: Prepared, number: int) -> tuple[str, Signal] | None:
+    """Return a channel before all that acts on its peaks, and in words; None if nothing does."""
+    shelves = {shelf_of(stage) for stage in channel.loaded.recipe.stages}
+    removed = [shelf for shelf in _BEFORE if shelf in shelves]
+    if not removed:
+        return None
+    prepared = without(loaded, removed)
+    assert prepared is not None  # noqa: S101 - there is something to leave out
+    return _BEFORE[removed[0]], prepared.channels[number].built.signal
+
+
+def without(loaded: LoadedRecipe, shelves: Sequence[str]) -> Prepared | None:
+    """Return a recipe without the stages of some shelves, None if there are none in it.
 
     Parameters
     ----------
     loaded : LoadedRecipe
-        Its stages are looked at; those of the parts of a sum are left as they are.
+        Its stages, and those of its second channel; those of the parts of a sum are left as they
+        are.
+    shelves : sequence of str
+        ``crest``, ``device``, ``converter``.
     """
-    stages: Sequence[Any] = loaded.recipe.stages
-    kept = tuple(stage for stage in stages if not type(stage).__module__.startswith(_CREST))
-    if len(kept) == len(stages):
-        return None
-    return prepare(replace(loaded, recipe=replace(loaded.recipe, stages=kept))).built.signal
+
+    def kept(stages: Sequence[Any]) -> tuple[Any, ...]:
+        return tuple(stage for stage in stages if shelf_of(stage) not in shelves)
+
+    recipe, second = loaded.recipe, loaded.recipe.second_channel
+    if second is not None:
+        second = replace(second, stages=kept(second.stages))
+    changed = replace(recipe, stages=kept(recipe.stages), second_channel=second)
+    return None if changed == recipe else prepare(replace(loaded, recipe=changed))

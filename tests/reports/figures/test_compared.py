@@ -53,7 +53,7 @@ def test_a_tuning_shows_every_trial_against_the_bound():
         "limits": {"evm_percent": 8.0},
     }
     (picture,) = tune_pictures(document)
-    labels = [text.get_text() for text in picture.figure.axes[0].get_legend().get_texts()]
+    labels = picture.figure.axes[0].get_legend_handles_labels()[1]
     assert labels == ["clip", "least-distortion projection"]
     assert "7.00 dB at EVM 3.00 %" in picture.alternative
     assert tune_pictures(document | {"evaluations": []}) == []

@@ -20,7 +20,7 @@ def test_levels_are_read_off_the_curve():
 
 def test_ccdf_figure_shows_what_it_is_given():
     figure = ccdf_figure(
-        [curve(low=CCDF * 0.9, high=CCDF * 1.1), curve(is_reference=True)],
+        [curve(low=CCDF * 0.9, high=CCDF * 1.1), curve(kind="reference")],
         title="T",
         mean_dbm=-10.0,
     )

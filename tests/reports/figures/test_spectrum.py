@@ -19,12 +19,13 @@ def test_density_channels_and_mask_are_drawn():
     figure = spectrum_figure(
         [("noise", spectrum)],
         title="T",
-        channels=[Channel(name="carrier", low_hz=-1e5, high_hz=1e5)],
+        channels=[Channel(name="carrier", low_hz=-1e5, high_hz=1e5, remark="-50.0 dB")],
         mask=(np.array([-5e5, 5e5]), np.array([-50.0, -50.0])),
     )
     axes = figure.axes[0]
     density = axes.lines[0].get_ydata()
     assert density.mean() == pytest.approx(-60, abs=0.3)  # 0 dB over 1 MHz
-    assert [text.get_text() for text in axes.texts] == ["carrier"]
-    assert len(axes.lines) == 2
+    assert [text.get_text() for text in axes.texts] == ["carrier\n-50.0 dB"]
+    assert len([line for line in axes.lines if line.get_label()[0] != "_"]) == 2
+    assert axes.get_ylim()[1] > -50  # the limit is in the picture
     assert axes.get_xlabel().endswith("kHz")

@@ -10,7 +10,7 @@ def test_a_stimulus_has_all_of_them(made_document, gated_views):
     assert [item.name for item in pictures if item.name != "constellation"] == ALL
     assert all(item.caption and item.alternative for item in pictures)
     axes = pictures[0].figure.axes[0]
-    names = [text.get_text() for text in axes.get_legend().get_texts()]
+    names = axes.get_legend_handles_labels()[1]
     assert "on-time, over its own mean" in names
     assert "4 on-times" in next(i.caption for i in pictures if i.name == "power-time")
     assert "clean" in pictures[-1].caption

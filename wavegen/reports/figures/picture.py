@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -29,3 +29,7 @@ class Picture:
     figure: Figure
     caption: str
     alternative: str
+
+    def renamed(self, name: str) -> Picture:
+        """Return it under another name."""
+        return replace(self, name=name)

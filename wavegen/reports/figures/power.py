@@ -4,16 +4,17 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, Literal
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
 
 from wavegen.reports.figures.look import (
     INK,
+    LAW,
     REFERENCE,
     Stroke,
-    condensed,
+    absolute_axis,
     draw,
     legend,
     new_figure,
@@ -27,7 +28,10 @@ if TYPE_CHECKING:
 
 MARKED = (0.1, 0.01, 0.001, 1e-4, 1e-5, 1e-6)
 _LOWEST_DB = -12.0
-_DENSITY_POINTS = 220
+_HIGHEST_FLOOR = 1e-4
+_LEAST_FLOOR = 1e-9
+_MOST_BARS = 120
+_LEAST_SPAN_DB = 6.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -44,8 +48,10 @@ class CcdfCurve:
         That the power lies above it; zeros are not drawn.
     low, high : float64 array, shape (n,), optional
         Interval of the probability.
-    is_reference : bool
-        Whether it only stands for comparison.
+    kind : {"measured", "law", "reference"}
+        What is measured; what mathematics says of it; what only stands for comparison.
+    peak_db : float, optional
+        Highest level that there is at all: the curve is drawn down to nothing there.
     """
 
     name: str
@@ -53,17 +59,18 @@ class CcdfCurve:
     probability: NDArray[np.float64]
     low: NDArray[np.float64] | None = None
     high: NDArray[np.float64] | None = None
-    is_reference: bool = False
+    kind: Literal["measured", "law", "reference"] = "measured"
+    peak_db: float | None = None
 
     @classmethod
-    def of(cls, name: str, ccdf: dict[str, Any], *, is_reference: bool = False) -> CcdfCurve:
+    def of(cls, name: str, ccdf: dict[str, Any], **more: Any) -> CcdfCurve:
         """Take a curve from a document: ``level_db``, ``probability``, and perhaps an interval."""
-        arrays = {
+        arrays: dict[str, Any] = {
             key: np.asarray(ccdf[key], np.float64)
             for key in ("level_db", "probability", "low", "high")
             if ccdf.get(key) is not None
         }
-        return cls(name=name, is_reference=is_reference, **arrays)
+        return cls(name=name, **more, **arrays)
 
     def level_at(self, probability: float) -> float | None:
         """Return the level exceeded with a probability, dB; None if the curve ends before."""
@@ -74,11 +81,44 @@ class CcdfCurve:
         return float(np.interp(-np.log(probability), -logarithm, level))
 
 
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Spread:
+    """Between which levels a process has each of some probabilities.
+
+    Parameters
+    ----------
+    name : str
+        As the legend has it.
+    probability, low_db, high_db : float64 array, shape (n,)
+        Probabilities falling.
+    """
+
+    name: str
+    probability: NDArray[np.float64]
+    low_db: NDArray[np.float64]
+    high_db: NDArray[np.float64]
+
+
+GAUSSIAN_DB = np.arange(-300, 281) / 20.0
+"""Levels at which the complex Gaussian is drawn, dB over its mean."""
+
+
+def gaussian_curve(name: str = "complex Gaussian") -> CcdfCurve:
+    """Return the CCDF of the complex Gaussian, ``exp(-p)``, from -15 to 14 dB."""
+    return CcdfCurve(
+        name=name,
+        level_db=GAUSSIAN_DB,
+        probability=np.exp(-(10 ** (GAUSSIAN_DB / 10))),
+        kind="reference",
+    )
+
+
 def _strokes(curves: Sequence[CcdfCurve]) -> list[Stroke]:
     number, found = 0, []
     for curve in curves:
-        found.append(REFERENCE if curve.is_reference else stroke(number))
-        number += not curve.is_reference
+        own = {"law": LAW, "reference": REFERENCE}.get(curve.kind)
+        found.append(own or stroke(number))
+        number += curve.kind == "measured"
     return found
 
 
@@ -87,7 +127,9 @@ def ccdf_figure(
     *,
     title: str,
     marks: Sequence[tuple[float, float]] | None = None,
+    spread: Spread | None = None,
     mean_dbm: float | None = None,
+    level_name: str = "level, dBm",
     least: float | None = None,
 ) -> Figure:
     """Draw CCDFs over the level above the mean.
@@ -100,8 +142,12 @@ def ccdf_figure(
         Heading.
     marks : sequence of (probability, level in dB), optional
         Levels written in; read off the first curve at 10 % ... 0.0001 % unless given.
+    spread : Spread, optional
+        Interval of the process that the first is a sample of.
     mean_dbm : float, optional
         Mean power of the first, dBm: then a second axis tells levels in dBm.
+    level_name : str
+        Of that axis.
     least : float, optional
         Lowest probability shown; as far as the first curve goes unless given.
 
@@ -110,46 +156,78 @@ def ccdf_figure(
     Figure
     """
     figure, (axes,) = new_figure(title)
-    first = curves[0]
-    seen = first.probability[first.probability > 0]
-    floor = least or min(10.0 ** np.floor(np.log10(max(float(seen.min(initial=1.0)), 1e-9))), 0.01)
+    floor = least or _floor(curves[0])
+    if spread is not None:
+        axes.fill_betweenx(
+            spread.probability,
+            spread.low_db,
+            spread.high_db,
+            color=stroke(0).colour,
+            alpha=0.25,
+            linewidth=0,
+            label=spread.name,
+        )
     for curve, style in zip(curves, _strokes(curves), strict=True):
-        drawn = curve.probability > 0
-        draw(axes, curve.level_db[drawn], curve.probability[drawn], style, label=curve.name)
-        if curve.low is not None and curve.high is not None:
-            axes.fill_between(
-                curve.level_db[drawn],
-                np.maximum(curve.low[drawn], floor / 10),
-                np.maximum(curve.high[drawn], floor / 10),
-                color=style.colour,
-                alpha=0.22,
-                linewidth=0,
-                label=f"{curve.name}, 95 % interval",
-            )
-    for chosen, level in _marks_of(first) if marks is None else marks:
+        _draw_curve(axes, curve, style, floor)
+    for chosen, level in _marks_of(curves[0]) if marks is None else marks:
         if chosen > floor:
             _mark(axes, chosen, level)
+    _scale_ccdf(axes, curves, floor)
+    if mean_dbm is not None:
+        absolute_axis(axes, mean_dbm, level_name)
+    legend(axes)
+    return figure
+
+
+def _floor(curve: CcdfCurve) -> float:
+    """Return the decade down to which a curve is shown: 0.01 % at least."""
+    least = float(curve.probability[curve.probability > 0].min(initial=1.0))
+    decade = 10.0 ** np.floor(np.log10(max(least, _LEAST_FLOOR)))
+    return float(min(decade, _HIGHEST_FLOOR))
+
+
+def _draw_curve(axes: Axes, curve: CcdfCurve, style: Stroke, floor: float) -> None:
+    drawn = curve.probability > 0
+    level, share = curve.level_db[drawn], curve.probability[drawn]
+    if curve.peak_db is not None and level.size:
+        inside = level < curve.peak_db
+        last = share[inside][-1] if inside.any() else 1.0
+        level = np.concatenate([level[inside], [curve.peak_db, curve.peak_db]])
+        share = np.concatenate([share[inside], [last, floor / 10]])
+    draw(axes, level, share, style, label=curve.name)
+    if curve.low is not None and curve.high is not None:
+        axes.fill_between(
+            curve.level_db[drawn],
+            np.maximum(curve.low[drawn], floor / 10),
+            np.maximum(curve.high[drawn], floor / 10),
+            color=style.colour,
+            alpha=0.25,
+            linewidth=0,
+            label="95 % interval",
+        )
+
+
+def _scale_ccdf(axes: Axes, curves: Sequence[CcdfCurve], floor: float) -> None:
+    """Fit both axes: room for what is written at the curves, and as far as they go."""
+    from matplotlib.ticker import LogLocator, NullFormatter
+
     axes.set_yscale("log")
     axes.set_ylim(floor, 1.0)
     axes.yaxis.set_major_formatter(lambda value, _: percent(value))
+    axes.yaxis.set_major_locator(LogLocator(numticks=12))
+    axes.yaxis.set_minor_locator(LogLocator(subs=(2, 5), numticks=12))
+    axes.yaxis.set_minor_formatter(NullFormatter())
     axes.grid(visible=True, which="minor", axis="y", color="#e7ebee", linewidth=0.5)
-    top = [end for curve in curves if (end := curve.level_at(floor)) is not None]
-    ends = [float(first.level_db[first.probability > 0].max(initial=0.0)), *top]
-    axes.set_xlim(min(_LOWEST_DB, min(ends) - 1), max(*ends, 3.0) + 1.0)
+    ends = []
+    for curve in curves:
+        if curve.kind != "reference":
+            seen = curve.level_db[curve.probability > floor]
+            ends.append(float(seen.max(initial=0.0)) if curve.peak_db is None else curve.peak_db)
+    left = min(_LOWEST_DB, min(ends) - 1)
+    right = max(*ends, 2.0)
+    axes.set_xlim(left, right + 0.14 * (right - left))
     axes.set_xlabel("level above the mean power, dB")
     axes.set_ylabel("share of time above the level")
-    if mean_dbm is not None:
-        second = axes.secondary_xaxis(
-            "top",
-            functions=(
-                lambda level: np.asarray(level) + mean_dbm,
-                lambda level: np.asarray(level) - mean_dbm,
-            ),
-        )
-        second.set_xlabel("level, dBm", fontsize=12, color=INK)
-        second.tick_params(labelsize=11, colors=INK)
-    legend(axes, place="lower left")
-    return figure
 
 
 def _marks_of(curve: CcdfCurve) -> list[tuple[float, float]]:
@@ -174,20 +252,28 @@ def _mark(axes: Axes, probability: float, level: float) -> None:
 
 
 def density_figure(
-    level_db: ArrayLike, pdf_per_db: ArrayLike, cdf: ArrayLike, *, title: str
+    level_db: ArrayLike,
+    pdf_per_db: ArrayLike,
+    cdf: ArrayLike,
+    *,
+    title: str,
+    mean_dbm: float | None = None,
+    level_name: str = "level, dBm",
 ) -> Figure:
     """Draw the PDF and the CDF of instantaneous power, side by side.
 
     Parameters
     ----------
     level_db : array, shape (n,)
-        Level above the mean, dB, rising.
+        Level above the mean, dB, rising in equal steps.
     pdf_per_db : array, shape (n,)
-        Density, 1/dB.
+        Density between a level and the next, 1/dB.
     cdf : array, shape (n,)
         Share of time at or below the level.
     title : str
         Heading.
+    mean_dbm, level_name
+        As in :func:`ccdf_figure`.
 
     Returns
     -------
@@ -195,27 +281,42 @@ def density_figure(
     """
     figure, (left, right) = new_figure(title, n_panels=2)
     level, share = np.asarray(level_db, np.float64), np.asarray(cdf, np.float64)
-    for axes, place, drawn, name in (
-        (
-            left,
-            condensed(level, _DENSITY_POINTS),
-            condensed(np.asarray(pdf_per_db, np.float64), _DENSITY_POINTS),
-            "density (PDF), 1/dB",
-        ),
-        (right, level, share, "share of time below the level (CDF)"),
-    ):
-        draw(axes, place, drawn, stroke(0), label=name.partition(" (")[0])
-        axes.fill_between(place, drawn, color=stroke(0).colour, alpha=0.08, linewidth=0)
-        axes.set_xlabel("level above the mean power, dB")
-        axes.set_ylabel(name)
-        axes.set_ylim(bottom=0)
-        axes.set_xlim(_span(level, share))
+    low, high = _span(level, share)
+    edges, density = _bars(level, np.asarray(pdf_per_db, np.float64), high - low)
+    left.stairs(density, edges, color=stroke(0).colour, linewidth=1.8, label="density")
+    left.stairs(density, edges, color=stroke(0).colour, alpha=0.12, fill=True)
+    left.set_ylabel(f"density (PDF) in steps of {edges[1] - edges[0]:.2g} dB, 1/dB")
+    draw(right, level, share, stroke(0), label="share of time below the level")
+    right.fill_between(level, share, color=stroke(0).colour, alpha=0.12, linewidth=0)
+    right.set_ylabel("share of time below the level (CDF)")
     right.yaxis.set_major_formatter(lambda value, _: percent(round(value, 6)))
+    for axes in (left, right):
+        axes.set_xlabel("level above the mean power, dB")
+        axes.set_ylim(bottom=0)
+        axes.set_xlim(low, high)
+        if mean_dbm is not None:
+            absolute_axis(axes, mean_dbm, level_name, n_ticks=6)
     return figure
 
 
+def _bars(
+    level: NDArray[np.float64], pdf: NDArray[np.float64], span_db: float
+) -> tuple[NDArray[np.float64], NDArray[np.float64]]:
+    """Return edges and heights of bars wide enough that a span holds 120 of them at most."""
+    step = float(level[1] - level[0]) if level.size > 1 else 1.0
+    factor = max(1, int(np.ceil(span_db / step / _MOST_BARS)))
+    whole = -(-level.size // factor) * factor
+    padded = np.zeros(whole)
+    padded[: pdf.size] = pdf
+    edges = level[0] + step * factor * np.arange(whole // factor + 1)
+    return edges, padded.reshape(-1, factor).mean(axis=1)
+
+
 def _span(level: NDArray[np.float64], cdf: NDArray[np.float64]) -> tuple[float, float]:
-    """Return the levels between which all but a thousandth lies."""
-    inside = level[(cdf > 1e-3) & (cdf < 1)]
-    low, high = (inside[0], inside[-1]) if inside.size else (level[0], level[-1])
-    return float(low) - 1.0, float(high) + 1.0
+    """Return the levels between which all but a thousandth lies, 6 dB apart at least."""
+    last = level.size - 1
+    first = np.searchsorted(cdf, max(1e-3, float(cdf[0])), side="right")
+    low = float(level[min(int(first), last)])
+    high = float(level[min(int(np.searchsorted(cdf, 1.0)), last)])
+    spare = max(1.0, (_LEAST_SPAN_DB - (high - low)) / 2)
+    return low - spare, high + spare

@@ -9,9 +9,11 @@ from typing import TYPE_CHECKING
 import numpy as np
 from numpy.typing import NDArray
 
+from wavegen.core.units import format_hz
 from wavegen.meters.spectrum import Spectrum
 from wavegen.reports.figures.look import (
     INK,
+    LIMIT,
     REFERENCE,
     SHADE,
     condensed,
@@ -26,7 +28,7 @@ if TYPE_CHECKING:
 
 _UNITS = ((1e9, "GHz"), (1e6, "MHz"), (1e3, "kHz"), (1.0, "Hz"))
 _MOST_POINTS = 2000
-_DEEPEST_DB = 130.0
+_DEEPEST_DB = 110.0
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -39,11 +41,14 @@ class Channel:
         Written above it.
     low_hz, high_hz : float
         Its edges.
+    remark : str
+        Below its name: its leakage.
     """
 
     name: str
     low_hz: float
     high_hz: float
+    remark: str = ""
 
 
 def frequency_unit(span_hz: float) -> tuple[float, str]:
@@ -55,6 +60,10 @@ def frequency_unit(span_hz: float) -> tuple[float, str]:
     (1000000.0, 'MHz')
     """
     return next((unit for unit in _UNITS if span_hz >= unit[0]), _UNITS[-1])
+
+
+def _rough_hz(value_hz: float) -> str:
+    return format_hz(float(f"{value_hz:.3g}"))
 
 
 def spectrum_figure(
@@ -93,13 +102,15 @@ def spectrum_figure(
             condensed(spectrum.frequencies_hz, _MOST_POINTS) / unit,
             level,
             stroke(number),
-            label=f"{name}, resolution {spectrum.noise_bandwidth_hz / 1e3:.3g} kHz",
+            label=f"{name}, resolution {_rough_hz(spectrum.noise_bandwidth_hz)}",
         )
         top = max(top, float(level.max()))
     for channel in channels:
         axes.axvspan(channel.low_hz / unit, channel.high_hz / unit, facecolor=SHADE, zorder=0)
+        for edge in (channel.low_hz, channel.high_hz):
+            axes.axvline(edge / unit, color=REFERENCE.colour, linewidth=0.9, zorder=0)
         axes.annotate(
-            channel.name,
+            f"{channel.name}\n{channel.remark}".rstrip(),
             ((channel.low_hz + channel.high_hz) / 2 / unit, 1.0),
             xycoords=("data", "axes fraction"),
             xytext=(0, -3),
@@ -110,10 +121,14 @@ def spectrum_figure(
             color=INK,
         )
     if mask is not None:
-        draw(axes, mask[0] / unit, mask[1], REFERENCE, label="limit")
+        draw(axes, mask[0] / unit, mask[1], LIMIT, label="limit")
     axes.set_xlim(-widest / 2 / unit, widest / 2 / unit)
-    axes.set_ylim(max(axes.get_ylim()[0], top - _DEEPEST_DB), top + 12)
+    low = axes.get_ylim()[0]
+    if mask is not None:
+        top, low = max(top, float(mask[1].max())), min(low, float(mask[1].min()) - 5)
+    bottom = max(low, top - _DEEPEST_DB)
+    axes.set_ylim(bottom, top + 0.06 * (top - bottom) * (4 if channels else 2))
     axes.set_xlabel(f"frequency from the centre, {unit_name}")
     axes.set_ylabel("power density over the total power, dBc/Hz")
-    legend(axes, place="lower center")
+    legend(axes)
     return figure

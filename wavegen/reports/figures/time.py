@@ -9,15 +9,28 @@ import numpy as np
 from wavegen.core.signal import Samples
 from wavegen.core.units import format_s
 from wavegen.meters.envelope import Envelope
-from wavegen.reports.figures.look import INK, SHADE, draw, legend, new_figure, stroke
+from wavegen.reports.figures.look import (
+    INK,
+    SHADE,
+    absolute_axis,
+    draw,
+    legend,
+    new_figure,
+    note,
+    stroke,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
 _UNITS = ((1.0, "s"), (1e-3, "ms"), (1e-6, "µs"), (1e-9, "ns"))
 _LOWEST_DB = -40.0
+_LEAST_SPAN_DB = 10.0
+_STRIP = (0.965, 0.035)
+"""Where the bar of on-times stands, and how high it is, over the height of the axes."""
 
 
 def time_unit(span_s: float) -> tuple[float, str]:
@@ -32,7 +45,12 @@ def time_unit(span_s: float) -> tuple[float, str]:
 
 
 def envelope_figure(
-    envelope: Envelope, *, title: str, on_times_s: Sequence[tuple[float, float]] = ()
+    envelope: Envelope,
+    *,
+    title: str,
+    on_times_s: Sequence[tuple[float, float]] = (),
+    mean_dbm: float | None = None,
+    level_name: str = "level, dBm",
 ) -> Figure:
     """Draw power against time: mean and span in each of many short stretches.
 
@@ -43,7 +61,11 @@ def envelope_figure(
     title : str
         Heading.
     on_times_s : sequence of (float, float)
-        When the signal is on, s; shaded.
+        When the signal is on, s; shaded, with a bar above.
+    mean_dbm : float, optional
+        Mean power, dBm: then a second axis tells levels in dBm.
+    level_name : str
+        Of that axis.
 
     Returns
     -------
@@ -57,18 +79,19 @@ def envelope_figure(
     def over_mean(power: np.ndarray) -> np.ndarray:
         return 10 * np.log10(np.maximum(power / mean, 10 ** (_LOWEST_DB / 10)))
 
-    for start, stop in on_times_s:
-        axes.axvspan(start / unit, stop / unit, facecolor=SHADE, edgecolor="none", zorder=0)
+    highest, lowest = over_mean(envelope.highest), over_mean(envelope.lowest)
+    if on_times_s:
+        _shade(axes, [(start / unit, stop / unit) for start, stop in on_times_s])
     axes.stairs(
-        over_mean(envelope.highest),
+        highest,
         edges,
-        baseline=over_mean(envelope.lowest),
+        baseline=lowest,
         fill=True,
         color=stroke(0).colour,
-        alpha=0.30,
+        alpha=0.38,
         label="from the least to the largest",
     )
-    each = format_s(envelope.duration_s / envelope.mean.size)
+    each = format_s(float(f"{envelope.duration_s / envelope.mean.size:.3g}"))
     axes.stairs(
         over_mean(envelope.mean),
         edges,
@@ -77,12 +100,33 @@ def envelope_figure(
         linewidth=1.6,
         label=f"mean of each {each}",
     )
+    top = float(highest.max()) + (4.0 if on_times_s else 2.0)
+    bottom = float(lowest.min())
+    is_cut = bottom <= _LOWEST_DB
     axes.set_xlim(0, envelope.duration_s / unit)
-    axes.set_ylim(bottom=max(_LOWEST_DB, float(over_mean(envelope.lowest).min()) - 2))
+    axes.set_ylim(_LOWEST_DB if is_cut else min(bottom - 2, top - _LEAST_SPAN_DB), max(top, 3.0))
     axes.set_xlabel(f"time, {name}")
     axes.set_ylabel("power over the mean, dB")
-    legend(axes, place="lower right")
+    if is_cut:
+        note(axes, f"what lies below {_LOWEST_DB:g} dB is drawn there")
+    if mean_dbm is not None:
+        absolute_axis(axes, mean_dbm, level_name, along="y")
+    legend(axes)
     return figure
+
+
+def _shade(axes: Axes, on_times: Sequence[tuple[float, float]]) -> None:
+    """Shade when a signal is on, and draw a bar above that grey print shows too."""
+    for start, stop in on_times:
+        axes.axvspan(start, stop, facecolor=SHADE, edgecolor="none", zorder=0)
+    axes.broken_barh(
+        [(start, stop - start) for start, stop in on_times],
+        _STRIP,
+        transform=axes.get_xaxis_transform(),
+        facecolor=INK,
+        linewidth=0,
+        label=f"on: {len(on_times)} times" if len(on_times) > 1 else "on",
+    )
 
 
 def seam_picture(
@@ -130,8 +174,14 @@ def seam_picture(
         fontsize=11,
         color=INK,
     )
+    rails = np.concatenate([around.real, around.imag])
+    low, high = float(rails.min(initial=0.0)), float(rails.max(initial=0.0))
+    room = 0.06 * (high - low or 1.0)
     axes.set_xlim(place[0], place[-1])
-    axes.set_xlabel(f"time from the seam, {name}" + (f"   ({verdict})" if verdict else ""))
+    axes.set_ylim(low - room, high + 2.5 * room)  # above: what is written there
+    axes.set_xlabel(f"time from the seam, {name}")
     axes.set_ylabel("sample, full scale 1")
-    legend(axes, place="lower right")
+    if verdict:
+        note(axes, f"Loop seam: {verdict}")
+    legend(axes)
     return figure

@@ -90,7 +90,7 @@ def front_figure(
         "EVM, % of the RMS signal" + ("   (shaded: over the limit)" if evm_limit_percent else "")
     )
     axes.set_ylabel(level_name)
-    legend(axes, place="upper right")
+    legend(axes)
     return figure
 
 
@@ -100,6 +100,7 @@ def gain_figure(
     title: str,
     input_name: str = "input level, dB over the input mean",
     compression_db: float | None = None,
+    unit: str = "dB",
 ) -> Figure:
     """Draw a device's gain against its input level.
 
@@ -111,6 +112,8 @@ def gain_figure(
         Heading, and what the level is over.
     compression_db : float, optional
         Input level of the 1 dB compression point.
+    unit : str
+        Of input levels.
 
     Returns
     -------
@@ -135,7 +138,7 @@ def gain_figure(
     if compression_db is not None:
         axes.axvline(compression_db, color=stroke(1).colour, linewidth=1.6, linestyle=(0, (6, 2)))
         axes.annotate(
-            f"1 dB compressed at {compression_db:.2f} dB",
+            f"1 dB compressed at {compression_db:.2f} {unit}",
             (compression_db, 0.02),
             xycoords=("data", "axes fraction"),
             xytext=(-6, 0),
@@ -146,5 +149,5 @@ def gain_figure(
         )
     axes.set_xlabel(input_name)
     axes.set_ylabel("gain, dB")
-    legend(axes, place="lower left")
+    legend(axes)
     return figure

@@ -14,6 +14,7 @@ from wavegen.core.errors import ArgumentsError
 from wavegen.core.table import Table
 from wavegen.reports.figures.look import INSTALL, rendered
 from wavegen.reports.figures.picture import Picture
+from wavegen.reports.inert import inert
 from wavegen.reports.pages.readings import readings_of
 
 if TYPE_CHECKING:
@@ -156,6 +157,12 @@ def _template() -> Template:
             allowed="an installation with the extra `reports`",
             remedy=f"Run: {INSTALL}",
         ) from error
-    environment = Environment(autoescape=True, undefined=StrictUndefined, trim_blocks=True)
+    environment = Environment(
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        # Markup is what this program made itself; all else may come from files.
+        finalize=lambda value: value if isinstance(value, Markup) else inert(str(value)),
+    )
     environment.filters["own"] = Markup  # what this program wrote itself: style, script, drawings
     return environment.from_string(_text("page.html"))

@@ -8,6 +8,8 @@ from typing import TYPE_CHECKING, Any
 import numpy as np
 from numpy.typing import NDArray
 
+from wavegen.reports.inert import one_line
+
 if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
@@ -79,7 +81,7 @@ def _curves(axes: Axes) -> list[dict[str, Any]]:
             found.append((patch.get_label(), middle, np.asarray(values, np.float64)))
     curves = []
     for label, x, y in found:
-        name = str(label)
+        name = one_line(str(label))
         if name and not name.startswith("_") and x.size > 1 and np.all(np.diff(x) >= 0):
             chosen = np.unique(np.linspace(0, x.size - 1, min(x.size, _MOST_POINTS)).astype(int))
             curves.append({"name": name, "x": _short(x[chosen]), "y": _short(y[chosen])})

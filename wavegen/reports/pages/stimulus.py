@@ -43,7 +43,7 @@ def stimulus_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page
         ),
         Section(
             heading="Waveform",
-            pictures=tuple(item for item in pictures if item.name != "ccdf"),
+            pictures=_others(pictures, "ccdf"),
         ),
     ]
     if bench:
@@ -80,7 +80,7 @@ def measurement_page(document: dict[str, Any], pictures: Sequence[Picture]) -> P
             ),
             Section(
                 heading="Waveform",
-                pictures=tuple(item for item in pictures if item.name != "ccdf"),
+                pictures=_others(pictures, "ccdf"),
             ),
         ),
         origin=_origin(document),
@@ -88,7 +88,11 @@ def measurement_page(document: dict[str, Any], pictures: Sequence[Picture]) -> P
 
 
 def _named(pictures: Sequence[Picture], name: str) -> tuple[Picture, ...]:
-    return tuple(item for item in pictures if item.name == name)
+    return tuple(item for item in pictures if item.name.partition("-")[0] == name)
+
+
+def _others(pictures: Sequence[Picture], name: str) -> tuple[Picture, ...]:
+    return tuple(item for item in pictures if item.name.partition("-")[0] != name)
 
 
 def _peak_words(document: dict[str, Any]) -> str:
