@@ -82,6 +82,32 @@ def test_words_in_and_out(call, tmp_path):
     np.testing.assert_array_equal(found, codes * 16)
 
 
+def test_real_output_and_back(call, made, tmp_path):
+    options = ("--to", "wav", "--real-centre", "1.00001 MHz")
+    said = call("convert", made, *options)
+    assert said.status == 0
+    assert "complex to real around 1 MHz" in said.out
+    assert "moved by -10 Hz" in said.err
+    assert "around 1 MHz" in call("show", tmp_path / "output" / "pier-wav" / "pier-wav.wav").out
+    real = tmp_path / "output" / "pier-wav" / "pier-wav.wav"
+    said = call("convert", real, "--to", "sigmf", "--datatype", "ci16_le")
+    assert (said.status, "moved from 1 MHz to 0 Hz" in said.err) == (0, True)
+    assert "real around 1 MHz to complex" in said.out
+    assert call("check", tmp_path / "output" / "pier-wav-sigmf").status == 0
+    shutil.copy(real, tmp_path / "field.wav")
+    told = ("--input-real-centre", "1MHz")
+    said = call("convert", "field.wav", "--to", "npy", "--real-centre", "0.9MHz", *told)
+    words = " ".join(said.out.split())
+    assert (said.status, "real around 1 MHz to real around 900 kHz" in words) == (0, True)
+    for more, status in (
+        (("--real-centre", "1MHz"), 2),
+        (("--input-real-centre", "3MHz", "--datatype", "cf32_le"), 2),
+        (("--input-real-centre", "1"), 2),
+    ):
+        assert call("convert", "field.wav", "--to", "npy", "--name", "x", *more).status == status
+    assert not (tmp_path / "output" / "x").exists()
+
+
 def test_what_exists_and_what_is_read_stay(call, made):
     assert call("convert", made, "--to", "wav").status == 0
     assert call("convert", made, "--to", "wav").status == 4

@@ -1,7 +1,7 @@
 import numpy as np
 import pytest
 
-from wavegen.core.excerpt import excerpt
+from wavegen.core.excerpt import excerpt, padded
 from wavegen.core.render import samples_of
 
 
@@ -37,3 +37,13 @@ def test_the_source_is_left_alone(lab):
     got = cut.compute(0, 45, array)
     got[:] = 0
     assert array.tobytes() == samples_of(cut).tobytes()
+
+
+def test_zeros_stand_after_the_end_and_before_the_start(lab):
+    source = lab.white(1_000)
+    longer = padded(source, 1_300)
+    want = np.concatenate([lab.direct_white(1_000)[np.arange(1_000)], np.zeros(300, np.complex64)])
+    assert longer.n_samples == 1_300
+    assert samples_of(longer).tobytes() == want.tobytes()
+    assert samples_of(longer, -200, 100).tobytes() == np.roll(want, 200)[:300].tobytes()
+    assert samples_of(longer, 1_100, 1_200).tobytes() == bytes(800)

@@ -13,6 +13,7 @@ from wavegen.files.analytic import (
     EDGE_SAMPLES,
     IMAGE_DB,
     PASSBAND_EDGE,
+    analytic_recording,
     as_complex,
     hilbert_taps,
     looped,
@@ -113,3 +114,12 @@ def test_an_offset_stays_an_offset(tmp_path):
     samples = real_file(tmp_path, np.full(N, 0.25)).signal.compute(0, N)
     middle = samples[EDGE_SAMPLES:-EDGE_SAMPLES]
     np.testing.assert_allclose(middle, 0.25, atol=FLOAT)
+
+
+@pytest.mark.parametrize("n", [N, 100])
+def test_a_recording_made_analytic_is_as_one_that_is_read(tmp_path, n):
+    read = real_file(tmp_path, tone(0.123, n)).signal
+    made = analytic_recording(read.source)
+    assert made.n_samples == n
+    samples = evaluate({made: (0, n)})[made]
+    np.testing.assert_allclose(samples, read.compute(0, n), atol=FLOAT)

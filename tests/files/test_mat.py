@@ -11,7 +11,7 @@ import pytest
 from scipy.io import loadmat, savemat
 
 from wavegen.core.errors import FileError
-from wavegen.files.datatypes import CF32_LE
+from wavegen.files.datatypes import CF32_LE, RF32_LE
 from wavegen.files.format import FileFacts, ReadHints
 from wavegen.files.mat import MOST_SAMPLES, Mat
 from wavegen.files.read import open_recording
@@ -38,6 +38,21 @@ def write(folder, *, n_channels=1, title="Träger"):
     writer.finish()
     writer.close()
     return path, codes
+
+
+def test_real_samples_have_a_name_of_their_own(tmp_path):
+    form, path = Mat(), tmp_path / "x.mat"
+    facts = FileFacts(sample_rate_hz=RATE, n_samples=9, datatype=RF32_LE, title="real")
+    codes = np.arange(9, dtype="<f4").reshape(9, 1)
+    writer = form.writer((path,), facts)
+    writer.write(codes)
+    writer.finish()
+    found = loadmat(path)
+    assert "iq" not in found
+    np.testing.assert_array_equal(found["samples"], codes)
+    recording = open_recording(path)
+    assert (recording.is_real, recording.sample_rate_hz) == (True, RATE)
+    np.testing.assert_array_equal(recording.signal.compute(0, 9).real, codes[:, 0])
 
 
 @pytest.mark.parametrize("n_channels", [1, 2])

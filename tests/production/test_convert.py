@@ -11,7 +11,9 @@ from wavegen.files.format import ReadHints
 from wavegen.files.read import open_recording
 from wavegen.production import convert as room
 from wavegen.production.check import check
-from wavegen.production.convert import Conversion, convert
+from wavegen.production.conversion import Conversion
+from wavegen.production.convert import convert
+from wavegen.production.judgement import Question
 from wavegen.production.sidecar import schema
 from wavegen.production.stimulus import find_stimulus
 
@@ -283,27 +285,254 @@ def test_a_stimulus_of_real_samples_goes_round(lab, tmp_path):
     assert check(find_stimulus(done.folder))["verdict"] == "match"
 
 
-def test_one_of_two_channels_is_a_recording(lab, tmp_path):
-    second = "second_channel: {signal: {kind: noise, bandwidth: 1 MHz}}\n"
-    made = lab.make(lab.TONES + second, tmp_path / "a")
-    with pytest.raises(FileError, match="channel"):
-        run(made.files[0], tmp_path / "b", format="wav")
-    done = run(made.files[0], tmp_path / "b", ReadHints(channel=1), format="wav")
+TWO = (
+    "second_channel: {level: 2 dB, signal: {kind: tones, count: 4, spacing: 10 kHz},"
+    " stages: [{kind: gate, duty: 25 %, period: 0.5 ms}]}\n"
+)
+
+
+@pytest.fixture
+def pair(lab, tmp_path):
+    """Tones, and at 2 dB over them gated tones."""
+    bench = BENCH.replace("LIMIT", "20")
+    return lab.make(lab.TONES + TWO + bench + "output: {iq: [sigmf, raw]}\n", tmp_path / "a")
+
+
+def channel(path, number):
+    found = open_recording(path, ReadHints(channel=number, sample_rate_hz=Fraction(4_000_000)))
+    return found.signal.compute(0, found.n_samples)
+
+
+@pytest.mark.parametrize("name", FORMATS)
+@pytest.mark.parametrize("source", ["case.sigmf-data", "case.ci16_le"])
+def test_two_channels_stay_together(pair, tmp_path, source, name):
+    done = run(pair.folder / source, tmp_path / "b", format=name)
+    document, before = done.document, pair.document
+    assert is_valid(document)
+    for number in (0, 1):
+        np.testing.assert_array_equal(
+            channel(done.files[0], number), channel(pair.files[0], number)
+        )
+    for key in ("loop", "mean", "scaling"):
+        assert document["second_channel"][key].keys() == before["second_channel"][key].keys()
+    own = "rounding_noise_dbc"  # the same codes, but none where floats are written
+    for old, new in zip(
+        before["files"][0]["channels"], document["files"][0]["channels"], strict=True
+    ):
+        assert old == new | {own: new[own] or old[own]}
+    assert document["law"]["verdict"] == "agrees"
+    assert document["second_channel"]["law"]["name"] == before["second_channel"]["law"]["name"]
+    assert document["second_channel"]["mean"] == before["second_channel"]["mean"]
+    assert document["bench"] == before["bench"]
+    assert document["converted"]["channel"] is None
+    checked = check(find_stimulus(done.folder))
+    assert checked["verdict"] == "match"
+    assert len(checked["files"][0]["against_law"]["channels"]) == 2
+
+
+def test_two_channels_keep_one_scale(pair, tmp_path):
+    done = run(
+        pair.files[0],
+        tmp_path / "b",
+        format="sigmf",
+        datatype="cf32_le",
+        peak_dbfs=-6.0,
+        sample_rate_hz=Fraction(6_000_000),
+    )
+    first, second = done.document["files"][0]["channels"]
+    peaks = [item["peak_between_samples_dbfs"] for item in (first, second)]
+    assert max(peaks) == pytest.approx(-6, abs=1e-3)
+    # a pulse of hard edges is not kept exactly by a change of rate: its own mean moves by 0.02 dB
+    old = pair.document["files"][0]["channels"]
+    between = [rows[1]["mean_dbfs"] - rows[0]["mean_dbfs"] for rows in (old, [first, second])]
+    assert between[1] == pytest.approx(between[0], abs=0.05)
+    assert second["on_time"]["duty"] == 0.25
+    assert done.document["second_channel"]["loop"]["cycle_samples"] == (
+        pair.document["second_channel"]["loop"]["cycle_samples"] * 1.5
+    )
+    assert is_valid(done.document)
+
+
+@pytest.mark.parametrize("number", [0, 1])
+def test_one_of_two_channels_is_a_stimulus(pair, tmp_path, number):
+    hints = ReadHints(channel=number)
+    done = run(pair.files[0], tmp_path / "b", hints, format="wav", gain_db=-1)
+    document = done.document
+    assert is_valid(document)
+    assert document["second_channel"] is None
+    assert document["converted"]["channel"] == number
+    old = pair.document["files"][0]["channels"][number]
+    law = pair.document["second_channel"]["law"] if number else pair.document["law"]
+    assert document["law"]["name"] == law["name"]
+    assert document["law"]["level_db"] == law["level_db"]
+    assert (document["on_time"] is None) == (old["on_time"] is None)
+    assert document["papr_db"] == pytest.approx(old["papr_db"], abs=1e-3)
+    scaling = (pair.document["second_channel"] if number else pair.document)["scaling"]
+    assert document["scaling"]["i_peak_dbfs"] == pytest.approx(scaling["i_peak_dbfs"] - 1)
+    (row,) = document["bench"]["path"]
+    assert "channel" not in row
+    assert row["average_dbm"] == pair.document["bench"]["path"][number]["average_dbm"]
+    assert check(find_stimulus(done.folder), question=Question(down_to=0.01))["verdict"] == "match"
+
+
+def test_what_was_one_of_two_stays_so(pair, tmp_path):
+    """Taken, then converted and checked again: law and on-time are those of its channel."""
+    one = run(pair.files[0], tmp_path / "b", ReadHints(channel=1), format="wav")
+    again = run(one.files[0], tmp_path / "c", format="npy", sample_rate_hz=Fraction(8_000_000))
+    assert again.document["on_time"]["duty"] == 0.25
+    assert again.document["converted"]["before"]["channel"] == 1
+    marks = (again.folder / "case-wav-npy.markers.csv").read_text().splitlines()
+    assert marks[1:4] == ["0,1000,burst on", "0,16000,period start", "4000,1000,burst on"]
+    changed = one.folder / "case-wav.wav"
+    content = bytearray(changed.read_bytes())
+    content[-1] ^= 1
+    changed.write_bytes(content)
+    (row,) = check(find_stimulus(one.folder))["files"]
+    (against,) = row["against_law"]["channels"]
+    assert against["verdict"] != "differs"  # as it would from the law of the other channel
+
+
+def test_a_recipe_with_fewer_channels_than_its_files(pair, tmp_path):
+    path = pair.folder / "case.ccdf.json"
+    document = json.loads(path.read_text())
+    text = document["recipe"]["text"]
+    document["recipe"]["text"] = text.replace(TWO, "")
+    path.write_text(json.dumps(document))
+    done = run(pair.files[0], tmp_path / "b", ReadHints(channel=1), format="wav")
+    assert any("cannot be built" in note["text"] for note in done.document["warnings"])
+
+
+def test_two_channels_of_a_recording(pair, tmp_path):
+    (pair.folder / "case.ccdf.json").unlink()
+    done = run(pair.files[0], tmp_path / "b", format="wav")
     assert done.document["is"] == "a recording"
-    figures = made.document["files"][0]["channels"][1]
-    assert done.document["papr_db"] == figures["papr_db"]
+    assert len(done.document["files"][0]["channels"]) == 2
+    for number in (0, 1):
+        np.testing.assert_array_equal(
+            channel(done.files[0], number), channel(pair.files[0], number)
+        )
+    one = run(done.files[0], tmp_path / "c", ReadHints(channel=1), format="npy")
+    np.testing.assert_array_equal(samples_at(one.files[0], 4_000_000), channel(pair.files[0], 1))
+    assert one.document["converted"]["channel"] == 1
+
+
+NARROW = "symbol_rate: 0.5 MHz"
+
+
+@pytest.mark.parametrize("name", FORMATS)
+def test_real_output_is_what_make_writes(lab, tmp_path, name):
+    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW)
+    both = f"output: {{iq: [sigmf, {{format: {name}, name: real, real: {{centre: 1 MHz}}}}]}}\n"
+    made = lab.make(text + both, tmp_path / "a")
+    stated = made.document["files"][1]
+    done = run(
+        made.files[0],
+        tmp_path / "b",
+        format=name,
+        datatype=stated["datatype"],
+        real_centre_hz=Fraction(1_000_000),
+    )
+    (found,) = done.document["files"]
+    assert found["real"] == stated["real"] == {"centre_hz": 1e6}
+    assert is_valid(done.document)
+    for key in ("mean_dbfs", "peak_dbfs", "peak_between_samples_dbfs"):
+        assert found[key] == pytest.approx(stated[key], abs=1e-3)
+    assert done.document["loop"]["seam"]["is_clean"]
+    assert check(find_stimulus(done.folder))["verdict"] == "match"
+    # the codes of `make` are rounded once, those of a conversion twice: one code apart at most
+    real = [
+        open_recording(path, ReadHints(sample_rate_hz=Fraction(4_000_000)))
+        for path in (made.folder / stated["name"], done.files[0])
+    ]
+    first, second = (item.signal.compute(0, item.n_samples).real for item in real)
+    assert np.abs(first - second).max() <= 1.01 / 32768
+
+
+def test_real_and_back_is_the_baseband(lab, tmp_path):
+    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW) + FLOAT
+    made = lab.make(text, tmp_path / "a")
+    away = run(made.files[0], tmp_path / "b", format="npy", real_centre_hz=Fraction(1_100_000))
+    assert away.document["files"][0]["datatype"] == "rf32_le"
+    assert away.document["converted"]["real"] == {"from_hz": None, "to_hz": 1.1e6}
+    moved = run(
+        away.files[0],
+        tmp_path / "c",
+        format="npy",
+        sample_rate_hz=Fraction(5_000_000),
+        real_centre_hz=Fraction(1_300_000),
+    )
+    assert moved.document["converted"]["real"] == {"from_hz": 1.1e6, "to_hz": 1.3e6}
+    back = run(
+        moved.files[0],
+        tmp_path / "d",
+        format="sigmf",
+        datatype="cf32_le",
+        sample_rate_hz=Fraction(4_000_000),
+    )
+    # images 100 dB down, two changes of rate whose ripple is 1e-5, float32 samples
+    assert np.abs(samples(back.files[0]) - samples(made.files[0])).max() < 4e-5
+    assert back.document["files"][0]["real"] is None
+    assert any("1.3 MHz to 0 Hz" in note["text"] for note in back.document["notes"])
+    assert is_valid(back.document)
+
+
+def test_real_samples_stay_real_byte_by_byte(lab, tmp_path):
+    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW)
+    made = lab.make(text + "output: {iq: [{format: raw, real: {centre: 1 MHz}}]}\n", tmp_path / "a")
+    done = run(made.files[0], tmp_path / "b", format="wav")
+    again = run(done.files[0], tmp_path / "c", format="raw")
+    assert again.files[0].read_bytes() == made.files[0].read_bytes()
+    assert again.document["files"][0]["real"] == {"centre_hz": 1e6}
+
+
+def test_a_real_recording_is_measured_without_going_round(tmp_path):
+    """A tone of 2.5 cycles a recording: round it would jump."""
+    path = tmp_path / "tone.cf32_le"
+    n = np.arange(4000)
+    (0.5 * np.exp(2j * np.pi * 2.5 * n / 4000)).astype("<c8").tofile(path)
+    hints = ReadHints(sample_rate_hz=Fraction(1_000_000))
+    done = run(path, tmp_path / "b", hints, format="wav", real_centre_hz=Fraction(200_001))
+    found = open_recording(done.files[0]).signal.compute(0, 4000)
+    exact = 0.5 * np.exp(2j * np.pi * n * (2.5 / 4000 + 0.200001))
+    np.testing.assert_allclose(found.real, exact.real, atol=1e-6)
+    np.testing.assert_allclose(found[400:-400], exact[400:-400], atol=1e-5)
+    (row,) = done.document["files"]
+    assert row["real"] == {"centre_hz": 200_001}
+    # the envelope as it is read again: zeros beyond the ends
+    power = np.abs(found) ** 2
+    assert row["mean_dbfs"] == pytest.approx(10 * np.log10(power.mean()), abs=1e-4)
+
+
+def test_the_centre_frequency_moves_along(tmp_path):
+    path = tmp_path / "x.sigmf-meta"
+    np.exp(2j * np.pi * np.arange(1000) / 1000).astype("<c8").tofile(tmp_path / "x.sigmf-data")
+    fields = {"core:datatype": "cf32_le", "core:sample_rate": 1e6, "core:version": "1.2.5"}
+    capture = {"core:sample_start": 0, "core:frequency": 100e6}
+    path.write_text(json.dumps({"global": fields, "captures": [capture], "annotations": []}))
+    done = run(path, tmp_path / "b", format="sigmf", real_centre_hz=Fraction(250_000), gain_db=-1)
+    assert open_recording(done.files[0]).centre_frequency_hz == 99.75e6
+    back = run(
+        done.files[0],
+        tmp_path / "c",
+        format="sigmf",
+        datatype="cf32_le",
+        input_real_centre_hz=Fraction(250_000),
+    )
+    assert open_recording(back.files[0]).centre_frequency_hz == 100e6
 
 
 def test_real_samples_become_their_envelope(tmp_path):
-    """A real carrier of amplitude a half has the envelope a half."""
+    """A real carrier of amplitude a half has the envelope a half; where it stands is not known."""
     import soundfile
 
     n = np.arange(20_000)
     soundfile.write(tmp_path / "real.wav", 0.5 * np.cos(2 * np.pi * n / 8), 48_000, "PCM_16")
-    done = run(tmp_path / "real.wav", tmp_path / "b", format="sigmf")
-    assert done.document["files"][0]["datatype"] == "ci16_le"
+    done = run(tmp_path / "real.wav", tmp_path / "b", format="sigmf", datatype="ci16_le")
     inside = samples(done.files[0])[1000:-1000]
-    np.testing.assert_allclose(np.abs(inside), 0.5, atol=1e-4)
+    exact = 0.5 * np.exp(2j * np.pi * n[1000:-1000] / 8)
+    np.testing.assert_allclose(inside, exact, atol=1e-4)
+    (note,) = [note for note in done.document["notes"] if "analytic" in note["text"]]
+    assert "--input-real-centre" in note["text"]
 
 
 def test_codes_that_would_be_cut_are_refused(recording, tmp_path):
@@ -331,6 +560,10 @@ def test_full_scale_itself_is_cut_by_one_code_and_told(tmp_path):
     [
         ({"format": "wavv"}, "--to"),
         ({"format": "wav", "datatype": "ri16_le"}, "--datatype"),
+        ({"format": "wav", "datatype": "cf32_le", "real_centre_hz": Fraction(10**6)}, "--datatype"),
+        ({"format": "wav", "real_centre_hz": Fraction(2_000_000)}, "--real-centre"),
+        ({"format": "wav", "real_centre_hz": Fraction(10_000)}, "--real-centre"),
+        ({"format": "wav", "input_real_centre_hz": Fraction(10_000)}, "--input-real-centre"),
         ({"format": "wav", "peak_dbfs": 0.1}, "--peak"),
         ({"format": "wav", "peak_dbfs": float("-inf")}, "--peak"),
         ({"format": "wav", "gain_db": 1e9}, "--gain"),

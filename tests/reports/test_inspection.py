@@ -52,6 +52,12 @@ def test_a_conversion():
     assert same == "from a.wav (wav ci16_le)"
     other = converted_words(converted | {"rate_factor": "3/2", "gain_db": -1.0})
     assert other.endswith(", rate x 3/2, gain -1.000 dB")
+    real = converted_words(
+        converted
+        | {"rate_factor": "1", "gain_db": 0.0, "channel": 1}
+        | {"real": {"from_hz": None, "to_hz": 3e7}}
+    )
+    assert real.endswith("), channel 1, complex to real around 30 MHz")
 
 
 CURVE = {
@@ -96,6 +102,7 @@ RECORDING = {
     "n_channels": 2,
     "channel": 1,
     "is_real": False,
+    "real_centre_hz": None,
     "is_power": False,
     "sample_rate_hz": 1e6,
     "n_samples": 1000,
@@ -119,6 +126,8 @@ def test_a_recording():
     assert "not stated" in said["level"]
     assert "law" not in said
     assert "title" not in said
+    centred = RECORDING | {"is_real": True, "labels": {}, "real_centre_hz": 30e6}
+    assert "around 30 MHz" in dict(facts_table(centred).rows)["holds"]
     real = dict(facts_table(RECORDING | {"is_real": True, "labels": {}}).rows)
     assert "analytic" in real["holds"]
     assert real["annotations"] == "none"

@@ -3,11 +3,15 @@
 from __future__ import annotations
 
 import argparse
+from collections.abc import Sequence
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from wavegen.cli.console import Console, ConsoleProgress
 from wavegen.cli.options import add_reading, add_workers, hints_of, level_dbfs, rate, ratio_db
+
+if TYPE_CHECKING:
+    from wavegen.core.site import Note
 
 DIFFERS = 5
 
@@ -21,7 +25,10 @@ class Convert:
         "describes: it is written with a new sidecar, measured on the new codes. Any\n"
         "other file is a recording. --sample-rate is the rate of the output; a file that\n"
         "does not say its own rate is taken to have it already, unless\n"
-        "--input-sample-rate says another."
+        "--input-sample-rate says another. Two channels stay together, on one scale,\n"
+        "unless --channel names one. Real samples stay real unless a complex datatype is\n"
+        "asked for; then they become complex baseband where their intermediate frequency\n"
+        "is known, else their analytic signal around it."
     )
 
     @staticmethod
@@ -37,6 +44,18 @@ class Convert:
         )
         parser.add_argument(
             "--align", choices=("left", "right"), help="where shorter words shall stand"
+        )
+        parser.add_argument(
+            "--real-centre",
+            type=rate,
+            metavar="FREQUENCY",
+            help="real samples around this intermediate frequency, such as 30MHz",
+        )
+        parser.add_argument(
+            "--input-real-centre",
+            type=rate,
+            metavar="FREQUENCY",
+            help="where the carrier of a file of real samples stands (default: by its sidecar)",
         )
         level = parser.add_mutually_exclusive_group()
         level.add_argument(
@@ -63,13 +82,16 @@ class Convert:
         from wavegen.core.allocation import keep_large_blocks
 
         keep_large_blocks()
-        from wavegen.production.convert import Conversion, convert
+        from wavegen.production.conversion import Conversion
+        from wavegen.production.convert import convert
 
         wanted = Conversion(
             format=arguments.to,
             datatype=arguments.datatype,
             bits=arguments.bits,
             align=arguments.align,
+            real_centre_hz=arguments.real_centre,
+            input_real_centre_hz=arguments.input_real_centre,
             peak_dbfs=arguments.peak,
             gain_db=arguments.gain or 0.0,
             sample_rate_hz=arguments.sample_rate,
@@ -92,17 +114,26 @@ class Convert:
         if arguments.json:
             console.document(document)
         else:
-            show(document, console)
+            show(document, [note for note in made.notes if note.kind != "warning"], console)
         return DIFFERS if made.differs else 0
 
 
-def show(document: dict[str, Any], console: Console) -> None:
-    """Print one conversion."""
+def show(document: dict[str, Any], notes: Sequence[Note], console: Console) -> None:
+    """Print one conversion: its own notes, and the warnings that go along with the file."""
     from wavegen.reports.inspection import converted_words
-    from wavegen.reports.tables import file_table, level_table, summary_table, verdict_lines
+    from wavegen.reports.tables import (
+        channel_table,
+        file_table,
+        level_table,
+        summary_table,
+        verdict_lines,
+    )
 
-    for note in document["warnings"]:
-        console.warn(f"{note['where']}: {note['text']}")
+    for note in notes:
+        change = f" (asked {note.asked}, got {note.given})" if note.given else ""
+        console.warn(f"{note.where}: {note.text}{change}")
+    for row in document["warnings"]:
+        console.warn(f"{row['where']}: {row['text']}")
     kind = document.get("is", "this loop")
     name = document["files"][0]["name"]
     console.line(f"Converted {converted_words(document['converted'])}.")
@@ -111,5 +142,8 @@ def show(document: dict[str, Any], console: Console) -> None:
     if document.get("is") != "a recording":
         for line in verdict_lines(document):
             console.line(line)
+    channels = channel_table(document)
+    if channels:
+        console.table(channels)
     console.line(f"In {document['folder']}:")
     console.table(file_table(document))

@@ -15,7 +15,7 @@ from typing import Self
 import numpy as np
 from numpy.typing import NDArray
 
-from wavegen.core.excerpt import excerpt
+from wavegen.core.excerpt import excerpt, padded
 from wavegen.core.signal import Samples, Signal
 from wavegen.dsp.overlap_save import Filtered, fft_length, filter_response, filter_rows
 from wavegen.dsp.windows import kaiser_beta, kaiser_half_length, kaiser_window
@@ -146,6 +146,25 @@ def analytic_loop(source: Signal) -> Signal:
     taps = np.asarray(1j * hilbert_taps(), np.complex128)
     taps[EDGE_SAMPLES] += 1
     return Filtered.of(source, taps)
+
+
+def analytic_recording(source: Signal) -> Signal:
+    """Return the analytic signal of real samples that do not repeat.
+
+    Parameters
+    ----------
+    source : Signal
+        Real samples (in the real part); the imaginary part must be 0. Zero is assumed before the
+        first and after the last.
+
+    Returns
+    -------
+    Signal
+        Of the same rate and length.
+    """
+    n_samples = source.n_samples
+    longer = padded(source, n_samples + 2 * EDGE_SAMPLES)
+    return excerpt(analytic_loop(longer), 0, n_samples)
 
 
 def looped(recording: Recording, first: int = 0, stop: int | None = None) -> Signal:

@@ -1,4 +1,4 @@
-"""MAT files of version 5: ``iq`` (complex) and ``sample_rate_hz``.
+"""MAT files of version 5: ``iq`` (complex) or ``samples`` (real), and ``sample_rate_hz``.
 
 Written through ``scipy.io``, which takes whole arrays, so that lengths are limited; read by
 :mod:`wavegen.files.mat_elements`. HDF5 containers (version 7.3) are refused by name. A real
@@ -23,6 +23,7 @@ from wavegen.files.datatypes import (
     CI8,
     CI16_LE,
     CI32_LE,
+    RF32_LE,
     Codes,
     Datatype,
     real_of,
@@ -36,6 +37,7 @@ from wavegen.files.format import (
     Writer,
     check_facts,
     refuse_other_datatype,
+    refuse_real_pair,
     told_channel,
     told_rate,
     told_word,
@@ -55,6 +57,8 @@ _TEXT = 116
 
 _PAIRS = {"int8": CI8, "int16": CI16_LE, "int32": CI32_LE, "single": CF32_LE, "double": CF64_LE}
 _RATE = "sample_rate_hz"
+_IQ, _REAL = "iq", "samples"
+"""What an array of complex and one of real samples is called."""
 
 
 class Mat:
@@ -62,7 +66,11 @@ class Mat:
 
     name: ClassVar[str] = "mat"
     suffixes: ClassVar[tuple[str, ...]] = (".mat",)
-    datatypes: ClassVar[Mapping[str, Datatype]] = {"complex64": CF32_LE, "cf32_le": CF32_LE}
+    datatypes: ClassVar[Mapping[str, Datatype]] = {
+        "complex64": CF32_LE,
+        "cf32_le": CF32_LE,
+        "rf32_le": RF32_LE,
+    }
     default_datatype: ClassVar[str] = "cf32_le"
 
     def files(self, stem: str, datatype: Datatype) -> tuple[str, ...]:
@@ -70,14 +78,15 @@ class Mat:
         return (f"{stem}.mat",)
 
     def check(self, facts: FileFacts, where: str) -> None:
-        """Refuse what is too long to be held in memory.
+        """Refuse two real channels, and what is too long to be held in memory.
 
         Raises
         ------
         FileError
-            Another datatype, or more than :data:`MOST_SAMPLES` in all channels.
+            Another datatype, two real channels, or more than :data:`MOST_SAMPLES` in all channels.
         """
         check_facts(self, facts, where)
+        refuse_real_pair(facts, where)
         if facts.n_channels > facts.n_samples:
             raise FileError(
                 where=where,
@@ -168,9 +177,9 @@ def _choose(path: Path, found: Mapping[str, MatArray], wanted: str | None) -> Ma
     usable = {name: item for name, item in found.items() if min(item.shape) > 0}
     vectors = [name for name, item in usable.items() if max(item.shape) > 1]
     name = wanted
-    if name is None and "iq" in usable:
-        name = "iq"
-    elif name is None and len(vectors) == 1:
+    if name is None:
+        name = next((own for own in (_IQ, _REAL) if own in usable), None)
+    if name is None and len(vectors) == 1:
         name = vectors[0]
     if name is not None and name in usable:
         return usable[name]
@@ -313,7 +322,9 @@ class MatWriter:
 
         self._count.check_complete()
         rate = self._facts.sample_rate_hz
-        variables: dict[str, Any] = {"iq": self._codes.view(np.complex64), _RATE: float(rate)}
+        is_real = self._facts.datatype.is_real
+        samples = {_REAL: self._codes} if is_real else {_IQ: self._codes.view(np.complex64)}
+        variables: dict[str, Any] = {**samples, _RATE: float(rate)}
         if Fraction(repr(float(rate))) != rate:
             variables[f"{_RATE}_exact"] = [float(rate.numerator), float(rate.denominator)]
         if self._facts.title:

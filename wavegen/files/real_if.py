@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
@@ -18,43 +19,105 @@ _CELL = 1 << 12
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
-class RealIf(Signal):
-    """``Re{x exp(j 2 pi f t)}``: real samples, in the real part; the imaginary part is 0.
+class Turned(Signal):
+    """``x exp(j 2 pi f t)``: a signal whose 0 Hz stands at another frequency.
 
     Parameters
     ----------
-    n_cycles : int
-        Cycles of the intermediate frequency in one period of the loop.
+    turns : Fraction
+        Cycles per sample; of a loop a multiple of one over its length.
 
     Notes
     -----
-    No factor: an envelope of 1.0 becomes a real carrier with peaks of 1.0, so that 0 dBFS stays
-    what it is, and the mean of the squared real samples is half of ``mean |x|^2``. Phases are
-    exact: whole numbers of periods are taken off as integers.
+    Phases are exact: whole turns are taken off as integers.
     """
 
-    n_cycles: int
+    turns: Fraction
 
     @cached_property
     def _ramp(self) -> NDArray[np.complex128]:
         count = min(_CELL, self.n_samples)
-        turns = [self.n_cycles * place % self.n_samples for place in range(count)]
-        return np.asarray(np.exp(2j * np.pi * (np.array(turns, np.float64) / self.n_samples)))
+        up, around = self.turns.as_integer_ratio()
+        places = [up * place % around / around for place in range(count)]
+        return np.asarray(np.exp(2j * np.pi * np.array(places, np.float64)))
 
-    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
-        """Turn each sample by its phase and keep the real part."""
-        out = np.zeros(stop - start, np.complex64)
+    def phasors(self, start: int, stop: int) -> Iterator[tuple[slice, NDArray[np.complex128]]]:
+        """Give the phasors of samples ``[start, stop)`` in pieces, and where each belongs."""
+        up, around = self.turns.as_integer_ratio()
         position = start
         while position < stop:
             cell = position // _CELL * _CELL
             end = min(cell + _CELL, stop)
-            turn = np.exp(2j * np.pi * (self.n_cycles * cell % self.n_samples / self.n_samples))
-            phasors = self._ramp[position - cell : end - cell] * turn
+            turn = np.exp(2j * np.pi * (up * cell % around / around))
             inside = slice(position - start, end - start)
+            yield inside, self._ramp[position - cell : end - cell] * turn
+            position = end
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Turn each sample by its phase."""
+        out = np.empty(stop - start, np.complex64)
+        for inside, phasors in self.phasors(start, stop):
+            out[inside] = arrays[0][inside] * phasors
+        return out
+
+
+@dataclass(frozen=True, eq=False, kw_only=True)
+class RealIf(Turned):
+    """``Re{x exp(j 2 pi f t)}``: real samples, in the real part; the imaginary part is 0.
+
+    Notes
+    -----
+    No factor: an envelope of 1.0 becomes a real carrier with peaks of 1.0, so that 0 dBFS stays
+    what it is, and the mean of the squared real samples is half of ``mean |x|^2``.
+    """
+
+    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
+        """Turn each sample by its phase and keep the real part."""
+        out = np.zeros(stop - start, np.complex64)
+        for inside, phasors in self.phasors(start, stop):
             part = arrays[0][inside]
             out.real[inside] = part.real * phasors.real - part.imag * phasors.imag
-            position = end
         return out
+
+
+def turned(source: Signal, frequency_hz: Fraction) -> Signal:
+    """Return a signal whose 0 Hz stands at another frequency; itself if that is 0 Hz.
+
+    Parameters
+    ----------
+    source : Signal
+        A recording, or a loop of which the frequency has whole cycles.
+    frequency_hz : Fraction
+        Where 0 Hz goes, Hz; below 0 as well.
+    """
+    if not frequency_hz:
+        return source
+    return Turned(
+        sample_rate_hz=source.sample_rate_hz,
+        n_samples=source.n_samples,
+        inputs=(source,),
+        mean_power=None,
+        turns=frequency_hz / source.sample_rate_hz,
+    )
+
+
+def real_part(source: Signal, frequency_hz: Fraction) -> RealIf:
+    """Return real samples of a signal whose 0 Hz goes to a frequency, which is not checked.
+
+    Parameters
+    ----------
+    source : Signal
+        Complex; at 0 Hz its real part alone is kept.
+    frequency_hz : Fraction
+        Hz.
+    """
+    return RealIf(
+        sample_rate_hz=source.sample_rate_hz,
+        n_samples=source.n_samples,
+        inputs=(source,),
+        mean_power=None,
+        turns=frequency_hz / source.sample_rate_hz,
+    )
 
 
 def real_if(source: Signal, frequency_hz: Fraction, where: str) -> RealIf:
@@ -93,10 +156,4 @@ def real_if(source: Signal, frequency_hz: Fraction, where: str) -> RealIf:
             allowed=f"whole cycles: multiples of {format_hz(rate / count)}",
             remedy=f"Use {fits} Hz, or change the duration.",
         )
-    return RealIf(
-        sample_rate_hz=rate,
-        n_samples=count,
-        inputs=(source,),
-        mean_power=None,
-        n_cycles=int(cycles),
-    )
+    return real_part(source, frequency_hz)

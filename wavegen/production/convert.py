@@ -11,69 +11,45 @@ from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
-import numpy as np
-
 from wavegen import __version__
 from wavegen.core.errors import ArgumentsError, FileError
 from wavegen.core.progress import Progress, silent
-from wavegen.core.render import Tap, render, samples_of
+from wavegen.core.render import render
 from wavegen.core.signal import Signal
 from wavegen.core.site import Note
 from wavegen.core.stored import Scratch
 from wavegen.core.units import format_hz
-from wavegen.files import FORMATS, markers
-from wavegen.files.analytic import looped
+from wavegen.files import markers
+from wavegen.files.analytic import analytic_loop, looped
 from wavegen.files.atomic import Drafts, check_name
 from wavegen.files.datatypes import Datatype
 from wavegen.files.faults import told
-from wavegen.files.format import FileFacts, Format, ReadHints, Recording, pick_datatype
-from wavegen.meters.peak import peak_between_samples
-from wavegen.meters.power import PowerMeter, PowerStatistics
-from wavegen.meters.seam import seam_figure
-from wavegen.production.converted import Change, Origin, converted_document, origin_of
+from wavegen.files.format import Annotation, FileFacts, ReadHints
+from wavegen.meters.seam import SeamFigure, seam_figure
+from wavegen.production.carriage import Carriage, check_folding, plan_carriage
+from wavegen.production.conversion import (
+    Conversion,
+    check_conversion,
+    datatype_of,
+    format_named,
+)
+from wavegen.production.conversion_level import gain_to_peak, power_of, refuse_cut
+from wavegen.production.converted import (
+    Change,
+    ChannelOrigin,
+    Origin,
+    channel_document,
+    converted_document,
+    origin_of,
+)
 from wavegen.production.doubts import doubts_of_files
-from wavegen.production.export import STRIP_SAMPLES, Channel, ExportedFile, Written, export
+from wavegen.production.export import Channel, ExportedFile, Written, export
 from wavegen.production.input_file import InputFile, moved, open_input
 from wavegen.production.judgement import data_samples_of
-from wavegen.production.resampling import loop_at_rate, recording_at_rate
+from wavegen.production.resampling import factor_of, loop_at_rate, recording_at_rate
 from wavegen.production.sidecar import FORMAT, as_csv, as_json, note_rows
+from wavegen.production.stimulus import recipe_channel
 from wavegen.production.stimulus_document import file_row
-
-_MOST_DB = 300
-"""Beyond, float32 samples run out of range."""
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Conversion:
-    """What is asked for.
-
-    Parameters
-    ----------
-    format : str
-        A member of FORMATS.
-    datatype : str or None
-        By any name that the format knows; None keeps the source's where the format writes it.
-    bits, align
-        Of shorter words in 16-bit containers, as in
-        :func:`wavegen.files.format.told_word`.
-    peak_dbfs : float or None
-        Where the peak between samples shall stand; None leaves the level to ``gain_db``.
-    gain_db : float
-        Change of level, dB.
-    sample_rate_hz : Fraction or None
-        Rate wanted, Hz; None keeps that of the source.
-    name : str or None
-        Stem of the files; None makes it of the source's and the format's.
-    """
-
-    format: str
-    datatype: str | None = None
-    bits: int | None = None
-    align: str | None = None
-    peak_dbfs: float | None = None
-    gain_db: float = 0.0
-    sample_rate_hz: Fraction | None = None
-    name: str | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -88,17 +64,20 @@ class Converted:
         Every file, the data file first.
     document : dict
         The sidecar; of a recording, its figures alone.
+    notes : tuple of Note
+        What was rounded, doubtful or worth knowing about this conversion alone.
     """
 
     folder: Path
     files: tuple[Path, ...]
     document: dict[str, Any]
+    notes: tuple[Note, ...] = ()
 
     @property
     def differs(self) -> bool:
-        """Whether the file differs from the law of its recipe."""
-        law = self.document["law"]
-        return law is not None and law["verdict"] == "differs"
+        """Whether the file differs from the law of one of its channels."""
+        laws = [self.document["law"], (self.document.get("second_channel") or {}).get("law")]
+        return any(law is not None and law["verdict"] == "differs" for law in laws)
 
 
 def convert(
@@ -141,15 +120,26 @@ def convert(
     TargetMissed
         A rating of the bench that the sidecar tells of would be exceeded.
     """
-    _check(wanted)
-    form = _format(wanted.format)
+    check_conversion(wanted)
+    form = format_named(wanted.format)
     source = open_input(path, hints, output_rate_hz=wanted.sample_rate_hz, progress=progress)
-    datatype = _datatype(form, wanted, source.recording)
-    signal, factor = _at_rate(source, wanted)
-    origin = _origin(source, factor)
+    datatype = datatype_of(form, wanted, source.recording)
+    rate_hz = wanted.sample_rate_hz or source.recording.sample_rate_hz
+    factor = factor_of(source.recording.signal, rate_hz)
+    carriage = plan_carriage(
+        source,
+        datatype,
+        centre_hz=wanted.real_centre_hz,
+        input_centre_hz=wanted.input_real_centre_hz,
+        rate_hz=rate_hz,
+        n_samples=math.ceil(source.recording.n_samples * factor),
+    )
+    signals = _signals(source, carriage, rate_hz)
+    origins = _origins(source, factor)
     name = check_name(wanted.name or f"{source.stem}-{wanted.format}", "--name")
     folder = out / name
-    facts = _facts(source, signal, datatype, factor)
+    marks = moved(_marks(source, origins), factor, signals[0].n_samples)
+    facts = _facts(source, signals, datatype, marks, carriage)
     form.check(facts, "--to")
     names = form.files(name, datatype)
     beside = _beside(name, facts, source)
@@ -157,17 +147,23 @@ def convert(
     with Drafts(folder, overwrite=overwrite) as drafts, ExitStack() as stack:
         paths = tuple(drafts.add(one) for one in names)
         texts = {key: drafts.add(one) for key, one in beside.items()}
-        if signal.inputs:
-            signal = _to_scratch(signal, stack, drafts.folder, workers, progress)
-        gain = _gain(signal, wanted, workers, progress, loops=source.loops)
+        signals = [_leaf(one, stack, drafts.folder, workers, progress) for one in signals]
+        gain = 10 ** (wanted.gain_db / 20)
+        if wanted.peak_dbfs is not None or carriage.is_moved_up:
+            powers = [power_of(one, workers=workers, progress=progress) for one in signals]
+            check_folding(source, signals, powers, carriage)
+            if wanted.peak_dbfs is not None:
+                gain = gain_to_peak(signals, powers, wanted.peak_dbfs, loops=source.loops)
+        channels = [
+            Channel(
+                signal=carriage.raised(signal),
+                bursts=origin.bursts,
+                data_samples=data_samples_of(origin.law, signal, workers=workers),
+            )
+            for signal, origin in zip(signals, origins, strict=True)
+        ]
         file = export(
-            [
-                Channel(
-                    signal=signal,
-                    bursts=origin.bursts,
-                    data_samples=data_samples_of(origin.law, signal, workers=workers),
-                )
-            ],
+            channels,
             gain=gain,
             form=form,
             facts=facts,
@@ -177,95 +173,112 @@ def convert(
             workers=workers,
             progress=progress,
         )
+        file = replace(file, centre_hz=carriage.to_hz)
         if file.n_saturated:
-            _refuse_cut(file, signal, gain)
+            refuse_cut(file, [channel.signal for channel in channels], gain)
         source.notes.extend(_doubts(file))
         change = Change(
             source=source.recording,
             sha512=source.sha512,
             rate_factor=factor,
             gain_db=20 * math.log10(gain),
+            channel=source.taken_channel,
+            from_hz=carriage.from_hz,
+            to_hz=carriage.to_hz,
         )
-        document = _document(source, signal, file, change, origin)
+        document = _document(source, channels, file, change, origins)
         for key, draft in texts.items():
             with told(draft):
-                draft.write_text(_CONTENT[key](document, facts), encoding="utf-8")
+                draft.write_text(_CONTENT[key](document, facts), encoding="utf-8", newline="\n")
     files = tuple(folder / one for one in (*names, *beside.values()))
-    return Converted(folder=folder, files=files, document=document)
+    notes = tuple(source.notes)
+    return Converted(folder=folder, files=files, document=document, notes=notes)
 
 
-def _at_rate(source: InputFile, wanted: Conversion) -> tuple[Signal, Fraction]:
-    """Return what is written, at its rate, and the factor from the rate of the source."""
-    recording = source.recording
-    signal = looped(recording) if source.loops else recording.signal
-    rate_hz = wanted.sample_rate_hz
-    if rate_hz is None or rate_hz == signal.sample_rate_hz:
-        return signal, Fraction(1)
-    changed = loop_at_rate if source.loops else recording_at_rate
-    made, doubts = changed(signal, rate_hz)
-    source.warn(*doubts)
-    return made, rate_hz / signal.sample_rate_hz
+# What is read -----------------------------------------------------------------------------
 
 
-def _origin(source: InputFile, factor: Fraction) -> Origin:
-    """Return what the recipe of a stimulus still tells; nothing of a recording."""
+def _signals(source: InputFile, carriage: Carriage, rate_hz: Fraction) -> list[Signal]:
+    """Return each channel at its rate, without its intermediate frequency if that is taken off."""
+    found = []
+    for recording in source.recordings:
+        signal = carriage.lowered(looped(recording) if source.loops else recording.signal)
+        doubts: list[str] = []
+        if rate_hz != signal.sample_rate_hz:
+            changed = loop_at_rate if source.loops else recording_at_rate
+            signal, doubts = changed(signal, rate_hz)
+        found.append(signal)
+        if len(found) == 1:  # the second has the same band and the same ends
+            source.warn(*doubts)
+    return found
+
+
+def _origins(source: InputFile, factor: Fraction) -> list[Origin]:
+    """Return what the recipe of a stimulus still tells of each channel; nothing of a recording."""
     stimulus = source.stimulus
     if stimulus is None:
-        return Origin()
-    origin = origin_of(stimulus.document, folder=stimulus.path.parent, rate_factor=factor)
-    source.warn(*origin.notes)
-    return origin
+        return [Origin()] * len(source.recordings)
+    found = [
+        origin_of(
+            channel_document(stimulus.document, stimulus.items[0], recording.channel),
+            folder=stimulus.path.parent,
+            rate_factor=factor,
+            channel=recipe_channel(stimulus.document, recording.channel),
+        )
+        for recording in source.recordings
+    ]
+    source.warn(*dict.fromkeys(text for origin in found for text in origin.notes))
+    return found
+
+
+def _marks(source: InputFile, origins: list[Origin]) -> tuple[Annotation, ...]:
+    """Return the markers of what is read: those of bursts are its own where one is taken of two."""
+    marks = source.marks()
+    if source.stimulus is None or not source.taken_channel:
+        return marks
+    kept = [mark for mark in marks if mark.label == "period start"]
+    bursts = origins[0].bursts
+    if bursts is not None:
+        kept += [
+            markers.marker("burst on", start, length)
+            for start, length in bursts.starts(source.recording.n_samples)
+        ]
+    return tuple(sorted(kept, key=lambda mark: (mark.start_sample, mark.n_samples or 0)))
 
 
 def _document(
     source: InputFile,
-    signal: Signal,
+    channels: list[Channel],
     file: ExportedFile,
     change: Change,
-    origin: Origin,
+    origins: list[Origin],
 ) -> dict[str, Any]:
     if source.stimulus is None:
         return _recording_document(file, change, source.notes)
-    written = Written(
+    document, item = source.stimulus.document, source.stimulus.items[0]
+    gain = 10 ** (change.gain_db / 20)
+    found = []
+    for recording, channel, origin in zip(source.recordings, channels, origins, strict=True):
+        before = channel_document(document, item, recording.channel)
+        cycle = (before["loop"]["cycle_samples"] * change.rate_factor).numerator
+        seam = _seam(channel.signal, gain, file.datatype, cycle)
+        found.append(ChannelOrigin(before=before, origin=origin, seam=seam))
+    return converted_document(document, file, change, channels=found, notes=source.notes)
+
+
+def _seam(signal: Signal, gain: float, datatype: Datatype, cycle_samples: int) -> SeamFigure:
+    """Return how the written codes of one channel close."""
+    written: Signal = Written(
         sample_rate_hz=signal.sample_rate_hz,
         n_samples=signal.n_samples,
         inputs=(signal,),
         mean_power=None,
-        gain=10 ** (change.gain_db / 20),
-        datatype=file.datatype,
+        gain=gain,
+        datatype=datatype,
     )
-    before = source.stimulus.document
-    cycle = (before["loop"]["cycle_samples"] * change.rate_factor).numerator
-    return converted_document(
-        before,
-        file,
-        change,
-        origin=origin,
-        seam=seam_figure(written, cycle_samples=cycle),
-        notes=source.notes,
-    )
-
-
-def _check(wanted: Conversion) -> None:
-    """Refuse levels that mean nothing."""
-    for option, is_wrong, problem, allowed in (
-        (
-            "--peak",
-            wanted.peak_dbfs is not None and not -_MOST_DB <= wanted.peak_dbfs <= 0,
-            f"is {wanted.peak_dbfs} dBFS",
-            f"from -{_MOST_DB} to 0 dBFS: beyond, the peak would be cut off",
-        ),
-        (
-            "--gain",
-            not abs(wanted.gain_db) <= _MOST_DB,
-            f"is {wanted.gain_db:g} dB",
-            f"from -{_MOST_DB} to {_MOST_DB} dB",
-        ),
-    ):
-        if is_wrong:
-            raise ArgumentsError(
-                where=option, problem=problem, allowed=allowed, remedy="Correct the level."
-            )
+    if datatype.is_real:
+        written = analytic_loop(written)
+    return seam_figure(written, cycle_samples=cycle_samples)
 
 
 _CONTENT: dict[str, Callable[[dict[str, Any], FileFacts], str]] = {
@@ -290,40 +303,16 @@ def _beside(name: str, facts: FileFacts, source: InputFile) -> dict[str, str]:
     return found
 
 
-def _format(name: str) -> Format:
-    if name in FORMATS:
-        made: Format = FORMATS.load(name)()
-        return made
-    guess = FORMATS.nearest(name)
-    raise ArgumentsError(
-        where="--to",
-        problem=f"{name[:60]!r} is no format",
-        allowed=", ".join(FORMATS),
-        remedy=f"Did you mean {guess}?" if guess else "Choose one of these.",
-    )
-
-
-# What is written -------------------------------------------------------------------------
-
-
-def _datatype(form: Format, wanted: Conversion, recording: Recording) -> Datatype:
-    name = wanted.datatype
-    if name is None and recording.datatype.name in form.datatypes and not recording.is_real:
-        name = recording.datatype.name
-    datatype = pick_datatype(form, name, "--datatype", bits=wanted.bits, align=wanted.align)
-    if datatype.is_real:
-        raise ArgumentsError(
-            where="--datatype",
-            problem=f"{datatype.name} has room for real samples only",
-            allowed=", ".join(key for key, one in form.datatypes.items() if not one.is_real),
-            remedy="Choose a complex datatype; `wavegen make` writes real ones from a recipe.",
-        )
-    return datatype
-
-
-def _facts(source: InputFile, signal: Signal, datatype: Datatype, factor: Fraction) -> FileFacts:
-    recording = source.recording
+def _facts(
+    source: InputFile,
+    signals: list[Signal],
+    datatype: Datatype,
+    marks: tuple[Annotation, ...],
+    carriage: Carriage,
+) -> FileFacts:
+    recording, signal = source.recording, signals[0]
     text = source.stimulus.document["recipe"]["text"] if source.stimulus else None
+    centre_hz = recording.centre_frequency_hz
     return FileFacts(
         sample_rate_hz=signal.sample_rate_hz,
         n_samples=signal.n_samples,
@@ -332,8 +321,9 @@ def _facts(source: InputFile, signal: Signal, datatype: Datatype, factor: Fracti
         description=recording.description or f"converted from {recording.path.name}",
         generator=f"wavegen {__version__}",
         recipe_sha512="" if text is None else hashlib.sha512(text.encode()).hexdigest(),
-        annotations=moved(source.marks(), factor, signal.n_samples),
-        centre_frequency_hz=recording.centre_frequency_hz,
+        annotations=marks,
+        centre_frequency_hz=None if centre_hz is None else centre_hz - float(carriage.shift_hz),
+        n_channels=len(signals),
     )
 
 
@@ -354,52 +344,18 @@ def _refuse_own_source(source: InputFile, folder: Path, names: tuple[str, ...]) 
 # The level --------------------------------------------------------------------------------
 
 
-def _to_scratch(
+def _leaf(
     signal: Signal, stack: ExitStack, folder: Path, workers: int, progress: Progress
 ) -> Signal:
+    """Return a signal whose ranges can be read: rendered to a scratch file where it is computed."""
+    if not signal.inputs:
+        return signal
     scratch = stack.enter_context(
         Scratch(folder=folder, sample_rate_hz=signal.sample_rate_hz, n_samples=signal.n_samples)
     )
-    task = f"resampling to {format_hz(signal.sample_rate_hz)}"
+    task = f"computing at {format_hz(signal.sample_rate_hz)}"
     render(signal, sink=scratch.write, workers=workers, progress=progress, task=task)
     return scratch.signal()
-
-
-def _power(signal: Signal, workers: int, progress: Progress) -> PowerStatistics:
-    tap = Tap(name="power", signal=signal, meter=PowerMeter(where="the samples"))
-    found: PowerStatistics = render(
-        signal, taps=(tap,), workers=workers, progress=progress, task="measuring"
-    )["power"]
-    return found
-
-
-def _gain(
-    signal: Signal, wanted: Conversion, workers: int, progress: Progress, *, loops: bool
-) -> float:
-    """Return the amplitude factor that is asked for."""
-    if wanted.peak_dbfs is None:
-        return 10 ** (wanted.gain_db / 20)
-    statistics = _power(signal, workers, progress)
-    peak = peak_between_samples(signal, statistics, loops=loops)
-    return math.sqrt(10 ** (wanted.peak_dbfs / 10) / peak.power)
-
-
-def _refuse_cut(file: ExportedFile, signal: Signal, gain: float) -> None:
-    """Refuse codes that were cut at full scale by more than rounding (+1.0 itself has no code)."""
-    largest = 0.0
-    for start in range(0, signal.n_samples, STRIP_SAMPLES):
-        samples = samples_of(signal, start, min(start + STRIP_SAMPLES, signal.n_samples))
-        largest = max(largest, float(np.abs(samples.view(np.float32)).max()))
-    largest *= gain
-    if largest <= 1.0:
-        return
-    raise ArgumentsError(
-        where="--gain",
-        problem=f"{file.n_saturated} I or Q codes would be cut: the larger rail peaks "
-        f"{20 * math.log10(largest):.3g} dB over full scale",
-        allowed="peaks up to full scale, or a float datatype",
-        remedy="Add --peak -1dBFS, or --gain with a lower level.",
-    )
 
 
 def _doubts(file: ExportedFile) -> list[Note]:
@@ -407,7 +363,7 @@ def _doubts(file: ExportedFile) -> list[Note]:
 
 
 def _recording_document(file: ExportedFile, change: Change, notes: list[Note]) -> dict[str, Any]:
-    row = file_row(file, [None])
+    row = file_row(file, [None] * len(file.channels), [None] * len(file.channels))
     rate_hz = change.source.sample_rate_hz * change.rate_factor
     return {
         "format": f"{FORMAT}.conversion",
@@ -421,6 +377,7 @@ def _recording_document(file: ExportedFile, change: Change, notes: list[Note]) -
         "law": None,
         "files": [row],
         "converted": change.document(None),
+        "rounded": note_rows([note for note in notes if note.kind == "rounded"]),
         "warnings": note_rows([note for note in notes if note.kind == "warning"]),
         "notes": note_rows([note for note in notes if note.kind == "info"]),
     }

@@ -16,7 +16,7 @@ from wavegen.core.progress import Progress, silent
 from wavegen.core.render import Meter, Reading, Tap, render, samples_of
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.dsp.bursts import Bursts
-from wavegen.files.analytic import analytic_loop
+from wavegen.files.analytic import analytic_loop, analytic_recording
 from wavegen.files.datatypes import (
     Codes,
     Datatype,
@@ -316,7 +316,7 @@ def _measured(
         datatype=datatype,
     )
     if datatype.is_real:
-        written = analytic_loop(written)
+        written = analytic_loop(written) if loops else analytic_recording(written)
         taps = tuple(
             Tap(name=str(number), signal=written, meter=meter)
             for number, meter in enumerate(channel.meters)

@@ -23,8 +23,8 @@ class InputFile:
 
     Parameters
     ----------
-    recording : Recording
-        The file.
+    recordings : tuple of Recording
+        The channels of it that are read: one, or both of two.
     stimulus : Stimulus or None
         Its sidecar, if the file is the loop that it describes; None for a recording.
     sha512 : str
@@ -33,10 +33,33 @@ class InputFile:
         What is doubtful; filled on.
     """
 
-    recording: Recording
+    recordings: tuple[Recording, ...]
     stimulus: Stimulus | None
     sha512: str
     notes: list[Note]
+
+    @property
+    def recording(self) -> Recording:
+        """The first channel that is read; all have its rate, length and datatype."""
+        return self.recordings[0]
+
+    @property
+    def taken_channel(self) -> int | None:
+        """Which channel is read where it is one of several; None where all are."""
+        recording = self.recording
+        is_all = len(self.recordings) == recording.n_channels
+        return None if is_all else recording.channel
+
+    @property
+    def centre_hz(self) -> Fraction | None:
+        """Where the carrier of real samples stands by the sidecar, Hz, if it says so."""
+        if self.stimulus is None or not self.recording.is_real:
+            return None
+        stated = self.stimulus.items[0]["real"]
+        if stated is None:
+            return None
+        cycle_hz = self.recording.sample_rate_hz / self.recording.n_samples
+        return round(Fraction(stated["centre_hz"]) / cycle_hz) * cycle_hz
 
     @property
     def loops(self) -> bool:
@@ -52,6 +75,10 @@ class InputFile:
         """Take note of doubts."""
         where = self.recording.path.name
         self.notes.extend(Note(kind="warning", where=where, text=text) for text in texts)
+
+    def tell(self, text: str) -> None:
+        """Take note of what was done."""
+        self.notes.append(Note(kind="info", where=self.recording.path.name, text=text))
 
     def marks(self) -> tuple[Annotation, ...]:
         """Return the markers of the file itself, else those in a file beside it.
@@ -100,12 +127,14 @@ def open_input(
     Raises
     ------
     FileError
-        It cannot be read, or holds power alone.
+        It cannot be read, holds power alone, or more than two channels of which none is named.
     """
     stimulus = listing(path)
-    recording = stimulus.open(stimulus.items[0], hints) if stimulus else None
-    if recording is None:
-        recording = open_recording(path, _told_rate(path, hints, output_rate_hz))
+    if stimulus:
+        recordings = _listed(stimulus, hints)
+    else:
+        recordings = _opened(path, _told_rate(path, hints, output_rate_hz))
+    recording = recordings[0]
     if recording.is_power:
         raise FileError(
             where=str(path),
@@ -116,7 +145,7 @@ def open_input(
     sha512 = sha512_of(recording.path, progress)
     reason = _no_loop(recording, stimulus, sha512)
     found = InputFile(
-        recording=recording, stimulus=None if reason else stimulus, sha512=sha512, notes=[]
+        recordings=recordings, stimulus=None if reason else stimulus, sha512=sha512, notes=[]
     )
     found.warn(*(loop_warnings(recording) if found.loops else recording.warnings))
     if reason:
@@ -124,12 +153,37 @@ def open_input(
     return found
 
 
+def _listed(stimulus: Stimulus, hints: ReadHints) -> tuple[Recording, ...]:
+    """Open a file that a sidecar lists: the channel that is named, else all."""
+    item = stimulus.items[0]
+    if not item["channels"] or hints.channel is not None:
+        return (stimulus.open(item, hints),)
+    count = len(item["channels"])
+    return tuple(stimulus.open(item, replace(hints, channel=number)) for number in range(count))
+
+
+def _opened(path: Path, hints: ReadHints) -> tuple[Recording, ...]:
+    """Open any other file: the channel that is named, else both of two.
+
+    A file without a header has two channels only if one is named.
+    """
+    try:
+        return (open_recording(path, hints),)
+    except FileError:
+        if hints.channel is not None:
+            raise
+        first = open_recording(path, replace(hints, channel=0))
+        if first.format == "raw" or first.n_channels != 2:
+            raise
+        return first, open_recording(path, replace(hints, channel=1))
+
+
 def _told_rate(path: Path, hints: ReadHints, rate_hz: Fraction | None) -> ReadHints:
     """Return hints with the rate of the output for a file that does not say its own."""
     if hints.sample_rate_hz is not None or rate_hz is None:
         return hints
     try:
-        open_recording(path, hints)
+        _opened(path, hints)
     except FileError:
         return replace(hints, sample_rate_hz=rate_hz)
     return hints
@@ -144,8 +198,6 @@ def _no_loop(recording: Recording, stimulus: Stimulus | None, sha512: str) -> st
         return f"its bytes are not those that {stimulus.path.name} describes"
     if mismatch(recording, stimulus.document) is not None:
         return f"its length or rate is not that of {stimulus.path.name}"
-    if item["channels"] is not None:
-        return f"one of the two channels of {stimulus.path.name} is no stimulus of its own"
     return ""
 
 

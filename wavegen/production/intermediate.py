@@ -87,19 +87,21 @@ def snapped_centre(
     return frequency_hz, [note]
 
 
-def spectrum_of(signal: Signal, statistics: Located) -> NDArray[np.float64]:
-    """Return the mean spectrum of a loop.
+def spectrum_of(signal: Signal, statistics: Located, *, loops: bool = True) -> NDArray[np.float64]:
+    """Return the mean spectrum of a loop, or of a recording.
 
     Parameters
     ----------
     signal : Signal
-        A rendered loop, cheap to read.
+        Rendered, cheap to read.
     statistics : Located
         Of that signal: tells where the highest samples stand.
+    loops : bool
+        Whether the last sample is followed by the first; else no stretch goes over the end.
 
     Returns
     -------
-    float64 array, shape (4096,)
+    float64 array, shape (4096,), or of the length of a shorter recording
         Power in each bin, the bins in the order of the FFT, on any scale. Read are 64 stretches
         spread evenly and 16 at the highest cells.
     """
@@ -107,11 +109,16 @@ def spectrum_of(signal: Signal, statistics: Located) -> NDArray[np.float64]:
     highest_cells = highest(statistics.cell_maxima, _HIGHEST)
     centres = [int(cell) * CELL + CELL // 2 for cell in highest_cells]
     centres += [n * number // _EVEN for number in range(_EVEN)]
+    length = _STRETCH if loops else min(_STRETCH, n)
     window = kaiser_window(_STRETCH // 2, _KAISER_BETA)[:_STRETCH].astype(np.float32)
-    power = np.zeros(_STRETCH)
+    if length < _STRETCH:
+        window = np.kaiser(length, _KAISER_BETA).astype(np.float32)
+    power = np.zeros(length)
     for centre in centres:
-        first = centre - _STRETCH // 2
-        samples = evaluate({signal: (first, first + _STRETCH)})[signal]
+        first = centre - length // 2
+        if not loops:
+            first = min(max(first, 0), n - length)
+        samples = evaluate({signal: (first, first + length)})[signal]
         bins = scipy.fft.fft(samples * window).astype(np.complex128)
         power += bins.real**2 + bins.imag**2
     return power

@@ -26,7 +26,7 @@ from wavegen.production.judgement import (
     law_of,
 )
 from wavegen.production.prepare import prepare
-from wavegen.production.stimulus import Stimulus
+from wavegen.production.stimulus import Stimulus, recipe_channel
 from wavegen.recipe.load import load_text
 from wavegen.stages.channel.gate import on_time
 
@@ -120,7 +120,7 @@ class Referee:
         if isinstance(self._laws, str):
             text = f"undecided: {self._laws}"
             return Judgement(verdict="undecided", statement=text)
-        law, bursts = self._laws[number]
+        law, bursts = self._laws[recipe_channel(self.stimulus.document, number)]
         signal = looped(recording)
         channel = Channel(
             signal=signal,

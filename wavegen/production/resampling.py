@@ -3,14 +3,11 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 from fractions import Fraction
 
-import numpy as np
-
 from wavegen.core.errors import ArgumentsError
-from wavegen.core.excerpt import excerpt
-from wavegen.core.signal import Range, Samples, Signal
+from wavegen.core.excerpt import excerpt, padded
+from wavegen.core.signal import Signal
 from wavegen.core.site import Site
 from wavegen.core.units import format_hz
 from wavegen.dsp.interpolation import interpolation_span
@@ -18,25 +15,6 @@ from wavegen.production.length import MOST_SAMPLES
 from wavegen.stages.channel.resample import LARGEST_RATIO, Resample
 
 OPTION = "--sample-rate"
-
-
-@dataclass(frozen=True, eq=False, kw_only=True)
-class Padded(Signal):
-    """A recording with zeros after its end: before its start too, since signals are cyclic."""
-
-    def needs(self, start: int, stop: int) -> tuple[Range, ...]:
-        """Return the part of the range that is recorded; one sample where none is."""
-        last = self.inputs[0].n_samples
-        if start >= last:
-            return ((0, 1),)
-        return ((start, min(stop, last)),)
-
-    def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
-        """Return what is recorded, then zeros."""
-        out = np.zeros(stop - start, np.complex64)
-        count = max(min(stop, self.inputs[0].n_samples) - start, 0)
-        out[:count] = arrays[0][:count]
-        return out
 
 
 def factor_of(signal: Signal, rate_hz: Fraction) -> Fraction:
@@ -122,13 +100,8 @@ def recording_at_rate(signal: Signal, rate_hz: Fraction) -> tuple[Signal, list[s
     reach = 2 * interpolation_span(float(min(factor, Fraction(1))))
     cycle = factor.denominator
     n_padded = -(-(signal.n_samples + reach) // cycle) * cycle
-    padded = Padded(
-        sample_rate_hz=signal.sample_rate_hz,
-        n_samples=n_padded,
-        inputs=(signal,),
-        mean_power=None,
-    )
-    made, doubts = _resampled(padded, rate_hz, int(n_padded * factor), room=signal.n_samples)
+    longer = padded(signal, n_padded)
+    made, doubts = _resampled(longer, rate_hz, int(n_padded * factor), room=signal.n_samples)
     n_samples = math.ceil(signal.n_samples * factor)
     n_edge = math.ceil(reach * factor / 2)
     doubts.append(

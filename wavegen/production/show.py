@@ -115,6 +115,7 @@ def _described(
         "n_channels": recording.n_channels,
         "channel": recording.channel,
         "is_real": recording.is_real,
+        "real_centre_hz": item["real"]["centre_hz"] if item and item["real"] else None,
         "is_power": recording.is_power,
         "title": recording.title,
         "description": recording.description,

@@ -210,6 +210,25 @@ def _mentions(path: Path, name: str, *, is_whole: bool = True) -> bool:
         return False
 
 
+def recipe_channel(document: dict[str, Any], channel: int = 0) -> int:
+    """Return which channel of its recipe a channel of a stimulus is.
+
+    Parameters
+    ----------
+    document : dict
+        A sidecar; a conversion may have taken one of two channels.
+    channel : int
+        Which of the channels that its files have.
+    """
+    converted = document.get("converted")
+    while converted:
+        taken = converted.get("channel")
+        if taken is not None:
+            return int(taken)
+        converted = converted["before"]
+    return channel
+
+
 def loop_warnings(recording: Recording) -> list[str]:
     """Return the warnings about a recording that hold where it repeats: not those on its ends."""
     if not recording.is_real:

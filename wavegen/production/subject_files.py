@@ -19,7 +19,7 @@ from wavegen.meters.faults import code_scale
 from wavegen.production.measure import completed_hints
 from wavegen.production.measure_settings import whole_samples
 from wavegen.production.prepare import Prepared
-from wavegen.production.stimulus import mismatch, sidecar_of
+from wavegen.production.stimulus import mismatch, recipe_channel, sidecar_of
 from wavegen.production.subject import Subject
 from wavegen.production.symbol_plan import described_recipe, symbol_plan
 from wavegen.stages.channel.gate import on_time
@@ -200,7 +200,8 @@ def _recipe_of(sidecar: dict[str, Any], recording: Recording) -> Prepared | None
     words = " ".join([recipe["text"], *recipe["overrides"]])
     if "ofdm" not in words and "gate" not in words:
         return None
-    return described_recipe(sidecar, recording.path.parent, recording.channel)
+    channel = recipe_channel(sidecar, recording.channel)
+    return described_recipe(sidecar, recording.path.parent, channel)
 
 
 def _bench_reference(bench: dict[str, Any], entry: dict[str, Any], channel: int) -> float | None:

@@ -193,7 +193,7 @@ def _checked_datatype(form: Format, name: str, datatype: object, *, is_real: boo
     if default is None:
         raise QuantityError(
             problem=f"{name} does not write real samples",
-            allowed=f"real samples in {', '.join(_formats_of_real())}",
+            allowed=f"real samples in {', '.join(formats_of_real())}",
             remedy="Choose another format, or leave real out.",
             key="real",
         )
@@ -220,7 +220,8 @@ def _checked_datatype(form: Format, name: str, datatype: object, *, is_real: boo
     return datatype
 
 
-def _formats_of_real() -> list[str]:
+def formats_of_real() -> list[str]:
+    """Return the names of the formats that write real samples."""
     return [
         name
         for name in FORMATS

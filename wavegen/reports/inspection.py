@@ -146,7 +146,11 @@ def _recording_rows(document: dict[str, Any]) -> list[tuple[str, str]]:
 def _content(document: dict[str, Any]) -> str:
     if document["is_power"]:
         return "power against time"
-    return "real samples, read as their analytic signal" if document["is_real"] else ""
+    if not document["is_real"]:
+        return ""
+    centre_hz = document["real_centre_hz"]
+    around = "" if centre_hz is None else f" around {format_hz(centre_hz)}"
+    return f"real samples{around}, read as their analytic signal"
 
 
 def _labels(document: dict[str, Any]) -> list[tuple[str, int]]:
@@ -176,11 +180,20 @@ def _sidecar_rows(document: dict[str, Any]) -> list[tuple[str, str]]:
 def converted_words(converted: dict[str, Any]) -> str:
     """Say what a conversion changed."""
     changes = [f"from {converted['from']} ({converted['format']} {converted['datatype']})"]
+    if converted.get("channel") is not None:
+        changes.append(f"channel {converted['channel']}")
+    real = converted.get("real") or {"from_hz": None, "to_hz": None}
+    if real["from_hz"] != real["to_hz"]:
+        changes.append(f"{_place(real['from_hz'])} to {_place(real['to_hz'])}")
     if converted["rate_factor"] != "1":
         changes.append(f"rate x {converted['rate_factor']}")
     if converted["gain_db"]:
         changes.append(f"gain {converted['gain_db']:+.3f} dB")
     return ", ".join(changes)
+
+
+def _place(centre_hz: float | None) -> str:
+    return "complex" if centre_hz is None else f"real around {format_hz(centre_hz)}"
 
 
 def _recipe_rows(document: dict[str, Any]) -> list[tuple[str, str]]:
