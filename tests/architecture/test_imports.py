@@ -20,7 +20,7 @@ ALLOWED = {
     "soundfile": ("wavegen.files.wav", "wavegen.files.riff"),
     "sigmf": ("wavegen.files.sigmf", "wavegen.files.sigmf_meta"),
     "jsonschema": ("wavegen.files.sigmf_meta", "wavegen.production.*"),
-    "rich": ("wavegen.cli.*",),
+    "argcomplete": ("wavegen.cli.completion",),
     "matplotlib": ("wavegen.reports.*",),
     "jinja2": ("wavegen.reports.*",),
     "markupsafe": ("wavegen.reports.*",),

@@ -4,7 +4,7 @@ import sys
 
 import pytest
 
-from wavegen.cli.console import Console, ConsoleProgress, discard_stdout
+from wavegen.cli.console import Console, discard_stdout
 from wavegen.core.errors import FileError
 from wavegen.core.table import Table
 
@@ -50,6 +50,69 @@ def test_colour_on_terminals_only(monkeypatch):
     assert "\x1b[" in plain.getvalue()
 
 
+@pytest.mark.parametrize(
+    ("is_plain", "variables"),
+    [(True, {}), (False, {"NO_COLOR": "1"}), (False, {"TERM": "dumb"})],
+)
+def test_no_colour_where_none_is_wanted(monkeypatch, is_plain, variables):
+    monkeypatch.delenv("NO_COLOR", raising=False)
+    for name, value in ({"TERM": "xterm"} | variables).items():
+        monkeypatch.setenv(name, value)
+    for stream in ("stdout", "stderr"):
+        monkeypatch.setattr(sys, stream, Terminal())
+    console = Console(is_plain=is_plain)
+    console.fail("x")
+    console.warn("y")
+    console.table(TABLE)
+    assert "\x1b" not in sys.stderr.getvalue() + sys.stdout.getvalue()
+    assert "error: x" in sys.stderr.getvalue()
+
+
+def test_an_empty_no_color_says_nothing(monkeypatch):
+    monkeypatch.setenv("TERM", "xterm")
+    monkeypatch.setenv("NO_COLOR", "")
+    monkeypatch.setattr(sys, "stderr", Terminal())
+    Console().fail("x")
+    assert "\x1b[" in sys.stderr.getvalue()
+
+
+def test_quiet_is_results_and_errors_alone(capsys):
+    console = Console(is_quiet=True)
+    console.warn("a note")
+    console.fail("why it ends")
+    console.line("a result")
+    said = capsys.readouterr()
+    assert said.err == "error: why it ends\n"
+    assert said.out == "a result\n"
+
+
+@pytest.mark.parametrize("columns", [40, 80, 200])
+def test_what_is_said_fits_the_terminal(monkeypatch, columns):
+    monkeypatch.setenv("COLUMNS", str(columns))
+    for stream in ("stdout", "stderr"):
+        monkeypatch.setattr(sys, stream, Terminal())
+    console = Console(is_plain=True)
+    console.line("word " * 60)
+    console.table(TABLE)
+    console.fail("a/long/path/" * 20)
+    for stream in (sys.stdout, sys.stderr):
+        assert max(map(len, stream.getvalue().splitlines())) <= min(columns, 80)
+
+
+def test_what_acts_on_a_terminal_is_spelt_out(capsys):
+    console = Console()
+    console.warn("title\x1b]0;owned\x07")
+    console.line("\x1b[2J")
+    said = capsys.readouterr()
+    assert "\x1b" not in said.err + said.out
+    assert "\\x1b" in said.err
+
+
+def test_a_closed_stderr_is_borne(monkeypatch):
+    monkeypatch.setattr(sys, "stderr", None)
+    Console().fail("x")
+
+
 def test_a_closed_stdout_is_a_file_error(monkeypatch):
     monkeypatch.setattr(sys, "stdout", None)
     with pytest.raises(FileError, match="standard output"):
@@ -65,30 +128,3 @@ def test_a_closed_stdout_is_a_file_error(monkeypatch):
 def test_numbers_that_are_none_are_refused():
     with pytest.raises(ValueError, match="JSON compliant"):
         Console().document({"a": float("nan")})
-
-
-def test_progress_is_drawn_on_terminals_after_a_while(monkeypatch):
-    quiet = io.StringIO()
-    monkeypatch.setattr(sys, "stderr", quiet)
-    progress = ConsoleProgress(patience_s=0.0)
-    progress("rendering", 1, 10)
-    progress.close()
-    assert quiet.getvalue() == ""
-
-    drawn = Terminal()
-    monkeypatch.setenv("TERM", "xterm")
-    monkeypatch.setattr(sys, "stderr", drawn)
-    progress("rendering", 1_000_000, 10_000_000)
-    progress("rendering", 10_000_000, 10_000_000)
-    progress("writing x", 5, 10)
-    progress.close()
-    progress.close()
-    assert "rendering" in drawn.getvalue()
-    assert "MS/s" in drawn.getvalue()
-
-    patient = Terminal()
-    monkeypatch.setattr(sys, "stderr", patient)
-    slow = ConsoleProgress(patience_s=60.0)
-    slow("rendering", 1, 10)
-    slow.close()
-    assert patient.getvalue() == ""

@@ -66,7 +66,7 @@ def test_one_sample(call, tmp_path):
     np.array([0.5j], "<c8").tofile(path)
     said = call("measure", path, *RATE)
     assert said.status == 0
-    assert "1 sample " in said.out
+    assert "1 sample\n" in said.out
     assert "-6.02 dBFS" in said.out
 
 

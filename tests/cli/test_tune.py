@@ -4,7 +4,7 @@ import math
 
 import pytest
 
-from wavegen.cli.tune import TuneProgress, probability, share
+from wavegen.cli.tune import probability, share
 from wavegen.recipe.load import load_recipe
 
 CELL = """wavegen: 1
@@ -162,16 +162,3 @@ def test_shares_and_probabilities():
     for text in ("100%", "0%", "x"):
         with pytest.raises(argparse.ArgumentTypeError):
             probability(text)
-
-
-def test_progress_is_one_line_on_a_terminal(monkeypatch, capsys):
-    progress = TuneProgress()
-    progress("clip", 1, 2)
-    assert capsys.readouterr().err == ""
-    monkeypatch.setattr("sys.stderr.isatty", lambda: True)
-    progress("clip_filter, 6.10 dB so far", 500, 1000)
-    progress("clip", 900, 1000)
-    progress.close()
-    said = capsys.readouterr().err
-    assert " 50% clip_filter, 6.10 dB so far" in said
-    assert said.endswith("\r")

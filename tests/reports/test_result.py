@@ -3,7 +3,7 @@
 import pytest
 
 from wavegen.core.table import Table
-from wavegen.reports.result import Result, text_of
+from wavegen.reports.result import Result
 
 TABLE = Table(
     title="A <title>",
@@ -26,7 +26,7 @@ def test_it_is_its_document():
 
 
 def test_as_text_columns_are_aligned():
-    lines = text_of(TABLE).splitlines()
+    lines = str(result()).splitlines()
     assert lines[2].index("1.00") + 4 == lines[3].index("-10.25") + 6
     assert str(result()).endswith("A & B.")
     assert repr(result()) == str(result())
@@ -38,3 +38,8 @@ def test_in_a_notebook_everything_is_escaped():
     assert "&lt;b&gt;longer&lt;/b&gt;" in shown
     assert "<p>A &amp; B.</p>" in shown
     assert shown.count("<tr>") == 3
+
+
+def test_as_a_row_of_a_table_library():
+    found = Result({"a": 1, "law": {"verdict": "agrees", "deep": {"x": None}}, "levels": []}, list)
+    assert found.row() == {"a": 1, "law_verdict": "agrees", "law_deep_x": None}

@@ -6,7 +6,7 @@ import argparse
 from pathlib import Path
 from typing import Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.options import add_workers, tolerance_db
 from wavegen.cli.question_options import add_question, question_of
 
@@ -25,6 +25,7 @@ class Check:
         "file for itself. Exit status: 0 match, 5 differ (from the sidecar or the law),\n"
         "6 undecided, 4 if a file is missing or cannot be read."
     )
+    examples = ("wavegen check output/valley-cell-20mhz",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -51,7 +52,7 @@ class Check:
         from wavegen.production.check import TOLERANCE_DB, check
         from wavegen.production.stimulus import find_stimulus
 
-        progress = ConsoleProgress()
+        progress = console.progress()
         try:
             document = check(
                 find_stimulus(arguments.stimulus),

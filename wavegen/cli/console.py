@@ -2,30 +2,21 @@
 
 from __future__ import annotations
 
-import io
 import json
 import os
 import sys
-import textwrap
-import time
-from typing import TYPE_CHECKING, Any
+from typing import TYPE_CHECKING, Any, TextIO
 
+from wavegen.cli.arguments import WIDTH, columns
+from wavegen.cli.progress import ConsoleProgress
 from wavegen.core.errors import FileError
-from wavegen.core.table import Table
+from wavegen.reports.text import fold, text_of, visible
 
 if TYPE_CHECKING:
-    from rich.progress import Progress as Bar
+    from wavegen.core.table import Table
 
-WIDTH = 80
-
-
-class Page(io.StringIO):
-    """What will be written to stdout, drawn with the characters that stdout can hold."""
-
-    @property
-    def encoding(self) -> str:  # type: ignore[override]
-        """Encoding of stdout."""
-        return encoding_of_stdout()
+BOLD, RED, YELLOW = "1", "1;31", "33"
+"""Of the terminal's styles (ECMA-48, "select graphic rendition")."""
 
 
 def encoding_of_stdout() -> str:
@@ -33,12 +24,20 @@ def encoding_of_stdout() -> str:
     return getattr(sys.stdout, "encoding", None) or "utf-8"
 
 
-def stdout_is_terminal() -> bool:
-    """Return whether stdout is a terminal; one that is closed is none."""
+def is_terminal(stream: TextIO | None) -> bool:
+    """Return whether a stream is a terminal; one that is closed is none."""
     try:
-        return sys.stdout is not None and sys.stdout.isatty()
+        return stream is not None and stream.isatty()
     except ValueError:
         return False
+
+
+def takes_styles(stream: TextIO | None) -> bool:
+    """Return whether a stream shows styles: a terminal that knows them, and NO_COLOR is not set."""
+    knows = os.environ.get("TERM", "dumb" if os.name == "posix" else "") != "dumb"
+    if os.name == "nt":  # an old console there prints the codes
+        knows = bool(os.environ.get("WT_SESSION") or os.environ.get("TERM"))
+    return knows and not os.environ.get("NO_COLOR") and is_terminal(stream)
 
 
 def discard_stdout() -> None:
@@ -51,7 +50,28 @@ def discard_stdout() -> None:
 
 
 class Console:
-    """The terminal of one run."""
+    """The terminal of one run.
+
+    Parameters
+    ----------
+    is_quiet : bool
+        Whether notes and progress are left out.
+    is_plain : bool
+        Whether everything is without colours.
+    """
+
+    def __init__(self, *, is_quiet: bool = False, is_plain: bool = False) -> None:
+        self.is_quiet = is_quiet
+        self.is_plain = is_plain
+        self.kept: list[str] = []
+
+    def progress(self) -> ConsoleProgress:
+        """Return what shows the progress of work."""
+        return ConsoleProgress(is_shown=not self.is_quiet)
+
+    def keep(self, text: str) -> None:
+        """Remember what stays if the run is interrupted from now on."""
+        self.kept.append(text)
 
     def _put(self, text: str) -> None:
         """Write to stdout; what its encoding cannot hold is escaped.
@@ -86,23 +106,27 @@ class Console:
 
     def fail(self, text: str) -> None:
         """Say on stderr why the run ends."""
-        self._talk(text, "bold red", "error: ")
+        self._talk(text, RED, "error: ")
 
     def warn(self, text: str) -> None:
-        """Say on stderr what the user should know."""
-        self._talk(text, "yellow", "note: ")
+        """Say on stderr what the user should know, unless asked to be quiet."""
+        if not self.is_quiet:
+            self._talk(text, YELLOW, "note: ")
 
     def _talk(self, text: str, style: str, lead: str) -> None:
-        for line in text.splitlines() or [""]:
-            if sys.stderr.isatty():
-                from rich.console import Console as Terminal
-                from rich.text import Text
+        if sys.stderr is None:
+            return
+        encoding = getattr(sys.stderr, "encoding", None) or "ascii"
+        for line in visible(text).splitlines() or [""]:
+            held = line.encode(encoding, "backslashreplace").decode(encoding)
+            if is_terminal(sys.stderr):
+                held = fold(lead + held, columns(), indent=" " * len(lead)).removeprefix(lead)
+            sys.stderr.write(f"{self._styled(lead, style, sys.stderr)}{held}\n")
 
-                said = Text(lead, style=style)
-                said.append(line, style="default")
-                Terminal(stderr=True, highlight=False).print(said)
-            else:
-                sys.stderr.write(f"{lead}{line}\n")
+    def _styled(self, text: str, style: str, stream: TextIO) -> str:
+        if self.is_plain or not takes_styles(stream):
+            return text
+        return f"\x1b[{style}m{text}\x1b[0m"
 
     def document(self, document: Any) -> None:
         """Print one JSON document on stdout."""
@@ -110,87 +134,25 @@ class Console:
         text = json.dumps(document, ensure_ascii=is_ascii, allow_nan=False, indent=1)
         self._put(f"{text}\n")
 
+    def text(self, text: str) -> None:
+        """Print lines of the result as they are, to be read by another program."""
+        self._put(text if text.endswith("\n") else f"{text}\n")
+
     def line(self, text: str = "") -> None:
-        """Print a sentence of the result on stdout, broken at 80 columns."""
-        self._put(textwrap.fill(text, WIDTH, break_long_words=False) + "\n")
+        """Print a sentence of the result, broken at 80 columns or a narrower terminal."""
+        self._put(f"{fold(visible(text), _width())}\n")
 
     def table(self, table: Table) -> None:
-        """Print a table on stdout, at most 80 columns wide."""
-        from rich.box import SIMPLE_HEAD
-        from rich.console import Console as Terminal
-        from rich.table import Table as Drawn
-        from rich.text import Text
-
-        drawn = Drawn(box=SIMPLE_HEAD, pad_edge=False)
-        for number, heading in enumerate(table.headings):
-            drawn.add_column(
-                heading,
-                justify="right" if number in table.right else "left",
-                overflow="fold",
-            )
-        for row in table.rows:
-            drawn.add_row(*(Text(cell) for cell in row))
-        page = Page()
-        terminal = Terminal(
-            file=page, width=WIDTH, highlight=False, force_terminal=stdout_is_terminal()
-        )
-        terminal.print(Text(table.title, style="italic"), drawn)
-        self._put(page.getvalue())
+        """Print a table of the result, at most 80 columns wide."""
+        try:
+            "─".encode(encoding_of_stdout())
+            rule = "─"
+        except UnicodeEncodeError:
+            rule = "-"
+        title, break_, rest = text_of(table, width=_width(), rule=rule).partition("\n")
+        self._put(f"{self._styled(title, BOLD, sys.stdout)}{break_}{rest}\n\n")
 
 
-class ConsoleProgress:
-    """A bar on stderr with rate and time left, on work over a second.
-
-    Notes
-    -----
-    It listens to the progress protocol of the core. Nothing is drawn where stderr is no terminal.
-    """
-
-    def __init__(self, *, patience_s: float = 1.0) -> None:
-        self._patience = patience_s
-        self._bar: Bar | None = None
-        self._number: Any = None
-        self._task = ""
-        self._since = 0.0
-
-    def __call__(self, task: str, done: int, total: int) -> None:
-        """Take note of ``done`` out of ``total`` samples."""
-        if not sys.stderr.isatty():
-            return
-        now = time.monotonic()
-        if task != self._task:
-            self.close()
-            self._task, self._since = task, now
-        if self._bar is None:
-            if done >= total or now - self._since < self._patience:
-                return
-            self._open(task, total)
-        assert self._bar is not None  # noqa: S101 - set by _open, told to the type checker
-        speed = done / max(now - self._since, 1e-9)
-        self._bar.update(self._number, completed=done, total=total, rate=f"{speed / 1e6:.1f} MS/s")
-        if done >= total:
-            self.close()
-
-    def _open(self, task: str, total: int) -> None:
-        from rich.console import Console as Terminal
-        from rich.progress import BarColumn, TextColumn, TimeRemainingColumn
-        from rich.progress import Progress as Bar
-
-        self._bar = Bar(
-            TextColumn("{task.description}"),
-            BarColumn(bar_width=30),
-            TextColumn("{task.percentage:>3.0f} %"),
-            TextColumn("{task.fields[rate]}"),
-            TimeRemainingColumn(),
-            console=Terminal(stderr=True),
-            transient=True,
-        )
-        self._bar.start()
-        self._number = self._bar.add_task(task, total=total, rate="")
-
-    def close(self) -> None:
-        """Remove the bar."""
-        if self._bar is not None:
-            self._bar.stop()
-            self._bar = None
-        self._task = ""
+def _width() -> int:
+    """Return how wide results are: 80 columns, or a terminal that is narrower."""
+    return columns() if is_terminal(sys.stdout) else WIDTH

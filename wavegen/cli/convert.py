@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.options import add_reading, add_workers, hints_of, level_dbfs, rate, ratio_db
 
 if TYPE_CHECKING:
@@ -30,6 +30,7 @@ class Convert:
         "asked for; then they become complex baseband where their intermediate frequency\n"
         "is known, else their analytic signal around it."
     )
+    examples = ("wavegen convert output/valley-cell-20mhz/valley-cell-20mhz.sigmf-data --to wav",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -97,7 +98,7 @@ class Convert:
             sample_rate_hz=arguments.sample_rate,
             name=arguments.name,
         )
-        progress = ConsoleProgress()
+        progress = console.progress()
         try:
             made = convert(
                 arguments.file,

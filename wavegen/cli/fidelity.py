@@ -6,7 +6,7 @@ import argparse
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.options import add_overrides, add_workers, rate, whole
 
 if TYPE_CHECKING:
@@ -24,6 +24,7 @@ class Fidelity:
         "source and group, ACLR, mask, occupied bandwidth, cubic metric and levels; where\n"
         "crest-factor reduction, devices or converters are in it, without and with them."
     )
+    examples = ("wavegen fidelity valley-cell-clipped --channels 'NR BS FR1'",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -52,7 +53,7 @@ class Fidelity:
         request = request_of(
             arguments, limits=arguments.limits, has_spread=arguments.spread, must_hold=False
         )
-        progress = ConsoleProgress()
+        progress = console.progress()
         try:
             found = recipe_fidelity(loaded, request, workers=arguments.workers, progress=progress)
         finally:

@@ -29,6 +29,7 @@ class GainCurve:
         "--output-reference-level say what 0 dBFS is. Exit status: 0 linear within the\n"
         "tolerance, 5 not, 6 undecided."
     )
+    examples = ("wavegen gain-curve valley-cell-20mhz valley-cell-clipped",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

@@ -16,6 +16,7 @@ class Listing:
 
     summary = "show the sources, pulses, stages, formats and recipes there are"
     description = "Show what a recipe may name; without a topic, everything."
+    examples = ("wavegen list recipes",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

@@ -2,9 +2,7 @@
 
 from __future__ import annotations
 
-import argparse
 import os
-import re
 import signal
 import sys
 import threading
@@ -12,6 +10,7 @@ from collections.abc import Sequence
 from types import FrameType
 
 from wavegen import __version__
+from wavegen.cli.arguments import Parser, add_common, epilogue, join_negative, refuse_unknown
 from wavegen.cli.console import Console, discard_stdout
 from wavegen.core.errors import (
     ArgumentsError,
@@ -40,6 +39,7 @@ VERBS = Registry(
         "new": "wavegen.cli.new:New",
         "list": "wavegen.cli.listing:Listing",
         "schema": "wavegen.cli.schema:Schema",
+        "completion": "wavegen.cli.completion:Completion",
     },
 )
 
@@ -52,62 +52,55 @@ STATUS: tuple[tuple[type[WavegenError], int], ...] = (
 )
 BUG = 1
 INTERRUPTED = 130
+COMPLETES = "_ARGCOMPLETE"
+"""Set by the shell's completion, which asks the program what may follow."""
 
 EPILOGUE = """\
+begin with:
+  wavegen list recipes
+  wavegen make valley-cell-20mhz
+
 exit status: 0 done, 1 a fault of the program, 2 arguments, 3 recipe, 4 file,
 5 differs or a target or rating not met, 6 undecided, 130 interrupted
 
-A stimulus can destroy a device or a sensor by its peaks: check the peak
-envelope power against every rating in the path, use a load or an attenuator,
-radiate only with a licence and under local rules, keep within the exposure
-limits that apply, and leave the decision to qualified people."""
+A stimulus can destroy a device or a sensor by its peaks: check the peak envelope
+power against every rating in the path, use a load or an attenuator, radiate
+only with a licence and under local rules, keep within the exposure limits that
+apply, and leave the decision to qualified people."""
 
 
-def parser() -> argparse.ArgumentParser:
+def parser() -> Parser:
     """Return the argument parser with all verbs."""
-    top = argparse.ArgumentParser(
+    return parsers()[0]
+
+
+def parsers() -> tuple[Parser, dict[str, Parser]]:
+    """Return the argument parser of the program, and those of its verbs."""
+    top = Parser(
         prog="wavegen",
         description="Make, tune and prove RF test stimuli from recipes.",
         epilog=EPILOGUE,
-        formatter_class=argparse.RawDescriptionHelpFormatter,
+        example="wavegen make valley-cell-20mhz",
     )
     top.add_argument("--version", action="version", version=f"wavegen {__version__}")
-    verbs = top.add_subparsers(dest="verb", metavar="VERB", required=True)
+    verbs = top.add_subparsers(dest="verb", metavar="VERB", required=True, title="verbs")
+    made = {}
     for name in VERBS:
         verb = VERBS.load(name)
         sub = verbs.add_parser(
-            name,
-            help=verb.summary,
-            description=verb.description,
-            formatter_class=argparse.RawDescriptionHelpFormatter,
+            name, help=verb.summary, description=verb.description, example=verb.examples[0]
         )
         verb.arguments(sub)
-        sub.add_argument("--json", action="store_true", help="one JSON document on stdout")
+        add_common(sub)
+        sub.epilog = epilogue(verb.examples, sub.epilog)
         sub.set_defaults(run=verb.run)
-    return top
+        made[name] = sub
+    return top, made
 
 
 def status_of(error: WavegenError) -> int:
     """Return the exit status that belongs to an error."""
     return next((status for kind, status in STATUS if isinstance(error, kind)), BUG)
-
-
-def join_negative(argv: Sequence[str]) -> list[str]:
-    """Join long options with values that start with a minus, which argparse takes for options.
-
-    Examples
-    --------
-    >>> join_negative(["measure", "a.wav", "--reference-level", "-10dBm"])
-    ['measure', 'a.wav', '--reference-level=-10dBm']
-    """
-    joined: list[str] = []
-    for word in argv:
-        is_value = re.match(r"-\.?[0-9]", word)
-        if is_value and joined and re.fullmatch(r"--[a-z][a-z-]*", joined[-1]):
-            joined[-1] = f"{joined[-1]}={word}"
-        else:
-            joined.append(word)
-    return joined
 
 
 def _end_on_termination() -> None:
@@ -136,18 +129,16 @@ def run(argv: Sequence[str] | None = None) -> int:
     """
     if argv is None:
         _end_on_termination()
+    words = join_negative(sys.argv[1:] if argv is None else argv)
+    console = Console(is_quiet="--quiet" in words, is_plain="--no-color" in words)
     try:
-        arguments = parser().parse_args(join_negative(sys.argv[1:] if argv is None else argv))
-    except SystemExit as stop:  # argparse leaves this way: 0 after --help, 2 after a wrong option
-        return stop.code if isinstance(stop.code, int) else 2
-    console = Console()
-    try:
-        status = int(arguments.run(arguments, console))
+        return _run(words, console)
     except WavegenError as error:
         console.fail(str(error))
         return status_of(error)
     except KeyboardInterrupt:
-        console.fail("interrupted; nothing half-written is left")
+        kept = f"; kept: {', '.join(console.kept)}" if console.kept else ""
+        console.fail(f"interrupted; nothing half-written is left{kept}")
         return INTERRUPTED
     except BrokenPipeError:  # the reader of our output has gone, as in `wavegen list | head -1`
         discard_stdout()
@@ -160,4 +151,18 @@ def run(argv: Sequence[str] | None = None) -> int:
             "Set WAVEGEN_TRACEBACK=1 and run it again to see where; please report that."
         )
         return BUG
-    return status
+
+
+def _run(words: list[str], console: Console) -> int:
+    top, verbs = parsers()
+    if COMPLETES in os.environ:
+        from wavegen.cli.completion import complete
+
+        complete(top, verbs)
+    refuse_unknown(top, verbs, words)
+    try:
+        arguments = top.parse_args(words)
+    except SystemExit as stop:  # argparse leaves this way after --help and --version
+        sys.stdout.flush()
+        return stop.code if isinstance(stop.code, int) else 2
+    return int(arguments.run(arguments, console))

@@ -6,7 +6,7 @@ import argparse
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.options import add_overrides, add_workers
 from wavegen.cli.question_options import add_question, tries
 from wavegen.core.errors import ArgumentsError
@@ -25,6 +25,10 @@ class Make:
         "Make the files of one or more recipes. Everything of a recipe goes to OUT/NAME/:\n"
         "the stimulus in each format asked for, and one sidecar NAME.ccdf.json and\n"
         "NAME.ccdf.csv with the power statistics of what was written."
+    )
+    examples = (
+        "wavegen make valley-cell-20mhz",
+        "wavegen make harbour-link-qpsk --set 'duration=20 ms' --out trial",
     )
 
     @staticmethod
@@ -91,7 +95,7 @@ class Make:
                 refuse_beforehand(recipe, wanted, folder, overwrite=arguments.overwrite)
         documents = []
         differs = False
-        progress = ConsoleProgress()
+        progress = console.progress()
         for recipe in loaded:
             try:
                 made = make(

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.measure_options import (
     add_gate,
     add_levels,
@@ -23,6 +23,7 @@ from wavegen.cli.options import (
     is_recipe,
     refuse_reading,
 )
+from wavegen.cli.progress import ConsoleProgress
 from wavegen.cli.report_options import add_reports, are_wanted, report_measurement
 from wavegen.core.errors import ArgumentsError
 
@@ -45,6 +46,10 @@ class Measure:
         "samples are, exactly; and what is known of the process that they sample, in\n"
         "intervals. Several files count as one population. Exit status 6 if none of the\n"
         "levels asked for with --at is resolved."
+    )
+    examples = (
+        "wavegen measure output/valley-cell-20mhz/valley-cell-20mhz.sigmf-meta",
+        "wavegen measure harbour-link-qpsk --at 0.001% --above 4dB",
     )
 
     @staticmethod
@@ -73,7 +78,7 @@ class Measure:
         keep_large_blocks()
         settings = settings_of(arguments)
         are_wanted(arguments)
-        progress = ConsoleProgress()
+        progress = console.progress()
         try:
             if any(is_recipe(subject) for subject in arguments.subjects):
                 document, subjects = _recipe(arguments, settings, progress)

@@ -18,6 +18,7 @@ class New:
         "Copy a shipped recipe into the current folder, comments and all. See\n"
         "`wavegen list recipes` for their names."
     )
+    examples = ("wavegen new valley-cell-20mhz --as my-cell.yaml",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

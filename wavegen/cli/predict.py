@@ -20,6 +20,10 @@ class Predict:
         "highest peak that can occur. What has no law says so by name. With --fault and\n"
         "--at, say how long a loop must be for its verdict to find such a fault."
     )
+    examples = (
+        "wavegen predict harbour-link-qpsk",
+        "wavegen predict valley-cell-clipped --fault 0.1dB --at 0.1%",
+    )
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

@@ -7,7 +7,8 @@ from collections.abc import Callable, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
+from wavegen.cli.progress import ConsoleProgress
 from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
@@ -152,7 +153,7 @@ def compared(
         The document.
     """
     draws = are_wanted(arguments)
-    progress = ConsoleProgress()
+    progress = console.progress()
     try:
         document = work(progress)
         said = report_comparison(arguments, document) if draws else []

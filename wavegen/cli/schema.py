@@ -13,10 +13,9 @@ class Schema:
     summary = "print the JSON Schema of recipes, for editors"
     description = (
         "Print the JSON Schema (draft 2020-12) of recipes. An editor that is given it\n"
-        "completes keys and kinds, explains them, and marks what is wrong:\n"
-        "\n"
-        "  wavegen schema > recipe.schema.json"
+        "completes keys and kinds, explains them, and marks what is wrong."
     )
+    examples = ("wavegen schema > recipe.schema.json",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

@@ -40,6 +40,7 @@ class Shape:
         "writes. Exit status: 0 if every level lies within the tolerance, else 5: then\n"
         "the files are the nearest found."
     )
+    examples = ("wavegen shape output/valley-cell-20mhz/valley-cell-20mhz.sigmf-meta",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

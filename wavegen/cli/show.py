@@ -6,8 +6,9 @@ import argparse
 from pathlib import Path
 from typing import Any
 
-from wavegen.cli.console import Console, ConsoleProgress
+from wavegen.cli.console import Console
 from wavegen.cli.options import add_overrides, add_reading, hints_of, is_recipe, refuse_reading
+from wavegen.cli.progress import ConsoleProgress
 from wavegen.core.errors import ArgumentsError
 
 
@@ -21,6 +22,7 @@ class Show:
         "the parts of a recipe; the summary of a sidecar, or of the folder it is in; the\n"
         "range of a CCDF curve. Nothing is measured (see `wavegen measure`) or rendered."
     )
+    examples = ("wavegen show output/valley-cell-20mhz", "wavegen show valley-cell-clipped")
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -36,7 +38,7 @@ class Show:
     @staticmethod
     def run(arguments: argparse.Namespace, console: Console) -> int:
         """Describe and print."""
-        progress = ConsoleProgress()
+        progress = console.progress()
         try:
             document = _document(arguments, progress)
         finally:

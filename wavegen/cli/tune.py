@@ -3,11 +3,10 @@
 from __future__ import annotations
 
 import argparse
-import sys
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.console import WIDTH, Console
+from wavegen.cli.console import Console
 from wavegen.cli.fidelity import add_fidelity, request_of
 from wavegen.cli.options import add_overrides, add_workers, positive, ratio_db
 from wavegen.cli.report_options import add_reports, are_wanted, report_comparison
@@ -33,6 +32,7 @@ class Tune:
         "the tuned recipe NAME-tuned.yaml, comments kept, and every evaluation in\n"
         "NAME.tuning.json, with which a tune that was interrupted goes on."
     )
+    examples = ("wavegen tune valley-cell-20mhz --evm-limit 8% --method clip --seconds 5",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
@@ -116,7 +116,7 @@ class Tune:
             seconds=arguments.seconds,
             device=arguments.device,
         )
-        progress = TuneProgress()
+        progress = console.progress()
         try:
             tuned = tune(
                 loaded,
@@ -226,28 +226,6 @@ def probability(text: str) -> float:
         message = f"{text!r} is no probability below 1; allowed: such as 0.01%% or 1e-4"
         raise argparse.ArgumentTypeError(message)
     return value
-
-
-class TuneProgress:
-    """One line on stderr, where that is a terminal: what is searched, and how long still."""
-
-    def __init__(self) -> None:
-        self._shown = 0
-
-    def __call__(self, task: str, done: int, total: int) -> None:
-        """Take note of ``done`` out of ``total``, milliseconds or samples."""
-        if sys.stderr.isatty():
-            line = f"{min(done / total, 1):4.0%} {task}"[: WIDTH - 1]
-            sys.stderr.write("\r" + line.ljust(self._shown))
-            sys.stderr.flush()
-            self._shown = len(line)
-
-    def close(self) -> None:
-        """Remove the line."""
-        if self._shown:
-            sys.stderr.write("\r" + " " * self._shown + "\r")
-            sys.stderr.flush()
-            self._shown = 0
 
 
 def show(document: dict[str, Any], console: Console, *, asked: frozenset[str]) -> None:

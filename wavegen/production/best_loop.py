@@ -88,7 +88,7 @@ def best_loop(
             if law is not None
         ]
         found.append(max(deviations))
-        progress(f"seed {seed}", len(found), n_tries)
+        progress(f"seeds: {seed} tried", len(found), n_tries)
     best = int(np.argmin(found))
     return BestLoop(
         loaded=reseeded(loaded, first + best),

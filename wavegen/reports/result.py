@@ -7,6 +7,7 @@ from collections.abc import Callable, Iterator, Mapping, Sequence
 from typing import Any
 
 from wavegen.core.table import Table
+from wavegen.reports.text import fold, text_of, visible
 
 
 class Result(Mapping[str, Any]):
@@ -26,8 +27,8 @@ class Result(Mapping[str, Any]):
     >>> table = Table(title="Levels", headings=("at", "dB"), rows=(("1 %", "6.63"),))
     >>> print(Result({"levels": []}, lambda: [table], lambda: ["All is well."]))
     Levels
-      at   dB
-      1 %  6.63
+      at    dB
+      1 %   6.63
     All is well.
     """
 
@@ -63,9 +64,26 @@ class Result(Mapping[str, Any]):
         """Its sentences."""
         return list(self._lines())
 
+    def row(self) -> dict[str, str | float | None]:
+        """Return its single figures as one row of a table library; lists are left out.
+
+        Returns
+        -------
+        dict
+            Keys of what is nested are joined: ``law_verdict``. ``pandas.DataFrame([a.row(),
+            b.row()])`` compares two; ``pandas.DataFrame(a["levels"])`` shows the levels of one.
+
+        Examples
+        --------
+        >>> Result({"papr_db": 7.5, "law": {"verdict": "agrees"}, "levels": []}, list).row()
+        {'papr_db': 7.5, 'law_verdict': 'agrees'}
+        """
+        return _flat(self.document)
+
     def __str__(self) -> str:
-        """Return it as plain text."""
-        return "\n".join([*(text_of(table) for table in self.tables), *self.lines])
+        """Return it as plain text of at most 80 columns."""
+        said = (fold(visible(line)) for line in self.lines)
+        return "\n".join([*(text_of(table) for table in self.tables), *said])
 
     def __repr__(self) -> str:
         """Return it as plain text: that is what one wants to see at a prompt."""
@@ -77,24 +95,14 @@ class Result(Mapping[str, Any]):
         return "".join(_table_html(table) for table in self.tables) + said
 
 
-def text_of(table: Table) -> str:
-    """Return a table as plain text, its columns aligned.
-
-    Parameters
-    ----------
-    table : Table
-        Any.
-    """
-    cells = [table.headings, *table.rows]
-    widths = [max(len(row[column]) for row in cells) for column in range(len(table.headings))]
-    lines = [table.title]
-    for row in cells:
-        padded = (
-            cell.rjust(width) if column in table.right else cell.ljust(width)
-            for column, (cell, width) in enumerate(zip(row, widths, strict=True))
-        )
-        lines.append("  " + "  ".join(padded).rstrip())
-    return "\n".join(lines)
+def _flat(document: Mapping[str, Any], lead: str = "") -> dict[str, str | float | None]:
+    row: dict[str, str | float | None] = {}
+    for key, value in document.items():
+        if isinstance(value, Mapping):
+            row |= _flat(value, f"{lead}{key}_")
+        elif value is None or isinstance(value, str | int | float):
+            row[f"{lead}{key}"] = value
+    return row
 
 
 def _table_html(table: Table) -> str:

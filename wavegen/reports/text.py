@@ -1,0 +1,153 @@
+"""Tables as plain text that fits a terminal: columns aligned, long cells folded."""
+
+from __future__ import annotations
+
+import re
+import unicodedata
+from collections.abc import Sequence
+
+from wavegen.core.table import Table
+
+WIDTH = 80
+INDENT = "  "
+GAPS = ("   ", "  ", " ")
+"""Between columns: the widest that still fits."""
+
+NARROWEST = 6
+"""Characters to which a column of words may be folded."""
+
+
+def visible(text: str) -> str:
+    r"""Return a text whose control characters cannot act on a terminal: they are spelt out.
+
+    Line breaks and tabs stay. What turns the direction of writing is spelt out too.
+
+    Examples
+    --------
+    >>> visible("a\x1b[2Jb")
+    'a\\x1b[2Jb'
+    """
+    if text.isascii() and text.isprintable():
+        return text
+    return "".join(
+        character
+        if character in "\n\t" or unicodedata.category(character) not in {"Cc", "Cf", "Cs"}
+        else character.encode("unicode_escape", "surrogatepass").decode("ascii")
+        for character in text
+    )
+
+
+def fold(text: str, width: int = WIDTH, *, indent: str = "") -> str:
+    """Return a sentence folded between words; a word longer than a line is broken behind a slash.
+
+    Parameters
+    ----------
+    text : str
+        One paragraph; spaces at its beginning stand before every line.
+    width : int
+        Columns of the terminal.
+    indent : str
+        Before every line but the first.
+
+    Examples
+    --------
+    >>> print(fold("Write it like --sample-rate 20MHz.", 24))
+    Write it like
+    --sample-rate 20MHz.
+    >>> print(fold("/a/long/path/to/some.file", 16))
+    /a/long/path/to/
+    some.file
+    """
+    lead = text[: len(text) - len(text.lstrip())][: width // 2]
+    lines, line = [], lead
+    for word in re.split(r"[ \t\n]+", text.strip(" \t\n")):
+        joined = f"{line} {word}" if line.strip() else lead + word
+        if len(joined) > width and line.strip():
+            lines.append(line)
+            joined = indent + lead + word
+        line = joined
+        while len(line) > width:
+            cut = _break(line, width)
+            lines.append(line[:cut])
+            line = indent + lead + line[cut:]
+    return "\n".join([*lines, line])
+
+
+def _break(line: str, width: int) -> int:
+    """Return where to break a line of one long word: behind a slash, else a hyphen."""
+    for marks in ("/\\", "-_"):
+        cut = max(line.rfind(mark, 0, width) for mark in marks) + 1
+        if cut > width // 2:
+            return cut
+    return width
+
+
+def text_of(table: Table, *, width: int = WIDTH, rule: str = "") -> str:
+    """Return a table as plain text.
+
+    Parameters
+    ----------
+    table : Table
+        Any.
+    width : int
+        Columns of the terminal.
+    rule : str
+        The character drawn under the headings; none if empty.
+
+    Examples
+    --------
+    >>> table = Table(title="Levels", headings=("at", "dB"), rows=(("1 %", "6.63"),))
+    >>> print(text_of(table, rule="-"))
+    Levels
+      at    dB
+      ----------
+      1 %   6.63
+    """
+    cells = [[visible(cell) for cell in row] for row in (table.headings, *table.rows)]
+    natural = [
+        max(len(line) for row in cells for line in (row[number].splitlines() or [""]))
+        for number in range(len(table.headings))
+    ]
+    gap, widths = _fitted(natural, table.right, width - len(INDENT))
+    lines = fold(visible(table.title), width).splitlines()
+    for number, row in enumerate(cells):
+        lines.extend(_row_lines(row, widths, gap, table.right))
+        if rule and number == 0:
+            lines.append(INDENT + rule * (sum(widths) + len(gap) * (len(widths) - 1)))
+    return "\n".join(lines)
+
+
+def _fitted(natural: list[int], right: frozenset[int], room: int) -> tuple[str, list[int]]:
+    """Return the gap and the widths of columns that fit; numbers are folded last."""
+    for gap in GAPS:
+        if sum(natural) + len(gap) * (len(natural) - 1) <= room:
+            return gap, natural
+    room -= len(gap) * (len(natural) - 1)
+    widths = list(natural)
+    words = [number for number in range(len(natural)) if number not in right]
+    for columns in (words, range(len(natural))):
+        while sum(widths) > room:
+            widest = max(columns, key=lambda number: widths[number], default=None)
+            if widest is None or widths[widest] <= NARROWEST:
+                break
+            widths[widest] -= 1
+    return gap, widths
+
+
+def _row_lines(
+    row: Sequence[str], widths: Sequence[int], gap: str, right: frozenset[int]
+) -> list[str]:
+    folded = [
+        [piece for line in cell.splitlines() or [""] for piece in fold(line, width).split("\n")]
+        for cell, width in zip(row, widths, strict=True)
+    ]
+    lines = []
+    for depth in range(max(map(len, folded))):
+        pieces = (
+            (column[depth] if depth < len(column) else "").rjust(width)
+            if number in right
+            else (column[depth] if depth < len(column) else "").ljust(width)
+            for number, (column, width) in enumerate(zip(folded, widths, strict=True))
+        )
+        lines.append(INDENT + gap.join(pieces).rstrip())
+    return lines
