@@ -1,6 +1,7 @@
 """What figures share."""
 
 import sys
+from xml.etree import ElementTree as ET
 
 import numpy as np
 import pytest
@@ -14,6 +15,7 @@ from wavegen.reports.figures.look import (
     draw,
     legend,
     new_figure,
+    note,
     rendered,
     stroke,
 )
@@ -67,3 +69,34 @@ def test_what_is_missing_is_told_before_work_begins(monkeypatch, missing, name):
         check_installed()
     assert name in caught.value.problem
     assert "pip install" in caught.value.remedy
+
+
+def test_a_long_title_takes_two_lines_and_stays_inside():
+    figure, _ = new_figure("A very wide title of WWWWWWWWWWWWWW capitals " * 20)
+    heading = figure.get_suptitle()
+    assert heading.count("\n") <= 1
+    assert heading.endswith("...")
+    assert figure._suptitle.get_window_extent().width <= figure.bbox.width
+
+
+@pytest.mark.parametrize(
+    "title", ["two\nlines", "a\u202eb", "bell\x07", "half \udc80", "$x^{2", "東京", "\U0001f600"]
+)
+def test_any_title_can_be_written(title):
+    figure, (axes,) = new_figure(title)
+    axes.plot([0, 1], [0, 1], label=title)
+    legend(axes)
+    note(axes, title)
+    for form in ("svg", "png"):
+        assert rendered(figure, form)
+    assert ET.fromstring(rendered(figure, "svg")).tag.endswith("svg")  # noqa: S314 - our own
+
+
+def test_a_legend_covers_no_curve_and_cuts_long_names():
+    figure, (axes,) = new_figure("T")
+    axes.plot([0, 1], [0, 1], label="n" * 400)
+    legend(axes)
+    figure.draw_without_rendering()
+    (made,) = figure.legends
+    assert made.get_window_extent().y1 <= axes.get_window_extent().y0
+    assert made.get_window_extent().width <= figure.bbox.width

@@ -33,3 +33,41 @@ def test_seam_stands_in_the_middle():
     low, high = figure.axes[0].get_xlim()
     assert low == pytest.approx(-10)
     assert high == pytest.approx(9)
+
+
+def flat(level=1.0):
+    power = np.full(8, level)
+    return Envelope(lowest=power, mean=power, highest=power, duration_s=8e-3, total_mean=level)
+
+
+def test_a_constant_envelope_stands_inside_the_picture():
+    low, high = envelope_figure(flat(), title="T").axes[0].get_ylim()
+    assert low <= -7
+    assert high >= 2
+
+
+def test_on_times_have_a_bar_that_grey_shows_too():
+    axes = envelope_figure(flat(), title="T", on_times_s=[(0, 1e-3), (3e-3, 4e-3)]).axes[0]
+    (bar,) = axes.collections
+    assert bar.get_label() == "on: 2 times"
+    assert bar.get_facecolor()[0][:3].mean() < 0.3  # dark
+    starts = [path.vertices[:, 0].min() for path in bar.get_paths()]
+    assert starts == pytest.approx([0, 3])  # ms
+    shade = axes.patches[0].get_facecolor()[:3]
+    assert np.mean(shade) < 0.93  # seen on white
+
+
+def test_a_second_axis_tells_dbm():
+    figure = envelope_figure(flat(), title="T", mean_dbm=-10.0)
+    figure.draw_without_rendering()
+    (second,) = figure.axes[0].child_axes
+    assert second.get_ylim()[0] == pytest.approx(figure.axes[0].get_ylim()[0] - 10)
+
+
+def test_times_are_written_with_three_digits():
+    power = np.ones(7)
+    envelope = Envelope(
+        lowest=power, mean=power, highest=power, duration_s=16.3835e-3, total_mean=1.0
+    )
+    labels = envelope_figure(envelope, title="T").axes[0].get_legend_handles_labels()[1]
+    assert "mean of each 2.34 ms" in labels

@@ -2,7 +2,7 @@
 
 import numpy as np
 
-from wavegen.reports.figures.trade import Front, front_figure, gain_figure
+from wavegen.reports.figures.trade import Front, difference_figure, front_figure, gain_figure
 
 
 def test_points_that_nothing_beats_are_joined_in_the_order_of_evm():
@@ -24,3 +24,16 @@ def test_gain_with_and_without_interval():
     figure = gain_figure(rows, title="T", compression_db=3.0)
     assert len(figure.axes[0].collections) == 1
     assert "3.00 dB" in figure.axes[0].texts[0].get_text()
+
+
+def test_a_difference_is_drawn_with_intervals_and_tolerance():
+    rows = [
+        {"probability": 0.1, "difference_db": 0.05, "low_db": 0.0, "high_db": 0.1},
+        {"probability": 0.01, "difference_db": -0.3, "low_db": None, "high_db": None},
+    ]
+    figure = difference_figure(rows, title="T", name="a less b, dB", tolerance_db=0.2)
+    axes = figure.axes[0]
+    (bars,) = axes.collections
+    assert len(bars.get_segments()) == 1
+    assert axes.get_ylim()[1] == -axes.get_ylim()[0] > 0.3
+    assert axes.get_ylabel() == "a less b, dB"

@@ -9,71 +9,134 @@ from typing import Any
 import numpy as np
 
 from wavegen.reports.figures.picture import Picture
-from wavegen.reports.figures.power import CcdfCurve, ccdf_figure
-from wavegen.reports.figures.trade import Front, front_figure, gain_figure
+from wavegen.reports.figures.power import CcdfCurve, ccdf_figure, gaussian_curve
+from wavegen.reports.figures.trade import Front, difference_figure, front_figure, gain_figure
 from wavegen.reports.tables import percent
 
 
 def match_pictures(document: dict[str, Any]) -> list[Picture]:
-    """Return both curves of a match."""
+    """Return both curves of a match, and their difference."""
     names = (document["stimulus"]["name"], document["field"]["name"])
-    return [_levels_picture(document["levels"], names, "Stimulus against field")]
+    return _against(document, names, "Stimulus against field")
 
 
 def shape_pictures(document: dict[str, Any]) -> list[Picture]:
-    """Return both curves of a shaped stimulus and its field."""
+    """Return both curves of a shaped stimulus and its field, and their difference."""
     names = (document["name"], document["field"])
-    return [_levels_picture(document["levels"], names, "Shaped stimulus against field")]
+    return _against(document, names, "Shaped stimulus against field")
 
 
-def _levels_picture(rows: Sequence[dict[str, Any]], names: tuple[str, str], title: str) -> Picture:
-    curves = []
-    for key, name in zip(("stimulus_db", "field_db"), names, strict=True):
-        used = [row for row in rows if row[key] is not None]
-        level = np.array([row[key] for row in used], np.float64)
-        share = np.array([row["probability"] for row in used], np.float64)
-        curves.append(CcdfCurve(name=name, level_db=level, probability=share))
-    differences = [
-        f"{percent(row['probability'])}: {row['difference_db']:+.2f} dB"
-        for row in rows
-        if row["difference_db"] is not None
+def _against(document: dict[str, Any], names: tuple[str, str], title: str) -> list[Picture]:
+    rows = document["levels"]
+    told = [row for row in rows if row["difference_db"] is not None]
+    differences = [f"{percent(row['probability'])}: {row['difference_db']:+.2f} dB" for row in told]
+    said = f"Stimulus less field: {', '.join(differences) or 'not known'}."
+    curves = [
+        _curve(rows, key, name)
+        for key, name in zip(("stimulus_db", "field_db"), names, strict=True)
     ]
-    least = min(row["probability"] for row in rows)
-    return Picture(
-        name="ccdf",
-        figure=ccdf_figure(
-            curves, title=title, marks=(), least=10.0 ** math.floor(math.log10(least))
-        ),
-        caption="CCDFs of both sides, each over its own mean.",
-        alternative=f"Two curves. Stimulus less field: {', '.join(differences)}.",
+    found = [
+        Picture(
+            name="ccdf",
+            figure=ccdf_figure(
+                [*curves, gaussian_curve()], title=title, marks=(), least=_decade_below(rows)
+            ),
+            caption="CCDFs of both sides, each over its own mean.",
+            alternative=f"Two curves. {said}",
+        )
+    ]
+    if told:
+        found.append(
+            Picture(
+                name="difference",
+                figure=difference_figure(
+                    told,
+                    title=title,
+                    name="stimulus less field, dB",
+                    tolerance_db=document["tolerance_db"],
+                ),
+                caption="Difference of the levels at each probability, with its interval, and the "
+                "tolerance.",
+                alternative=f"Points with intervals. {said}",
+            )
+        )
+    return found
+
+
+def _curve(rows: Sequence[dict[str, Any]], key: str, name: str) -> CcdfCurve:
+    """Return the curve through the levels that rows tell."""
+    used = [row for row in rows if row[key] is not None]
+    return CcdfCurve(
+        name=name,
+        level_db=np.array([row[key] for row in used], np.float64),
+        probability=np.array([row["probability"] for row in used], np.float64),
+        has_marks=True,
     )
 
 
+def _decade_below(rows: Sequence[dict[str, Any]]) -> float:
+    least = min(row["probability"] for row in rows)
+    return float(10.0 ** math.floor(math.log10(least) + 1e-9))
+
+
 def gain_pictures(document: dict[str, Any]) -> list[Picture]:
-    """Return the gain curve of a device."""
+    """Return the gain curve of a device, and the CCDFs of its input and output."""
     rows = [row for row in document["gain"] if row["gain_db"] is not None]
-    if not rows:
-        return []
-    is_absolute = document.get("input_p1db_dbm") is not None or document.get("unit") == "dBm"
-    where = "dBm" if is_absolute else "dB over the input mean"
-    point = document.get("input_p1db_dbm", document.get("input_p1db_db"))
-    low, high = rows[0], rows[-1]
-    return [
-        Picture(
-            name="gain",
-            figure=gain_figure(
-                rows,
-                title="Gain of the device",
-                input_name=f"input level, {where}",
-                compression_db=point,
-            ),
-            caption="Gain against input level, quantile to quantile, with its interval.",
-            alternative=(
-                f"Curve from {low['gain_db']:.2f} dB at {low['input_db']:.1f} to "
-                f"{high['gain_db']:.2f} dB at {high['input_db']:.1f}."
-            ),
+    found = []
+    if rows:
+        found.append(_gain(document, rows))
+    levels = document["levels"]
+    if levels:
+        names = (document["input"]["name"], document["output"]["name"])
+        curves = [
+            _curve(levels, key, f"{side}: {name}")
+            for side, key, name in zip(
+                ("input", "output"),
+                ("input_over_mean_db", "output_over_mean_db"),
+                names,
+                strict=True,
+            )
+        ]
+        changes = [f"{percent(row['probability'])}: {row['change_db']:+.2f} dB" for row in levels]
+        found.append(
+            Picture(
+                name="ccdf",
+                figure=ccdf_figure(
+                    [*curves, gaussian_curve()],
+                    title="Input and output of the device",
+                    marks=(),
+                    least=_decade_below(levels),
+                ),
+                caption="CCDFs of input and output, each over its own mean.",
+                alternative=f"Two curves. Output less input: {', '.join(changes)}.",
+            )
         )
-    ]
+    return found
+
+
+def _gain(document: dict[str, Any], rows: Sequence[dict[str, Any]]) -> Picture:
+    is_absolute = "input_dbm" in rows[0]
+    key, unit = ("input_dbm", "dBm") if is_absolute else ("input_db", "dB")
+    point = document.get("input_p1db_dbm" if is_absolute else "input_p1db_db")
+    low, high = rows[0], rows[-1]
+    return Picture(
+        name="gain",
+        figure=gain_figure(
+            rows,
+            title="Gain of the device",
+            input_name="input level, dBm" if is_absolute else "input level over the input mean, dB",
+            input_key=key,
+            compression_db=point,
+            unit=unit,
+            gain_name=document["gain_is"],
+        ),
+        caption="Gain against input level, quantile to quantile, with its interval.",
+        alternative=(
+            f"Curve from {low['gain_db']:.2f} dB at {low[key]:.1f} {unit} to "
+            f"{high['gain_db']:.2f} dB at {high[key]:.1f} {unit}."
+            + ("" if point is None else f" Down by 1 dB at {point:.2f} {unit}.")
+        ),
+    )
 
 
 def tune_pictures(document: dict[str, Any]) -> list[Picture]:
@@ -97,7 +160,9 @@ def tune_pictures(document: dict[str, Any]) -> list[Picture]:
                 fronts or [_front("projection", own)],
                 title="What a lower level costs",
                 level_name=f"level at {percent(document['probability'])}, dB over the mean",
-                bound=_front("least-distortion projection", own) if own and fronts else None,
+                bound=_front("projection: least distortion in band", own)
+                if own and fronts
+                else None,
                 evm_limit_percent=document["limits"]["evm_percent"],
             ),
             caption="Every setting that was tried: level against EVM.",

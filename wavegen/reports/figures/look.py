@@ -63,7 +63,7 @@ STROKES = (
     Stroke(colour="#a16207", dashes=(4, 1.5, 1.5, 1.5, 1.5, 1.5), mark="v"),
     Stroke(colour="#5b6673", dashes=(1, 1.2), mark="P"),
 )
-REFERENCE = Stroke(colour="#75808b", dashes=(1, 1.6), mark="", width=1.4)
+REFERENCE = Stroke(colour="#75808b", dashes=(1, 1.6), mark="x", width=1.4)
 """What stands for comparison only: the complex Gaussian."""
 LAW = Stroke(colour="#b5179e", dashes=(4, 1.4, 1, 1.4), mark="", width=1.8)
 """What mathematics says of the curve beside it."""
@@ -78,14 +78,24 @@ def stroke(number: int) -> Stroke:
     return STROKES[number % len(STROKES)]
 
 
-def draw(axes: Axes, x: Any, y: Any, style: Stroke, *, label: str | None = None) -> None:
-    """Draw a line with a stroke."""
+def draw(
+    axes: Axes,
+    x: Any,
+    y: Any,
+    style: Stroke,
+    *,
+    label: str | None = None,
+    has_marks: bool = False,
+) -> None:
+    """Draw a line with a stroke, and its points if they are few enough to be told."""
     axes.plot(
         x,
         y,
         color=style.colour,
         linewidth=style.width,
         linestyle=(0, style.dashes) if style.dashes else "-",
+        marker=style.mark if has_marks else "",
+        markersize=6,
         label=label,
     )
 

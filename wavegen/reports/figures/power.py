@@ -52,6 +52,8 @@ class CcdfCurve:
         What is measured; what mathematics says of it; what only stands for comparison.
     peak_db : float, optional
         Highest level that there is at all: the curve is drawn down to nothing there.
+    has_marks : bool
+        Whether its points are drawn too: where they are few.
     """
 
     name: str
@@ -61,6 +63,7 @@ class CcdfCurve:
     high: NDArray[np.float64] | None = None
     kind: Literal["measured", "law", "reference"] = "measured"
     peak_db: float | None = None
+    has_marks: bool = False
 
     @classmethod
     def of(cls, name: str, ccdf: dict[str, Any], **more: Any) -> CcdfCurve:
@@ -194,7 +197,7 @@ def _draw_curve(axes: Axes, curve: CcdfCurve, style: Stroke, floor: float) -> No
         last = share[inside][-1] if inside.any() else 1.0
         level = np.concatenate([level[inside], [curve.peak_db, curve.peak_db]])
         share = np.concatenate([share[inside], [last, floor / 10]])
-    draw(axes, level, share, style, label=curve.name)
+    draw(axes, level, share, style, label=curve.name, has_marks=curve.has_marks)
     if curve.low is not None and curve.high is not None:
         axes.fill_between(
             curve.level_db[drawn],
@@ -223,7 +226,8 @@ def _scale_ccdf(axes: Axes, curves: Sequence[CcdfCurve], floor: float) -> None:
         if curve.kind != "reference":
             seen = curve.level_db[curve.probability > floor]
             ends.append(float(seen.max(initial=0.0)) if curve.peak_db is None else curve.peak_db)
-    left = min(_LOWEST_DB, min(ends) - 1)
+    starts = [float(curve.level_db.min(initial=0.0)) for curve in curves]
+    left = max(_LOWEST_DB, min(starts) - 1)
     right = max(*ends, 2.0)
     axes.set_xlim(left, right + 0.14 * (right - left))
     axes.set_xlabel("level above the mean power, dB")

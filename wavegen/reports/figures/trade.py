@@ -10,6 +10,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from wavegen.reports.figures.look import INK, REFERENCE, SHADE, draw, legend, new_figure, stroke
+from wavegen.reports.tables import percent
 
 if TYPE_CHECKING:
     from matplotlib.figure import Figure
@@ -69,7 +70,7 @@ def front_figure(
     figure, (axes,) = new_figure(title)
     for number, front in enumerate(fronts):
         style = stroke(number)
-        draw(axes, *front.best, style, label=front.name)
+        draw(axes, *front.best, style, label=front.name.replace("_", " "))
         axes.plot(
             front.evm_percent,
             front.level_db,
@@ -79,7 +80,7 @@ def front_figure(
             color=style.colour,
         )
     if bound is not None:
-        draw(axes, *bound.best, REFERENCE, label=bound.name)
+        draw(axes, *bound.best, REFERENCE, label=bound.name, has_marks=True)
     if evm_limit_percent is not None:
         right = max(axes.get_xlim()[1], evm_limit_percent * 1.1)
         axes.axvspan(evm_limit_percent, right, facecolor=SHADE, zorder=0)
@@ -94,26 +95,83 @@ def front_figure(
     return figure
 
 
+def difference_figure(
+    rows: Sequence[dict[str, Any]], *, title: str, name: str, tolerance_db: float
+) -> Figure:
+    """Draw the difference of two curves at each probability, with its interval.
+
+    Parameters
+    ----------
+    rows : sequence of dict
+        ``probability``, ``difference_db`` and, where known, ``low_db`` and ``high_db``.
+    title, name : str
+        Heading, and what the difference is of.
+    tolerance_db : float
+        Within which both count as alike; shaded.
+
+    Returns
+    -------
+    Figure
+    """
+    from matplotlib.ticker import LogLocator, NullFormatter
+
+    figure, (axes,) = new_figure(title)
+    share, difference = _columns(rows, "probability", "difference_db")
+    axes.axhspan(
+        -tolerance_db,
+        tolerance_db,
+        facecolor=SHADE,
+        zorder=0,
+        label=f"tolerance, {tolerance_db:g} dB either way",
+    )
+    axes.axhline(0.0, color=INK, linewidth=1.0)
+    place, low, high = _columns(rows, "probability", "low_db", "high_db")
+    colour = stroke(0).colour
+    axes.vlines(place, low, high, color=colour, linewidth=2.0, alpha=0.6, label="95 % interval")
+    draw(axes, share, difference, stroke(0), label="difference", has_marks=True)
+    axes.set_xscale("log")
+    axes.set_xlim(float(share.max()) * 1.5, float(share.min()) / 1.5)  # rarer to the right
+    axes.xaxis.set_major_locator(LogLocator(numticks=12))
+    axes.xaxis.set_major_formatter(lambda value, _: percent(value))
+    axes.xaxis.set_minor_formatter(NullFormatter())
+    reach = 1.15 * max(np.abs(np.concatenate([difference, low, high])).max(), tolerance_db)
+    axes.set_ylim(-reach, reach)
+    axes.set_xlabel("share of time above the level")
+    axes.set_ylabel(name)
+    legend(axes)
+    return figure
+
+
+def _columns(rows: Sequence[dict[str, Any]], *keys: str) -> list[NDArray[np.float64]]:
+    """Return columns of the rows that have a value in each."""
+    used = [row for row in rows if all(row.get(key) is not None for key in keys)]
+    return [np.array([row[key] for row in used], np.float64) for key in keys]
+
+
 def gain_figure(
     rows: Sequence[dict[str, Any]],
     *,
     title: str,
-    input_name: str = "input level, dB over the input mean",
+    input_name: str = "input level over the input mean, dB",
+    input_key: str = "input_db",
     compression_db: float | None = None,
     unit: str = "dB",
+    gain_name: str = "gain, dB",
 ) -> Figure:
     """Draw a device's gain against its input level.
 
     Parameters
     ----------
     rows : sequence of dict
-        ``input_db``, ``gain_db`` and, where known, ``low_db`` and ``high_db``.
-    title, input_name : str
-        Heading, and what the level is over.
+        The input level, ``gain_db`` and, where known, ``low_db`` and ``high_db``.
+    title, input_name, input_key : str
+        Heading, name of the level axis, and where rows hold that level.
     compression_db : float, optional
         Input level of the 1 dB compression point.
     unit : str
         Of input levels.
+    gain_name : str
+        Of the other axis.
 
     Returns
     -------
@@ -122,12 +180,12 @@ def gain_figure(
     figure, (axes,) = new_figure(title)
     columns = {
         key: np.array([np.nan if row.get(key) is None else row[key] for row in rows], np.float64)
-        for key in ("input_db", "gain_db", "low_db", "high_db")
+        for key in (input_key, "gain_db", "low_db", "high_db")
     }
-    draw(axes, columns["input_db"], columns["gain_db"], stroke(0), label="gain")
+    draw(axes, columns[input_key], columns["gain_db"], stroke(0), label="gain")
     if np.isfinite(columns["low_db"]).any():
         axes.fill_between(
-            columns["input_db"],
+            columns[input_key],
             columns["low_db"],
             columns["high_db"],
             color=stroke(0).colour,
@@ -148,6 +206,6 @@ def gain_figure(
             color=INK,
         )
     axes.set_xlabel(input_name)
-    axes.set_ylabel("gain, dB")
+    axes.set_ylabel(gain_name)
     legend(axes)
     return figure
