@@ -22,6 +22,8 @@ from wavegen.recipe.tables import Tables
         ("1 symbol", Fraction(1), "symbols"),
         ("12288 samples", Fraction(12288), "samples"),
         ("1e3 samples", Fraction(1000), "samples"),
+        ("2 PRBS periods", Fraction(2), "periods"),
+        ("1 prbs period", Fraction(1), "periods"),
     ],
 )
 def test_a_duration_keeps_its_value_and_unit(text: str, value: Fraction, unit: str) -> None:
@@ -106,3 +108,11 @@ second_channel: {{signal: {{kind: choosy, high: 2}}, stages: [{{kind: ceiling, c
     ):
         with pytest.raises(RecipeError):
             load_text(f"{head}signal: {{kind: choosy}}\n{wrong}\n", tables=tables)
+
+
+@pytest.mark.parametrize("text", ["4 foo bars", "0 PRBS periods", "4 parsecs", "1.5 PRBS periods"])
+def test_what_is_no_duration_is_told_how_to_write_one(text):
+    with pytest.raises(QuantityError) as caught:
+        Extent.parse(text)
+    assert "PRBS periods" in caught.value.allowed
+    assert "10 ms" in caught.value.remedy

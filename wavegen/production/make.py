@@ -48,6 +48,7 @@ from wavegen.production.judgement import (
 from wavegen.production.marking import markers_of
 from wavegen.production.prepare import Prepared, prepare
 from wavegen.production.scaling import gain_for
+from wavegen.production.short_patterns import short_patterns
 from wavegen.production.side_information import choice_taps, side_names, side_rows, side_tables
 from wavegen.production.sidecar import as_csv, as_json, describe
 from wavegen.production.stimulus_document import MadeChannel, stimulus_document
@@ -161,6 +162,7 @@ def make(
         loaded, tried = found.loaded, found.rows
     prepared = prepare(loaded)
     laws = [law_of(channel) for channel in prepared.channels]
+    prepared.notes.extend(short_patterns(prepared.channels, laws, down_to=question.down_to))
     with Drafts(out / loaded.name, overwrite=overwrite) as drafts:
         targets = plan_files(prepared, drafts)
         sidecar = drafts.add(f"{loaded.name}.ccdf.json")

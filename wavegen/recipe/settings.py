@@ -19,7 +19,8 @@ from wavegen.recipe.format_request import FormatRequest
 Unit = Literal["seconds", "symbols", "samples", "periods"]
 
 _SUFFIX: dict[Unit, str] = {"seconds": "_s", "symbols": "_symbols", "samples": "_samples"}
-_PERIODS = re.compile(r"([1-9][0-9]{0,9}) PRBS periods?")
+_PERIODS = re.compile(r"([1-9][0-9]{0,9})\s*PRBS periods?", re.IGNORECASE)
+_EXAMPLES = "Write it like 10 ms, 140 symbols, 12288 samples or 2 PRBS periods."
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -51,13 +52,20 @@ class Extent:
                 problem=f"{value!r} has no unit"
                 if isinstance(value, int | float) and not isinstance(value, bool)
                 else f"{str(value)[:40]!r} is no duration",
-                allowed="a time, symbols or samples",
-                remedy="Write it like 10 ms, 140 symbols or 12288 samples.",
+                allowed="a time, symbols, samples or PRBS periods",
+                remedy=_EXAMPLES,
             )
         periods = _PERIODS.fullmatch(value.strip())
         if periods:
             return cls(value=Fraction(periods[1]), unit="periods")
-        number, word = split_quantity(value)
+        try:
+            number, word = split_quantity(value)
+        except QuantityError as error:
+            raise QuantityError(
+                problem=error.problem,
+                allowed="a time, symbols, samples or PRBS periods",
+                remedy=_EXAMPLES,
+            ) from error
         unit = next((u for u, suffix in _SUFFIX.items() if word in DIMENSIONS[suffix].units), None)
         if unit is None:
             known = [w for suffix in _SUFFIX.values() for w in DIMENSIONS[suffix].units]
@@ -66,10 +74,8 @@ class Extent:
                 problem=f"{value!r} has the unknown unit {word!r}"
                 if word
                 else f"{value!r}: no unit",
-                allowed="one of: " + ", ".join(known),
-                remedy=f"Did you mean {guess}?"
-                if guess
-                else "Write it like 10 ms, 140 symbols or 12288 samples.",
+                allowed="one of: " + ", ".join([*known, "PRBS periods"]),
+                remedy=f"Did you mean {guess}?" if guess else _EXAMPLES,
             )
         number = parse_quantity(value, DIMENSIONS[_SUFFIX[unit]])
         if number <= 0 or (unit != "seconds" and number.denominator != 1):
@@ -78,7 +84,7 @@ class Extent:
                 if number <= 0
                 else f"{value!r} is not a whole number of {unit}",
                 allowed="times above zero; whole symbols or samples from 1",
-                remedy="Write it like 10 ms, 140 symbols or 12288 samples.",
+                remedy=_EXAMPLES,
             )
         return cls(value=number, unit=unit)
 
