@@ -40,3 +40,16 @@ def test_a_fault_needs_its_probability(call, recipe):
     said = call("predict", recipe(), "--fault", "0.1dB")
     assert said.status == 2
     assert "--at" in said.err
+
+
+def test_evm_and_aclr_behind_a_clip(call, recipe):
+    clip = ("--set", "stages=[{kind: clip, ceiling: 5 dB}]")
+    said = call("predict", recipe(), "--set", "signal={kind: noise, bandwidth: 1 MHz}", *clip)
+    assert "EVM within the band" in said.out
+    assert "ACLR at" in said.out
+    assert max(map(len, said.out.splitlines())) <= 80
+    carrier = (
+        "signal={kind: single_carrier, constellation: qpsk, symbol_rate: 100 kHz, "
+        "pulse: {kind: root_raised_cosine, roll_off: 0.22}}"
+    )
+    assert "EVM and ACLR" in call("predict", recipe(), "--set", carrier, *clip).out

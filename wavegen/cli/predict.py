@@ -17,8 +17,9 @@ class Predict:
     summary = "say what a recipe's power statistics must be, without a sample"
     description = (
         "Print the levels that mathematics gives for a recipe at 10 % ... 1e-9, and the\n"
-        "highest peak that can occur. What has no law says so by name. With --fault and\n"
-        "--at, say how long a loop must be for its verdict to find such a fault."
+        "highest peak that can occur; behind clips and amplifiers, EVM and ACLR of signals\n"
+        "like Gaussian noise. What has no law says so by name. With --fault and --at, say\n"
+        "how long a loop must be for its verdict to find such a fault."
     )
     examples = (
         "wavegen predict harbour-link-qpsk",
@@ -69,7 +70,7 @@ class Predict:
 
 def show(document: dict[str, Any], console: Console) -> None:
     """Print one prediction."""
-    from wavegen.reports.tables import fault_words, law_table
+    from wavegen.reports.tables import distortion_table, fault_words, law_table
 
     for note in (*document["rounded"], *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
@@ -78,5 +79,10 @@ def show(document: dict[str, Any], console: Console) -> None:
         console.line(f"{title}: no law. {document['no_law']}.")
         return
     console.table(law_table(document["law"], title=title))
+    distortion = document["distortion"]
+    if distortion is not None and distortion["says"] is None:
+        console.table(distortion_table(distortion))
+    elif distortion is not None:
+        console.line(f"EVM and ACLR: {distortion['says']}.")
     if document["fault"]:
         console.line(fault_words(document["fault"]))

@@ -199,6 +199,29 @@ def law_table(law: dict[str, Any], *, title: str) -> Table:
     )
 
 
+def distortion_table(found: dict[str, Any]) -> Table:
+    """Return what memoryless steps do to a signal like complex Gaussian noise."""
+    rows = [
+        ("EVM within the band, gain fitted", f"{found['evm_in_band_percent']:.3f} %"),
+        ("EVM in all bandwidth, gain fitted", f"{found['evm_percent']:.3f} %"),
+        ("error in all bandwidth, nothing fitted", f"{found['evm_unfitted_percent']:.3f} %"),
+        *(
+            (
+                f"ACLR at {format_hz(round(row['offset_hz']))}",
+                "nothing" if row["aclr_db"] is None else fixed(row["aclr_db"], "dB"),
+            )
+            for row in found["aclr"]
+        ),
+        ("change of the mean by the curve, undone", f"{found['mean_shift_db']:+.3f} dB"),
+    ]
+    return Table(
+        title=f"The steps, {found['is']} ({found['channels']})",
+        headings=("figure", "predicted"),
+        rows=tuple(rows),
+        right=frozenset({1}),
+    )
+
+
 def fault_words(fault: dict[str, Any]) -> str:
     """Say how long a loop must be to show a fault."""
     what = f"A fault of {fault['fault_db']:g} dB at {percent(fault['probability'])}"
