@@ -16,7 +16,7 @@ from wavegen.reports.result import Result
 
 if TYPE_CHECKING:
     from wavegen.comparison.match import MatchSettings
-    from wavegen.comparison.sides import SideSettings
+    from wavegen.comparison.side import SideSettings
     from wavegen.files.format import ReadHints
     from wavegen.production.measure_settings import MeasureSettings
     from wavegen.tuning.request import TuneRequest
@@ -225,7 +225,7 @@ def match(
     """
     from wavegen.comparison.match import DEFAULT
     from wavegen.comparison.match import match as run
-    from wavegen.comparison.sides import SideSettings
+    from wavegen.comparison.side import SideSettings
     from wavegen.reports import comparison
 
     first, second = (

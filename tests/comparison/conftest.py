@@ -8,7 +8,8 @@ import pytest
 import scipy.fft
 
 from wavegen.comparison.curves import SampledCurve, ScaleStatistics
-from wavegen.comparison.sides import SideSettings, measured_side
+from wavegen.comparison.measured_side import measured_side
+from wavegen.comparison.side import SideSettings
 from wavegen.core.signal import Signal
 from wavegen.meters.batches import measure_batches
 from wavegen.meters.intervals import SampledStatistics

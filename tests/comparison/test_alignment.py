@@ -3,7 +3,7 @@ import pytest
 
 from wavegen.comparison.alignment import align
 from wavegen.comparison.curves import ExactCurve
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.laws.gaussian import GaussianLaw
 
 N = 1 << 15

@@ -5,7 +5,7 @@ import numpy as np
 import pytest
 
 from wavegen.comparison.gain_curve import GainSettings, gain_curve
-from wavegen.comparison.sides import SideSettings
+from wavegen.comparison.side import SideSettings
 from wavegen.files.format import ReadHints
 from wavegen.production.subject_files import FilePart
 

@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 
 from wavegen.comparison.match import MatchSettings, match
-from wavegen.comparison.sides import SideSettings
+from wavegen.comparison.side import SideSettings
 from wavegen.core.errors import SignalError
 from wavegen.files.format import ReadHints
 from wavegen.production.subject_files import FilePart

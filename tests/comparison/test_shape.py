@@ -5,9 +5,10 @@ from pathlib import Path
 
 import numpy as np
 import pytest
+import soundfile
 
 from wavegen.comparison.shape import ShapeSettings, shape
-from wavegen.comparison.sides import SideSettings
+from wavegen.comparison.side import SideSettings
 from wavegen.core.errors import ArgumentsError, FileError
 from wavegen.core.timespan import TimeSpan
 from wavegen.files.format import ReadHints
@@ -57,8 +58,11 @@ def test_levels_and_spectrum_are_followed(tmp_path):
     names = {path.name for path in folder.iterdir()}
     assert {"twin.yaml", "twin.curve.csv", "twin.spectrum.csv", "twin.ccdf.json"} <= names
     made = np.fromfile(folder / "twin.sigmf-data", "<i2").reshape(-1, 2) @ np.array([1, 1j])
-    likeness = abs(np.vdot(made, clipped())) / np.linalg.norm(made) / np.linalg.norm(clipped())
-    assert likeness < 0.05  # none of the content
+    # None of the content, however it is shifted: of 2^15 lags of two independent signals with 30 %
+    # of the band the largest correlation is about sqrt(ln(2^15) / (0.3 * 2^15)) = 0.033.
+    spectra = np.fft.fft(made), np.fft.fft(clipped())
+    shifted = np.abs(np.fft.ifft(spectra[0] * np.conj(spectra[1])))
+    assert shifted.max() < 0.06 * np.linalg.norm(made) * np.linalg.norm(clipped())
 
 
 def test_the_recipe_makes_it_again(tmp_path):
@@ -89,6 +93,40 @@ def test_on_times_are_followed_and_gated(tmp_path):
     assert document["gate"]["period_samples"] == 4096
     assert document["gate"]["duty"] == pytest.approx(0.25, abs=0.02)
     assert document["verdict"] == "match"
+    # In the codes themselves: silence between on-times, and on them the field's levels.
+    made = np.fromfile(tmp_path / "out" / "twin" / "twin.sigmf-data", "<i2").reshape(-1, 2)
+    power = (made.astype(np.float64) ** 2).sum(1)
+    own = np.abs(clipped()[gate > 0]) ** 2
+    for frame in power.reshape(-1, 4096):
+        assert frame[:1024].any()
+        assert not frame[1200:].any()
+    on = power.reshape(-1, 4096)[:, 40:1000].ravel()
+    for share in (0.5, 0.1, 0.01):
+        levels = [10 * np.log10(np.quantile(x, 1 - share) / x.mean()) for x in (on, own)]
+        assert levels[0] == pytest.approx(levels[1], abs=0.1)  # the ramps are left out roughly
+
+
+def test_off_times_shaped_as_if_they_were_signal_are_told_of(tmp_path):
+    gate = np.where(np.arange(N) % 4096 < 1024, 1, 1e-3)
+    field = written(tmp_path / "field.ci16", clipped() * gate)
+    document = shape(field, settings(), out=tmp_path / "out")
+    assert any("--gate auto" in row["text"] for row in document["warnings"])
+
+
+def test_real_samples_are_followed_by_their_envelope(tmp_path):
+    """A carrier at a quarter of the rate: what is made is its complex envelope, at its rate."""
+    turned = clipped() * np.exp(0.5j * np.pi * np.arange(N))
+    path = tmp_path / "field.wav"
+    soundfile.write(path, turned.real, 48_000, subtype="PCM_24")
+    document = shape(SideSettings(subject=str(path), removes_offset=True), settings(), out=tmp_path)
+    assert document["verdict"] == "match"
+    levels = {row["probability"]: row["field_db"] for row in document["levels"]}
+    power = np.abs(clipped()) ** 2
+    for share in (0.1, 0.01):
+        expected = 10 * np.log10(np.quantile(power, 1 - share) / power.mean())
+        assert levels[share] == pytest.approx(expected, abs=0.05)
+    # 30 % of 1 MHz in 48 kHz
+    assert document["spectrum"]["occupied_bandwidth_hz"] == pytest.approx(0.3 * 48e3, rel=0.02)
 
 
 def test_a_curve_needs_a_bandwidth_and_a_rate(tmp_path):
@@ -106,7 +144,9 @@ def test_a_curve_needs_a_bandwidth_and_a_rate(tmp_path):
         out=tmp_path / "out",
     )
     assert document["verdict"] == "match"
-    assert document["spectrum"] is None
+    assert document["spectrum"]["is_over"] == "a flat one"
+    # forty bands of 245 lines of the loop each, whose amplitudes are set, less the window's reach
+    assert abs(document["spectrum"]["largest_difference_db"]) < 0.5
 
 
 def test_what_no_signal_has_ends_at_the_nearest(tmp_path):

@@ -6,7 +6,7 @@ import pytest
 
 from wavegen.comparison import spectra
 from wavegen.comparison.curves import ExactCurve
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.comparison.spectra import (
     refuse_too_narrow,
     side_spectrum,
@@ -71,6 +71,14 @@ def test_equal_densities_differ_by_their_own_noise(side):
 
 def test_densities_are_compared_centre_on_centre(side):
     assert abs(difference(side(centre_hz=1e5), side()).largest_db) < 1.2
+
+
+def test_centres_are_left_where_they_are_if_asked(side):
+    found = spectrum_difference(
+        side_spectrum(side(centre_hz=1e5)), side_spectrum(side()), is_centred=False
+    )
+    assert found.difference_db.min() < -40  # where only the second one is
+    assert found.offset_hz == pytest.approx(1e5, rel=0.05)
 
 
 def test_a_tilt_is_seen(side):

@@ -10,7 +10,8 @@ import numpy as np
 import pytest
 
 from wavegen.comparison.device_gain import device_gain
-from wavegen.comparison.sides import SideSettings, measured_side
+from wavegen.comparison.measured_side import measured_side
+from wavegen.comparison.side import SideSettings
 from wavegen.comparison.spectra import side_spectrum, spectrum_difference
 from wavegen.files.format import ReadHints
 from wavegen.production.subject_files import FilePart, open_subject

@@ -13,7 +13,7 @@ from wavegen.comparison.curves import ExactCurve, PointsCurve
 from wavegen.comparison.difference import compare
 from wavegen.comparison.match import match
 from wavegen.comparison.needed_samples import needed_samples
-from wavegen.comparison.sides import SideSettings
+from wavegen.comparison.side import SideSettings
 from wavegen.core.errors import FileError
 from wavegen.laws.gaussian import GaussianLaw
 

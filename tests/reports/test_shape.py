@@ -37,7 +37,13 @@ def test_levels_and_files():
         ({"largest_difference_db": None}, "no level"),
         ({"skipped_samples": 7}, "first 7 samples"),
         (
-            {"spectrum": {"occupied_bandwidth_hz": 5e6, "largest_difference_db": -0.3}},
+            {
+                "spectrum": {
+                    "occupied_bandwidth_hz": 5e6,
+                    "largest_difference_db": -0.3,
+                    "is_over": "the field's",
+                }
+            },
             "within 0.30 dB",
         ),
         ({"gate": {"is": "regular", "duty": 0.25, "period_samples": 400}}, "25 % of 400"),

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 
 from wavegen.comparison.match import MatchSettings, match
-from wavegen.comparison.sides import SideSettings
+from wavegen.comparison.side import SideSettings
 from wavegen.core.timespan import TimeSpan
 from wavegen.files.format import ReadHints
 from wavegen.production.measure_settings import GateSettings

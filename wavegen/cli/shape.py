@@ -113,7 +113,7 @@ class Shape:
 
 
 def _field(arguments: argparse.Namespace) -> Any:
-    from wavegen.comparison.sides import SideSettings
+    from wavegen.comparison.side import SideSettings
     from wavegen.production.subject_files import FilePart
 
     if is_recipe(arguments.field):

@@ -18,7 +18,7 @@ from wavegen.cli.options import (
 from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
-    from wavegen.comparison.sides import SideSettings
+    from wavegen.comparison.side import SideSettings
 
 
 def count(text: str) -> int:
@@ -130,7 +130,7 @@ def side_of(arguments: argparse.Namespace, side: str, subject: str) -> SideSetti
     ArgumentsError
         Options that do not go together, or that mean nothing for a recipe.
     """
-    from wavegen.comparison.sides import SideSettings
+    from wavegen.comparison.side import SideSettings
     from wavegen.production.subject_files import FilePart
 
     mine = _merged(arguments, side)

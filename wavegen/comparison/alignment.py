@@ -14,7 +14,7 @@ import scipy.fft
 import scipy.optimize
 from numpy.typing import NDArray
 
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples
 

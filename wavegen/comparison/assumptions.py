@@ -9,7 +9,7 @@ import numpy as np
 
 from wavegen.comparison.alignment import Alignment
 from wavegen.comparison.gain import GainPoints, SmallSignal, points_at
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.comparison.spectra import SpectrumDifference
 from wavegen.core.units import format_hz
 
@@ -89,7 +89,7 @@ def _bandwidth(spectra: SpectrumDifference | None) -> Assumption:
     ratio = rate_hz / width_hz
     text = (
         f"the output is sampled at {format_hz(rate_hz)}, {ratio:.2f} times the "
-        f"{format_hz(round(width_hz))} that the input occupies"
+        f"{format_hz(width_hz, digits=4)} that the input occupies"
     )
     if ratio >= WIDE_ENOUGH:
         return Assumption(name=name, holds=True, says=text)

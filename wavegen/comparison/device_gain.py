@@ -19,7 +19,7 @@ from wavegen.comparison.gain import (
     small_signal,
 )
 from wavegen.comparison.needed_samples import Needed, needed_samples
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.comparison.spectra import SpectrumDifference
 from wavegen.core.errors import SignalError
 

@@ -27,8 +27,10 @@ ROLL_OFFS = (0.1, 0.25, 0.5)
 CONSTELLATIONS = ("bpsk", "qpsk", "16qam", "64qam")
 TONES = (2, 3, 4, 6, 8, 12, 16, 24, 32)
 LOWEST_K_DB, HIGHEST_K_DB = -10.0, 30.0
-_PER_SYMBOL = 4
-_SYMBOLS = 4096
+_PER_SYMBOL = 8
+"""Instants of a symbol that a carrier's law is averaged over: four leave 0.07 dB at BPSK, eight
+0.02 dB (against sixteen)."""
+_SYMBOLS = 2048
 
 
 class Family(Protocol):

@@ -10,7 +10,8 @@ from wavegen.comparison.device_gain import DeviceGain, device_gain
 from wavegen.comparison.device_table import device_table, write_device
 from wavegen.comparison.difference import DOWN_TO, TOLERANCE_DB
 from wavegen.comparison.gain_document import gain_document
-from wavegen.comparison.sides import SideSettings, open_side
+from wavegen.comparison.side import SideSettings
+from wavegen.comparison.sides import open_side
 from wavegen.comparison.spectra import side_spectrum, spectrum_difference
 from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.progress import Progress, silent

@@ -26,8 +26,9 @@ from wavegen.comparison.match_document import (
     spectrum_document,
 )
 from wavegen.comparison.match_words import called, statement
-from wavegen.comparison.needed_samples import needed_samples
-from wavegen.comparison.sides import Side, SideSettings, open_side
+from wavegen.comparison.needed_samples import Needed, needed_samples
+from wavegen.comparison.side import Side, SideSettings
+from wavegen.comparison.sides import open_side
 from wavegen.comparison.spectra import (
     SpectrumDifference,
     refuse_too_narrow,
@@ -108,7 +109,8 @@ def match(
     )
     sides = first, second
     recorded = _difference(as_recorded(first.curve), as_recorded(second.curve), settings)
-    found, plans = recorded, ()
+    found = recorded
+    plans: tuple[Needed, ...] = ()
     if not settings.is_of_records:
         found = _difference(first.curve, second.curve, settings)
         plans = needed_samples(first.curve, second.curve, found)

@@ -8,7 +8,7 @@ from typing import Any
 from wavegen.comparison.difference import Difference, DifferenceRow
 from wavegen.comparison.look_alike import LookAlike
 from wavegen.comparison.needed_samples import Needed
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.comparison.spectra import SpectrumDifference
 from wavegen.comparison.starting_recipe import starting_recipe
 from wavegen.production.sidecar import rounded

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 
 from wavegen.comparison.difference import Difference, DifferenceRow
 from wavegen.comparison.needed_samples import Needed
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.core.units import format_s
 
 _MILLION = 10**6
@@ -102,7 +102,7 @@ def _amount(count: int, side: Side) -> str:
     text += " samples" if side.duty is None else " samples of on-time"
     if not side.sample_rate_hz:
         return text
-    return f"{text} ({format_s(float(f'{count / side.sample_rate_hz:.2g}'))})"
+    return f"{text} ({format_s(count / side.sample_rate_hz, digits=2)})"
 
 
 def percent(probability: float) -> str:

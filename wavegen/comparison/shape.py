@@ -8,10 +8,9 @@ from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
-import numpy as np
 import scipy.fft
 
-from wavegen.comparison.curves import ExactCurve, PointsCurve
+from wavegen.comparison.curves import ExactCurve
 from wavegen.comparison.difference import (
     HIGHEST,
     DifferenceRow,
@@ -19,16 +18,24 @@ from wavegen.comparison.difference import (
     compare,
     probabilities,
 )
+from wavegen.comparison.look_alike import plateau_duty
 from wavegen.comparison.match_document import row_document
-from wavegen.comparison.sides import CURVE_FORMAT, LOOP, Side, SideSettings, open_side
-from wavegen.comparison.spectra import SideSpectrum, side_spectrum, spectrum_difference
+from wavegen.comparison.shaped_recipe import RegularGate, curve_text, recipe_text, spectrum_text
+from wavegen.comparison.side import CURVE_FORMAT, LOOP, Side, SideSettings
+from wavegen.comparison.sides import open_side
+from wavegen.comparison.spectra import (
+    SideSpectrum,
+    SpectrumDifference,
+    side_spectrum,
+    spectrum_difference,
+)
 from wavegen.core.errors import ArgumentsError, SignalError, WavegenError
 from wavegen.core.progress import Progress, silent
 from wavegen.core.timespan import TimeSpan
-from wavegen.core.units import format_hz
 from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
 from wavegen.meters.equivalence import check_tolerance
+from wavegen.meters.occupied_bandwidth import occupied_bandwidth
 from wavegen.production.make import Made, make
 from wavegen.production.measure_settings import MeasureSettings, whole_samples
 from wavegen.production.measured_signal import measure_signal
@@ -36,7 +43,7 @@ from wavegen.production.show import is_curve
 from wavegen.production.sidecar import FORMAT
 from wavegen.production.subject_files import open_subject
 from wavegen.recipe.load import load_recipe
-from wavegen.sources.shaped import LONGEST_SAMPLES
+from wavegen.sources.shaped import EDGE_FRACTION, LONGEST_SAMPLES, flat_density
 
 TOLERANCE_DB = 0.05
 MOST_SAMPLES = 1 << 20
@@ -46,8 +53,6 @@ FEWEST_SAMPLES = 1 << 17
 SHORTEST_SAMPLES = 1024
 _EVENTS = 10
 _ALWAYS = 0.01
-_POINTS = 1500
-_HIGHEST = 0.9999
 _RAMP_OVER_BANDWIDTH = 4
 
 
@@ -81,15 +86,6 @@ class ShapeSettings:
     bandwidth_hz: Fraction | None = None
     sample_rate_hz: Fraction | None = None
     tolerance_db: float = TOLERANCE_DB
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Gate:
-    """The on-times of the field, made regular."""
-
-    period_samples: int
-    on_samples: int
-    ramp_samples: int
 
 
 def shape(
@@ -155,9 +151,17 @@ def shape(
     n_samples = _length(side, settings, rate_hz, gate)
     _check_length(n_samples)
     made = _make(
-        _recipe(settings, rate_hz, n_samples, gate),
-        _curve_text(side, n_samples),
-        None if spectrum is None else _spectrum_text(spectrum),
+        recipe_text(
+            name=settings.name,
+            title=settings.title,
+            seed=settings.seed,
+            bandwidth_hz=settings.bandwidth_hz,
+            rate_hz=rate_hz,
+            n_samples=n_samples,
+            gate=gate,
+        ),
+        curve_text(side, n_samples),
+        None if spectrum is None else spectrum_text(spectrum),
         settings,
         out=out,
         overwrite=overwrite,
@@ -209,7 +213,7 @@ def _rate(side: Side, settings: ShapeSettings) -> Fraction:
 
 def _gate(
     side: Side, rate_hz: Fraction, spectrum: SideSpectrum | None, settings: ShapeSettings
-) -> _Gate | None:
+) -> RegularGate | None:
     """Return a regular gate with the duty and the mean spacing of the field's bursts."""
     if side.bursts is None or side.signal is None or side.duty is None:
         return None
@@ -218,10 +222,12 @@ def _gate(
     width = float(settings.bandwidth_hz or (spectrum.occupied.width_hz if spectrum else rate_hz))
     ramp = max(round(_RAMP_OVER_BANDWIDTH * float(rate_hz) / width), 1)
     on = min(round(side.duty * period) + 2 * ramp, period - 1)
-    return _Gate(period_samples=period, on_samples=on, ramp_samples=min(ramp, (on - 1) // 2))
+    return RegularGate(period_samples=period, on_samples=on, ramp_samples=min(ramp, (on - 1) // 2))
 
 
-def _length(side: Side, settings: ShapeSettings, rate_hz: Fraction, gate: _Gate | None) -> int:
+def _length(
+    side: Side, settings: ShapeSettings, rate_hz: Fraction, gate: RegularGate | None
+) -> int:
     if settings.duration is not None:
         wanted = whole_samples(settings.duration, rate_hz, "--duration")
     else:
@@ -245,72 +251,6 @@ def _check_length(n_samples: int) -> None:
             allowed=f"{SHORTEST_SAMPLES} to {LONGEST_SAMPLES} samples",
             remedy="Choose another duration.",
         )
-
-
-def _curve_text(side: Side, n_samples: int) -> str:
-    """Return the curve to follow: rising levels, down to the rarest that either side holds."""
-    own = side.n_samples or n_samples
-    rarest = 1 / max(own, 2)
-    if isinstance(side.curve, PointsCurve):
-        level, share = side.curve.levels, side.curve.probabilities
-        kept = (share > 0) & (share < 1)
-        level, share = level[kept], share[kept]
-    else:
-        low = 1 - np.geomspace(1 - _HIGHEST, 0.5, _POINTS // 3)
-        share = np.concatenate([low, np.geomspace(0.5, rarest, _POINTS)[1:]])
-        level = np.asarray(side.curve.level_db(share), np.float64)
-    rows = [f"# n_samples: {own}", "level_db,ccdf"]
-    last = -math.inf
-    for at, probability in zip(level, share, strict=True):
-        if np.isfinite(at) and at > last + 1e-6:
-            rows.append(f"{at:.6f},{probability:.10g}")
-            last = at
-    return "\n".join(rows) + "\n"
-
-
-def _spectrum_text(found: SideSpectrum) -> str:
-    spectrum = found.spectrum
-    # the band repeats after the sample rate: its lower end stands at the upper one too
-    places = [*spectrum.frequencies_hz, spectrum.sample_rate_hz / 2]
-    level = [*spectrum.dbc_per_hz, spectrum.dbc_per_hz[0]]
-    rows = ["# density over the total power, dBc/Hz", "frequency_hz,density_db"]
-    rows += [f"{place:.3f},{value:.4f}" for place, value in zip(places, level, strict=True)]
-    return "\n".join(rows) + "\n"
-
-
-def _recipe(settings: ShapeSettings, rate_hz: Fraction, n_samples: int, gate: _Gate | None) -> str:
-    lines = [
-        "wavegen: 1",
-        f"title: {_quoted(settings.title)}",
-        "# The spectrum and the power statistics of a field signal, none of its content.",
-        f"seed: {settings.seed}",
-        f"sample_rate: {format_hz(rate_hz)}",
-        f"duration: {n_samples} samples",
-        "signal:",
-        "  kind: shaped",
-        f"  curve: {settings.name}.curve.csv",
-    ]
-    if settings.bandwidth_hz is not None:
-        lines.append(f"  bandwidth: {format_hz(settings.bandwidth_hz)}")
-    else:
-        lines.append(f"  spectrum: {settings.name}.spectrum.csv")
-    if gate is not None:
-        duty = Fraction(100 * gate.on_samples, gate.period_samples)
-        period, ramp = gate.period_samples, gate.ramp_samples
-        first, stop = ramp, gate.on_samples - ramp
-        lines.append(
-            f"  within: {{period: {period} samples, first: {first} samples, stop: {stop} samples}}"
-        )
-        lines.append("stages:")
-        lines.append(
-            f"  - {{kind: gate, duty: {duty} %, period: {period} samples, ramp: {ramp} samples}}"
-        )
-    return "\n".join(lines) + "\n"
-
-
-def _quoted(text: str) -> str:
-    inside = text.replace("\\", "\\\\").replace('"', '\\"')
-    return '"' + "".join(c for c in inside if c.isprintable()) + '"'
 
 
 def _make(
@@ -373,6 +313,32 @@ def _least(side: Side, stimulus: Side) -> float:
     return float(resolved.min(initial=max(_ALWAYS, asked.min())))
 
 
+def _spectra(
+    own: SideSpectrum | None, wanted: SideSpectrum | None, settings: ShapeSettings
+) -> SpectrumDifference | None:
+    """Return how the spectrum differs from the field's, or from the flat one asked for."""
+    if own is None:
+        return None
+    if wanted is None:
+        place, width_hz = own.spectrum.frequencies_hz, float(settings.bandwidth_hz or 0)
+        density = flat_density(place, width_hz, EDGE_FRACTION)
+        flat = replace(own.spectrum, density=density)
+        wanted = SideSpectrum(spectrum=flat, occupied=occupied_bandwidth(flat))
+    return spectrum_difference(own, wanted, is_centred=False)
+
+
+def _gate_hint(side: Side) -> list[str]:
+    """Return what would shape a field that is switched on and off, if it was not asked for."""
+    on = plateau_duty(side.curve) if side.signal is not None and side.duty is None else None
+    if on is None:
+        return []
+    text = (
+        f"is on for {100 * on:.2g} % of the time only: with --gate auto its on-time is shaped and "
+        "gated again, which comes nearer than levels and spectrum of all of the time"
+    )
+    return [text]
+
+
 def _document(
     side: Side,
     stimulus: Side,
@@ -380,7 +346,7 @@ def _document(
     made: Made,
     settings: ShapeSettings,
     *,
-    gate: _Gate | None,
+    gate: RegularGate | None,
     skipped: int,
     workers: int,
 ) -> dict[str, Any]:
@@ -394,8 +360,7 @@ def _document(
     rows: tuple[DifferenceRow, ...] = found.rows
     differences = [abs(row.difference_db) for row in rows]
     largest = max(differences, default=math.inf)
-    own = side_spectrum(stimulus, workers=workers) if spectrum is not None else None
-    between = None if own is None or spectrum is None else spectrum_difference(own, spectrum)
+    between = _spectra(side_spectrum(stimulus, workers=workers), spectrum, settings)
     is_met = largest <= settings.tolerance_db
     return {
         "format": f"{FORMAT}.shape",
@@ -414,6 +379,7 @@ def _document(
         if between is None
         else {
             "largest_difference_db": between.largest_db,
+            "is_over": "the field's" if spectrum is not None else "a flat one",
             "occupied_bandwidth_hz": between.second.occupied.width_hz,
         },
         "gate": None
@@ -426,5 +392,8 @@ def _document(
         "field": side.name,
         "skipped_samples": skipped,
         "warnings": [*made.document["warnings"]]
-        + [{"kind": "warning", "where": side.name, "text": text} for text in side.warnings],
+        + [
+            {"kind": "warning", "where": side.name, "text": text}
+            for text in [*side.warnings, *_gate_hint(side)]
+        ],
     }

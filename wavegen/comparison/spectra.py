@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from wavegen.comparison.sides import Side
+from wavegen.comparison.side import Side
 from wavegen.core.errors import SignalError
 from wavegen.core.excerpt import excerpt
 from wavegen.core.progress import Progress, silent
@@ -144,19 +144,24 @@ def _of_stretches(signal: Signal, meter: SpectrumMeter) -> Spectrum:
     return replace(found[0], density=np.asarray(density))
 
 
-def spectrum_difference(first: SideSpectrum, second: SideSpectrum) -> SpectrumDifference:
-    """Return how two spectra differ, centre on centre, in bands of equal width.
+def spectrum_difference(
+    first: SideSpectrum, second: SideSpectrum, *, is_centred: bool = True
+) -> SpectrumDifference:
+    """Return how two spectra differ, in bands of equal width.
 
     Parameters
     ----------
     first, second : SideSpectrum
         Of any rates: powers in bands are compared, as far as both sample them.
+    is_centred : bool
+        Whether they are put centre on centre first; else every band of the second is compared
+        with the same frequencies of the first.
     """
     half = max(first.occupied.width_hz, second.occupied.width_hz) / 2
     edges = np.linspace(-half, half, N_BANDS + 1)
     powers, is_seen = [], np.ones(N_BANDS, np.bool_)
     for side in (first, second):
-        place = edges + side.centre_hz
+        place = edges + (side if is_centred else second).centre_hz
         limit = side.spectrum.sample_rate_hz / 2
         is_seen &= (np.abs(place) <= limit)[:-1] & (np.abs(place) <= limit)[1:]
         below = side.spectrum.power_below(np.clip(place, -limit, limit))
@@ -189,7 +194,7 @@ def refuse_too_narrow(sides: tuple[Side, Side], found: SpectrumDifference) -> No
             raise SignalError(
                 where=side.name,
                 problem=f"is sampled at {format_hz(rate_hz)} and cannot hold {other.name}, "
-                f"which occupies {format_hz(round(width_hz))}",
+                f"which occupies {format_hz(width_hz, digits=4)}",
                 allowed="sides that are at least as wide as the other one's signal",
                 remedy="Record more bandwidth, or compare with a narrower signal.",
             )
@@ -202,9 +207,10 @@ def spectrum_warnings(sides: tuple[Side, Side], found: SpectrumDifference) -> li
         return []
     widths = [item.occupied.width_hz for item in (found.first, found.second)]
     narrow, wide = (0, 1) if ratio < 1 else (1, 0)
+    told = [format_hz(width, digits=4) for width in widths]
     text = (
-        f"{sides[narrow].name} occupies {format_hz(round(widths[narrow]))}, "
-        f"{sides[wide].name} {format_hz(round(widths[wide]))}: a filter narrower than the signal "
+        f"{sides[narrow].name} occupies {told[narrow]}, "
+        f"{sides[wide].name} {told[wide]}: a filter narrower than the signal "
         "changes its levels, and signals of different widths have peaks of different lengths"
     )
     return [text]

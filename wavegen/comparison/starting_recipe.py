@@ -9,6 +9,8 @@ from wavegen.comparison.familiar import (
     ShapedCarrier,
 )
 from wavegen.comparison.look_alike import LookAlike
+from wavegen.core.units import DIMENSIONS
+from wavegen.recipe.exact import write_quantity
 
 GUESSED_WIDTH_HZ = 1e6
 _ROOM = 4
@@ -35,14 +37,14 @@ def starting_recipe(found: LookAlike, *, width_hz: float | None) -> str:
     """
     width = float(f"{width_hz or GUESSED_WIDTH_HZ:.3g}")
     signal, stages = _parts(found, width)
-    length_us = float(f"{1e6 * _LENGTH / width:.1g}")
+    length_s = float(f"{_LENGTH / width:.1g}")
     if found.duty < 1:
-        period = f"{length_us / _GATES:g} us"
+        period = _s(length_s / _GATES)
         stages.append(f"{{kind: gate, duty: {100 * found.duty:.3g} %, period: {period}}}")
     lines = [
         "wavegen: 1",
         f"sample_rate: {_hz(_ROOM * width)}",
-        f"duration: {length_us:g} us",
+        f"duration: {_s(length_s)}",
         "signal:",
         *(f"  {line}" for line in signal),
     ]
@@ -75,7 +77,9 @@ def _parts(found: LookAlike, width: float) -> tuple[list[str], list[str]]:
 
 def _hz(value: float) -> str:
     """Write a frequency as a recipe does."""
-    for unit, size in (("GHz", 1e9), ("MHz", 1e6), ("kHz", 1e3)):
-        if value >= size:
-            return f"{value / size:.6g} {unit}"
-    return f"{value:.6g} Hz"
+    return write_quantity(float(f"{value:.6g}"), DIMENSIONS["_hz"])
+
+
+def _s(value: float) -> str:
+    """Write a time as a recipe does."""
+    return write_quantity(float(f"{value:.6g}"), DIMENSIONS["_s"])

@@ -260,29 +260,32 @@ def _look_alike(unit: str, dimension: Dimension) -> str | None:
     return folded.get(unit.casefold()) or nearest(unit, list(dimension.units))
 
 
-def format_hz(value: Fraction | float) -> str:
-    """Write a frequency as the trade does.
+def format_hz(value: Fraction | float, *, digits: int = 10) -> str:
+    """Write a frequency as the trade does; a measured one to as many digits as it is worth.
 
     Examples
     --------
-    >>> format_hz(3840000), format_hz(-1500), format_hz(0)
-    ('3.84 MHz', '-1.5 kHz', '0 Hz')
+    >>> format_hz(3840000), format_hz(-1500), format_hz(0), format_hz(15377885.3, digits=4)
+    ('3.84 MHz', '-1.5 kHz', '0 Hz', '15.38 MHz')
     """
-    return _scaled(float(value), "Hz", ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, "")))
+    return _scaled(value, digits, "Hz", ((1e9, "G"), (1e6, "M"), (1e3, "k"), (1.0, "")))
 
 
-def format_s(value: Fraction | float) -> str:
-    """Write a duration as the trade does.
+def format_s(value: Fraction | float, *, digits: int = 10) -> str:
+    """Write a duration as the trade does; a measured one to as many digits as it is worth.
 
     Examples
     --------
-    >>> format_s(0.01), format_s(2.5e-6)
-    ('10 ms', '2.5 µs')
+    >>> format_s(0.01), format_s(2.5e-6), format_s(0.002537792969, digits=4)
+    ('10 ms', '2.5 µs', '2.538 ms')
     """
-    return _scaled(float(value), "s", ((1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n")))
+    return _scaled(value, digits, "s", ((1.0, ""), (1e-3, "m"), (1e-6, "µ"), (1e-9, "n")))
 
 
-def _scaled(value: float, unit: str, scales: tuple[tuple[float, str], ...]) -> str:
+def _scaled(
+    exact: Fraction | float, digits: int, unit: str, scales: tuple[tuple[float, str], ...]
+) -> str:
+    value = float(f"{float(exact):.{digits}g}")
     size = abs(value)
     for factor, prefix in scales:
         if size >= factor:

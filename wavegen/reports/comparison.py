@@ -25,20 +25,17 @@ def match_lines(document: dict[str, Any]) -> list[str]:
     lines = []
     spectrum = document["spectrum"]
     if spectrum is not None:
+        widths = (
+            format_hz(spectrum[f"{side}_occupied_hz"], digits=4) for side in ("stimulus", "field")
+        )
         lines.append(
-            f"Spectrum: 99 % of the power in {format_hz(spectrum['stimulus_occupied_hz'])} and "
-            f"{format_hz(spectrum['field_occupied_hz'])}; densities differ by up to "
+            f"Spectrum: 99 % of the power in {' and '.join(widths)}; densities differ by up to "
             f"{spectrum['largest_difference_db']:+.2f} dB in there, centre on centre."
         )
     if document["mean_difference"] is not None:
         mean = document["mean_difference"]
         lines.append(f"Means differ by {interval_words(mean, 'difference_db')}.")
-    nearest = document["looks_like"][:1]
-    if nearest and nearest[0]["is_near"]:
-        lines.append(
-            f"The field's curve looks like: {look_words(nearest[0])}. A recipe to start from:"
-        )
-        lines += nearest[0]["recipe"].splitlines()
+    lines += _looks_lines(document["looks_like"])
     largest = document["largest_difference_db"]
     if largest is not None:
         where = rough_percent(document["largest_at"])
@@ -48,6 +45,17 @@ def match_lines(document: dict[str, Any]) -> list[str]:
     statement = document["statement"]
     lines.append(statement[:1].upper() + statement[1:] + ".")
     return lines
+
+
+def _looks_lines(looks: list[dict[str, Any]]) -> list[str]:
+    """Say what the field's curve looks like: every law that is near, and a recipe of the first."""
+    near = [look for look in looks if look["is_near"]]
+    if not near:
+        return []
+    others = "; or ".join(look_words(look) for look in near[1:_LISTED_LOOKS])
+    also = f" (as near as can be told: {others})" if others else ""
+    said = f"By its levels alone the field looks like: {look_words(near[0])}{also}."
+    return [f"{said} A recipe to start from:", *near[0]["recipe"].splitlines()]
 
 
 def interval_words(row: dict[str, Any], key: str) -> str:

@@ -7,11 +7,10 @@ from dataclasses import replace
 from typing import Any
 
 from wavegen.core.table import Table
-from wavegen.core.units import format_hz
+from wavegen.core.units import format_hz, format_s
 from wavegen.reports.tables import (
     complex_gaussian_db,
     fixed,
-    length_words,
     percent,
     summary_table,
 )
@@ -316,7 +315,7 @@ def lines(document: dict[str, Any]) -> list[str]:
         )
     needed = process["next_decade"]
     if needed:
-        length = length_words(needed["duration_s"], needed["n_samples"])
+        length = f"{format_s(needed['duration_s'], digits=4)}, {needed['n_samples']} samples,"
         found.append(
             f"For {percent(needed['probability'])} a record of {length} would be needed, "
             f"{needed['times']:.3g} times this one: a level is resolved from 10 clusters up."

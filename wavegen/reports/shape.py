@@ -59,10 +59,10 @@ def lines(document: dict[str, Any]) -> list[str]:
         )
     spectrum = document["spectrum"]
     if spectrum is not None:
-        wide = format_hz(float(f"{spectrum['occupied_bandwidth_hz']:.4g}"))
+        wide = format_hz(spectrum["occupied_bandwidth_hz"], digits=4)
         said.append(
-            f"Its spectrum lies within {abs(spectrum['largest_difference_db']):.2f} dB of the "
-            f"field's over {wide}."
+            f"Its spectrum lies within {abs(spectrum['largest_difference_db']):.2f} dB of "
+            f"{spectrum['is_over']} over {wide}."
         )
     gate = document["gate"]
     if gate is not None:

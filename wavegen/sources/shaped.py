@@ -35,6 +35,8 @@ NEAR_DB = 0.05
 MOVED_DB = 0.01
 """A curve whose mean is off by more is told of."""
 _LEAST_BEND, _MOST_BEND = 0.02, 50.0
+EDGE_FRACTION = 0.05
+_NOTHING_DBC = -150.0
 DEEPEST_DB = -120.0
 """Density over the largest below which a bin is left empty."""
 
@@ -115,7 +117,7 @@ class Shaped:
     points: tuple[LevelPoint, ...] = ()
     spectrum: str | None = None
     bandwidth_hz: Annotated[Fraction, Gt(0)] | None = None
-    edge_fraction: Annotated[float, Ge(0), Le(1)] = 0.05
+    edge_fraction: Annotated[float, Ge(0), Le(1)] = EDGE_FRACTION
     within: Window | None = None
 
     def __post_init__(self) -> None:
@@ -279,10 +281,10 @@ def _note_what_is_left(site: Site, found: Result) -> None:
         "%), with nothing outside the spectrum."
     )
     if not is_met:
-        text += (
-            " A signal with this spectrum and this curve was not found: met exactly, the curve "
-            f"would put {found.beyond_band_db:.0f} dBc outside the spectrum."
-        )
+        text += " A signal with this spectrum and this curve was not found"
+        if found.beyond_band_db > _NOTHING_DBC:
+            text += f": met exactly, the curve would put {found.beyond_band_db:.0f} dBc outside"
+        text += "."
     site.notes.append(Note(kind="info" if is_met else "warning", where=site.path, text=text))
 
 
