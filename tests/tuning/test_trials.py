@@ -67,7 +67,7 @@ def test_progress_is_told(begun, space):
     trials, _ = begun(seconds=10.0)
     trials.progress = lambda *heard: told.append(heard)
     trials.evaluate(space, (3,), 6.5)
-    assert told == [("searching: clip_filter, 6.53 dB so far", 1000, 10000)]
+    assert told == [("searching: clip_filter, trial 1, 6.53 dB so far", 1000, 10000)]
 
 
 def test_units(made):

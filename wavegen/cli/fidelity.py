@@ -24,7 +24,7 @@ class Fidelity:
         "source and group, ACLR, mask, occupied bandwidth, cubic metric and levels; where\n"
         "crest-factor reduction, devices or converters are in it, without and with them."
     )
-    examples = ("wavegen fidelity valley-cell-clipped --channels 'NR BS FR1'",)
+    examples = ("wavegen fidelity valley-cell-clipped --limits 'NR BS FR1'",)
 
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:

@@ -108,6 +108,7 @@ class Make:
                     workers=arguments.workers,
                     progress=progress,
                 )
+                console.keep(str(made.folder))
                 beside = []
                 if wanted is not None:
                     beside = write_stimulus_reports(

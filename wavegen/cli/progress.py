@@ -59,11 +59,11 @@ class ConsoleProgress:
             self.close()
             self._total, self._first, self._since = total, done, now
         self._done = done
-        if now - self._since >= self._patience and now - self._drawn_at >= PAUSE_S:
-            self._draw(line(task, done - self._first, done, total, now - self._since))
-            self._drawn_at = now
         if done >= total:
             self.close()
+        elif now - self._since >= self._patience and now - self._drawn_at >= PAUSE_S:
+            self._draw(line(task, done - self._first, done, total, now - self._since))
+            self._drawn_at = now
 
     def _draw(self, text: str) -> None:
         shown = text[: columns() - 1]

@@ -127,11 +127,9 @@ class Tune:
                 progress=progress,
             )
         except KeyboardInterrupt:
-            progress.close()
-            console.warn(
-                f"what was evaluated is kept in {arguments.out / loaded.name}; the same command "
-                "goes on with it"
-            )
+            folder = arguments.out / loaded.name
+            if folder.exists():
+                console.keep(f"what was evaluated, in {folder}; the same command goes on with it")
             raise
         finally:
             progress.close()

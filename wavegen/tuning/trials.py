@@ -142,7 +142,8 @@ class Trials:
         best = self.best(kind)
         told = "" if best is None else f", {abs(best.cost):.2f} {unit_of(best)} so far"
         done = min(self.now() - self._begun, self.seconds)
-        self.progress(f"searching: {kind}{told}", round(1000 * done), max(round(1000 * self.seconds), 1))
+        task = f"searching: {kind}, trial {self.n_made}{told}"
+        self.progress(task, round(1000 * done), max(round(1000 * self.seconds), 1))
 
 
 def unit_of(evaluation: Evaluation) -> str:
