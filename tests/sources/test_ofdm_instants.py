@@ -8,7 +8,8 @@ from wavegen.core.site import Site
 from wavegen.laws.term import NoLaw
 from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.ofdm import Ofdm
-from wavegen.sources.ofdm_instants import Carriers, Instants, law_of_instants, same_points
+from wavegen.sources.ofdm_carriers import Carriers, same_points
+from wavegen.sources.ofdm_instants import Instants, law_of_instants
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.ofdm_moments import Moments
 from wavegen.sources.ofdm_parts import Group, Pilots
@@ -59,9 +60,10 @@ def test_samples_that_look_alike_are_gone_through_once():
     found = instants_of(carriers_of(10, 64), 64)
     assert found.weights.size == 9
     assert found.weights.sum() == pytest.approx(1)
-    # 8PSK too; BPSK repeats after half a turn; what crowds is thinned out.
+    # 8PSK too; BPSK repeats after half a turn; what crowds is thinned out, but for the 32 samples
+    # about a lattice.
     assert instants_of(carriers_of(10, 64, [1, -1]), 64).weights.size == 17
-    assert instants_of(carriers_of(10, 4096), 4096).weights.size == 17
+    assert instants_of(carriers_of(10, 4096), 4096).weights.size == 17 + 16
 
 
 def test_the_average_is_that_of_every_sample():
@@ -71,30 +73,83 @@ def test_the_average_is_that_of_every_sample():
     assert instants_of(carriers, n_fft).characteristic(T) == pytest.approx(want, abs=1e-12)
 
 
-def test_ten_qpsk_subcarriers_by_enumeration():
-    """All 4^9 symbols that begin with one phase, at all different samples: exact.
-
-    Exact levels come in steps of the lattices: 0.03 dB, about twice what the law says of itself.
-    """
-    n_fft = 64
-    instants = instants_of(carriers_of(10, n_fft), n_fft)
-    law = law_of_instants(instants, name="ten", peak=math.sqrt(10), accuracy_db=0.02)
+def enumerated(count, n_fft, points, n_samples):
+    """All sums that begin with the first point, at some samples; powers falling."""
     powers = []
-    for n in range(n_fft // 4):
-        x = np.ones(1, complex)
-        for k in range(1, 10):
-            turned = np.exp(0.5j * np.pi * np.arange(4) + 2j * np.pi * k * n / n_fft)
-            x = np.add.outer(x, turned).ravel()
-        powers.append(np.abs(x) ** 2 / 10)
-    power = np.sort(np.concatenate(powers))[::-1]
-    for probability in (0.1, 0.01, 1e-3, 1e-4):
+    for n in range(n_samples):
+        x = np.array([points[0]], complex)
+        for k in range(1, count):
+            x = np.add.outer(x, points * np.exp(2j * np.pi * k * n / n_fft)).ravel()
+        powers.append(np.abs(x) ** 2 / (count * np.mean(np.abs(points) ** 2)))
+    return np.sort(np.concatenate(powers))[::-1]
+
+
+def test_ten_qpsk_subcarriers_by_enumeration():
+    """All 4^9 symbols that begin with one phase, at all different samples: exact."""
+    instants = instants_of(carriers_of(10, 64), 64)
+    law = law_of_instants(instants, name="ten", peak=math.sqrt(10))
+    power = enumerated(10, 64, QPSK, 16)
+    for probability in (0.1, 0.01, 1e-3, 1e-5):
         exact_db = 10 * math.log10(power[int(probability * power.size)])
-        assert float(law.level_db(probability)) == pytest.approx(exact_db, abs=0.03)
+        assert float(law.level_db(probability)) == pytest.approx(exact_db, abs=1e-4)
+
+
+@pytest.mark.parametrize(("count", "points"), [(3, QPSK), (6, QPSK), (8, np.array([1.0, -1.0]))])
+def test_few_sums_are_counted(count, points):
+    instants = instants_of(carriers_of(count, 32, points), 32)
+    assert len(instants.exact) == instants.weights.size
+    law = law_of_instants(instants, name="few", peak=math.sqrt(count))
+    power = enumerated(count, 32, points, 32)
+    for level_db in (-20.0, -6.1, 0.1, 2.0, 3.3, 4.4):
+        want = np.mean(power > 10 ** (level_db / 10))
+        assert float(law.ccdf(level_db)) == pytest.approx(want, abs=1e-12)
+    assert law.lowest_probability == 0
+
+
+def fourteen():
+    return instants_of(carriers_of(14, 64), 64)
+
+
+def test_twelve_qpsk_subcarriers_by_enumeration():
+    """All 4^11 symbols that begin with one phase, at every sample: one resource block."""
+    instants = instants_of(carriers_of(12, 32), 32)
+    law = law_of_instants(instants, name="twelve", peak=math.sqrt(12))
+    assert law.lowest_probability == 0
+    asked = np.array([0.1, 0.03, 0.01, 1e-3, 1e-5])
+    edges = 12 * 10 ** ((law.level_db(asked)[:, None] + np.array([-5e-4, 5e-4])) / 10)
+    above, total = np.zeros(edges.shape), 0.0
+    for (source,), weight in zip(instants.sources, instants.weights, strict=True):
+        first, second = QPSK[:1], np.zeros(1, complex)
+        for k in range(1, 12):
+            turned = QPSK * np.exp(2j * np.pi * k * source[2] / 32)
+            if k < 6:
+                first = np.add.outer(first, turned).ravel()
+            else:
+                second = np.add.outer(second, turned).ravel()
+        for some in np.array_split(first, 16):
+            power = np.abs(np.add.outer(some, second)) ** 2
+            above += weight * np.array(
+                [[np.count_nonzero(power > x) for x in row] for row in edges]
+            )
+        total += weight * first.size * second.size
+    assert np.all(above[:, 0] / total > asked)
+    assert np.all(above[:, 1] / total <= asked)
+
+
+def test_a_law_speaks_as_far_down_as_it_is_sure():
+    sure, surer = (
+        law_of_instants(fourteen(), name="14", peak=math.sqrt(14), accuracy_db=x)
+        for x in (0.001, 1.0)
+    )
+    assert sure.lowest_probability > surer.lowest_probability == 0
+    pattern = law_of_instants(
+        fourteen(), name="14", peak=math.sqrt(14), accuracy_db=1.0, lowest_probability=1e-2
+    )
+    assert pattern.lowest_probability == 1e-2
 
 
 def test_lattices_have_no_law():
-    instants = instants_of(carriers_of(3, 16), 16)
-    found = law_of_instants(instants, name="three", peak=math.sqrt(3))
+    found = law_of_instants(fourteen(), name="14", peak=math.sqrt(14), accuracy_db=1e-6)
     assert isinstance(found, NoLaw)
     assert "lattices" in found.reason
 

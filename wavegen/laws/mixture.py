@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 import scipy.special
@@ -23,15 +24,26 @@ class KnownAmplitudes:
     Parameters
     ----------
     amplitudes : float64 array, shape (n,)
-        Rising, each as likely as the next.
+        Rising.
+    shares : float64 array, shape (n,), optional
+        Share of each, together 1; each as likely as the next unless given.
     """
 
     amplitudes: Reals
+    shares: Reals | None = None
+
+    @cached_property
+    def _beyond(self) -> Reals:
+        """What lies from each amplitude on, and 0."""
+        count = self.amplitudes.size
+        if self.shares is None:
+            return np.arange(count, -1, -1) / count
+        return np.concatenate((np.cumsum(self.shares[::-1])[::-1], [0.0]))
 
     def above(self, radius: Reals) -> Reals:
         """Return the share of the amplitudes above each radius."""
         below = np.searchsorted(self.amplitudes, radius, side="right")
-        return np.asarray(1 - below / self.amplitudes.size)
+        return np.asarray(self._beyond[below])
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)

@@ -184,7 +184,7 @@ def _of_process(law: Law, codes: ChannelCodes, datatype: Datatype, question: Que
         text = "undecided: the law of the on-time is not known, and the whole is not compared"
         return Judgement(verdict="undecided", statement=text)
     judged = on_time if is_on and on_time is not None else law
-    # A pattern of n bits speaks for random data down to 10 / n.
+    # A pattern of n bits speaks for random data down to 10 / n; close points are rounded off.
     least = float(getattr(judged, "lowest_probability", 0.0))
     down_to = max(question.down_to, least)
     found = compare_process(
@@ -196,7 +196,7 @@ def _of_process(law: Law, codes: ChannelCodes, datatype: Datatype, question: Que
     )
     text = found.statement
     if down_to > question.down_to:
-        text += f"; its data are a pattern that speaks for random ones down to {100 * least:.3g} %"
+        text += f"; its law speaks down to {100 * least:.3g} %"
     return Judgement(
         verdict=found.verdict,
         statement=text,

@@ -4,109 +4,46 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import cached_property
 from itertools import pairwise
+from typing import NamedTuple
 
 import numpy as np
 import scipy.special
 
 from wavegen.laws.inversion import BesselSeries, bessel_zeros
-from wavegen.laws.mixture import MixedTail
-from wavegen.laws.radial import RadialLaw
+from wavegen.laws.mixture import KnownAmplitudes, MixedTail
+from wavegen.laws.radial import RadialLaw, Tail
 from wavegen.laws.term import Complexes, NoLaw, Reals
+from wavegen.sources.ofdm_carriers import Carriers, fold_of, mirror_fold
 from wavegen.sources.ofdm_moments import Moments
+from wavegen.sources.ofdm_sums import N_CELLS, Sums, as_amplitudes, sums_at
 
 MOST_INSTANTS = 1024
 """Different samples of a symbol that are gone through; more are thinned out where they crowd."""
 MOST_SUBCARRIERS = 400
 SAMPLES_PER_CYCLE = 8
 """Samples in a cycle of the widest spacing that stand for all of them."""
-BLURS = (0.1, 0.1 / math.sqrt(2), 0.05)
-"""Standard deviations of the noise that rounds off lattices, over the RMS value, each of half the
-power of the one before."""
+BLURS = (0.1, 0.1 / math.sqrt(2), 0.05, 0.05 / math.sqrt(2), 0.025)
+"""Standard deviations of the noise that rounds off close points, over the RMS value, each of half
+the power of the one before."""
+RICHARDSON = (1 / 3, -2.0, 8 / 3)
+"""Weights of three such noises, that with the least power last."""
+MOST_VALUES = 150_000_000
+"""Sums at all instants together that are gone through."""
 ACCURACY_DB = 0.001
-PROBABILITIES = tuple(10.0**-k for k in range(1, 10))
+PER_DECADE = 8
+PROBABILITIES = tuple(10.0 ** (-k / PER_DECADE) for k in range(PER_DECADE, 9 * PER_DECADE + 1))
 _NEGLIGIBLE = 1e-14
-_BLURRED_OUT = 11.0
-"""At so many over the noise's standard deviation its function is 1e-13."""
+_BLURRED_OUT = 5.5
+"""At so many over the least standard deviation its function is 5e-4, and the next but one 1e-13;
+what is left of the points' own there is small as well."""
 _FARTHEST = 8.0
 """Amplitude over the RMS value beyond which next to nothing lies."""
 _SHORTEST = 16
-_BLOCK = 1 << 19
-
-
-@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
-class Carriers:
-    """Subcarriers with one constellation.
-
-    Parameters
-    ----------
-    turns : float64 array, shape (n,)
-        Turns from one sample to the next.
-    phases : float64 array, shape (n,)
-        Angle at the first sample of the useful part, radians.
-    points : complex128 array, shape (order,)
-        Points about their mean, level and scale included.
-    """
-
-    turns: Reals
-    phases: Reals
-    points: Complexes
-
-    @property
-    def rails(self) -> tuple[Reals, Reals] | None:
-        """Levels of the two rails where every pair of them is a point; None elsewhere."""
-        rounded = np.round(self.points / np.abs(self.points).max(), 9)
-        first, at_first = np.unique(rounded.real, return_index=True)
-        second, at_second = np.unique(rounded.imag, return_index=True)
-        is_grid = np.unique(rounded).size == first.size * second.size == self.points.size
-        opposite = np.array_equal(first, -first[::-1]) and np.array_equal(second, -second[::-1])
-        if not (is_grid and opposite):
-            return None
-        return self.points.real[at_first], self.points.imag[at_second]
-
-    @property
-    def has_opposites(self) -> bool:
-        """Whether each point has its negative among them: all functions are real then."""
-        return same_points(self.points, -self.points)
-
-    def factor(self, t: Reals, angle_rad: Reals, sample: float, gain: float) -> Reals | Complexes:
-        """Return the product over subcarriers, shape (t.size, angle.size)."""
-        turned = angle_rad[:, None] - 2 * np.pi * self.turns * sample - self.phases
-        step = max(_BLOCK // turned.size, 1)
-        rails = self.rails
-        made = np.empty((t.size, angle_rad.size), np.complex128)
-        for low in range(0, t.size, step):
-            scaled = (gain * t[low : low + step])[:, None, None]
-            if rails:
-                value = _mean_cosine(rails[0], scaled * np.cos(turned))
-                value = value * _mean_cosine(rails[1], scaled * np.sin(turned))
-            elif self.has_opposites:
-                upper = self.points[np.angle(self.points * np.exp(-1e-3j)) >= 0]
-                value = np.zeros((scaled.shape[0], *turned.shape))
-                for point in upper:
-                    value += np.cos(scaled * (abs(point) * np.cos(turned - np.angle(point))))
-                value += (self.points.size / 2 - upper.size) * 1.0  # a point at zero
-                value /= self.points.size / 2
-            else:
-                value = np.zeros((scaled.shape[0], *turned.shape), np.complex128)
-                for point in self.points:
-                    place = abs(point) * np.cos(turned - np.angle(point))
-                    value += np.exp(1j * scaled * place)
-                value /= self.points.size
-            made[low : low + step] = value.prod(axis=2)
-        return made.real if rails or self.has_opposites else made
-
-
-def _mean_cosine(levels: Reals, scaled: Reals) -> Reals:
-    """Return the mean of ``cos(level x)`` over levels that have their opposites."""
-    half = levels[levels > 1e-12 * np.abs(levels).max()]
-    total = np.zeros(scaled.shape)
-    for level in half:
-        total += np.cos(level * scaled)
-    n_zero = levels.size - 2 * half.size
-    return np.asarray((2 * total + n_zero) / levels.size)
+FEWEST_DECADES = 3
+"""Down to how many decades a law must be as good as it says to be one."""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -138,6 +75,7 @@ class Instants:
         *,
         n_fft: int,
         span: int,
+        finest: int = 0,
     ) -> Instants | None:
         """Gather the samples of a clock; None where there are too many different ones.
 
@@ -151,11 +89,13 @@ class Instants:
             Useful samples of a symbol.
         span : int
             From the lowest subcarrier to the highest, spacings.
+        finest : int
+            Samples of a symbol to go through at least, where it has so many.
         """
-        fold = _mirror_fold(carriers)
+        fold = mirror_fold([group for state in carriers for group in state])
         is_known = any(m.known is not None for m in moments)
-        stride = 1
-        while n_fft % (2 * stride) == 0 and n_fft // (2 * stride) >= SAMPLES_PER_CYCLE * span:
+        stride, least = 1, max(SAMPLES_PER_CYCLE * span, finest)
+        while n_fft % (2 * stride) == 0 and n_fft // (2 * stride) >= least:
             stride *= 2
         found: dict[tuple[tuple[int, float, int], ...], list[complex]] = {}
         for m in moments:
@@ -163,7 +103,14 @@ class Instants:
             fine = stride if not is_edge else max(1, min(stride, (m.high - m.low) // 2))
             for offset in range(m.low, m.high):
                 sample = (offset - m.prefix) % n_fft
-                if (offset - m.low if is_edge else sample) % fine:
+                if is_edge:
+                    is_left, share = (offset - m.low) % fine != 0, fine
+                elif _is_near_quarter(sample, n_fft, fine):
+                    # Lattices pass within a sample or two: every one for itself.
+                    is_left, share = False, 1
+                else:
+                    is_left, share = sample % fine != 0, fine
+                if is_left:
                     continue
                 places = (sample, offset)
                 if not is_known and not is_edge and fold and n_fft % fold == 0:
@@ -175,7 +122,7 @@ class Instants:
                     for (state, gain), place in zip(m.sources, places, strict=False)
                 )
                 known = 0j if m.known is None else complex(m.known[offset - m.low])
-                weight = m.starts.size * fine
+                weight = m.starts.size * share
                 found[key] = [weight + found.get(key, [0.0])[0].real, known]
         if len(found) > MOST_INSTANTS:
             return None
@@ -192,21 +139,38 @@ class Instants:
         """Fold of the symmetry of all points; 1 with anything known."""
         if self.known.any():
             return 1
-        groups = [group for state in self.carriers for group in state]
-        turns = ((fold, np.exp(2j * np.pi / fold)) for fold in (4, 2, 1))
-        return next(
-            fold
-            for fold, turn in turns
-            if all(same_points(g.points, g.points * turn) for g in groups)
-        )
+        return fold_of([group for state in self.carriers for group in state])
 
-    def characteristic(self, t: Reals) -> Reals:
-        """Return ``E[J0(t R)]`` over all instants; ``t`` rising.
+    @cached_property
+    def exact(self) -> dict[int, Sums]:
+        """The instants whose sums can be gone through, those with the fewest first."""
+        found = []
+        for number, sources in enumerate(self.sources):
+            if len(sources) == 1:
+                state, gain, sample = sources[0]
+                weighed = [(group, gain) for group in self.carriers[state]]
+                made = sums_at(weighed, sample, complex(self.known[number]))
+                if made is not None:
+                    found.append((number, made))
+        found.sort(key=lambda item: item[1].count)
+        n_all = np.cumsum([made.count for _, made in found])
+        return dict(found[: int(np.searchsorted(n_all, MOST_VALUES, side="right"))])
+
+    def exact_amplitudes(self, highest: float) -> KnownAmplitudes:
+        """Return the amplitudes of all exact instants, each with its share among them."""
+        cells = np.zeros(N_CELLS)
+        for number, made in self.exact.items():
+            cells += self.weights[number] * made.counted(highest)
+        return as_amplitudes(cells, highest)
+
+    def characteristic(self, t: Reals, numbers: Sequence[int] | None = None) -> Reals:
+        """Return ``E[J0(t R)]`` over instants, all unless told; ``t`` rising.
 
         An instant whose function has died out over the last quarter of a stretch of ``t`` is left.
+        Instants together count as much as their weights say.
         """
         total = np.zeros(t.size)
-        alive = list(range(self.weights.size))
+        alive = list(range(self.weights.size) if numbers is None else numbers)
         for low, high in pairwise(_stretches(t.size)):
             some = t[low:high]
             n_angles = -(-(64 + 8 * int(some[-1])) // (4 * self._fold)) * 4
@@ -231,30 +195,6 @@ class Instants:
                 1j * np.multiply.outer(t, (known * np.exp(-1j * angle)).real)
             )
         return np.asarray(product.mean(axis=1).real)
-
-
-def _mirror_fold(carriers: Sequence[tuple[Carriers, ...]]) -> int:
-    """Return the fold of all points if all are mirrored too, at one angle at first; else 0."""
-    groups = [group for state in carriers for group in state]
-    if any(np.ptp(group.phases) > 0 for group in groups) or not all(
-        same_points(group.points, group.points.conj()) for group in groups
-    ):
-        return 0
-    turns = ((fold, np.exp(2j * np.pi / fold)) for fold in (4, 2, 1))
-    return next(
-        fold for fold, turn in turns if all(same_points(g.points, g.points * turn) for g in groups)
-    )
-
-
-def same_points(first: Complexes, second: Complexes) -> bool:
-    """Return whether two sets of points are one."""
-    scale = np.abs(first).max()
-    return bool(
-        np.array_equal(
-            np.unique(np.round(first / scale, 6) + 0.0),
-            np.unique(np.round(second / scale, 6) + 0.0),
-        )
-    )
 
 
 def _stretches(count: int) -> list[int]:
@@ -284,57 +224,96 @@ def law_of_instants(
     peak : float
         Bound on the amplitude.
     lowest_probability : float
-        Handed on.
+        Lowest probability the data serve.
     accuracy_db : float
-        Of levels from 10 % to 1e-9.
+        Of levels from 10 % down to the lowest probability the law speaks for.
 
     Returns
     -------
     RadialLaw or NoLaw
-        No law where it would not be as good as that.
+        No law where it would not be as good as that down to 0.1 %.
 
     Notes
     -----
-    At some samples the points of few subcarriers form lattices, whose characteristic functions
-    never die out. A little complex Gaussian noise of standard deviation ``e`` rounds them off;
-    over the new mean, ``1 + e^2``, the CCDF is wrong by a power series in ``e^2``, whose first two
-    terms three such noises take out (Richardson). What two of them give shows what is left.
+    Instants with few sums are counted sum by sum: :mod:`wavegen.sources.ofdm_sums`. Those near
+    them still have points close together, whose characteristic functions die out late. A little
+    complex Gaussian noise of standard deviation ``e`` rounds them off; over the new mean,
+    ``1 + e^2``, the CCDF is wrong by a power series in ``e^2``, whose first two terms three such
+    noises take out (Richardson). What comes out with noises of four times the power shows how
+    close the points still matter.
     """
+    exact = instants.exact
+    others = [number for number in range(instants.weights.size) if number not in exact]
+    left = float(instants.weights[others].sum())
+    steps = instants.exact_amplitudes(peak) if exact else None
+    coarse = fine = _Weighed()
+    if others:
+        tails, radius = _blurred(instants, others, peak)
+        coarse, fine = (
+            _Weighed(tuple(weight * left for weight in RICHARDSON), tuple(three), (radius,) * 3)
+            for three in (tails[:3], tails[-3:])
+        )
+
+    def law_of(part: _Weighed) -> RadialLaw:
+        tails = part if steps is None else part.and_steps(steps, 1 - left)
+        return RadialLaw(
+            name=name,
+            holds="over seeds",
+            mean_power=1.0,
+            peak=peak,
+            radius=peak,
+            tail=MixedTail(weights=tails.weights, tails=tails.tails, radii=tails.radii),
+            lowest_probability=lowest_probability,
+        )
+
+    law = law_of(fine)
+    if not others:
+        return law
+    error_db = np.abs(law_of(coarse).level_db(PROBABILITIES) - law.level_db(PROBABILITIES))
+    # What matters closer still is not seen; so half of what is allowed is allowed.
+    wrong = np.flatnonzero(error_db > accuracy_db / 2)
+    if not wrong.size:
+        return law
+    if wrong[0] <= (FEWEST_DECADES - 1) * PER_DECADE:
+        return NoLaw(
+            reason=f"{name}: the samples of few subcarriers form lattices "
+            f"({error_db[wrong].max():.3f} dB are uncertain)"
+        )
+    sure_down_to = 10.0 ** -(1 + (int(wrong[0]) - 1) // PER_DECADE)
+    return replace(law, lowest_probability=max(lowest_probability, sure_down_to))
+
+
+class _Weighed(NamedTuple):
+    """Tails to add up, and where each ends."""
+
+    weights: tuple[float, ...] = ()
+    tails: tuple[Tail, ...] = ()
+    radii: tuple[float, ...] = ()
+
+    def and_steps(self, steps: KnownAmplitudes, weight: float) -> _Weighed:
+        """Return them with amplitudes that are known one by one."""
+        return _Weighed((*self.weights, weight), (*self.tails, steps), (*self.radii, float(np.inf)))
+
+
+def _blurred(instants: Instants, numbers: Sequence[int], peak: float) -> tuple[list[Tail], float]:
+    """Return the tail of instants rounded off by each noise, and where it ends."""
     reach = min(peak, _FARTHEST) + 6 * BLURS[0]
     count = math.ceil(reach * _BLURRED_OUT / BLURS[-1] / math.pi)
     zeros = bessel_zeros(count)
-    phi = instants.characteristic(zeros / reach)
+    share = float(instants.weights[[*numbers]].sum())
+    phi = instants.characteristic(zeros / reach, numbers) / share
     made = 2 * phi / (zeros * scipy.special.j1(zeros) ** 2 * reach)
-    tails = []
+    tails: list[Tail] = []
     for blur in BLURS:
         weights = made * np.exp(-0.25 * (blur * zeros / reach) ** 2)
         used = np.abs(weights) > 0
         # Amplitudes over the new RMS value.
         rms = math.sqrt(1 + blur**2)
         tails.append(BesselSeries(zeros=zeros[used] / reach * rms, weights=weights[used] * rms))
+    return tails, min(reach / math.sqrt(1 + BLURS[0] ** 2), peak)
 
-    def extrapolated(weights: tuple[float, ...]) -> RadialLaw:
-        radius = min(reach / math.sqrt(1 + BLURS[0] ** 2), peak)
-        n_used = len(weights)
-        return RadialLaw(
-            name=name,
-            holds="over seeds",
-            mean_power=1.0,
-            peak=peak,
-            radius=radius,
-            tail=MixedTail(weights=weights, tails=tuple(tails[-n_used:]), radii=(radius,) * n_used),
-            lowest_probability=lowest_probability,
-        )
 
-    by_two, by_three = extrapolated((-1.0, 2.0)), extrapolated((1 / 3, -2.0, 8 / 3))
-    error_db = float(
-        np.max(np.abs(by_two.level_db(PROBABILITIES) - by_three.level_db(PROBABILITIES)))
-    )
-    # Steps of lattices are no power series: the whole difference is taken (ten QPSK subcarriers by
-    # enumeration: 0.016 dB said, 0.021 dB true).
-    if error_db > accuracy_db:
-        return NoLaw(
-            reason=f"{name}: the samples of few subcarriers form lattices "
-            f"({error_db:.3f} dB are uncertain)"
-        )
-    return by_three
+def _is_near_quarter(sample: int, n_fft: int, stride: int) -> bool:
+    """Return whether a sample is in the cell of a stride about a quarter of the symbol."""
+    quarter = n_fft // math.gcd(4, n_fft)
+    return (sample + (stride - 1) // 2) % quarter < stride

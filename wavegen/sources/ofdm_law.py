@@ -17,9 +17,11 @@ from wavegen.laws.mixture import KnownAmplitudes, MixedTail
 from wavegen.laws.papr_symbol import LevelCrossing
 from wavegen.laws.radial import RadialLaw, Tail
 from wavegen.laws.term import NoLaw
+from wavegen.sources.ofdm_carriers import Carriers, is_on_a_line
 from wavegen.sources.ofdm_instants import (
+    MOST_INSTANTS,
     MOST_SUBCARRIERS,
-    Carriers,
+    MOST_VALUES,
     Instants,
     law_of_instants,
 )
@@ -27,9 +29,13 @@ from wavegen.sources.ofdm_layout import Layout
 from wavegen.sources.ofdm_moments import Drawn, Moments, OfdmTerm, moments_of
 from wavegen.sources.ofdm_parts import Group, Pilots, part_of_group, part_of_pilots
 from wavegen.sources.ofdm_power import Part, mean_power
+from wavegen.sources.ofdm_sums import n_sums
 
 FEWEST_SUBCARRIERS = 48
 """Fewer, counted by their shares of the power, are not isotropic over the samples of a symbol."""
+MOST_FACTORS = 8000
+"""Instants times subcarriers that are gone through in about two seconds; an eighth of it where
+points lie on a line (BPSK), whose functions die out late."""
 _ROUNDING = 1e-9
 _OCTAVES = 2.0
 
@@ -154,13 +160,12 @@ def ofdm_law(settings: Settings, site: Site, layout: Layout, n_frame: int) -> La
         return law_of_moments(laid.term)
     n_most = sum(len(group.subcarriers) for group in settings.groups)
     used = [k for group in settings.groups for k in group.subcarriers.indices]
-    is_flat = any(_is_on_a_line(group.constellation.points) for group in settings.groups)
-    if n_most > MOST_SUBCARRIERS or is_flat or not all(laid.term.drawn):
+    if n_most > MOST_SUBCARRIERS or not all(laid.term.drawn):
         return NoLaw(reason=laid.uneven)
     shift = 0.5 if settings.half_subcarrier_shift else 0.0
     carriers = [
         tuple(
-            Carriers(
+            Carriers.laid(
                 turns=(np.array(group.subcarriers.indices) + shift) / layout.n_fft,
                 phases=np.angle(group.rotation.over(len(group.subcarriers))),
                 points=(group.constellation.points - _mean(group.constellation.points))
@@ -172,8 +177,15 @@ def ofdm_law(settings: Settings, site: Site, layout: Layout, n_frame: int) -> La
         for row in laid.on
     ]
     span = max(used) - min(used) + 1
-    instants = Instants.of(laid.term.moments, carriers, n_fft=layout.n_fft, span=span)
-    if instants is None:
+    instants = Instants.of(
+        laid.term.moments,
+        carriers,
+        n_fft=layout.n_fft,
+        span=span,
+        finest=_finest(carriers),
+    )
+    most = MOST_FACTORS // 8 if any(map(_is_flat, settings.groups)) else MOST_FACTORS
+    if instants is None or instants.weights.size * n_most > most:
         return NoLaw(reason=laid.uneven)
     return law_of_instants(
         instants,
@@ -294,10 +306,15 @@ def _mean(points: NDArray[np.complex128]) -> complex:
     return mean if abs(mean) > _ROUNDING else 0j
 
 
-def _is_on_a_line(points: NDArray[np.complex128]) -> bool:
-    """Return whether points lie on a line, as those of BPSK: their sums are lattices on it."""
-    centred = points - points.mean()
-    return bool(abs(np.mean(centred**2)) > (1 - _ROUNDING) * np.mean(np.abs(centred) ** 2))
+def _is_flat(group: Group) -> bool:
+    points = group.constellation.points
+    return is_on_a_line(points - _mean(points))
+
+
+def _finest(carriers: Sequence[Sequence[Carriers]]) -> int:
+    """Return how many samples of a symbol to go through: more, where its sums are few."""
+    most = max(n_sums(groups) for groups in carriers)
+    return int(min(MOST_VALUES / most, MOST_INSTANTS))
 
 
 def _uneven(groups: Sequence[Group], state: Sequence[Drawn]) -> str | None:
