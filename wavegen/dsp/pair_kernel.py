@@ -175,7 +175,7 @@ def tally_pairs(samples: Samples) -> PairTally:
     work = _workspace()
     squares, cubes = np.empty(n_cells), np.empty(n_cells)
     is_plain = kernel(
-        samples.view(np.float32), work.counts, work.power, work.power.view(np.uint32), work.lower,
+        samples.view(np.float32), work.counts, work.power, work.power.view(np.uint32), work.places,
         work.wide, squares, cubes,
     )  # fmt: skip
     banks = work.counts[: _BANKS * _PLAIN_BINS]
@@ -257,7 +257,7 @@ class _Workspace(threading.local):
     def __init__(self) -> None:
         self.counts = np.zeros(_PLAIN_BINS * _BANKS, np.uint32)
         self.power = np.zeros(CELL + 1, np.float32)
-        self.lower = np.zeros(CELL, np.uint32)
+        self.places = np.zeros(CELL, np.uint32)
         self.wide = np.zeros(2 * CELL, np.float64)
 
 
@@ -295,7 +295,7 @@ def _count(  # noqa: PLR0912, PLR0917 - one loop: what it calls is not inlined f
     counts: NDArray[np.uint32],
     power: NDArray[np.float32],
     bits: NDArray[np.uint32],
-    lower: NDArray[np.uint32],
+    places: NDArray[np.uint32],
     wide: NDArray[np.float64],
     squares: NDArray[np.float64],
     cubes: NDArray[np.float64],
@@ -318,33 +318,35 @@ def _count(  # noqa: PLR0912, PLR0917 - one loop: what it calls is not inlined f
         if first + 4 * CELL <= parts.size:
             # Read on the way, a cache line at a time, so that no cell waits for memory.
             ahead = parts[first + 2 * CELL : first + 4 * CELL]
+        high = np.uint32(0)
+        low = np.uint32(0xFFFFFFFF)
         for i in range(CELL):
             real = mine[2 * i]
             imag = mine[2 * i + 1]
-            power[i + 1] = real * real + imag * imag
-        high = np.uint32(0)
-        low = np.uint32(0xFFFFFFFF)
-        for i in range(1, CELL + 1):
-            high = max(high, bits[i])
-            low = min(low, bits[i])
+            of_one = real * real + imag * imag
+            power[i + 1] = of_one
+            code = np.float32(of_one).view(np.uint32)
+            high = max(high, code)
+            low = min(low, code)
         if high >= np.uint32(_ABOVE_PLAIN):
             return False
         if low < least:
             for i in range(CELL):
                 if bits[i + 1] < least and (mine[2 * i] != 0 or mine[2 * i + 1] != 0):
                     return False
-        for i in range(CELL):
-            lower[i] = min(bits[i], bits[i + 1])
+        for i in range(0, CELL, 2):
+            places[i] = ((min(bits[i], bits[i + 1]) + half) >> shift) & even
+            places[i + 1] = ((min(bits[i + 1], bits[i + 2]) + half) >> shift) | odd
         for i in range(0, CELL, 8):
             touched += ahead[2 * i]
-            counts[((lower[i] + half) >> shift) & even] += np.uint32(1)
-            counts[((lower[i + 1] + half) >> shift) | odd] += np.uint32(1)
-            counts[((lower[i + 2] + half) >> shift) & even] += np.uint32(1)
-            counts[((lower[i + 3] + half) >> shift) | odd] += np.uint32(1)
-            counts[((lower[i + 4] + half) >> shift) & even] += np.uint32(1)
-            counts[((lower[i + 5] + half) >> shift) | odd] += np.uint32(1)
-            counts[((lower[i + 6] + half) >> shift) & even] += np.uint32(1)
-            counts[((lower[i + 7] + half) >> shift) | odd] += np.uint32(1)
+            counts[places[i]] += np.uint32(1)
+            counts[places[i + 1]] += np.uint32(1)
+            counts[places[i + 2]] += np.uint32(1)
+            counts[places[i + 3]] += np.uint32(1)
+            counts[places[i + 4]] += np.uint32(1)
+            counts[places[i + 5]] += np.uint32(1)
+            counts[places[i + 6]] += np.uint32(1)
+            counts[places[i + 7]] += np.uint32(1)
         for i in range(256):
             p = np.float64(power[i + 1])
             q = np.float64(power[i + 257])
