@@ -290,7 +290,7 @@ def _compile() -> Callable[..., bool] | None:
     return compiled(signature, _count)
 
 
-def _count(  # noqa: PLR0912, PLR0917 - one loop: what it calls is not inlined for sure
+def _count(  # noqa: PLR0915, PLR0917 - one loop: what it calls is not inlined for sure
     parts: NDArray[np.float32],
     counts: NDArray[np.uint32],
     power: NDArray[np.float32],
