@@ -29,3 +29,19 @@ def test_density_channels_and_mask_are_drawn():
     assert len([line for line in axes.lines if line.get_label()[0] != "_"]) == 2
     assert axes.get_ylim()[1] > -50  # the limit is in the picture
     assert axes.get_xlabel().endswith("kHz")
+
+
+def test_names_of_narrow_channels_stand_outwards():
+    rng = np.random.default_rng(1)
+    noise = (rng.standard_normal(4096) + 1j * rng.standard_normal(4096)).astype(np.complex64)
+    spectrum = spectrum_of(noise, sample_rate_hz=1e6, n_fft=256)
+    channels = [
+        Channel(name="carrier", low_hz=-2e4, high_hz=2e4),
+        Channel(name="adjacent", low_hz=-7e4, high_hz=-3e4, remark="-1 dB"),
+        Channel(name="adjacent", low_hz=3e4, high_hz=7e4, remark="-2 dB"),
+    ]
+    figure = spectrum_figure([("noise", spectrum)], title="T", channels=channels)
+    figure.draw_without_rendering()
+    boxes = [text.get_window_extent() for text in figure.axes[0].texts]
+    assert len(boxes) == 2
+    assert boxes[0].x1 < boxes[1].x0

@@ -8,7 +8,12 @@ from wavegen.reports.figures.picture import Picture
 from wavegen.reports.figures.power import CcdfCurve, ccdf_figure, density_figure
 from wavegen.reports.pages.page import Page, Section
 
-HOSTILE = '<script>document.title="broken"</script><img src=x onerror=alert(1)> & "quotes" </pre>'
+HOSTILE = (
+    '<script>document.title="broken"</script><img src=x onerror=alert(1)> & "quotes" </pre>'
+    "' onmouseover='alert(2)' </title></svg></script>--> ]]> {{ 7 * 7 }} {% raw %} $x^{2 "
+    "\u202eturned\u202c \u05d0\u05d1 \x07\x00 \udc80 \u2028 two\nlines " + "w" * 400
+)
+"""Whatever might act in HTML, SVG, script, template or formula; marks that turn the reading."""
 
 
 def picture(name: str, title: str = HOSTILE) -> Picture:
@@ -48,3 +53,8 @@ def hostile_page() -> Page:
         ),
         origin=(("file", HOSTILE),),
     )
+
+
+@pytest.fixture(scope="session")
+def hostile() -> str:
+    return HOSTILE

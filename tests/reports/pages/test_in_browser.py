@@ -139,3 +139,98 @@ def test_dark_and_light_differ(opened):
         colours.append(body.value_of_css_property("background-color"))
     opened.execute_cdp_cmd("Emulation.setEmulatedMedia", {"features": []})
     assert colours[0] != colours[1]
+
+
+HOSTILE_TITLE = (
+    '<script>document.title="broken"</script><img src=x onerror=alert(1)> & "q" {{ 7 * 7 }} $x^{2'
+)
+"""Recipes take one line of 120 characters, and no marks that turn it."""
+HOSTILE_FILE = "a\"b' <img src=x onerror=alert(1)>&\u202eturned\nlines " + "n" * 120 + ".cf32"
+
+
+def page_of_a_file(folder: Path) -> Path:
+    """Measure a file whose name is hostile, as the command line does."""
+    import numpy as np
+
+    from wavegen.cli.main import run
+
+    path, page = folder / HOSTILE_FILE, folder / "measured.html"
+    rng = np.random.default_rng(1)
+    noise = rng.standard_normal((20_000, 2)).astype("<f4") / 8
+    path.write_bytes(noise.tobytes())
+    options = ["--format", "cf32_le", "--sample-rate", "1MHz", "--report", str(page)]
+    assert run(["measure", str(path), *options]) == 0
+    return page
+
+
+def page_of_a_recipe(folder: Path) -> Path:
+    """Make a stimulus whose title is hostile."""
+    from wavegen.production.make import make
+    from wavegen.recipe.load import load_text
+    from wavegen.reports.stimulus_reports import Wanted, write_stimulus_reports
+
+    title = json.dumps(HOSTILE_TITLE)
+    text = f"""\
+wavegen: 1
+title: {title}
+sample_rate: 1 MHz
+duration: 4096 samples
+signal: {{kind: noise, bandwidth: 200 kHz}}
+bench:
+  average_power_at_device: -30 dBm
+  path: [{{name: "<b onclick=alert(3)>", role: device, peak_limit: 10 dBm}}]
+"""
+    made = make(load_text(text, name="x"), out=folder)
+    write_stimulus_reports(made, Wanted(report=True, sheet=True))
+    return made.folder / "x.report.html"
+
+
+def test_marks_that_turn_text_are_named(opened):
+    body = opened.find_element("css selector", "body").text
+    assert "<U+202E>turned<U+202C>" in body
+    assert "<U+0007>" in body
+    assert "\u202e" not in opened.page_source
+
+
+@pytest.mark.parametrize("make_page", [page_of_a_file, page_of_a_recipe])
+def test_hostile_names_stay_inert(browser, tmp_path, make_page):
+    page = make_page(tmp_path)
+    browser.get_log("performance")
+    browser.get_log("browser")
+    browser.get(page.as_uri())
+    assert browser.get_log("browser") == []
+    found = browser.execute_script("""
+        const own = [...document.querySelectorAll("body *")];
+        return {
+          title: document.title,
+          images: document.querySelectorAll("img, iframe, object, embed, b").length,
+          scripts: document.querySelectorAll("script:not([type])").length,
+          handlers: own.filter(e => [...e.attributes].some(a => a.name.startsWith("on"))).length,
+          text: document.body.innerText,
+          wide: document.documentElement.scrollWidth - document.documentElement.clientWidth,
+        };
+    """)
+    assert "broken" not in found["title"].partition("<script>")[0]
+    assert found["images"] == 0
+    assert found["scripts"] == 1
+    assert found["handlers"] == 0
+    assert found["wide"] <= 0
+    assert "onerror=alert(1)" in found["text"]  # it is read, and does nothing
+    assert "\u202e" not in browser.page_source
+    assert "49" not in found["title"]
+
+
+def test_hostile_text_fits_a_phone(opened):
+    opened.execute_cdp_cmd(
+        "Emulation.setDeviceMetricsOverride",
+        {"width": 390, "height": 800, "deviceScaleFactor": 1, "mobile": True},
+    )
+    try:
+        overflow = opened.execute_script(
+            "return document.documentElement.scrollWidth - document.documentElement.clientWidth"
+        )
+        drawing = opened.find_element("css selector", ".drawing svg")
+        assert overflow <= 0
+        assert drawing.size["width"] >= 500  # its letters can be read: it scrolls within its frame
+    finally:
+        opened.execute_cdp_cmd("Emulation.clearDeviceMetricsOverride", {})

@@ -70,7 +70,7 @@ LAW = Stroke(colour="#b5179e", dashes=(4, 1.4, 1, 1.4), mark="", width=1.8)
 LIMIT = Stroke(colour="#1d2733", dashes=(9, 2, 1.5, 2), mark="", width=1.8)
 """What must not be passed."""
 _TITLE_WIDTHS = (72, 60, 48, 36, 24)
-_LONG_NAME = 44
+_LONG_NAME = 34
 
 
 def stroke(number: int) -> Stroke:
@@ -306,7 +306,7 @@ def rendered(figure: Figure, form: str, *, salt: str = "wavegen") -> bytes:
     with mpl.rc_context(settings), _any_letter():
         if figure.get_layout_engine() is not None:  # laid out anew, panels would move
             figure.draw_without_rendering()
-            figure.set_layout_engine("none")
+            figure.set_layout_engine(None)
         figure.savefig(held, format=form, dpi=150, metadata=metadata)
     return held.getvalue()
 

@@ -24,11 +24,14 @@ from wavegen.reports.figures.look import (
 )
 
 if TYPE_CHECKING:
+    from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
 _UNITS = ((1e9, "GHz"), (1e6, "MHz"), (1e3, "kHz"), (1.0, "Hz"))
 _MOST_POINTS = 2000
 _DEEPEST_DB = 110.0
+_NARROW = 0.13
+"""Of the span shown; a narrower channel has no room for its name."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -60,6 +63,30 @@ def frequency_unit(span_hz: float) -> tuple[float, str]:
     (1000000.0, 'MHz')
     """
     return next((unit for unit in _UNITS if span_hz >= unit[0]), _UNITS[-1])
+
+
+def _shade(axes: Axes, channel: Channel, span_hz: float, unit: float) -> None:
+    """Shade a channel and name it; the name of a narrow one stands beside it, outwards."""
+    low, high = channel.low_hz / unit, channel.high_hz / unit
+    axes.axvspan(low, high, facecolor=SHADE, zorder=0)
+    for edge in (low, high):
+        axes.axvline(edge, color=REFERENCE.colour, linewidth=0.9, zorder=0)
+    place, side = (low + high) / 2, "center"
+    if channel.high_hz - channel.low_hz < _NARROW * span_hz:
+        if not channel.remark:
+            return
+        place, side = (low, "left") if place > 0 else (high, "right")
+    axes.annotate(
+        f"{channel.name}\n{channel.remark}".rstrip(),
+        (place, 1.0),
+        xycoords=("data", "axes fraction"),
+        xytext=({"left": 3, "right": -3}.get(side, 0), -3),
+        textcoords="offset points",
+        ha=side,
+        va="top",
+        fontsize=10,
+        color=INK,
+    )
 
 
 def _rough_hz(value_hz: float) -> str:
@@ -106,20 +133,7 @@ def spectrum_figure(
         )
         top = max(top, float(level.max()))
     for channel in channels:
-        axes.axvspan(channel.low_hz / unit, channel.high_hz / unit, facecolor=SHADE, zorder=0)
-        for edge in (channel.low_hz, channel.high_hz):
-            axes.axvline(edge / unit, color=REFERENCE.colour, linewidth=0.9, zorder=0)
-        axes.annotate(
-            f"{channel.name}\n{channel.remark}".rstrip(),
-            ((channel.low_hz + channel.high_hz) / 2 / unit, 1.0),
-            xycoords=("data", "axes fraction"),
-            xytext=(0, -3),
-            textcoords="offset points",
-            ha="center",
-            va="top",
-            fontsize=10,
-            color=INK,
-        )
+        _shade(axes, channel, widest, unit)
     if mask is not None:
         draw(axes, mask[0] / unit, mask[1], LIMIT, label="limit")
     axes.set_xlim(-widest / 2 / unit, widest / 2 / unit)
