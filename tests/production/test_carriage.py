@@ -62,6 +62,9 @@ def test_a_loop_has_whole_cycles_and_a_recording_what_is_asked(complex_file):
     record = replace(complex_file, stimulus=None, notes=[])
     assert planned(record, RI16_LE, centre_hz=asked).to_hz == asked
     assert record.notes == []
+    with pytest.raises(ArgumentsError, match="no room"):
+        planned(record, RI16_LE, centre_hz=RATE / 2)
+    assert planned(record, RI16_LE, centre_hz=Fraction(1)).to_hz == 1
 
 
 def test_a_real_stimulus_becomes_baseband(real):

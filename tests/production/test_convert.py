@@ -5,7 +5,7 @@ import numpy as np
 import pytest
 from jsonschema import Draft202012Validator
 
-from wavegen.core.errors import ArgumentsError, FileError, TargetMissed
+from wavegen.core.errors import ArgumentsError, FileError, SignalError, TargetMissed
 from wavegen.files import FORMATS
 from wavegen.files.format import ReadHints
 from wavegen.files.read import open_recording
@@ -545,6 +545,15 @@ def test_codes_that_would_be_cut_are_refused(recording, tmp_path):
     assert done.document["peak_dbfs"] > 0
 
 
+def test_a_gain_beyond_the_range_of_floats(recording, tmp_path):
+    hints = ReadHints(sample_rate_hz=Fraction(1_000_000))
+    raised = run(recording, tmp_path / "a", hints, format="sigmf", gain_db=300)
+    twice = run(raised.files[0], tmp_path / "b", format="sigmf", gain_db=300)
+    with pytest.raises(SignalError, match="finite"):
+        run(twice.files[0], tmp_path / "c", format="sigmf", gain_db=300)
+    assert not (tmp_path / "c").exists()
+
+
 def test_full_scale_itself_is_cut_by_one_code_and_told(tmp_path):
     path = tmp_path / "full.cf32_le"
     np.array([1, -1, 1j, -1j] * 100, "<c8").tofile(path)
@@ -585,6 +594,7 @@ def test_what_cannot_be_honoured(made, tmp_path, wanted, where):
         {"format": "wav", "name": "../x"},
         {"format": "wav", "name": "a/b"},
         {"format": "wav", "name": ".."},
+        {"format": "wav", "name": ""},
         {"format": "wav", "bits": 12},
         {"format": "wav", "sample_rate_hz": Fraction(9_999_000, 7)},
     ],

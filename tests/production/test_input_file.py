@@ -94,3 +94,15 @@ def test_markers_move_with_the_rate():
     assert found == [(0, 150), (49, 16), (148, None), (75, 75)]
     assert moved(marks[:3], Fraction(1), 100) == marks[:3]
     assert moved(marks, Fraction(3, 2), 150)[1].label == "a"
+
+
+def test_the_folder_or_the_sidecar_of_a_stimulus(lab, made, tmp_path):
+    for path in (made.folder, made.folder / "case.ccdf.json"):
+        found = open_input(path, NO_HINTS)
+        assert (found.recording.path, found.loops) == (made.files[0], True)
+    two = lab.make(lab.TONES + "output: {iq: [sigmf, wav]}\n", tmp_path / "two")
+    with pytest.raises(FileError, match="2 files") as caught:
+        open_input(two.folder, NO_HINTS)
+    assert "case.wav" in caught.value.allowed
+    with pytest.raises(FileError, match="no sidecars"):
+        open_input(tmp_path, NO_HINTS)

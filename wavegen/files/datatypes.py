@@ -373,7 +373,7 @@ def encode_held(samples: Samples, datatype: Datatype, gain: float) -> tuple[Code
     """
     factor = np.float32(gain)
     if not _fits_kernel(datatype):
-        with np.errstate(invalid="ignore"):  # what is not finite is told by name
+        with np.errstate(invalid="ignore", over="ignore"):  # what is not finite is told by name
             samples *= factor
         codes, n_saturated = encode(samples, datatype)
         return codes, n_saturated, decode(codes, datatype)

@@ -178,14 +178,14 @@ def _centre(
     source: InputFile, asked_hz: Fraction, where: str, *, rate_hz: Fraction, n_samples: int
 ) -> Fraction:
     """Return an intermediate frequency between 0 and half the rate; of a loop on its grid."""
+    if not source.loops and 0 < asked_hz < rate_hz / 2:  # no cycle has to be whole there
+        return asked_hz
     try:
         found, notes = snapped_centre(
             asked_hz, sample_rate_hz=rate_hz, n_samples=n_samples, where=where
         )
     except RecipeError as error:
         raise _of_option(error) from error
-    if not source.loops:  # nothing has to be whole there
-        return asked_hz
     source.notes.extend(notes)
     return found
 

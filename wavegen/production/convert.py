@@ -95,7 +95,7 @@ def convert(
     Parameters
     ----------
     path : Path
-        The data file.
+        The data file; of a stimulus with one file also its folder or its sidecar.
     wanted : Conversion
         Format, datatype, level and rate.
     hints : ReadHints
@@ -136,7 +136,8 @@ def convert(
     )
     signals = _signals(source, carriage, rate_hz)
     origins = _origins(source, factor)
-    name = check_name(wanted.name or f"{source.stem}-{wanted.format}", "--name")
+    name = f"{source.stem}-{wanted.format}" if wanted.name is None else wanted.name
+    name = check_name(name, "--name")
     folder = out / name
     marks = moved(_marks(source, origins), factor, signals[0].n_samples)
     facts = _facts(source, signals, datatype, marks, carriage)

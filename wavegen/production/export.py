@@ -181,7 +181,7 @@ def _encode_strip(
         is_leaf = not source.inputs
         samples = source.compute(*strip) if is_leaf else samples_of(source, *strip)
         if datatype.is_real:  # its envelope is measured when all of it is there
-            with np.errstate(invalid="ignore"):  # what is not finite is told by name
+            with np.errstate(invalid="ignore", over="ignore"):  # not finite is told by name
                 codes, n_cut = encode(samples * gain, datatype)
         else:
             codes, n_cut, held = encode_held(samples, datatype, float(gain))

@@ -12,9 +12,17 @@ from wavegen.core.progress import Progress, silent
 from wavegen.core.site import Note
 from wavegen.files import markers
 from wavegen.files.digest import sha512_of
+from wavegen.files.faults import told
 from wavegen.files.format import Annotation, ReadHints, Recording
 from wavegen.files.read import open_recording
-from wavegen.production.stimulus import Stimulus, listing, loop_warnings, mismatch
+from wavegen.production.stimulus import (
+    SUFFIX,
+    Stimulus,
+    find_stimulus,
+    listing,
+    loop_warnings,
+    mismatch,
+)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -112,7 +120,7 @@ def open_input(
     Parameters
     ----------
     path : Path
-        The file.
+        The file; of a stimulus with one file also its folder or its sidecar.
     hints : ReadHints
         What the user says about it.
     output_rate_hz : Fraction, optional
@@ -129,6 +137,7 @@ def open_input(
     FileError
         It cannot be read, holds power alone, or more than two channels of which none is named.
     """
+    path = _data_file(path)
     stimulus = listing(path)
     if stimulus:
         recordings = _listed(stimulus, hints)
@@ -151,6 +160,25 @@ def open_input(
     if reason:
         found.warn(f"{reason}: it is converted as a recording, without a sidecar")
     return found
+
+
+def _data_file(path: Path) -> Path:
+    """Return the data file that is meant by the folder or the sidecar of a stimulus."""
+    if "\0" in str(path):
+        return path  # opening it says what is wrong
+    with told(path):
+        is_folder = path.is_dir()
+    if not (is_folder or path.name.lower().endswith(SUFFIX)):
+        return path
+    stimulus = find_stimulus(path)
+    if len(stimulus.names) > 1:
+        raise FileError(
+            where=str(path),
+            problem=f"there are {len(stimulus.names)} files of this stimulus",
+            allowed=", ".join(stimulus.names),
+            remedy=f"Name one of them, such as {stimulus.path.parent / stimulus.names[0]}.",
+        )
+    return stimulus.path.parent / stimulus.names[0]
 
 
 def _listed(stimulus: Stimulus, hints: ReadHints) -> tuple[Recording, ...]:
