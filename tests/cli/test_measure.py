@@ -671,3 +671,24 @@ def test_a_power_series_has_intervals_and_no_faults(call, tmp_path):
     said = call("measure", path, "--remove-dc")
     assert said.status == 2
     assert "--remove-dc" in said.err
+
+
+@pytest.mark.parametrize("n", [1, 2, 40, 64, 65])
+def test_a_record_of_few_samples(call, tmp_path, n):
+    path = tmp_path / "short.ci16_le"
+    np.random.default_rng(n).integers(-9000, 9000, 2 * n).astype("<i2").tofile(path)
+    said = call("measure", path, *RATE)
+    assert said.status == 0
+    assert "CCDF" in said.out
+
+
+def test_bursts_without_a_gate_are_pointed_out(call, tmp_path):
+    rng = np.random.default_rng(4)
+    rails = (
+        rng.standard_normal((60_000, 2))
+        * np.where(np.arange(60_000) % 20_000 < 5000, 900, 9)[:, None]
+    )
+    path = tmp_path / "bursts.ci16_le"
+    rails.astype("<i2").tofile(path)
+    assert "--gate auto" in call("measure", path, *RATE).err
+    assert "--gate auto" not in call("measure", path, *RATE, "--gate", "auto").err

@@ -74,6 +74,14 @@ class TestClean:
         assert kinds(check_record(held(np.where(is_on, noise, 0.001 * noise)))) == []
 
 
+@pytest.mark.parametrize("n", [1, 2, 3, 63, 64, 65, 66, 130])
+def test_records_too_short_to_tell_have_none(held, noise, n):
+    for samples in (noise[1000 : 1000 + n], np.full(n, 0.25 + 0.5j)):
+        check = check_record(held(codes(samples)), code_scale=32768.0)
+        assert "dc_offset" not in kinds(check)
+        assert check.n_codes >= 1
+
+
 def test_dc_offset(held, noise):
     offset = 0.1 - 0.05j
     check = check_record(held(noise + np.complex64(offset)))

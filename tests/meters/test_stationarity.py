@@ -48,3 +48,15 @@ def test_edges_of_bursts_are_no_splices(held, noise):
 def test_breaks_at_equal_distances_are_symbols(held, noise):
     parts = np.concatenate([noise[k * 31_000 : k * 31_000 + 20_000] for k in range(6)])
     assert kinds(check_record(held(parts))) == []
+
+
+def test_what_is_on_for_part_of_the_time(held, noise, band_noise):
+    place = np.arange(N)
+    assert check_record(held(np.where(place % 50_000 < 12_500, noise, 0.03 * noise))).on_share == (
+        pytest.approx(0.25, abs=0.04)
+    )
+    assert check_record(held(noise)).on_share == 1
+    # Too few samples, or too narrow, for the level of a batch to say anything.
+    for seed in range(5):
+        assert check_record(held(band_noise(seed, 300, 0.9))).on_share == 1
+        assert check_record(held(band_noise(seed, 20_000, 0.02))).on_share == 1

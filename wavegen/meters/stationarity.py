@@ -17,6 +17,7 @@ from wavegen.dsp.differences import DifferenceHeights
 from wavegen.meters.fault import Fault
 from wavegen.meters.record import RecordFigures
 
+Floats = NDArray[np.float64]
 SURE_SIGMA = 6.0
 """Complex Gaussian estimates pass this many standard errors once in exp(36) = 4e15."""
 DRIFT_DB = 0.2
@@ -29,7 +30,11 @@ MOST_SPLICES = 16
 """More breaks than this are a way of modulating, not a way of editing."""
 EDGE_DB = 10.0
 """A break across which the level changes by more is an edge of a burst."""
+ALWAYS_ON = 0.9
+"""Share of batches that are on from which a record counts as such throughout."""
 _N_BATCHES = 64
+_FEWEST_BATCHES = 16
+_INDEPENDENT = 20
 _NEAR = 16
 
 
@@ -62,19 +67,45 @@ def batches_of(figures: RecordFigures) -> NDArray[np.float64]:
     return cells
 
 
+def _on_batches(figures: RecordFigures) -> tuple[Floats, NDArray[np.bool_]]:
+    """Return the mean power of each batch, and which stand no more than 6 dB below the highest."""
+    batches = batches_of(figures)
+    power = batches[:, 3] / batches[:, 0]
+    top = float(np.quantile(power, 0.9)) if power.size else 0.0
+    return power, power > top / 4
+
+
+def on_share(figures: RecordFigures, bandwidth: float) -> float:
+    """Return the share of batches that are on.
+
+    Parameters
+    ----------
+    figures : RecordFigures
+        The record.
+    bandwidth : float
+        Of a flat band of the same spread, cycles per sample.
+
+    Returns
+    -------
+    float
+        1 of what is too short or too narrow to tell: the level of noise in a batch of fewer than
+        20 independent samples is uncertain by more than 1 dB.
+    """
+    power, is_on = _on_batches(figures)
+    if power.size < _FEWEST_BATCHES or not is_on.any():
+        return 1.0
+    independent = bandwidth * figures.n_samples / power.size
+    return float(is_on.mean()) if independent >= _INDEPENDENT else 1.0
+
+
 def level_faults(figures: RecordFigures) -> list[Fault]:
     """Find a level that steps once or drifts, over the batches that are on."""
-    batches = batches_of(figures)
-    if batches.shape[0] < 16:
-        return []
-    power = batches[:, 3] / batches[:, 0]
-    top = float(np.quantile(power, 0.9))
-    is_on = power > top / 4
-    if is_on.mean() < 0.9:  # bursts: their levels are told one by one
-        return []
+    power, is_on = _on_batches(figures)
+    if power.size < _FEWEST_BATCHES or is_on.mean() < ALWAYS_ON:
+        return []  # bursts: their levels are told one by one
     level = 10 * np.log10(power[is_on])
     place = np.flatnonzero(is_on).astype(np.float64)
-    per_batch = figures.n_samples / batches.shape[0]
+    per_batch = figures.n_samples / power.size
     step = _step(level)
     drift = _drift(place, level)
     if step is not None and (drift is None or step[2] >= drift[1]):

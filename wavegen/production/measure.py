@@ -14,6 +14,7 @@ from wavegen.meters.intervals import SampledStatistics
 from wavegen.meters.population import merged, populate
 from wavegen.meters.power import PowerStatistics
 from wavegen.meters.seam import seam_figure
+from wavegen.meters.stationarity import ALWAYS_ON
 from wavegen.meters.statistic_names import INSTANTANEOUS
 from wavegen.production import measured_rows as rows
 from wavegen.production.measure_settings import MeasureSettings
@@ -262,6 +263,12 @@ def _add_faults(
             {"kind": "fault", "where": name, "text": rows.fault_text(row)} for row in mine
         ]
         faults += [row | {"file": name} for row in mine]
+        if item.gate is None and item.check is not None and item.check.on_share < ALWAYS_ON:
+            text = (
+                f"it is on for about {100 * item.check.on_share:.0f} % of the time, and the rest "
+                "counts too: --gate auto measures the on-time by itself"
+            )
+            document["warnings"] += _warnings(name, (text,))
         if item.gate is not None and item.gate.on is None:
             text = f"no bursts were found: {item.gate.found.reason}"
             document["warnings"] += _warnings(name, (text,))
