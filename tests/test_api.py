@@ -1,5 +1,6 @@
 """The verbs from Python."""
 
+import json
 import subprocess
 import sys
 
@@ -42,6 +43,24 @@ def test_a_recipe_is_tuned(tmp_path):
     assert found["best"]["method"] == "clip"
     assert found["evaluations"]
     assert "clip" in str(found)
+
+
+def test_every_result_shows_itself(tmp_path):
+    recipe = wavegen.load_recipe("harbour-link-qpsk", SHORT)
+    made = wavegen.make(recipe, out=tmp_path)
+    file = tmp_path / "harbour-link-qpsk" / made["files"][0]["name"]
+    found = [made, wavegen.predict(recipe), wavegen.measure(file), wavegen.match(file, file)]
+    for result in found:
+        text = str(result)
+        assert repr(result) == text
+        assert max(map(len, text.splitlines())) <= 80
+        shown = result._repr_html_()
+        assert shown.count("<table>") == shown.count("</table>") == len(result.tables) > 0
+        row = result.row()
+        assert row
+        assert all(value is None or isinstance(value, str | int | float) for value in row.values())
+        json.dumps(dict(result))
+    assert "<pre>" in recipe._repr_html_()
 
 
 def test_what_is_wrong_is_raised():

@@ -1,3 +1,5 @@
+import re
+
 import pytest
 
 from wavegen.cli.listing import TOPICS
@@ -25,7 +27,8 @@ def test_one_topic(call, topic):
     assert document[topic]
     for row in document[topic]:
         assert row["name"]
-        assert len(row["about"]) > 10
+        assert len(row["about"]) > 5
+        assert not re.search(r"``|:\w+:|Settings of", row["about"])
 
 
 def test_recipes_have_their_titles(call):

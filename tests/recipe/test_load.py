@@ -161,3 +161,25 @@ def test_faults_beyond_counting_are_counted(tables: Tables) -> None:
         load_text(TEXT + "".join(f"x{n}: 1\n" for n in range(150)), tables=tables)
     assert len(caught.value.faults) == 101
     assert caught.value.faults[-1].problem == "50 more faults"
+
+
+def test_a_recipe_shows_itself():
+    hostile = "wavegen: 1\ntitle: <script>alert(1)</script> & more\n" + SHOWN
+    loaded = load_text(hostile, name="pier", overrides=["duration=1 ms"])
+    assert str(loaded).splitlines()[:3] == [
+        "<script>alert(1)</script> & more",
+        "from pier.yaml",
+        "changed: duration=1 ms",
+    ]
+    assert str(loaded).endswith("spacing: 10 kHz}")
+    shown = loaded._repr_html_()
+    assert "<script>" not in shown
+    assert "<strong>&lt;script&gt;alert(1)&lt;/script&gt; &amp; more</strong>" in shown
+    assert "changed: duration=1 ms" in shown
+    assert "<pre>wavegen: 1" in shown
+
+
+SHOWN = """sample_rate: 4 MHz
+duration: 2 ms
+signal: {kind: tones, count: 8, spacing: 10 kHz}
+"""

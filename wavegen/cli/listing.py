@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import argparse
+import re
 from typing import Any
 
 from wavegen.cli.console import Console
@@ -51,8 +52,22 @@ def _members(topic: str) -> list[tuple[str, str]]:
     for table in _tables(topic):
         for name in table:
             member = table.load(name)
-            rows.append((name, (member.__doc__ or "").strip().splitlines()[0]))
+            rows.append((name, about(member.__doc__ or "")))
     return rows
+
+
+def about(docstring: str) -> str:
+    """Return what a docstring says first, in words for people.
+
+    Examples
+    --------
+    >>> about("Settings of a gate: ``duty`` over a period.")
+    'gate: duty over a period'
+    """
+    text = (docstring.strip().splitlines() or [""])[0].removesuffix(".")
+    text = re.sub(r"^(Settings of|Return) (an? |the )?", "", text)
+    text = re.sub(r": (it has )?none\b.*$", "", text)
+    return re.sub(r":\w+:`(\w+)`|`", r"\1", text)
 
 
 def _tables(topic: str) -> tuple[Any, ...]:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import hashlib
+import html
 import re
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
@@ -65,6 +66,20 @@ class LoadedRecipe:
     name: str
     file: str
     places: Mapping[str, Place]
+
+    def __str__(self) -> str:
+        """Return it as plain text: its title, where it is from, what is changed, the file."""
+        changed = [f"changed: {override}" for override in self.overrides]
+        heading = [self.recipe.title or self.name, f"from {self.file}", *changed]
+        return "\n".join([*heading, "", self.text.rstrip()])
+
+    def _repr_html_(self) -> str:
+        """Return it as a notebook shows it; every text is escaped."""
+        changed = "".join(f"<br>changed: {html.escape(item)}" for item in self.overrides)
+        return (
+            f"<p><strong>{html.escape(self.recipe.title or self.name)}</strong><br>"
+            f"from {html.escape(self.file)}{changed}</p><pre>{html.escape(self.text)}</pre>"
+        )
 
     def place(self, path: str) -> Place:
         """Return where a path stands, or where its nearest ancestor does."""

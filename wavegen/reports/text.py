@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
+import itertools
 import re
 import unicodedata
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 
 from wavegen.core.table import Table
 
@@ -119,19 +120,31 @@ def text_of(table: Table, *, width: int = WIDTH, rule: str = "") -> str:
 
 def _fitted(natural: list[int], right: frozenset[int], room: int) -> tuple[str, list[int]]:
     """Return the gap and the widths of columns that fit; numbers are folded last."""
-    for gap in GAPS:
-        if sum(natural) + len(gap) * (len(natural) - 1) <= room:
+    for gap in GAPS[:-1]:
+        if _needed(natural, gap) <= room:
             return gap, natural
-    room -= len(gap) * (len(natural) - 1)
-    widths = list(natural)
     words = [number for number in range(len(natural)) if number not in right]
-    for columns in (words, range(len(natural))):
-        while sum(widths) > room:
-            widest = max(columns, key=lambda number: widths[number], default=None)
-            if widest is None or widths[widest] <= NARROWEST:
-                break
-            widths[widest] -= 1
+    for gap, columns in itertools.product(GAPS[-2:], (words, range(len(natural)))):
+        widths = _narrowed(natural, columns, room - _needed([0] * len(natural), gap))
+        if _needed(widths, gap) <= room:
+            break
     return gap, widths
+
+
+def _needed(widths: list[int], gap: str) -> int:
+    return sum(widths) + len(gap) * (len(widths) - 1)
+
+
+def _narrowed(widths: list[int], columns: Iterable[int], room: int) -> list[int]:
+    """Return widths of which the widest of some columns were made narrower."""
+    widths = list(widths)
+    columns = list(columns)
+    while sum(widths) > room:
+        widest = max(columns, key=lambda number: widths[number], default=None)
+        if widest is None or widths[widest] <= NARROWEST:
+            break
+        widths[widest] -= 1
+    return widths
 
 
 def _row_lines(
