@@ -80,20 +80,23 @@ def test_gain_with_its_compression_point():
 
 
 def test_input_and_output_of_a_device_are_laid_over_each_other():
-    levels = [
-        {
-            "probability": q,
-            "input_over_mean_db": x,
-            "output_over_mean_db": x - 0.5,
-            "change_db": -0.5,
-        }
-        for q, x in ((0.1, 3.6), (0.01, 6.6))
-    ]
-    document = gain_document(levels=levels, input={"name": "in"}, output={"name": "out"})
+    # At 10 % the gain is 29.7 dB, 0.3 dB down; the mean gain is 29.9: a change of -0.2 dB.
+    level = {"probability": 0.1, "change_db": -0.2, "compression_db": 0.3}
+    rows = [row | {"probability": 0.5 ** (k + 1)} for k, row in enumerate(gain_document()["gain"])]
+    document = gain_document(
+        gain=rows,
+        levels=[level],
+        small_signal_gain_db=30.0,
+        input={"name": "in"},
+        output={"name": "out"},
+    )
     _, ccdf = gain_pictures(document)
-    labels = [line.get_label() for line in named(ccdf.figure.axes[0])]
-    assert labels == ["input: in", "output: out", "complex Gaussian"]
-    assert "1 %: -0.50 dB" in ccdf.alternative
+    before, after, _ = named(ccdf.figure.axes[0])
+    assert (before.get_label(), after.get_label()) == ("input: in", "output: out")
+    # at an input of 3 dB over the mean: 3 + 29.7 - 29.9
+    assert after.get_xdata()[3] == pytest.approx(2.8)
+    assert after.get_ydata()[3] == before.get_ydata()[3] == 0.0625
+    assert "10 %: -0.20 dB" in ccdf.alternative
 
 
 def test_a_tuning_shows_every_trial_against_the_bound():

@@ -140,3 +140,13 @@ def test_bars_hold_as_much_as_the_density():
     assert data.values.size <= 121
     inside = np.sum(data.values * np.diff(data.edges))
     assert inside == pytest.approx(CCDF[0] - CCDF[-1], abs=2e-3)
+
+
+def test_an_interval_that_says_nothing_is_not_shaded():
+    empty = np.zeros(LEVEL.size)
+    known = curve(low=np.where(LEVEL < 0, 0.9 * CCDF, 0.0), high=np.where(LEVEL < 0, CCDF, 1.0))
+    unknown = curve(low=empty, high=empty + 1)
+    axes = ccdf_figure([known, unknown], title="T").axes[0]
+    first, second = axes.collections
+    assert max(path.vertices[:, 0].max() for path in first.get_paths()) < 0.01
+    assert not second.get_paths()

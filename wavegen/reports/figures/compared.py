@@ -86,17 +86,8 @@ def gain_pictures(document: dict[str, Any]) -> list[Picture]:
     if rows:
         found.append(_gain(document, rows))
     levels = document["levels"]
-    if levels:
-        names = (document["input"]["name"], document["output"]["name"])
-        curves = [
-            _curve(levels, key, f"{side}: {name}")
-            for side, key, name in zip(
-                ("input", "output"),
-                ("input_over_mean_db", "output_over_mean_db"),
-                names,
-                strict=True,
-            )
-        ]
+    if rows and levels:
+        curves = _input_and_output(document, rows, levels[0])
         changes = [f"{percent(row['probability'])}: {row['change_db']:+.2f} dB" for row in levels]
         found.append(
             Picture(
@@ -112,6 +103,24 @@ def gain_pictures(document: dict[str, Any]) -> list[Picture]:
             )
         )
     return found
+
+
+def _input_and_output(
+    document: dict[str, Any], rows: Sequence[dict[str, Any]], level: dict[str, Any]
+) -> list[CcdfCurve]:
+    """Return both curves, each over its own mean, by the gain at each quantile.
+
+    The mean gain follows from any level that is told over both means.
+    """
+    gain_there = document["small_signal_gain_db"] - level["compression_db"]
+    mean_gain = gain_there - level["change_db"]
+    share = np.array([row["probability"] for row in rows], np.float64)
+    before = np.array([row["input_db"] for row in rows], np.float64)
+    gain = np.array([row["gain_db"] for row in rows], np.float64)
+    return [
+        CcdfCurve(name=f"{side}: {document[side]['name']}", level_db=over, probability=share)
+        for side, over in (("input", before), ("output", before + gain - mean_gain))
+    ]
 
 
 def _gain(document: dict[str, Any], rows: Sequence[dict[str, Any]]) -> Picture:

@@ -30,6 +30,7 @@ MARKED = (0.1, 0.01, 0.001, 1e-4, 1e-5, 1e-6)
 _LOWEST_DB = -12.0
 _HIGHEST_FLOOR = 1e-4
 _LEAST_FLOOR = 1e-9
+_ANYTHING = 0.9
 _MOST_BARS = 120
 _LEAST_SPAN_DB = 6.0
 
@@ -172,6 +173,11 @@ def ccdf_figure(
         )
     for curve, style in zip(curves, _strokes(curves), strict=True):
         _draw_curve(axes, curve, style, floor)
+    banded = [curve for curve in curves if curve.low is not None and curve.high is not None]
+    for curve, style in zip(curves, _strokes(curves), strict=True):
+        if curve in banded:
+            label = "95 % interval" if len(banded) == 1 else f"95 % interval, {curve.name}"
+            _draw_band(axes, curve, style, floor, label)
     for chosen, level in _marks_of(curves[0]) if marks is None else marks:
         if chosen > floor:
             _mark(axes, chosen, level)
@@ -198,16 +204,23 @@ def _draw_curve(axes: Axes, curve: CcdfCurve, style: Stroke, floor: float) -> No
         level = np.concatenate([level[inside], [curve.peak_db, curve.peak_db]])
         share = np.concatenate([share[inside], [last, floor / 10]])
     draw(axes, level, share, style, label=curve.name, has_marks=curve.has_marks)
-    if curve.low is not None and curve.high is not None:
-        axes.fill_between(
-            curve.level_db[drawn],
-            np.maximum(curve.low[drawn], floor / 10),
-            np.maximum(curve.high[drawn], floor / 10),
-            color=style.colour,
-            alpha=0.25,
-            linewidth=0,
-            label="95 % interval",
-        )
+
+
+def _draw_band(axes: Axes, curve: CcdfCurve, style: Stroke, floor: float, label: str) -> None:
+    """Shade an interval, where it says anything: from nothing to all of the time says nothing."""
+    assert curve.low is not None  # noqa: S101 - asked by the caller
+    assert curve.high is not None  # noqa: S101
+    drawn = (curve.probability > 0) & ((curve.low > floor / 10) | (curve.high < _ANYTHING))
+    axes.fill_between(
+        curve.level_db,
+        np.maximum(curve.low, floor / 10),
+        np.maximum(curve.high, floor / 10),
+        where=drawn.tolist(),
+        color=style.colour,
+        alpha=0.25,
+        linewidth=0,
+        label=label,
+    )
 
 
 def _scale_ccdf(axes: Axes, curves: Sequence[CcdfCurve], floor: float) -> None:
@@ -226,7 +239,9 @@ def _scale_ccdf(axes: Axes, curves: Sequence[CcdfCurve], floor: float) -> None:
         if curve.kind != "reference":
             seen = curve.level_db[curve.probability > floor]
             ends.append(float(seen.max(initial=0.0)) if curve.peak_db is None else curve.peak_db)
-    starts = [float(curve.level_db.min(initial=0.0)) for curve in curves]
+    starts = [
+        float(curve.level_db.min(initial=0.0)) for curve in curves if curve.kind != "reference"
+    ]
     left = max(_LOWEST_DB, min(starts) - 1)
     right = max(*ends, 2.0)
     axes.set_xlim(left, right + 0.14 * (right - left))
