@@ -43,7 +43,7 @@ def test_part_of_a_sample(side, driven):
 
 def test_gain_and_phase_are_those_of_the_device(side, driven):
     found = align(side(driven), side(saleh(driven, 1.0)))
-    r = 10 ** (found.input_db / 20)
+    r = 10 ** (found.input_db / 20) * np.sqrt(np.mean(np.abs(driven) ** 2))
     # Bins are half a dB wide.
     assert found.gain_db == pytest.approx(20 * np.log10(2.1587 / (1 + 1.1517 * r**2)), abs=0.05)
     turn = np.rad2deg(4.0033 * r**2 / (1 + 9.1040 * r**2))
@@ -52,7 +52,15 @@ def test_gain_and_phase_are_those_of_the_device(side, driven):
 
 def test_an_output_that_falls_again_is_seen(side, driven):
     found = align(side(driven), side(saleh(driven, 2.0)))
-    assert found.folds_from_db == pytest.approx(20 * np.log10(0.93 / 2.0), abs=0.5)
+    mean_db = 10 * np.log10(np.mean(np.abs(driven) ** 2))
+    assert found.folds_from_db == pytest.approx(20 * np.log10(0.93 / 2.0) - mean_db, abs=0.5)
+
+
+def test_noise_far_below_is_no_fold(side, driven, rapp, rng):
+    """Bins of few samples far below the noise go up and down by half a dB; the top does not."""
+    for _ in range(4):
+        hiss = 0.05 * (rng.standard_normal(N) + 1j * rng.standard_normal(N))
+        assert align(side(driven), side(rapp(driven) + hiss)).folds_from_db is None
 
 
 def test_memory_is_told_from_noise(side, driven, rapp, rng):

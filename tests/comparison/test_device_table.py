@@ -43,6 +43,22 @@ def test_the_stage_reads_what_was_written(gain, tmp_path, by_fit):
     assert "not known" not in text
 
 
+def test_the_phase_stands_at_its_level_whatever_the_scale(side, noise):
+    """Levels in dBm, samples in parts of full scale: the turn is looked up over the mean."""
+    samples = noise(1 << 16) * 0.4
+    turned = samples * np.exp(0.5j * np.abs(samples) ** 2)  # 0.5 rad at a power of 1
+    for level_dbm in (None, -37.0):
+        sides = side(samples, level_dbm=level_dbm), side(turned, level_dbm=level_dbm)
+        found = device_gain(sides, None, tolerance_db=0.2, down_to=1e-3)
+        table = table_of(found, by_fit=False)
+        over = table.input_dbm - found.means_db[0]
+        mean = float(np.mean(np.abs(samples) ** 2))
+        used = (over > -10) & (over < 7)
+        expected = np.rad2deg(0.5 * mean * 10 ** (over[used] / 10))
+        # In bins half a dB wide, from the turn in the lowest of them.
+        assert table.phase_deg[used] == pytest.approx(expected, rel=0.06, abs=0.2)
+
+
 def test_rows_rise(gain):
     for by_fit in (False, True):
         table = table_of(gain, by_fit=by_fit)

@@ -52,7 +52,7 @@ class Alignment:
     delay_samples : float
         Of the output.
     input_db : float64 array, shape (n_bins,)
-        Middles of bins of input power, dB over full scale of the input.
+        Middles of bins of input power, dB over the mean input, rising.
     gain_db : float64 array, shape (n_bins,)
         Gain in each: that of mean powers.
     phase_deg : float64 array, shape (n_bins,)
@@ -81,11 +81,14 @@ class Alignment:
 
     @property
     def folds_from_db(self) -> float | None:
-        """Input level from which the output falls again; None where it does not."""
+        """Input level from which the output falls again; None where it does not.
+
+        Only what lies beyond the highest output counts: far below it noise goes up and down.
+        """
         output = self.input_db + self.gain_db
-        highest = np.maximum.accumulate(output)
-        fallen = np.flatnonzero(highest - output > FOLD_DB)
-        return float(self.input_db[int(np.argmax(output))]) if fallen.size else None
+        top = int(np.argmax(output))
+        fall = output[top] - output[top:].min()
+        return float(self.input_db[top]) if fall > FOLD_DB else None
 
 
 def align(first: Side, second: Side) -> Alignment | None:
@@ -207,7 +210,7 @@ def _examined(x: Samples, y: Samples, *, correlation: float, delay: float) -> Al
     return Alignment(
         correlation=correlation,
         delay_samples=delay,
-        input_db=middle,
+        input_db=middle - 10 * np.log10(float(power.mean())),
         gain_db=10 * np.log10(output[used_at] / energy[used_at]),
         phase_deg=np.rad2deg(turn - turn[0]),
         left_db=10 * float(np.log10(max(share, 1e-30))),

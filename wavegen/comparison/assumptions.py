@@ -132,7 +132,7 @@ def _rising(points: GainPoints, alignment: Alignment | None, *, mean_db: float) 
     folds = alignment.folds_from_db if alignment else None
     if folds is not None:
         text = (
-            f"beyond an input of {folds:.1f} dB the output falls again: quantiles do not "
+            f"beyond {folds:+.1f} dB over the mean input the output falls again: quantiles do not "
             "correspond there, and the gain is wrong from the output level on that is reached "
             "twice"
         )

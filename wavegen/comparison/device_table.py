@@ -94,7 +94,7 @@ def device_table(
         outputs = np.concatenate([low + small.gain_db, y, above])
     phase = np.zeros(inputs.size)
     if alignment is not None and alignment.input_db.size:
-        phase = np.interp(inputs, alignment.input_db, alignment.phase_deg)
+        phase = np.interp(inputs - mean_db, alignment.input_db, alignment.phase_deg)
     return DeviceTable(
         input_dbm=inputs,
         output_dbm=np.maximum.accumulate(outputs),

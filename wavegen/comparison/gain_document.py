@@ -11,9 +11,12 @@ from wavegen.comparison.assumptions import doubts
 from wavegen.comparison.device_gain import DeviceGain
 from wavegen.comparison.gain import Compression, points_at, resolved_to
 from wavegen.comparison.match_document import figure, needed_documents, side_document
+from wavegen.comparison.off_times import off_time_doubts
 from wavegen.production.sidecar import FORMAT, rounded, versions
 
 RULE_AT = 1e-4
+RISE_DB = 0.02
+"""No expansion is told that is less than this beyond its interval."""
 DECADES = (0.1, 0.01, 1e-3, 1e-4, 1e-5)
 
 
@@ -25,11 +28,12 @@ def gain_document(found: DeviceGain, *, model: str | None) -> dict[str, Any]:
     first, third = (_compression_document(item, unit, origin_db) for item in found.falls)
     assumed = found.assumptions
     linearity = found.linearity
-    needed = needed_documents(found.needed, (found.source, found.output), ("input", "output"))
+    both = found.source, found.output
+    needed = needed_documents(found.needed, both, ("input", "output"))
     warnings = [
         (side.name, text) for side in (found.source, found.output) for text in side.warnings
     ]
-    warnings += [("gain curve", text) for text in doubts(assumed)]
+    warnings += [("gain curve", text) for text in [*doubts(assumed), *off_time_doubts(both)]]
     if (found.source.scale == "dBm") != (found.output.scale == "dBm"):
         text = "one side is in dBm and the other is not: the gain is over that at low levels"
         warnings.append(("gain curve", text))
@@ -83,6 +87,12 @@ def _statement(found: DeviceGain) -> str:
         fall = float(found.small.gain_db - found.points.gain_db[-1])
         word = "compresses" if fall > 0 else "expands"
         text = f"differ: the device {word}, by {abs(fall):.2f} dB at the highest level resolved"
+        rise = _rise(found)
+        if fall > 0 and rise is not None:
+            over_db = found.points.input_db[rise[0]] - found.means_db[0]
+            text += f", after a rise of {rise[1]:.2f} dB at {over_db:+.2f} dB over the mean input"
+        elif fall <= 0:
+            text += "; a device that compresses looks so where input and output are exchanged"
     else:
         text = f"undecided: whether the device is linear within {tolerance_db:g} dB"
         if found.needed:
@@ -131,16 +141,23 @@ def _gain_rows(found: DeviceGain, unit: str, gain_zero_db: float) -> list[dict[s
 
 def _expansion(found: DeviceGain, unit: str, origin_db: float) -> dict[str, Any] | None:
     """Return where the gain is highest over that at low levels, if it surely rises."""
-    over = found.points.gain_db - found.small.gain_db
-    error = np.hypot(found.points.error_db, found.small.error_db)
-    place = int(np.argmax(over - error))
-    if over[place] <= error[place] + 0.02:
+    rise = _rise(found)
+    if rise is None:
         return None
+    place, over_db = rise
     return {
-        "gain_db": rounded(over[place], 4),
+        "gain_db": rounded(over_db, 4),
         f"input_{unit}": rounded(found.points.input_db[place] - origin_db, 4),
         "is": "highest gain over that at low levels",
     }
+
+
+def _rise(found: DeviceGain) -> tuple[int, float] | None:
+    """Return at which point the gain is surely highest, and by how much over that at low levels."""
+    over = found.points.gain_db - found.small.gain_db
+    error = np.hypot(found.points.error_db, found.small.error_db)
+    place = int(np.argmax(over - error))
+    return (place, float(over[place])) if over[place] > error[place] + RISE_DB else None
 
 
 def _mean_compression(found: DeviceGain) -> float:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -15,7 +16,7 @@ from wavegen.comparison.difference import (
     as_recorded,
     compare,
 )
-from wavegen.comparison.look_alike import LookAlike, look_alikes, plateau_duty
+from wavegen.comparison.look_alike import LookAlike, look_alikes
 from wavegen.comparison.match_document import (
     figure,
     look_document,
@@ -27,9 +28,11 @@ from wavegen.comparison.match_document import (
 )
 from wavegen.comparison.match_words import called, statement
 from wavegen.comparison.needed_samples import Needed, needed_samples
+from wavegen.comparison.off_times import off_time_doubts
 from wavegen.comparison.side import Side, SideSettings
 from wavegen.comparison.sides import open_side
 from wavegen.comparison.spectra import (
+    SideSpectrum,
     SpectrumDifference,
     refuse_too_narrow,
     side_spectrum,
@@ -118,18 +121,19 @@ def match(
     verdict: Verdict = "differ" if reason else found.verdict
     said = reason or statement(found, recorded, plans, sides, is_of_records=settings.is_of_records)
     needed = [] if reason else needed_documents(plans, sides, ("stimulus", "field"))
-    spectra = _spectra(sides, workers=workers, progress=progress)
+    spectrum = [side_spectrum(side, workers=workers, progress=progress) for side in sides]
+    spectra = _spectra(sides, spectrum)
     looks: tuple[LookAlike, ...] = ()
     if settings.looks:
         lowest = _lowest(second, settings.down_to)
         looks = look_alikes(second.curve, lowest=lowest) if lowest is not None else ()
-    width_hz = spectra.second.occupied.width_hz if spectra else None
+    width_hz = spectrum[1].occupied.width_hz if spectrum[1] else None
     doubts = spectrum_warnings(sides, spectra) if spectra else []
     warnings = [
         (name, text)
         for side, name in zip(sides, called(*sides), strict=True)
         for text in side.warnings
-    ] + [("comparison", text) for text in [*doubts, *_gate_doubts(sides)]]
+    ] + [("comparison", text) for text in [*doubts, *off_time_doubts(sides)]]
     return {
         "format": f"{FORMAT}.match",
         "version": 1,
@@ -185,36 +189,13 @@ def _lowest(side: Side, down_to: float) -> float | None:
 
 
 def _spectra(
-    sides: tuple[Side, Side], *, workers: int, progress: Progress
+    sides: tuple[Side, Side], spectra: Sequence[SideSpectrum | None]
 ) -> SpectrumDifference | None:
-    spectra = [side_spectrum(side, workers=workers, progress=progress) for side in sides]
     if spectra[0] is None or spectra[1] is None:
         return None
     found = spectrum_difference(spectra[0], spectra[1])
     refuse_too_narrow(sides, found)
     return found
-
-
-def _gate_doubts(sides: tuple[Side, Side]) -> list[str]:
-    """Return what is doubtful about off-times: compared on one side alone, or on both."""
-    if (sides[0].duty is None) != (sides[1].duty is None):
-        gated, whole = sides if sides[0].duty is not None else sides[::-1]
-        text = (
-            f"of {gated.name} the on-time is compared ({100 * (gated.duty or 0):.3g} % of the "
-            f"time), of {whole.name} all of the time"
-        )
-        return [text]
-    if sides[0].duty is not None:
-        return []
-    texts = []
-    for side, name in zip(sides, called(*sides), strict=True):
-        on = plateau_duty(side.curve) if side.signal is not None else None
-        if on is not None:
-            texts.append(
-                f"{name} is on for {100 * on:.2g} % of the time only, and off-times are compared "
-                "with it: --gate auto compares the on-times alone"
-            )
-    return texts
 
 
 def _mean_difference(first: Side, second: Side) -> dict[str, Any] | None:

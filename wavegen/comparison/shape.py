@@ -18,8 +18,8 @@ from wavegen.comparison.difference import (
     compare,
     probabilities,
 )
-from wavegen.comparison.look_alike import plateau_duty
 from wavegen.comparison.match_document import row_document
+from wavegen.comparison.off_times import share_of_time_on
 from wavegen.comparison.shaped_recipe import RegularGate, curve_text, recipe_text, spectrum_text
 from wavegen.comparison.side import CURVE_FORMAT, LOOP, Side, SideSettings
 from wavegen.comparison.sides import open_side
@@ -32,6 +32,7 @@ from wavegen.comparison.spectra import (
 from wavegen.core.errors import ArgumentsError, SignalError, WavegenError
 from wavegen.core.progress import Progress, silent
 from wavegen.core.timespan import TimeSpan
+from wavegen.core.units import format_hz
 from wavegen.files.atomic import Drafts
 from wavegen.files.faults import told
 from wavegen.meters.equivalence import check_tolerance
@@ -147,6 +148,7 @@ def shape(
                 remedy="Give --bandwidth.",
             )
     rate_hz = _rate(side, settings)
+    _check_bandwidth(settings.bandwidth_hz, rate_hz)
     gate = _gate(side, rate_hz, spectrum, settings)
     n_samples = _length(side, settings, rate_hz, gate)
     _check_length(n_samples)
@@ -209,6 +211,18 @@ def _rate(side: Side, settings: ShapeSettings) -> Fraction:
             remedy="Give both, such as --bandwidth 5MHz --sample-rate 20MHz.",
         )
     return settings.sample_rate_hz
+
+
+def _check_bandwidth(bandwidth_hz: Fraction | None, rate_hz: Fraction) -> None:
+    most_hz = float(rate_hz) / (1 + EDGE_FRACTION)
+    if bandwidth_hz is not None and bandwidth_hz > most_hz:
+        raise ArgumentsError(
+            where="--bandwidth",
+            problem=f"{format_hz(bandwidth_hz)} with its edges is wider than the sample rate, "
+            f"{format_hz(rate_hz)}",
+            allowed=f"up to {format_hz(most_hz, digits=4)}",
+            remedy="Choose a narrower band.",
+        )
 
 
 def _gate(
@@ -329,7 +343,7 @@ def _spectra(
 
 def _gate_hint(side: Side) -> list[str]:
     """Return what would shape a field that is switched on and off, if it was not asked for."""
-    on = plateau_duty(side.curve) if side.signal is not None and side.duty is None else None
+    on = share_of_time_on(side)
     if on is None:
         return []
     text = (

@@ -260,7 +260,8 @@ class SpectrumReading:
             work[len(some) : used] = 0  # every row takes the same path through the transform
             lines = scipy.fft.fft(work[:used], axis=1)[: len(some)]
             parts = lines.view(np.float32)
-            np.multiply(parts, parts, out=parts)
+            with np.errstate(over="ignore"):  # told below
+                np.multiply(parts, parts, out=parts)
             powers = parts[:, 0::2].astype(np.float64)
             powers += parts[:, 1::2]
             if not np.isfinite(powers).all():
