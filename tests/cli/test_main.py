@@ -205,7 +205,10 @@ def test_starting_loads_nothing_heavy():
     assert not loaded & heavy
 
 
-@pytest.mark.parametrize("verb", [["list"], ["measure", "harbour-link-qpsk", "--json"]])
+@pytest.mark.parametrize(
+    "verb",
+    [["list"], ["measure", "harbour-link-qpsk", "--json"], ["measure", "--help"], ["schema"]],
+)
 def test_a_pipe_that_is_closed_early_is_no_error(verb, tmp_path):
     read, write = os.pipe()
     os.close(read)

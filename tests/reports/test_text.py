@@ -3,7 +3,7 @@
 import pytest
 
 from wavegen.core.table import Table
-from wavegen.reports.text import NARROWEST, fold, text_of, visible
+from wavegen.reports.text import NARROWEST, fold, held, text_of, visible
 
 WIDE = Table(
     title="A title of many words " * 6,
@@ -75,3 +75,21 @@ def test_nothing_that_acts_on_a_terminal_is_left(hostile):
 def test_what_is_printable_stays():
     for text in ("5 \u00b5s \u2026 \u00e9\u4e2d", "a\tb\nc", "plain"):
         assert visible(text) == text
+
+
+def test_what_an_encoding_lacks_is_spelt_another_way():
+    assert held("5 \u00b5s \u2500 \u00e9", "utf-8") == "5 \u00b5s \u2500 \u00e9"
+    assert held("5 \u00b5s \u2500 \u00e9", "latin-1") == "5 \u00b5s - \u00e9"
+    assert held("5 \u00b5s \u2500 \u00e9", "ascii") == "5 us - \\xe9"
+
+
+def test_words_stay_whole_where_there_is_room():
+    table = Table(
+        title="t",
+        headings=("file", "SHA-512", "mean", "largest level", "verdict"),
+        rows=(("harbour-link-qpsk.sigmf-data", "equal", "+0.000 dB", "+0.000 dB", "match"),),
+        right=frozenset({2, 3}),
+    )
+    said = text_of(table, width=60)
+    for word in ("SHA-512", "largest", "verdict", "+0.000 dB"):
+        assert word in said

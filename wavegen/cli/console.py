@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any, TextIO
 from wavegen.cli.arguments import WIDTH, columns
 from wavegen.cli.progress import ConsoleProgress
 from wavegen.core.errors import FileError
-from wavegen.reports.text import fold, text_of, visible
+from wavegen.reports.text import fold, held, text_of, visible
 
 if TYPE_CHECKING:
     from wavegen.core.table import Table
@@ -83,12 +83,10 @@ class Console:
         BrokenPipeError
             Nobody reads it any more.
         """
-        encoding = encoding_of_stdout()
-        held = text.encode(encoding, "backslashreplace").decode(encoding)
         problem = "is closed"
         if sys.stdout is not None:
             try:
-                sys.stdout.write(held)
+                sys.stdout.write(held(text, encoding_of_stdout()))
                 sys.stdout.flush()
             except BrokenPipeError:
                 raise
@@ -118,10 +116,10 @@ class Console:
             return
         encoding = getattr(sys.stderr, "encoding", None) or "ascii"
         for line in visible(text).splitlines() or [""]:
-            held = line.encode(encoding, "backslashreplace").decode(encoding)
+            said = held(line, encoding)
             if is_terminal(sys.stderr):
-                held = fold(lead + held, columns(), indent=" " * len(lead)).removeprefix(lead)
-            sys.stderr.write(f"{self._styled(lead, style, sys.stderr)}{held}\n")
+                said = fold(lead + said, columns(), indent=" " * len(lead)).removeprefix(lead)
+            sys.stderr.write(f"{self._styled(lead, style, sys.stderr)}{said}\n")
 
     def _styled(self, text: str, style: str, stream: TextIO) -> str:
         if self.is_plain or not takes_styles(stream):
@@ -144,12 +142,7 @@ class Console:
 
     def table(self, table: Table) -> None:
         """Print a table of the result, at most 80 columns wide."""
-        try:
-            "─".encode(encoding_of_stdout())
-            rule = "─"
-        except UnicodeEncodeError:
-            rule = "-"
-        title, break_, rest = text_of(table, width=_width(), rule=rule).partition("\n")
+        title, break_, rest = text_of(table, width=_width(), rule="─").partition("\n")
         self._put(f"{self._styled(title, BOLD, sys.stdout)}{break_}{rest}\n\n")
 
 

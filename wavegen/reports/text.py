@@ -18,6 +18,32 @@ NARROWEST = 6
 """Characters to which a column of words may be folded."""
 
 
+SPELT = str.maketrans("\u00b5\u00d7\u2212\u2013\u2500", "ux---")
+"""One letter for one: micro, times, minus, dash, rule."""
+
+
+def held(text: str, encoding: str) -> str:
+    r"""Return a text with what an encoding lacks spelt another way.
+
+    Examples
+    --------
+    >>> held("5 \u00b5s, \u4e2d", "ascii")
+    '5 us, \\u4e2d'
+    """
+    try:
+        text.encode(encoding)
+    except UnicodeEncodeError:
+        text = "".join(
+            letter if _holds(letter, encoding) else letter.translate(SPELT) for letter in text
+        )
+        return text.encode(encoding, "backslashreplace").decode(encoding)
+    return text
+
+
+def _holds(letter: str, encoding: str) -> bool:
+    return letter == letter.encode(encoding, "ignore").decode(encoding)
+
+
 def visible(text: str) -> str:
     r"""Return a text whose control characters cannot act on a terminal: they are spelt out.
 
@@ -105,11 +131,7 @@ def text_of(table: Table, *, width: int = WIDTH, rule: str = "") -> str:
       1 %   6.63
     """
     cells = [[visible(cell) for cell in row] for row in (table.headings, *table.rows)]
-    natural = [
-        max(len(line) for row in cells for line in (row[number].splitlines() or [""]))
-        for number in range(len(table.headings))
-    ]
-    gap, widths = _fitted(natural, table.right, width - len(INDENT))
+    gap, widths = _fitted(cells, table.right, width - len(INDENT))
     lines = fold(visible(table.title), width).splitlines()
     for number, row in enumerate(cells):
         lines.extend(_row_lines(row, widths, gap, table.right))
@@ -118,32 +140,44 @@ def text_of(table: Table, *, width: int = WIDTH, rule: str = "") -> str:
     return "\n".join(lines)
 
 
-def _fitted(natural: list[int], right: frozenset[int], room: int) -> tuple[str, list[int]]:
-    """Return the gap and the widths of columns that fit; numbers are folded last."""
+def _fitted(
+    cells: Sequence[Sequence[str]], right: frozenset[int], room: int
+) -> tuple[str, list[int]]:
+    """Return the gap and the widths of columns that fit; numbers are folded last, words whole."""
+    columns = list(zip(*cells, strict=True))
+    widths = [_longest(line for cell in column for line in cell.splitlines()) for column in columns]
     for gap in GAPS[:-1]:
-        if _needed(natural, gap) <= room:
-            return gap, natural
-    words = [number for number in range(len(natural)) if number not in right]
-    for gap, columns in itertools.product(GAPS[-2:], (words, range(len(natural)))):
-        widths = _narrowed(natural, columns, room - _needed([0] * len(natural), gap))
         if _needed(widths, gap) <= room:
+            return gap, widths
+    natural, every = widths, set(range(len(widths)))
+    words = [_longest(word for cell in column for word in cell.split()) for column in columns]
+    whole = [min(word, room // 3) for word in words]
+    least = [NARROWEST] * len(widths)
+    for gap in GAPS[-2:]:
+        inner, widths = room - _needed([0] * len(natural), gap), natural
+        for floors, which in itertools.product((whole, least), (every - right, every)):
+            widths = _narrowed(widths, floors, which, inner)
+        if sum(widths) <= inner:
             break
     return gap, widths
+
+
+def _longest(texts: Iterable[str]) -> int:
+    return max(map(len, texts), default=0)
 
 
 def _needed(widths: list[int], gap: str) -> int:
     return sum(widths) + len(gap) * (len(widths) - 1)
 
 
-def _narrowed(widths: list[int], columns: Iterable[int], room: int) -> list[int]:
-    """Return widths of which the widest of some columns were made narrower."""
+def _narrowed(widths: list[int], floors: list[int], which: set[int], room: int) -> list[int]:
+    """Return widths of which the widest of some columns were made narrower, not below floors."""
     widths = list(widths)
-    columns = list(columns)
     while sum(widths) > room:
-        widest = max(columns, key=lambda number: widths[number], default=None)
-        if widest is None or widths[widest] <= NARROWEST:
+        left = [number for number in which if widths[number] > max(floors[number], NARROWEST)]
+        if not left:
             break
-        widths[widest] -= 1
+        widths[max(left, key=lambda number: widths[number])] -= 1
     return widths
 
 
