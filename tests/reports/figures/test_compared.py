@@ -110,6 +110,10 @@ def test_a_tuning_shows_every_trial_against_the_bound():
     }
     (picture,) = tune_pictures(document)
     labels = picture.figure.axes[0].get_legend_handles_labels()[1]
-    assert labels == ["clip", "projection: least distortion in band"]
+    assert labels == [
+        "clip",
+        "projection, the reference",
+        "the best that was found",
+    ]
     assert "7.00 dB at EVM 3.00 %" in picture.alternative
     assert tune_pictures(document | {"evaluations": []}) == []

@@ -128,6 +128,7 @@ def _gain(document: dict[str, Any], rows: Sequence[dict[str, Any]]) -> Picture:
     key, unit = ("input_dbm", "dBm") if is_absolute else ("input_db", "dB")
     point = document.get("input_p1db_dbm" if is_absolute else "input_p1db_db")
     low, high = rows[0], rows[-1]
+    said = document["gain_is"]
     return Picture(
         name="gain",
         figure=gain_figure(
@@ -137,7 +138,7 @@ def _gain(document: dict[str, Any], rows: Sequence[dict[str, Any]]) -> Picture:
             input_key=key,
             compression_db=point,
             unit=unit,
-            gain_name=document["gain_is"],
+            gain_name=said if said.startswith("output") else f"gain {said}",
         ),
         caption="Gain against input level, quantile to quantile, with its interval.",
         alternative=(
@@ -169,10 +170,9 @@ def tune_pictures(document: dict[str, Any]) -> list[Picture]:
                 fronts or [_front("projection", own)],
                 title="What a lower level costs",
                 level_name=f"level at {percent(document['probability'])}, dB over the mean",
-                bound=_front("projection: least distortion in band", own)
-                if own and fronts
-                else None,
+                bound=_front("projection, the reference", own) if own and fronts else None,
                 evm_limit_percent=document["limits"]["evm_percent"],
+                points=_points(document),
             ),
             caption="Every setting that was tried: level against EVM.",
             alternative=f"Points of {len(tried)} methods. "
@@ -183,6 +183,16 @@ def tune_pictures(document: dict[str, Any]) -> list[Picture]:
                 else "None keeps the limits."
             ),
         )
+    ]
+
+
+def _points(document: dict[str, Any]) -> list[Front]:
+    """Return the signal as it is, and the best that keeps the limits."""
+    told = (("as it is", document.get("before")), ("the best that was found", document.get("best")))
+    return [
+        _front(name, [item])
+        for name, item in told
+        if item and item["level_db"] is not None and item["evm_percent"] is not None
     ]
 
 

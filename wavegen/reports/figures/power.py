@@ -211,6 +211,8 @@ def _draw_band(axes: Axes, curve: CcdfCurve, style: Stroke, floor: float, label:
     assert curve.low is not None  # noqa: S101 - asked by the caller
     assert curve.high is not None  # noqa: S101
     drawn = (curve.probability > 0) & ((curve.low > floor / 10) | (curve.high < _ANYTHING))
+    if not drawn.any():
+        return
     axes.fill_between(
         curve.level_db,
         np.maximum(curve.low, floor / 10),

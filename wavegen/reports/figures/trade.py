@@ -16,6 +16,9 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
 
+_POINTS = ("*", "o")
+
+
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
 class Front:
     """What one method reaches.
@@ -49,6 +52,7 @@ def front_figure(
     level_name: str,
     bound: Front | None = None,
     evm_limit_percent: float | None = None,
+    points: Sequence[Front] = (),
 ) -> Figure:
     """Draw level against EVM: what each method pays for a lower peak.
 
@@ -62,6 +66,8 @@ def front_figure(
         What none of them can pass.
     evm_limit_percent : float, optional
         The limit; what lies beyond is shaded.
+    points : sequence of Front
+        Single settings to point out.
 
     Returns
     -------
@@ -81,12 +87,26 @@ def front_figure(
         )
     if bound is not None:
         draw(axes, *bound.best, REFERENCE, label=bound.name, has_marks=True)
+    for point, mark in zip(points, _POINTS, strict=False):
+        axes.plot(
+            point.evm_percent,
+            point.level_db,
+            linestyle="none",
+            marker=mark,
+            markersize=15,
+            markerfacecolor="none",
+            markeredgecolor=INK,
+            markeredgewidth=1.8,
+            label=point.name,
+            clip_on=False,
+        )
     if evm_limit_percent is not None:
         right = max(axes.get_xlim()[1], evm_limit_percent * 1.1)
         axes.axvspan(evm_limit_percent, right, facecolor=SHADE, zorder=0)
         axes.axvline(evm_limit_percent, color=INK, linewidth=1.2)
         axes.set_xlim(right=right)
     axes.set_xlim(left=0)
+    axes.margins(y=0.08)
     axes.set_xlabel(
         "EVM, % of the RMS signal" + ("   (shaded: over the limit)" if evm_limit_percent else "")
     )

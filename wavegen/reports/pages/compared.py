@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import Any
 
 from wavegen.core.table import Table
@@ -20,15 +21,22 @@ _STANDINGS: dict[str, Standing] = {
 
 
 def match_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
-    """Return the page of a match."""
-    return _page(
+    """Return the page of a match; a recipe to start from stands in a section of its own."""
+    nearest = next((look for look in document["looks_like"][:1] if look["is_near"]), None)
+    recipe = nearest["recipe"] if nearest else ""
+    said = _without_text(comparison.match_lines(document), recipe.splitlines())
+    page = _page(
         f"{document['stimulus']['name']} against {document['field']['name']}",
-        comparison.match_lines(document),
+        _last_first(said),
         comparison.match_tables(document),
         pictures,
         document,
         verdict=document["verdict"],
     )
+    if not recipe:
+        return page
+    start = Section(heading="A recipe to start from", text=recipe)
+    return replace(page, sections=(*page.sections, start))
 
 
 def shape_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
@@ -47,7 +55,7 @@ def gain_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
     """Return the page of a device's gain curve."""
     return _page(
         "Gain of the device",
-        gain_curve.gain_lines(document),
+        _last_first(gain_curve.gain_lines(document)),
         gain_curve.gain_tables(document),
         pictures,
         document,
@@ -60,12 +68,30 @@ def tune_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
     confirmation = document.get("confirmation") or {}
     return _page(
         f"Crest-factor reduction of {document['title'] or document['name']}",
-        tuning.outcome_words(document),
+        _last_first(tuning.outcome_words(document)),
         [tuning.method_table(document, title="Methods")],
         pictures,
         document,
         verdict=confirmation.get("verdict", ""),
     )
+
+
+def _last_first(lines: Sequence[str]) -> list[str]:
+    """Return sentences of which the last says what came of it, that one first."""
+    return [*lines[-1:], *lines[:-1]]
+
+
+def _without_text(lines: list[str], text: Sequence[str]) -> list[str]:
+    """Return sentences without the lines of a text among them, which is shown elsewhere."""
+    count = len(text)
+    places = [k for k in range(len(lines)) if count and lines[k : k + count] == list(text)]
+    if not places:
+        return lines
+    before = [
+        *lines[: places[0] - 1],
+        lines[places[0] - 1].removesuffix(" A recipe to start from:"),
+    ]
+    return [*before, *lines[places[0] + count :]]
 
 
 def _page(
@@ -80,7 +106,7 @@ def _page(
     origin = [(name, str(value)) for name, value in document.get("versions", {}).items()]
     return Page(
         title=title,
-        summary=tuple(lines[::-1]),
+        summary=tuple(lines),
         verdict=verdict,
         standing=_STANDINGS.get(verdict, ""),
         warnings=tuple(f"{note['where']}: {note['text']}" for note in document["warnings"]),
