@@ -143,6 +143,41 @@ def test_a_clip_shows_at_the_levels_that_it_moves(made):
     assert {shown[q]["verdict"] for q in (1e-3, 1e-4, 1e-5, 1e-6)} == {"undecided"}
 
 
+CELL = """\
+wavegen: 1
+sample_rate: 7.68 MHz
+duration: 10 ms
+signal:
+  kind: ofdm
+  subcarrier_spacing: 15 kHz
+  groups: [{subcarriers: "-150..-1, 1..150", constellation: 64qam}]
+  cyclic_prefix: 144/2048
+"""
+
+
+def test_another_constellation_is_found_where_no_ccdf_shows_it(lab, tmp_path):
+    """QPSK for 64QAM on 300 subcarriers moves the level at 0.01 % by some 0.01 dB."""
+    folder = lab.make(CELL, tmp_path / "a").folder
+    other = lab.make(CELL.replace("64qam", "qpsk"), tmp_path / "b").folder
+    write(folder, codes(other))
+    row = first(folder, tolerance_db=1.0)  # one loop differs from the next by some 0.3 dB
+    assert (row["verdict"], row["compared_by"]) == ("differ", "waveform")
+    # Unlike data: the fitted error of what has nothing in common is far over 100 %.
+    assert row["waveform"][0]["error_percent"] > 100
+    assert row["waveform"][0]["evm"][0]["percent"] > 100
+    assert "not those of its recipe" in row["reasons"][0]
+
+
+def test_the_same_samples_rounded_anew_are_the_same(lab, tmp_path):
+    folder = lab.make(CELL, tmp_path).folder
+    write(folder, np.rint(codes(folder) / 64) * 64)
+    row = first(folder)
+    assert (row["verdict"], row["compared_by"]) == ("match", "statistics")
+    # Steps of 64 codes at an RMS of some 5000 a rail: 64 / sqrt(12) / 5000.
+    assert 0.1 < row["waveform"][0]["error_percent"] < 1
+    assert 0.05 < row["waveform"][0]["evm"][0]["percent"] < 1
+
+
 def test_another_length_is_a_difference_by_itself(made, monkeypatch):
     write(made, codes(made)[:-2])
     monkeypatch.setattr(room, "measure", None)

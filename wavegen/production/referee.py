@@ -16,7 +16,9 @@ from wavegen.files.analytic import looped
 from wavegen.files.format import Recording
 from wavegen.laws.law import Law
 from wavegen.laws.term import NoLaw
+from wavegen.meters.evm_probe import measure_evm, total_tap
 from wavegen.production.export import Channel
+from wavegen.production.figures import has_symbols
 from wavegen.production.judgement import (
     DEFAULT,
     Judgement,
@@ -25,7 +27,8 @@ from wavegen.production.judgement import (
     judge,
     law_of,
 )
-from wavegen.production.prepare import prepare
+from wavegen.production.prepare import Prepared, prepare
+from wavegen.production.sidecar import rounded, versions
 from wavegen.production.stimulus import Stimulus, recipe_channel
 from wavegen.recipe.load import load_text
 from wavegen.stages.channel.gate import on_time
@@ -140,9 +143,60 @@ class Referee:
         codes = channel.codes(iter(read.values()), signal, loops=True)
         return judge(law, codes, recording.datatype, self.question)
 
+    def waveform(self, recording: Recording, number: int) -> dict[str, Any] | None:
+        """Return how far the samples of a file stand from those that its recipe makes.
+
+        Parameters
+        ----------
+        recording : Recording
+            One channel of the file.
+        number : int
+            Which.
+
+        Returns
+        -------
+        dict or None
+            ``error_percent`` of the whole waveform, the gain fitted, and ``evm`` of the symbols
+            of each source. None where the recipe makes no such samples here: another version of
+            the program, another rate or length, or real samples around an intermediate frequency.
+
+        Raises
+        ------
+        SignalError
+            A sample is not finite, or all are zero.
+        FileError
+            The file cannot be read to its end.
+        """
+        document = self.stimulus.document
+        is_ours = (document.get("versions") or {}).get("wavegen") == versions()["wavegen"]
+        if isinstance(self._channels, str) or not is_ours or recording.datatype.is_real:
+            return None
+        sent = self._channels[recipe_channel(document, number)].built.signal
+        seen = looped(recording)
+        if (seen.n_samples, seen.sample_rate_hz) != (sent.n_samples, sent.sample_rate_hz):
+            return None
+        how: dict[str, Any] = {"workers": self.workers, "progress": self.progress}
+        total = render(seen, taps=(total_tap(sent, seen),), task="waveform", **how)
+        error = next(iter(total.values())).fitted_percent
+        found = measure_evm(sent, seen, **how) if has_symbols(sent)[0] else []
+        return {
+            "error_percent": rounded(error, 4),
+            "evm": [
+                {"path": item.path, "percent": rounded(item.overall.fitted_percent, 4)}
+                for item in found
+            ],
+        }
+
     @cached_property
     def _laws(self) -> list[tuple[Law | NoLaw, Bursts | None]] | str:
         """Return the law and the on-time of each channel, or why they are not known here."""
+        if isinstance(self._channels, str):
+            return self._channels
+        return [(law_of(channel), on_time(channel.built.signal)) for channel in self._channels]
+
+    @cached_property
+    def _channels(self) -> Sequence[Prepared] | str:
+        """Return what the recipe in the sidecar makes, or why it cannot be built here."""
         document = self.stimulus.document
         recipe = document["recipe"]
         try:
@@ -154,8 +208,7 @@ class Referee:
             )
             if loaded.recipe.sample_rate_hz != Fraction(document["sample_rate_exact_hz"]):
                 return "its rate is not that of its recipe"
-            channels = prepare(loaded).channels
-            return [(law_of(channel), on_time(channel.built.signal)) for channel in channels]
+            return prepare(loaded).channels
         except (RecipeError, FileError, SignalError) as error:
             return f"the recipe in the sidecar cannot be built here ({error})"
 
