@@ -53,3 +53,17 @@ def test_evm_and_aclr_behind_a_clip(call, recipe):
         "pulse: {kind: root_raised_cosine, roll_off: 0.22}}"
     )
     assert "EVM and ACLR" in call("predict", recipe(), "--set", carrier, *clip).out
+
+
+def test_a_length_that_nothing_can_say_is_said(call, recipe):
+    noise = (
+        "--set",
+        "signal={kind: noise, bandwidth: 1 MHz}",
+        "--set",
+        "stages=[{kind: clip_filter, ceiling: 6 dB}]",
+    )
+    said = " ".join(call("predict", recipe(), *noise, "--fault", "0.1dB", "--at", "1%").out.split())
+    assert "no law" in said
+    assert "nothing says how long a loop must be" in said
+    assert "how long" not in call("predict", recipe(), *noise).out
+    assert "1e-15" in call("predict", recipe(), "--fault", "1dB", "--at", "1e-30").err

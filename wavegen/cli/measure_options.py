@@ -28,7 +28,7 @@ def probability(text: str) -> float:
     Raises
     ------
     argparse.ArgumentTypeError
-        None between 0 and 1.
+        None from 1e-15 to below 1.
     """
     try:
         number, unit = split_quantity(text)
@@ -37,7 +37,7 @@ def probability(text: str) -> float:
     value = float(number) / (100 if unit == "%" else 1)
     if unit not in {"", "%"} or not 1e-15 <= value < 1:
         message = (
-            f"{text!r} is no probability; allowed: above 0 and below 1, such as 0.0001 or 0.01%"
+            f"{text!r} is no probability; allowed: from 1e-15 to below 1, such as 0.0001 or 0.01%"
         )
         raise argparse.ArgumentTypeError(message)
     return value

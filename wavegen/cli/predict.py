@@ -64,11 +64,11 @@ class Predict:
         if arguments.json:
             console.document(document)
         else:
-            show(document, console)
+            show(document, console, asks_for_length=fault is not None)
         return 0
 
 
-def show(document: dict[str, Any], console: Console) -> None:
+def show(document: dict[str, Any], console: Console, *, asks_for_length: bool = False) -> None:
     """Print one prediction."""
     from wavegen.reports.tables import distortion_table, fault_words, law_table
 
@@ -77,6 +77,8 @@ def show(document: dict[str, Any], console: Console) -> None:
     title = document["title"] or document["name"]
     if document["law"] is None:
         console.line(f"{title}: no law. {document['no_law']}.")
+        if asks_for_length:
+            console.line("Without a law nothing says how long a loop must be to show a fault.")
         return
     console.table(law_table(document["law"], title=title))
     distortion = document["distortion"]

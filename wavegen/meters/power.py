@@ -154,7 +154,9 @@ class PowerReading:
         if self.cells is None or self.peak == 0.0:
             raise SignalError(
                 where=self.where,
-                problem=f"all {self.n_samples} samples are exactly zero",
+                problem="is exactly zero at its only sample"
+                if self.n_samples == 1
+                else f"all {self.n_samples} samples are exactly zero",
                 allowed="a mean power above zero, since levels are stated over it",
                 remedy="Check the level, the gating, or the part that was asked for.",
             )

@@ -130,7 +130,8 @@ def summary_table(document: dict[str, Any], *, title: str) -> Table:
         rows.append(("PAPR of the on-time", fixed(on_time["papr_between_samples_db"], "dB")))
         rows.append(("duty", f"{100 * on_time['duty']:.4g} %"))
     if document["n_zeros"]:
-        rows.append(("exact zeros", f"{document['n_zeros']} samples"))
+        count = document["n_zeros"]
+        rows.append(("exact zeros", f"{count} sample{'s' if count > 1 else ''}"))
     seam = document.get("seam") or document.get("loop", {}).get("seam")
     if seam:
         rows.append(("loop seam", seam_words(seam)))
