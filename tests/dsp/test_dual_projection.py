@@ -11,7 +11,7 @@ from scipy.optimize import minimize
 from wavegen.core.render import samples_of
 from wavegen.core.signal import Signal
 from wavegen.dsp.band_filter import BandFilter
-from wavegen.dsp.dual_projection import ahead, hold_below, momentum, project, project_rows, scaled
+from wavegen.dsp.dual_projection import hold_below, momentum, project, project_rows
 from wavegen.dsp.occupied_bands import Band, design_bands
 
 
@@ -87,10 +87,7 @@ def test_what_keeps_the_ceiling_is_left():
     assert np.array_equal(project_rows(rows, response=response, amplitude=high, n_rounds=5), rows)
 
 
-def test_steps_by_hand():
-    y, before = np.array([2, 1j], np.complex64), np.array([1, 1j], np.complex64)
-    assert ahead(y, before, 0.5).tolist() == [2.5, 1j]
-    assert scaled(y, -2.0).tolist() == [-4, -2j]
+def test_momentum_grows():
     assert momentum(1) == [0.0]
     assert all(a < b < 1 for a, b in zip(momentum(50)[1:], momentum(50)[2:], strict=False))
 

@@ -72,7 +72,7 @@ def test_steps_that_would_raise_it_are_halved():
 def test_the_step_is_the_best_to_first_order():
     """On two samples, one above: ``|4 - 2 s| = 2`` at ``s = 1``."""
     excess = Excess.of(np.array([[4, 0]], np.complex64), 2.0)
-    assert excess.samples.tolist() == [[2, 0]]
+    assert spread(excess).tolist() == [[2, 0]]
     assert (excess.counts.tolist(), excess.places[0, 0], excess.energies.tolist()) == ([1], 0, [4])
     moved = np.array([[-2, 5]], np.complex64)
     assert steps_of(moved, excess).tolist() == [1.0]
@@ -80,9 +80,27 @@ def test_the_step_is_the_best_to_first_order():
     assert steps_of(moved, Excess.of(np.zeros((1, 2), np.complex64), 2.0)).tolist() == [0.0]
 
 
+def spread(excess):
+    rows = np.full(excess.places.shape, np.nan, np.complex64)
+    excess.put(rows)
+    return rows
+
+
 def fields_of(excess):
-    first = [excess.places[k, :count] for k, count in enumerate(excess.counts)]
-    return [excess.samples, np.concatenate(first), excess.counts, excess.energies]
+    first = [
+        field[k, :count]
+        for field in (excess.places, excess.values)
+        for k, count in enumerate(excess.counts)
+    ]
+    return [spread(excess), np.concatenate(first), excess.counts, excess.energies]
+
+
+def test_the_excess_is_spread_without_a_compiler_too(monkeypatch):
+    excess = Excess.of(rows_of(5), 1.5)
+    want = spread(excess)
+    monkeypatch.setattr(peak_descent, "_compile", lambda: None)
+    assert spread(excess).tobytes() == want.tobytes()
+    assert want.any()
 
 
 @pytest.mark.parametrize("amplitude", [0.9, 1.6, 3.9])
@@ -104,7 +122,7 @@ def test_what_stands_above_is_what_a_clip_takes():
     for amplitude in (0.5, 1.5, 9.0):
         want = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
         excess = Excess.of(rows.copy(), amplitude)
-        assert np.array_equal(excess.samples, want)
+        assert np.array_equal(spread(excess), want)
         assert excess.energies == pytest.approx(energy(rows, amplitude), rel=1e-6)
         assert np.array_equal(excess.counts, np.count_nonzero(want, axis=1))
 

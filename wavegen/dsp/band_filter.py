@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -17,9 +17,12 @@ from wavegen.dsp.overlap_save import (
     fft_length,
     filter_response,
 )
+from wavegen.dsp.row_kernels import put_samples, scale_lines, take_difference, take_samples
 
-CHUNK_SAMPLES = 1 << 17
-"""Samples transformed in one chunk: what goes on between transforms stays near the core."""
+Put = Callable[[NDArray[np.complex64], int], None]
+"""Fills rows with the samples that begin ``half_length`` before an output."""
+Take = Callable[[NDArray[np.complex64], int, int], None]
+"""Takes filtered rows, for the outputs from one to another."""
 
 
 @dataclass(frozen=True, eq=False)
@@ -56,20 +59,41 @@ class BandFilter:
 
     @cached_property
     def _response(self) -> NDArray[np.float32]:
-        """The real response, each bin twice: once for each rail; shape (2 n_fft,)."""
-        return np.repeat(filter_response(self.taps, self.n_fft).real, 2)
+        """The real response, shape (1, n_fft)."""
+        response = filter_response(self.taps, self.n_fft).real
+        return np.ascontiguousarray(response)[None]
 
-    def chunks(self, n_out: int) -> Iterator[tuple[int, int]]:
-        """Yield ranges of whole rows whose intermediate results stay in cache.
+    def run(self, n_out: int, put: Put, take: Take, *, n_parts: int = 1) -> None:
+        """Filter rows that stay in cache, some at a time, and what goes on before and after.
 
         Parameters
         ----------
         n_out : int
             Samples wanted, from the grid on.
+        put : callable
+            ``put(rows, low)`` fills rows, shape (n_rows, n_fft), ``hop`` samples apart; the first
+            begins ``half_length`` samples before output ``low``. They are overwritten after.
+        take : callable
+            ``take(rows, low, high)`` is given what has become of them: outputs ``low`` to ``high``
+            stand from ``half_length`` on in each row, ``hop`` of them, fewer in the last.
+        n_parts : int
+            2 where each row holds two stretches of a real signal, the second as imaginary parts;
+            the taps are real. The grid is then that of ``2 hop``.
         """
-        length = max(CHUNK_SAMPLES // self.n_fft, ROWS_AT_LEAST) * self.hop
-        for low in range(0, n_out, length):
-            yield low, min(low + length, n_out)
+        per_row = n_parts * self.hop
+        n_rows = -(-n_out // per_row)
+        block = max(BLOCK_SAMPLES // self.n_fft, ROWS_AT_LEAST)
+        block = min(block, -(-n_rows // ROWS_AT_LEAST) * ROWS_AT_LEAST)
+        work = np.empty((block, self.n_fft), np.complex64)
+        for first in range(0, n_rows, block):
+            left = -(-(n_rows - first) // ROWS_AT_LEAST) * ROWS_AT_LEAST
+            rows = work[: min(block, left)]
+            low = first * per_row
+            put(rows, low)
+            rows = np.asarray(scipy.fft.fft(rows, axis=1, overwrite_x=True))
+            scale_lines(rows, self._response)
+            rows = np.asarray(scipy.fft.ifft(rows, axis=1, overwrite_x=True))
+            take(rows, low, min(low + block * per_row, n_out))
 
     def apply(self, samples: Samples, n_out: int, *, base: Samples | None = None) -> Samples:
         """Filter a stretch that begins on the grid, and subtract it from another if given.
@@ -88,44 +112,17 @@ class BandFilter:
         complex64 array, shape (n_out,)
             Owned by the caller.
         """
-        n_fft, half, hop = self.n_fft, self.half_length, self.hop
-        n_rows = -(-n_out // hop)
-        block = max(BLOCK_SAMPLES // n_fft, ROWS_AT_LEAST)
-        block = min(block, -(-n_rows // ROWS_AT_LEAST) * ROWS_AT_LEAST)
-        n_whole = max((samples.size - n_fft) // hop + 1, 0)
-        work = np.empty((block, n_fft), np.complex64)
+        half, hop = self.half_length, self.hop
         out = np.empty(n_out, np.complex64)
-        for first in range(0, n_rows, block):
-            count = min(block, n_rows - first)
-            whole = min(max(n_whole - first, 0), count)
-            if whole:
-                stretch = samples[first * hop :]
-                work[:whole] = np.lib.stride_tricks.sliding_window_view(stretch, n_fft)[
-                    : (whole - 1) * hop + 1 : hop
-                ]
-            for row in range(whole, count):
-                rest = samples[(first + row) * hop :]
-                work[row, : rest.size] = rest
-                work[row, rest.size :] = 0
-            used = -(-count // ROWS_AT_LEAST) * ROWS_AT_LEAST
-            work[count:used] = 0
-            lines = np.asarray(scipy.fft.fft(work[:used], axis=1, overwrite_x=True))
-            flat = lines.view(np.float32)
-            np.multiply(flat, self._response, out=flat)
-            rows = np.asarray(scipy.fft.ifft(lines, axis=1, overwrite_x=True))
-            begin = first * hop
-            full = min((n_out - begin) // hop, count)
-            end = begin + full * hop
-            _put(out[begin:end], rows[:full, half : half + hop], base, begin)
-            if full < count:
-                _put(out[end:], rows[full : full + 1, half : half + n_out - end], base, end)
+
+        def put(rows: Samples, low: int) -> None:
+            put_samples(rows, samples[low:], hop=hop)
+
+        def take(rows: Samples, low: int, high: int) -> None:
+            if base is None:
+                take_samples(out[low:high], rows, half=half, hop=hop)
+            else:
+                take_difference(out[low:high], base[low:high], rows, half=half, hop=hop)
+
+        self.run(n_out, put, take)
         return out
-
-
-def _put(out: Samples, rows: NDArray[np.complex64], base: Samples | None, first: int) -> None:
-    """Write rows in a row, or what is left of the base without them."""
-    into = out.reshape(rows.shape)
-    if base is None:
-        into[...] = rows
-    else:
-        np.subtract(base[first : first + out.size].reshape(rows.shape), rows, out=into)

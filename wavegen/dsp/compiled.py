@@ -27,12 +27,17 @@ def compiled(signature: Any, loop: Callable[..., Any]) -> Callable[..., Any]:
         would each compile a version of their own.
     loop : callable
         Plain Python that numba understands.
+
+    Notes
+    -----
+    A division by zero gives what it gives in NumPy; a check for it would keep loops from working
+    on several samples at once.
     """
     import numba
 
     made: Callable[..., Any]
     try:
-        made = numba.njit(signature, nogil=True, cache=True)(loop)
+        made = numba.njit(signature, nogil=True, error_model="numpy", cache=True)(loop)
     except RuntimeError:  # no folder can be written for the cache
-        made = numba.njit(signature, nogil=True)(loop)
+        made = numba.njit(signature, nogil=True, error_model="numpy")(loop)
     return made

@@ -28,7 +28,8 @@ from numpy.typing import NDArray
 
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.dsp.band_filter import BandFilter
-from wavegen.dsp.envelope_excess import dilate, excess_over, shortfall_of
+from wavegen.dsp.peak_rows import put_lack, take_lowered
+from wavegen.dsp.row_kernels import put_ahead, put_excess, scale_lines, take_excess
 from wavegen.dsp.windows import STOPBAND_DB, kaiser_beta, kaiser_window
 
 
@@ -56,28 +57,6 @@ def momentum(n_rounds: int) -> list[float]:
         found.append((t - 1) / following)
         t = following
     return found[:n_rounds]
-
-
-def ahead(state: Samples, before: Samples, factor: float) -> Samples:
-    """Return ``y + factor (y - y')``.
-
-    Parameters
-    ----------
-    state, before : complex64 array, same shape
-        The state and the one before it; not changed.
-    factor : float
-        From :func:`momentum`.
-
-    Returns
-    -------
-    complex64 array, same shape
-        Owned by the caller.
-    """
-    out = np.subtract(state, before)
-    flat = out.reshape(-1).view(np.float32)
-    np.multiply(flat, np.float32(factor), out=flat)
-    np.add(out, state, out=out)
-    return out
 
 
 def project_rows(
@@ -131,24 +110,25 @@ def correcting_lines(
     complex64 array, shape (n_rows, n_fft)
         On the scale of ``fft(row) / n_fft``; owned by the caller.
     """
-    twice = np.repeat(response, 2, axis=-1)  # once for each rail
+    factors, n_fft = np.atleast_2d(response), rows.shape[1]
 
-    def in_band(states: NDArray[np.complex64]) -> NDArray[np.complex64]:
-        lines = np.asarray(scipy.fft.fft(states, axis=1, norm="forward"))
-        flat = lines.view(np.float32)
-        np.multiply(flat, twice, out=flat)
+    def in_band(states: Samples) -> Samples:
+        lines = np.asarray(scipy.fft.fft(states, axis=1, norm="forward", overwrite_x=True))
+        scale_lines(lines, factors)
         return lines
 
-    state = excess_over(rows.reshape(-1), amplitude).reshape(rows.shape)
-    before = np.zeros_like(state)
+    work, state, before, after = (np.empty(rows.shape, np.complex64) for _ in range(4))
+    put_excess(state, rows.reshape(-1), hop=n_fft, amplitude=amplitude)
+    before[:] = state
     for factor in momentum(n_rounds)[1:]:
-        moved = ahead(state, before, factor) if factor else state
-        back = scipy.fft.ifft(in_band(moved), axis=1, norm="forward", overwrite_x=True)
-        left = np.subtract(rows, back, out=np.asarray(back))
-        left += moved
-        before, spent = state, before
-        state = excess_over(left.reshape(-1), amplitude, out=spent)
-        state = state.reshape(rows.shape)
+        source, y, last, made = (each.reshape(-1) for each in (rows, state, before, after))
+        put_ahead(work, y, last, hop=n_fft, factor=factor)
+        lines = in_band(work)
+        back = np.asarray(scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True))
+        take_excess(
+            made, source, y, last, back, half=0, hop=n_fft, factor=factor, amplitude=amplitude
+        )
+        state, before, after = after, state, before
     lines = in_band(state)
     return np.negative(lines, out=lines)
 
@@ -184,18 +164,30 @@ class DualRound(Signal):
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Return ``v - clip(v)`` of ``v = z + x - H z``."""
-        source = arrays[0]
+        source, out = arrays[0], np.empty(stop - start, np.complex64)
         if len(arrays) == 1:
-            return excess_over(source, self.amplitude)
-        reach = self.band.half_length
-        out = np.empty(stop - start, np.complex64)
-        for low, high in self.band.chunks(out.size):
-            moved = arrays[1][low : high + 2 * reach]
-            if len(arrays) == 3 and self.factor:
-                moved = ahead(moved, arrays[2][low : high + 2 * reach], self.factor)
-            left = self.band.apply(moved, high - low, base=source[low:high])
-            left += moved[reach : reach + high - low]
-            excess_over(left, self.amplitude, out=out[low:high])
+            put_excess(out[None], source, hop=out.size, amplitude=self.amplitude)
+            return out
+        half, hop = self.band.half_length, self.band.hop
+        state, before = arrays[1], arrays[-1]
+
+        def put(rows: Samples, low: int) -> None:
+            put_ahead(rows, state[low:], before[low:], hop=hop, factor=self.factor)
+
+        def take(rows: Samples, low: int, high: int) -> None:
+            take_excess(
+                out[low:high],
+                source[low:high],
+                state[half + low : half + high],
+                before[half + low : half + high],
+                rows,
+                half=half,
+                hop=hop,
+                factor=self.factor,
+                amplitude=self.amplitude,
+            )
+
+        self.band.run(out.size, put, take)
         return out
 
 
@@ -257,25 +249,18 @@ class HeldBelow(Signal):
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Multiply by one less the smoothed lack."""
-        source = arrays[0]
-        half = self.smoothing.half_length
-        n = stop - start
-        here = source[2 * half : 2 * half + n]
-        short = shortfall_of(source, self.amplitude)
-        if not short.any():
-            return scaled(here, self.gain)
-        spread = dilate(short, half).astype(np.complex64)
-        lack = self.smoothing.apply(spread, n).real
-        factor = np.subtract(np.float32(1), lack)
-        np.multiply(factor, np.float32(self.gain), out=factor)
-        return here * factor
+        source, out = arrays[0], np.empty(stop - start, np.complex64)
+        half, hop = self.smoothing.half_length, self.smoothing.hop
 
+        def put(rows: Samples, low: int) -> None:
+            put_lack(rows, source[low:], hop=hop, reach=half, amplitude=self.amplitude)
 
-def scaled(samples: Samples, gain: float) -> Samples:
-    """Return samples times a real gain, owned by the caller."""
-    out = np.empty(samples.size, np.complex64)
-    np.multiply(samples.view(np.float32), np.float32(gain), out=out.view(np.float32))
-    return out
+        def take(rows: Samples, low: int, high: int) -> None:
+            here = source[2 * half + low : 2 * half + high]
+            take_lowered(out[low:high], here, rows, half=half, hop=hop, gain=self.gain)
+
+        self.smoothing.run(out.size, put, take, n_parts=2)
+        return out
 
 
 def project(source: Signal, *, band: BandFilter, amplitude: float, n_rounds: int) -> Signal:
@@ -341,7 +326,7 @@ def hold_below(
     return HeldBelow(
         sample_rate_hz=source.sample_rate_hz,
         n_samples=source.n_samples,
-        step=smoothing.hop,
+        step=2 * smoothing.hop,
         inputs=(source,),
         mean_power=mean_power,
         amplitude=amplitude,

@@ -1,8 +1,8 @@
 """How far samples stand over an amplitude: the piece of them that a limiter would cut off.
 
 All functions are local and elementwise, so that no answer depends on how a range is cut. A compiled
-loop takes the excess where numba is installed; plain NumPy gives the same bits otherwise and is its
-referee.
+loop finds the peaks of rows where numba is installed; plain NumPy gives the same bits otherwise and
+is its referee.
 """
 
 from __future__ import annotations
@@ -57,7 +57,7 @@ def row_peaks(rows: Samples) -> NDArray[np.float32]:
     -------
     float32 array, shape (n_rows,)
     """
-    kernel = _compile_peaks()
+    kernel = _compile()
     if kernel is None:
         return row_peaks_by_numpy(rows)
     out = np.empty(rows.shape[0], np.float32)
@@ -71,12 +71,27 @@ def row_peaks_by_numpy(rows: Samples) -> NDArray[np.float32]:
     return np.asarray(np.max(power, axis=1))
 
 
-def excess_over(
-    samples: Samples,
-    amplitude: float,
-    *,
-    out: Samples | None = None,
-) -> Samples:
+def clip_share(power: NDArray[np.float32], amplitude: float) -> NDArray[np.float32]:
+    """Return ``1 - A / |x|`` where ``|x|^2 > A^2``, else zero: the share that a clip takes.
+
+    Parameters
+    ----------
+    power : float32 array
+        ``|x|^2``; not changed.
+    amplitude : float
+        Largest envelope let through, ``A``.
+
+    Returns
+    -------
+    float32 array, same shape
+        0 to 1.
+    """
+    with np.errstate(divide="ignore"):
+        share = np.float32(1) - np.float32(amplitude) / np.sqrt(power)
+    return np.where(power > np.float32(amplitude * amplitude), share, np.float32(0))
+
+
+def excess_over(samples: Samples, amplitude: float) -> Samples:
     """Return what a polar clip takes away: ``x (1 - A / |x|)`` where ``|x| > A``, else zero.
 
     Parameters
@@ -85,8 +100,6 @@ def excess_over(
         Not changed.
     amplitude : float
         Largest envelope let through, ``A``.
-    out : complex64 array of n, optional
-        Where it goes, in any shape; contiguous.
 
     Returns
     -------
@@ -98,33 +111,15 @@ def excess_over(
     >>> excess_over(np.array([3 + 4j, 1j], np.complex64), 2.5).tolist()
     [(1.5+2j), 0j]
     """
-    kernel = _compile()
-    made = np.empty(samples.size, np.complex64) if out is None else out.reshape(-1)
-    if kernel is None:
-        made[:] = excess_by_numpy(samples, amplitude)
-        return made
-    first = np.ascontiguousarray(samples).view(np.float32)
-    limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
-    kernel(first, limit, top, made.view(np.float32))
+    share = clip_share(power_of(samples), amplitude)
+    made = np.empty(samples.size, np.complex64)
+    np.multiply(samples.real, share, out=made.real)
+    np.multiply(samples.imag, share, out=made.imag)
     return made
 
 
-def excess_by_numpy(samples: Samples, amplitude: float) -> Samples:
-    """Do what :func:`excess_over` does, without a compiler; same parameters, same bits."""
-    out = np.zeros(samples.size, np.complex64)
-    limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
-    for low in range(0, samples.size, BLOCK_SAMPLES):
-        block = samples[low : low + BLOCK_SAMPLES]
-        power = power_of(block)
-        above = np.flatnonzero(power > limit)
-        if above.size:
-            share = np.float32(1) - top / np.sqrt(power[above])
-            out[low + above] = block[above] * share
-    return out
-
-
 @cache
-def _compile_peaks() -> Callable[..., None] | None:
+def _compile() -> Callable[..., None] | None:
     """Return the compiled loop, or None where numba is missing or switched off."""
     kinds = numba_types()
     if kinds is None:
@@ -150,37 +145,6 @@ def _peaks(rows: NDArray[np.float32], out: NDArray[np.float32]) -> None:
         out[row] = lanes.max()
 
 
-@cache
-def _compile() -> Callable[..., None] | None:
-    """Return the compiled loop, or None where numba is missing or switched off."""
-    kinds = numba_types()
-    if kinds is None:
-        return None
-    f32 = kinds.float32
-    held = kinds.Array(f32, 1, "C", readonly=True)
-    signature = kinds.void(held, f32, f32, kinds.Array(f32, 1, "C"))
-    return compiled(signature, _excess)
-
-
-def _excess(
-    samples: NDArray[np.float32],
-    limit: np.float32,
-    top: np.float32,
-    out: NDArray[np.float32],
-) -> None:
-    one = np.float32(1)
-    for k in range(samples.size // 2):
-        real, imag = samples[2 * k], samples[2 * k + 1]
-        power = real * real + imag * imag
-        if power > limit:
-            share = one - top / np.sqrt(power)
-            out[2 * k] = real * share
-            out[2 * k + 1] = imag * share
-        else:
-            out[2 * k] = np.float32(0)
-            out[2 * k + 1] = np.float32(0)
-
-
 def shortfall_of(samples: Samples, amplitude: float) -> NDArray[np.float32]:
     """Return ``1 - A / |x|`` where ``|x| > A``, else zero: the gain that a clip lacks.
 
@@ -196,11 +160,7 @@ def shortfall_of(samples: Samples, amplitude: float) -> NDArray[np.float32]:
     float32 array, shape (n,)
         0 to 1.
     """
-    power = power_of(samples)
-    above = np.flatnonzero(power > np.float32(amplitude * amplitude))
-    short = np.zeros(samples.size, np.float32)
-    short[above] = np.float32(1) - np.float32(amplitude) / np.sqrt(power[above])
-    return short
+    return clip_share(power_of(samples), amplitude)
 
 
 def local_peaks(values: NDArray[np.float32], *, over: float, reach: int) -> NDArray[np.intp]:

@@ -43,17 +43,17 @@ class Excess:
 
     Parameters
     ----------
-    samples : complex64 array, shape (n_rows, n)
-        0 where nothing does.
+    values : complex64 array, shape (n_rows, n)
+        First of each row, sample by sample, what does.
     places : int32 array, shape (n_rows, n)
-        First of each row, rising, where something does.
+        First of each row, rising, where it does.
     counts : int64 array, shape (n_rows,)
-        How many places.
+        How many values and places.
     energies : float64 array, shape (n_rows,)
         Sum of the squares.
     """
 
-    samples: Samples
+    values: Samples
     places: NDArray[np.int32]
     counts: NDArray[np.int64]
     energies: NDArray[np.float64]
@@ -62,13 +62,26 @@ class Excess:
     def of(cls, rows: Samples, amplitude: float) -> Excess:
         """Return the excess of rows, shape (n_rows, n)."""
         made = cls(
-            samples=np.empty_like(rows),
+            values=np.empty(rows.shape, np.complex64),
             places=np.empty(rows.shape, np.int32),
             counts=np.empty(rows.shape[0], np.int64),
             energies=np.full(rows.shape[0], np.inf),
         )
         advance(rows, rows, np.zeros(rows.shape[0], np.float32), amplitude, made)
         return made
+
+    def put(self, rows: Samples) -> None:
+        """Fill rows with it, shape (n_rows, n), and with zero where nothing stands above."""
+        rows[:] = 0
+        kernels = _compile()
+        if kernels is None:
+            for row, places, values, n in zip(
+                rows, self.places, self.values, self.counts, strict=True
+            ):
+                row[places[:n]] = values[:n]
+        else:
+            flat = rows.view(np.float32), self.values.view(np.float32)
+            kernels[2](flat, self.places, self.counts)
 
 
 def descend(
@@ -102,17 +115,18 @@ def descend(
     """
     change = np.zeros((rows.shape[0], bins.size), np.complex64)
     excess = Excess.of(rows, amplitude)
+    work = np.empty(rows.shape, np.complex64)
     for _ in range(n_rounds):
         if not excess.counts.any():
             break
-        lines = scipy.fft.fft(excess.samples, axis=1, norm="forward")
-        wanted = read_values(np.asarray(lines, np.complex64), bins=bins)
+        excess.put(work)
+        lines = np.asarray(scipy.fft.fft(work, axis=1, norm="forward", overwrite_x=True))
+        wanted = read_values(lines, bins=bins)
         np.negative(wanted, out=wanted)
         move = wanted if rule is None else rule(wanted)
         lines[:] = 0
         write_values(lines, move, bins=bins)
-        moved = scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True)
-        moved = np.asarray(moved, np.complex64)
+        moved = np.asarray(scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True))
         steps = steps_of(moved, excess)
         advance(rows, moved, steps, amplitude, excess)
         change += steps[:, None] * move
@@ -138,7 +152,7 @@ def steps_of(moved: Samples, excess: Excess) -> NDArray[np.float32]:
     if kernels is None:
         return steps_by_numpy(moved, excess)
     out = np.empty(moved.shape[0], np.float32)
-    planes = moved.view(np.float32), excess.samples.view(np.float32)
+    planes = moved.view(np.float32), excess.values.view(np.float32)
     kernels[0](planes, excess.places, excess.counts, out)
     return out
 
@@ -146,10 +160,10 @@ def steps_of(moved: Samples, excess: Excess) -> NDArray[np.float32]:
 def steps_by_numpy(moved: Samples, excess: Excess) -> NDArray[np.float32]:
     """Do what :func:`steps_of` does, without a compiler; same parameters, same bits."""
     out = np.zeros(moved.shape[0], np.float32)
-    for row, (m, e) in enumerate(zip(moved, excess.samples, strict=True)):
-        above = excess.places[row, : excess.counts[row]]
-        above = above[e[above] != 0]  # a sample just above may lose its excess in rounding
-        real, imag = e.real[above].astype(np.float64), e.imag[above].astype(np.float64)
+    for row, (m, e) in enumerate(zip(moved, excess.values, strict=True)):
+        left = np.flatnonzero(e[: excess.counts[row]])  # one just above may be lost in rounding
+        above = excess.places[row, left]
+        real, imag = e.real[left].astype(np.float64), e.imag[left].astype(np.float64)
         along = m.real[above] * real + m.imag[above] * imag
         square = real * real + imag * imag
         if above.size:
@@ -181,7 +195,7 @@ def advance(
     if kernels is None:
         advance_by_numpy(rows, moved, steps, amplitude, excess)
         return
-    planes = rows.view(np.float32), moved.view(np.float32), excess.samples.view(np.float32)
+    planes = rows.view(np.float32), moved.view(np.float32), excess.values.view(np.float32)
     kernels[1](planes, steps, (excess.places, excess.counts, excess.energies), amplitude)
 
 
@@ -202,8 +216,7 @@ def advance_by_numpy(
             energy = float(np.cumsum(square)[-1]) if above.size else 0.0
             if energy < before:
                 row.view(np.float32)[...] = made
-                excess.samples[number] = 0
-                excess.samples[number, above] = left
+                excess.values[number, : above.size] = left
                 excess.places[number, : above.size] = above
                 excess.counts[number], excess.energies[number] = above.size, energy
                 break
@@ -213,7 +226,7 @@ def advance_by_numpy(
 
 
 @cache
-def _compile() -> tuple[Callable[..., None], Callable[..., None]] | None:
+def _compile() -> tuple[Callable[..., None], Callable[..., None], Callable[..., None]] | None:
     """Return the compiled loops, or None where numba is missing or switched off."""
     kinds = numba_types()
     if kinds is None:
@@ -223,7 +236,21 @@ def _compile() -> tuple[Callable[..., None], Callable[..., None]] | None:
     state = kinds.Tuple((places, counts, kinds.Array(kinds.float64, 1, "C")))
     steps = kinds.void(kinds.UniTuple(plane, 2), places, counts, line)
     onwards = kinds.void(kinds.UniTuple(plane, 3), line, state, kinds.float64)
-    return compiled(steps, _steps), compiled(onwards, _advance)
+    spread = kinds.void(kinds.UniTuple(plane, 2), places, counts)
+    return compiled(steps, _steps), compiled(onwards, _advance), compiled(spread, _put)
+
+
+def _put(
+    planes: tuple[NDArray[np.float32], NDArray[np.float32]],
+    places: NDArray[np.int32],
+    counts: NDArray[np.int64],
+) -> None:
+    rows, values = planes
+    for row in range(counts.size):
+        for number in range(counts[row]):
+            k = 2 * places[row, number]
+            rows[row, k] = values[row, 2 * number]
+            rows[row, k + 1] = values[row, 2 * number + 1]
 
 
 def _steps(
@@ -237,7 +264,8 @@ def _steps(
         rise, width = 0.0, 0.0
         for number in range(counts[row]):
             k = 2 * places[row, number]
-            real, imag = np.float64(excess[row, k]), np.float64(excess[row, k + 1])
+            real = np.float64(excess[row, 2 * number])
+            imag = np.float64(excess[row, 2 * number + 1])
             square = real * real + imag * imag
             if square > 0.0:  # a sample just above has lost its excess in rounding
                 along = np.float64(moved[row, k]) * real + np.float64(moved[row, k + 1]) * imag
@@ -257,40 +285,42 @@ def _advance(
     limit, top = np.float32(amplitude * amplitude), np.float32(amplitude)
     one, half = np.float32(1), np.float32(0.5)
     n = rows.shape[1] // 2
-    made, power = np.empty(2 * n, np.float32), np.empty(n, np.float32)
-    found = np.empty(n, np.int32)
+    power, found = np.empty(n, np.float32), np.empty(n, np.int32)
     for row in range(rows.shape[0]):
+        here, move = rows[row], moved[row]
         step, before = steps[row], energies[row]
         if step == 0 and before < np.inf:
             continue
-        is_taken = False
-        for _ in range(MOST_HALVINGS):
-            for k in range(2 * n):
-                made[k] = rows[row, k] + moved[row, k] * step
+        count, energy = 0, 0.0
+        for trial in range(MOST_HALVINGS + 1):
+            if trial == MOST_HALVINGS:
+                step = np.float32(0)
+                break
             for k in range(n):
-                power[k] = made[2 * k] * made[2 * k] + made[2 * k + 1] * made[2 * k + 1]
+                real = here[2 * k] + move[2 * k] * step
+                imag = here[2 * k + 1] + move[2 * k + 1] * step
+                power[k] = real * real + imag * imag
             count, energy = 0, 0.0
             for k in range(n):
                 if power[k] > limit:
                     found[count] = k
                     count += 1
                     share = one - top / np.sqrt(power[k])
-                    real, imag = made[2 * k] * share, made[2 * k + 1] * share
+                    real = (here[2 * k] + move[2 * k] * step) * share
+                    imag = (here[2 * k + 1] + move[2 * k + 1] * step) * share
                     energy += np.float64(real) * real + np.float64(imag) * imag
             if energy < before:
-                is_taken = True
                 break
             step *= half
-        if not is_taken:
-            steps[row] = 0
+        steps[row] = step
+        if step == 0 and before < np.inf:
             continue
-        steps[row], counts[row], energies[row] = step, count, energy
+        counts[row], energies[row] = count, energy
         for k in range(2 * n):
-            rows[row, k] = made[k]
-            excess[row, k] = np.float32(0)
+            here[k] += move[k] * step
         for number in range(count):
             k = found[number]
             places[row, number] = k
             share = one - top / np.sqrt(power[k])
-            excess[row, 2 * k] = made[2 * k] * share
-            excess[row, 2 * k + 1] = made[2 * k + 1] * share
+            excess[row, 2 * number] = here[2 * k] * share
+            excess[row, 2 * number + 1] = here[2 * k + 1] * share

@@ -17,7 +17,7 @@ from annotated_types import Ge, Le
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
-from wavegen.dsp.envelope_excess import excess_over
+from wavegen.dsp.row_kernels import put_excess, take_difference
 from wavegen.stages.in_band import InBand, Method, reduce_in_band, repeat_rounds
 from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
@@ -48,17 +48,17 @@ class ClipFilterRound(Signal):
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Clip, filter the excess, subtract."""
-        source = arrays[0]
-        reach = self.band.half_length
-        out = np.empty(stop - start, np.complex64)
-        for low, high in self.band.chunks(out.size):
-            piece = source[low : high + 2 * reach]
-            made = self.band.apply(
-                excess_over(piece, self.amplitude), high - low, base=piece[reach : -reach or None]
-            )
-            np.multiply(
-                made.view(np.float32), np.float32(self.gain), out=out[low:high].view(np.float32)
-            )
+        source, out = arrays[0], np.empty(stop - start, np.complex64)
+        half, hop = self.band.half_length, self.band.hop
+
+        def put(rows: Samples, low: int) -> None:
+            put_excess(rows, source[low:], hop=hop, amplitude=self.amplitude)
+
+        def take(rows: Samples, low: int, high: int) -> None:
+            base = source[half + low : half + high]
+            take_difference(out[low:high], base, rows, half=half, hop=hop, gain=self.gain)
+
+        self.band.run(out.size, put, take)
         return out
 
 

@@ -16,8 +16,9 @@ from annotated_types import Ge, Le
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Site
 from wavegen.dsp.band_filter import BandFilter
-from wavegen.dsp.envelope_excess import local_peaks, power_of
 from wavegen.dsp.occupied_bands import design_pulse
+from wavegen.dsp.peak_rows import put_peaks
+from wavegen.dsp.row_kernels import take_difference
 from wavegen.stages.in_band import InBand, Method, reduce_in_band, repeat_rounds
 from wavegen.stages.passband import FilledBand
 from wavegen.stages.searchable import Choice, Searchable
@@ -73,17 +74,17 @@ class CancellationPass(Signal):
 
     def compute(self, start: int, stop: int, *arrays: Samples) -> Samples:
         """Find the peaks, place their excess, shape it with the pulse, subtract."""
-        source = arrays[0]
-        power = power_of(source)
-        peaks = local_peaks(power, over=self.amplitude**2, reach=self.reach)
-        share = np.float32(1) - np.float32(self.amplitude) / np.sqrt(power[peaks])
-        placed = np.zeros(source.size - 2 * self.reach, np.complex64)
-        placed[peaks - self.reach] = source[peaks] * share
-        halo = self.pulse.half_length + self.reach
-        out = self.pulse.apply(placed, stop - start, base=source[halo : source.size - halo])
-        if self.gain != 1.0:
-            flat = out.view(np.float32)
-            np.multiply(flat, np.float32(self.gain), out=flat)
+        source, out = arrays[0], np.empty(stop - start, np.complex64)
+        half, hop, reach = self.pulse.half_length, self.pulse.hop, self.reach
+
+        def put(rows: Samples, low: int) -> None:
+            put_peaks(rows, source[low:], hop=hop, reach=reach, amplitude=self.amplitude)
+
+        def take(rows: Samples, low: int, high: int) -> None:
+            base = source[half + reach + low : half + reach + high]
+            take_difference(out[low:high], base, rows, half=half, hop=hop, gain=self.gain)
+
+        self.pulse.run(out.size, put, take)
         return out
 
 
