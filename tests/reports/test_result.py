@@ -43,3 +43,16 @@ def test_in_a_notebook_everything_is_escaped():
 def test_as_a_row_of_a_table_library():
     found = Result({"a": 1, "law": {"verdict": "agrees", "deep": {"x": None}}, "levels": []}, list)
     assert found.row() == {"a": 1, "law_verdict": "agrees", "law_deep_x": None}
+
+
+def test_its_pictures_are_figures():
+    level = [-10.0, 0.0, 5.0]
+    document = {
+        "name": "x",
+        "levels": [],
+        "papr_db": 5.0,
+        "ccdf": {"level_db": level, "probability": [0.9, 0.4, 0.0]},
+    }
+    found = Result(document, list).figures()
+    assert list(found) == ["ccdf"]
+    assert found["ccdf"].axes

@@ -1,16 +1,15 @@
-"""Text from files and recipes, made fit to be shown: nothing in it acts, all of it is seen."""
+"""Text from files and recipes, made fit for pages and pictures: nothing in it acts."""
 
 from __future__ import annotations
 
-import unicodedata
+from wavegen.reports.text import visible
 
-_KEPT = "\n\t"
-_TURNING = frozenset("\u061c\u200e\u200f\u202a\u202b\u202c\u202d\u202e\u2066\u2067\u2068\u2069")
-"""Marks that turn the direction of what follows: a figure behind one would be read backwards."""
+_NO_CHARACTERS = str.maketrans({0xFFFE: "\\ufffe", 0xFFFF: "\\uffff"})
+"""XML 1.0 (section 2.2) holds neither, though both are valid in Unicode text."""
 
 
 def inert(text: str) -> str:
-    r"""Return a text in which control characters and marks of direction are named.
+    r"""Return a text that can be written as XML and HTML, with all that acts spelt out.
 
     Parameters
     ----------
@@ -20,19 +19,15 @@ def inert(text: str) -> str:
     Returns
     -------
     str
-        Can be written as UTF-8 and as XML; line ends and tabs are kept.
-
-    Notes
-    -----
-    Marks of direction: Unicode Standard Annex 9, section 2. XML 1.0 (section 2.2) holds no control
-    characters but tab and line ends, no surrogates, and neither U+FFFE nor U+FFFF.
+        Line ends and tabs are kept. A mark that turns the direction of writing is spelt out: a
+        figure behind one would be read backwards.
 
     Examples
     --------
     >>> inert("run\u202e7\x07")
-    'run<U+202E>7<U+0007>'
+    'run\\u202e7\\x07'
     """
-    return "".join(f"<U+{ord(mark):04X}>" if _acts(mark) else mark for mark in text)
+    return visible(text).translate(_NO_CHARACTERS)
 
 
 def one_line(text: str) -> str:
@@ -44,13 +39,3 @@ def one_line(text: str) -> str:
     'two lines'
     """
     return inert(" ".join(text.split()))
-
-
-def _acts(mark: str) -> bool:
-    kind = unicodedata.category(mark)
-    return (
-        mark in _TURNING
-        or (kind == "Cc" and mark not in _KEPT)
-        or kind in {"Cs", "Zl", "Zp"}
-        or ord(mark) & 0xFFFE == 0xFFFE
-    )

@@ -4,10 +4,13 @@ from __future__ import annotations
 
 import html
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from wavegen.core.table import Table
 from wavegen.reports.text import fold, text_of, visible
+
+if TYPE_CHECKING:
+    from matplotlib.figure import Figure
 
 
 class Result(Mapping[str, Any]):
@@ -63,6 +66,18 @@ class Result(Mapping[str, Any]):
     def lines(self) -> list[str]:
         """Its sentences."""
         return list(self._lines())
+
+    def figures(self) -> dict[str, Figure]:
+        """Return the pictures of what it holds, as Matplotlib figures by their names.
+
+        Raises
+        ------
+        ArgumentsError
+            There is nothing to draw in it, or Matplotlib is not installed.
+        """
+        from wavegen.reports.figures.of_document import figures_in
+
+        return figures_in(self.document)
 
     def row(self) -> dict[str, str | float | None]:
         """Return its single figures as one row of a table library; lists are left out.

@@ -185,10 +185,10 @@ bench:
     return made.folder / "x.report.html"
 
 
-def test_marks_that_turn_text_are_named(opened):
+def test_marks_that_turn_text_are_spelt_out(opened):
     body = opened.find_element("css selector", "body").text
-    assert "<U+202E>turned<U+202C>" in body
-    assert "<U+0007>" in body
+    assert r"\u202eturned\u202c" in body
+    assert r"\x07" in body
     assert "\u202e" not in opened.page_source
 
 

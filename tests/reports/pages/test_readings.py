@@ -7,6 +7,7 @@ from wavegen.meters.envelope import Envelope
 from wavegen.reports.figures.look import rendered
 from wavegen.reports.figures.power import CcdfCurve, ccdf_figure
 from wavegen.reports.figures.time import envelope_figure
+from wavegen.reports.figures.trade import difference_figure
 from wavegen.reports.pages.readings import readings_of
 
 
@@ -37,3 +38,17 @@ def test_steps_are_read_at_their_middle():
     (curve,) = panel["curves"]
     assert curve["x"] == pytest.approx([0.5, 1.5, 2.5])
     assert curve["y"] == pytest.approx([0, 3.0103, 6.0206], abs=1e-4)
+
+
+def test_an_axis_that_falls_is_read_too():
+    rows = [
+        {"probability": q, "difference_db": d, "low_db": None, "high_db": None}
+        for q, d in ((0.5, 0.1), (0.1, 0.2), (0.01, 0.3))
+    ]
+    figure = difference_figure(rows, title="T", name="a less b, dB", tolerance_db=0.2)
+    rendered(figure, "svg")
+    (panel,) = readings_of(figure)
+    assert panel["x"]["from"] > panel["x"]["to"]
+    (curve,) = panel["curves"]
+    assert curve["x"] == [0.01, 0.1, 0.5]
+    assert curve["y"] == [0.3, 0.2, 0.1]

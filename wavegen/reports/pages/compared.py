@@ -76,6 +76,14 @@ def tune_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
     )
 
 
+def _file_row(item: dict[str, Any] | str) -> tuple[str, str]:
+    """Return name and hash of a file that was written; a file of words has a name alone."""
+    if isinstance(item, str):
+        return "file", item
+    digest = item.get("sha512")
+    return (f"{item['name']}, SHA-512", digest) if digest else ("file", item["name"])
+
+
 def _last_first(lines: Sequence[str]) -> list[str]:
     """Return sentences of which the last says what came of it, that one first."""
     return [*lines[-1:], *lines[:-1]]
@@ -103,7 +111,8 @@ def _page(
     *,
     verdict: str,
 ) -> Page:
-    origin = [(name, str(value)) for name, value in document.get("versions", {}).items()]
+    origin = [_file_row(item) for item in document.get("files", ())]
+    origin += [(name, str(value)) for name, value in document.get("versions", {}).items()]
     return Page(
         title=title,
         summary=tuple(lines),

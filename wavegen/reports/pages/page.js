@@ -75,11 +75,14 @@
       }
     });
     drawing.addEventListener("keydown", (event) => {
-      const step = { ArrowLeft: -1, ArrowRight: 1 }[event.key];
-      if (!step) return;
+      const key = { ArrowLeft: -1, ArrowRight: 1 }[event.key];
+      if (!key) return;
+      const step = panel.x.from <= panel.x.to ? key : -key;
       event.preventDefault();
       const places = panel.curves[0].x;
-      const start = index < 0 ? places.findIndex((x) => x >= panel.x.from) : index + step;
+      const least = Math.min(panel.x.from, panel.x.to);
+      const first = step > 0 ? places.findIndex((x) => x >= least) : places.length - 1;
+      const start = index < 0 ? first : index + step;
       const next = Math.min(Math.max(start, 0), places.length - 1);
       show(panel, places[next]);
     });

@@ -80,8 +80,10 @@ def _curves(axes: Axes) -> list[dict[str, Any]]:
             middle = (np.asarray(edges)[1:] + np.asarray(edges)[:-1]) / 2
             found.append((patch.get_label(), middle, np.asarray(values, np.float64)))
     curves = []
-    for label, x, y in found:
+    for label, places, values in found:
         name = one_line(str(label))
+        falls = places.size > 1 and places[0] > places[-1]
+        x, y = (places[::-1], values[::-1]) if falls else (places, values)
         if name and not name.startswith("_") and x.size > 1 and np.all(np.diff(x) >= 0):
             chosen = np.unique(np.linspace(0, x.size - 1, min(x.size, _MOST_POINTS)).astype(int))
             curves.append({"name": name, "x": _short(x[chosen]), "y": _short(y[chosen])})
