@@ -8,6 +8,8 @@ from typing import Any
 
 from wavegen.core.signal import Signal
 from wavegen.core.site import Note, Site, StageSettings
+from wavegen.laws.law import Law
+from wavegen.laws.term import NoLaw
 from wavegen.production.graph import build
 from wavegen.production.prepare import find_loop
 from wavegen.recipe.load import LoadedRecipe
@@ -55,6 +57,10 @@ class Passing:
 
     def build(self, site: Site, source: Signal) -> Signal:
         """Return the source."""
+        return source
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law."""
         return source
 
 

@@ -12,8 +12,10 @@ from wavegen.laws.law import Law
 from wavegen.laws.radial import RadialLaw
 from wavegen.laws.tabulated import tabulated
 from wavegen.laws.term import NoLaw, Term
+from wavegen.production.chain_cut import Passing
 from wavegen.production.graph import is_combiner
 from wavegen.stages.chain import HasLaw, chain_law, chain_term, source_site
+from wavegen.stages.rails import TreatsRailsApart
 
 
 def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | NoLaw:
@@ -38,10 +40,35 @@ def law_of_recipe(settings: Any, stages: tuple[Any, ...], site: Site) -> Law | N
         term = _term_of(settings, here)
         named = term if isinstance(term, NoLaw) else ConstantLaw(name=term.name)
         return chain_law((mute,), site, named, "stages")
+    apart = [isinstance(stage, TreatsRailsApart) for stage in stages]
+    if any(apart):
+        n_before = len(apart) - apart[::-1].index(True)
+        found = _law_by_term(settings, stages, n_before, site)
+        if found is not None:
+            return found
     law = _law_of(settings, here)
-    if isinstance(law, RadialLaw):
-        law = tabulated(law)
-    return chain_law(stages, site, law, "stages")
+    return chain_law(stages, site, _looked_up(law), "stages")
+
+
+def _looked_up(law: Law | NoLaw) -> Law | NoLaw:
+    """Return a law that is slow at one level on a table."""
+    return tabulated(law) if isinstance(law, RadialLaw) else law
+
+
+def _law_by_term(
+    settings: Any, stages: tuple[Any, ...], n_before: int, site: Site
+) -> Law | NoLaw | None:
+    """Return the law of stages of which the first ones ask for directions too, None if unknown."""
+    term = _term_of(settings, source_site(stages, site))
+    if not isinstance(term, NoLaw) and is_combiner(settings) and term.symmetry:
+        return None  # which way it is turned at an index is not told
+    between = source_site(stages[n_before:], site)
+    behind = chain_term(stages[:n_before], between, term, "stages")
+    law = behind if isinstance(behind, NoLaw) else law_of_term(behind)
+    if isinstance(law, NoLaw):
+        return None
+    later = (*[Passing()] * n_before, *stages[n_before:])
+    return chain_law(later, site, _looked_up(law), "stages")
 
 
 def _law_of(settings: Any, site: Site) -> Law | NoLaw:

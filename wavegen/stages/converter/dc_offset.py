@@ -2,23 +2,26 @@
 
 from __future__ import annotations
 
+import cmath
 import math
 from dataclasses import dataclass
-from typing import Annotated
+from typing import Annotated, ClassVar
 
 import numpy as np
-import scipy.special
 from annotated_types import Ge, Le
 
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
-from wavegen.laws.gaussian import GaussianLaw
-from wavegen.laws.inversion import law_of_characteristic
 from wavegen.laws.law import Law
-from wavegen.laws.term import NoLaw
+from wavegen.laws.rail_mixing import shifted_term
+from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.ceiling import look
 from wavegen.stages.channel.gate import on_time
 from wavegen.stages.drive import refuse_silence
+from wavegen.stages.rails import rails_law
+
+LOST_DB = -160.0
+"""A constant below this is lost in float32."""
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -59,6 +62,8 @@ class DcOffset:
     the change is told and stays.
     """
 
+    treats_rails_apart: ClassVar[bool] = True
+
     level_db: Annotated[float, Ge(-200), Le(40)]
     phase_deg: Annotated[float, Ge(-360), Le(360)] = 0.0
 
@@ -86,7 +91,7 @@ class DcOffset:
         if pilot is None:
             raise refuse_silence(site)
         share = 10 ** (self.level_db / 10)
-        if self.level_db < -160:
+        if self.level_db < LOST_DB:
             return source
         angle = math.radians(self.phase_deg)
         size = math.sqrt(share * pilot.mean)
@@ -108,13 +113,12 @@ class DcOffset:
         return made
 
     def law(self, site: Site, source: Law) -> Law | NoLaw:
-        """Return the law of complex Gaussian noise beside a constant; others have none here."""
-        if not isinstance(source, GaussianLaw):
-            return NoLaw(reason=f"{source.name}, then a DC offset, has no law")
-        amplitude = 10 ** (self.level_db / 20)
-        return law_of_characteristic(
-            lambda t: np.asarray(np.exp(-0.25 * t * t) * scipy.special.j0(amplitude * t)),
-            name=f"{source.name} with a DC offset",
-            holds=source.holds,
-            mean_power=1 + amplitude**2,
-        )
+        """Return the law of complex Gaussian noise beside a constant: Rice's; see :meth:`term`."""
+        return rails_law(self, site, source, "with a DC offset")
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return what a part is beside a constant: lawful where its directions are known."""
+        if self.level_db < LOST_DB:
+            return source
+        size = math.sqrt(source.mean_power) * 10 ** (self.level_db / 20)
+        return shifted_term(source, cmath.rect(size, math.radians(self.phase_deg)))

@@ -4,15 +4,19 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
-from typing import Annotated
+from typing import Annotated, ClassVar
 
 import numpy as np
 from annotated_types import Ge, Le
 
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
+from wavegen.laws.law import Law
+from wavegen.laws.rail_mixing import image_term
+from wavegen.laws.term import NoLaw, Term
 from wavegen.stages.ceiling import look
 from wavegen.stages.drive import refuse_silence
+from wavegen.stages.rails import rails_law
 
 BLOCK_SAMPLES = 1 << 14
 
@@ -95,6 +99,8 @@ class IqImbalance:
     power of the input; the change that was undone is told.
     """
 
+    treats_rails_apart: ClassVar[bool] = True
+
     gain_db: Annotated[float, Ge(-20), Le(20)] = 0.0
     phase_deg: Annotated[float, Ge(-45), Le(45)] = 0.0
 
@@ -133,6 +139,16 @@ class IqImbalance:
         )
         site.notes.append(Note(kind="info", where=site.path, text=text))
         return _imbalanced(source, signal / math.sqrt(ratio), image / math.sqrt(ratio))
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of complex Gaussian noise with its image: Hoyt's; see :meth:`term`."""
+        return rails_law(self, site, source, "with its image")
+
+    def term(self, site: Site, source: Term) -> Term | NoLaw:
+        """Return what a part is with its image: lawful where the part is isotropic."""
+        if not self.gain_db and not self.phase_deg:
+            return source
+        return image_term(source, *image_factors(self.gain_db, self.phase_deg))
 
 
 def _imbalanced(source: Signal, signal: complex, image: complex) -> Imbalanced:

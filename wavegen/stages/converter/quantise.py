@@ -14,6 +14,9 @@ from numpy.typing import NDArray
 from wavegen.core.evaluate import evaluate
 from wavegen.core.signal import Samples, Signal
 from wavegen.core.site import Note, Site
+from wavegen.laws.law import Law
+from wavegen.laws.quantised import quantised_law
+from wavegen.laws.term import NoLaw
 from wavegen.stages.ceiling import look
 from wavegen.stages.drive import refuse_silence
 
@@ -146,6 +149,10 @@ class Quantise:
         is_much = share > DOUBTFUL_SHARE
         site.notes.append(Note(kind="warning" if is_much else "info", where=site.path, text=text))
         return made
+
+    def law(self, site: Site, source: Law) -> Law | NoLaw:
+        """Return the law of the input where the steps are fine and full scale is seldom passed."""
+        return quantised_law(source, bits=self.bits, full_scale_db=self.full_scale_db)
 
 
 def _rails(source: Signal, stretches: tuple[tuple[int, int], ...]) -> Iterator[NDArray[np.float32]]:
