@@ -116,6 +116,8 @@ def test_only_the_on_time_counts(band_noise, held, n):
         (1 << 20, ((500, 66_036),), 1 << 10),  # 65536 samples: 64 or 65 cells
         (1 << 20, ((0, 5000),), 1 << 10),  # a cell at least, or the record would be held
         (6400, ((0, 640), (3000, 3640)), 16),
+        (1 << 19, ((0, 5000),), 64),  # short enough to be held
+        (122_880, tuple((k * 15_360, k * 15_360 + 3840) for k in range(8)), 512),
         (1 << 20, ((0, 10), (100_000, 100_010)), 1 << 10),
     ],
 )

@@ -80,3 +80,11 @@ def test_a_rate_that_is_a_ratio(lab):
     )
     assert document["sample_rate_hz"] == pytest.approx(1625e3 / 6, rel=1e-15)
     assert document["duration_s"] == float(Fraction(3250 * 6, 1_625_000))
+
+
+def test_a_recipe_whose_loops_are_all_alike_says_so(lab):
+    tones = measure_recipe(lab.prepared(lab.TONES))
+    assert "8 tones" in tones["process"]["says"]
+    assert "levels" not in tones["process"]
+    noise = measure_recipe(lab.prepared(lab.NOISE))
+    assert noise["process"]["levels"][0]["low_db"] < noise["process"]["levels"][0]["high_db"]

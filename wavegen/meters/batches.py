@@ -30,6 +30,8 @@ from wavegen.dsp.power_kernel import PowerTally, exact_powers, numbered_powers
 from wavegen.meters.power import PowerReading
 from wavegen.meters.power_statistics import PowerStatistics
 
+LONGEST_HELD = 1 << 19
+"""Samples of a gated record that are held whole, 4 MB, so that its batches may be short."""
 FEWEST_BATCHES = 64
 """A Student quantile at 63 degrees is within 2 % of the normal one at 95 %."""
 
@@ -227,11 +229,11 @@ def gated_batch_length(n_samples: int, bursts: Bursts) -> int:
     Returns
     -------
     int
-        A power of two; never below a cell where records of this length have longer batches, lest
-        the record must be held, so that fewer than 64 may be on.
+        A power of two; never below a cell in records longer than ``LONGEST_HELD``, so that fewer
+        than 64 may be on.
     """
     size = batch_length(n_samples)
-    least = CELL if size >= CELL else 1
+    least = 1 if n_samples <= LONGEST_HELD or size < CELL else CELL
     if bursts.period_samples <= size:
         return size
     inset = bursts.ramp_samples

@@ -10,6 +10,7 @@ from typing import Any
 from wavegen.core.allocation import keep_large_blocks
 from wavegen.core.progress import Progress, silent
 from wavegen.files.format import ReadHints, Recording, told_channel
+from wavegen.laws.term import NoLaw
 from wavegen.meters.intervals import SampledStatistics
 from wavegen.meters.population import merged, populate
 from wavegen.meters.power import PowerStatistics
@@ -17,6 +18,7 @@ from wavegen.meters.seam import seam_figure
 from wavegen.meters.stationarity import ALWAYS_ON
 from wavegen.meters.statistic_names import INSTANTANEOUS
 from wavegen.production import measured_rows as rows
+from wavegen.production.judgement import law_of
 from wavegen.production.measure_settings import MeasureSettings
 from wavegen.production.measured_on_time import on_time_rows
 from wavegen.production.measured_population import reconciled, sampled
@@ -366,6 +368,7 @@ def measure_recipe(
         name=prepared.loaded.name,
         signal=signal,
         loops=True,
+        every_loop=_every_loop(prepared) if settings.states_process else "",
         cycle_samples=prepared.cycle_samples,
         bench=recipe.bench,
         is_described=True,
@@ -379,3 +382,9 @@ def measure_recipe(
         found = note_rows([note for note in prepared.notes if note.kind == kind])
         document[key] = [*found, *document.get(key, ())]
     return document
+
+
+def _every_loop(prepared: Prepared) -> str:
+    """Return the law of a recipe if it holds for every loop, else nothing."""
+    law = law_of(prepared)
+    return "" if isinstance(law, NoLaw) or law.holds != "every loop" else law.name
