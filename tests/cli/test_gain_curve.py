@@ -52,6 +52,40 @@ def test_a_model_that_a_recipe_can_use(call, device, recipe, tmp_path):
     assert call("make", recipe(text + stage)).status == 0
 
 
+CELL = """wavegen: 1
+title: Pier cell, for a device as measured
+sample_rate: 7.68 MHz
+duration: 28 symbols
+signal:
+  kind: ofdm
+  subcarrier_spacing: 15 kHz
+  groups:
+    - {subcarriers: "-36..-1, 1..36", constellation: 64qam}
+  cyclic_prefix: 36/512
+  edge_window: 32/512
+"""
+
+
+def test_tune_drives_the_device_as_measured(call, device, recipe, tmp_path):
+    """From other captures than loops, with the levels of the bench: 30 dB gain, 30 dBm at most.
+
+    The device saturates at 30 dBm, so that a signal with levels of 9 dB and an EVM of some percent
+    comes out of it between 20 and 30 dBm.
+    """
+    path = tmp_path / "device.csv"
+    references = ("--input-reference-level", "0dBm", "--output-reference-level", "30dBm")
+    assert call("gain-curve", *device, *RATE, *references, "--model", path).status == 5
+    said = call(
+        "tune", recipe(CELL, "pier.yaml"), "--device", path, "--evm-limit", "8%",
+        "--aclr-limit", "33dB", "--method", "clip_filter", "--seconds", "4", "--json",
+    )  # fmt: skip
+    document = said.json()
+    found = document["best"] or document["nearest"]
+    assert document["device"] == "device.csv"
+    assert 20 < found["output_dbm"] < 30
+    assert found["evm_percent"] <= 8
+
+
 @pytest.mark.parametrize(
     "options",
     [("--overwrite",), ("--model-from", "rapp"), ("--tolerance", "0dB"), ("--down-to", "2")],

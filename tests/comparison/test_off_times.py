@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 
 from wavegen.comparison.off_times import off_time_doubts, share_of_time_on
+from wavegen.dsp.bursts import Bursts
 
 
 @pytest.fixture
@@ -31,3 +32,14 @@ def test_off_times_are_told_of(gated, steady):
     (text,) = off_time_doubts((steady, replace(gated, duty=0.25)))
     assert text == "of gated the on-time is compared (25 % of the time), of steady all of the time"
     assert off_time_doubts((replace(gated, duty=0.25), replace(gated, duty=0.25))) == []
+
+
+def test_few_bursts_are_told_of(gated):
+    def of_bursts(count, **settings):
+        runs = tuple((200 * k, 200 * k + 100) for k in range(count))
+        bursts = Bursts(period_samples=1 << 14, runs=runs)
+        return replace(gated, duty=0.25, bursts=bursts, **settings)
+
+    (text,) = off_time_doubts((of_bursts(3), of_bursts(10)))
+    assert text.startswith("the stimulus holds 3 bursts only")
+    assert off_time_doubts((of_bursts(3, loops=True), of_bursts(10))) == []
