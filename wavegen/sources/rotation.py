@@ -115,7 +115,10 @@ def _turns(value: object) -> Fraction | None:
             return None
         half = Fraction(int(factor or 1), int(divisor or 1))
         return (-half if sign == "-" else half) / 2
-    number, unit = split_quantity(text)
+    try:
+        number, unit = split_quantity(text)
+    except QuantityError:
+        return None
     if unit in {"deg", "°"}:
         return number / 360
     return None if unit or number else Fraction(0)
