@@ -45,3 +45,41 @@ def test_a_recording_has_no_seam_and_few_samples_no_spectrum():
     assert views.around_seam is None
     assert views.spectrum is None
     assert views.clouds == ()
+
+
+MASKED = """\
+wavegen: 1
+sample_rate: 8 MHz
+duration: 4 ms
+signal: {kind: noise, bandwidth: 2 MHz}
+mask:
+  measurement_bandwidth: 100 kHz
+  points: [{offset: 1.2 MHz, level: -30 dB}, {offset: 3 MHz, level: -50 dB}]
+"""
+
+
+def test_channels_and_mask_of_a_recipe():
+    loaded = load_text(MASKED, name="x")
+    signal = prepare(loaded).built.signal
+    views = views_of(signal, loops=True, graph=signal, mask=loaded.recipe.mask)
+    assert [item.name for item in views.channels] == ["carrier", "adjacent", "adjacent"]
+    places, limits = views.mask
+    assert places[-1] == pytest.approx(3e6, abs=1e4)
+    assert limits[-1] == pytest.approx(-100)  # -50 dB in 100 kHz
+    assert views_of(signal, loops=True).channels == ()
+
+
+def test_what_was_before_is_measured_alike():
+    signal = prepare(load_text(MASKED, name="x")).built.signal
+    views = views_of(signal, loops=True, before=("before", signal))
+    assert views.before.name == "before"
+    assert views.before.power.n_samples == signal.n_samples
+    assert np.array_equal(views.before.spectrum.density, views.spectrum.density)
+
+
+def test_power_without_a_phase_has_its_envelope_alone():
+    signal = prepare(load_text(MASKED, name="x")).built.signal
+    views = views_of(signal, loops=True, is_power=True)
+    assert views.spectrum is None
+    assert views.around_seam is None
+    assert views.envelope.mean.size == 800

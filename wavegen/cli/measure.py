@@ -28,6 +28,7 @@ from wavegen.cli.report_options import add_reports, are_wanted, report_measureme
 from wavegen.core.errors import ArgumentsError
 
 if TYPE_CHECKING:
+    from wavegen.meters.mask import SpectralMask
     from wavegen.production.measure_settings import MeasureSettings
     from wavegen.production.subject import Subject
     from wavegen.production.views import Views
@@ -81,12 +82,13 @@ class Measure:
         progress = console.progress()
         try:
             if any(is_recipe(subject) for subject in arguments.subjects):
-                document, subjects = _recipe(arguments, settings, progress)
+                document, subjects, mask = _recipe(arguments, settings, progress)
             else:
                 document, subjects = _files(arguments, settings, progress)
+                mask = None
             said: list[str] = []
             if are_wanted(arguments):
-                views = _views(arguments, subjects, progress)
+                views = _views(arguments, subjects, mask, progress)
                 said = report_measurement(arguments, document, views)
         finally:
             progress.close()
@@ -108,10 +110,13 @@ def status_of(document: dict[str, Any], asked: list[float]) -> int:
 
 
 def _views(
-    arguments: argparse.Namespace, subjects: Sequence[Subject], progress: ConsoleProgress
+    arguments: argparse.Namespace,
+    subjects: Sequence[Subject],
+    mask: SpectralMask | None,
+    progress: ConsoleProgress,
 ) -> Views | None:
     """Return the material for pictures of one subject; of several there is no one signal."""
-    if len(subjects) != 1 or subjects[0].is_power:
+    if len(subjects) != 1:
         return None
     from wavegen.production.views import views_of
 
@@ -121,6 +126,8 @@ def _views(
         loops=subject.loops,
         graph=subject.signal if is_recipe(arguments.subjects[0]) else None,
         bursts=subject.bursts,
+        mask=mask,
+        is_power=subject.is_power,
         workers=arguments.workers,
         progress=progress,
     )
@@ -128,7 +135,7 @@ def _views(
 
 def _recipe(
     arguments: argparse.Namespace, settings: MeasureSettings, progress: ConsoleProgress
-) -> tuple[dict[str, Any], list[Subject]]:
+) -> tuple[dict[str, Any], list[Subject], SpectralMask | None]:
     from wavegen.production.measure import measure_recipe
     from wavegen.production.prepare import prepare
     from wavegen.production.subject import Subject
@@ -171,7 +178,8 @@ def _recipe(
     )
     signal = prepared.built.signal
     seen = Subject(name=loaded.name, signal=signal, loops=True, bursts=on_time(signal))
-    return document | ({"channel": chosen} if len(channels) > 1 else {}), [seen]
+    told = {"channel": chosen} if len(channels) > 1 else {}
+    return document | told, [seen], loaded.recipe.mask
 
 
 def _misfit(*, where: str, problem: str) -> ArgumentsError:

@@ -89,6 +89,7 @@ def views_of(
     bursts: Bursts | None = None,
     mask: SpectralMask | None = None,
     before: tuple[str, Signal] | None = None,
+    is_power: bool = False,
     workers: int = 1,
     progress: Progress = silent,
 ) -> Views:
@@ -108,6 +109,8 @@ def views_of(
         Of the recipe; drawn where there is a graph, whose band it stands around.
     before : (str, Signal), optional
         The same before its peaks are reduced, and what that is called.
+    is_power : bool
+        The samples are power without a phase: there is no spectrum, and no rails at the seam.
     workers : int
         Threads.
     progress : Progress
@@ -123,7 +126,7 @@ def views_of(
         It cannot be read, or a sample is not finite.
     """
     around = None if graph is None else Surroundings.of(graph)
-    meter = _spectrum_meter(signal, around, mask, loops=loops)
+    meter = None if is_power else _spectrum_meter(signal, around, mask, loops=loops)
     taps = [Tap(name="envelope", signal=signal, meter=EnvelopeMeter())]
     if meter is not None:
         taps.append(Tap(name="spectrum", signal=signal, meter=meter))
@@ -139,7 +142,7 @@ def views_of(
         sample_rate_hz=rate,
         envelope=found["envelope"],
         spectrum=spectrum,
-        around_seam=_around_seam(signal) if loops else None,
+        around_seam=_around_seam(signal) if loops and not is_power else None,
         on_times_s=_on_times(bursts, signal.n_samples, rate),
         clouds=() if graph is None else _clouds(graph),
         channels=around.channels(spectrum) if around and spectrum is not None else (),

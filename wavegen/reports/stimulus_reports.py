@@ -131,9 +131,8 @@ def write_stimulus_reports(
     if wanted.figures:
         written += write_pictures(pictures, made.folder, name, overwrite=overwrite)
     if wanted.report:
-        page = stimulus_page(made.document, pictures)
-        if found:
-            page = replace(page, sections=(*page.sections, *sheets.sections(found)))
+        sheet = sheets.sections(found) if found else ()
+        page = stimulus_page(made.document, pictures, sheet=sheet)
         path = made.folder / f"{name}{REPORT}"
         written.append(write_page(page, path, overwrite=overwrite))
     return written

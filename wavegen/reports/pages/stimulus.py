@@ -22,7 +22,9 @@ from wavegen.reports.tables import (
 _STANDINGS: dict[str, Standing] = {"agrees": "good", "differs": "bad", "undecided": "open"}
 
 
-def stimulus_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page:
+def stimulus_page(
+    document: dict[str, Any], pictures: Sequence[Picture], *, sheet: Sequence[Section] = ()
+) -> Page:
     """Return the page of a stimulus.
 
     Parameters
@@ -31,6 +33,8 @@ def stimulus_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page
         Its sidecar.
     pictures : sequence of Picture
         As made by :func:`wavegen.reports.figures.stimulus.pictures_of`.
+    sheet : sequence of Section
+        Of its bench sheet; without one, levels along the path stand in a table.
     """
     title = document["title"] or document["recipe"]["name"]
     law = document["law"]
@@ -46,7 +50,7 @@ def stimulus_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page
             pictures=_others(pictures, "ccdf"),
         ),
     ]
-    if bench:
+    if bench and not sheet:
         sections.append(
             Section(heading="Levels along the path", tables=(bench,)),
         )
@@ -59,7 +63,7 @@ def stimulus_page(document: dict[str, Any], pictures: Sequence[Picture]) -> Page
         standing=_STANDINGS.get(law["verdict"], "") if law else "",
         warnings=tuple(_doubts(document)),
         cautions=(document["safety"],),
-        sections=tuple(sections),
+        sections=(*sections, *sheet),
         origin=_origin(document),
     )
 
