@@ -137,7 +137,7 @@ def _with_ranks(
     for places, ranks in parts:
         part = samples[places] if len(parts) > 1 else samples
         values = np.empty(part.size)
-        values[np.argsort(_power(part))] = ranks
+        values[_order(_power(part))] = ranks
         if len(parts) == 1:
             out[:] = part
             _set_size(out, values)
@@ -145,6 +145,19 @@ def _with_ranks(
         _set_size(part, values)
         out[places] = part
     return out
+
+
+def _order(power: NDArray[np.float64]) -> NDArray[np.uint64]:
+    """Return the indices that sort powers, equal to within 1e-9 by index.
+
+    The bits of what is not negative sort as the numbers do; with the index in the lowest ones a
+    plain sort does, in half the time of one that carries indices.
+    """
+    n_bits = np.uint64(max((power.size - 1).bit_length(), 1))
+    keys = power.view(np.uint64) >> n_bits << n_bits
+    keys |= np.arange(power.size, dtype=np.uint64)
+    keys.sort()
+    return np.asarray(keys & ((np.uint64(1) << n_bits) - np.uint64(1)))
 
 
 def _power(samples: NDArray[np.complex128]) -> NDArray[np.float64]:
