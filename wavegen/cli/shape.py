@@ -82,6 +82,7 @@ class Shape:
     def run(arguments: argparse.Namespace, console: Console) -> int:
         """Shape a stimulus and print how near it came."""
         from wavegen.comparison.shape import TOLERANCE_DB, ShapeSettings, shape
+        from wavegen.recipe.names import LONGEST
 
         are_wanted(arguments)
         field = _field(arguments)
@@ -89,7 +90,7 @@ class Shape:
         _check_name(name)
         settings = ShapeSettings(
             name=name,
-            title=f"In the shape of {Path(field.subject).name}",
+            title=f"In the shape of {Path(field.subject).name}"[:LONGEST],
             seed=_seed(arguments.seed),
             duration=arguments.duration,
             bandwidth_hz=arguments.bandwidth,
