@@ -33,6 +33,8 @@ PERCENT = [100 * item for item in CCDF]
         + rows(LEVEL, PERCENT, ";"),
         "Level (dB);CCDF (%)\n" + rows(LEVEL, PERCENT, ";").replace(".", ","),
         "dB above average\tPercent\n" + rows(LEVEL, PERCENT, "\t"),
+        "# samples: 1000000\ndB above average,Probability %\n" + rows(LEVEL, PERCENT),
+        "CCDF %;Power above average [dB]\n" + rows(PERCENT, LEVEL, ";"),
         "probability,level_db\n" + rows(CCDF, LEVEL),
         "level_db,ccdf\n" + rows(LEVEL[::-1], CCDF[::-1]),
         rows(LEVEL, CCDF),
@@ -42,7 +44,7 @@ def test_levels_and_probabilities(tmp_path, text):
     curve = read_curve(written(tmp_path, text))
     np.testing.assert_allclose(curve.level_db, LEVEL)
     np.testing.assert_allclose(curve.probability, CCDF)
-    assert curve.n_samples == (1_000_000 if "n_samples" in text else None)
+    assert curve.n_samples == (1_000_000 if "samples:" in text else None)
 
 
 def test_our_own_sidecar(tmp_path):

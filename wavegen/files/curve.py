@@ -12,6 +12,8 @@ from wavegen.core.errors import FileError
 from wavegen.files.csv_table import Heading, Table, open_table
 
 _LEVELS = {"level", "power", "papr", "x", "db_above_average", "db_above_mean", "par", "papr0"}
+_OVER = ("_above_average", "_above_mean", "_over_average", "_over_mean")
+_COUNTS = ("n_samples", "samples", "sample_count", "number_of_samples")
 _PROBABILITIES = {"ccdf", "probability", "prob", "p", "percent", "exceedance", "y"}
 _FRACTIONS = {"", "1", "fraction", "ratio", "linear"}
 
@@ -55,18 +57,20 @@ def curve_columns(table: Table) -> tuple[int, int, float] | None:
             level = number
         elif probability is None and _is_probability(heading):
             probability = number
-            unit = 0.01 if heading.unit == "%" or "percent" in heading.name else 1.0
+            is_percent = heading.unit == "%" or "percent" in heading.name or "%" in heading.name
+            unit = 0.01 if is_percent else 1.0
     return None if level is None or probability is None else (level, probability, unit)
 
 
 def _is_level(heading: Heading) -> bool:
-    if heading.name in _LEVELS:
+    if heading.name in _LEVELS or heading.name.endswith(_OVER):
         return heading.unit.lower() in {"db", ""}
     return heading.name == "db" or heading.unit.lower().startswith("db above")
 
 
 def _is_probability(heading: Heading) -> bool:
-    known = heading.name in _PROBABILITIES or heading.name.endswith("_ccdf")
+    name = heading.name.removesuffix("%").rstrip("_")  # of `Probability %`
+    known = name in _PROBABILITIES or name.endswith("_ccdf")
     is_unit = heading.unit.lower() in _FRACTIONS or heading.unit == "%"
     return (known and is_unit) or (not heading.name and heading.unit == "%")
 
@@ -123,7 +127,7 @@ def read_curve(path: Path) -> Curve:
 
 
 def _n_samples(table: Table) -> int | None:
-    text = table.settings.get("n_samples", "")
+    text = next((table.settings[key] for key in _COUNTS if key in table.settings), "")
     return int(text) if text.isascii() and text.isdigit() and len(text) < 19 else None
 
 
