@@ -17,6 +17,8 @@ from numpy.typing import NDArray
 
 from wavegen.core.signal import Samples
 
+Reals = NDArray[np.float32] | NDArray[np.float64]
+Complexes = NDArray[np.complex64] | NDArray[np.complex128]
 MOST_ROUNDS = 200
 NEAR_DB = 5e-4
 """Levels that are so near are taken as met."""
@@ -89,38 +91,44 @@ def shape_envelope(
     wanted = amplitudes / np.sqrt(np.sum(amplitudes**2)) * n  # unit mean power after the inverse
     ranks = envelopes / np.sqrt(np.mean(envelopes**2))
     places, levels = _levels_of(ranks)
-    start = wanted * np.exp(1j * phases)
-    samples: NDArray[np.complex128] = scipy.fft.ifft(start, overwrite_x=True)
+    # Rounds run in single precision; what they find is made exact in double at the end.
+    sizes, values = wanted.astype(np.float32), ranks.astype(np.float32)
+    start = (wanted * np.exp(1j * phases)).astype(np.complex64)
+    samples: Samples = scipy.fft.ifft(start, overwrite_x=True)
     before = samples.copy()
     best: tuple[float, int, Samples] | None = None
     reference, since, rounds = np.inf, 0, 0
     is_kept = np.ones(n, np.bool_) if within is None else within
     kept, others = np.flatnonzero(is_kept), np.flatnonzero(~is_kept)
-    parts = [(kept, ranks)]
+    parts = [(kept, values)]
     if others.size:
         place = (np.arange(others.size) + 0.5) / others.size * ranks.size - 0.5
-        parts.append((others, np.interp(place, np.arange(ranks.size), ranks)))
+        rest = np.interp(place, np.arange(ranks.size), ranks)
+        parts.append((others, rest.astype(np.float32)))
     while True:
         power = _power(samples)
         error, place = _level_error(power[kept] if others.size else power, places, levels)
         if best is None or error < best[0]:
-            best = (error, place, samples.astype(np.complex64))
+            best = (error, place, samples.copy())
         since = 0 if error < _GAIN * reference else since + 1
         reference = error if since == 0 else reference
         if rounds == most_rounds or best[0] <= NEAR_DB or since >= _PATIENCE:
             break
         before -= samples  # one step ahead; nothing else looks at it any more
-        before *= -min(rounds / (rounds + 3), _MOMENTUM)
+        before *= np.float32(-min(rounds / (rounds + 3), _MOMENTUM))
         before += samples
         spectrum = scipy.fft.fft(_with_ranks(before, parts), overwrite_x=True)
         rounds += 1
-        _set_size(spectrum, wanted)
+        _set_size(spectrum, sizes)
         before, samples = samples, scipy.fft.ifft(spectrum, overwrite_x=True)
-    error, place, found = best
-    exact = scipy.fft.fft(_with_ranks(found.astype(np.complex128), parts), overwrite_x=True)
+    spectrum = scipy.fft.fft(best[2].astype(np.complex128), overwrite_x=True)
+    _set_size(spectrum, wanted)
+    found = scipy.fft.ifft(spectrum, overwrite_x=True)
+    error, place = _level_error(_power(found[kept]), places, levels)
+    exact = scipy.fft.fft(_with_ranks(found, parts), overwrite_x=True)
     beyond = float(np.sum(np.abs(exact[wanted == 0]) ** 2)) / (n * n)
     return Shaped(
-        samples=found,
+        samples=found.astype(np.complex64),
         level_error_db=error,
         worst_probability=float(1 - place / ranks.size),
         beyond_band_db=float(10 * np.log10(max(beyond, 1e-30))),
@@ -129,14 +137,13 @@ def shape_envelope(
 
 
 def _with_ranks(
-    samples: NDArray[np.complex128],
-    parts: list[tuple[NDArray[np.intp], NDArray[np.float64]]],
-) -> NDArray[np.complex128]:
+    samples: Complexes, parts: list[tuple[NDArray[np.intp], NDArray[np.float32]]]
+) -> Complexes:
     """Give the envelope of each part wanted values by its ranks, the phases kept."""
     out = np.empty_like(samples)
     for places, ranks in parts:
         part = samples[places] if len(parts) > 1 else samples
-        values = np.empty(part.size)
+        values = np.empty(part.size, np.float32)
         values[_order(_power(part))] = ranks
         if len(parts) == 1:
             out[:] = part
@@ -147,26 +154,26 @@ def _with_ranks(
     return out
 
 
-def _order(power: NDArray[np.float64]) -> NDArray[np.uint64]:
+def _order(power: Reals) -> NDArray[np.uint64]:
     """Return the indices that sort powers, equal to within 1e-9 by index.
 
     The bits of what is not negative sort as the numbers do; with the index in the lowest ones a
     plain sort does, in half the time of one that carries indices.
     """
     n_bits = np.uint64(max((power.size - 1).bit_length(), 1))
-    keys = power.view(np.uint64) >> n_bits << n_bits
+    keys = power.astype(np.float64).view(np.uint64) >> n_bits << n_bits
     keys |= np.arange(power.size, dtype=np.uint64)
     keys.sort()
     return np.asarray(keys & ((np.uint64(1) << n_bits) - np.uint64(1)))
 
 
-def _power(samples: NDArray[np.complex128]) -> NDArray[np.float64]:
-    out = np.square(samples.real)
+def _power(samples: Complexes) -> Reals:
+    out: Reals = np.square(samples.real)
     out += np.square(samples.imag)
     return out
 
 
-def _set_size(samples: NDArray[np.complex128], size: NDArray[np.float64]) -> None:
+def _set_size(samples: Complexes, size: Reals) -> None:
     """Give samples magnitudes, the phases kept, in place; what is 0 gets phase 0."""
     own = _power(samples)
     np.sqrt(own, out=own)
@@ -188,9 +195,11 @@ def _levels_of(ranks: NDArray[np.float64]) -> tuple[NDArray[np.intp], NDArray[np
 
 
 def _level_error(
-    power: NDArray[np.float64], places: NDArray[np.intp], levels: NDArray[np.float64]
+    power: Reals, places: NDArray[np.intp], levels: NDArray[np.float64]
 ) -> tuple[float, int]:
-    rising = np.sqrt(np.sort(power)[places] / np.mean(power))
+    over_mean: NDArray[np.float64] = np.sort(power)[places].astype(np.float64)
+    over_mean /= np.mean(power, dtype=np.float64)
+    rising = np.sqrt(over_mean)
     difference = np.abs(_db(rising) - levels)
     worst = int(np.argmax(difference))
     return float(difference[worst]), int(places[worst])
