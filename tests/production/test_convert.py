@@ -369,6 +369,10 @@ def test_one_of_two_channels_is_a_stimulus(pair, tmp_path, number):
     assert document["papr_db"] == pytest.approx(old["papr_db"], abs=1e-3)
     scaling = (pair.document["second_channel"] if number else pair.document)["scaling"]
     assert document["scaling"]["i_peak_dbfs"] == pytest.approx(scaling["i_peak_dbfs"] - 1)
+    plain = run(pair.files[0], tmp_path / "c", hints, format="sigmf")
+    about = open_recording(plain.files[0]).description
+    assert about.endswith(f"; channel {number} of 2")
+    assert "two coherent" not in about
     (row,) = document["bench"]["path"]
     assert "channel" not in row
     assert row["average_dbm"] == pair.document["bench"]["path"][number]["average_dbm"]

@@ -47,7 +47,7 @@ from wavegen.production.export import Channel, ExportedFile, Written, export
 from wavegen.production.input_file import InputFile, moved, open_input
 from wavegen.production.judgement import data_samples_of
 from wavegen.production.resampling import factor_of, loop_at_rate, recording_at_rate
-from wavegen.production.sidecar import FORMAT, as_csv, as_json, note_rows
+from wavegen.production.sidecar import FORMAT, TWO_CHANNELS, as_csv, as_json, note_rows
 from wavegen.production.stimulus import recipe_channel
 from wavegen.production.stimulus_document import file_row
 
@@ -319,13 +319,23 @@ def _facts(
         n_samples=signal.n_samples,
         datatype=datatype,
         title=recording.title or (source.stimulus.document["title"] if source.stimulus else ""),
-        description=recording.description or f"converted from {recording.path.name}",
+        description=_description(source),
         generator=f"wavegen {__version__}",
         recipe_sha512="" if text is None else hashlib.sha512(text.encode()).hexdigest(),
         annotations=marks,
         centre_frequency_hz=None if centre_hz is None else centre_hz - float(carriage.shift_hz),
         n_channels=len(signals),
     )
+
+
+def _description(source: InputFile) -> str:
+    """Return what a file says about itself, and which channel of two it is now."""
+    recording = source.recording
+    text = recording.description or f"converted from {recording.path.name}"
+    if source.taken_channel is None:
+        return text
+    count = recording.n_channels
+    return f"{text.removesuffix(TWO_CHANNELS)}; channel {source.taken_channel} of {count}"
 
 
 def _refuse_own_source(source: InputFile, folder: Path, names: tuple[str, ...]) -> None:

@@ -32,6 +32,8 @@ GRID_STEP_DB = 0.05
 LOWEST_PROBABILITY = 1e-9
 PROBABILITIES = (0.1, 0.01, 1e-3, 1e-4, 1e-5, 1e-6)
 PAPR_NOTE = "of the complex envelope: an unmodulated carrier reads 0 dB"
+TWO_CHANNELS = "; two coherent channels"
+"""Ends the description of such a stimulus."""
 _NUMBERS = re.compile(r"\[[-+0-9.eE,\s]+\]")
 LIBRARIES = ("numpy", "scipy", "sigmf", "soundfile", "pydantic", "ruamel.yaml")
 SAFETY = (
@@ -196,6 +198,6 @@ def as_csv(document: dict[str, Any]) -> str:
 def describe(prepared: Prepared) -> str:
     """Return one sentence about a stimulus, for formats with room for it."""
     recipe = prepared.loaded.recipe
-    channels = "; two coherent channels" if prepared.second else ""
+    channels = TWO_CHANNELS if prepared.second else ""
     name = recipe.title or prepared.loaded.name
     return f"{name}; loops; {format_hz(recipe.sample_rate_hz)}{channels}"
