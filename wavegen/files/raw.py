@@ -23,14 +23,10 @@ from wavegen.files.datatypes import (
     CI16_LE,
     CI32_LE,
     CU8,
-    RF32_LE,
-    RF64_LE,
-    RI8,
-    RI16_BE,
-    RI16_LE,
     RI32_LE,
     Codes,
     Datatype,
+    real_of,
 )
 from wavegen.files.faults import read_head
 from wavegen.files.format import (
@@ -46,8 +42,9 @@ from wavegen.files.format import (
 from wavegen.files.interleaved import InterleavedWriter, open_interleaved
 from wavegen.files.signatures import TEXT, is_text, signature_of
 
-_WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, RI16_LE, RF32_LE)}
-_READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE, RI8, RI16_BE, RI32_LE, RF64_LE)}
+_COMPLEX = (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)
+_WRITTEN = {item.name: item for item in (*_COMPLEX, *map(real_of, _COMPLEX))}
+_READ = _WRITTEN | {item.name: item for item in (CU8, CI32_LE, RI32_LE)}
 
 
 class Raw:

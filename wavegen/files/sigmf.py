@@ -20,10 +20,9 @@ from wavegen.files.datatypes import (
     CI8,
     CI16_BE,
     CI16_LE,
-    RF32_LE,
-    RI16_LE,
     Codes,
     Datatype,
+    real_of,
 )
 from wavegen.files.faults import os_fault, regular_size, told
 from wavegen.files.format import (
@@ -42,7 +41,8 @@ from wavegen.files.sigmf_meta import Metadata, meta_text, read_meta
 from wavegen.files.strict_json import finite_json
 
 META, DATA = ".sigmf-meta", ".sigmf-data"
-WRITTEN = {item.name: item for item in (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE, RI16_LE, RF32_LE)}
+_COMPLEX = (CI16_LE, CI16_BE, CI8, CF32_LE, CF64_LE)
+WRITTEN = {item.name: item for item in (*_COMPLEX, *map(real_of, _COMPLEX))}
 """What is written, by the names of the specification."""
 
 _MOST_HZ = 10**12
