@@ -35,6 +35,19 @@ def test_document(call, pair):
     json.dumps(document, allow_nan=False)
 
 
+def test_records_as_they_stand(call, noise, tmp_path):
+    """Two short records of one process: open as samples of it, different as records."""
+    first, second = noise(name="one.cf32_le"), tmp_path / "two.cf32_le"
+    np.fromfile(noise(name="long.cf32_le", n=10_000), "<c8")[5000:].tofile(second)
+    said = call("match", first, second, *RATE)
+    assert said.status == 6
+    assert "Undecided: as recorded one.cf32_le stands" in " ".join(said.out.split())
+    said = call("match", first, second, *RATE, "--as-recorded")
+    assert said.status == 5
+    assert "Differ: as recorded, one.cf32_le stands" in said.out
+    assert call("match", first, first, *RATE, "--as-recorded").status == 0
+
+
 def test_options_of_one_side_win_over_those_for_both(call, pair):
     document = call(
         "match",

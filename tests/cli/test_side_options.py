@@ -2,7 +2,15 @@ import argparse
 
 import pytest
 
-from wavegen.cli.side_options import add_sides, count, reading_db, refuse_stray_overrides, side_of
+from wavegen.cli.side_options import (
+    add_sides,
+    add_verdict,
+    count,
+    reading_db,
+    refuse_stray_overrides,
+    side_of,
+    verdict_of,
+)
 from wavegen.core.errors import ArgumentsError
 
 
@@ -65,3 +73,13 @@ def test_no_counts(text):
 def test_no_reading_errors(text):
     with pytest.raises(argparse.ArgumentTypeError):
         reading_db(text)
+
+
+def test_only_what_is_said_of_the_verdict_is_handed_on():
+    parser = argparse.ArgumentParser()
+    add_verdict(parser, tolerance="x", down_to="y")
+    assert verdict_of(parser.parse_args([])) == {}
+    said = parser.parse_args(["--tolerance", "0.5dB", "--down-to", "1%"])
+    assert verdict_of(said) == {"tolerance_db": 0.5, "down_to": 0.01}
+    with pytest.raises(SystemExit):
+        parser.parse_args(["--down-to", "2"])

@@ -3,15 +3,21 @@
 from __future__ import annotations
 
 import argparse
+from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 from wavegen.cli.check import STATUS
 from wavegen.cli.console import Console
-from wavegen.cli.measure_options import probability
-from wavegen.cli.options import add_workers, tolerance_db
+from wavegen.cli.options import add_workers
 from wavegen.cli.report_options import add_reports, are_wanted, compared
-from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
+from wavegen.cli.side_options import (
+    add_sides,
+    add_verdict,
+    refuse_stray_overrides,
+    side_of,
+    verdict_of,
+)
 from wavegen.core.errors import ArgumentsError
 
 SIDES = ("input", "output")
@@ -36,18 +42,10 @@ class GainCurve:
         """Declare the arguments."""
         parser.add_argument("source", metavar="INPUT", help="what goes into the device")
         parser.add_argument("output", metavar="OUTPUT", help="what comes out of it")
-        parser.add_argument(
-            "--tolerance",
-            type=tolerance_db,
-            metavar="LEVEL",
-            help="within this of each other the curves are those of a linear device "
-            "(default: 0.2dB)",
-        )
-        parser.add_argument(
-            "--down-to",
-            type=probability,
-            metavar="PROBABILITY",
-            help="least probability at which that is looked at (default: 0.01%%)",
+        add_verdict(
+            parser,
+            tolerance="within this of each other the curves are those of a linear device",
+            down_to="least probability at which that is looked at",
         )
         parser.add_argument(
             "--model",
@@ -71,7 +69,7 @@ class GainCurve:
     @staticmethod
     def run(arguments: argparse.Namespace, console: Console) -> int:
         """Measure and print."""
-        from wavegen.comparison.gain_curve import DEFAULT, GainSettings, gain_curve
+        from wavegen.comparison.gain_curve import GainSettings, gain_curve
 
         sides = (
             side_of(arguments, "input", arguments.source),
@@ -89,14 +87,12 @@ class GainCurve:
                 allowed="these together with --model (or --overwrite with --report or --figures)",
                 remedy="Add --model device.csv, or leave them out.",
             )
-        tolerance, down_to = arguments.tolerance, arguments.down_to
         settings = GainSettings(
-            tolerance_db=DEFAULT.tolerance_db if tolerance is None else tolerance,
-            down_to=DEFAULT.down_to if down_to is None else down_to,
             model=arguments.model,
             by_fit=arguments.model_from == "rapp",
             overwrite=arguments.overwrite,
         )
+        settings = replace(settings, **verdict_of(arguments))
         document = compared(
             arguments,
             console,

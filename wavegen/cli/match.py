@@ -3,14 +3,20 @@
 from __future__ import annotations
 
 import argparse
+from dataclasses import replace
 from typing import Any
 
 from wavegen.cli.check import STATUS
 from wavegen.cli.console import Console
-from wavegen.cli.measure_options import probability
-from wavegen.cli.options import add_workers, tolerance_db
+from wavegen.cli.options import add_workers
 from wavegen.cli.report_options import add_reports, are_wanted, compared
-from wavegen.cli.side_options import add_sides, refuse_stray_overrides, side_of
+from wavegen.cli.side_options import (
+    add_sides,
+    add_verdict,
+    refuse_stray_overrides,
+    side_of,
+    verdict_of,
+)
 
 SIDES = ("stimulus", "field")
 
@@ -38,17 +44,10 @@ class Match:
         """Declare the arguments."""
         parser.add_argument("stimulus", metavar="STIMULUS", help="what is compared")
         parser.add_argument("field", metavar="FIELD", help="what it is compared with")
-        parser.add_argument(
-            "--tolerance",
-            type=tolerance_db,
-            metavar="LEVEL",
-            help="largest difference that matches (default: 0.2dB)",
-        )
-        parser.add_argument(
-            "--down-to",
-            type=probability,
-            metavar="PROBABILITY",
-            help="least probability compared (default: 0.01%%)",
+        add_verdict(
+            parser,
+            tolerance="largest difference that matches",
+            down_to="least probability compared",
         )
         parser.add_argument(
             "--as-recorded",
@@ -62,7 +61,7 @@ class Match:
     @staticmethod
     def run(arguments: argparse.Namespace, console: Console) -> int:
         """Compare and print."""
-        from wavegen.comparison.match import DEFAULT, MatchSettings, match
+        from wavegen.comparison.match import MatchSettings, match
 
         are_wanted(arguments)
         sides = (
@@ -70,11 +69,8 @@ class Match:
             side_of(arguments, "field", arguments.field),
         )
         refuse_stray_overrides(arguments, sides)
-        tolerance, down_to = arguments.tolerance, arguments.down_to
-        settings = MatchSettings(
-            tolerance_db=DEFAULT.tolerance_db if tolerance is None else tolerance,
-            down_to=DEFAULT.down_to if down_to is None else down_to,
-            is_of_records=arguments.as_recorded,
+        settings = replace(
+            MatchSettings(is_of_records=arguments.as_recorded), **verdict_of(arguments)
         )
         document = compared(
             arguments,

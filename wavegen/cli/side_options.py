@@ -5,7 +5,7 @@ from __future__ import annotations
 import argparse
 from typing import TYPE_CHECKING, Any
 
-from wavegen.cli.measure_options import add_gate, add_part, gate_of
+from wavegen.cli.measure_options import add_gate, add_part, gate_of, probability
 from wavegen.cli.options import (
     add_overrides,
     add_reading,
@@ -14,6 +14,7 @@ from wavegen.cli.options import (
     level_dbm,
     ratio_db,
     refuse_reading,
+    tolerance_db,
 )
 from wavegen.core.errors import ArgumentsError
 
@@ -111,6 +112,39 @@ def _copy(source: argparse.ArgumentParser, target: argparse.ArgumentParser, side
         action.dest = f"{side}_{action.dest}"
         action.help = argparse.SUPPRESS
         target._add_action(action)
+
+
+def add_verdict(parser: argparse.ArgumentParser, *, tolerance: str, down_to: str) -> None:
+    """Declare what a match means, with the words of a verb.
+
+    Parameters
+    ----------
+    parser : ArgumentParser
+        Of a verb.
+    tolerance, down_to : str
+        What the help says of each, without the default.
+    """
+    parser.add_argument(
+        "--tolerance", type=tolerance_db, metavar="LEVEL", help=f"{tolerance} (default: 0.2dB)"
+    )
+    parser.add_argument(
+        "--down-to",
+        type=probability,
+        metavar="PROBABILITY",
+        help=f"{down_to} (default: 0.01%%)",
+    )
+
+
+def verdict_of(arguments: argparse.Namespace) -> dict[str, Any]:
+    """Return what the options say a match means, by the names of settings; defaults are left out.
+
+    Parameters
+    ----------
+    arguments : Namespace
+        With the options of :func:`add_verdict`.
+    """
+    said = {"tolerance_db": arguments.tolerance, "down_to": arguments.down_to}
+    return {key: value for key, value in said.items() if value is not None}
 
 
 def side_of(arguments: argparse.Namespace, side: str, subject: str) -> SideSettings:
