@@ -25,6 +25,12 @@ def test_what_is_not_limited_is_told_and_met():
     assert all(row["is_met"] for row in found.values())
 
 
+def test_two_channels_need_twice_the_memory():
+    document = DOCUMENT | {"files": [DOCUMENT["files"][0] | {"channels": [{}, {}]}]}
+    (data,) = [row for row in legality(Generator(), document) if row["what"] == "data"]
+    assert data["value"].startswith("0.8 MB")
+
+
 @pytest.mark.parametrize(("least", "most", "is_met"), [(1e6, 2e8, True), (2e8, None, False)])
 def test_clock(least, most, is_met):
     assert rows(clock_least_hz=least, clock_most_hz=most)["clock"]["is_met"] is is_met

@@ -67,3 +67,13 @@ def test_a_mask_over_the_peak_density():
     """White over 8 MHz: 100 kHz hold an eightieth, 19.03 dB less than the total."""
     _, limits = mask_corners(mask(reference="peak_density", both_sides=False), flat(), centre_hz=0)
     assert limits == pytest.approx([-89.03, -109.03], abs=1.0)  # the highest of 80 scatters upwards
+
+
+def test_around_an_intermediate_frequency():
+    base = around("8")
+    moved = base.moved(2e6, sample_rate_hz=8e6)
+    assert moved.band.centre_hz == pytest.approx(base.band.centre_hz + 2e6)
+    assert moved.band.width_hz == pytest.approx(base.band.width_hz)
+    assert moved.plan is None  # neighbours reach below 0 Hz
+    assert base.moved(8e6, sample_rate_hz=32e6).plan is base.plan
+    assert base.moved(0.0, sample_rate_hz=8e6) is base

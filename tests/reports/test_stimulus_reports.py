@@ -1,6 +1,7 @@
 """What is written beside a stimulus."""
 
 import json
+import re
 
 import pytest
 
@@ -123,3 +124,21 @@ def test_both_channels_of_a_file_that_does_not_tell_its_rate(tmp_path):
     assert f"{-20 + over:.2f} dBm" in sheet
     assert "EXCEEDED by" in sheet
     assert ", accepted" in sheet
+
+
+def test_a_carrier_in_real_samples_is_shaded_where_it_stands(tmp_path):
+    real = "output: {iq: [{format: wav, datatype: ri16_le, real: {centre: 1.2 MHz}}]}\n"
+    made = make(loaded(real), out=tmp_path)
+    write_stimulus_reports(made, Wanted(report=True))
+    page = (made.folder / "car.report.html").read_text()
+    (panel,) = [
+        panel
+        for found in re.findall(r'class="readings">(.*?)</script>', page, re.DOTALL)
+        for panel in json.loads(found)
+        if panel["x"]["name"].startswith("frequency")
+    ]
+    assert panel["x"]["name"] == "frequency, MHz"
+    assert (panel["x"]["from"], panel["x"]["to"]) == (0, 2)
+    (curve,) = panel["curves"]
+    highest = curve["x"][max(range(len(curve["y"])), key=lambda k: curve["y"][k])]
+    assert highest == pytest.approx(1.2, abs=0.6)  # a carrier 1.2 MHz wide

@@ -25,10 +25,13 @@ def legality(limits: Generator, document: dict[str, Any]) -> list[dict[str, Any]
         ``what``, ``value``, ``allowed``, ``is_met``: duration, data, then what the bench limits.
     """
     rate, n_samples = document["sample_rate_hz"], document["n_samples"]
+    n_channels = len(document["files"][0].get("channels") or [document])
     bits = {item["bits"] or _bits(item["datatype"]) for item in document["files"]}
     rows = [
         _row("duration", format_s(document["duration_s"]), "", is_met=True),
-        _row("data", f"{n_samples * 4 / 1e6:.6g} MB as 16-bit I and Q", "", is_met=True),
+        _row(
+            "data", f"{n_samples * n_channels * 4 / 1e6:.6g} MB as 16-bit I and Q", "", is_met=True
+        ),
     ]
     least, most = limits.clock_least_hz, limits.clock_most_hz
     if least is not None or most is not None:

@@ -82,6 +82,25 @@ class Surroundings:
         plan = plan_channels(ChannelRequest(), band)
         return cls(band=band, plan=plan if is_held(plan, graph, band.centre_hz) else None)
 
+    def moved(self, centre_hz: float, *, sample_rate_hz: float) -> Surroundings:
+        """Return where it stands around an intermediate frequency.
+
+        Parameters
+        ----------
+        centre_hz : float
+            By how much it is moved up, Hz.
+        sample_rate_hz : float
+            Neighbours that lie outside of what real samples of this rate hold are left out.
+        """
+        if not centre_hz:
+            return self
+        band = OccupiedBand(
+            low_hz=self.band.low_hz + centre_hz, high_hz=self.band.high_hz + centre_hz
+        )
+        half = self.plan.needed_hz / 2 if self.plan else 0.0
+        fits = band.centre_hz >= half and band.centre_hz + half <= sample_rate_hz / 2
+        return Surroundings(band=band, plan=self.plan if fits else None)
+
     def channels(self, spectrum: Spectrum) -> tuple[ChannelView, ...]:
         """Return the channels with what leaks into them, by a spectrum.
 

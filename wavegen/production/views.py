@@ -90,6 +90,7 @@ def views_of(
     mask: SpectralMask | None = None,
     before: tuple[str, Signal] | None = None,
     is_power: bool = False,
+    centre_hz: float = 0.0,
     workers: int = 1,
     progress: Progress = silent,
 ) -> Views:
@@ -111,6 +112,8 @@ def views_of(
         The same before its peaks are reduced, and what that is called.
     is_power : bool
         The samples are power without a phase: there is no spectrum, and no rails at the seam.
+    centre_hz : float
+        Intermediate frequency around which the samples hold what the graph holds around 0 Hz.
     workers : int
         Threads.
     progress : Progress
@@ -125,7 +128,10 @@ def views_of(
     FileError, SignalError
         It cannot be read, or a sample is not finite.
     """
+    rate = float(signal.sample_rate_hz)
     around = None if graph is None else Surroundings.of(graph)
+    if around is not None:
+        around = around.moved(centre_hz, sample_rate_hz=rate)
     meter = None if is_power else _spectrum_meter(signal, around, mask, loops=loops)
     taps = [Tap(name="envelope", signal=signal, meter=EnvelopeMeter())]
     if meter is not None:
@@ -134,7 +140,6 @@ def views_of(
         signal, taps=tuple(taps), workers=workers, progress=progress, task="reading for pictures"
     )
     spectrum = found.get("spectrum")
-    rate = float(signal.sample_rate_hz)
     corners = None
     if mask is not None and around is not None and spectrum is not None:
         corners = mask_corners(mask, spectrum, centre_hz=around.band.centre_hz)
@@ -147,7 +152,10 @@ def views_of(
         clouds=() if graph is None else _clouds(graph),
         channels=around.channels(spectrum) if around and spectrum is not None else (),
         mask=corners,
-        before=None if before is None else _before(*before, meter, workers, progress),
+        # Around another frequency than the samples, its spectrum cannot be laid over theirs.
+        before=None
+        if before is None
+        else _before(*before, None if centre_hz else meter, workers, progress),
     )
 
 

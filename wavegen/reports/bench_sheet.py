@@ -272,8 +272,7 @@ def sheet_page(found: Sequence[dict[str, Any]]) -> Page:
     return Page(
         title=f"Bench sheet: {first['title']}",
         summary=tuple(_setting_words(sheet) for sheet in found),
-        warnings=tuple(exceeded),
-        cautions=tuple(first["cautions"]),
+        cautions=(*exceeded, *first["cautions"]),
         sections=tuple(sections(found)),
         origin=(("file", first["file"]), ("SHA-512", first["sha512"])),
     )

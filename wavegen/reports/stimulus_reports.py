@@ -191,12 +191,14 @@ def _channels(made: Made) -> list[_Channel]:
 
 def _pictures(made: Made, channel: _Channel, how: dict[str, Any]) -> list[Picture]:
     graph = channel.prepared.built.signal
+    real = made.document["files"][0]["real"]
     views = views_of(
         channel.signal,
         loops=True,
         graph=graph,
         bursts=on_time(graph),
         mask=made.loaded.recipe.mask,
+        centre_hz=real["centre_hz"] if real else 0.0,
         before=_before(made.loaded, channel.prepared, channel.number),
         **how,
     )

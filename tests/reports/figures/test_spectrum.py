@@ -45,3 +45,11 @@ def test_names_of_narrow_channels_stand_outwards():
     boxes = [text.get_window_extent() for text in figure.axes[0].texts]
     assert len(boxes) == 2
     assert boxes[0].x1 < boxes[1].x0
+
+
+def test_real_samples_have_frequencies_from_0():
+    noise = np.random.default_rng(1).standard_normal(4096).astype(np.complex64)
+    spectrum = spectrum_of(noise, sample_rate_hz=1e6, n_fft=256)
+    axes = spectrum_figure([("noise", spectrum)], title="T", is_real=True).axes[0]
+    assert axes.get_xlim() == (0, 500)
+    assert axes.get_xlabel() == "frequency, kHz"

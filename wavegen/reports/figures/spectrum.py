@@ -99,6 +99,7 @@ def spectrum_figure(
     title: str,
     channels: Sequence[Channel] = (),
     mask: tuple[NDArray[np.float64], NDArray[np.float64]] | None = None,
+    is_real: bool = False,
 ) -> Figure:
     """Draw densities over the total power of each.
 
@@ -112,6 +113,8 @@ def spectrum_figure(
         Shaded.
     mask : (frequencies in Hz, limits in dBc/Hz), optional
         Drawn as a limit.
+    is_real : bool
+        Of real samples: frequencies from 0 up.
 
     Returns
     -------
@@ -136,13 +139,13 @@ def spectrum_figure(
         _shade(axes, channel, widest, unit)
     if mask is not None:
         draw(axes, mask[0] / unit, mask[1], LIMIT, label="limit")
-    axes.set_xlim(-widest / 2 / unit, widest / 2 / unit)
+    axes.set_xlim(0.0 if is_real else -widest / 2 / unit, widest / 2 / unit)
     low = axes.get_ylim()[0]
     if mask is not None:
         top, low = max(top, float(mask[1].max())), min(low, float(mask[1].min()) - 5)
     bottom = max(low, top - _DEEPEST_DB)
     axes.set_ylim(bottom, top + 0.06 * (top - bottom) * (4 if channels else 2))
-    axes.set_xlabel(f"frequency from the centre, {unit_name}")
+    axes.set_xlabel(f"frequency{'' if is_real else ' from the centre'}, {unit_name}")
     axes.set_ylabel("power density over the total power, dBc/Hz")
     legend(axes)
     return figure

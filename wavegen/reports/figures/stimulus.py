@@ -82,7 +82,7 @@ def pictures_of(
     if views is not None:
         found.append(_envelope(document, views, title, absolute))
         if views.spectrum is not None:
-            found.append(_spectrum(views, views.spectrum, title))
+            found.append(_spectrum(document, views, views.spectrum, title))
         if views.clouds:
             found.append(_constellation(views, title))
         if views.around_seam is not None:
@@ -233,7 +233,8 @@ def _on_times(
     return on_times, f"; {count} on-time{'s are' if count > 1 else ' is'} shaded"
 
 
-def _spectrum(views: Views, spectrum: Spectrum, title: str) -> Picture:
+def _spectrum(document: dict[str, Any], views: Views, spectrum: Spectrum, title: str) -> Picture:
+    is_real = bool(document.get("is_real") or document.get("files", [{}])[0].get("real"))
     spectra = [("measured", spectrum)]
     if views.before is not None and views.before.spectrum is not None:
         spectra.append((views.before.name, views.before.spectrum))
@@ -252,7 +253,9 @@ def _spectrum(views: Views, spectrum: Spectrum, title: str) -> Picture:
     )
     return Picture(
         name="spectrum",
-        figure=spectrum_figure(spectra, title=title, channels=channels, mask=views.mask),
+        figure=spectrum_figure(
+            spectra, title=title, channels=channels, mask=views.mask, is_real=is_real
+        ),
         caption=f"Power spectral density by Welch's method.{said}",
         alternative=f"Curve of the power density over frequency.{said}",
     )
