@@ -109,6 +109,16 @@ def test_what_is_said_where_nothing_keeps_the_limits():
     assert "the signal as it is" in " ".join(outcome_words(untouched))
 
 
+def test_what_is_said_where_no_method_suits():
+    unsuited = {**DOCUMENT["methods"][0], "state": "unsuited", "reason": "no symbols", "best": None}
+    nearest = {**BEST, "method": "", "settings": {}, "margin_db": 60.0, "binding": "EVM"}
+    document = {**DOCUMENT, "best": None, "nearest": nearest, "methods": [unsuited]}
+    said = " ".join(outcome_words(document))
+    assert "No method suits this signal: " in said
+    assert ": no symbols. The signal as it is keeps the limits." in said
+    assert "misses" not in said
+
+
 def test_other_verdicts():
     for verdict, word in (("undecided", "UNDECIDED"), ("missed", "MISSED")):
         document = {**DOCUMENT, "confirmation": {**CONFIRMED, "verdict": verdict}}

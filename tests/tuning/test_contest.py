@@ -3,7 +3,7 @@
 import pytest
 
 from wavegen.core.errors import ArgumentsError
-from wavegen.tuning.contest import Contest, chosen_kinds
+from wavegen.tuning.contest import Contest, chosen_kinds, refuse_unsuited
 from wavegen.tuning.search import Goal
 from wavegen.tuning.space import REFERENCE, space_of
 
@@ -76,3 +76,10 @@ def test_more_margin_in_hand(begun, made):
     tighter = contest.tighten(result.best, guard_db=1.0, seconds=10.0)
     assert 1.0 <= trials.limits.margin_db(tighter) <= 1.1
     assert tighter.settings["rounds"] == result.best.settings["rounds"]
+
+
+def test_methods_of_which_none_can_be_tried_are_refused():
+    refuse_unsuited({"tone_reservation": "no tones", "clip": space_of("clip", None, **SIGNAL)})
+    with pytest.raises(ArgumentsError) as refused:
+        refuse_unsuited({"tone_reservation": "no tones"})
+    assert "tone_reservation cannot be searched on this recipe: no tones" in refused.value.problem

@@ -137,7 +137,7 @@ def test_an_interruption_keeps_what_was_evaluated(done, tmp_path):
     heard = []
 
     def interrupt(task, *_):
-        if task.startswith("clip_filter"):
+        if "clip_filter" in task:
             heard.append(task)
             if len(heard) == 2:
                 raise KeyboardInterrupt

@@ -219,9 +219,12 @@ def probability(text: str) -> float:
     argparse.ArgumentTypeError
         Neither, or outside 0 to 1.
     """
-    value = share(text) / 100 if text.strip().endswith("%") else positive(text)
+    message = f"{text[:40]!r} is no probability between 0 and 1; allowed: such as 0.01% or 1e-4"
+    try:
+        value = share(text) / 100 if text.strip().endswith("%") else positive(text)
+    except argparse.ArgumentTypeError as error:
+        raise argparse.ArgumentTypeError(message) from error
     if value >= 1:
-        message = f"{text!r} is no probability below 1; allowed: such as 0.01%% or 1e-4"
         raise argparse.ArgumentTypeError(message)
     return value
 

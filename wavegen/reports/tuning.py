@@ -179,6 +179,14 @@ def _infeasible(document: dict[str, Any]) -> list[str]:
         if document["is_unfinished"]
         else "No method keeps the limits."
     )
+    if nearest["margin_db"] >= 0:  # no method could be tried to the end
+        why = "; ".join(
+            f"{item['method'].replace('_', ' ')}: {item['reason']}"
+            for item in document["methods"]
+            if item["state"] == "unsuited"
+        )
+        start = f"No method suits this signal: {why}." if why else start
+        return [f"{start} {told[0].upper()}{told[1:]} keeps the limits."]
     text = (
         f"{start} Nearest: {told}: EVM {nearest['evm_percent']:.3f} %{aclr}, level "
         f"{nearest['level_db']:.2f} dB; {nearest['binding']} misses its limit by "

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from contextlib import suppress
 from dataclasses import dataclass
 
@@ -40,6 +40,25 @@ def chosen_kinds(asked: Sequence[str]) -> tuple[str, ...]:
                 remedy=f"Did you mean {guess}?" if guess else "Choose one of these.",
             )
     return tuple(dict.fromkeys(asked)) or tuple(kind for kind in known if kind != REFERENCE)
+
+
+def refuse_unsuited(spaces: Mapping[str, Space | str]) -> None:
+    """Refuse a search of methods of which none can be tried.
+
+    Raises
+    ------
+    ArgumentsError
+        With why the first is unsuited.
+    """
+    if any(isinstance(space, Space) for space in spaces.values()):
+        return
+    kind, why = next(iter(spaces.items()))
+    raise ArgumentsError(
+        where="--method",
+        problem=f"{kind} cannot be searched on this recipe: {why}",
+        allowed="methods that the recipe has room for",
+        remedy="Change the recipe so, or choose another method.",
+    )
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

@@ -23,7 +23,7 @@ from wavegen.stages.amplifier import Amplifier
 from wavegen.stages.device.measured_amplifier import read_amplifier
 from wavegen.tuning.amplified_rig import AmplifiedRig
 from wavegen.tuning.confirm import Confirmation, confirm
-from wavegen.tuning.contest import Contest, chosen_kinds
+from wavegen.tuning.contest import Contest, chosen_kinds, refuse_unsuited
 from wavegen.tuning.evaluation import Evaluation
 from wavegen.tuning.journal import Journal, key_of
 from wavegen.tuning.reference import Reference, find_reference
@@ -223,9 +223,11 @@ def _search(
                 kind, present, band_hz=rig.plan.band.width_hz, highest_db=before.peak_db
             )
 
+        spaces = {kind: space(kind) for kind in kinds}
+        refuse_unsuited(spaces)
         contest = Contest(
             trials=trials,
-            spaces={kind: space(kind) for kind in kinds},
+            spaces=spaces,
             goal=shop.goal,
             is_monotone=shop.amplifier is None,
         )
