@@ -48,6 +48,8 @@ def test_a_loop_that_closes_with_unit_power(site, tmp_path):
     assert seam_figure(signal).is_clean
     (note,) = site.notes
     assert "Levels of the CCDF move by up to" in note.text
+    assert "Its spectrum moves by up to" in note.text
+    assert "dBc become -" in note.text  # nothing is heard beside it
 
 
 def test_all_but_the_fade_is_the_recording(site, tmp_path):

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Annotated
@@ -15,27 +14,28 @@ from numpy.typing import NDArray
 
 from wavegen.core.errors import ArgumentsError, FileError
 from wavegen.core.excerpt import Excerpt
-from wavegen.core.render import samples_of
 from wavegen.core.signal import Range, Samples, Signal
 from wavegen.core.site import Cycle, Note, Site
 from wavegen.core.units import format_hz, format_s
-from wavegen.dsp.power_bins import bin_edges
-from wavegen.dsp.power_kernel import PowerTally, tally
 from wavegen.files.analytic import as_complex
 from wavegen.files.format import ReadHints
 from wavegen.files.format import Recording as OpenedFile
 from wavegen.files.read import open_recording
 from wavegen.laws.term import NoLaw
+from wavegen.sources.recording_seam import (
+    SpectrumChange,
+    counted,
+    largest_change,
+    spectrum_change,
+    strips,
+)
 
-_STRIP = 1 << 19
 _SMOOTH = 8.0
 SHORTEST_FADE = 24_576
 """Samples, unless the loop is so short that a quarter of it is less: a shorter fade would be heard
 beside the band at the seam."""
 MOST_PLACES = 1 << 20
 """Places for the cut that are compared: the first so many, where there are more."""
-_PROBABILITIES = (0.1, 0.01, 0.001, 1e-4)
-_EVENTS = 10
 
 
 @dataclass(frozen=True, eq=False, kw_only=True)
@@ -239,8 +239,8 @@ class Recording:
 
     def _levelled(self, site: Site, loop: CrossFaded, start: int, likeness: float) -> Signal:
         """Bring a loop to unit mean power, and say what the fade did to it."""
-        plain, _, _ = _count(loop.inputs[0])
-        closed, mean, total = _count(loop)
+        plain, _, _ = counted(loop.inputs[0])
+        closed, mean, total = counted(loop)
         offset = total / loop.n_samples if self.remove_dc else 0j
         power = mean - abs(offset) ** 2
         if not power > 0:
@@ -250,13 +250,14 @@ class Recording:
                 allowed="a part with some power",
                 remedy="Use another part of it.",
             )
-        change, at = _largest_change(plain, closed)
+        change, at = largest_change(plain, closed)
         rate = site.sample_rate_hz
         text = (
             f"Cut at {format_s(Fraction(start) / rate)}; the last "
             f"{format_s(Fraction(loop.fade_samples) / rate)} fade into what led up to the start "
             f"(likeness {likeness:.2f}). Levels of the CCDF move by up to {change:.3f} dB"
             + (f" (at {100 * at:g} %)." if change else ".")
+            + _spectrum_words(spectrum_change(loop.inputs[0], loop))
         )
         site.notes.append(Note(kind="info", where=site.path, text=text))
         return CrossFaded(
@@ -271,6 +272,16 @@ class Recording:
         )
 
 
+def _spectrum_words(change: SpectrumChange | None) -> str:
+    if change is None:
+        return " It is too short to tell what becomes of its spectrum."
+    text = f" Its spectrum moves by up to {change.largest_db:.2f} dB in a fortieth of its band"
+    if change.beside_dbc is None:
+        return f"{text}."
+    before, after = change.beside_dbc
+    return f"{text}; beside it {before:.1f} dBc become {after:.1f} dBc."
+
+
 def _stretch(source: Signal, first: int, count: int) -> Signal:
     return Excerpt(
         sample_rate_hz=source.sample_rate_hz,
@@ -279,11 +290,6 @@ def _stretch(source: Signal, first: int, count: int) -> Signal:
         mean_power=None,
         first=first,
     )
-
-
-def _strips(signal: Signal, first: int, stop: int) -> Iterator[Samples]:
-    for start in range(first, stop, _STRIP):
-        yield samples_of(signal, start, min(start + _STRIP, stop))
 
 
 def best_cut(source: Signal, first: int, stop: int, n: int, fade: int) -> tuple[int, float]:
@@ -310,8 +316,8 @@ def best_cut(source: Signal, first: int, stop: int, n: int, fade: int) -> tuple[
     Of the first million places the one with the least mean squared difference over the power.
     """
     count = min(stop - first - n, MOST_PLACES + fade)
-    early = np.concatenate(list(_strips(source, first, first + count))).astype(np.complex128)
-    late = np.concatenate(list(_strips(source, first + n, first + n + count)))
+    early = np.concatenate(list(strips(source, first, first + count))).astype(np.complex128)
+    late = np.concatenate(list(strips(source, first + n, first + n + count)))
     product = np.cumsum((early * late.conj()).real)
     power = np.cumsum(np.abs(early) ** 2 + np.abs(late) ** 2)
     common, total = _windows(product, fade), _windows(power, fade)
@@ -324,47 +330,3 @@ def _windows(sums: NDArray[np.float64], length: int) -> NDArray[np.float64]:
     """Return sums over windows from running ones."""
     before = np.concatenate([[0.0], sums[: sums.size - length]])
     return np.asarray(sums[length - 1 :] - before)
-
-
-def _count(signal: Signal) -> tuple[list[PowerTally], float, complex]:
-    """Return tallies of a signal, its mean power, and the sum of its samples."""
-    found, power, total = [], 0.0, 0j
-    for samples in _strips(signal, 0, signal.n_samples):
-        found.append(tally(samples))
-        power += float(found[-1].sums.sum())
-        total += complex(samples.sum(dtype=np.complex128))
-    return found, power / signal.n_samples, total
-
-
-def _largest_change(plain: list[PowerTally], closed: list[PowerTally]) -> tuple[float, float]:
-    """Return the largest difference of a level over the mean, dB, and its probability."""
-    before, after = _levels(plain), _levels(closed)
-    common = [q for q in before if q in after]
-    if not common:
-        return 0.0, 0.0
-    worst = max(common, key=lambda q: abs(after[q] - before[q]))
-    return abs(after[worst] - before[worst]), worst
-
-
-def _levels(found: list[PowerTally]) -> dict[float, float]:
-    """Return levels over the mean, dB, at the probabilities that a loop resolves."""
-    used = [item for item in found if item.counts.size]
-    if not used:
-        return {}
-    first = min(item.first_bin for item in used)
-    last = max(item.first_bin + item.counts.size for item in used)
-    counts = np.zeros(last - first, np.int64)
-    for item in used:
-        start = item.first_bin - first
-        counts[start : start + item.counts.size] += item.counts
-    n = int(counts.sum()) + sum(item.n_zeros for item in found)
-    mean = sum(float(item.sums.sum()) for item in found) / n
-    above = np.cumsum(counts[::-1])[::-1]
-    edges = bin_edges(first, counts.size)[:-1]
-    levels = {}
-    for probability in _PROBABILITIES:
-        if probability * n < _EVENTS:
-            continue
-        place = int(np.searchsorted(-above, -probability * n))
-        levels[probability] = 10 * math.log10(edges[min(place, edges.size - 1)] / mean)
-    return levels
