@@ -420,6 +420,26 @@ def test_two_channels_of_a_recording(pair, tmp_path):
     assert one.document["converted"]["channel"] == 1
 
 
+def test_two_real_channels_and_back(lab, tmp_path):
+    second = "second_channel: {level: -3 dB, signal: {kind: tones, count: 4, spacing: 15 kHz}}\n"
+    made = lab.make(lab.TONES + second + FLOAT, tmp_path / "a")
+    centre = Fraction(1_000_000)
+    with pytest.raises(FileError, match="two real channels"):
+        run(made.files[0], tmp_path / "b", format="wav", real_centre_hz=centre)
+    real = run(made.files[0], tmp_path / "b", format="sigmf", real_centre_hz=centre)
+    assert real.document["files"][0]["real"] == {"centre_hz": 1e6}
+    assert real.document["second_channel"]["law"]["verdict"] == "agrees"
+    back = run(real.folder, tmp_path / "c", format="npy", datatype="cf32_le")
+    assert is_valid(back.document)
+    for number in (0, 1):  # images 100 dB down, float32 samples
+        found, exact = channel(back.files[0], number), channel(made.files[0], number)
+        assert np.abs(found - exact).max() < 2e-5
+    one = run(real.folder, tmp_path / "d", ReadHints(channel=1), format="wav")
+    assert one.document["converted"]["channel"] == 1
+    assert one.document["converted"]["real"] == {"from_hz": 1e6, "to_hz": 1e6}
+    assert check(find_stimulus(one.folder))["verdict"] == "match"
+
+
 NARROW = "symbol_rate: 0.5 MHz"
 
 
