@@ -113,7 +113,7 @@ RATED = (
     PathStage(name="generator", role="generator", peak_limit_dbm=0.0),
     PathStage(name="amplifier", role="device", gain_db=30.0, average_limit_dbm=-17.0),
     PathStage(name="pad", role="attenuator", gain_db=-20.0, peak_limit_dbm=17.0),
-    PathStage(name="head", role="sensor", energy_limit_j=1e-6),
+    PathStage(name="head", role="sensor", energy_limit_j=5e-8),
     PathStage(name="box", role="analyser", input_attenuation_db=10, mixer_limit_dbm=-14.0),
 )
 
@@ -127,11 +127,13 @@ def test_which_ratings_a_mistake_exceeds():
     assert confused["exceeds"] == [
         "amplifier.average_limit",
         "pad.peak_limit",
+        "head.energy_limit",
         "box.mixer_limit",
     ]
     # a peak of -12: pad 18 > 17, mixer -12 > -14
     assert unreduced["exceeds"] == ["pad.peak_limit", "box.mixer_limit"]
-    # an average of -15 > -17; no peak is higher than planned
+    # an average of -15 > -17; no peak is higher than planned, and a carrier is no pulse: its 5 dB
+    # more would make 79 nJ of the 25, over the rated 50
     assert highest["exceeds"] == ["amplifier.average_limit"]
     assert held["exceeds"] == []
 
