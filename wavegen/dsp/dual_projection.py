@@ -83,7 +83,7 @@ def project_rows(
     -------
     complex64 array, shape (n_rows, n_fft)
         Owned by the caller. In the band; the ceiling is passed by a little, the less the more
-        rounds (0.1 dB after 20 at 4 times the band).
+        rounds.
     """
     lines = correcting_lines(rows, response=response, amplitude=amplitude, n_rounds=n_rounds)
     made = np.asarray(scipy.fft.ifft(lines, axis=1, norm="forward", overwrite_x=True))
