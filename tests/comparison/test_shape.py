@@ -9,7 +9,7 @@ import soundfile
 
 from wavegen.comparison.shape import ShapeSettings, shape
 from wavegen.comparison.side import SideSettings
-from wavegen.core.errors import ArgumentsError, FileError
+from wavegen.core.errors import ArgumentsError, FileError, SignalError
 from wavegen.core.timespan import TimeSpan
 from wavegen.files.format import ReadHints
 from wavegen.production.measure_settings import GateSettings
@@ -156,6 +156,37 @@ def test_what_no_signal_has_ends_at_the_nearest(tmp_path):
     assert document["verdict"] == "differ"
     assert document["largest_difference_db"] > 0.05
     assert (tmp_path / "out" / "twin" / "twin.sigmf-data").exists()
+
+
+def test_a_constant_envelope_ends_at_the_nearest_too(tmp_path):
+    """Exactly constant: its curve is a step, which no flat band of 300 kHz can have."""
+    path = tmp_path / "gmsk.yaml"
+    path.write_text(
+        "wavegen: 1\nsample_rate: 1 MHz\nduration: 8192 samples\n"
+        "signal: {kind: phase_modulation, scheme: gmsk, bt: 0.3, symbol_rate: 125 kHz}\n"
+    )
+    field = SideSettings(subject=str(path), is_recipe=True)
+    flat = settings(bandwidth_hz=Fraction(300_000), duration=TimeSpan(Fraction(8192), "samples"))
+    document = shape(field, flat, out=tmp_path / "out")
+    assert document["verdict"] == "differ"
+    assert 0.05 < document["largest_difference_db"] < 5
+    assert any("was not found" in row["text"] for row in document["warnings"])
+
+
+def test_a_carrier_without_its_offset_is_nothing(tmp_path):
+    field = written(tmp_path / "field.ci16", np.full(4096, 0.25 + 0j))
+    with pytest.raises(SignalError) as caught:
+        shape(field, settings(), out=tmp_path / "out")
+    assert "--keep-dc" in caught.value.remedy
+
+
+def test_a_band_wider_than_the_rate_is_refused_before_anything_is_written(tmp_path):
+    field = written(tmp_path / "field.ci16", clipped())
+    with pytest.raises(ArgumentsError) as caught:
+        shape(field, settings(bandwidth_hz=Fraction(980_000)), out=tmp_path / "out")
+    assert caught.value.where == "--bandwidth"
+    assert "952.4 kHz" in caught.value.allowed
+    assert not (tmp_path / "out").exists()
 
 
 def test_nothing_that_exists_is_lost_and_nothing_is_left(tmp_path):

@@ -136,7 +136,7 @@ def shape(
     """
     check_tolerance(settings.tolerance_db)
     field, skipped = _after_opening(field, workers=workers, progress=progress)
-    side = open_side(field, workers=workers, progress=progress)
+    side = _opened(field, workers=workers, progress=progress)
     spectrum = None
     if settings.bandwidth_hz is None:
         spectrum = side_spectrum(side, workers=workers, progress=progress)
@@ -174,6 +174,21 @@ def shape(
     return _document(
         side, stimulus, spectrum, made, settings, gate=gate, skipped=skipped, workers=workers
     )
+
+
+def _opened(field: SideSettings, *, workers: int, progress: Progress) -> Side:
+    """Open the field; if nothing is left without its offset, say that this may be kept."""
+    try:
+        return open_side(field, workers=workers, progress=progress)
+    except SignalError as error:
+        if not field.removes_offset:
+            raise
+        raise SignalError(
+            where=error.where,
+            problem=error.problem,
+            allowed=error.allowed,
+            remedy=f"{error.remedy} A carrier at 0 Hz is kept with --keep-dc.",
+        ) from error
 
 
 def _after_opening(

@@ -16,6 +16,7 @@ from wavegen.recipe.exact import write_quantity
 
 _POINTS = 1500
 _HIGHEST = 0.9999
+_STEP_DB = 1e-3
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -53,6 +54,8 @@ def curve_text(side: Side, n_samples: int) -> str:
         if np.isfinite(at) and at > last + 1e-6:
             rows.append(f"{at:.6f},{probability:.10g}")
             last = at
+    if len(rows) == 3:  # a constant envelope: all of the time below its level, none above
+        rows[2:] = [f"{last - _STEP_DB:.6f},1", f"{last:.6f},0"]
     return "\n".join(rows) + "\n"
 
 
