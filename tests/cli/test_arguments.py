@@ -86,6 +86,9 @@ def test_the_parser_raises(monkeypatch):
         parser.parse_args(["--n", "x"])
     assert caught.value.where == "wavegen trial --n"
     assert caught.value.problem == "invalid int value: 'x'"
+    parser.add_argument("--long-name")
+    with pytest.raises(ArgumentsError):
+        parser.parse_args(["--long", "x"])
 
 
 def test_negative_values_are_values():

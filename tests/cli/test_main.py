@@ -193,6 +193,25 @@ def test_the_version(call):
     assert call("--version").out == f"wavegen {__version__}\n"
 
 
+def test_quiet_leaves_out_the_notes(call, recipe, texts):
+    path = recipe(texts.RECIPE.replace("2 ms", "2.01 ms"))  # no whole number of periods
+    told, quiet = call("show", path), call("show", path, "--quiet")
+    assert told.err.startswith("note: duration")
+    assert quiet.err == ""
+    assert quiet.out == told.out
+    assert "error:" in call("show", "nowhere.wav", "--quiet").err
+
+
+def test_without_colour(call, monkeypatch):
+    monkeypatch.setenv("TERM", "xterm")
+    monkeypatch.delenv("NO_COLOR", raising=False)
+    monkeypatch.setattr("wavegen.cli.console.is_terminal", lambda _stream: True)
+    assert "\x1b[" in call("list", "data").out
+    assert "\x1b[" in call("lisst").err
+    assert "\x1b[" not in call("list", "data", "--no-color").out
+    assert "\x1b[" not in call("lisst", "--no-color").err
+
+
 def test_starting_loads_nothing_heavy():
     code = (
         "import sys, wavegen.cli.main as main; main.parser().format_help(); "
