@@ -67,3 +67,16 @@ def test_a_length_that_nothing_can_say_is_said(call, recipe):
     assert "nothing says how long a loop must be" in said
     assert "how long" not in call("predict", recipe(), *noise).out
     assert "1e-15" in call("predict", recipe(), "--fault", "1dB", "--at", "1e-30").err
+
+
+def test_levels_rarer_than_the_law_speaks_for_are_marked(call, recipe):
+    pattern = (
+        "signal={kind: single_carrier, constellation: qpsk, symbol_rate: 100 kHz, "
+        "data: {kind: prbs, sequence: pn23}, pulse: {kind: root_raised_cosine, roll_off: 0.22}}"
+    )
+    out = call("predict", recipe(), "--set", pattern).out
+    about = [line.split()[0] for line in out.splitlines() if "about " in line and " dB" in line]
+    # 10 of 2^23 - 1: 1.2e-6
+    assert about == ["0.0001", "0.00001", "0.000001", "0.0000001"]
+    assert "Below 0.000119 % the levels are about right only" in " ".join(out.split())
+    assert "about" not in call("predict", recipe()).out

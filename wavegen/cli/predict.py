@@ -70,7 +70,7 @@ class Predict:
 
 def show(document: dict[str, Any], console: Console, *, asks_for_length: bool = False) -> None:
     """Print one prediction."""
-    from wavegen.reports.tables import distortion_table, fault_words, law_table
+    from wavegen.reports.tables import distortion_table, fault_words, law_table, lowest_words
 
     for note in (*document["rounded"], *document["warnings"]):
         console.warn(f"{note['where']}: {note['text']}")
@@ -81,6 +81,9 @@ def show(document: dict[str, Any], console: Console, *, asks_for_length: bool = 
             console.line("Without a law nothing says how long a loop must be to show a fault.")
         return
     console.table(law_table(document["law"], title=title))
+    rarest = lowest_words(document["law"])
+    if rarest is not None:
+        console.line(rarest)
     distortion = document["distortion"]
     if distortion is not None and distortion["says"] is None:
         console.table(distortion_table(distortion))

@@ -181,11 +181,15 @@ def _levels(figures: dict[str, Any], document: dict[str, Any]) -> list[str]:
 
 
 def law_table(law: dict[str, Any], *, title: str) -> Table:
-    """Return a law's levels beside the complex Gaussian, and its highest peak."""
+    """Return a law's levels beside the complex Gaussian, and its highest peak.
+
+    Levels that are rarer than the law speaks for are marked ``about``.
+    """
+    lowest = law["lowest_probability"] * (1 - 1e-9)
     rows = [
         (
             percent(row["probability"]),
-            fixed(row["level_db"], "dB"),
+            ("" if row["probability"] >= lowest else "about ") + fixed(row["level_db"], "dB"),
             fixed(complex_gaussian_db(row["probability"]), "dB"),
         )
         for row in law["levels"]
@@ -197,6 +201,17 @@ def law_table(law: dict[str, Any], *, title: str) -> Table:
         headings=("probability", "level over mean", "complex Gaussian"),
         rows=tuple(rows),
         right=frozenset({0, 1, 2}),
+    )
+
+
+def lowest_words(law: dict[str, Any]) -> str | None:
+    """Say down to where a law speaks; None if at every probability."""
+    lowest = law["lowest_probability"]
+    if not lowest:
+        return None
+    return (
+        f"Below {percent(lowest)} the levels are about right only: the data of this recipe repeat "
+        "too soon, or its sums take too few values, for the law to speak of rarer events."
     )
 
 
