@@ -31,12 +31,12 @@ def test_each_can_be_made(family, duty, width_hz):
 
 @pytest.mark.parametrize(
     ("number", "value"),
-    [(0, 0.0), (1, 6.5), (2, 7.0), (3, 0.35), (4, 0.22), (5, 0.2), (6, 0.12)],
+    [(0, 0.0), (1, 6.5), (2, 7.0), (3, 0.35), (4, 0.22), (5, 0.2), (6, 0.12), (7, 1.0)],
 )
 def test_each_makes_a_signal_of_its_law(number, value):
     """The law of what the recipe makes is the law that it was found by.
 
-    Equal tones are left out: their recipe's law is that of one draw of phases.
+    Of equal tones only the single one: the law of more is that of one draw of phases.
     """
     family = FAMILIES[number]
     found = LookAlike(

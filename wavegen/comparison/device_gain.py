@@ -121,7 +121,7 @@ def device_gain(
             where=f"{sides[0].name}, {sides[1].name}",
             problem=f"resolve {points.input_db.size} levels in common",
             allowed=f"{FEWEST_POINTS} levels or more, half a dB apart",
-            remedy="Take longer records, or curves that reach to lower probabilities.",
+            remedy="Take longer records, levels that vary, or curves that reach further down.",
         )
     small = small_signal(points, mean_db=means[0])
     linearity = compare(sides[0].curve, sides[1].curve, tolerance_db=tolerance_db, down_to=down_to)

@@ -66,6 +66,8 @@ def _parts(found: LookAlike, width: float) -> tuple[list[str], list[str]]:
             f"symbol_rate: {_hz(float(f'{width / (1 + value / 2):.3g}'))}",
             f"pulse: {{kind: root_raised_cosine, roll_off: {value:.2f}}}",
         ], []
+    if isinstance(family, EqualTones) and value == 1:
+        return ["kind: carrier"], []
     if isinstance(family, EqualTones):
         spacing = _hz(float(f"{width / value:.2g}"))
         return ["kind: tones", f"count: {value:.0f}", f"spacing: {spacing}", "phases: random"], []
