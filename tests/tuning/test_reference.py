@@ -52,7 +52,7 @@ def test_near_evms_follow_the_slope_and_far_ones_have_none(projected):
 def test_few_rounds_are_better_than_none(projected):
     trials, _, space = projected(seconds=1.5)
     found = find_reference(trials, space, evm_percent=6.0, start_db=7.0)
-    assert found.evaluation.settings["rounds"] == space.base.rounds
+    assert found.evaluation.settings["rounds"] == space.axes[0].values[space.start[0]]
 
 
 def test_no_time_no_reference(projected):
