@@ -22,6 +22,9 @@ from wavegen.production.neighbours import (
     plan_channels,
 )
 
+RESOLVED = 10
+"""Resolutions that a channel holds at least: else what is read beside it is the window's own."""
+
 Corners = tuple[NDArray[np.float64], NDArray[np.float64]]
 
 
@@ -112,7 +115,7 @@ class Surroundings:
         carrier = ChannelView(
             name="carrier", low_hz=self.band.low_hz, high_hz=self.band.high_hz, leakage_db=None
         )
-        if self.plan is None:
+        if self.plan is None or self.band.width_hz < RESOLVED * spectrum.noise_bandwidth_hz:
             return (carrier,)
         centre = self.band.centre_hz
         try:

@@ -71,3 +71,9 @@ def test_times_are_written_with_three_digits():
     )
     labels = envelope_figure(envelope, title="T").axes[0].get_legend_handles_labels()[1]
     assert "mean of each 2.34 ms" in labels
+
+
+def test_real_samples_have_no_quadrature_at_the_seam():
+    around = np.exp(0.1j * np.arange(20))
+    figure = seam_picture(around, sample_rate_hz=1e6, title="T", is_real=True)
+    assert figure.axes[0].get_legend_handles_labels()[1] == ["samples"]

@@ -234,7 +234,6 @@ def _on_times(
 
 
 def _spectrum(document: dict[str, Any], views: Views, spectrum: Spectrum, title: str) -> Picture:
-    is_real = bool(document.get("is_real") or document.get("files", [{}])[0].get("real"))
     spectra = [("measured", spectrum)]
     if views.before is not None and views.before.spectrum is not None:
         spectra.append((views.before.name, views.before.spectrum))
@@ -254,7 +253,7 @@ def _spectrum(document: dict[str, Any], views: Views, spectrum: Spectrum, title:
     return Picture(
         name="spectrum",
         figure=spectrum_figure(
-            spectra, title=title, channels=channels, mask=views.mask, is_real=is_real
+            spectra, title=title, channels=channels, mask=views.mask, is_real=_is_real(document)
         ),
         caption=f"Power spectral density by Welch's method.{said}",
         alternative=f"Curve of the power density over frequency.{said}",
@@ -287,9 +286,16 @@ def _constellation(views: Views, title: str) -> Picture:
     )
 
 
+def _is_real(document: dict[str, Any]) -> bool:
+    """Return whether the samples that are drawn are real ones."""
+    return bool(document.get("is_real") or document.get("files", [{}])[0].get("real"))
+
+
 def _seam(document: dict[str, Any], around: Samples, sample_rate_hz: float, title: str) -> Picture:
     seam = (document.get("loop") or {}).get("seam") or document.get("seam")
     verdict = seam_words(seam) if seam else ""
+    is_real = _is_real(document)
+    rails = "The samples" if is_real else "Both rails"
     return Picture(
         name="seam",
         figure=seam_picture(
@@ -297,7 +303,8 @@ def _seam(document: dict[str, Any], around: Samples, sample_rate_hz: float, titl
             sample_rate_hz=sample_rate_hz,
             title=title,
             verdict=verdict,
+            is_real=is_real,
         ),
-        caption=f"Both rails where the loop closes{': ' + verdict if verdict else ''}.",
-        alternative="Both rails over the last and the first samples of the loop.",
+        caption=f"{rails} where the loop closes{': ' + verdict if verdict else ''}.",
+        alternative=f"{rails} over the end and the start of the loop.",
     )

@@ -130,7 +130,12 @@ def _shade(axes: Axes, on_times: Sequence[tuple[float, float]]) -> None:
 
 
 def seam_picture(
-    around: Samples, *, sample_rate_hz: float, title: str, verdict: str = ""
+    around: Samples,
+    *,
+    sample_rate_hz: float,
+    title: str,
+    verdict: str = "",
+    is_real: bool = False,
 ) -> Figure:
     """Draw both rails where the end of a loop meets its start.
 
@@ -144,6 +149,8 @@ def seam_picture(
         Heading.
     verdict : str
         Said in the figure.
+    is_real : bool
+        The file holds one rail, and no quadrature.
 
     Returns
     -------
@@ -153,7 +160,8 @@ def seam_picture(
     half = around.size // 2
     unit, name = time_unit(half / sample_rate_hz)
     place = (np.arange(around.size) - half) / sample_rate_hz / unit
-    for number, (rail, values) in enumerate((("I", around.real), ("Q", around.imag))):
+    rails = (("samples", around.real),) if is_real else (("I", around.real), ("Q", around.imag))
+    for number, (rail, values) in enumerate(rails):
         draw(axes, place, values, stroke(number), label=rail)
         axes.plot(
             place,
@@ -174,8 +182,8 @@ def seam_picture(
         fontsize=11,
         color=INK,
     )
-    rails = np.concatenate([around.real, around.imag])
-    low, high = float(rails.min(initial=0.0)), float(rails.max(initial=0.0))
+    drawn = np.concatenate([values for _, values in rails])
+    low, high = float(drawn.min(initial=0.0)), float(drawn.max(initial=0.0))
     room = 0.06 * (high - low or 1.0)
     axes.set_xlim(place[0], place[-1])
     axes.set_ylim(low - room, high + 2.5 * room)  # above: what is written there
