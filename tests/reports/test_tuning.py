@@ -94,7 +94,7 @@ def test_what_is_said_of_the_best():
     assert "0.02 dB below" in said
     assert "goes on from here" in said
     assert "Confirmed on other data (4 seeds" in said
-    assert "(5.66 to open)" in said
+    assert "(from 5.66 on: the loops are too short for the other end)" in said
 
 
 def test_what_is_said_where_nothing_keeps_the_limits():

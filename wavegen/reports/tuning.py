@@ -160,12 +160,15 @@ def confirmation_words(document: dict[str, Any]) -> str:
 
 def _interval(found: dict[str, float | None], unit: str) -> str:
     """Return a figure and its interval; a record too short leaves its ends open."""
-    low, high = (f"{end:.2f}" if end is not None else "open" for end in _ends(found))
-    return f"{found['mean']:.2f} {unit} ({low} to {high})"
-
-
-def _ends(found: dict[str, float | None]) -> tuple[float | None, float | None]:
-    return found["low"], found["high"]
+    low, high = found["low"], found["high"]
+    if low is not None and high is not None:
+        ends = f"{low:.2f} to {high:.2f}"
+    elif low is None and high is None:
+        ends = "the loops are too short for an interval"
+    else:
+        told = f"from {low:.2f} on" if low is not None else f"up to {high:.2f}"
+        ends = f"{told}: the loops are too short for the other end"
+    return f"{found['mean']:.2f} {unit} ({ends})"
 
 
 def _infeasible(document: dict[str, Any]) -> list[str]:
