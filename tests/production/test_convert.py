@@ -440,12 +440,9 @@ def test_two_real_channels_and_back(lab, tmp_path):
     assert check(find_stimulus(one.folder))["verdict"] == "match"
 
 
-NARROW = "symbol_rate: 0.5 MHz"
-
-
 @pytest.mark.parametrize("name", FORMATS)
 def test_real_output_is_what_make_writes(lab, tmp_path, name):
-    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW)
+    text = lab.TONES
     both = f"output: {{iq: [sigmf, {{format: {name}, name: real, real: {{centre: 1 MHz}}}}]}}\n"
     made = lab.make(text + both, tmp_path / "a")
     stated = made.document["files"][1]
@@ -473,8 +470,7 @@ def test_real_output_is_what_make_writes(lab, tmp_path, name):
 
 
 def test_real_and_back_is_the_baseband(lab, tmp_path):
-    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW) + FLOAT
-    made = lab.make(text, tmp_path / "a")
+    made = lab.make(lab.NOISE + FLOAT, tmp_path / "a")
     away = run(made.files[0], tmp_path / "b", format="npy", real_centre_hz=Fraction(1_100_000))
     assert away.document["files"][0]["datatype"] == "rf32_le"
     assert away.document["converted"]["real"] == {"from_hz": None, "to_hz": 1.1e6}
@@ -501,7 +497,7 @@ def test_real_and_back_is_the_baseband(lab, tmp_path):
 
 
 def test_real_samples_stay_real_byte_by_byte(lab, tmp_path):
-    text = lab.SINGLE.replace("symbol_rate: 1 MHz", NARROW)
+    text = lab.TONES
     made = lab.make(text + "output: {iq: [{format: raw, real: {centre: 1 MHz}}]}\n", tmp_path / "a")
     done = run(made.files[0], tmp_path / "b", format="wav")
     again = run(done.files[0], tmp_path / "c", format="raw")
