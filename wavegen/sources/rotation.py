@@ -64,7 +64,10 @@ class Rotation:
         >>> Rotation.parse("3 pi/8").turns, str(Rotation.parse("-90 deg"))
         (Fraction(3, 16), '-pi/2')
         """
-        turns = _turns(value)
+        try:
+            turns = _turns(value)
+        except QuantityError:  # speaks of quantities in general
+            turns = None
         if turns is None:
             raise _refuse(problem=f"{value!r} is no rotation")
         turns %= 1
@@ -115,10 +118,7 @@ def _turns(value: object) -> Fraction | None:
             return None
         half = Fraction(int(factor or 1), int(divisor or 1))
         return (-half if sign == "-" else half) / 2
-    try:
-        number, unit = split_quantity(text)
-    except QuantityError:
-        return None
+    number, unit = split_quantity(text)
     if unit in {"deg", "°"}:
         return number / 360
     return None if unit or number else Fraction(0)
