@@ -226,7 +226,7 @@ def test_starting_loads_nothing_heavy():
 
 @pytest.mark.parametrize(
     "verb",
-    [["list"], ["measure", "harbour-link-qpsk", "--json"], ["measure", "--help"], ["schema"]],
+    [["list"], ["measure", "harbour-link-qpsk", "--json"], ["list", "--help"], ["schema"]],
 )
 def test_a_pipe_that_is_closed_early_is_no_error(verb, tmp_path):
     read, write = os.pipe()
