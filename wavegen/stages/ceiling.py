@@ -152,9 +152,7 @@ class Pilot:
             before = after if signal is self.source else got[self.source]
             is_on = slice(None) if self.bursts is None else self.bursts.is_on(start, stop)
             x, y = before[is_on].astype(np.complex128), after[is_on].astype(np.complex128)
-            sums.append(
-                (float(np.vdot(x, x).real), float(np.vdot(y, y).real), complex(np.vdot(x, y)))
-            )
+            sums.append((_product(x, x).real, _product(y, y).real, _product(x, y)))
             if peaks:
                 own = _power(after)[is_on]
                 highest = own
@@ -389,6 +387,11 @@ def _power(samples: NDArray[np.complex64]) -> NDArray[np.float32]:
     power: NDArray[np.float32] = samples.real * samples.real
     power += samples.imag * samples.imag
     return power
+
+
+def _product(x: NDArray[np.complex128], y: NDArray[np.complex128]) -> complex:
+    """Return ``<x, y>``; a library's threads would wait for each other longer than they work."""
+    return complex(np.sum(np.conj(x) * y))
 
 
 def _db(ratio: float) -> float:
