@@ -8,7 +8,7 @@ from wavegen.core.site import Site
 from wavegen.laws.term import NoLaw
 from wavegen.sources.mapping.constellation import Constellation
 from wavegen.sources.ofdm import Ofdm
-from wavegen.sources.ofdm_carriers import Carriers, same_points
+from wavegen.sources.ofdm_carriers import Carriers
 from wavegen.sources.ofdm_instants import Instants, law_of_instants
 from wavegen.sources.ofdm_layout import CyclicPrefix, Stretch
 from wavegen.sources.ofdm_moments import Moments
@@ -17,7 +17,6 @@ from wavegen.sources.subcarriers import IndexSet, PilotValues
 
 QPSK = np.exp(0.5j * np.pi * (np.arange(4) + 0.5))
 T = np.linspace(0.2, 9, 12)
-ANGLE = np.array([0.1, 1.0, 2.5])
 
 
 def carriers_of(count, n_fft, points=QPSK):
@@ -33,26 +32,6 @@ def instants_of(carriers, n_fft):
         sources=((0, 1.0),), starts=np.zeros(1, np.int64), low=0, high=n_fft, known=None
     )
     return Instants.of([moments], [(carriers,)], n_fft=n_fft, span=carriers.turns.size)
-
-
-@pytest.mark.parametrize("name", ["bpsk", "qpsk", "16qam", "8psk", "32qam"])
-def test_the_factor_is_the_mean_over_the_points(name):
-    points = Constellation.parse(name).points
-    carriers = carriers_of(3, 16, points)
-    want = np.ones((T.size, ANGLE.size), complex)
-    for turn in carriers.turns:
-        turned = carriers.points * np.exp(2j * np.pi * turn * 5) * 0.8
-        along = np.real(turned[:, None] * np.exp(-1j * ANGLE))
-        want *= np.exp(1j * np.multiply.outer(T, along)).mean(axis=1)
-    assert carriers.factor(T, ANGLE, 5.0, 0.8) == pytest.approx(want, abs=1e-13)
-
-
-def test_points_without_opposites():
-    carriers = carriers_of(2, 16, [1, -0.5 + 0.5j, -0.5 - 0.5j])
-    value = carriers.factor(T, ANGLE, 1.0, 1.0)
-    assert np.abs(value.imag).max() > 0.01
-    assert same_points(carriers.points, carriers.points[::-1])
-    assert not same_points(carriers.points, -carriers.points)
 
 
 def test_samples_that_look_alike_are_gone_through_once():
