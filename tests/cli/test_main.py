@@ -236,6 +236,7 @@ def test_a_pipe_that_is_closed_early_is_no_error(verb, tmp_path):
         check=False,
         stdout=write,
         stderr=subprocess.PIPE,
+        env={k: v for k, v in os.environ.items() if k != "PYTHONUNBUFFERED"},
         cwd=tmp_path,
         timeout=60,
     )
