@@ -48,3 +48,10 @@ def test_what_was_cached_does_not_travel(lab):
     assert (again.sample_rate_hz, again.n_samples) == (lab.rate_hz, 10)
     assert "table" in vars(signal)
     assert "table" not in vars(again)
+
+
+def test_a_signal_shows_itself_without_what_it_is_made_of(lab):
+    signal = lab.white(10)
+    for _ in range(30):
+        signal = lab.multiplied(signal, signal)
+    assert len(repr(signal)) < 1000  # not 2^30 sources

@@ -35,7 +35,9 @@ class Convert:
     @staticmethod
     def arguments(parser: argparse.ArgumentParser) -> None:
         """Declare the arguments."""
-        parser.add_argument("file", type=Path, metavar="FILE", help="a recording, or a stimulus (its folder too)")
+        parser.add_argument(
+            "file", type=Path, metavar="FILE", help="a recording, or a stimulus (its folder too)"
+        )
         parser.add_argument("--to", required=True, metavar="FORMAT", help="such as sigmf or wav")
         parser.add_argument(
             "--datatype", metavar="NAME", help="such as cf32_le (default: the source's, if it can)"

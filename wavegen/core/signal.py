@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import cached_property
 
@@ -41,7 +41,7 @@ class Signal:
     sample_rate_hz: Fraction
     n_samples: int
     step: int = 1
-    inputs: tuple[Signal, ...] = ()
+    inputs: tuple[Signal, ...] = field(default=(), repr=False)
     mean_power: float | None = 1.0
 
     def __getstate__(self) -> dict[str, object]:
