@@ -106,8 +106,15 @@ def test_the_process_behind_a_loop_is_a_band():
     )
     (band,) = ccdf_figure([curve()], title="T", spread=spread).axes[0].collections
     corners = band.get_paths()[0].vertices
-    assert corners[:, 0].min() == 3.5
-    assert corners[:, 0].max() == 6.8
+    assert corners[:, 0].min() == pytest.approx(3.5)
+    assert corners[:, 0].max() == pytest.approx(6.8)
+    # It follows the curve between its rows: both ends at 3 %, neither a chord.
+    probability, low_db, high_db = spread.along(curve())
+    own = np.array([curve().level_at(q) for q in probability])
+    assert probability.size > 10
+    assert np.all(low_db < own)
+    assert np.all(high_db > own)
+    assert np.all(high_db - low_db < 0.31)
 
 
 def test_levels_in_dbm_stand_over_those_in_db():

@@ -102,6 +102,31 @@ class Spread:
     low_db: NDArray[np.float64]
     high_db: NDArray[np.float64]
 
+    def along(self, curve: CcdfCurve) -> tuple[NDArray[np.float64], ...]:
+        """Return probabilities falling, and both ends there: as far from a curve as they stand.
+
+        What few rows tell of the distance to the curve is interpolated, so that the band follows
+        the curve and no chords show beside it. Without the curve at a row, the rows alone.
+        """
+        at = [_level_of(curve, float(q)) for q in self.probability]
+        if any(level is None for level in at):
+            return self.probability, self.low_db, self.high_db
+        level = np.array(at, np.float64)
+        highest, lowest = self.probability[0], self.probability[-1]
+        between = curve.probability[(curve.probability < highest) & (curve.probability > lowest)]
+        asked = np.unique(np.concatenate([self.probability, between]))[::-1]
+        own = np.array([_level_of(curve, float(q)) for q in asked], np.float64)
+        place, rows = -np.log(asked), -np.log(self.probability)
+        low = own + np.interp(place, rows, self.low_db - level)
+        high = own + np.interp(place, rows, self.high_db - level)
+        return asked, low, high
+
+
+def _level_of(curve: CcdfCurve, probability: float) -> float | None:
+    """Return the level at a probability; where the curve falls to nothing, that of its peak."""
+    found = curve.level_at(probability)
+    return curve.peak_db if found is None and probability < 1 else found
+
 
 GAUSSIAN_DB = np.arange(-300, 281) / 20.0
 """Levels at which the complex Gaussian is drawn, dB over its mean."""
@@ -162,10 +187,11 @@ def ccdf_figure(
     figure, (axes,) = new_figure(title)
     floor = least or _floor(curves[0])
     if spread is not None:
+        probability, low_db, high_db = spread.along(curves[0])
         axes.fill_betweenx(
-            spread.probability,
-            spread.low_db,
-            spread.high_db,
+            probability,
+            low_db,
+            high_db,
             color=stroke(0).colour,
             alpha=0.25,
             linewidth=0,
