@@ -141,6 +141,9 @@ def test_the_process_beside_the_loop():
     }  # fmt: skip
     table = process_table({"of": "all of the time", "compared": [row]})
     assert table.rows == (("3.16 %", "5.00 dB", "5.10 dB", "4.90 dB to open", ""),)
+    assert "(" not in table.title
+    gated = process_table({"of": "the on-time, ramps excluded", "compared": [row]})
+    assert gated.title.endswith("(the on-time, ramps excluded)")
     assert process_table({"of": "x", "compared": []}) is None
     assert process_table(None) is None
 

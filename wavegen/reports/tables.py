@@ -96,8 +96,9 @@ def process_table(law: dict[str, Any] | None) -> Table | None:
         )
         for row in law["compared"]
     )
+    of = "" if law["of"].startswith("all of the time") else f" ({law['of']})"
     return Table(
-        title=f"The process that this loop samples ({law['of']})",
+        title=f"The process that this loop samples{of}",
         headings=("probability", "law", "this loop", "process, 95 % jointly", "finds a fault of"),
         rows=rows,
         right=frozenset(range(5)),
