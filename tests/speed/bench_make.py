@@ -12,6 +12,7 @@ import subprocess
 import sys
 import tempfile
 import time
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 RECIPE = """\
@@ -131,6 +132,16 @@ def workers(n: int, cores: set[int]) -> float:
     return time.perf_counter() - start
 
 
+def transforms(n: int, cores: set[int]) -> float:
+    """Return the wall time of bare inverse FFTs shared by ``n`` threads on some cores, s."""
+    os.sched_setaffinity(0, cores)
+    with ThreadPoolExecutor(n) as pool:
+        list(pool.map(bare_fft_s, [4 * N_FFT] * n))
+        start = time.perf_counter()
+        list(pool.map(bare_fft_s, [60_000_000 // n] * n))
+        return time.perf_counter() - start
+
+
 def memory(folder: Path, duration_ms: int) -> int:
     """Make a file in this process and return its peak memory, kB."""
     from wavegen.core.allocation import keep_large_blocks
@@ -156,11 +167,17 @@ def main() -> None:
     """Print all ratios."""
     with tempfile.TemporaryDirectory(dir=Path.cwd()) as name:
         print(ask("child", name, "1600"))
-        one, two = (
-            min(float(ask("workers", n, cores)) for _ in range(REPEATS))
-            for n, cores in (("1", "0"), ("2", "0,1"))
+        what = [(kind, n) for kind in ("workers", "transforms") for n in ("1", "2")]
+        spent = dict.fromkeys(what, float("inf"))
+        for _ in range(REPEATS):  # interleaved: what else runs on the machine comes and goes
+            for kind, n in what:
+                taken = float(ask(kind, n, "0" if n == "1" else "0,1"))
+                spent[kind, n] = min(spent[kind, n], taken)
+        gained, limit = (spent[kind, "1"] / spent[kind, "2"] for kind in ("workers", "transforms"))
+        print(
+            f"two workers over one (pinned to one core), rendering: {gained:.2f}; bare inverse "
+            f"FFTs on the same cores: {limit:.2f}"
         )
-        print(f"two workers over one (pinned to one core), rendering: {one / two:.2f}")
         small, large = (int(ask("memory", name, d)) for d in ("164", "1640"))
         print(
             f"peak memory, two workers: {small / 1e3:.0f} MB for 1.0e7 samples, "
@@ -173,7 +190,8 @@ if __name__ == "__main__":
         main()
     elif sys.argv[1] == "child":
         child(Path(sys.argv[2]), int(sys.argv[3]))
-    elif sys.argv[1] == "workers":
-        print(workers(int(sys.argv[2]), {int(core) for core in sys.argv[3].split(",")}))
+    elif sys.argv[1] in {"workers", "transforms"}:
+        job = workers if sys.argv[1] == "workers" else transforms
+        print(job(int(sys.argv[2]), {int(core) for core in sys.argv[3].split(",")}))
     else:
         print(memory(Path(sys.argv[2]), int(sys.argv[3])))
