@@ -1,13 +1,14 @@
 """Pictures and pages from the command line."""
 
 import argparse
+import hashlib
 from pathlib import Path
 
 import numpy as np
 import pytest
 
 from wavegen.cli.main import run
-from wavegen.cli.report_options import are_wanted, stem_of
+from wavegen.cli.report_options import are_wanted, read_files, stem_of
 from wavegen.core.errors import ArgumentsError
 
 SHORT = ("harbour-link-qpsk", "--set", "duration=2000 symbols")
@@ -63,5 +64,23 @@ def test_comparisons_are_drawn(verb, name, pair, tmp_path, capsys):
     said = capsys.readouterr().out
     assert "Report: " in said.replace("\n", " ")
     assert any(f".{name}.svg" in path.name for path in (tmp_path / "f").iterdir())
-    assert "picture-" + name in (tmp_path / "r.html").read_text()
+    page = (tmp_path / "r.html").read_text()
+    assert "picture-" + name in page
+    for path in pair[:2]:  # which files they were
+        assert hashlib.sha512(Path(path).read_bytes()).hexdigest() in page
     assert run(words) == 4
+
+
+def test_the_files_of_a_stimulus_and_of_a_pair(tmp_path):
+    names = ("a.sigmf-meta", "a.sigmf-data", "a.ccdf.json", "a.ccdf.csv", "a.ci16_le", "iq.csv")
+    for name in names:
+        (tmp_path / name).write_text(name)
+    page = tmp_path / "r.html"
+    found = read_files(argparse.Namespace(report=page, stimulus=str(tmp_path), field="a-recipe"))
+    told = {item["name"]: item["sha512"] for item in found["files_read"]}
+    assert list(told) == ["a.ci16_le", "a.sigmf-data", "a.sigmf-meta", "iq.csv"]
+    assert told["iq.csv"] == hashlib.sha512(b"iq.csv").hexdigest()
+    meta = str(tmp_path / "a.sigmf-meta")
+    found = read_files(argparse.Namespace(report=page, subjects=[meta, meta]))
+    assert [item["name"] for item in found["files_read"]] == ["a.sigmf-meta", "a.sigmf-data"]
+    assert read_files(argparse.Namespace(report=None, subjects=[meta])) == {}

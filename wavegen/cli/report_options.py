@@ -64,6 +64,18 @@ def are_wanted(arguments: argparse.Namespace) -> bool:
     return True
 
 
+_SUBJECTS = ("recipe", "subjects", "stimulus", "field", "source", "output")
+"""Arguments that name what a verb reads."""
+_TELL = frozenset({".json", ".html", ".svg", ".png", ".yaml"})
+"""Endings of files in the folder of a stimulus that speak of it."""
+
+
+def _holds_data(path: Path) -> bool:
+    """Return whether a file in the folder of a stimulus is none of those beside the data."""
+    is_table = path.suffix == ".csv" and path.with_suffix("").suffix != ""
+    return path.is_file() and path.suffix not in _TELL and not is_table
+
+
 def write_reports(
     arguments: argparse.Namespace, pictures: Sequence[Picture], page: Page, *, stem: str
 ) -> list[str]:
@@ -107,7 +119,7 @@ def report_measurement(
     from wavegen.reports.pages.stimulus import measurement_page
 
     pictures = pictures_of(document, views, title=document["name"])
-    page = measurement_page(document, pictures)
+    page = measurement_page(document | read_files(arguments), pictures)
     return write_reports(arguments, pictures, page, stem=stem_of(document["name"]))
 
 
@@ -124,8 +136,39 @@ def report_comparison(arguments: argparse.Namespace, document: dict[str, Any]) -
         "tuning": (figures.tune_pictures, pages.tune_page),
     }[kind]
     pictures = draw(document)
-    page = write(document, pictures)
+    page = write(document | read_files(arguments), pictures)
     return write_reports(arguments, pictures, page, stem=stem_of(document.get("name") or kind))
+
+
+def read_files(arguments: argparse.Namespace) -> dict[str, Any]:
+    """Return what a page says of the files that were read: ``files_read``, names and SHA-512.
+
+    Parameters
+    ----------
+    arguments : Namespace
+        Of a verb that reads files. Nothing is hashed where no page is asked for.
+
+    Raises
+    ------
+    FileError
+        A file cannot be read.
+    """
+    from wavegen.files.digest import sha512_of
+
+    if arguments.report is None:
+        return {}
+    given = [getattr(arguments, name, None) for name in _SUBJECTS]
+    words = [word for each in given for word in (each if isinstance(each, list) else [each])]
+    paths: dict[Path, None] = {}
+    for path in (Path(word) for word in words if word):
+        if path.is_dir():
+            within = sorted(path.iterdir())
+            paths |= dict.fromkeys(x for x in within if _holds_data(x))
+        elif path.is_file():
+            paths[path] = None
+            if path.suffix == ".sigmf-meta" and path.with_suffix(".sigmf-data").is_file():
+                paths[path.with_suffix(".sigmf-data")] = None
+    return {"files_read": [{"name": path.name, "sha512": sha512_of(path)} for path in paths]}
 
 
 def compared(

@@ -111,7 +111,8 @@ def _page(
     *,
     verdict: str,
 ) -> Page:
-    origin = [_file_row(item) for item in document.get("files", ())]
+    files = [*document.get("files_read", ()), *document.get("files", ())]
+    origin = [_file_row(item) for item in files]
     origin += [(name, str(value)) for name, value in document.get("versions", {}).items()]
     return Page(
         title=title,

@@ -133,7 +133,7 @@ def _origin(document: dict[str, Any]) -> tuple[tuple[str, str], ...]:
         found.append(("recipe, SHA-256", recipe["sha256"]))
         found += [("changed by", str(item)) for item in recipe.get("overrides", ())]
         found.append(("seed", str(document["seed"])))
-    for item in document.get("files", ()):
+    for item in (*document.get("files_read", ()), *document.get("files", ())):
         if item.get("sha512"):
             found.append((f"{item['name']}, SHA-512", item["sha512"]))
     found += [(name, str(value)) for name, value in document.get("versions", {}).items()]
