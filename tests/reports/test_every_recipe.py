@@ -28,6 +28,8 @@ WITHOUT_SYMBOLS = {
     "kiln-receiver-uneven-tones",
     "lantern-mesh-half-sine",
     "noise-power-ratio-comb",
+    "crane-remote-cpfsk",
+    "signal-box-msk",
     "power-reference-carrier",
     "quay-sensor-bursts",
     "ranger-handset-four-level",
