@@ -85,6 +85,44 @@ def test_few_sums_are_counted(count, points):
     assert law.lowest_probability == 0
 
 
+def test_thirteen_qpsk_subcarriers_by_enumeration():
+    """All 4^12 symbols that begin with one phase; four of nine samples are rounded off."""
+    instants = instants_of(carriers_of(13, 64), 64)
+    assert len(instants.exact) == 5 < instants.weights.size
+    law = law_of_instants(instants, name="13", peak=math.sqrt(13))
+    assert law.lowest_probability <= 1e-3
+    asked = np.array([0.1, 0.03, 0.01, 3e-3, 1e-3])
+    edges = 13 * 10 ** ((law.level_db(asked)[:, None] + np.array([-1e-3, 1e-3])) / 10)
+    above, total = np.zeros(edges.shape), 0.0
+    for (source,), weight in zip(instants.sources, instants.weights, strict=True):
+        first, second = QPSK[:1], np.zeros(1, complex)
+        for k in range(1, 13):
+            turned = QPSK * np.exp(2j * np.pi * k * source[2] / 64)
+            if k < 7:
+                first = np.add.outer(first, turned).ravel()
+            else:
+                second = np.add.outer(second, turned).ravel()
+        for some in np.array_split(first, 64):
+            power = np.sort(np.abs(np.add.outer(some, second).ravel()) ** 2)
+            above += weight * (power.size - np.searchsorted(power, edges, side="right"))
+        total += weight * first.size * second.size
+    assert np.all(above[:, 0] / total > asked)
+    assert np.all(above[:, 1] / total < asked)
+
+
+def test_tables_round_the_circle_give_what_each_subcarrier_gives():
+    # Turned groups stand between the steps of the angles: computed one by one.
+    for phases in (np.zeros(5), np.full(5, np.pi / 8), np.arange(5) * 0.3):
+        carriers = Carriers(turns=np.arange(5) / 32 + 1 / 64, phases=phases, points=QPSK / 2)
+        instants = instants_of(carriers, 32)
+        angle = np.arange(256) * (2 * np.pi / 256)
+        for number, ((_, gain, sample),) in enumerate(instants.sources):
+            want = carriers.factor(T, angle, sample, gain).mean(axis=1).real
+            assert instants.characteristic(T, [number]) == pytest.approx(
+                instants.weights[number] * want, abs=1e-12
+            )
+
+
 def fourteen():
     return instants_of(carriers_of(14, 64), 64)
 

@@ -4,13 +4,14 @@ from __future__ import annotations
 
 import math
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from functools import cached_property
 from itertools import pairwise
-from typing import NamedTuple
+from typing import Any, NamedTuple
 
 import numpy as np
 import scipy.special
+from numpy.typing import NDArray
 
 from wavegen.laws.inversion import BesselSeries, bessel_zeros
 from wavegen.laws.mixture import KnownAmplitudes, MixedTail
@@ -25,7 +26,7 @@ MOST_INSTANTS = 1024
 MOST_SUBCARRIERS = 400
 SAMPLES_PER_CYCLE = 8
 """Samples in a cycle of the widest spacing that stand for all of them."""
-BLURS = (0.1, 0.1 / math.sqrt(2), 0.05, 0.05 / math.sqrt(2), 0.025)
+BLURS = (0.05, 0.05 / math.sqrt(2), 0.025, 0.025 / math.sqrt(2), 0.0125)
 """Standard deviations of the noise that rounds off close points, over the RMS value, each of half
 the power of the one before."""
 RICHARDSON = (1 / 3, -2.0, 8 / 3)
@@ -42,6 +43,10 @@ what is left of the points' own there is small as well."""
 _FARTHEST = 8.0
 """Amplitude over the RMS value beyond which next to nothing lies."""
 _SHORTEST = 16
+MOST_PLACES = 4096
+"""Places of subcarriers that angles are made to fall on."""
+_WHOLE = 1e-6
+"""Steps this near to a whole number are one."""
 FEWEST_DECADES = 3
 """Down to how many decades a law must be as good as it says to be one."""
 
@@ -60,12 +65,16 @@ class Instants:
         State, weight and sample of the useful symbol of what is added at each.
     known : complex128 array, shape (n_instants,)
         What is known at each.
+    n_places : int
+        Places, evenly round the circle, at which subcarriers stand at whole samples but for what
+        their groups are turned by; 0 if it is not known.
     """
 
     carriers: tuple[tuple[Carriers, ...], ...]
     weights: Reals
     sources: list[tuple[tuple[int, float, int], ...]]
     known: Complexes
+    n_places: int = 0
 
     @classmethod
     def of(
@@ -132,6 +141,7 @@ class Instants:
             weights=weights / weights.sum(),
             sources=list(found),
             known=np.array([entry[1] for entry in found.values()]),
+            n_places=_n_places(carriers, n_fft),
         )
 
     @cached_property
@@ -174,27 +184,93 @@ class Instants:
         for low, high in pairwise(_stretches(t.size)):
             some = t[low:high]
             n_angles = -(-(64 + 8 * int(some[-1])) // (4 * self._fold)) * 4
-            angle = (np.arange(n_angles) + 0.5) * (2 * np.pi / self._fold / n_angles)
+            if 0 < self.n_places <= MOST_PLACES:
+                unit = math.lcm(self.n_places, self._fold) // self._fold
+                n_angles = -(-n_angles // unit) * unit
+            circle = _Circle(t=some, n_angles=n_angles, n_round=n_angles * self._fold)
             kept = []
             for number in alive:
-                value = self._one(number, some, np.asarray(angle, np.float64))
+                value = self._one(number, circle)
                 total[low:high] += self.weights[number] * value
                 if np.max(np.abs(value[-(value.size // 4) - 1 :])) > _NEGLIGIBLE:
                     kept.append(number)
             alive = kept
         return total
 
-    def _one(self, number: int, t: Reals, angle: Reals) -> Reals:
-        product: Reals | Complexes = np.ones((t.size, angle.size))
-        for state, gain, sample in self.sources[number]:
+    def _one(self, number: int, circle: _Circle) -> Reals:
+        sources, known = self.sources[number], self.known[number]
+        product: Reals | Complexes = np.ones((circle.t.size, circle.n_angles))
+        for state, gain, sample in sources:
             for group in self.carriers[state]:
-                product = product * group.factor(t, angle, float(sample), gain)
-        known = self.known[number]
+                # The weights of an edge come once: no table serves twice.
+                found = circle.factor(group, sample, gain, again=len(sources) == 1)
+                product = product * found
         if known:
-            product = product * np.exp(
-                1j * np.multiply.outer(t, (known * np.exp(-1j * angle)).real)
-            )
+            along = (known * np.exp(-1j * circle.angle_rad)).real
+            product = product * np.exp(1j * np.multiply.outer(circle.t, along))
         return np.asarray(product.mean(axis=1).real)
+
+
+@dataclass(slots=True, eq=False, kw_only=True)
+class _Circle:
+    """Angles at which functions are averaged, and what a subcarrier gives at all of them.
+
+    Where subcarriers stand at whole steps of the angles, each gives the same figures, moved
+    along: they are computed once for a group.
+
+    Parameters
+    ----------
+    t : float64 array, shape (n,)
+        Arguments.
+    n_angles : int
+        Angles that are averaged: the first of those round the circle.
+    n_round : int
+        Angles round the circle, half a step from zero.
+    """
+
+    t: Reals
+    n_angles: int
+    n_round: int
+    _tables: dict[tuple[int, float], Reals | Complexes] = field(default_factory=dict)
+
+    @property
+    def angle_rad(self) -> Reals:
+        """The angles."""
+        return np.asarray((np.arange(self.n_angles) + 0.5) * (2 * np.pi / self.n_round), np.float64)
+
+    def factor(
+        self, group: Carriers, sample: int, gain: float, *, again: bool
+    ) -> Reals | Complexes:
+        """Return the product over the subcarriers of a group at a sample, shape (n, n_angles)."""
+        steps = (group.turns * sample + group.phases / (2 * np.pi)) * self.n_round
+        whole = np.rint(steps)
+        if not again or np.abs(steps - whole).max() > _WHOLE:
+            return group.factor(self.t, self.angle_rad, float(sample), gain)
+        table = self._table(group, gain)
+        product: NDArray[Any] = np.ones((self.t.size, self.n_angles), table.dtype)
+        for step in whole.astype(np.int64) % self.n_round:
+            first = int(-step % self.n_round)
+            product *= table[:, first : first + self.n_angles]
+        return product
+
+    def _table(self, group: Carriers, gain: float) -> Reals | Complexes:
+        """Return what a subcarrier at zero gives, twice round the circle."""
+        if (id(group), gain) not in self._tables:
+            one = replace(group, turns=np.zeros(1), phases=np.zeros(1))
+            angle = np.asarray((np.arange(self.n_round) + 0.5) * (2 * np.pi / self.n_round))
+            found = one.factor(self.t, angle.astype(np.float64), 0.0, gain)
+            twice: NDArray[Any] = np.concatenate((found, found), axis=1)
+            self._tables[id(group), gain] = twice
+        return self._tables[id(group), gain]
+
+
+def _n_places(carriers: Sequence[tuple[Carriers, ...]], n_fft: int) -> int:
+    """Return how many places round the circle hold all turns; 0 if it is not n_fft or twice it."""
+    turns = np.concatenate([np.zeros(1), *(group.turns for state in carriers for group in state)])
+    for count in (n_fft, 2 * n_fft):
+        if np.abs(turns * count - np.rint(turns * count)).max() < _WHOLE:
+            return count
+    return 0
 
 
 def _stretches(count: int) -> list[int]:

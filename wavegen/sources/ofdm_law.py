@@ -34,7 +34,7 @@ from wavegen.sources.ofdm_sums import n_sums
 FEWEST_SUBCARRIERS = 48
 """Fewer, counted by their shares of the power, are not isotropic over the samples of a symbol."""
 MOST_FACTORS = 8000
-"""Instants times subcarriers that are gone through in about two seconds; an eighth of it where
+"""Instants times subcarriers that are gone through in about two seconds; a quarter of it where
 points lie on a line (BPSK), whose functions die out late."""
 _ROUNDING = 1e-9
 _OCTAVES = 2.0
@@ -184,7 +184,7 @@ def ofdm_law(settings: Settings, site: Site, layout: Layout, n_frame: int) -> La
         span=span,
         finest=_finest(carriers),
     )
-    most = MOST_FACTORS // 8 if any(map(_is_flat, settings.groups)) else MOST_FACTORS
+    most = MOST_FACTORS // 4 if any(map(_is_flat, settings.groups)) else MOST_FACTORS
     if instants is None or instants.weights.size * n_most > most:
         return NoLaw(reason=laid.uneven)
     return law_of_instants(
