@@ -1,5 +1,6 @@
 """Stimuli in the shape of a field signal."""
 
+from dataclasses import replace
 from fractions import Fraction
 from pathlib import Path
 
@@ -178,6 +179,11 @@ def test_a_carrier_without_its_offset_is_nothing(tmp_path):
     with pytest.raises(SignalError) as caught:
         shape(field, settings(), out=tmp_path / "out")
     assert "--keep-dc" in caught.value.remedy
+    # Bursts that are not found are another matter.
+    field = replace(written(tmp_path / "on.ci16", clipped()), gate=GateSettings(by="level"))
+    with pytest.raises(SignalError, match="no bursts") as caught:
+        shape(field, settings(), out=tmp_path / "out")
+    assert "--keep-dc" not in caught.value.remedy
 
 
 def test_a_band_wider_than_the_rate_is_refused_before_anything_is_written(tmp_path):

@@ -181,7 +181,7 @@ def _opened(field: SideSettings, *, workers: int, progress: Progress) -> Side:
     try:
         return open_side(field, workers=workers, progress=progress)
     except SignalError as error:
-        if not field.removes_offset:
+        if not field.removes_offset or field.gate is not None:
             raise
         raise SignalError(
             where=error.where,
