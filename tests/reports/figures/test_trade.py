@@ -37,3 +37,11 @@ def test_a_difference_is_drawn_with_intervals_and_tolerance():
     assert len(bars.get_segments()) == 1
     assert axes.get_ylim()[1] == -axes.get_ylim()[0] > 0.3
     assert axes.get_ylabel() == "a less b, dB"
+
+
+def test_a_difference_of_exact_curves_has_no_interval():
+    rows = [
+        {"probability": q, "difference_db": 0.1, "low_db": 0.1, "high_db": 0.1} for q in (0.1, 0.01)
+    ]
+    axes = difference_figure(rows, title="T", name="a less b, dB", tolerance_db=0.2).axes[0]
+    assert len(axes.collections) == 0

@@ -147,7 +147,8 @@ def difference_figure(
     axes.axhline(0.0, color=INK, linewidth=1.0)
     place, low, high = _columns(rows, "probability", "low_db", "high_db")
     colour = stroke(0).colour
-    axes.vlines(place, low, high, color=colour, linewidth=2.0, alpha=0.6, label="95 % interval")
+    if np.any(high > low):  # of exact curves there is none to show
+        axes.vlines(place, low, high, color=colour, linewidth=2.0, alpha=0.6, label="95 % interval")
     draw(axes, share, difference, stroke(0), label="difference", has_marks=True)
     axes.set_xscale("log")
     axes.set_xlim(float(share.max()) * 1.5, float(share.min()) / 1.5)  # rarer to the right
