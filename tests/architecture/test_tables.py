@@ -60,13 +60,13 @@ def test_the_tables_are_where_they_are_looked_for():
 
 @pytest.mark.parametrize(("table", "kind"), LINES)
 def test_every_line_has_its_file_inside_its_own_room(table, kind):
-    package, registry = TABLES[table]
-    module, _, attribute = registry[kind].partition(":")
+    package, members = TABLES[table]
+    module, _, attribute = members[kind].partition(":")
     assert module.startswith(f"{package}.")
     assert module.split(".")[1] == package.split(".")[1]
-    assert callable(registry.load(kind))
-    assert registry.load(kind).__module__ == module
-    assert registry.load(kind).__name__ == attribute
+    assert callable(members.load(kind))
+    assert members.load(kind).__module__ == module
+    assert members.load(kind).__name__ == attribute
 
 
 @pytest.mark.parametrize("kind", [kind for _, kind in LINES])

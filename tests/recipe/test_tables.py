@@ -24,8 +24,8 @@ def test_defaults_are_members() -> None:
 
 
 def test_a_class_finds_its_kind(tables: Tables) -> None:
-    registry = tables["pulse"][0]
-    assert kind_of_class(tables, ("pulse",), registry.load("round")) == "round"
+    pulses = tables["pulse"][0]
+    assert kind_of_class(tables, ("pulse",), pulses.load("round")) == "round"
     assert kind_of_class(tables, ("pulse",), int) is None
 
 

@@ -85,19 +85,14 @@ def test_few_sums_are_counted(count, points):
     assert law.lowest_probability == 0
 
 
-def test_thirteen_qpsk_subcarriers_by_enumeration():
-    """All 4^12 symbols that begin with one phase; four of nine samples are rounded off."""
-    instants = instants_of(carriers_of(13, 64), 64)
-    assert len(instants.exact) == 5 < instants.weights.size
-    law = law_of_instants(instants, name="13", peak=math.sqrt(13))
-    assert law.lowest_probability <= 1e-3
-    asked = np.array([0.1, 0.03, 0.01, 3e-3, 1e-3])
-    edges = 13 * 10 ** ((law.level_db(asked)[:, None] + np.array([-1e-3, 1e-3])) / 10)
+def shares_above(instants, count, n_fft, edges_db):
+    """Shares of all sums of QPSK that begin with one phase above levels, at every sample."""
+    edges = count * 10 ** (edges_db / 10)
     above, total = np.zeros(edges.shape), 0.0
     for (source,), weight in zip(instants.sources, instants.weights, strict=True):
         first, second = QPSK[:1], np.zeros(1, complex)
-        for k in range(1, 13):
-            turned = QPSK * np.exp(2j * np.pi * k * source[2] / 64)
+        for k in range(1, count):
+            turned = QPSK * np.exp(2j * np.pi * k * source[2] / n_fft)
             if k < 7:
                 first = np.add.outer(first, turned).ravel()
             else:
@@ -106,8 +101,20 @@ def test_thirteen_qpsk_subcarriers_by_enumeration():
             power = np.sort(np.abs(np.add.outer(some, second).ravel()) ** 2)
             above += weight * (power.size - np.searchsorted(power, edges, side="right"))
         total += weight * first.size * second.size
-    assert np.all(above[:, 0] / total > asked)
-    assert np.all(above[:, 1] / total < asked)
+    return above / total
+
+
+def test_thirteen_qpsk_subcarriers_by_enumeration():
+    """All 4^12 symbols that begin with one phase; four of nine samples are rounded off."""
+    instants = instants_of(carriers_of(13, 64), 64)
+    assert len(instants.exact) == 5 < instants.weights.size
+    law = law_of_instants(instants, name="13", peak=math.sqrt(13))
+    assert law.lowest_probability <= 1e-3
+    asked = np.array([0.1, 0.03, 0.01, 3e-3, 1e-3])
+    around = law.level_db(asked)[:, None] + np.array([-1e-3, 1e-3])
+    above = shares_above(instants, 13, 64, around)
+    assert np.all(above[:, 0] > asked)
+    assert np.all(above[:, 1] < asked)
 
 
 def test_tables_round_the_circle_give_what_each_subcarrier_gives():
@@ -133,24 +140,10 @@ def test_twelve_qpsk_subcarriers_by_enumeration():
     law = law_of_instants(instants, name="twelve", peak=math.sqrt(12))
     assert law.lowest_probability == 0
     asked = np.array([0.1, 0.03, 0.01, 1e-3, 1e-5])
-    edges = 12 * 10 ** ((law.level_db(asked)[:, None] + np.array([-5e-4, 5e-4])) / 10)
-    above, total = np.zeros(edges.shape), 0.0
-    for (source,), weight in zip(instants.sources, instants.weights, strict=True):
-        first, second = QPSK[:1], np.zeros(1, complex)
-        for k in range(1, 12):
-            turned = QPSK * np.exp(2j * np.pi * k * source[2] / 32)
-            if k < 6:
-                first = np.add.outer(first, turned).ravel()
-            else:
-                second = np.add.outer(second, turned).ravel()
-        for some in np.array_split(first, 16):
-            power = np.abs(np.add.outer(some, second)) ** 2
-            above += weight * np.array(
-                [[np.count_nonzero(power > x) for x in row] for row in edges]
-            )
-        total += weight * first.size * second.size
-    assert np.all(above[:, 0] / total > asked)
-    assert np.all(above[:, 1] / total <= asked)
+    around = law.level_db(asked)[:, None] + np.array([-5e-4, 5e-4])
+    above = shares_above(instants, 12, 32, around)
+    assert np.all(above[:, 0] > asked)
+    assert np.all(above[:, 1] <= asked)
 
 
 def test_a_law_speaks_as_far_down_as_it_is_sure():
